@@ -1,0 +1,1 @@
+//! Elements, formulas, equations.

@@ -1,0 +1,1 @@
+//! The open Jupyter messaging protocol, spoken over ZeroMQ.

@@ -1,0 +1,10 @@
+//! hessbook: a notebook engine for thermochemistry.
+
+pub mod chem;
+pub mod fault;
+pub mod kernel;
+pub mod num;
+pub mod render;
+pub mod session;
+pub mod source;
+pub mod units;

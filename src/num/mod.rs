@@ -1,0 +1,3 @@
+//! Plain f64 numerics, with no nouns of the field.
+
+pub mod math;

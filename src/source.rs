@@ -1,0 +1,39 @@
+//! Where figures come from, and files built into the program.
+//!
+//! A [`Citation`] is the printed source of a figure together with how the figure was obtained. Embedded files
+//! keep their bytes; whoever reads one parses it typed, at first use.
+
+use std::sync::Arc;
+
+/// A published source, and how the figure was read from it. Both are shown wherever the figure is used.
+#[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
+pub struct Citation {
+    /// The publication, with table or page where known.
+    pub source: Arc<str>,
+    /// How the figure was obtained, as the record says; empty where the source was read directly.
+    pub obtained: Arc<str>,
+}
+
+impl Citation {
+    pub fn new(source: impl Into<Arc<str>>, obtained: impl Into<Arc<str>>) -> Self {
+        Citation { source: source.into(), obtained: obtained.into() }
+    }
+}
+
+impl std::fmt::Display for Citation {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        if self.obtained.is_empty() {
+            write!(f, "{}", self.source)
+        } else {
+            write!(f, "{}; {}", self.source, self.obtained)
+        }
+    }
+}
+
+/// A file of the distribution, built into the program.
+#[derive(Clone, Copy, Debug)]
+pub struct Embedded {
+    /// Path below the project's root, for messages and seals.
+    pub path: &'static str,
+    pub bytes: &'static [u8],
+}
