@@ -4,6 +4,7 @@ pub mod chem;
 pub mod fault;
 pub mod kernel;
 pub mod num;
+pub mod record;
 pub mod render;
 pub mod session;
 pub mod source;
