@@ -1,7 +1,16 @@
-//! Dimensions, kinds, constants and the trade's units.
 
 pub mod dimension;
+mod entity_name;
+mod exponent;
+mod near_miss;
+pub mod parse;
+pub mod refused;
+pub mod table;
+mod terms;
 pub mod unit;
+mod unit_error;
 
 pub use dimension::{Base, Dimension, Entity, Of};
+pub use entity_name::entity;
 pub use unit::{Scale, Unit};
+pub use unit_error::UnitError;
