@@ -1,4 +1,6 @@
+//! Dimensions, kinds, constants and the trade's units.
 
+pub mod constants;
 pub mod dimension;
 mod entity_name;
 mod exponent;
