@@ -6,6 +6,8 @@ mod entity_name;
 mod exponent;
 mod near_miss;
 pub mod parse;
+pub mod preferred;
+mod reader;
 pub mod refused;
 pub mod table;
 mod terms;
@@ -14,5 +16,7 @@ mod unit_error;
 
 pub use dimension::{Base, Dimension, Entity, Of};
 pub use entity_name::entity;
+pub use preferred::unit_for;
+pub use reader::{basis_words, reader_html, reader_latex, reader_text};
 pub use unit::{Scale, Unit};
 pub use unit_error::UnitError;
