@@ -1,1 +1,4 @@
 //! Elements, formulas, equations.
+
+pub mod composition;
+pub mod element;
