@@ -36,4 +36,26 @@ pub struct Embedded {
     /// Path below the project's root, for messages and seals.
     pub path: &'static str,
     pub bytes: &'static [u8],
+    /// SHA-256 of the bytes in lower-case hexadecimal, taken when the program was built.
+    pub sha256: &'static str,
+}
+
+// `STDLIB`: every file of stdlib/, by path; written by build.rs.
+include!(concat!(env!("OUT_DIR"), "/stdlib.rs"));
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    use sha2::{Digest, Sha256};
+
+    #[test]
+    fn digests_are_those_of_the_bytes_and_paths_are_sorted() {
+        assert!(STDLIB.is_sorted_by_key(|file| file.path));
+        for file in STDLIB {
+            let hex: String = Sha256::digest(file.bytes).iter().map(|byte| format!("{byte:02x}")).collect();
+            assert_eq!(hex, file.sha256, "{}", file.path);
+        }
+        assert!(STDLIB.iter().any(|file| file.path == "stdlib/data/codata-1989.json"));
+    }
 }
