@@ -100,12 +100,12 @@ impl Rational {
         let bytes = text.as_bytes();
         let digits = |from: usize| bytes[from..].iter().take_while(|b| b.is_ascii_digit()).count();
         let whole = digits(0);
-        let mut end = whole;
-        if bytes.get(whole) == Some(&b'.') && digits(whole + 1) > 0 {
-            end = whole + 1 + digits(whole + 1);
-        } else if whole > 0 && bytes.get(whole) == Some(&b'/') && digits(whole + 1) > 0 {
-            end = whole + 1 + digits(whole + 1);
-        }
+        let more = match bytes.get(whole) {
+            Some(b'.') => digits(whole + 1),
+            Some(b'/') if whole > 0 => digits(whole + 1),
+            _ => 0,
+        };
+        let end = if more > 0 { whole + 1 + more } else { whole };
         (end > 0).then(|| (text[..end].parse(), end))
     }
 }
