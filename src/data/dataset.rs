@@ -171,6 +171,24 @@ impl Datum {
         Some(Datum { printed: figure.value.into(), printed_u: figure.u.map(Arc::from), unit, decimals, value, u })
     }
 
+    /// A formation enthalpy in J/mol without uncertainty; zero is a convention.
+    pub(super) fn formation_j_mol(value: f64) -> Datum {
+        Datum { u: (value == 0.0).then_some(0.0), ..Datum::energy_j_mol(value) }
+    }
+
+    /// An energy in J/mol without uncertainty, its decimals as far as a number carries them.
+    pub(super) fn energy_j_mol(value: f64) -> Datum {
+        let printed = value.to_string();
+        Datum {
+            decimals: decimals_of(&printed),
+            printed: printed.into(),
+            printed_u: None,
+            unit: "J/mol",
+            value,
+            u: None,
+        }
+    }
+
     /// One unit of the last printed place, in the unit of `value`.
     pub fn last_place(&self) -> f64 {
         let shift = if self.unit == "kJ/mol" { 3 } else { 0 };
@@ -202,6 +220,8 @@ pub enum TableFault {
     Unreadable { path: String, why: String },
     /// A figure is no decimal number, or has an uncertainty whose meaning its dataset does not declare.
     Figure { path: String, record: String, column: &'static str },
+    /// A record's id or formula names no species.
+    Name { record: String, why: String },
 }
 
 impl fmt::Display for TableFault {
@@ -211,6 +231,7 @@ impl fmt::Display for TableFault {
             TableFault::Figure { path, record, column } => {
                 write!(f, "cannot read the figure {column} of {record} in the data table {path}")
             }
+            TableFault::Name { record, why } => write!(f, "the record {record} names no species: {why}"),
         }
     }
 }
@@ -220,6 +241,7 @@ impl Explain for TableFault {
         match self {
             TableFault::Unreadable { .. } => "data-table-unreadable",
             TableFault::Figure { .. } => "data-figure-unreadable",
+            TableFault::Name { .. } => "data-record-nameless",
         }
     }
 
@@ -229,6 +251,7 @@ impl Explain for TableFault {
             TableFault::Figure { .. } => {
                 "write figures as decimal text, and declare a divisor where uncertainties are printed".to_owned()
             }
+            TableFault::Name { .. } => "give the record an id with phase, as CO2(g), and a formula".to_owned(),
         }
     }
 }

@@ -10,6 +10,7 @@ use serde::Deserialize;
 use crate::source::{Citation, Embedded};
 
 use super::dataset::{self, Column, Dataset, DatasetId, Datum, Figure, Heading, TableFault};
+use super::function::Function;
 
 /// How far a figure was compared with other sources.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash, Deserialize)]
@@ -56,6 +57,29 @@ pub struct Formation {
     /// What the source itself cites.
     pub original_references: Option<Arc<str>>,
     pub citation: Citation,
+}
+
+impl Formation {
+    /// The formation enthalpy that a function carries, for phases that its dataset's table of 298.15 K leaves out.
+    pub(super) fn of_function(function: &Function) -> Formation {
+        Formation {
+            dataset: function.dataset.clone(),
+            id: function.id.clone(),
+            formula: function.formula.clone(),
+            name: Some(function.name.clone()),
+            cas: function.cas.clone(),
+            dhf: Datum::formation_j_mol(function.dhf_298),
+            dhf_0: None,
+            s: None,
+            cp: None,
+            h298_minus_h0: function.h298_minus_h0.map(Datum::energy_j_mol),
+            p_standard_pa: function.p_standard_pa,
+            confirmation: Confirmation::SingleSource,
+            check: None,
+            original_references: Some(function.original_references.clone()),
+            citation: function.citation.clone(),
+        }
+    }
 }
 
 pub(super) const SCHEMA: &str = "hessbook-formation/1";
