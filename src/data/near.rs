@@ -14,6 +14,9 @@ pub fn nearest<'a>(text: &str, names: impl IntoIterator<Item = &'a str>, most: u
         .collect();
     near.sort();
     near.dedup();
+    if near.first().is_some_and(|&(distance, _)| distance == 0) {
+        near.retain(|&(distance, _)| distance == 0); // only the case was wrong
+    }
     near.into_iter().take(most).map(|(_, name)| name).collect()
 }
 
@@ -44,6 +47,7 @@ mod tests {
         let names = ["methanol(l)", "ethanol(l)", "methanol(g)", "benzene(l)"];
         assert_eq!(nearest("methnaol(l)", names, 3), ["methanol(l)", "ethanol(l)", "methanol(g)"]);
         assert_eq!(nearest("Benzen(l)", names, 3), ["benzene(l)"]);
+        assert_eq!(nearest("BENZENE(L)", names, 3), ["benzene(l)"]);
         assert!(nearest("kryptonite(cr)", names, 3).is_empty());
         assert_eq!(distance(&['a', 'b'], &['b', 'a']), 1);
         assert_eq!(distance(&[], &['b', 'a']), 2);
