@@ -10,13 +10,10 @@ use std::sync::{Arc, LazyLock};
 
 use serde::Deserialize;
 
-use crate::source::{Citation, Embedded};
+use crate::source::{Citation, Embedded, embedded};
 
 /// The file that the weights are read from.
-pub static ATOMIC_WEIGHTS: Embedded = Embedded {
-    path: "stdlib/data/atomic_weights.json",
-    bytes: include_bytes!("../../stdlib/data/atomic_weights.json"),
-};
+pub static ATOMIC_WEIGHTS: Embedded = embedded("stdlib/data/atomic_weights.json");
 
 const SYMBOLS: [&str; 118] = [
     "H", "He", "Li", "Be", "B", "C", "N", "O", "F", "Ne", "Na", "Mg", "Al", "Si", "P", "S", "Cl", "Ar", "K", "Ca",
