@@ -20,8 +20,9 @@ use crate::units::{Dimension, Entity, Kind};
 /// Which input a leaf is. Equal keys are one input, wherever they were read.
 #[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord)]
 pub enum LeafKey {
-    /// A figure of a published table: dataset, record, field.
-    Datum { dataset: Arc<str>, record: Arc<str>, field: &'static str },
+    /// A figure of a published table. A function's value belongs to its temperature: `t_bits` holds the bits of T in
+    /// kelvin, 0 for what does not depend on it.
+    Datum { dataset: Arc<str>, record: Arc<str>, field: &'static str, t_bits: u64 },
     /// A constant of the set of that year.
     Constant { year: u16, name: &'static str },
     /// Typed in a notebook: where, and which evaluation of that cell.
@@ -36,9 +37,27 @@ pub struct Input {
     pub key: LeafKey,
     /// Standard uncertainty in SI units; `None` where none is stated, which is not zero.
     pub u: Option<f64>,
-    /// What the figure is, for budgets: `ΔfH° of CO2(g)`.
-    pub name: Arc<str>,
+    /// SI value of one unit in the last digit printed or typed; `None` for what is exact or computed.
+    pub digit: Option<f64>,
+    /// The text as typed, or the analyst's name for it. A datum and a constant are named by their key.
+    pub label: Option<Arc<str>>,
     pub citation: Option<Citation>,
+}
+
+impl Input {
+    /// What the figure is, for budgets: `formation enthalpy of CO2(g)`.
+    pub fn name(&self) -> String {
+        match (&self.label, &self.key) {
+            (Some(label), _) => label.to_string(),
+            (None, LeafKey::Datum { record, field, t_bits, .. }) => match t_bits {
+                0 => format!("{field} of {record}"),
+                bits => format!("{field} of {record} at {} K", f64::from_bits(*bits)),
+            },
+            (None, LeafKey::Constant { year, name }) => format!("{name} (CODATA {year})"),
+            (None, LeafKey::Own(name)) => name.to_string(),
+            (None, LeafKey::Typed { .. }) => "a typed value".to_owned(),
+        }
+    }
 }
 
 /// A step of arithmetic.
@@ -245,7 +264,8 @@ mod tests {
     use super::*;
 
     fn leaf(si: f64) -> Rc<Node> {
-        let input = Input { key: LeafKey::Own(format!("{si}").into()), u: Some(0.1), name: "x".into(), citation: None };
+        let input =
+            Input { key: LeafKey::Own(format!("{si}").into()), u: Some(0.1), digit: None, label: None, citation: None };
         Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
     }
 

@@ -118,7 +118,7 @@ mod tests {
     use crate::units::{Dimension, Kind};
 
     fn leaf(name: &str, si: f64, u: Option<f64>) -> Rc<Node> {
-        let input = Input { key: LeafKey::Own(name.into()), u, name: name.into(), citation: None };
+        let input = Input { key: LeafKey::Own(name.into()), u, digit: None, label: None, citation: None };
         Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
     }
 
