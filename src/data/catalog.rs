@@ -12,6 +12,7 @@ use crate::fault::Fault;
 use crate::source::{Embedded, STDLIB};
 use crate::units::dimension::Entity;
 
+use super::critical::CriticalTemperature;
 use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::Formation;
 use super::function::Function;
@@ -43,6 +44,7 @@ pub struct Catalog {
 struct Gathered {
     function: Option<Arc<Function>>,
     formations: Vec<Arc<Formation>>,
+    critical: Option<Arc<CriticalTemperature>>,
 }
 
 impl Catalog {
@@ -53,7 +55,7 @@ impl Catalog {
 
     /// The tables among some files; a dataset whose file is missing is simply not there.
     pub fn from_files(files: &[Embedded]) -> Result<Catalog, TableFault> {
-        let Tables { datasets, functions, formations, transitions, names } = Tables::read(files)?;
+        let Tables { datasets, functions, formations, transitions, critical, names } = Tables::read(files)?;
         let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
         let mut gathered: BTreeMap<Arc<str>, Gathered> = BTreeMap::new();
         for function in functions {
@@ -63,6 +65,12 @@ impl Catalog {
         for formation in formations {
             let entry = gathered.entry(id(&formation.id)).or_default();
             entry.formations.push(Arc::new(formation));
+        }
+        for critical in critical {
+            // A figure for a substance without other records has nothing to stand beside.
+            if let Some(entry) = gathered.get_mut(&id(&critical.id)) {
+                entry.critical = Some(Arc::new(critical));
+            }
         }
         let mut substances = BTreeMap::new();
         for (id, mut found) in gathered {
@@ -211,5 +219,6 @@ fn substance(id: &Arc<str>, found: Gathered, names: &Names) -> Result<Substance,
         cas: cas.or_else(|| formations().find_map(|f| f.cas.clone())),
         formations: found.formations,
         function: found.function,
+        critical_temperature: found.critical,
     })
 }
