@@ -3,8 +3,10 @@
 pub mod chem;
 pub mod data;
 pub mod fault;
-pub mod kernel;
+pub mod model;
 pub mod num;
+pub mod quantity;
+pub mod record;
 pub mod render;
 pub mod session;
 pub mod source;

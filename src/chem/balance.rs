@@ -85,7 +85,7 @@ impl fmt::Display for Obstacle {
 /// Why there are no coefficients, or not one set of them.
 #[derive(Clone, Debug, PartialEq, Eq, thiserror::Error)]
 pub enum BalanceError {
-    #[error("{} on the {side} side only: {}", if .elements.len() == 1 { "an element is" } else { "elements are" }, listed(.elements))]
+    #[error("only the {side} side has {}", listed(.elements))]
     OneSided { elements: Vec<Element>, side: &'static str },
     #[error("no coefficients balance {}", .obstacles.iter().map(Obstacle::to_string).collect::<Vec<_>>().join(", or "))]
     Obstructed { obstacles: Vec<Obstacle> },
@@ -123,12 +123,15 @@ impl Explain for BalanceError {
 
     fn hint(&self) -> String {
         match self {
-            BalanceError::OneSided { side, .. } => {
+            BalanceError::OneSided { elements, side } => {
                 let other = if *side == "left" { "right" } else { "left" };
-                format!("add the species that holds it on the {other}, or check the formulas")
+                format!("add what holds {} to the {other} side, or check the formulas", listed(elements))
             }
             BalanceError::Obstructed { obstacles } if obstacles.iter().all(|o| o.what == Conserved::Charge) => {
                 "add what carries the charge: e-, H+ in acid or OH- in base, with H2O where oxygen needs it".to_owned()
+            }
+            BalanceError::Contradiction { conserved } if conserved.contains(&Conserved::Charge) => {
+                "check the formulas, and for ions in water whether H2O with H+ or OH- is missing".to_owned()
             }
             BalanceError::Obstructed { .. } | BalanceError::Contradiction { .. } => {
                 "check the formulas, and whether a reactant or product is missing".to_owned()
@@ -312,7 +315,8 @@ fn reduce(rows: &mut [Vec<i128>], columns: usize) -> Option<Vec<usize>> {
     Some(pivots)
 }
 
-/// The solution with the free column set and the other free columns zero.
+/// The solution with the free column set and the other free columns zero; the least whole numbers, so without a common
+/// divisor.
 fn null_vector(rows: &[Vec<i128>], pivots: &[usize], free: usize, columns: usize) -> Option<Vec<i128>> {
     // Row r says: pivot × x[pivot] + row[free] × x[free] = 0. x[free] is the least number that makes all x whole.
     let mut scale: i128 = 1;
@@ -325,7 +329,6 @@ fn null_vector(rows: &[Vec<i128>], pivots: &[usize], free: usize, columns: usize
     for (row, &pivot) in rows.iter().zip(pivots) {
         vector[pivot] = row[free].checked_mul(scale)?.checked_div(row[pivot])?.checked_neg()?;
     }
-    divide_by_common(&mut vector);
     let signs: i128 = vector.iter().map(|x| x.signum()).sum();
     let first = vector.iter().map(|x| x.signum()).find(|&sign| sign != 0).unwrap_or(1);
     let sign = if signs == 0 { first } else { signs.signum() };
@@ -428,9 +431,9 @@ mod tests {
     fn an_element_on_one_side_is_named() {
         let fault = refused("CH4 + O2 -> CO2 + H2O + NaCl");
         assert_eq!(fault.code(), "element-on-one-side");
-        assert_eq!(fault.message(), "elements are on the right side only: Na, Cl");
-        assert_eq!(fault.hint(), "add the species that holds it on the left, or check the formulas");
-        assert_eq!(refused("H2 -> D2").message(), "an element is on the left side only: H");
+        assert_eq!(fault.message(), "only the right side has Na, Cl");
+        assert_eq!(fault.hint(), "add what holds Na, Cl to the left side, or check the formulas");
+        assert_eq!(refused("H2 -> D2").message(), "only the left side has H");
     }
 
     #[test]
@@ -454,7 +457,7 @@ mod tests {
         assert_eq!(idle.message(), "the only coefficient that balances is 0 for NaCl, Na2Cl");
         let wrong = refused("CO + H2 -> CO2 + H2O");
         assert_eq!(wrong.message(), "the equation balances only with H2, H2O on the other side");
-        assert_eq!(wrong.hint(), "write CO + H2O -> CO2 + H2");
+        assert_eq!(wrong.hint(), "write CO + H2O -> H2 + CO2");
     }
 
     #[test]
