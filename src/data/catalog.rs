@@ -17,7 +17,6 @@ use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::Formation;
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
-use super::names::Names;
 use super::substance::Substance;
 use super::tables::Tables;
 use super::transition::Transition;
@@ -72,6 +71,8 @@ impl Catalog {
                 entry.critical = Some(Arc::new(critical));
             }
         }
+        let listed: BTreeMap<&str, &Arc<str>> =
+            names.entities.iter().filter_map(|record| Some((&*record.entity, record.name.as_ref()?))).collect();
         let mut substances = BTreeMap::new();
         for (id, mut found) in gathered {
             if let Some(function) = &found.function
@@ -82,7 +83,7 @@ impl Catalog {
             }
             let rank = |dataset: &DatasetId| datasets.iter().position(|known| known.id == *dataset);
             found.formations.sort_by_key(|formation| rank(&formation.dataset));
-            substances.insert(id.clone(), Arc::new(substance(&id, found, &names)?));
+            substances.insert(id.clone(), Arc::new(substance(&id, found, &listed)?));
         }
         let mut by_substance: BTreeMap<Arc<str>, Vec<Arc<Transition>>> = BTreeMap::new();
         for mut transition in transitions {
@@ -195,7 +196,7 @@ impl Catalog {
 }
 
 /// Makes a substance of its records.
-fn substance(id: &Arc<str>, found: Gathered, names: &Names) -> Result<Substance, TableFault> {
+fn substance(id: &Arc<str>, found: Gathered, listed: &BTreeMap<&str, &Arc<str>>) -> Result<Substance, TableFault> {
     let function = found.function.as_ref();
     let formations = || found.formations.iter();
     let unreadable = |why: String| TableFault::Name { record: id.to_string(), why };
@@ -203,7 +204,6 @@ fn substance(id: &Arc<str>, found: Gathered, names: &Names) -> Result<Substance,
     let text = function.map(|f| &f.formula).or_else(|| formations().map(|f| &f.formula).next());
     let formula =
         Formula::parse_record(text.map_or("", |text| text)).map_err(|error| unreadable(format!("{error}")))?;
-    let listed = names.entities.iter().find(|record| *record.entity == *name.base);
     let words = function.map(|f| f.name.clone());
     let words = words.or_else(|| formations().find_map(|f| f.name.clone()));
     let cas = function.and_then(|f| f.cas.clone());
@@ -215,7 +215,7 @@ fn substance(id: &Arc<str>, found: Gathered, names: &Names) -> Result<Substance,
             charge: formula.charge(),
             phase: name.phase.ok_or_else(|| unreadable("it has no phase".to_owned()))?,
         },
-        name: words.or_else(|| listed.and_then(|record| record.name.clone())),
+        name: words.or_else(|| listed.get(&*name.base).map(|&name| name.clone())),
         cas: cas.or_else(|| formations().find_map(|f| f.cas.clone())),
         formations: found.formations,
         function: found.function,

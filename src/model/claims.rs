@@ -8,6 +8,7 @@ use std::rc::Rc;
 use std::sync::Arc;
 
 use crate::chem::species::State as Aggregate;
+use crate::data::critical::CriticalTemperature;
 use crate::data::substance::Substance;
 use crate::model::card::{Call, Cx};
 use crate::model::function;
@@ -95,6 +96,7 @@ pub fn formation_dataset(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding>
 pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
     let Some(asked) = asked(cx, call) else { return Vec::new() };
     let (mut stable, mut supercritical, mut alone, mut findings) = (Vec::new(), Vec::new(), Vec::new(), Vec::new());
+    let mut sources = Vec::new();
     let at_t = |subject: String, tested| Finding::known("stable-phase", subject, value.node(), Some(asked.t_k), tested);
     for term in asked.reaction.terms() {
         let species = &term.substance.species;
@@ -103,7 +105,10 @@ pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
         }
         match compared(cx, &term.substance, asked.t_k) {
             Compared::NothingToCompare => alone.push(&*species.id),
-            Compared::Supercritical(t_k) => supercritical.push(format!("{} ({t_k} K)", species.id)),
+            Compared::Supercritical(critical) => {
+                supercritical.push(format!("{} ({} K)", species.id, critical.t_k));
+                sources.push(critical.citation.clone());
+            }
             Compared::Stable => stable.push(&*species.id),
             Compared::Unstable(other) => {
                 let tested = unstable(cx, &asked, term.nu, &term.substance, &other, value);
@@ -127,7 +132,8 @@ pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
         if !supercritical.is_empty() {
             how.push(format!("{}: above the critical temperature, so no liquid", supercritical.join(", ")));
         }
-        findings.push(at_t(tested.join(", "), Tested::True { how: how.join("; ") }));
+        let finding = at_t(tested.join(", "), Tested::True { how: how.join("; ") });
+        findings.push(Finding { sources, ..finding });
     }
     if !alone.is_empty() {
         let names = alone.join(", ");
@@ -139,8 +145,8 @@ pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
 
 enum Compared {
     NothingToCompare,
-    /// A gas above this critical temperature, in kelvin.
-    Supercritical(f64),
+    /// A gas above this critical temperature.
+    Supercritical(Arc<CriticalTemperature>),
     Stable,
     Unstable(Arc<Substance>),
 }
@@ -163,7 +169,9 @@ fn compared(cx: &Cx, substance: &Substance, t_k: f64) -> Compared {
         }
     }
     match (&compared, &substance.critical_temperature) {
-        (Compared::NothingToCompare, Some(critical)) if t_k > critical.t_k => Compared::Supercritical(critical.t_k),
+        (Compared::NothingToCompare, Some(critical)) if t_k > critical.t_k => {
+            Compared::Supercritical(Arc::clone(critical))
+        }
         _ => compared,
     }
 }

@@ -94,7 +94,11 @@ pub fn review(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing]) -> R
         sources.number(&Citation::new(step.source(), ""));
     }
     let silent = silent_inputs(value);
-    let judged = judged_rows(cx, label, value, dealings, &history, &silent);
+    let findings = findings(cx, value, &history, &silent);
+    for citation in findings.iter().flat_map(|finding| &finding.sources) {
+        sources.number(citation);
+    }
+    let judged = judged_rows(cx, label, value, dealings, &findings);
     Review {
         conditions: conditions::line(value),
         check_line,
@@ -111,28 +115,21 @@ fn in_unit(value: &Quantity, si: f64) -> f64 {
     si / value.unit().factor
 }
 
-fn judged_rows(
-    cx: &Cx,
-    label: &str,
-    value: &Quantity,
-    dealings: &[Dealing],
-    history: &[Rc<Node>],
-    silent: &[(String, Vec<String>)],
-) -> Vec<Row> {
+fn judged_rows(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing], findings: &[Finding]) -> Vec<Row> {
     let default = tolerance::default(value, cx.constants());
     let mut rows = Vec::new();
     let mut held = 0.0;
-    for finding in findings(cx, value, history, silent) {
-        let own: Vec<&Dealing> = dealings.iter().filter(|d| d.is_about(label, &finding)).collect();
+    for finding in findings {
+        let own: Vec<&Dealing> = dealings.iter().filter(|d| d.is_about(label, finding)).collect();
         let limit = own.iter().rev().find_map(|dealing| match &dealing.decided {
             Decided::Tolerated { limit_si, .. } => Some(*limit_si),
             Decided::Justified { .. } => None,
         });
-        let judged = judge(&finding, value.node(), limit.unwrap_or(default));
+        let judged = judge(finding, value.node(), limit.unwrap_or(default));
         if judged.status == Status::Holds {
             held += judged.price.unwrap_or(0.0);
         }
-        rows.push(row(value, &finding, judged.status, judged.price, judged.first_order, &own));
+        rows.push(row(value, finding, judged.status, judged.price, judged.first_order, &own));
     }
     let limit = tolerance::together(value, default);
     if held.abs() > limit {
