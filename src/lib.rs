@@ -8,6 +8,7 @@ pub mod num;
 pub mod quantity;
 pub mod record;
 pub mod render;
+pub mod script;
 pub mod session;
 pub mod source;
 pub mod units;
