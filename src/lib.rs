@@ -1,9 +1,11 @@
 //! hessbook: a notebook engine for thermochemistry.
 
 pub mod chem;
+pub mod cli;
 pub mod data;
 pub mod fault;
 pub mod model;
+pub mod notebook;
 pub mod num;
 pub mod quantity;
 pub mod record;
