@@ -1,6 +1,7 @@
 //! hessbook: a notebook engine for thermochemistry.
 
 pub mod chem;
+pub mod cli;
 pub mod fault;
 pub mod kernel;
 pub mod num;
