@@ -14,7 +14,6 @@ use std::path::{Path, PathBuf};
 
 use serde_json::{Map, Value};
 use thiserror::Error;
-use zeromq::Listener;
 
 use crate::fault::Explain;
 
@@ -93,6 +92,13 @@ impl Explain for ConnectionError {
     }
 }
 
+/// An address that is taken.
+#[derive(Debug)]
+pub enum Listener {
+    Tcp(TcpListener),
+    Ipc(UnixListener),
+}
+
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 enum Transport {
     Tcp,
@@ -151,21 +157,20 @@ impl Connection {
         &self.key
     }
 
-    /// Takes the address of one channel. The listener is bound by the standard library and not by the message
-    /// library, so that a taken port is found before any thread is started.
+    /// Takes the address of one channel.
     pub fn bind(&self, channel: Channel) -> Result<Listener, ConnectionError> {
         let taken = |address: String| move |reason| ConnectionError::AddressTaken { channel, address, reason };
         let port = self.ports[channel as usize];
         match self.transport {
             Transport::Tcp => {
                 let listener = TcpListener::bind((self.ip.as_str(), port));
-                Ok(listener.map_err(taken(format!("{}:{port}", self.ip)))?.into())
+                Ok(Listener::Tcp(listener.map_err(taken(format!("{}:{port}", self.ip)))?))
             }
             Transport::Ipc => {
                 let path = self.socket_path(channel);
                 let address = path.display().to_string();
                 remove_if_deserted(&path).map_err(taken(address.clone()))?;
-                Ok(UnixListener::bind(&path).map_err(taken(address))?.into())
+                Ok(Listener::Ipc(UnixListener::bind(&path).map_err(taken(address))?))
             }
         }
     }

@@ -6,6 +6,7 @@
 
 pub mod arrivals;
 pub mod connection;
+mod gate;
 mod handle;
 mod history;
 mod host;

@@ -18,13 +18,12 @@ use tokio::signal::unix::{SignalKind, signal};
 use tokio::sync::{Notify, mpsc};
 use tokio::task;
 use tokio::time::{sleep, timeout};
-use zeromq::{
-    Listener, PubSocket, RouterRecvHalf, RouterSendHalf, RouterSocket, Socket, SocketRecv, SocketSend, ZmqMessage,
-};
+use zeromq::{PubSocket, RouterRecvHalf, RouterSendHalf, RouterSocket, Socket, SocketRecv, SocketSend, ZmqMessage};
 
 use crate::fault::Explain;
 use crate::kernel::arrivals::Arrivals;
-use crate::kernel::connection::{Channel, Connection, ConnectionError};
+use crate::kernel::connection::{Channel, Connection, ConnectionError, Listener};
+use crate::kernel::gate::Gate;
 use crate::kernel::host::Streams;
 use crate::kernel::message::{Author, Handler, Request, handler_of, no_parent};
 use crate::kernel::outbox::{Outbox, Outgoing, QUEUE};
@@ -37,9 +36,8 @@ const PATIENCE_WITH_A_CLIENT: Duration = Duration::from_millis(200);
 /// How long a running cell may take to come to its end when the kernel ends. Managers use force after 2.5 s.
 const LAST_CELL: Duration = Duration::from_millis(1500);
 
-/// The message library tells nobody when its queues are written out, and has no lingering close: at the end they are
-/// given this time.
-const LAST_MESSAGES: Duration = Duration::from_millis(100);
+/// How long clients may take to fetch the last messages.
+const LAST_MESSAGES: Duration = Duration::from_millis(500);
 
 /// How many refused messages are reported on stderr.
 const REPORTED_REFUSALS: u32 = 10;
@@ -190,12 +188,13 @@ async fn run(connection: &Connection, listeners: [Listener; 5]) -> Result<(), Se
     let mut interrupts = signal(SignalKind::interrupt()).map_err(ServerError::Start)?;
     let mut terminations = signal(SignalKind::terminate()).map_err(ServerError::Start)?;
 
+    let gate = Gate::new().map_err(ServerError::Start)?;
     let [shell, control, stdin, iopub, heartbeat] = listeners;
-    let (shell_replies, shell_requests) = adopt::<RouterSocket>(Channel::Shell, shell).await?.split();
-    let (control_replies, control_requests) = adopt::<RouterSocket>(Channel::Control, control).await?.split();
-    let stdin = adopt::<RouterSocket>(Channel::Stdin, stdin).await?;
-    let heartbeat = adopt::<RouterSocket>(Channel::Heartbeat, heartbeat).await?;
-    let iopub = adopt::<PubSocket>(Channel::Iopub, iopub).await?;
+    let (shell_replies, shell_requests) = adopt::<RouterSocket>(&gate, Channel::Shell, shell).await?.split();
+    let (control_replies, control_requests) = adopt::<RouterSocket>(&gate, Channel::Control, control).await?.split();
+    let stdin = adopt::<RouterSocket>(&gate, Channel::Stdin, stdin).await?;
+    let heartbeat = adopt::<RouterSocket>(&gate, Channel::Heartbeat, heartbeat).await?;
+    let iopub = adopt::<PubSocket>(&gate, Channel::Iopub, iopub).await?;
 
     let author = Arc::new(Author::new(connection.key()));
     let process = Process::default();
@@ -239,14 +238,15 @@ async fn run(connection: &Connection, listeners: [Listener; 5]) -> Result<(), Se
     // The worker ends when it has answered what it was given, and the sending task when it has sent that. A cell that
     // does not end in time is left behind. The sockets come back from the task, since dropping them loses messages.
     let sockets = timeout(LAST_CELL, sending).await;
-    sleep(LAST_MESSAGES).await;
+    gate.empty(LAST_MESSAGES).await;
     drop(sockets);
     Ok(())
 }
 
-async fn adopt<S: Socket>(channel: Channel, listener: Listener) -> Result<S, ServerError> {
+async fn adopt<S: Socket>(gate: &Gate, channel: Channel, listener: Listener) -> Result<S, ServerError> {
     let mut socket = S::new();
-    let bound = socket.bind_listener(listener).await;
+    let guarded = gate.guard(channel, listener).map_err(ServerError::Start)?;
+    let bound = socket.bind_listener(guarded).await;
     bound.map_err(|reason| ServerError::Socket { channel, reason: reason.to_string() })?;
     Ok(socket)
 }
