@@ -17,7 +17,7 @@ use crate::session::outcome::Completeness;
 /// Version of the embedded language. The engine does not tell its own; a test compares this with the lock file.
 const LANGUAGE_VERSION: &str = "1.27.0";
 
-/// What a range or search of the history gives at most: clients ask for thousands and show dozens.
+/// How many entries of the history a client may ask for: some ask for thousands and show dozens.
 const MOST_ENTRIES: i64 = 10_000;
 
 pub fn kernel_info(_: &Request) -> Value {

@@ -16,7 +16,7 @@ use thiserror::Error;
 use tokio::runtime;
 use tokio::signal::unix::{SignalKind, signal};
 use tokio::sync::{Notify, mpsc};
-use tokio::task;
+use tokio::task::{self, JoinSet};
 use tokio::time::{sleep, timeout};
 use zeromq::{PubSocket, RouterRecvHalf, RouterSendHalf, RouterSocket, Socket, SocketRecv, SocketSend, ZmqMessage};
 
@@ -51,6 +51,8 @@ pub enum ServerError {
     Start(#[source] io::Error),
     #[error("cannot adopt the socket of {channel}: {reason}")]
     Socket { channel: Channel, reason: String },
+    #[error("{part} of the kernel broke off")]
+    Broken { part: &'static str },
 }
 
 impl Explain for ServerError {
@@ -59,6 +61,7 @@ impl Explain for ServerError {
             ServerError::Connection(error) => error.code(),
             ServerError::Start(_) => "kernel-start-failed",
             ServerError::Socket { .. } => "kernel-socket-failed",
+            ServerError::Broken { .. } => "kernel-broken",
         }
     }
 
@@ -68,6 +71,7 @@ impl Explain for ServerError {
             ServerError::Start(_) | ServerError::Socket { .. } => {
                 "look at the limits of the account (threads, open files, memory) and start again".to_owned()
             }
+            ServerError::Broken { .. } => "start the kernel again, and report the lines above".to_owned(),
         }
     }
 }
@@ -169,12 +173,9 @@ impl Office {
 
     /// Hands a request to the worker, unless the kernel is ending.
     fn pass_on(&self, request: Request) {
-        let mut work = self.work.lock().unwrap_or_else(PoisonError::into_inner);
-        let Some(worker) = work.as_ref() else { return };
-        if worker.send(request).is_err() {
-            // The worker's thread is gone, and with it the use of this process.
-            *work = None;
-            self.ended.notify_one();
+        if let Some(worker) = self.work.lock().unwrap_or_else(PoisonError::into_inner).as_ref() {
+            // An error means that the worker broke off, which the main task notices.
+            let _ = worker.send(request);
         }
     }
 
@@ -215,12 +216,13 @@ async fn run(connection: &Connection, listeners: [Listener; 5]) -> Result<(), Se
     });
 
     office.status(&no_parent(), "starting");
-    task::spawn(serve_shell(office.clone(), shell_requests, shell_replies.clone()));
-    task::spawn(serve_control(office.clone(), control_requests, control_replies));
-    task::spawn(drop_input(stdin));
-    task::spawn(beat(heartbeat));
+    let mut tasks = JoinSet::new();
+    tasks.spawn(serve_shell(office.clone(), shell_requests, shell_replies.clone()));
+    tasks.spawn(serve_control(office.clone(), control_requests, control_replies));
+    tasks.spawn(drop_input(stdin));
+    tasks.spawn(beat(heartbeat));
     task::spawn(async move { streams.keep_flushed(&author, weak_queue).await });
-    let sending = task::spawn(send_all(arrivals.clone(), iopub, shell_replies, outgoing, own_broadcasts));
+    let mut sending = task::spawn(send_all(arrivals.clone(), iopub, shell_replies, outgoing, own_broadcasts));
     task::spawn(async move {
         while interrupts.recv().await.is_some() {
             settle(&arrivals).await;
@@ -232,6 +234,9 @@ async fn run(connection: &Connection, listeners: [Listener; 5]) -> Result<(), Se
         () = office.ended.notified() => {}
         _ = terminations.recv() => {}
         () = parent::gone() => {}
+        // Neither ends by itself. A kernel that is half there is worse than none: clients start it again.
+        _ = &mut sending => return Err(ServerError::Broken { part: "the worker" }),
+        Some(_) = tasks.join_next() => return Err(ServerError::Broken { part: "a socket" }),
     }
     office.process.end();
     office.dismiss_worker();
