@@ -258,15 +258,14 @@ async fn adopt<S: Socket>(gate: &Gate, channel: Channel, listener: Listener) -> 
 
 /// Waits until the requests that lie in the sockets have been numbered.
 ///
-/// The sleep lets the runtime look at the sockets; after that, as long as rounds of the other tasks bring new
-/// requests, more are waited for. The number of rounds is bounded, since a client may send without end.
+/// A message passes several tasks before it is numbered, and each sleep lets the runtime look at its sockets as often
+/// as there is something to do. As long as a round brings new requests, another one follows; their number is bounded,
+/// since a client may send without end.
 async fn settle(arrivals: &Arrivals) {
     sleep(Duration::from_millis(1)).await;
-    for _ in 0..1000 {
+    for _ in 0..50 {
         let before = arrivals.count();
-        for _ in 0..4 {
-            task::yield_now().await;
-        }
+        sleep(Duration::from_millis(1)).await;
         if arrivals.count() == before {
             return;
         }
