@@ -6,6 +6,7 @@ pub mod fault;
 pub mod kernel;
 pub mod num;
 pub mod render;
+pub mod script;
 pub mod session;
 pub mod source;
 pub mod units;
