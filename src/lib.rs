@@ -4,6 +4,7 @@ pub mod chem;
 pub mod cli;
 pub mod data;
 pub mod fault;
+pub mod kernel;
 pub mod model;
 pub mod notebook;
 pub mod num;
