@@ -12,11 +12,11 @@ use crate::fault::Fault;
 use crate::source::{Embedded, STDLIB};
 use crate::units::dimension::Entity;
 
+use super::critical::CriticalTemperature;
 use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::Formation;
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
-use super::names::Names;
 use super::substance::Substance;
 use super::tables::Tables;
 use super::transition::Transition;
@@ -43,6 +43,7 @@ pub struct Catalog {
 struct Gathered {
     function: Option<Arc<Function>>,
     formations: Vec<Arc<Formation>>,
+    critical: Option<Arc<CriticalTemperature>>,
 }
 
 impl Catalog {
@@ -53,7 +54,7 @@ impl Catalog {
 
     /// The tables among some files; a dataset whose file is missing is simply not there.
     pub fn from_files(files: &[Embedded]) -> Result<Catalog, TableFault> {
-        let Tables { datasets, functions, formations, transitions, names } = Tables::read(files)?;
+        let Tables { datasets, functions, formations, transitions, critical, names } = Tables::read(files)?;
         let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
         let mut gathered: BTreeMap<Arc<str>, Gathered> = BTreeMap::new();
         for function in functions {
@@ -64,6 +65,14 @@ impl Catalog {
             let entry = gathered.entry(id(&formation.id)).or_default();
             entry.formations.push(Arc::new(formation));
         }
+        for critical in critical {
+            // A figure for a substance without other records has nothing to stand beside.
+            if let Some(entry) = gathered.get_mut(&id(&critical.id)) {
+                entry.critical = Some(Arc::new(critical));
+            }
+        }
+        let listed: BTreeMap<&str, &Arc<str>> =
+            names.entities.iter().filter_map(|record| Some((&*record.entity, record.name.as_ref()?))).collect();
         let mut substances = BTreeMap::new();
         for (id, mut found) in gathered {
             if let Some(function) = &found.function
@@ -74,7 +83,7 @@ impl Catalog {
             }
             let rank = |dataset: &DatasetId| datasets.iter().position(|known| known.id == *dataset);
             found.formations.sort_by_key(|formation| rank(&formation.dataset));
-            substances.insert(id.clone(), Arc::new(substance(&id, found, &names)?));
+            substances.insert(id.clone(), Arc::new(substance(&id, found, &listed)?));
         }
         let mut by_substance: BTreeMap<Arc<str>, Vec<Arc<Transition>>> = BTreeMap::new();
         for mut transition in transitions {
@@ -187,7 +196,7 @@ impl Catalog {
 }
 
 /// Makes a substance of its records.
-fn substance(id: &Arc<str>, found: Gathered, names: &Names) -> Result<Substance, TableFault> {
+fn substance(id: &Arc<str>, found: Gathered, listed: &BTreeMap<&str, &Arc<str>>) -> Result<Substance, TableFault> {
     let function = found.function.as_ref();
     let formations = || found.formations.iter();
     let unreadable = |why: String| TableFault::Name { record: id.to_string(), why };
@@ -195,7 +204,6 @@ fn substance(id: &Arc<str>, found: Gathered, names: &Names) -> Result<Substance,
     let text = function.map(|f| &f.formula).or_else(|| formations().map(|f| &f.formula).next());
     let formula =
         Formula::parse_record(text.map_or("", |text| text)).map_err(|error| unreadable(format!("{error}")))?;
-    let listed = names.entities.iter().find(|record| *record.entity == *name.base);
     let words = function.map(|f| f.name.clone());
     let words = words.or_else(|| formations().find_map(|f| f.name.clone()));
     let cas = function.and_then(|f| f.cas.clone());
@@ -207,9 +215,10 @@ fn substance(id: &Arc<str>, found: Gathered, names: &Names) -> Result<Substance,
             charge: formula.charge(),
             phase: name.phase.ok_or_else(|| unreadable("it has no phase".to_owned()))?,
         },
-        name: words.or_else(|| listed.and_then(|record| record.name.clone())),
+        name: words.or_else(|| listed.get(&*name.base).map(|&name| name.clone())),
         cas: cas.or_else(|| formations().find_map(|f| f.cas.clone())),
         formations: found.formations,
         function: found.function,
+        critical_temperature: found.critical,
     })
 }

@@ -166,7 +166,8 @@ impl Lookup {
             return;
         }
         self.names.insert(name.clone(), entity.clone());
-        if Formula::parse_record(name).is_err() {
+        // Formulas start with a capital letter or a bracket; only names that do need a closer look.
+        if name.starts_with(|first: char| first.is_ascii_lowercase()) || Formula::parse_record(name).is_err() {
             self.words.insert(name.to_lowercase(), entity.clone());
         }
     }

@@ -3,6 +3,7 @@
 //! Files of `stdlib/data/` say by their schema what they hold; each is parsed typed, at first use.
 
 pub mod catalog;
+pub mod critical;
 pub mod dataset;
 pub mod formation;
 pub mod function;

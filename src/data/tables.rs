@@ -5,12 +5,13 @@
 
 use crate::source::Embedded;
 
+use super::critical::CriticalTemperature;
 use super::dataset::{Dataset, TableFault};
 use super::formation::Formation;
 use super::function::Function;
 use super::names::Names;
 use super::transition::Transition;
-use super::{formation, function, names, transition};
+use super::{critical, formation, function, names, transition};
 
 #[derive(Debug, Default)]
 pub(super) struct Tables {
@@ -19,6 +20,7 @@ pub(super) struct Tables {
     pub functions: Vec<Function>,
     pub formations: Vec<Formation>,
     pub transitions: Vec<Transition>,
+    pub critical: Vec<CriticalTemperature>,
     pub names: Names,
 }
 
@@ -30,6 +32,7 @@ impl Tables {
                 Some(function::SCHEMA) => function::read(file, &mut tables.datasets, &mut tables.functions)?,
                 Some(formation::SCHEMA) => formation::read(file, &mut tables.datasets, &mut tables.formations)?,
                 Some(transition::SCHEMA) => transition::read(file, &mut tables.datasets, &mut tables.transitions)?,
+                Some(critical::SCHEMA) => critical::read(file, &mut tables.critical)?,
                 Some(names::SCHEMA) => names::read(file, &mut tables.names)?,
                 _ => {}
             }

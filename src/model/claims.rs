@@ -5,8 +5,10 @@
 //! record may run on far beyond where its phase is the stable one.
 
 use std::rc::Rc;
+use std::sync::Arc;
 
 use crate::chem::species::State as Aggregate;
+use crate::data::critical::CriticalTemperature;
 use crate::data::substance::Substance;
 use crate::model::card::{Call, Cx};
 use crate::model::function;
@@ -89,54 +91,67 @@ pub fn formation_dataset(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding>
     vec![Finding::known("formation-dataset", subject, value.node(), None, tested)]
 }
 
-/// `stable-phase`: each species against the other shipped phases of its composition, by Gibbs energy at T and 1 bar.
+/// `stable-phase`: each species against the other shipped phases of its composition, by Gibbs energy at T and 1 bar; a gas
+/// above its critical temperature has no liquid to be compared with.
 pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
     let Some(asked) = asked(cx, call) else { return Vec::new() };
-    let (mut stable, mut alone, mut findings) = (Vec::new(), Vec::new(), Vec::new());
+    let (mut stable, mut supercritical, mut alone, mut findings) = (Vec::new(), Vec::new(), Vec::new(), Vec::new());
+    let mut sources = Vec::new();
+    let at_t = |subject: String, tested| Finding::known("stable-phase", subject, value.node(), Some(asked.t_k), tested);
     for term in asked.reaction.terms() {
         let species = &term.substance.species;
         if species.phase.state == Aggregate::Aqueous {
             continue; // A solute has no phase of its own to compare.
         }
-        match lowest_other(cx, &term.substance, asked.t_k) {
+        match compared(cx, &term.substance, asked.t_k) {
             Compared::NothingToCompare => alone.push(&*species.id),
+            Compared::Supercritical(critical) => {
+                supercritical.push(format!("{} ({} K)", species.id, critical.t_k));
+                sources.push(critical.citation.clone());
+            }
             Compared::Stable => stable.push(&*species.id),
             Compared::Unstable(other) => {
-                findings.push(Finding::known(
-                    "stable-phase",
-                    &*species.id,
-                    value.node(),
-                    Some(asked.t_k),
-                    unstable(cx, &asked, term.nu, &term.substance, &other, value),
-                ));
+                let tested = unstable(cx, &asked, term.nu, &term.substance, &other, value);
+                findings.push(at_t(species.id.to_string(), tested));
             }
         }
     }
-    if !stable.is_empty() {
-        let how = format!("Gibbs energies of the shipped phases at {} K and 1 bar", asked.t_k);
-        findings.push(Finding::known(
-            "stable-phase",
-            stable.join(", "),
-            value.node(),
-            Some(asked.t_k),
-            Tested::True { how },
-        ));
+    let tested: Vec<&str> = (asked.reaction.terms().iter())
+        .map(|term| &*term.substance.species.id)
+        .filter(|id| stable.contains(id) || supercritical.iter().any(|gas| gas.starts_with(id)))
+        .collect();
+    if !tested.is_empty() {
+        let mut how = Vec::new();
+        if !stable.is_empty() {
+            how.push(format!(
+                "{}: lowest Gibbs energy of the shipped phases at {} K and 1 bar",
+                stable.join(", "),
+                asked.t_k
+            ));
+        }
+        if !supercritical.is_empty() {
+            how.push(format!("{}: above the critical temperature, so no liquid", supercritical.join(", ")));
+        }
+        let finding = at_t(tested.join(", "), Tested::True { how: how.join("; ") });
+        findings.push(Finding { sources, ..finding });
     }
     if !alone.is_empty() {
         let names = alone.join(", ");
-        let what = format!("no function of another phase of {names} is shipped that reaches {} K", asked.t_k);
-        findings.push(Finding::known("stable-phase", names, value.node(), Some(asked.t_k), Tested::Missing { what }));
+        let what = format!("no other phase of {names} with a function that reaches {} K is shipped", asked.t_k);
+        findings.push(at_t(names, Tested::Missing { what }));
     }
     findings
 }
 
 enum Compared {
     NothingToCompare,
+    /// A gas above this critical temperature.
+    Supercritical(Arc<CriticalTemperature>),
     Stable,
-    Unstable(std::sync::Arc<Substance>),
+    Unstable(Arc<Substance>),
 }
 
-fn lowest_other(cx: &Cx, substance: &Substance, t_k: f64) -> Compared {
+fn compared(cx: &Cx, substance: &Substance, t_k: f64) -> Compared {
     let Some(own) = substance.function.as_ref().filter(|function| function.covers(t_k)) else {
         return Compared::NothingToCompare;
     };
@@ -153,7 +168,12 @@ fn lowest_other(cx: &Cx, substance: &Substance, t_k: f64) -> Compared {
             compared = Compared::Stable;
         }
     }
-    compared
+    match (&compared, &substance.critical_temperature) {
+        (Compared::NothingToCompare, Some(critical)) if t_k > critical.t_k => {
+            Compared::Supercritical(Arc::clone(critical))
+        }
+        _ => compared,
+    }
 }
 
 /// The same property with the stable phase in place of the one written. Only the difference of the two phases is taken from

@@ -2,6 +2,7 @@
 //!
 //! [`CARDS`] is the one list of what the program can compute. Script binding, help, catalogue and checks read it.
 
+pub mod basis;
 pub mod card;
 pub mod claims;
 pub mod conditions;
@@ -26,6 +27,7 @@ pub const CARDS: &[&Card] = &[
     &property::ENTROPY,
     &property::HEAT_CAPACITY,
     &property::EQUILIBRIUM_CONSTANT,
+    &basis::PER,
     &quantities::MEAN,
     &quantities::TO,
     &quantities::VALUE,

@@ -187,5 +187,6 @@ fn own_assumption(_: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
         at: Rc::clone(value.node()),
         t_k: None,
         tested,
+        sources: Vec::new(),
     }]
 }

@@ -94,7 +94,11 @@ pub fn review(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing]) -> R
         sources.number(&Citation::new(step.source(), ""));
     }
     let silent = silent_inputs(value);
-    let judged = judged_rows(cx, label, value, dealings, &history, &silent);
+    let findings = findings(cx, value, &history, &silent);
+    for citation in findings.iter().flat_map(|finding| &finding.sources) {
+        sources.number(citation);
+    }
+    let judged = judged_rows(cx, label, value, dealings, &findings);
     Review {
         conditions: conditions::line(value),
         check_line,
@@ -111,28 +115,21 @@ fn in_unit(value: &Quantity, si: f64) -> f64 {
     si / value.unit().factor
 }
 
-fn judged_rows(
-    cx: &Cx,
-    label: &str,
-    value: &Quantity,
-    dealings: &[Dealing],
-    history: &[Rc<Node>],
-    silent: &[(String, Vec<String>)],
-) -> Vec<Row> {
+fn judged_rows(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing], findings: &[Finding]) -> Vec<Row> {
     let default = tolerance::default(value, cx.constants());
     let mut rows = Vec::new();
     let mut held = 0.0;
-    for finding in findings(cx, value, history, silent) {
-        let own: Vec<&Dealing> = dealings.iter().filter(|d| d.is_about(label, &finding)).collect();
+    for finding in findings {
+        let own: Vec<&Dealing> = dealings.iter().filter(|d| d.is_about(label, finding)).collect();
         let limit = own.iter().rev().find_map(|dealing| match &dealing.decided {
             Decided::Tolerated { limit_si, .. } => Some(*limit_si),
             Decided::Justified { .. } => None,
         });
-        let judged = judge(&finding, value.node(), limit.unwrap_or(default));
+        let judged = judge(finding, value.node(), limit.unwrap_or(default));
         if judged.status == Status::Holds {
             held += judged.price.unwrap_or(0.0);
         }
-        rows.push(row(value, &finding, judged.status, judged.price, judged.first_order, &own));
+        rows.push(row(value, finding, judged.status, judged.price, judged.first_order, &own));
     }
     let limit = tolerance::together(value, default);
     if held.abs() > limit {
@@ -159,7 +156,8 @@ fn row(
 ) -> Row {
     let price = price.map(|price| in_unit(value, price));
     let note = match &finding.tested {
-        Tested::True { how } | Tested::Better { how, .. } | Tested::Given { how, .. } => how.clone(),
+        Tested::True { how } | Tested::Given { how, .. } => how.clone(),
+        Tested::Better { how, .. } => format!("against {how}"),
         Tested::False { why, .. } => why.clone(),
         Tested::Missing { what } => what.clone(),
     };
@@ -192,7 +190,9 @@ fn row(
 pub fn signed(value: &Quantity, price: f64) -> String {
     let half_digit = in_unit(value, value.shown().half_digit_si);
     let of_value = if half_digit > 0.0 { round::decimals_of_digit(2.0 * half_digit) } else { 3 };
-    let decimals = if price == 0.0 { 0 } else { of_value.max(round::decimals_for(price.abs()).min(of_value + 2)) };
+    // Two digits of the price itself, or those of the value, but no more than six in all.
+    let own = round::decimals_for(price.abs());
+    let decimals = if price == 0.0 { 0 } else { of_value.max(own.min(of_value + 2)).min((own + 4).max(0)) };
     let text = round::fixed(price, decimals);
     if price > 0.0 && !text.starts_with('-') && text != "0" { format!("+{text}") } else { text }
 }

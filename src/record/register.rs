@@ -8,6 +8,7 @@ use std::rc::Rc;
 
 use crate::record::node::{Node, replayed};
 use crate::record::spread::derivative;
+use crate::source::Citation;
 
 /// Every assumption the program knows, with its claim in words. Ids are fixed: notebooks and seals hold them.
 pub const CLAIMS: &[(&str, &str)] = &[
@@ -53,6 +54,8 @@ pub struct Finding {
     /// Temperatures at which it was leaned on, lowest and highest.
     pub t_k: Option<(f64, f64)>,
     pub tested: Tested,
+    /// Sources of figures that only the test used.
+    pub sources: Vec<Citation>,
 }
 
 impl Finding {
@@ -66,7 +69,15 @@ impl Finding {
     ) -> Self {
         let claim = claim_of(id).unwrap_or(id);
         let t_k = t_k.map(|t| (t, t));
-        Finding { id: id.into(), claim: claim.into(), subject: subject.into(), at: Rc::clone(at), t_k, tested }
+        Finding {
+            id: id.into(),
+            claim: claim.into(),
+            subject: subject.into(),
+            at: Rc::clone(at),
+            t_k,
+            tested,
+            sources: Vec::new(),
+        }
     }
 }
 

@@ -4,6 +4,7 @@
 
 use std::sync::Arc;
 
+use crate::model::basis;
 use crate::model::conditions;
 use crate::model::review;
 use crate::num::math;
@@ -49,7 +50,11 @@ impl Headline {
             }
             _ => (shown.number, None),
         };
-        Headline { symbol: conditions::symbol(value), number, unit: shown.unit, caveat, basis: shown.basis, logarithm }
+        let basis = match (shown.basis, basis::direction(value)) {
+            (Some(basis), Some(direction)) => Some(format!("{basis} {direction}")),
+            (basis, _) => basis,
+        };
+        Headline { symbol: conditions::symbol(value), number, unit: shown.unit, caveat, basis, logarithm }
     }
 
     /// The unit for readers, empty for a pure number.
