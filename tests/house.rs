@@ -186,6 +186,8 @@ fn what_the_papers_name_exists() {
             found.extend(documents::missing_commands(&text).into_iter().map(|what| format!("{paper}: {what}")));
         }
     }
+    let checks = fs::read_to_string(".ci/run").unwrap_or_default();
+    found.extend(documents::unchecked_commands(&checks).into_iter().map(|what| format!(".ci/run: {what}")));
     none(found, "correct the paper, or make the file");
 }
 

@@ -34,6 +34,13 @@ pub fn missing_commands(text: &str) -> Vec<String> {
     missing.map(|command| format!("no line `{command}`, or not in this order")).collect()
 }
 
+/// Commands of the README that the script of checks takes no step for.
+pub fn unchecked_commands(script: &str) -> Vec<String> {
+    let steps: Vec<&str> = script.lines().filter(|line| line.starts_with("step ")).collect();
+    let unchecked = COMMANDS.iter().filter(|command| !steps.iter().any(|step| step.ends_with(&format!(" {command}"))));
+    unchecked.map(|command| format!("no step runs `{command}`")).collect()
+}
+
 /// What is wrong with a shell script.
 pub fn script(path: &str, text: &str, executable: bool) -> Vec<String> {
     let mut found = Vec::new();
@@ -62,6 +69,13 @@ fn a_command_that_is_missing_or_out_of_order_is_found() {
     assert_eq!(missing_commands(&format!("a\n    {first}\nb\n    {second}\n")), Vec::<String>::new());
     assert_eq!(missing_commands(&format!("{second}\n{first}\n")).len(), 1);
     assert_eq!(missing_commands(&format!("run `{first}` and `{second}`")).len(), 2);
+}
+
+#[test]
+fn a_promised_command_without_a_step_is_found() {
+    let [first, second] = COMMANDS;
+    assert_eq!(unchecked_commands(&format!("step \"a\" {second}\nstep \"b\" {first}\n")), Vec::<String>::new());
+    assert_eq!(unchecked_commands(&format!("# {second}\nstep \"b\" {first}\n")).len(), 1);
 }
 
 #[test]
