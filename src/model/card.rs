@@ -326,7 +326,7 @@ impl Explain for ArgumentError {
     fn code(&self) -> &'static str {
         match self {
             ArgumentError::Sort { .. } => "argument-sort",
-            ArgumentError::Count { .. } => "argument-count",
+            ArgumentError::Count { .. } => "formula-argument-count",
             ArgumentError::Option { .. } => "option-unknown",
             ArgumentError::Word { .. } => "word-unknown",
             ArgumentError::Difference { .. } => "difference-for-point",

@@ -50,7 +50,7 @@ impl Explain for TextError {
             TextError::Meaning { .. } => "plus-minus-unknown",
             TextError::Brackets { .. } => "brackets-unreadable",
             TextError::Twice { .. } => "uncertainty-twice",
-            TextError::Range { .. } => "number-out-of-range",
+            TextError::Range { .. } => "quantity-out-of-range",
             TextError::Negative { .. } => "uncertainty-negative",
             TextError::BelowZero { .. } => "below-absolute-zero",
             TextError::Unit(unit) => unit.code(),
@@ -368,7 +368,7 @@ mod tests {
         assert_eq!(code("kJ"), "number-missing");
         assert_eq!(code("1,5 J"), "comma-in-number");
         assert_eq!(code("-300 degC"), "below-absolute-zero");
-        assert_eq!(code("1e999 J"), "number-out-of-range");
+        assert_eq!(code("1e999 J"), "quantity-out-of-range");
         assert_eq!(code("1.0(x) J"), "brackets-unreadable");
         assert_eq!(code("5 cal"), "bare-calorie");
     }
