@@ -221,11 +221,11 @@ impl<'a> Cutter<'a> {
                 self.skip_while(digits);
             }
         }
-        if let Some(behind) = self.rest().strip_prefix(['e', 'E']) {
-            if behind.starts_with(|c: char| c.is_ascii_digit() || c == '+' || c == '-') {
-                self.skip(2);
-                self.skip_while(digits);
-            }
+        if let Some(behind) = self.rest().strip_prefix(['e', 'E'])
+            && behind.starts_with(|c: char| c.is_ascii_digit() || c == '+' || c == '-')
+        {
+            self.skip(2);
+            self.skip_while(digits);
         }
     }
 
