@@ -36,4 +36,47 @@ pub struct Embedded {
     /// Path below the project's root, for messages and seals.
     pub path: &'static str,
     pub bytes: &'static [u8],
+    /// SHA-256 of the bytes in lower-case hexadecimal, taken when the program was built.
+    pub sha256: &'static str,
+}
+
+// `STDLIB`: every file of stdlib/, by path; written by build.rs.
+include!(concat!(env!("OUT_DIR"), "/stdlib.rs"));
+
+/// The file of that path. In a constant, a path that is not in `stdlib/` is a build error.
+pub const fn embedded(path: &str) -> Embedded {
+    let mut at = 0;
+    while at < STDLIB.len() {
+        if equal(STDLIB[at].path.as_bytes(), path.as_bytes()) {
+            return STDLIB[at];
+        }
+        at += 1;
+    }
+    panic!("a path that the program asks for is not among the files of stdlib/")
+}
+
+/// Equality of bytes in a constant, where `==` on slices is not to be had.
+const fn equal(left: &[u8], right: &[u8]) -> bool {
+    let mut at = 0;
+    while at < left.len() && at < right.len() && left[at] == right[at] {
+        at += 1;
+    }
+    left.len() == right.len() && at == left.len()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    use sha2::{Digest, Sha256};
+
+    #[test]
+    fn digests_are_those_of_the_bytes_and_paths_are_sorted() {
+        assert!(STDLIB.is_sorted_by_key(|file| file.path));
+        for file in STDLIB {
+            let hex: String = Sha256::digest(file.bytes).iter().map(|byte| format!("{byte:02x}")).collect();
+            assert_eq!(hex, file.sha256, "{}", file.path);
+        }
+        assert_eq!(embedded("stdlib/data/codata-1989.json").path, "stdlib/data/codata-1989.json");
+    }
 }

@@ -295,6 +295,7 @@ fn a_kernel_that_is_shut_down_while_busy_sends_its_last_messages_and_ends_well()
     run(async {
         let (mut kernel, mut client) = Kernel::start().await;
         let running = client.begin("print(\"last words\"); loop { }").await;
+        client.until("the text", |message| message.content["text"] == "last words\n").await;
         let waiting = client.send(Channel::Shell, "execute_request", json!({"code": "1"})).await;
         let shutdown = client.send(Channel::Control, "shutdown_request", json!({"restart": false})).await;
         assert_eq!(client.finish(Channel::Control, &shutdown, true).await.status(), "ok");

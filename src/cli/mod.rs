@@ -5,6 +5,7 @@
 
 mod install;
 mod kernel;
+mod run;
 
 use std::io::{self, Write};
 use std::process::ExitCode;
@@ -25,6 +26,7 @@ struct Arguments {
 enum Command {
     Install(install::Install),
     Kernel(kernel::Kernel),
+    Run(run::Run),
 }
 
 /// Runs the program.
@@ -32,6 +34,7 @@ pub fn run() -> ExitCode {
     let done = match Arguments::parse().command {
         Command::Install(command) => command.run(),
         Command::Kernel(command) => command.run(),
+        Command::Run(command) => command.run(),
     };
     done.unwrap_or_else(|fault| {
         // There is nobody to tell when stderr is closed.

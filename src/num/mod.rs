@@ -1,3 +1,4 @@
-//! Plain f64 numerics, with no nouns of the field.
+//! Plain numerics, with no nouns of the field.
 
 pub mod math;
+pub mod rational;

@@ -1,11 +1,40 @@
 //! Values to what people see. No engine, no sockets.
+//!
+//! A [`Bundle`] holds one output in several forms. A report's forms are all made from one [`report::Report`], so that
+//! text, HTML, LaTeX and the machine record cannot disagree.
+
+pub mod headline;
+pub mod html;
+pub mod latex;
+pub mod register;
+pub mod report;
+pub mod text;
 
 use std::collections::BTreeMap;
+
+use crate::model::reaction::Reaction;
+use crate::quantity::Quantity;
+use crate::render::headline::Headline;
 
 /// One output in several forms: MIME type to its content (text types as strings, `+json` types as JSON values).
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Bundle {
     pub data: BTreeMap<String, serde_json::Value>,
+}
+
+/// A value in one line, in text, HTML and LaTeX.
+pub fn quantity(value: &Quantity) -> Bundle {
+    let headline = Headline::of(value);
+    Bundle::text(headline.line())
+        .with_text("text/html", html::headline(&headline))
+        .with_text("text/latex", latex::headline(&headline))
+}
+
+/// A reaction as written, in text, HTML and LaTeX.
+pub fn reaction(reaction: &Reaction) -> Bundle {
+    Bundle::text(reaction.text())
+        .with_text("text/html", html::equation(reaction))
+        .with_text("text/latex", latex::equation(reaction))
 }
 
 impl Bundle {
@@ -17,6 +46,11 @@ impl Bundle {
     pub fn with(mut self, mime: &str, content: serde_json::Value) -> Self {
         self.data.insert(mime.to_owned(), content);
         self
+    }
+
+    #[must_use]
+    pub fn with_text(self, mime: &str, content: String) -> Self {
+        self.with(mime, serde_json::Value::String(content))
     }
 
     pub fn plain(&self) -> &str {

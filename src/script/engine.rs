@@ -13,7 +13,7 @@ use crate::script::fault::translate_syntax;
 use crate::script::prepare::{Prepared, prepare};
 use crate::script::script_error::CALL_LEVELS;
 use crate::script::state::{Halt, Shared};
-use crate::script::{compare, fault, guards, numbers, show};
+use crate::script::{bind, compare, fault, guards, numbers, operators, show, verbs};
 
 /// Nesting of expressions; the engine's default refuses a sum of sixty terms inside a function.
 const EXPRESSION_DEPTH: usize = 512;
@@ -81,7 +81,11 @@ fn register_language(engine: &mut Engine, shared: &Shared) {
 
 /// What the language is for: types and functions of the trade, one line per file that has some. They are registered
 /// last, so that they may replace a form of the language where they know better.
-fn register_library(_engine: &mut Engine, _shared: &Shared) {}
+fn register_library(engine: &mut Engine, shared: &Shared) {
+    bind::register(engine, shared);
+    operators::register(engine);
+    verbs::register(engine, shared);
+}
 
 /// Reads a text. `source` names it in places; positions that the engine reports for it go through `Shared::place`.
 pub fn compile(engine: &Engine, shared: &Shared, source: &str, code: &str) -> Result<(AST, Prepared), Fault> {

@@ -5,11 +5,15 @@
 
 use std::any::TypeId;
 use std::ops::{Range, RangeInclusive};
+use std::rc::Rc;
 
 use rhai::{Array, Blob, Dynamic, Engine, FnPtr, ImmutableString, Map};
 
 use crate::fault::Fault;
-use crate::render::Bundle;
+use crate::model::reaction::Reaction;
+use crate::quantity::Quantity;
+use crate::render::{self, Bundle};
+use crate::script::verbs::Display;
 use crate::script::words;
 
 /// Columns up to which an array or map stays on one line.
@@ -19,6 +23,15 @@ const ENTRIES: usize = 100;
 
 /// A value of ours, as people see it; `None` for the engine's own kinds. Types of the library are added here.
 fn own(value: &Dynamic) -> Option<Bundle> {
+    if let Some(quantity) = value.read_lock::<Quantity>() {
+        return Some(render::quantity(&quantity));
+    }
+    if let Some(display) = value.read_lock::<Display>() {
+        return Some((*display.0).clone());
+    }
+    if let Some(reaction) = value.read_lock::<Rc<Reaction>>() {
+        return Some(render::reaction(&reaction));
+    }
     value.read_lock::<Fault>().map(|fault| Bundle::text(fault.to_string()))
 }
 

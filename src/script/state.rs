@@ -14,11 +14,15 @@ use std::sync::atomic::{AtomicBool, Ordering};
 use rhai::{NativeCallContext, Position};
 
 use crate::fault::{Explain, Fault, Place};
+use crate::model::card::References;
+use crate::model::review::Dealing;
+use crate::quantity::Quantity;
 use crate::render::Bundle;
 use crate::script::host::{Host, HostSlot};
 use crate::script::prepare::Shifts;
 use crate::script::words::Library;
 use crate::script::{engine, memory};
+use crate::units::constants;
 
 /// The part of a session that functions of the host change. Committed with a cell that succeeds, else put back.
 #[derive(Clone, Debug, Default)]
@@ -27,6 +31,30 @@ pub struct State {
     pub cell: Rc<str>,
     /// How many things this cell has numbered so far: with the cell's name, an identity that a re-run repeats.
     ordinal: u64,
+    /// Reported results, in the order of their first report.
+    pub reports: Vec<Reported>,
+    /// What was decided about assumptions, in order.
+    pub dealings: Vec<Dealing>,
+    /// Declared inputs, in order.
+    pub parameters: Vec<Parameter>,
+}
+
+/// A reported result.
+#[derive(Clone, Debug)]
+pub struct Reported {
+    pub label: String,
+    pub value: Quantity,
+    pub cell: Rc<str>,
+}
+
+/// A declared input with the value in force.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Parameter {
+    pub name: String,
+    pub written: String,
+    /// Whether it was set from outside.
+    pub set: bool,
+    pub cell: Rc<str>,
 }
 
 impl State {
@@ -40,6 +68,11 @@ impl State {
     pub fn next_ordinal(&mut self) -> u64 {
         self.ordinal += 1;
         self.ordinal
+    }
+
+    /// Numbers up to this one were given out elsewhere.
+    pub fn skip_ordinals_to(&mut self, last: u64) {
+        self.ordinal = self.ordinal.max(last);
     }
 }
 
@@ -85,6 +118,9 @@ pub struct Shared {
     state: Rc<RefCell<State>>,
     pub host: HostSlot,
     stop: Arc<AtomicBool>,
+    references: Rc<References>,
+    /// Values of parameters that were set from outside, by name.
+    settings: Rc<RefCell<BTreeMap<String, String>>>,
     shifts: Rc<RefCell<Shifts>>,
     /// Functions that cells have defined, with the numbers of arguments they take.
     defined: Rc<RefCell<BTreeMap<String, BTreeSet<usize>>>>,
@@ -103,6 +139,8 @@ impl Shared {
             state: Rc::default(),
             host: HostSlot::default(),
             stop,
+            references: Rc::new(References::new(constants::current())),
+            settings: Rc::default(),
             shifts: Rc::default(),
             defined: Rc::default(),
             library: Rc::default(),
@@ -110,6 +148,26 @@ impl Shared {
             ceiling: Rc::new(Cell::new(isize::MAX)),
             halt: Rc::default(),
         }
+    }
+
+    /// What formulas look up.
+    pub fn references(&self) -> &References {
+        &self.references
+    }
+
+    /// What a parameter was set to from outside.
+    pub fn setting(&self, name: &str) -> Option<String> {
+        self.settings.borrow().get(name).cloned()
+    }
+
+    /// Names of all parameters set from outside.
+    pub fn set_names(&self) -> Vec<String> {
+        self.settings.borrow().keys().cloned().collect()
+    }
+
+    /// Sets parameters from outside, in place of all that were set before.
+    pub fn set_parameters(&self, settings: BTreeMap<String, String>) {
+        self.settings.replace(settings);
     }
 
     pub fn state(&self) -> Ref<'_, State> {

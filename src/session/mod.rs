@@ -15,9 +15,10 @@ use rhai::{Dynamic, Engine, FnPtr, Module, Scope};
 
 use crate::fault::Fault;
 use crate::render::Bundle;
-use crate::script::state::Shared;
+use crate::render::report::Report;
+use crate::script::state::{Parameter, Shared};
 use crate::script::token::{Ending, tokens};
-use crate::script::{engine, words};
+use crate::script::{engine, verbs, words};
 use closures::SharedValues;
 use outcome::{Completeness, Host, Outcome};
 
@@ -81,6 +82,33 @@ impl Session {
         }
         let shown = self.run("expression", code, &mut Silent, cell::Keep::Nothing)?;
         Ok(shown.unwrap_or_else(|| Bundle::text("")))
+    }
+
+    /// Sets declared parameters from outside, before the first cell runs.
+    pub fn set_parameters(&mut self, settings: BTreeMap<String, String>) {
+        self.shared.set_parameters(settings);
+    }
+
+    /// The declared parameters with the values in force.
+    pub fn parameters(&self) -> Vec<Parameter> {
+        self.shared.state().parameters.clone()
+    }
+
+    /// A fault for a parameter that was set from outside and that no cell has declared.
+    pub fn unused_setting(&self) -> Option<Fault> {
+        let declared: Vec<String> = self.parameters().into_iter().map(|parameter| parameter.name).collect();
+        let unused = self.shared.set_names().into_iter().find(|name| !declared.contains(name))?;
+        let hint = if declared.is_empty() {
+            "declare it in a cell, as in `parameter(\"outlet\", \"450 degC\")`".to_owned()
+        } else {
+            format!("declared are {}", declared.join(", "))
+        };
+        Some(Fault::new("parameter-undeclared", format!("no cell declares a parameter `{unused}`"), hint))
+    }
+
+    /// Every reported result, its assumptions tested, with the decisions in force.
+    pub fn reports(&self) -> Vec<Report> {
+        verbs::reports(&self.shared)
     }
 
     /// Whether the text is a whole cell, for front ends that ask before running it.

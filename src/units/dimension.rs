@@ -76,6 +76,11 @@ pub enum Base {
     Candela,
 }
 
+impl Base {
+    pub const ALL: [Base; BASES] =
+        [Base::Metre, Base::Kilogram, Base::Second, Base::Ampere, Base::Kelvin, Base::Candela];
+}
+
 const BASES: usize = 6;
 const BASE_SYMBOLS: [&str; BASES] = ["m", "kg", "s", "A", "K", "cd"];
 
@@ -136,6 +141,11 @@ impl Dimension {
     /// The entities with their exponents in halves, sorted by kind and interning order.
     pub fn entities(&self) -> &[(Of, Entity, i8)] {
         &self.of
+    }
+
+    /// Exponent, in halves, of one base unit.
+    pub fn halves(&self, base: Base) -> i8 {
+        self.halves[base as usize]
     }
 
     /// Exponent, in halves, of one entity.

@@ -1,0 +1,224 @@
+//! All substances on record, found by name.
+//!
+//! [`Catalog`] is plain data, shared by all sessions and built once per process. It merges the records of the datasets
+//! by substance: two ids that name one substance are one entry, by the table of names.
+
+use std::collections::BTreeMap;
+use std::sync::{Arc, LazyLock};
+
+use crate::chem::formula::Formula;
+use crate::chem::species::{Species, SpeciesName, State};
+use crate::fault::Fault;
+use crate::source::{Embedded, STDLIB};
+use crate::units::dimension::Entity;
+
+use super::critical::CriticalTemperature;
+use super::dataset::{Dataset, DatasetId, TableFault};
+use super::formation::Formation;
+use super::function::Function;
+use super::lookup::{Lookup, NameFault};
+use super::substance::Substance;
+use super::tables::Tables;
+use super::transition::Transition;
+
+/// The temperature of the tables of formation properties, K.
+pub const T_REFERENCE_K: f64 = 298.15;
+
+static SHIPPED: LazyLock<Arc<Catalog>> = LazyLock::new(|| {
+    Arc::new(Catalog::from_files(STDLIB).expect("the shipped tables are read by the tests of this file"))
+});
+
+/// The records of a set of tables.
+#[derive(Debug)]
+pub struct Catalog {
+    datasets: Vec<Dataset>,
+    substances: BTreeMap<Arc<str>, Arc<Substance>>,
+    /// Substance id to its transitions, by temperature.
+    transitions: BTreeMap<Arc<str>, Vec<Arc<Transition>>>,
+    lookup: Lookup,
+}
+
+/// What is being gathered on one substance.
+#[derive(Default)]
+struct Gathered {
+    function: Option<Arc<Function>>,
+    formations: Vec<Arc<Formation>>,
+    critical: Option<Arc<CriticalTemperature>>,
+}
+
+impl Catalog {
+    /// The tables built into the program.
+    pub fn shipped() -> Arc<Catalog> {
+        SHIPPED.clone()
+    }
+
+    /// The tables among some files; a dataset whose file is missing is simply not there.
+    pub fn from_files(files: &[Embedded]) -> Result<Catalog, TableFault> {
+        let Tables { datasets, functions, formations, transitions, critical, names } = Tables::read(files)?;
+        let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
+        let mut gathered: BTreeMap<Arc<str>, Gathered> = BTreeMap::new();
+        for function in functions {
+            let entry = gathered.entry(id(&function.id)).or_default();
+            entry.function = Some(Arc::new(function));
+        }
+        for formation in formations {
+            let entry = gathered.entry(id(&formation.id)).or_default();
+            entry.formations.push(Arc::new(formation));
+        }
+        for critical in critical {
+            // A figure for a substance without other records has nothing to stand beside.
+            if let Some(entry) = gathered.get_mut(&id(&critical.id)) {
+                entry.critical = Some(Arc::new(critical));
+            }
+        }
+        let listed: BTreeMap<&str, &Arc<str>> =
+            names.entities.iter().filter_map(|record| Some((&*record.entity, record.name.as_ref()?))).collect();
+        let mut substances = BTreeMap::new();
+        for (id, mut found) in gathered {
+            if let Some(function) = &found.function
+                && function.covers(T_REFERENCE_K)
+                && !found.formations.iter().any(|formation| formation.dataset == function.dataset)
+            {
+                found.formations.push(Arc::new(Formation::of_function(function)));
+            }
+            let rank = |dataset: &DatasetId| datasets.iter().position(|known| known.id == *dataset);
+            found.formations.sort_by_key(|formation| rank(&formation.dataset));
+            substances.insert(id.clone(), Arc::new(substance(&id, found, &listed)?));
+        }
+        let mut by_substance: BTreeMap<Arc<str>, Vec<Arc<Transition>>> = BTreeMap::new();
+        for mut transition in transitions {
+            transition.from = id(&transition.from);
+            transition.to = id(&transition.to);
+            let transition = Arc::new(transition);
+            by_substance.entry(transition.from.clone()).or_default().push(transition.clone());
+            if transition.to != transition.from {
+                by_substance.entry(transition.to.clone()).or_default().push(transition);
+            }
+        }
+        for transitions in by_substance.values_mut() {
+            transitions.sort_by(|left, right| left.t_k.total_cmp(&right.t_k));
+        }
+        let lookup = Lookup::new(&names, substances.values().map(|substance: &Arc<Substance>| &**substance));
+        Ok(Catalog { datasets, substances, transitions: by_substance, lookup })
+    }
+
+    /// The one substance that a text such as `CO2(g)`, `water(l)` or `C(cr,graphite)` names.
+    pub fn find(&self, text: &str) -> Result<Arc<Substance>, NameFault> {
+        if let Some(substance) = self.substances.get(text) {
+            return Ok(substance.clone());
+        }
+        let id = self.lookup.find(text)?;
+        Ok(self.substances[id].clone())
+    }
+
+    /// The species that a text names, for an equation: of a substance on record, or from its formula alone.
+    ///
+    /// A formula whose atoms a substance on record has is refused unless it names that substance, since an isomer
+    /// may be meant.
+    pub fn species(&self, text: &str) -> Result<Species, Fault> {
+        match self.find(text) {
+            Ok(substance) => Ok(substance.species.clone()),
+            Err(unknown @ (NameFault::Unknown { .. } | NameFault::PhaseNotOnRecord { .. })) => {
+                Species::from_formula(text).map_err(|_| unknown.into())
+            }
+            Err(fault) => Err(fault.into()),
+        }
+    }
+
+    /// Other phases of a substance, among which it may not be the stable one. A solution is not a phase of its solute.
+    pub fn phases_of(&self, substance: &Substance) -> Vec<Arc<Substance>> {
+        let dissolved = |species: &Species| species.phase.state == State::Aqueous;
+        if dissolved(&substance.species) {
+            return Vec::new();
+        }
+        let others = self.substances.values().filter(|other| {
+            other.species.entity == substance.species.entity
+                && other.id() != substance.id()
+                && !dissolved(&other.species)
+        });
+        others.cloned().collect()
+    }
+
+    /// The transitions that a phase takes part in, by temperature; those within its function have it at both ends.
+    pub fn transitions_of(&self, substance: &Substance) -> &[Arc<Transition>] {
+        self.transitions.get(substance.id()).map_or(&[], Vec::as_slice)
+    }
+
+    /// The phase whose function covers 298.15 K and whose enthalpy scale the function of `substance` continues:
+    /// itself, or what transitions lead to. A formation enthalpy of that phase is the one to join to the function.
+    pub fn reference_phase(&self, substance: &Arc<Substance>) -> Option<Arc<Substance>> {
+        let mut seen: Vec<Arc<Substance>> = vec![substance.clone()];
+        let mut at = 0;
+        while let Some(phase) = seen.get(at).cloned() {
+            if phase.function.as_ref()?.covers(T_REFERENCE_K) {
+                return Some(phase);
+            }
+            for transition in self.transitions_of(&phase) {
+                for id in [&transition.from, &transition.to] {
+                    if !seen.iter().any(|known| known.id() == &**id) {
+                        seen.extend(self.substances.get(id).cloned());
+                    }
+                }
+            }
+            at += 1;
+        }
+        None
+    }
+
+    /// Substances whose id or name holds a text, upper and lower case alike: those that start with it first.
+    pub fn search(&self, text: &str) -> Vec<Arc<Substance>> {
+        let wanted = text.to_lowercase();
+        let mut found: Vec<(bool, &Arc<Substance>)> = Vec::new();
+        for substance in self.substances.values() {
+            let id = substance.id().to_lowercase();
+            let name = substance.name.as_deref().unwrap_or_default().to_lowercase();
+            if id.contains(&wanted) || name.contains(&wanted) {
+                found.push((!id.starts_with(&wanted) && !name.starts_with(&wanted), substance));
+            }
+        }
+        found.sort_by_key(|&(later, _)| later); // stable, so by id within each half
+        found.into_iter().map(|(_, substance)| substance.clone()).collect()
+    }
+
+    /// All substances, by id.
+    pub fn substances(&self) -> impl Iterator<Item = &Arc<Substance>> {
+        self.substances.values()
+    }
+
+    /// In order of precedence of their formation enthalpies.
+    pub fn datasets(&self) -> &[Dataset] {
+        &self.datasets
+    }
+
+    pub fn dataset(&self, id: &DatasetId) -> Option<&Dataset> {
+        self.datasets.iter().find(|dataset| dataset.id == *id)
+    }
+}
+
+/// Makes a substance of its records.
+fn substance(id: &Arc<str>, found: Gathered, listed: &BTreeMap<&str, &Arc<str>>) -> Result<Substance, TableFault> {
+    let function = found.function.as_ref();
+    let formations = || found.formations.iter();
+    let unreadable = |why: String| TableFault::Name { record: id.to_string(), why };
+    let name: SpeciesName = id.parse().map_err(|error| unreadable(format!("{error}")))?;
+    let text = function.map(|f| &f.formula).or_else(|| formations().map(|f| &f.formula).next());
+    let formula =
+        Formula::parse_record(text.map_or("", |text| text)).map_err(|error| unreadable(format!("{error}")))?;
+    let words = function.map(|f| f.name.clone());
+    let words = words.or_else(|| formations().find_map(|f| f.name.clone()));
+    let cas = function.and_then(|f| f.cas.clone());
+    Ok(Substance {
+        species: Species {
+            id: id.clone(),
+            entity: Entity::named(&name.base),
+            composition: formula.composition().clone(),
+            charge: formula.charge(),
+            phase: name.phase.ok_or_else(|| unreadable("it has no phase".to_owned()))?,
+        },
+        name: words.or_else(|| listed.get(&*name.base).map(|&name| name.clone())),
+        cas: cas.or_else(|| formations().find_map(|f| f.cas.clone())),
+        formations: found.formations,
+        function: found.function,
+        critical_temperature: found.critical,
+    })
+}

@@ -1,0 +1,15 @@
+//! Records of published tables and where they were printed; no formulas.
+//!
+//! Files of `stdlib/data/` say by their schema what they hold; each is parsed typed, at first use.
+
+pub mod catalog;
+pub mod critical;
+pub mod dataset;
+pub mod formation;
+pub mod function;
+pub mod lookup;
+mod names;
+pub mod near;
+pub mod substance;
+mod tables;
+pub mod transition;

@@ -1,0 +1,52 @@
+//! All shipped tables, read once.
+//!
+//! [`Tables`] sorts files by the schema that each names in its first line, so a new dataset is one new file and a
+//! dataset that is taken away is missed by nobody. Files of other schemas belong to other modules and are passed over.
+
+use crate::source::Embedded;
+
+use super::critical::CriticalTemperature;
+use super::dataset::{Dataset, TableFault};
+use super::formation::Formation;
+use super::function::Function;
+use super::names::Names;
+use super::transition::Transition;
+use super::{critical, formation, function, names, transition};
+
+#[derive(Debug, Default)]
+pub(super) struct Tables {
+    /// In order of precedence; those without formation enthalpies last.
+    pub datasets: Vec<Dataset>,
+    pub functions: Vec<Function>,
+    pub formations: Vec<Formation>,
+    pub transitions: Vec<Transition>,
+    pub critical: Vec<CriticalTemperature>,
+    pub names: Names,
+}
+
+impl Tables {
+    pub fn read(files: &[Embedded]) -> Result<Tables, TableFault> {
+        let mut tables = Tables::default();
+        for file in files {
+            match schema(file.bytes) {
+                Some(function::SCHEMA) => function::read(file, &mut tables.datasets, &mut tables.functions)?,
+                Some(formation::SCHEMA) => formation::read(file, &mut tables.datasets, &mut tables.formations)?,
+                Some(transition::SCHEMA) => transition::read(file, &mut tables.datasets, &mut tables.transitions)?,
+                Some(critical::SCHEMA) => critical::read(file, &mut tables.critical)?,
+                Some(names::SCHEMA) => names::read(file, &mut tables.names)?,
+                _ => {}
+            }
+        }
+        tables.datasets.sort_by_key(|dataset| dataset.rank.unwrap_or(u32::MAX));
+        Ok(tables)
+    }
+}
+
+/// The schema that a file names as its first member.
+fn schema(bytes: &[u8]) -> Option<&str> {
+    // The cut may fall into a character; what is looked for stands before it.
+    let head = bytes.get(..bytes.len().min(128))?.utf8_chunks().next()?.valid();
+    let rest = head.trim_start().strip_prefix('{')?.trim_start().strip_prefix("\"schema\"")?;
+    let rest = rest.trim_start().strip_prefix(':')?.trim_start().strip_prefix('"')?;
+    rest.split_once('"').map(|(schema, _)| schema)
+}

@@ -1,0 +1,503 @@
+//! A formula as the program knows it, and the shared way of calling one.
+//!
+//! A [`Card`] declares name, receiver, arguments, claims and the function. [`call`] checks the arguments against it,
+//! reads text where a quantity is wanted, fills in defaults and keeps the call as a step of the result. The surprise:
+//! the result's node holds the card and its arguments, so that claims can be tested when someone looks, not before.
+
+use std::any::Any;
+use std::cell::{Cell, OnceCell};
+use std::collections::BTreeMap;
+use std::fmt;
+use std::rc::Rc;
+use std::sync::Arc;
+
+use thiserror::Error;
+
+use crate::data::catalog::Catalog;
+use crate::fault::{Explain, Fault, Place};
+use crate::model::reaction::Reaction;
+use crate::quantity::{Mismatch, Quantity, text};
+use crate::record::node::{Node, Step};
+use crate::record::register::Finding;
+use crate::source::Citation;
+use crate::units::constants::ConstantSet;
+use crate::units::{self, What, parse as unit_parse};
+
+/// A value that formulas take and give.
+#[derive(Clone)]
+pub enum Value {
+    Quantity(Quantity),
+    Number(f64),
+    Flag(bool),
+    Text(Rc<str>),
+    List(Vec<Value>),
+    Options(Rc<BTreeMap<String, Value>>),
+    Reaction(Rc<Reaction>),
+    /// Something no formula takes, by its name in words.
+    Other(Rc<str>),
+    Nothing,
+}
+
+impl Value {
+    /// The sort of value, in words for messages.
+    pub fn sort(&self) -> &str {
+        match self {
+            Value::Quantity(_) => "a quantity",
+            Value::Number(_) => "a number",
+            Value::Flag(_) => "true or false",
+            Value::Text(_) => "a text",
+            Value::List(_) => "a list",
+            Value::Options(_) => "a map of options",
+            Value::Reaction(_) => "a reaction",
+            Value::Other(name) => name,
+            Value::Nothing => "nothing",
+        }
+    }
+}
+
+/// What a formula is asked of: `reaction.enthalpy(T)` is asked of a reaction, `reaction("...")` of nothing.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub enum On {
+    Nothing,
+    Quantity,
+    Reaction,
+}
+
+/// What an argument takes.
+#[derive(Clone, Copy)]
+pub enum Takes {
+    /// A quantity of this unit's dimension.
+    Quantity {
+        unit: &'static str,
+    },
+    /// A quantity of any dimension.
+    AnyQuantity,
+    /// A temperature point: degC, degF or kelvin.
+    Temperature,
+    Number,
+    Text,
+    Word(&'static [&'static str]),
+    Quantities,
+    Options(&'static [Arg]),
+}
+
+/// What stands for an argument that was not given.
+#[derive(Clone, Copy)]
+pub enum Default {
+    /// It must be given.
+    Required,
+    Number(f64),
+    NoOptions,
+    /// Nothing: the formula does without.
+    Absent,
+}
+
+/// One argument.
+pub struct Arg {
+    pub name: &'static str,
+    pub takes: Takes,
+    pub default: Default,
+    pub doc: &'static str,
+}
+
+/// An assumption a formula leans on, with its test. The test runs when a value is reported or shown, not at the call.
+pub struct Claim {
+    pub id: &'static str,
+    pub test: fn(&Cx, &Call, &Quantity) -> Vec<Finding>,
+}
+
+/// What a shortcut *not* taken would have given, to be priced beside the value.
+pub struct Alternative {
+    pub id: &'static str,
+    pub words: &'static str,
+    /// `None` where the shortcut was taken, or does not apply.
+    pub value: fn(&Cx, &Call, &Quantity) -> Option<f64>,
+}
+
+/// A formula.
+pub struct Card {
+    pub id: &'static str,
+    /// Name in scripts.
+    pub name: &'static str,
+    pub on: On,
+    pub args: &'static [Arg],
+    pub gives: &'static str,
+    pub doc: &'static str,
+    pub source: &'static str,
+    pub example: &'static str,
+    pub claims: &'static [Claim],
+    pub alternatives: &'static [Alternative],
+    pub run: fn(&Cx, &Rc<Call>) -> Result<Value, Fault>,
+    /// Figures of the calculation in the order a pocket calculator takes them.
+    pub check_line: Option<fn(&Cx, &Call, &Quantity, &mut Sources) -> String>,
+}
+
+/// What formulas look up: substances and constants. Substances are read at their first use, since a start of the program
+/// that asks for none should not wait for them.
+pub struct References {
+    catalog: OnceCell<Arc<Catalog>>,
+    pub constants: &'static ConstantSet,
+}
+
+impl References {
+    pub fn new(constants: &'static ConstantSet) -> Self {
+        References { catalog: OnceCell::new(), constants }
+    }
+
+    pub fn catalog(&self) -> &Catalog {
+        self.catalog.get_or_init(Catalog::shipped)
+    }
+}
+
+/// What a call needs of its surroundings.
+pub struct Cx<'a> {
+    pub references: &'a References,
+    pub place: Option<Place>,
+    /// Counts evaluations in a cell, so that inputs typed in a loop are told apart.
+    pub ordinal: &'a Cell<u64>,
+}
+
+impl<'a> Cx<'a> {
+    pub fn data(&self) -> &'a Catalog {
+        self.references.catalog()
+    }
+
+    pub fn constants(&self) -> &'static ConstantSet {
+        self.references.constants
+    }
+
+    pub fn next_ordinal(&self) -> u64 {
+        let ordinal = self.ordinal.get();
+        self.ordinal.set(ordinal + 1);
+        ordinal
+    }
+}
+
+/// Numbered sources of one report.
+#[derive(Default)]
+pub struct Sources {
+    list: Vec<Citation>,
+}
+
+impl Sources {
+    /// The number of a source, from 1; a new one is added at the end.
+    pub fn number(&mut self, citation: &Citation) -> usize {
+        match self.list.iter().position(|known| known == citation) {
+            Some(at) => at + 1,
+            None => {
+                self.list.push(citation.clone());
+                self.list.len()
+            }
+        }
+    }
+
+    pub fn list(&self) -> &[Citation] {
+        &self.list
+    }
+}
+
+/// A formula with the arguments it was called with, receiver first.
+pub struct Call {
+    pub card: &'static Card,
+    pub args: Vec<Value>,
+}
+
+impl Call {
+    pub fn quantity(&self, at: usize) -> &Quantity {
+        match &self.args[at] {
+            Value::Quantity(value) => value,
+            other => unreachable!("{}: argument {at} was checked to be a quantity, not {}", self.card.id, other.sort()),
+        }
+    }
+
+    pub fn reaction(&self) -> &Rc<Reaction> {
+        match &self.args[0] {
+            Value::Reaction(reaction) => reaction,
+            other => unreachable!("{}: the receiver is a reaction, not {}", self.card.id, other.sort()),
+        }
+    }
+
+    pub fn text(&self, at: usize) -> &Rc<str> {
+        match &self.args[at] {
+            Value::Text(text) => text,
+            other => unreachable!("{}: argument {at} was checked to be a text, not {}", self.card.id, other.sort()),
+        }
+    }
+
+    pub fn number(&self, at: usize) -> f64 {
+        match &self.args[at] {
+            Value::Number(number) => *number,
+            other => unreachable!("{}: argument {at} was checked to be a number, not {}", self.card.id, other.sort()),
+        }
+    }
+
+    /// A word given in the option map, which is the last argument.
+    pub fn option(&self, name: &str) -> Option<&Rc<str>> {
+        let Some(Value::Options(options)) = self.args.last() else { return None };
+        match options.get(name) {
+            Some(Value::Text(word)) => Some(word),
+            _ => None,
+        }
+    }
+
+    /// The same call with one option set to another word.
+    #[must_use]
+    pub fn with_option(&self, name: &str, word: &str) -> Call {
+        let mut args = self.args.clone();
+        if let Some(Value::Options(options)) = args.last_mut() {
+            Rc::make_mut(options).insert(name.to_owned(), Value::Text(word.into()));
+        }
+        Call { card: self.card, args }
+    }
+}
+
+impl Step for Call {
+    fn does(&self) -> String {
+        let mut words: Vec<String> = Vec::new();
+        for arg in &self.args {
+            match arg {
+                Value::Quantity(value) => words.push(text::shown(value)),
+                Value::Text(word) => words.push(word.to_string()),
+                Value::Number(number) => words.push(number.to_string()),
+                Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
+                Value::Options(options) => {
+                    words.extend(options.iter().filter_map(|(name, value)| match value {
+                        Value::Text(word) => Some(format!("{name}: {word}")),
+                        _ => None,
+                    }));
+                }
+                Value::Flag(_) | Value::List(_) | Value::Other(_) | Value::Nothing => {}
+            }
+        }
+        format!("{}({})", self.card.name, words.join(", "))
+    }
+
+    fn source(&self) -> &str {
+        self.card.source
+    }
+
+    fn arguments(&self) -> Vec<Rc<Node>> {
+        let quantity = |value: &Value| match value {
+            Value::Quantity(value) => vec![Rc::clone(value.node())],
+            Value::List(list) => list
+                .iter()
+                .filter_map(|item| if let Value::Quantity(value) = item { Some(Rc::clone(value.node())) } else { None })
+                .collect(),
+            _ => Vec::new(),
+        };
+        self.args.iter().flat_map(quantity).collect()
+    }
+
+    fn as_any(&self) -> &dyn Any {
+        self
+    }
+}
+
+/// The call a node was made by, if a formula made it.
+pub fn call_of(node: &Node) -> Option<&Call> {
+    node.step().and_then(|step| step.as_any().downcast_ref::<Call>())
+}
+
+/// An argument that does not suit its formula.
+#[derive(Clone, Debug, PartialEq, Error)]
+pub enum ArgumentError {
+    #[error("`{function}` wants {wanted} for `{argument}`, not {given}")]
+    Sort { function: &'static str, argument: &'static str, wanted: String, given: String },
+    #[error("`{function}` was given {given} arguments and takes {}", counts(*least, *most))]
+    Count { function: &'static str, given: usize, least: usize, most: usize, usage: String },
+    #[error("`{function}` knows no option `{option}`")]
+    Option { function: &'static str, option: String, known: String },
+    #[error("`{word}` is no choice for `{argument}` of `{function}`")]
+    Word { function: &'static str, argument: &'static str, word: String, choices: String },
+    #[error("a difference of {difference_k} K was given to `{function}` where a temperature is wanted")]
+    Difference { function: &'static str, difference_k: f64 },
+    #[error("{t_k} K is not a temperature above absolute zero, as `{function}` wants")]
+    NotPositive { function: &'static str, t_k: f64 },
+}
+
+fn counts(least: usize, most: usize) -> String {
+    if least == most { least.to_string() } else { format!("{least} to {most}") }
+}
+
+impl Explain for ArgumentError {
+    fn code(&self) -> &'static str {
+        match self {
+            ArgumentError::Sort { .. } => "argument-sort",
+            ArgumentError::Count { .. } => "argument-count",
+            ArgumentError::Option { .. } => "option-unknown",
+            ArgumentError::Word { .. } => "word-unknown",
+            ArgumentError::Difference { .. } => "difference-for-point",
+            ArgumentError::NotPositive { .. } => "temperature-not-positive",
+        }
+    }
+
+    fn hint(&self) -> String {
+        match self {
+            ArgumentError::Sort { wanted, .. } => format!("give {wanted}"),
+            ArgumentError::Count { usage, .. } => format!("use it as in `{usage}`"),
+            ArgumentError::Option { known, .. } => format!("its options are {known}"),
+            ArgumentError::Word { choices, .. } => format!("choose one of {choices}"),
+            ArgumentError::Difference { .. } => "give the temperature itself, as in `q(\"450 degC\")`".to_owned(),
+            ArgumentError::NotPositive { .. } => "check the sign and the scale of the temperature".to_owned(),
+        }
+    }
+}
+
+impl fmt::Debug for Card {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        f.write_str(self.id)
+    }
+}
+
+impl Card {
+    /// Arguments besides the receiver that must be given, and that may be.
+    pub fn arity(&self) -> (usize, usize) {
+        (self.args.iter().filter(|arg| matches!(arg.default, Default::Required)).count(), self.args.len())
+    }
+
+    /// How it is written: `enthalpy(T, options)`.
+    pub fn signature(&self) -> String {
+        let args: Vec<&str> = self.args.iter().map(|arg| arg.name).collect();
+        let receiver = match self.on {
+            On::Nothing => "",
+            On::Quantity => "value.",
+            On::Reaction => "reaction.",
+        };
+        format!("{receiver}{}({})", self.name, args.join(", "))
+    }
+}
+
+/// Calls a formula. `given` holds the receiver first, where there is one.
+///
+/// # Errors
+/// An argument does not suit, or the formula refuses.
+pub fn call(cx: &Cx, card: &'static Card, given: Vec<Value>) -> Result<Value, Fault> {
+    let receivers = usize::from(card.on != On::Nothing);
+    let (least, most) = card.arity();
+    let mut given = given.into_iter();
+    let mut args: Vec<Value> = given.by_ref().take(receivers).collect();
+    let rest: Vec<Value> = given.collect();
+    if rest.len() < least || rest.len() > most {
+        let usage = card.example.to_owned();
+        return Err(ArgumentError::Count { function: card.name, given: rest.len(), least, most, usage }.into());
+    }
+    let mut rest = rest.into_iter();
+    for arg in card.args {
+        let value = match (rest.next(), arg.default) {
+            (Some(value), _) => value,
+            (None, Default::NoOptions) => Value::Options(Rc::default()),
+            (None, Default::Number(number)) => Value::Number(number),
+            (None, Default::Absent) => Value::Nothing,
+            (None, Default::Required) => unreachable!("arguments were counted"),
+        };
+        args.push(checked(cx, card, arg, value)?);
+    }
+    (card.run)(cx, &Rc::new(Call { card, args }))
+}
+
+fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Result<Value, Fault> {
+    let refused = |wanted: &str, value: &Value| {
+        let given = value.sort().to_owned();
+        Fault::from(ArgumentError::Sort { function: card.name, argument: arg.name, wanted: wanted.to_owned(), given })
+    };
+    Ok(match (&arg.takes, value) {
+        (_, Value::Nothing) if matches!(arg.default, Default::Absent) => Value::Nothing,
+        (Takes::Quantity { unit }, value) => {
+            let wanted = unit_parse::unit(unit)?;
+            let quantity = as_quantity(cx, value, |v| refused("a quantity", v))?;
+            let fits = quantity.dim() == &wanted.dim || wanted.dim.bindings_to(quantity.dim()).len() == 1;
+            if !fits {
+                return Err(Mismatch::unit(quantity.dim(), &wanted).into());
+            }
+            Value::Quantity(quantity)
+        }
+        (Takes::AnyQuantity, value) => Value::Quantity(as_quantity(cx, value, |v| refused("a quantity", v))?),
+        (Takes::Temperature, value) => {
+            let wanted = "a temperature, as in `q(\"450 degC\")`";
+            let quantity = as_quantity(cx, value, |v| refused(wanted, v))?;
+            Value::Quantity(as_point(card, arg, quantity)?)
+        }
+        (Takes::Number, Value::Number(number)) => Value::Number(number),
+        (Takes::Number, Value::Quantity(value)) if value.dim().is_none() => Value::Number(value.si()),
+        (Takes::Text, Value::Text(text)) => Value::Text(text),
+        (Takes::Word(words), Value::Text(word)) => {
+            if !words.contains(&&*word) {
+                let choices = listed(words.iter().copied());
+                return Err(ArgumentError::Word {
+                    function: card.name,
+                    argument: arg.name,
+                    word: word.to_string(),
+                    choices,
+                }
+                .into());
+            }
+            Value::Text(word)
+        }
+        (Takes::Quantities, Value::List(list)) => {
+            let mut quantities = Vec::with_capacity(list.len());
+            for item in list {
+                let quantity = as_quantity(cx, item, |v| refused("a list of quantities", v))?;
+                quantities.push(Value::Quantity(quantity));
+            }
+            Value::List(quantities)
+        }
+        (Takes::Options(known), Value::Options(options)) => {
+            let mut checked_options = BTreeMap::new();
+            for (name, value) in options.iter() {
+                let Some(option) = known.iter().find(|option| option.name == name) else {
+                    let known = listed(known.iter().map(|option| option.name));
+                    return Err(ArgumentError::Option { function: card.name, option: name.clone(), known }.into());
+                };
+                checked_options.insert(name.clone(), checked(cx, card, option, value.clone())?);
+            }
+            Value::Options(Rc::new(checked_options))
+        }
+        (takes, value) => {
+            let wanted = match takes {
+                Takes::Number => "a number",
+                Takes::Text => "a text",
+                Takes::Word(words) => {
+                    return Err(refused(&format!("one of {}", listed(words.iter().copied())), &value));
+                }
+                Takes::Quantities => "a list of quantities",
+                Takes::Options(_) => "a map of options, as in `#{ heat_capacity: \"constant\" }`",
+                _ => "a quantity",
+            };
+            return Err(refused(wanted, &value));
+        }
+    })
+}
+
+/// A quantity, or text that reads as one.
+fn as_quantity(cx: &Cx, value: Value, refused: impl Fn(&Value) -> Fault) -> Result<Quantity, Fault> {
+    match value {
+        Value::Quantity(value) => Ok(value),
+        Value::Text(written) => Ok(text::parse(&written, cx.place.clone(), cx.next_ordinal())?),
+        other => Err(refused(&other)),
+    }
+}
+
+fn as_point(card: &'static Card, arg: &'static Arg, value: Quantity) -> Result<Quantity, Fault> {
+    if !value.kind().what.is_temperature() {
+        let given = format!("a value in {}", units::unit_for(value.dim()).text);
+        let wanted = "a temperature, as in `q(\"450 degC\")`".to_owned();
+        return Err(ArgumentError::Sort { function: card.name, argument: arg.name, wanted, given }.into());
+    }
+    if value.kind().what == What::TemperatureDifference {
+        return Err(ArgumentError::Difference { function: card.name, difference_k: value.si() }.into());
+    }
+    if value.si() <= 0.0 {
+        return Err(ArgumentError::NotPositive { function: card.name, t_k: value.si() }.into());
+    }
+    Ok(value)
+}
+
+/// "`a`, `b` and `c`".
+pub fn listed<'a>(words: impl IntoIterator<Item = &'a str>) -> String {
+    let words: Vec<String> = words.into_iter().map(|word| format!("`{word}`")).collect();
+    match words.split_last() {
+        None => "none".to_owned(),
+        Some((last, [])) => last.clone(),
+        Some((last, rest)) => format!("{} and {last}", rest.join(", ")),
+    }
+}

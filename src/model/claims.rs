@@ -1,0 +1,260 @@
+//! Tests of the assumptions that reaction properties lean on, and what the usual shortcuts would have given.
+//!
+//! Every test computes the alternative with the same code as the value itself. The surprise: whether a phase is stable is
+//! judged by Gibbs energies of the shipped phases of the same composition, not by the range of the record, since a
+//! record may run on far beyond where its phase is the stable one.
+
+use std::rc::Rc;
+use std::sync::Arc;
+
+use crate::chem::species::State as Aggregate;
+use crate::data::critical::CriticalTemperature;
+use crate::data::substance::Substance;
+use crate::model::card::{Call, Cx};
+use crate::model::function;
+use crate::model::gather::{self, Formation, HeatCapacity, Method};
+use crate::model::property::{self, Property};
+use crate::model::reaction::Reaction;
+use crate::num::math;
+use crate::quantity::Quantity;
+use crate::record::node::Node;
+use crate::record::register::{Finding, Tested};
+use crate::units::constants::STANDARD_PRESSURE;
+
+/// A phase counts as the stable one unless another lies lower by more than this, J/mol. Bound: the source joins phases at
+/// a transition with equal Gibbs energies to within 1 J/mol, so nearer than that the order of two phases is rounding.
+const G_RESOLUTION: f64 = 1.0;
+
+struct Asked<'a> {
+    property: Property,
+    reaction: &'a Reaction,
+    t_k: f64,
+    method: Method,
+}
+
+fn asked<'a>(cx: &Cx, call: &'a Call) -> Option<Asked<'a>> {
+    let property = Property::of(call.card)?;
+    let method = property::method_of(call, cx).ok()?;
+    Some(Asked { property, reaction: call.reaction(), t_k: call.quantity(1).si(), method })
+}
+
+/// The value's own node with another number in it: the better alternative of a test.
+fn alternative(value: &Quantity, si: f64) -> Rc<Node> {
+    let node = value.node();
+    let inputs = node.inputs().iter().cloned().collect();
+    Rc::new(Node::new(si, node.dim().clone(), node.kind().clone(), inputs, node.origin().clone(), None))
+}
+
+/// `constant-heat-capacity`: priced against the integral of Cp. No row where Cp was integrated.
+pub fn constant_heat_capacity(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
+    let Some(asked) = asked(cx, call) else { return Vec::new() };
+    if asked.method.heat_capacity == HeatCapacity::Full || property::is_reference(asked.t_k) {
+        return Vec::new();
+    }
+    let full = Method { heat_capacity: HeatCapacity::Full, ..asked.method.clone() };
+    let tested = match property::number(asked.property, asked.reaction, asked.t_k, &full, cx) {
+        Ok(better) => Tested::Better {
+            value: alternative(value, better),
+            how: "the integral of the heat capacities over T".to_owned(),
+        },
+        Err(fault) => Tested::Missing { what: fault.message().to_owned() },
+    };
+    vec![Finding::known("constant-heat-capacity", asked.reaction.text(), value.node(), Some(asked.t_k), tested)]
+}
+
+/// `formation-dataset`: priced against the next dataset that has all species.
+pub fn formation_dataset(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
+    let Some(asked) = asked(cx, call) else { return Vec::new() };
+    let Ok(used) = gather::datasets_for(asked.reaction, &asked.method.formation, cx.data()) else { return Vec::new() };
+    let mut names: Vec<String> = Vec::new();
+    for id in &used {
+        let short = cx.data().dataset(id).map_or_else(|| id.to_string(), |dataset| dataset.short.to_string());
+        if !names.contains(&short) {
+            names.push(short);
+        }
+    }
+    let subject = names.join(" and ");
+    let other = gather::covering(asked.reaction, cx.data()).into_iter().find(|id| used.iter().any(|taken| taken != id));
+    let tested = match other {
+        None => Tested::Missing { what: "no other shipped dataset has all species of this reaction".to_owned() },
+        Some(id) => {
+            let name = cx.data().dataset(&id).map_or_else(|| id.to_string(), |dataset| dataset.short.to_string());
+            let method = Method { formation: Formation::Of(id), ..asked.method.clone() };
+            match property::number(asked.property, asked.reaction, asked.t_k, &method, cx) {
+                Ok(si) => {
+                    Tested::Better { value: alternative(value, si), how: format!("formation enthalpies of {name}") }
+                }
+                Err(fault) => Tested::Missing { what: fault.message().to_owned() },
+            }
+        }
+    };
+    vec![Finding::known("formation-dataset", subject, value.node(), None, tested)]
+}
+
+/// `stable-phase`: each species against the other shipped phases of its composition, by Gibbs energy at T and 1 bar; a gas
+/// above its critical temperature has no liquid to be compared with.
+pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
+    let Some(asked) = asked(cx, call) else { return Vec::new() };
+    let (mut stable, mut supercritical, mut alone, mut findings) = (Vec::new(), Vec::new(), Vec::new(), Vec::new());
+    let mut sources = Vec::new();
+    let at_t = |subject: String, tested| Finding::known("stable-phase", subject, value.node(), Some(asked.t_k), tested);
+    for term in asked.reaction.terms() {
+        let species = &term.substance.species;
+        if species.phase.state == Aggregate::Aqueous {
+            continue; // A solute has no phase of its own to compare.
+        }
+        match compared(cx, &term.substance, asked.t_k) {
+            Compared::NothingToCompare => alone.push(&*species.id),
+            Compared::Supercritical(critical) => {
+                supercritical.push(format!("{} ({} K)", species.id, critical.t_k));
+                sources.push(critical.citation.clone());
+            }
+            Compared::Stable => stable.push(&*species.id),
+            Compared::Unstable(other) => {
+                let tested = unstable(cx, &asked, term.nu, &term.substance, &other, value);
+                findings.push(at_t(species.id.to_string(), tested));
+            }
+        }
+    }
+    let tested: Vec<&str> = (asked.reaction.terms().iter())
+        .map(|term| &*term.substance.species.id)
+        .filter(|id| stable.contains(id) || supercritical.iter().any(|gas| gas.starts_with(id)))
+        .collect();
+    if !tested.is_empty() {
+        let mut how = Vec::new();
+        if !stable.is_empty() {
+            how.push(format!(
+                "{}: lowest Gibbs energy of the shipped phases at {} K and 1 bar",
+                stable.join(", "),
+                asked.t_k
+            ));
+        }
+        if !supercritical.is_empty() {
+            how.push(format!("{}: above the critical temperature, so no liquid", supercritical.join(", ")));
+        }
+        let finding = at_t(tested.join(", "), Tested::True { how: how.join("; ") });
+        findings.push(Finding { sources, ..finding });
+    }
+    if !alone.is_empty() {
+        let names = alone.join(", ");
+        let what = format!("no other phase of {names} with a function that reaches {} K is shipped", asked.t_k);
+        findings.push(at_t(names, Tested::Missing { what }));
+    }
+    findings
+}
+
+enum Compared {
+    NothingToCompare,
+    /// A gas above this critical temperature.
+    Supercritical(Arc<CriticalTemperature>),
+    Stable,
+    Unstable(Arc<Substance>),
+}
+
+fn compared(cx: &Cx, substance: &Substance, t_k: f64) -> Compared {
+    let Some(own) = substance.function.as_ref().filter(|function| function.covers(t_k)) else {
+        return Compared::NothingToCompare;
+    };
+    let g_own = function::evaluate(own, t_k).g(t_k);
+    let mut compared = Compared::NothingToCompare;
+    let mut lowest = g_own - G_RESOLUTION;
+    for other in cx.data().phases_of(substance) {
+        let Some(function) = other.function.as_ref().filter(|function| function.covers(t_k)) else { continue };
+        let g = function::evaluate(function, t_k).g(t_k);
+        if g < lowest {
+            lowest = g;
+            compared = Compared::Unstable(other);
+        } else if matches!(compared, Compared::NothingToCompare) {
+            compared = Compared::Stable;
+        }
+    }
+    match (&compared, &substance.critical_temperature) {
+        (Compared::NothingToCompare, Some(critical)) if t_k > critical.t_k => {
+            Compared::Supercritical(Arc::clone(critical))
+        }
+        _ => compared,
+    }
+}
+
+/// The same property with the stable phase in place of the one written. Only the difference of the two phases is taken from
+/// their functions, so the formation dataset of the value stays in force.
+fn unstable(cx: &Cx, asked: &Asked, nu: f64, written: &Substance, stable: &Substance, value: &Quantity) -> Tested {
+    let (Some(f_written), Some(f_stable)) = (&written.function, &stable.function) else {
+        return Tested::Missing { what: format!("no function of {} is shipped", stable.species.id) };
+    };
+    let (a, b) = (function::evaluate(f_written, asked.t_k), function::evaluate(f_stable, asked.t_k));
+    let (t_k, r) = (asked.t_k, cx.constants().molar_gas.value);
+    let gas = |substance: &Substance| if substance.species.phase.state == Aggregate::Gas { 1.0 } else { 0.0 };
+    let gas_term = (gas(stable) - gas(written)) * r * t_k;
+    let better = match asked.property {
+        Property::H => value.si() + nu * (b.h - a.h),
+        Property::U => value.si() + nu * (b.h - a.h - gas_term),
+        Property::G => value.si() + nu * (b.g(t_k) - a.g(t_k)),
+        Property::A => value.si() + nu * (b.g(t_k) - a.g(t_k) - gas_term),
+        Property::S => value.si() + nu * (b.s - a.s),
+        Property::Cp => value.si() + nu * (b.cp - a.cp),
+        Property::K => value.si() * math::exp(-nu * (b.g(t_k) - a.g(t_k)) / (r * t_k)),
+    };
+    let lower = (a.g(t_k) - b.g(t_k)) / 1000.0;
+    let why = format!(
+        "at {t_k} K and {} bar {} has the lower Gibbs energy, by {lower:.1} kJ/mol; write that phase if it is meant",
+        STANDARD_PRESSURE.value / 1e5,
+        stable.species.id
+    );
+    Tested::False { why, value: Some(alternative(value, better)) }
+}
+
+/// `ideal-gas`: untested as long as no second virial coefficients are shipped.
+pub fn ideal_gas(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
+    gas_law(cx, call, value, "ideal-gas", Aggregate::Gas, "no second virial coefficient of")
+}
+
+/// `condensed-volume-neglected`: untested as long as no molar volumes are shipped.
+pub fn condensed_volume(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
+    let mut findings = gas_law(cx, call, value, "condensed-volume-neglected", Aggregate::Liquid, "no molar volume of");
+    findings.extend(gas_law(cx, call, value, "condensed-volume-neglected", Aggregate::Crystal, "no molar volume of"));
+    findings
+}
+
+fn gas_law(cx: &Cx, call: &Call, value: &Quantity, id: &'static str, state: Aggregate, lacking: &str) -> Vec<Finding> {
+    let Some(asked) = asked(cx, call) else { return Vec::new() };
+    let species: Vec<&str> = (asked.reaction.terms().iter())
+        .map(|term| &term.substance.species)
+        .filter(|species| species.phase.state == state)
+        .map(|species| &*species.id)
+        .collect();
+    if species.is_empty() {
+        return Vec::new();
+    }
+    let names = species.join(", ");
+    let what = format!("{lacking} {names} is shipped");
+    vec![Finding::known(id, names, value.node(), Some(asked.t_k), Tested::Missing { what })]
+}
+
+/// What ΔCp held at 298.15 K would have given, where it was integrated instead.
+pub fn with_constant_heat_capacity(cx: &Cx, call: &Call, _: &Quantity) -> Option<f64> {
+    shortcut(cx, call, HeatCapacity::Constant)
+}
+
+/// What the value at 298.15 K would have given.
+pub fn without_correction(cx: &Cx, call: &Call, _: &Quantity) -> Option<f64> {
+    shortcut(cx, call, HeatCapacity::Neglected)
+}
+
+fn shortcut(cx: &Cx, call: &Call, heat_capacity: HeatCapacity) -> Option<f64> {
+    let asked = asked(cx, call)?;
+    if property::is_reference(asked.t_k) || asked.method.heat_capacity != HeatCapacity::Full {
+        return None;
+    }
+    // ΔCp itself has no further shortcut than its value at 298.15 K.
+    if asked.property == Property::Cp && heat_capacity == HeatCapacity::Constant {
+        return None;
+    }
+    let t_k = match (asked.property, heat_capacity) {
+        // "No correction" means the figure of the 298.15 K table, whole.
+        (Property::G | Property::A | Property::U | Property::K, HeatCapacity::Neglected) => function::T_REFERENCE,
+        _ => asked.t_k,
+    };
+    let method = Method { heat_capacity, ..asked.method.clone() };
+    property::number(asked.property, asked.reaction, t_k, &method, cx).ok()
+}

@@ -1,0 +1,584 @@
+//! Reaction properties at a temperature: ΔrH°, ΔrU°, ΔrG°, ΔrA°, ΔrS°, ΔrCp° and K°.
+//!
+//! ΔrH°(T) = Σ νᵢ [ΔfH°ᵢ(298.15 K) + Hᵢ(T) − Hᵢ(298.15 K)]       ΔrS°(T) = Σ νᵢ S°ᵢ(T)
+//! ΔrG°(T) = ΔrH°(T) − T ΔrS°(T)       ΔrU°(T) = ΔrH°(T) − Δn(gas) R T       ΔrA°(T) = ΔrG°(T) − Δn(gas) R T
+//! K°(T) = exp(−ΔrG°(T)/RT)
+//!
+//! | symbol  | unit        | meaning                                                            |
+//! |---------|-------------|--------------------------------------------------------------------|
+//! | νᵢ      | 1           | stoichiometric numbers as written, positive for products           |
+//! | ΔfH°ᵢ   | J/mol       | formation enthalpy at 298.15 K, all from one dataset               |
+//! | H, S    | J/mol, J/(mol K) | functions of T, closed-form integrals of Cp and Cp/T          |
+//! | Δn(gas) | 1           | sum of ν of the gases, derived from the phases                     |
+//! | R       | J/(mol K)   | gas constant of the current constant set                           |
+//!
+//! Each species pure, in its standard state, p° = 1 bar. ΔrU° and ΔrA° take gases as ideal and neglect the volume of
+//! condensed species (`ideal-gas`, `condensed-volume-neglected`).
+//! Source: definitions of H, G, A; (∂H/∂T)p = Cp; IUPAC Green Book, 3rd ed., section 2.11 (from memory).
+
+use std::rc::Rc;
+
+use smallvec::SmallVec;
+use thiserror::Error;
+
+use crate::fault::{Explain, Fault};
+use crate::model::card::{Alternative, Arg, Call, Card, Claim, Cx, Default, On, Sources, Takes, Value};
+use crate::model::claims;
+use crate::model::function::T_REFERENCE;
+use crate::model::gather::{self, Contribution, Figure, HeatCapacity, Method};
+use crate::model::reaction::Reaction;
+use crate::num::math;
+use crate::quantity::Quantity;
+use crate::record::node::{Input, LeafKey, Node, Origin};
+use crate::units::constants::{ConstantSet, STANDARD_PRESSURE};
+use crate::units::{Base, Dimension, Entity, Kind, State, What, Zero};
+
+/// A property of a reaction.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Property {
+    H,
+    U,
+    G,
+    A,
+    S,
+    Cp,
+    K,
+}
+
+impl Property {
+    /// The property a card computes.
+    pub fn of(card: &Card) -> Option<Property> {
+        Some(match card.id {
+            "reaction.enthalpy" => Property::H,
+            "reaction.internal-energy" => Property::U,
+            "reaction.gibbs-energy" => Property::G,
+            "reaction.helmholtz-energy" => Property::A,
+            "reaction.entropy" => Property::S,
+            "reaction.heat-capacity" => Property::Cp,
+            "reaction.equilibrium-constant" => Property::K,
+            _ => return None,
+        })
+    }
+
+    fn what(self) -> What {
+        match self {
+            Property::H => What::H,
+            Property::U => What::U,
+            Property::G => What::G,
+            Property::A => What::A,
+            Property::S => What::S,
+            Property::Cp => What::Cp,
+            Property::K => What::K,
+        }
+    }
+
+    pub fn uses_formation(self) -> bool {
+        !matches!(self, Property::S | Property::Cp)
+    }
+
+    pub fn uses_gas_law(self) -> bool {
+        matches!(self, Property::U | Property::A)
+    }
+}
+
+/// Why a property has no value.
+#[derive(Clone, Debug, PartialEq, Error)]
+pub enum PropertyError {
+    #[error("K° of {reaction} at {t_k} K is 10^{lg_k:.0}, beyond the range of numbers")]
+    Overflow { reaction: String, t_k: f64, lg_k: f64 },
+}
+
+impl Explain for PropertyError {
+    fn code(&self) -> &'static str {
+        "equilibrium-constant-out-of-range"
+    }
+
+    fn hint(&self) -> String {
+        "ask for `r.gibbs_energy(T)` and work with ln K° = -ΔrG°/(R T)".to_owned()
+    }
+}
+
+/// One figure's weight in the result.
+pub struct Part<'a> {
+    pub figure: &'a Figure,
+    pub weight: f64,
+}
+
+/// A property's value in SI units per mole of reaction, with its weights and its slope.
+pub struct Evaluated<'a> {
+    pub si: f64,
+    pub parts: Vec<Part<'a>>,
+    /// Derivative with respect to T.
+    pub slope: f64,
+}
+
+/// Evaluates a property from what the species contribute. `rt` is R in J/(mol K) and T in kelvin.
+///
+/// # Errors
+/// A species has no entropy or heat capacity, where one is needed.
+pub fn evaluate<'a>(
+    property: Property,
+    contributions: &'a [Contribution],
+    delta_n: f64,
+    t_k: f64,
+    r: f64,
+    reaction: &Reaction,
+) -> Result<Evaluated<'a>, Fault> {
+    let mut out = Evaluated { si: 0.0, parts: Vec::with_capacity(3 * contributions.len()), slope: 0.0 };
+    for (contribution, term) in contributions.iter().zip(reaction.terms()) {
+        let species = || term.substance.species.id.to_string();
+        let nu = contribution.nu;
+        let mut add = |figure: &'a Figure, weight: f64| {
+            out.si += weight * figure.si;
+            out.parts.push(Part { figure, weight });
+        };
+        let entropy =
+            || contribution.entropy.as_ref().ok_or_else(|| gather::GatherError::NoEntropy { species: species() });
+        let slopes = &contribution.slopes;
+        match property {
+            Property::Cp => {
+                let cp = contribution.cp.as_ref();
+                add(cp.ok_or_else(|| gather::GatherError::NoFunction { species: species(), t_k })?, nu);
+                out.slope += nu * slopes.cp;
+            }
+            Property::S => {
+                add(entropy()?, nu);
+                out.slope += nu * slopes.entropy;
+            }
+            Property::H | Property::U => {
+                add(&contribution.formation, nu);
+                if let Some(increment) = &contribution.increment {
+                    add(increment, nu);
+                }
+                out.slope += nu * slopes.increment;
+            }
+            Property::G | Property::A | Property::K => {
+                add(&contribution.formation, nu);
+                if let Some(increment) = &contribution.increment {
+                    add(increment, nu);
+                }
+                let s = entropy()?;
+                add(s, -t_k * nu);
+                out.slope += nu * (slopes.increment - s.si - t_k * slopes.entropy);
+            }
+        }
+    }
+    if property.uses_gas_law() {
+        out.si -= delta_n * r * t_k;
+        out.slope -= delta_n * r;
+    }
+    if property == Property::K {
+        // From ΔrG° to K°: every weight times dK/dG = −K/(RT).
+        let ln_k = -out.si / (r * t_k);
+        let k = math::exp(ln_k);
+        if !(k.is_finite() && k >= f64::MIN_POSITIVE) {
+            let lg_k = ln_k / std::f64::consts::LN_10;
+            return Err(PropertyError::Overflow { reaction: reaction.text().to_owned(), t_k, lg_k }.into());
+        }
+        let by_g = -k / (r * t_k);
+        out.parts.iter_mut().for_each(|part| part.weight *= by_g);
+        out.slope = by_g * (out.slope - out.si / t_k);
+        out.si = k;
+    }
+    Ok(out)
+}
+
+/// Dimension of a property.
+fn dimension(property: Property) -> Dimension {
+    let energy = Dimension::whole([2, 1, -2, 0, 0, 0]).over(&Dimension::amount(Entity::RXN));
+    match property {
+        Property::S | Property::Cp => energy.over(&Dimension::base(Base::Kelvin)),
+        Property::K => Dimension::none(),
+        _ => energy,
+    }
+}
+
+fn kind(property: Property, t_k: f64) -> Kind {
+    let zero = property.uses_formation().then_some(Zero::Elements298);
+    let p_pa = Some(STANDARD_PRESSURE.value);
+    Kind::in_state(property.what(), State { zero, t_k: Some(t_k), p_pa, standard: true })
+}
+
+/// The method a call asks for.
+///
+/// # Errors
+/// The formation dataset is unknown.
+pub fn method_of(call: &Call, cx: &Cx) -> Result<Method, Fault> {
+    let word = |name| call.option(name).map(|word| &**word);
+    Ok(Method::from_words(word("heat_capacity"), word("formation"), cx.data())?)
+}
+
+/// A property by another method, as a bare number in SI units: what tests and alternatives compare with.
+///
+/// # Errors
+/// As [`evaluate`].
+pub fn number(property: Property, reaction: &Reaction, t_k: f64, method: &Method, cx: &Cx) -> Result<f64, Fault> {
+    let contributions = gather::contributions(reaction, t_k, method, cx.data())?;
+    let r = cx.constants().molar_gas.value;
+    Ok(evaluate(property, &contributions, reaction.delta_n_gas(), t_k, r, reaction)?.si)
+}
+
+/// A property by another method, as a value with its inputs, made by `call`.
+///
+/// # Errors
+/// As [`evaluate`].
+pub fn quantity(property: Property, call: &Rc<Call>, method: &Method, cx: &Cx) -> Result<Quantity, Fault> {
+    let (reaction, t) = (call.reaction(), call.quantity(1));
+    let t_k = t.si();
+    let contributions = gather::contributions(reaction, t_k, method, cx.data())?;
+    let r = gas_constant(cx.constants());
+    let delta_n = reaction.delta_n_gas();
+    let evaluated = evaluate(property, &contributions, delta_n, t_k, r.si(), reaction)?;
+    let mut inputs: SmallVec<[(Rc<Node>, f64); 2]> = SmallVec::with_capacity(evaluated.parts.len() + 2);
+    for part in &evaluated.parts {
+        inputs.push((leaf(part.figure, property)?, part.weight));
+    }
+    if property.uses_gas_law() && delta_n != 0.0 {
+        inputs.push((Rc::clone(r.node()), -delta_n * t_k));
+    }
+    // A temperature that states no uncertainty is a condition the analyst chose, not a measurement.
+    if t.spread().u().is_some_and(|u| u > 0.0) {
+        inputs.push((Rc::clone(t.node()), evaluated.slope));
+    }
+    let step = Rc::clone(call);
+    Ok(Quantity::from_step(evaluated.si, dimension(property), kind(property, t_k), inputs, step, cx.place.clone())?)
+}
+
+fn leaf(figure: &Figure, property: Property) -> Result<Rc<Node>, Fault> {
+    let energy = Dimension::whole([2, 1, -2, 0, 0, 0]);
+    let dim = match (&figure.input.key, property) {
+        (LeafKey::Datum { field, .. }, _) if *field == gather::ENTROPY => energy.over(&Dimension::base(Base::Kelvin)),
+        (_, Property::Cp) => energy.over(&Dimension::base(Base::Kelvin)),
+        _ => energy,
+    };
+    let dim = dim.over(&Dimension::amount(Entity::OPEN));
+    Ok(Rc::clone(Quantity::input(figure.si, dim, Kind::PLAIN, figure.input.clone(), None)?.node()))
+}
+
+/// R as an input, so that a change of constant set can be traced.
+fn gas_constant(constants: &ConstantSet) -> Quantity {
+    let r = &constants.molar_gas;
+    let dim = Dimension::whole([2, 1, -2, 0, -1, 0]).over(&Dimension::amount(Entity::OPEN));
+    let key = LeafKey::Constant { year: constants.year, name: r.name };
+    let input = Input { key, u: Some(r.u), digit: None, label: None, citation: Some(r.citation()) };
+    Quantity::of_node(Rc::new(Node::new(r.value, dim, Kind::PLAIN, SmallVec::new(), Origin::Input(input), None)))
+}
+
+fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
+    let property = Property::of(call.card).unwrap_or_else(|| unreachable!("{} is a property's card", call.card.id));
+    Ok(Value::Quantity(quantity(property, call, &method_of(call, cx)?, cx)?))
+}
+
+/// The figures of the calculation, each with the number of its source.
+fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> String {
+    let Some(property) = Property::of(call.card) else { return String::new() };
+    let (reaction, t_k) = (call.reaction(), call.quantity(1).si());
+    let Ok(method) = method_of(call, cx) else { return String::new() };
+    let Ok(contributions) = gather::contributions(reaction, t_k, &method, cx.data()) else { return String::new() };
+    let kilo = |figure: &Figure| match &figure.printed {
+        Some(printed) => printed.to_string(),
+        None => format!("{:.3}", figure.si / 1000.0),
+    };
+    let plain =
+        |figure: &Figure| figure.printed.as_ref().map_or_else(|| format!("{:.3}", figure.si), ToString::to_string);
+    let formation = sum_of(&contributions, sources, |c| Some(&c.formation), kilo);
+    let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), kilo);
+    let entropies = |sources: &mut Sources| sum_of(&contributions, sources, |c| c.entropy.as_ref(), plain);
+    let enthalpy = if increments.is_empty() { formation } else { format!("({formation}) + ({increments})") };
+    let result = format!("{:.3}", value.si() / 1000.0);
+    let rt = |sources: &mut Sources| {
+        let r = &cx.constants().molar_gas;
+        let source = sources.number(&r.citation());
+        format!("{} × {:.8e}[{source}] × {t_k}", reaction.delta_n_gas(), r.value / 1000.0)
+    };
+    match property {
+        Property::H => format!("{enthalpy} = {result}"),
+        Property::U => format!("{enthalpy} - {} = {result}", rt(sources)),
+        Property::G => format!("{enthalpy} - {t_k} × ({}) / 1000 = {result}", entropies(sources)),
+        Property::A => {
+            let entropies = entropies(sources);
+            format!("{enthalpy} - {t_k} × ({entropies}) / 1000 - {} = {result}", rt(sources))
+        }
+        Property::S => format!("{} = {:.3}", entropies(sources), value.si()),
+        Property::Cp => {
+            format!("{} = {:.3}", sum_of(&contributions, sources, |c| c.cp.as_ref(), plain), value.si())
+        }
+        Property::K => {
+            let r = &cx.constants().molar_gas;
+            let entropies = entropies(sources);
+            let source = sources.number(&r.citation());
+            format!(
+                "exp(-({enthalpy} - {t_k} × ({entropies}) / 1000) / ({:.8e}[{source}] × {t_k})) = {:.6e}",
+                r.value / 1000.0,
+                value.si()
+            )
+        }
+    }
+}
+
+/// `-393.51[1] + 0[1] - (-110.53)[1]`: terms in the order written, signs as a calculator takes them.
+fn sum_of<'a>(
+    contributions: &'a [Contribution],
+    sources: &mut Sources,
+    pick: impl Fn(&'a Contribution) -> Option<&'a Figure>,
+    show: impl Fn(&Figure) -> String,
+) -> String {
+    let mut line = String::new();
+    for contribution in contributions {
+        let Some(figure) = pick(contribution) else { continue };
+        let (nu, shown) = (contribution.nu, show(figure));
+        let source = figure.input.citation.as_ref().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+        line.push_str(match (line.is_empty(), nu < 0.0) {
+            (true, false) => "",
+            (true, true) => "-",
+            (false, false) => " + ",
+            (false, true) => " - ",
+        });
+        if nu.abs() != 1.0 {
+            line.push_str(&format!("{} × ", nu.abs()));
+        }
+        line.push_str(&if shown.starts_with('-') { format!("({shown}){source}") } else { format!("{shown}{source}") });
+    }
+    line
+}
+
+const OPTIONS: &[Arg] = &[
+    Arg {
+        name: "heat_capacity",
+        takes: Takes::Word(HeatCapacity::WORDS),
+        default: Default::Absent,
+        doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
+    },
+    Arg {
+        name: "formation",
+        takes: Takes::Text,
+        default: Default::Absent,
+        doc: "the dataset of formation enthalpies, such as \"codata-1989\", or \"mixed\"",
+    },
+];
+
+const HEAT_CAPACITY_ONLY: &[Arg] = &[Arg {
+    name: "heat_capacity",
+    takes: Takes::Word(HeatCapacity::WORDS),
+    default: Default::Absent,
+    doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
+}];
+
+const TEMPERATURE: Arg =
+    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "temperature: degC, degF or kelvin" };
+
+const ARGS: &[Arg] = &[
+    TEMPERATURE,
+    Arg {
+        name: "options",
+        takes: Takes::Options(OPTIONS),
+        default: Default::NoOptions,
+        doc: "how it is to be computed",
+    },
+];
+
+const ARGS_WITHOUT_FORMATION: &[Arg] = &[
+    TEMPERATURE,
+    Arg {
+        name: "options",
+        takes: Takes::Options(HEAT_CAPACITY_ONLY),
+        default: Default::NoOptions,
+        doc: "how it is to be computed",
+    },
+];
+
+const CONSTANT_HEAT_CAPACITY: Claim = Claim { id: "constant-heat-capacity", test: claims::constant_heat_capacity };
+const STABLE_PHASE: Claim = Claim { id: "stable-phase", test: claims::stable_phase };
+const FORMATION_DATASET: Claim = Claim { id: "formation-dataset", test: claims::formation_dataset };
+const IDEAL_GAS: Claim = Claim { id: "ideal-gas", test: claims::ideal_gas };
+const CONDENSED_VOLUME: Claim = Claim { id: "condensed-volume-neglected", test: claims::condensed_volume };
+
+const ENERGY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET];
+const GAS_LAW_CLAIMS: &[Claim] =
+    &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET, IDEAL_GAS, CONDENSED_VOLUME];
+const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE];
+
+const SHORTCUTS: &[Alternative] = &[
+    Alternative {
+        id: "constant-heat-capacity",
+        words: "with ΔCp held at its value at 298.15 K",
+        value: claims::with_constant_heat_capacity,
+    },
+    Alternative { id: "no-correction", words: "with the value at 298.15 K", value: claims::without_correction },
+];
+
+const SOURCE: &str = "definitions of the state functions; IUPAC Green Book, 3rd ed., section 2.11 (from memory)";
+
+macro_rules! property_card {
+    ($name:ident, $id:literal, $script:literal, $args:expr, $claims:expr, $gives:literal, $doc:literal) => {
+        pub static $name: Card = Card {
+            id: $id,
+            name: $script,
+            on: On::Reaction,
+            args: $args,
+            gives: $gives,
+            doc: $doc,
+            source: SOURCE,
+            example: concat!("reaction(\"CO(g) + H2O(g) -> CO2(g) + H2(g)\").", $script, "(\"450 degC\")"),
+            claims: $claims,
+            alternatives: SHORTCUTS,
+            run,
+            check_line: Some(check_line),
+        };
+    };
+}
+
+property_card!(
+    ENTHALPY,
+    "reaction.enthalpy",
+    "enthalpy",
+    ARGS,
+    ENERGY_CLAIMS,
+    "ΔrH° per mole of reaction as written",
+    "Reaction enthalpy at T. ΔrH°(T) = Σ ν [ΔfH°(298.15 K) + H(T) - H(298.15 K)], each species pure, in its standard \
+     state, p° = 1 bar; formation enthalpies from one dataset."
+);
+property_card!(
+    INTERNAL_ENERGY,
+    "reaction.internal-energy",
+    "internal_energy",
+    ARGS,
+    GAS_LAW_CLAIMS,
+    "ΔrU° per mole of reaction as written",
+    "Reaction internal energy at T. ΔrU°(T) = ΔrH°(T) - Δn(gas) R T, gases ideal, condensed volumes neglected."
+);
+property_card!(
+    GIBBS_ENERGY,
+    "reaction.gibbs-energy",
+    "gibbs_energy",
+    ARGS,
+    ENERGY_CLAIMS,
+    "ΔrG° per mole of reaction as written",
+    "Reaction Gibbs energy at T. ΔrG°(T) = ΔrH°(T) - T ΔrS°(T), p° = 1 bar."
+);
+property_card!(
+    HELMHOLTZ_ENERGY,
+    "reaction.helmholtz-energy",
+    "helmholtz_energy",
+    ARGS,
+    GAS_LAW_CLAIMS,
+    "ΔrA° per mole of reaction as written",
+    "Reaction Helmholtz energy at T. ΔrA°(T) = ΔrG°(T) - Δn(gas) R T, gases ideal, condensed volumes neglected."
+);
+property_card!(
+    ENTROPY,
+    "reaction.entropy",
+    "entropy",
+    ARGS_WITHOUT_FORMATION,
+    ENTROPY_CLAIMS,
+    "ΔrS° per mole of reaction as written",
+    "Reaction entropy at T. ΔrS°(T) = Σ ν S°(T), third-law entropies without nuclear spin, p° = 1 bar."
+);
+property_card!(
+    HEAT_CAPACITY,
+    "reaction.heat-capacity",
+    "heat_capacity",
+    ARGS_WITHOUT_FORMATION,
+    ENTROPY_CLAIMS,
+    "ΔrCp° per mole of reaction as written",
+    "Reaction heat capacity at T. ΔrCp°(T) = Σ ν Cp°(T)."
+);
+property_card!(
+    EQUILIBRIUM_CONSTANT,
+    "reaction.equilibrium-constant",
+    "equilibrium_constant",
+    ARGS,
+    ENERGY_CLAIMS,
+    "K°, a pure number on p° = 1 bar",
+    "Standard equilibrium constant at T. K°(T) = exp(-ΔrG°(T)/RT), p° = 1 bar; its uncertainty lives in ln K°. It depends \
+     on temperature only."
+);
+
+/// Whether a property at this temperature is the tabulated one, so that no correction is made.
+pub fn is_reference(t_k: f64) -> bool {
+    t_k == T_REFERENCE
+}
+
+#[cfg(test)]
+mod tests {
+    use std::cell::Cell;
+    use std::collections::BTreeMap;
+
+    use super::*;
+    use crate::model::card::{self, References};
+    use crate::model::reaction::REACTION;
+    use crate::units::constants;
+
+    const SHIFT: &str = "CO(g) + H2O(g) -> CO2(g) + H2(g)";
+
+    fn ask(card: &'static Card, equation: &str, t: &str, options: &[(&str, &str)]) -> Result<Quantity, Fault> {
+        let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
+        let cx = Cx { references: &references, place: None, ordinal: &ordinal };
+        let reaction = card::call(&cx, &REACTION, vec![Value::Text(equation.into())])?;
+        let options: BTreeMap<String, Value> =
+            options.iter().map(|(name, word)| ((*name).to_owned(), Value::Text((*word).into()))).collect();
+        match card::call(&cx, card, vec![reaction, Value::Text(t.into()), Value::Options(Rc::new(options))])? {
+            Value::Quantity(value) => Ok(value),
+            other => panic!("{} gives {}", card.id, other.sort()),
+        }
+    }
+
+    #[test]
+    fn the_state_functions_of_one_reaction_are_consistent() {
+        let t = 650.0;
+        let at = |card| ask(card, "2 CO(g) + O2(g) -> 2 CO2(g)", "650 K", &[]).unwrap().si();
+        let (h, u, g, a, s, k) = (
+            at(&ENTHALPY),
+            at(&INTERNAL_ENERGY),
+            at(&GIBBS_ENERGY),
+            at(&HELMHOLTZ_ENERGY),
+            at(&ENTROPY),
+            at(&EQUILIBRIUM_CONSTANT),
+        );
+        let rt = constants::current().molar_gas.value * t;
+        // Bound: rounding of sums near 1e6 J/mol, 1e-10 relative to the largest term is far above it.
+        let close = |x: f64, y: f64| assert!((x - y).abs() <= 1e-9 * (1.0 + y.abs()), "{x} {y}");
+        close(g, h - t * s);
+        close(u, h + rt); // Δn(gas) = -1
+        close(a, g + rt);
+        close(math::ln(k), -g / rt);
+    }
+
+    #[test]
+    fn slopes_agree_with_differences_of_the_values() {
+        // Bound: a central difference over 2 × 0.01 K is off by h²/6 of a third derivative, below 1e-6 relative here.
+        for card in [&ENTHALPY, &INTERNAL_ENERGY, &GIBBS_ENERGY, &ENTROPY, &HEAT_CAPACITY, &EQUILIBRIUM_CONSTANT] {
+            for mode in HeatCapacity::WORDS {
+                let at = |t: &str| ask(card, SHIFT, t, &[("heat_capacity", mode)]).unwrap();
+                let difference = (at("600.01 K").si() - at("599.99 K").si()) / 0.02;
+                let with_u = at("600.00(1) K");
+                let of_t = with_u
+                    .sensitivities()
+                    .into_iter()
+                    .find(|s| matches!(s.input().unwrap().key, LeafKey::Typed { .. }));
+                let slope = of_t.map_or(0.0, |s| s.derivative); // A constant ΔCp has none.
+                assert!(
+                    (slope - difference).abs() <= 1e-5 * (difference.abs() + 1e-3),
+                    "{} {mode}: {slope} {difference}",
+                    card.id
+                );
+            }
+        }
+    }
+
+    #[test]
+    fn a_temperature_without_uncertainty_is_a_condition_and_one_with_it_an_input() {
+        let exact = ask(&ENTHALPY, SHIFT, "723.15 K", &[]).unwrap();
+        assert!(exact.sensitivities().iter().all(|s| !matches!(s.input().unwrap().key, LeafKey::Typed { .. })));
+        let sure = exact.spread().u().unwrap();
+        let unsure = ask(&ENTHALPY, SHIFT, "723(20) K", &[]).unwrap().spread().u().unwrap();
+        assert!(unsure > sure);
+    }
+
+    #[test]
+    fn a_temperature_outside_the_data_is_refused_with_the_range() {
+        let fault = ask(&ENTHALPY, "H2O(l) -> H2O(g)", "700 K", &[]).unwrap_err();
+        assert_eq!(fault.code(), "temperature-out-of-range");
+        assert!(fault.message().contains("H2O(l)") && fault.message().contains("600 K"), "{fault}");
+    }
+}

@@ -1,0 +1,114 @@
+//! A reaction: balanced terms, each a substance of the catalogue with its stoichiometric number.
+//!
+//! Made from an equation as written; Δn(gas) is derived and never typed. The surprise: a substance is one phase here, and
+//! a name without a phase is refused, since the phase is worth tens of kJ/mol.
+
+use std::rc::Rc;
+use std::sync::Arc;
+
+use crate::chem::balance::{self, Party};
+use crate::chem::equation::Equation;
+use crate::data::catalog::Catalog;
+use crate::data::substance::Substance;
+use crate::fault::Fault;
+use crate::model::card::{Arg, Card, Default, On, Takes, Value};
+
+/// A reaction as written.
+pub struct Reaction {
+    equation: Equation,
+    terms: Vec<Term>,
+}
+
+/// One species with its stoichiometric number, positive for products.
+#[derive(Clone)]
+pub struct Term {
+    pub substance: Arc<Substance>,
+    pub nu: f64,
+}
+
+impl Reaction {
+    /// Reads a balanced equation whose species are in the catalogue.
+    ///
+    /// # Errors
+    /// It does not read, is not balanced, or names a species that is unknown or not one.
+    pub fn read(text: &str, data: &Catalog) -> Result<Reaction, Fault> {
+        let equation = Equation::parse(text, &|name| Ok(data.find(name)?.species.clone()))?;
+        let mut terms = Vec::with_capacity(equation.terms().len());
+        for (species, nu) in equation.terms() {
+            terms.push(Term { substance: data.find(&species.id)?, nu: nu.to_f64() });
+        }
+        Ok(Reaction { equation, terms })
+    }
+
+    pub fn terms(&self) -> &[Term] {
+        &self.terms
+    }
+
+    /// The equation in a form that reads back.
+    pub fn text(&self) -> &str {
+        self.equation.text()
+    }
+
+    pub fn equation(&self) -> &Equation {
+        &self.equation
+    }
+
+    /// Sum of the stoichiometric numbers of the gases.
+    pub fn delta_n_gas(&self) -> f64 {
+        self.equation.delta_n_gas().to_f64()
+    }
+
+    /// The largest stoichiometric number by size: the scale of a tolerance.
+    pub fn largest_nu(&self) -> f64 {
+        self.equation.largest_nu_f64()
+    }
+}
+
+pub static REACTION: Card = Card {
+    id: "reaction.read",
+    name: "reaction",
+    on: On::Nothing,
+    args: &[Arg {
+        name: "equation",
+        takes: Takes::Text,
+        default: Default::Required,
+        doc: "a balanced equation with phases, `CO(g) + H2O(g) -> CO2(g) + H2(g)`; coefficients are integers, decimals or fractions",
+    }],
+    gives: "a reaction",
+    doc: "Reads a reaction. Each species names its phase: (g), (l), (cr), (aq), or a crystal form as in C(cr,graphite). \
+          Elements and charge must balance.",
+    source: "IUPAC Green Book, 3rd ed., section 2.10.1 (notation; from memory)",
+    example: "reaction(\"CO(g) + H2O(g) -> CO2(g) + H2(g)\")",
+    claims: &[],
+    alternatives: &[],
+    run: |cx, call| Ok(Value::Reaction(Rc::new(Reaction::read(call.text(0), cx.data())?))),
+    check_line: None,
+};
+
+pub static BALANCE: Card = Card {
+    id: "reaction.balance",
+    name: "balance",
+    on: On::Nothing,
+    args: &[Arg {
+        name: "equation",
+        takes: Takes::Text,
+        default: Default::Required,
+        doc: "species on both sides of an arrow; coefficients that are given are ignored",
+    }],
+    gives: "the balanced equation as a text",
+    doc: "Solves for the smallest whole stoichiometric numbers, exactly. Refused where there is none, or more than one \
+          independent solution.",
+    source: "conservation of each element and of charge",
+    example: "balance(\"CH4(g) + O2(g) -> CO2(g) + H2O(g)\")",
+    claims: &[],
+    alternatives: &[],
+    run: |cx, call| {
+        let party = |name: &str| {
+            let species = cx.data().species(name)?;
+            Ok(Party { name: species.id.to_string(), composition: species.composition, charge: species.charge })
+        };
+        let balanced = balance::balance(call.text(0), &party)?;
+        Ok(Value::Text(balanced.to_string().into()))
+    },
+    check_line: None,
+};

@@ -1,0 +1,62 @@
+//! How large a price may be before an assumption counts as strained, where the analyst set no limit.
+//!
+//! With a full u: the larger of u/10 and half a unit of the last digit reported. Without: 0.05 kJ/mol times the largest
+//! |ν|. With a partial u: the larger of that and a tenth of the stated part. Scaled alike for S and Cp (t/T) and for ln K
+//! (t/RT). Values that are no reaction property: 1 %. (Common practice, no source.)
+
+use crate::model::card::{Call, Value, call_of};
+use crate::num::math;
+use crate::quantity::Quantity;
+use crate::record::node;
+use crate::record::spread::Spread;
+use crate::units::What;
+use crate::units::constants::ConstantSet;
+
+/// 0.05 kJ/mol.
+const PER_NU: f64 = 50.0;
+const OTHERWISE: f64 = 0.01;
+
+/// The default tolerance of a value, in its SI unit.
+pub fn default(value: &Quantity, constants: &ConstantSet) -> f64 {
+    let spread = value.spread();
+    if let Spread::Full(u) = spread
+        && u > 0.0
+    {
+        return (u / 10.0).max(value.shown().half_digit_si);
+    }
+    let fixed = scale(value, constants).map_or(OTHERWISE * value.si().abs(), |per_nu| per_nu * largest_nu(value));
+    match spread {
+        Spread::Partial { u, .. } => fixed.max(u / 10.0),
+        _ => fixed,
+    }
+}
+
+/// How large the prices of all rows that hold may be together: u/3, where u is complete. Where it is not, the stated part
+/// says little, and the limit keeps the same proportion to the tolerance of one row, 10/3.
+pub fn together(value: &Quantity, one: f64) -> f64 {
+    match value.spread() {
+        Spread::Full(u) if u > 0.0 => u / 3.0,
+        spread => spread.u().map_or(0.0, |u| u / 3.0).max(one * 10.0 / 3.0),
+    }
+}
+
+/// The tolerance for |ν| = 1, for values that are reaction properties at one temperature.
+fn scale(value: &Quantity, constants: &ConstantSet) -> Option<f64> {
+    let t_k = value.kind().state().and_then(|state| state.t_k);
+    let reaction = value.dim().is_per_reaction();
+    match value.kind().what {
+        What::S | What::Cp | What::Cv if reaction => t_k.map(|t| PER_NU / t),
+        // A tolerance in ln K, taken to K itself.
+        What::K => t_k.map(|t| value.si() * math::expm1(PER_NU / (constants.molar_gas.value * t))),
+        _ if reaction => Some(PER_NU),
+        _ => None,
+    }
+}
+
+fn largest_nu(value: &Quantity) -> f64 {
+    let largest = |call: &Call| match &call.args[..] {
+        [Value::Reaction(reaction), ..] => reaction.largest_nu(),
+        _ => 1.0,
+    };
+    node::history(value.node()).iter().filter_map(|node| call_of(node).map(largest)).fold(1.0, f64::max)
+}
