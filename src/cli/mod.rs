@@ -24,17 +24,17 @@ struct Arguments {
 
 #[derive(Subcommand)]
 enum Command {
+    Run(run::Run),
     Install(install::Install),
     Kernel(kernel::Kernel),
-    Run(run::Run),
 }
 
 /// Runs the program.
 pub fn run() -> ExitCode {
     let done = match Arguments::parse().command {
+        Command::Run(command) => command.run(),
         Command::Install(command) => command.run(),
         Command::Kernel(command) => command.run(),
-        Command::Run(command) => command.run(),
     };
     done.unwrap_or_else(|fault| {
         // There is nobody to tell when stderr is closed.

@@ -1,17 +1,20 @@
 //! `hessbook run`: a notebook or script from the command line.
 
 use std::collections::BTreeMap;
-use std::io::IsTerminal;
+use std::io::{self, IsTerminal, Write};
 use std::path::PathBuf;
 use std::process::ExitCode;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
 
 use clap::{Args, ValueEnum};
+use serde::Deserialize;
 
 use crate::fault::Fault;
 use crate::notebook::file::{FileError, Output};
 use crate::notebook::run::{RunRecord, RunStatus, Source, Watcher, run};
+use crate::render::report::{self, Record};
+use crate::render::{Bundle, text};
 use crate::session::{Session, on_big_stack};
 
 use super::Done;
@@ -54,7 +57,7 @@ impl Run {
     pub(super) fn run(self) -> Done {
         let stop = Arc::new(AtomicBool::new(false));
         if let Err(error) = signal_hook::flag::register(signal_hook::consts::SIGINT, Arc::clone(&stop)) {
-            eprintln!("hessbook: Ctrl-C cannot be listened for: {error}");
+            err(&format!("hessbook: Ctrl-C cannot be listened for: {error}\n"));
         }
         Ok(match on_big_stack(move || executed(&self, stop))? {
             RunStatus::Ok => ExitCode::SUCCESS,
@@ -93,10 +96,19 @@ struct Progress {
     terminal: bool,
 }
 
+/// Writes to standard output. A reader that went away (`| head`) ends the output, not the run.
+fn out(text: &str) {
+    let _ = io::stdout().lock().write_all(text.as_bytes());
+}
+
+fn err(text: &str) {
+    let _ = io::stderr().lock().write_all(text.as_bytes());
+}
+
 impl Progress {
     fn clear(&self) {
         if self.terminal {
-            eprint!("\r\x1b[K");
+            err("\r\x1b[K");
         }
     }
 }
@@ -104,7 +116,7 @@ impl Progress {
 impl Watcher for Progress {
     fn begins(&mut self, cell: &str, nth: usize, of: usize) {
         if self.terminal && of > 1 {
-            eprint!("\r\x1b[K{cell} ({nth} of {of})");
+            err(&format!("\r\x1b[K{cell} ({nth} of {of})"));
         }
     }
 
@@ -114,10 +126,20 @@ impl Watcher for Progress {
         }
         self.clear();
         match output {
-            Output::Stream { stderr: true, text } => eprint!("{text}"),
-            Output::Stream { stderr: false, text } => print!("{text}"),
-            Output::Display(bundle) | Output::Result(bundle) => println!("{}\n", bundle.plain().trim_end()),
+            Output::Stream { stderr: true, text } => err(text),
+            Output::Stream { stderr: false, text } => out(text),
+            Output::Display { bundle, .. } | Output::Result(bundle) => {
+                out(&format!("{}\n\n", bundle.plain().trim_end()))
+            }
             Output::Error { .. } => {}
+        }
+    }
+
+    fn updates(&mut self, bundle: &Bundle) {
+        let record = bundle.data.get(report::MIME).and_then(|record| Record::deserialize(record).ok());
+        if let (Format::Text, Some(record)) = (self.format, record) {
+            self.clear();
+            out(&format!("{}\n\n", text::decisions(&record)));
         }
     }
 }
@@ -127,14 +149,14 @@ fn print(record: &RunRecord, format: Format) {
         Format::Json => {
             let text =
                 serde_json::to_string_pretty(record).unwrap_or_else(|e| unreachable!("a record is plain strings: {e}"));
-            println!("{text}");
+            out(&format!("{text}\n"));
         }
         Format::Text => {
             if !record.parameters.is_empty() {
-                println!("parameters");
+                out("parameters\n");
                 for parameter in &record.parameters {
                     let set = if parameter.set { " (set)" } else { "" };
-                    println!("  {} = {}{set}", parameter.name, parameter.value);
+                    out(&format!("  {} = {}{set}\n", parameter.name, parameter.value));
                 }
             }
             for fault in &record.faults {
@@ -142,7 +164,7 @@ fn print(record: &RunRecord, format: Format) {
                     (0, _) => fault.cell.clone(),
                     (line, column) => format!("{}, line {line}, column {column}", fault.cell),
                 };
-                eprintln!("{place}: {}\n  try: {}\n  ({})", fault.message, fault.hint, fault.code);
+                err(&format!("{place}: {}\n  try: {}\n  ({})\n", fault.message, fault.hint, fault.code));
             }
         }
     }

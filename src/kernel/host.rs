@@ -188,6 +188,21 @@ impl<'a> CellHost<'a> {
         }
     }
 
+    fn display(&mut self, msg_type: &'static str, bundle: &Bundle, id: Option<&str>) {
+        if self.silent {
+            return;
+        }
+        let mut content = display(bundle);
+        if let Some(id) = id {
+            content["transient"] = json!({"display_id": id});
+        }
+        if self.allowance.show(content.to_string().len()) {
+            self.outbox.broadcast(msg_type, self.parent, &content);
+        } else {
+            self.cut();
+        }
+    }
+
     /// Says once that the rest is left out.
     fn cut(&mut self) {
         if !self.allowance.spent {
@@ -209,16 +224,12 @@ impl Host for CellHost<'_> {
         }
     }
 
-    fn show(&mut self, bundle: &Bundle) {
-        if self.silent {
-            return;
-        }
-        let content = display(bundle);
-        if self.allowance.show(content.to_string().len()) {
-            self.outbox.broadcast("display_data", self.parent, &content);
-        } else {
-            self.cut();
-        }
+    fn show(&mut self, bundle: &Bundle, id: Option<&str>) {
+        self.display("display_data", bundle, id);
+    }
+
+    fn update(&mut self, bundle: &Bundle, id: &str) {
+        self.display("update_display_data", bundle, Some(id));
     }
 }
 

@@ -156,7 +156,8 @@ fn row(
 ) -> Row {
     let price = price.map(|price| in_unit(value, price));
     let note = match &finding.tested {
-        Tested::True { how } | Tested::Better { how, .. } | Tested::Given { how, .. } => how.clone(),
+        Tested::True { how } | Tested::Given { how, .. } => how.clone(),
+        Tested::Better { how, .. } => format!("against {how}"),
         Tested::False { why, .. } => why.clone(),
         Tested::Missing { what } => what.clone(),
     };
@@ -189,7 +190,9 @@ fn row(
 pub fn signed(value: &Quantity, price: f64) -> String {
     let half_digit = in_unit(value, value.shown().half_digit_si);
     let of_value = if half_digit > 0.0 { round::decimals_of_digit(2.0 * half_digit) } else { 3 };
-    let decimals = if price == 0.0 { 0 } else { of_value.max(round::decimals_for(price.abs()).min(of_value + 2)) };
+    // Two digits of the price itself, or those of the value, but no more than six in all.
+    let own = round::decimals_for(price.abs());
+    let decimals = if price == 0.0 { 0 } else { of_value.max(own.min(of_value + 2)).min((own + 4).max(0)) };
     let text = round::fixed(price, decimals);
     if price > 0.0 && !text.starts_with('-') && text != "0" { format!("+{text}") } else { text }
 }

@@ -65,10 +65,21 @@ pub struct CodeCell {
 /// One output of a cell, as the format stores it.
 #[derive(Clone, Debug, PartialEq)]
 pub enum Output {
-    Stream { stderr: bool, text: String },
-    Display(Bundle),
+    Stream {
+        stderr: bool,
+        text: String,
+    },
+    /// Shown in the middle of a cell; what has an id may be updated later.
+    Display {
+        bundle: Bundle,
+        id: Option<String>,
+    },
     Result(Bundle),
-    Error { name: String, message: String, trace: Vec<String> },
+    Error {
+        name: String,
+        message: String,
+        trace: Vec<String>,
+    },
 }
 
 /// A notebook with everything that was in its file.
@@ -230,7 +241,7 @@ fn stored_output(output: &Output, count: Option<u32>) -> Value {
         Output::Stream { stderr, text } => {
             json!({"name": if *stderr { "stderr" } else { "stdout" }, "output_type": "stream", "text": lines(text)})
         }
-        Output::Display(bundle) => json!({"data": data(bundle), "metadata": {}, "output_type": "display_data"}),
+        Output::Display { bundle, .. } => json!({"data": data(bundle), "metadata": {}, "output_type": "display_data"}),
         Output::Result(bundle) => {
             json!({"data": data(bundle), "execution_count": count, "metadata": {}, "output_type": "execute_result"})
         }

@@ -104,40 +104,50 @@ pub trait Watcher {
     fn begins(&mut self, cell: &str, nth: usize, of: usize);
     /// What the running cell writes or shows.
     fn gives(&mut self, output: &Output);
+    /// The new content of something it has shown.
+    fn updates(&mut self, bundle: &Bundle);
 }
 
 /// Runs everything, and puts what came out into the notebook, where it is one.
 pub fn run(file: &str, source: &mut Source, session: &mut Session, watcher: &mut dyn Watcher) -> RunRecord {
     let cells = source.cells();
+    let mut ran: Vec<Ran> = Vec::new();
     let mut faults = Vec::new();
-    let mut count = 0;
-    for (nth, (name, text, cell)) in cells.iter().enumerate() {
+    for (nth, (name, text, _)) in cells.iter().enumerate() {
         if text.trim().is_empty() {
-            store(source, cell.as_ref(), None, &[]);
+            ran.push(Ran { count: None, outputs: Vec::new() });
             continue;
         }
         watcher.begins(name, nth + 1, cells.len());
-        let mut host = Collecting { outputs: Vec::new(), watcher };
+        let count = ran.iter().filter_map(|cell| cell.count).max().unwrap_or(0) + 1;
+        ran.push(Ran { count: Some(count), outputs: Vec::new() });
+        let mut host = Collecting { ran: &mut ran, watcher };
         let outcome = session.run_cell(name, text, &mut host);
-        let mut outputs = host.outputs;
-        count += 1;
-        if let Some(shown) = outcome.shown {
-            let output = Output::Result(shown);
+        let mut last = |output: Output| {
             watcher.gives(&output);
-            outputs.push(output);
+            if let Some(cell) = ran.last_mut() {
+                cell.outputs.push(output);
+            }
+        };
+        if let Some(shown) = outcome.shown {
+            last(Output::Result(shown));
         }
         if let Err(fault) = &outcome.result {
             let trace = fault.to_string().lines().map(str::to_owned).collect();
-            outputs.push(Output::Error { name: fault.code().to_owned(), message: fault.message().to_owned(), trace });
+            last(Output::Error { name: fault.code().to_owned(), message: fault.message().to_owned(), trace });
             faults.push(FaultRecord::of(fault, name));
-        }
-        store(source, cell.as_ref(), Some(count), &outputs);
-        if outcome.result.is_err() {
             break;
         }
     }
     if let (true, Some(fault)) = (faults.is_empty(), session.unused_setting()) {
         faults.push(FaultRecord::of(&fault, file));
+    }
+    if let Source::Notebook(notebook) = source {
+        for ((_, _, cell), ran) in cells.iter().zip(&ran) {
+            if let Some(cell) = cell {
+                notebook.set_outputs(cell, ran.count, &ran.outputs);
+            }
+        }
     }
     RunRecord {
         file: file.to_owned(),
@@ -152,30 +162,50 @@ pub fn run(file: &str, source: &mut Source, session: &mut Session, watcher: &mut
     }
 }
 
-fn store(source: &mut Source, cell: Option<&CodeCell>, count: Option<u32>, outputs: &[Output]) {
-    if let (Source::Notebook(notebook), Some(cell)) = (source, cell) {
-        notebook.set_outputs(cell, count, outputs);
-    }
+/// What one cell gave.
+struct Ran {
+    count: Option<u32>,
+    outputs: Vec<Output>,
 }
 
-/// Keeps what a cell gives, in order, neighbouring texts of one stream joined.
+/// Keeps what the running cell, the last of `ran`, gives: in order, neighbouring texts of one stream joined.
 struct Collecting<'a> {
-    outputs: Vec<Output>,
+    ran: &'a mut Vec<Ran>,
     watcher: &'a mut dyn Watcher,
+}
+
+impl Collecting<'_> {
+    fn outputs(&mut self) -> &mut Vec<Output> {
+        match self.ran.last_mut() {
+            Some(cell) => &mut cell.outputs,
+            None => unreachable!("a cell runs"),
+        }
+    }
 }
 
 impl Host for Collecting<'_> {
     fn write(&mut self, stderr: bool, text: &str) {
         self.watcher.gives(&Output::Stream { stderr, text: text.to_owned() });
-        match self.outputs.last_mut() {
+        match self.outputs().last_mut() {
             Some(Output::Stream { stderr: same, text: before }) if *same == stderr => before.push_str(text),
-            _ => self.outputs.push(Output::Stream { stderr, text: text.to_owned() }),
+            _ => self.outputs().push(Output::Stream { stderr, text: text.to_owned() }),
         }
     }
 
-    fn show(&mut self, bundle: &Bundle) {
-        let output = Output::Display(bundle.clone());
+    fn show(&mut self, bundle: &Bundle, id: Option<&str>) {
+        let output = Output::Display { bundle: bundle.clone(), id: id.map(str::to_owned) };
         self.watcher.gives(&output);
-        self.outputs.push(output);
+        self.outputs().push(output);
+    }
+
+    fn update(&mut self, bundle: &Bundle, id: &str) {
+        self.watcher.updates(bundle);
+        for output in self.ran.iter_mut().flat_map(|cell| &mut cell.outputs) {
+            if let Output::Display { bundle: shown, id: Some(known) } = output
+                && known == id
+            {
+                *shown = bundle.clone();
+            }
+        }
     }
 }

@@ -14,8 +14,10 @@ use crate::script::memory;
 pub trait Host {
     /// Text printed by the cell.
     fn write(&mut self, stderr: bool, text: &str);
-    /// Something to show in the middle of a cell: a report, a picture.
-    fn show(&mut self, bundle: &Bundle);
+    /// Something to show in the middle of a cell: a report, a picture. What has an id may be updated later.
+    fn show(&mut self, bundle: &Bundle, id: Option<&str>);
+    /// The new content of everything that was shown under an id, in this cell or an earlier one.
+    fn update(&mut self, bundle: &Bundle, id: &str);
 }
 
 /// The host of the cell that is running, if one is.
@@ -70,7 +72,9 @@ mod tests {
             self.0.push(text.to_owned());
         }
 
-        fn show(&mut self, _bundle: &Bundle) {}
+        fn show(&mut self, _bundle: &Bundle, _id: Option<&str>) {}
+
+        fn update(&mut self, _bundle: &Bundle, _id: &str) {}
     }
 
     #[test]

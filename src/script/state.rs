@@ -184,8 +184,13 @@ impl Shared {
     }
 
     /// Shows something in the output of the running cell, at once.
-    pub fn show(&self, bundle: &Bundle) {
-        self.host.with(|host: &mut dyn Host| host.show(bundle));
+    pub fn show(&self, bundle: &Bundle, id: Option<&str>) {
+        self.host.with(|host: &mut dyn Host| host.show(bundle, id));
+    }
+
+    /// Changes what was shown under an id, wherever it stands.
+    pub fn update(&self, bundle: &Bundle, id: &str) {
+        self.host.with(|host: &mut dyn Host| host.update(bundle, id));
     }
 
     /// Writes to the output of the running cell, at once.
@@ -294,9 +299,11 @@ mod tests {
     impl Host for Shows {
         fn write(&mut self, _stderr: bool, _text: &str) {}
 
-        fn show(&mut self, bundle: &Bundle) {
+        fn show(&mut self, bundle: &Bundle, _id: Option<&str>) {
             self.0.push(bundle.plain().to_owned());
         }
+
+        fn update(&mut self, _bundle: &Bundle, _id: &str) {}
     }
 
     #[test]
@@ -307,7 +314,7 @@ mod tests {
         engine.register_fn("number_here", move |context: NativeCallContext<'_>| {
             let ordinal = inside.state_mut().next_ordinal();
             let place = place_of(&context).map(|place| place.to_string()).unwrap_or_default();
-            inside.show(&Bundle::text(format!("{ordinal} at {place}")));
+            inside.show(&Bundle::text(format!("{ordinal} at {place}")), None);
         });
         // Text is inserted behind `catch (e) {`, and the column is still the one that was written.
         let code = "number_here();\ntry { 1 } catch (e) { 2 } number_here()";

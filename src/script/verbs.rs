@@ -1,7 +1,7 @@
 //! What an analyst says in a notebook beside computing: report, parameter, justify, tolerate, require, assumptions.
 //!
-//! These change the session's own state, which a failed cell takes back. The surprise: deciding about an assumption shows
-//! the result again, so that a notebook's page and its records never lag behind the decision.
+//! These change the session's own state, which a failed cell takes back. The surprise: deciding about an assumption
+//! changes the result where it was shown, so that a notebook's page and its records never lag behind the decision.
 
 use std::cell::Cell;
 use std::rc::Rc;
@@ -249,13 +249,7 @@ impl Verbs {
             None => state.reports.push(one),
         }
         drop(state);
-        self.show(cx, label)
-    }
-
-    /// Shows a report with the decisions in force.
-    fn show(&self, cx: &Cx, label: &str) -> Result<(), Fault> {
-        let report = self.reviewed(cx, label)?;
-        self.shared.show(&report.bundle());
+        self.shared.show(&self.reviewed(cx, label)?.bundle(), Some(&display_id(label)));
         Ok(())
     }
 
@@ -298,7 +292,8 @@ impl Verbs {
         let row = self.row(cx, id, label, about)?;
         let dealing = Dealing { id: row.id, label: label.to_owned(), subject: row.subject, decided };
         self.shared.state_mut().dealings.push(dealing);
-        self.show(cx, label)
+        self.shared.update(&self.reviewed(cx, label)?.bundle(), &display_id(label));
+        Ok(())
     }
 
     fn justify(&self, cx: &Cx, id: &str, label: &str, reason: &str, about: Option<&str>) -> Result<(), Fault> {
@@ -364,6 +359,11 @@ impl Verbs {
         state.parameters.push(parameter);
         Ok(value)
     }
+}
+
+/// Under which id a report is shown, so that a later decision changes it where it stands.
+fn display_id(label: &str) -> String {
+    format!("report: {label}")
 }
 
 fn quantity_of(cx: &Cx, value: &Dynamic) -> Result<Quantity, Fault> {

@@ -78,7 +78,8 @@ impl Session {
         struct Silent;
         impl Host for Silent {
             fn write(&mut self, _stderr: bool, _text: &str) {}
-            fn show(&mut self, _bundle: &Bundle) {}
+            fn show(&mut self, _bundle: &Bundle, _id: Option<&str>) {}
+            fn update(&mut self, _bundle: &Bundle, _id: &str) {}
         }
         let shown = self.run("expression", code, &mut Silent, cell::Keep::Nothing)?;
         Ok(shown.unwrap_or_else(|| Bundle::text("")))
@@ -241,7 +242,9 @@ mod tests {
     impl Host for Silent {
         fn write(&mut self, _stderr: bool, _text: &str) {}
 
-        fn show(&mut self, _bundle: &Bundle) {}
+        fn show(&mut self, _bundle: &Bundle, _id: Option<&str>) {}
+
+        fn update(&mut self, _bundle: &Bundle, _id: &str) {}
     }
 
     #[test]
