@@ -247,6 +247,32 @@ fn an_interrupt_ends_the_cell_and_those_behind_it_and_keeps_the_variables() {
 }
 
 #[test]
+fn a_cell_that_is_run_again_keeps_its_name_and_may_report_again() {
+    run(async {
+        let (_kernel, mut client) = Kernel::start().await;
+        let mut places = Vec::new();
+        for (id, code) in [
+            ("a", "report(\"heat\", q(\"1 kJ\"));"),
+            ("a", "report(\"heat\", q(\"2 kJ\"));"),
+            ("b", "report(\"heat\", q(\"3 kJ\"));"),
+            ("a", "throw \"on purpose\""),
+        ] {
+            let header =
+                client.send_with(Channel::Shell, "execute_request", json!({"cellId": id}), json!({"code": code})).await;
+            let reply = client.finish(Channel::Shell, &header, true).await.reply.unwrap().content;
+            let traceback = reply["traceback"].to_string();
+            places.push(match reply["status"].as_str() {
+                Some("ok") => "ok",
+                _ if traceback.contains("at: cell-1,") => "cell-1",
+                _ if traceback.contains("at: cell-3,") => "cell-3",
+                _ => panic!("{reply}"),
+            });
+        }
+        assert_eq!(places, ["ok", "ok", "cell-3", "cell-1"]);
+    });
+}
+
+#[test]
 fn a_signal_interrupts_an_endless_print_and_never_kills() {
     run(async {
         let (mut kernel, mut client) = Kernel::start().await;
@@ -295,6 +321,7 @@ fn a_kernel_that_is_shut_down_while_busy_sends_its_last_messages_and_ends_well()
     run(async {
         let (mut kernel, mut client) = Kernel::start().await;
         let running = client.begin("print(\"last words\"); loop { }").await;
+        client.until("the text", |message| message.content["text"] == "last words\n").await;
         let waiting = client.send(Channel::Shell, "execute_request", json!({"code": "1"})).await;
         let shutdown = client.send(Channel::Control, "shutdown_request", json!({"restart": false})).await;
         assert_eq!(client.finish(Channel::Control, &shutdown, true).await.status(), "ok");

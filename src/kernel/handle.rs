@@ -57,7 +57,7 @@ pub fn execute(worker: &mut Worker, request: &Request) -> Value {
         worker.outbox.broadcast("execute_input", &request.header, &input);
     }
     // A cell that is not counted must not pass for the last one that was.
-    let cell = if counted { format!("cell-{count}") } else { "uncounted-cell".to_owned() };
+    let cell = if counted { worker.name_of_cell(request) } else { "uncounted-cell".to_owned() };
     let ran = run(worker, request, &cell, code, silent);
     if counted {
         let output = ran.as_ref().ok().and_then(Option::as_ref).map(|shown| shown.plain().to_owned());

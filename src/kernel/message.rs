@@ -94,6 +94,8 @@ pub struct Request {
     /// The header byte for byte: replies carry it as their parent, with fields that we know nothing of.
     pub header: Bytes,
     pub msg_type: String,
+    /// Which cell of a document the request is about, where the client says so.
+    pub cell_id: Option<String>,
     pub content: Map<String, Value>,
 }
 
@@ -108,13 +110,14 @@ impl Request {
         let Envelope { identities, parts: [header, parent, metadata, content] } = Envelope::open(frames, signer)?;
         let fields = object("header", &header)?;
         object("parent header", &parent)?;
-        object("metadata", &metadata)?;
+        let metadata = object("metadata", &metadata)?;
         let content = object("content", &content)?;
         let Some(Value::String(msg_type)) = fields.get("msg_type") else {
             return Err(MessageError::NoMessageType);
         };
         let msg_type = msg_type.clone();
-        Ok(Request { number: number(), channel, identities, header, msg_type, content })
+        let cell_id = metadata.get("cellId").and_then(Value::as_str).map(str::to_owned);
+        Ok(Request { number: number(), channel, identities, header, msg_type, cell_id, content })
     }
 
     /// A text of the content.

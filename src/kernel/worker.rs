@@ -5,6 +5,7 @@
 //! happened in, never the thread.
 
 use std::any::Any;
+use std::collections::BTreeMap;
 use std::io;
 use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::sync::Arc;
@@ -29,6 +30,8 @@ pub struct Worker {
     session: Option<Session>,
     /// Execution count of the last cell that counted.
     pub count: i64,
+    /// Names of the cells that clients tell apart, by their ids.
+    names: BTreeMap<String, String>,
     pub history: History,
     pub outbox: Outbox,
     pub arrivals: Arc<Arrivals>,
@@ -38,10 +41,26 @@ impl Worker {
     /// Starts the thread; it ends when the sender is dropped and the requests before that are answered.
     pub fn start(outbox: Outbox, arrivals: Arc<Arrivals>) -> io::Result<Sender<Request>> {
         let (sender, requests) = channel();
-        let work =
-            move || Worker { session: None, count: 0, history: History::default(), outbox, arrivals }.run(&requests);
+        // Built on its thread, which a session never leaves.
+        let work = move || {
+            let (names, history) = (BTreeMap::new(), History::default());
+            Worker { session: None, count: 0, names, history, outbox, arrivals }.run(&requests);
+        };
         thread::Builder::new().name("cells".to_owned()).stack_size(STACK).spawn(work)?;
         Ok(sender)
+    }
+
+    /// The name of the cell that was just counted.
+    ///
+    /// A cell that is run again keeps the name of its first run, which in a notebook run from top to bottom is its
+    /// place among the code cells: what it reports replaces what it reported before, and what it typed is the same
+    /// input. Without an id every run is a cell of its own.
+    pub fn name_of_cell(&mut self, request: &Request) -> String {
+        let name = format!("cell-{}", self.count);
+        match &request.cell_id {
+            Some(id) => self.names.entry(id.clone()).or_insert(name).clone(),
+            None => name,
+        }
     }
 
     /// The session, built now if it was not needed before.

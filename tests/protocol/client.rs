@@ -219,11 +219,16 @@ impl Client {
 
     /// Sends a request; gives its header, by which its answers are known.
     pub async fn send(&mut self, channel: Channel, msg_type: &str, content: Value) -> Value {
+        self.send_with(channel, msg_type, json!({}), content).await
+    }
+
+    /// The same with metadata.
+    pub async fn send_with(&mut self, channel: Channel, msg_type: &str, metadata: Value, content: Value) -> Value {
         let header = json!({
             "msg_id": Uuid::new_v4().to_string(), "session": "the client's", "username": "tester \u{1d4b5}",
             "date": "2026-01-01T00:00:00Z", "msg_type": msg_type, "version": "5.4", "a field": ["of our own", null],
         });
-        let frames = self.sealed([header.to_string(), "{}".into(), "{}".into(), content.to_string()]);
+        let frames = self.sealed([header.to_string(), "{}".into(), metadata.to_string(), content.to_string()]);
         self.send_frames(channel, frames).await;
         header
     }
