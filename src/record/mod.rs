@@ -1,8 +1,10 @@
 //! What makes a value defensible: where it came from, how sure it is, and what it assumes.
 
+pub mod fold;
 pub mod node;
 pub mod register;
 pub mod spread;
 
+pub use fold::Folded;
 pub use node::{Input, LeafKey, Node, Operator, Origin, Step};
 pub use spread::{Sensitivity, Spread};

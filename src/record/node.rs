@@ -3,10 +3,10 @@
 //! Uncertainty, correlation, provenance and audit are four readings of this one graph. Leaves are told apart by
 //! [`LeafKey`], never by pointer, so a figure read twice is one input. Two traps: ids grow, so the largest id is always
 //! safe to process first in a reverse sweep; and dropping a long chain recursively would overflow the stack, so `Drop`
-//! is a loop.
+//! is a loop. Long runs of arithmetic are folded as they grow: see `fold.rs`.
 
 use std::any::Any;
-use std::cell::Cell;
+use std::cell::{Cell, OnceCell};
 use std::rc::Rc;
 use std::sync::Arc;
 
@@ -14,6 +14,7 @@ use smallvec::SmallVec;
 
 use crate::fault::Place;
 use crate::num::math;
+use crate::record::fold::{self, Folded, Run};
 use crate::source::Citation;
 use crate::units::{Dimension, Entity, Kind};
 
@@ -27,6 +28,9 @@ pub enum LeafKey {
     Constant { year: u16, name: &'static str },
     /// Typed in a notebook: where, and which evaluation of that cell.
     Typed { place: Option<Place>, ordinal: u64 },
+    /// The same text typed at the same place `count` times, as in a loop, without a stated uncertainty: taken together
+    /// when the steps that used them were folded. `first` is the ordinal of the first.
+    Repeated { place: Option<Place>, first: u64, count: u64 },
     /// Something an analyst's own step brings in, such as an assumption dealt with by widening.
     Own(Arc<str>),
 }
@@ -48,6 +52,7 @@ impl Input {
     /// What the figure is, for budgets: `formation enthalpy of CO2(g)`.
     pub fn name(&self) -> String {
         match (&self.label, &self.key) {
+            (Some(label), LeafKey::Repeated { count, .. }) => format!("{label}, typed {count} times"),
             (Some(label), _) => label.to_string(),
             (None, LeafKey::Datum { record, field, t_bits, .. }) => match t_bits {
                 0 => format!("{field} of {record}"),
@@ -55,7 +60,7 @@ impl Input {
             },
             (None, LeafKey::Constant { year, name }) => format!("{name} (CODATA {year})"),
             (None, LeafKey::Own(name)) => name.to_string(),
-            (None, LeafKey::Typed { .. }) => "a typed value".to_owned(),
+            (None, LeafKey::Typed { .. } | LeafKey::Repeated { .. }) => "a typed value".to_owned(),
         }
     }
 }
@@ -121,6 +126,8 @@ pub enum Origin {
     Input(Input),
     Operator(Operator),
     Step(Rc<dyn Step>),
+    /// A long run of arithmetic, as its linear form over what the run rested on.
+    Folded(Folded),
 }
 
 /// A value in SI units with its history.
@@ -134,6 +141,11 @@ pub struct Node {
     place: Option<Place>,
     /// The entity that an open mole was taken for here, if one was.
     bound: Option<Entity>,
+    run: Cell<Run>,
+    /// How many times other nodes have this one as an input. Further handles on it are values that someone holds.
+    users: Cell<u32>,
+    /// This node with its run folded, once a later step wanted that.
+    short: OnceCell<Rc<Node>>,
 }
 
 thread_local! {
@@ -154,11 +166,38 @@ impl Node {
         si: f64,
         dim: Dimension,
         kind: Kind,
-        inputs: SmallVec<[(Rc<Node>, f64); 2]>,
+        mut inputs: SmallVec<[(Rc<Node>, f64); 2]>,
         origin: Origin,
         place: Option<Place>,
     ) -> Self {
-        Node { id: next_id(), si, dim, kind, inputs, origin, place, bound: None }
+        let id = next_id();
+        let run = match origin {
+            Origin::Operator(_) => fold::shorten(&mut inputs, id),
+            _ => Run::NONE,
+        };
+        Node::with_id(id, si, dim, kind, inputs, origin, place, run)
+    }
+
+    /// The same value by another origin and other inputs. It keeps its id, so it is the same node to every reader.
+    pub(super) fn remade(&self, origin: Origin, inputs: SmallVec<[(Rc<Node>, f64); 2]>, run: Run) -> Self {
+        let (dim, kind, place) = (self.dim.clone(), self.kind.clone(), self.place.clone());
+        Node::with_id(self.id, self.si, dim, kind, inputs, origin, place, run)
+    }
+
+    #[expect(clippy::too_many_arguments, reason = "one private constructor, so that users are counted in one place")]
+    fn with_id(
+        id: u64,
+        si: f64,
+        dim: Dimension,
+        kind: Kind,
+        inputs: SmallVec<[(Rc<Node>, f64); 2]>,
+        origin: Origin,
+        place: Option<Place>,
+        run: Run,
+    ) -> Self {
+        inputs.iter().for_each(|(input, _)| input.users.set(input.users.get() + 1));
+        let (run, users, short) = (Cell::new(run), Cell::new(0), OnceCell::new());
+        Node { id, si, dim, kind, inputs, origin, place, bound: None, run, users, short }
     }
 
     #[must_use]
@@ -200,6 +239,18 @@ impl Node {
         self.bound
     }
 
+    pub(super) fn run(&self) -> &Cell<Run> {
+        &self.run
+    }
+
+    pub(super) fn users(&self) -> u32 {
+        self.users.get()
+    }
+
+    pub(super) fn short(&self) -> &OnceCell<Rc<Node>> {
+        &self.short
+    }
+
     pub fn input(&self) -> Option<&Input> {
         match &self.origin {
             Origin::Input(input) => Some(input),
@@ -217,12 +268,26 @@ impl Node {
 
 impl Drop for Node {
     fn drop(&mut self) {
-        let mut pending: Vec<Rc<Node>> = self.inputs.drain(..).map(|(node, _)| node).collect();
+        let mut pending = Vec::new();
+        self.let_go(&mut pending);
         while let Some(node) = pending.pop() {
             if let Ok(mut node) = Rc::try_unwrap(node) {
-                pending.extend(node.inputs.drain(..).map(|(input, _)| input));
+                node.let_go(&mut pending);
             }
         }
+    }
+}
+
+impl Node {
+    /// Takes leave of what this node rests on; what nobody else holds goes to `pending`.
+    fn let_go(&mut self, pending: &mut Vec<Rc<Node>>) {
+        for (input, _) in self.inputs.drain(..) {
+            input.users.set(input.users.get() - 1);
+            if Rc::strong_count(&input) == 1 {
+                pending.push(input);
+            }
+        }
+        pending.extend(self.short.take());
     }
 }
 
@@ -243,18 +308,25 @@ pub fn history(of: &Rc<Node>) -> Vec<Rc<Node>> {
     seen.into_values().collect()
 }
 
-/// The value of `of` had the node `changed` been `si` instead: recomputed where every step between is arithmetic,
-/// else `None`, and the caller falls back on the first derivative.
+/// The value of `of` had the node `changed` been `si` instead: recomputed where every step between is arithmetic that
+/// is still there or was linear, else `None`, and the caller falls back on the first derivative.
 pub fn replayed(of: &Rc<Node>, changed: u64, si: f64) -> Option<f64> {
     let mut values = std::collections::BTreeMap::from([(changed, si)]);
     for node in history(of) {
         if node.id <= changed || !node.inputs.iter().any(|(input, _)| values.contains_key(&input.id)) {
             continue;
         }
-        let Origin::Operator(operator) = node.origin else { return None };
-        let inputs: SmallVec<[f64; 4]> =
-            node.inputs.iter().map(|(input, _)| values.get(&input.id).copied().unwrap_or(input.si)).collect();
-        values.insert(node.id, operator.value(&inputs));
+        let inputs = node.inputs.iter().map(|(input, _)| values.get(&input.id).copied().unwrap_or(input.si));
+        let si = match &node.origin {
+            Origin::Operator(operator) => operator.value(&inputs.collect::<SmallVec<[f64; 4]>>()),
+            // A run of sums and bare factors is its own linear form, so nothing is lost.
+            Origin::Folded(folded) if folded.linear => {
+                let moved = inputs.zip(&node.inputs).map(|(now, (input, partial))| partial * (now - input.si));
+                node.si + moved.sum::<f64>()
+            }
+            _ => return None,
+        };
+        values.insert(node.id, si);
     }
     values.get(&of.id).copied()
 }
