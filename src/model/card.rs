@@ -15,6 +15,7 @@ use thiserror::Error;
 
 use crate::data::catalog::Catalog;
 use crate::fault::{Explain, Fault, Place};
+use crate::model::account::Account;
 use crate::model::reaction::Reaction;
 use crate::quantity::{Mismatch, Quantity, text};
 use crate::record::node::{Node, Step};
@@ -33,6 +34,8 @@ pub enum Value {
     List(Vec<Value>),
     Options(Rc<BTreeMap<String, Value>>),
     Reaction(Rc<Reaction>),
+    /// An answer to be read.
+    Account(Account),
     /// Something no formula takes, by its name in words.
     Other(Rc<str>),
     Nothing,
@@ -49,6 +52,7 @@ impl Value {
             Value::List(_) => "a list",
             Value::Options(_) => "a map of options",
             Value::Reaction(_) => "a reaction",
+            Value::Account(account) => account.sort(),
             Value::Other(name) => name,
             Value::Nothing => "nothing",
         }
@@ -269,7 +273,7 @@ impl Step for Call {
                         _ => None,
                     }));
                 }
-                Value::Flag(_) | Value::List(_) | Value::Other(_) | Value::Nothing => {}
+                Value::Flag(_) | Value::List(_) | Value::Account(_) | Value::Other(_) | Value::Nothing => {}
             }
         }
         format!("{}({})", self.card.name, words.join(", "))

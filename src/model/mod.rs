@@ -2,16 +2,19 @@
 //!
 //! [`CARDS`] is the one list of what the program can compute. Script binding, help, catalogue and checks read it.
 
+pub mod account;
 pub mod basis;
 pub mod card;
 pub mod claims;
 pub mod conditions;
+pub mod derivation;
 pub mod function;
 pub mod gather;
 pub mod property;
 pub mod quantities;
 pub mod reaction;
 pub mod review;
+pub mod symbols;
 pub mod tolerance;
 
 use card::Card;
@@ -34,4 +37,5 @@ pub const CARDS: &[&Card] = &[
     &quantities::UNCERTAINTY,
     &quantities::AGREES,
     &quantities::ASSUME,
+    &derivation::DERIVATION,
 ];

@@ -294,22 +294,28 @@ fn silent_in_full(silent: &[(String, Vec<String>)]) -> String {
 }
 
 /// The figures a value was computed from: by its formula's own line, or, for arithmetic, the line of each formula in it.
-fn check_line(cx: &Cx, value: &Quantity, sources: &mut Sources) -> String {
+pub(crate) fn check_line(cx: &Cx, value: &Quantity, sources: &mut Sources) -> String {
     if let Some(line) = own_line(cx, value.node(), sources) {
         return line;
     }
     let Origin::Operator(operator) = value.node().origin() else { return String::new() };
-    let mut names = Vec::new();
-    let mut lines = Vec::new();
-    for (input, _) in value.node().inputs() {
-        let number = round::shortest(Quantity::of_node(Rc::clone(input)).unit().from_si(input.si()));
-        names.push(if number.starts_with('-') { format!("({number})") } else { number });
-        if let Some(line) = own_line(cx, input, sources) {
-            lines.push(line);
-        }
-    }
-    let result = round::shortest(Quantity::of_node(Rc::clone(value.node())).unit().from_si(value.si()));
-    let symbol = |operator: &Operator| match (operator, &names[..]) {
+    let lines: Vec<String> =
+        value.node().inputs().iter().filter_map(|(input, _)| own_line(cx, input, sources)).collect();
+    let own = arithmetic(value.node(), *operator);
+    if lines.is_empty() { own } else { format!("{}; {own}", lines.join("; ")) }
+}
+
+/// A step of arithmetic in figures, `2 × (-37.5) = -75`, each in the usual unit of its dimension.
+pub(crate) fn arithmetic(node: &Rc<Node>, operator: Operator) -> String {
+    let figure = |node: &Rc<Node>| round::shortest(Quantity::of_node(Rc::clone(node)).unit().from_si(node.si()));
+    let bracketed = |number: String| if number.starts_with('-') { format!("({number})") } else { number };
+    let names: Vec<String> = node.inputs().iter().map(|(input, _)| bracketed(figure(input))).collect();
+    format!("{} = {}", operation(operator, &names), figure(node))
+}
+
+/// An operation on named operands, as it is written.
+pub(crate) fn operation(operator: Operator, names: &[String]) -> String {
+    match (operator, names) {
         (Operator::Add, [a, b]) => format!("{a} + {b}"),
         (Operator::Subtract, [a, b]) => format!("{a} - {b}"),
         (Operator::Multiply, [a, b]) => format!("{a} × {b}"),
@@ -323,12 +329,10 @@ fn check_line(cx: &Cx, value: &Quantity, sources: &mut Sources) -> String {
         (Operator::Ln, [a]) => format!("ln {a}"),
         (Operator::Absolute, [a]) => format!("|{a}|"),
         (_, all) => format!("({}) / {}", all.join(" + "), all.len()),
-    };
-    let own = format!("{} = {result}", symbol(operator));
-    if lines.is_empty() { own } else { format!("{}; {own}", lines.join("; ")) }
+    }
 }
 
-fn own_line(cx: &Cx, node: &Rc<Node>, sources: &mut Sources) -> Option<String> {
+pub(crate) fn own_line(cx: &Cx, node: &Rc<Node>, sources: &mut Sources) -> Option<String> {
     let call = call_of(node)?;
     let line = call.card.check_line?;
     Some(line(cx, call, &Quantity::of_node(Rc::clone(node)), sources))

@@ -3,6 +3,7 @@
 //! A [`Bundle`] holds one output in several forms. A report's forms are all made from one [`report::Report`], so that
 //! text, HTML, LaTeX and the machine record cannot disagree.
 
+pub mod derivation;
 pub mod headline;
 pub mod html;
 pub mod latex;
@@ -12,6 +13,7 @@ pub mod text;
 
 use std::collections::BTreeMap;
 
+use crate::model::account::Account;
 use crate::model::reaction::Reaction;
 use crate::quantity::Quantity;
 use crate::render::headline::Headline;
@@ -35,6 +37,15 @@ pub fn reaction(reaction: &Reaction) -> Bundle {
     Bundle::text(reaction.text())
         .with_text("text/html", html::equation(reaction))
         .with_text("text/latex", latex::equation(reaction))
+}
+
+/// An answer to be read, in text, HTML and LaTeX.
+pub fn account(account: &Account) -> Bundle {
+    match account {
+        Account::Derivation(derivation) => Bundle::text(derivation::text(derivation))
+            .with_text("text/html", derivation::html(derivation))
+            .with_text("text/latex", derivation::latex(derivation)),
+    }
 }
 
 impl Bundle {

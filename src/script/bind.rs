@@ -13,6 +13,7 @@ use rhai::{Array, Dynamic, Engine, EvalAltResult, FuncRegistration, ImmutableStr
 
 use crate::fault::{Fault, Place};
 use crate::model::CARDS;
+use crate::model::account::Account;
 use crate::model::card::{self, Card, Cx, On, Value};
 use crate::model::reaction::Reaction;
 use crate::quantity::{Quantity, text};
@@ -26,6 +27,7 @@ pub type Native<T> = Result<T, Box<EvalAltResult>>;
 pub fn register(engine: &mut Engine, shared: &Shared) {
     engine.register_type_with_name::<Quantity>("quantity");
     engine.register_type_with_name::<Rc<Reaction>>("reaction");
+    engine.register_type_with_name::<Account>("answer");
     typed(engine, shared);
     for card in CARDS {
         bind(engine, card, shared);
@@ -71,6 +73,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     if let Some(reaction) = value.read_lock::<Rc<Reaction>>() {
         return Value::Reaction(Rc::clone(&reaction));
     }
+    if let Some(account) = value.read_lock::<Account>() {
+        return Value::Account(account.clone());
+    }
     if let Some(text) = value.read_lock::<ImmutableString>() {
         return Value::Text(text.as_str().into());
     }
@@ -105,6 +110,7 @@ fn from_value(value: Value) -> Dynamic {
             options.iter().map(|(name, value)| (name.as_str().into(), from_value(value.clone()))).collect(),
         ),
         Value::Reaction(reaction) => Dynamic::from(reaction),
+        Value::Account(account) => Dynamic::from(account),
         Value::Nothing => Dynamic::UNIT,
     }
 }

@@ -10,6 +10,7 @@ use std::rc::Rc;
 use rhai::{Array, Blob, Dynamic, Engine, FnPtr, ImmutableString, Map};
 
 use crate::fault::Fault;
+use crate::model::account::Account;
 use crate::model::reaction::Reaction;
 use crate::quantity::Quantity;
 use crate::render::{self, Bundle};
@@ -31,6 +32,9 @@ fn own(value: &Dynamic) -> Option<Bundle> {
     }
     if let Some(reaction) = value.read_lock::<Rc<Reaction>>() {
         return Some(render::reaction(&reaction));
+    }
+    if let Some(account) = value.read_lock::<Account>() {
+        return Some(render::account(&account));
     }
     value.read_lock::<Fault>().map(|fault| Bundle::text(fault.to_string()))
 }
@@ -181,6 +185,7 @@ pub fn register(engine: &mut Engine) {
         TypeId::of::<Blob>(),
         TypeId::of::<Range<i64>>(),
         TypeId::of::<RangeInclusive<i64>>(),
+        TypeId::of::<Account>(),
     ];
     for name in ["print", "debug", "to_string", "to_debug"] {
         for kind in kinds {

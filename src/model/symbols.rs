@@ -1,0 +1,125 @@
+//! The equation behind each formula, with its symbols, as a derivation shows it.
+//!
+//! [`of`] finds it by the card's id; a card that is not here is explained by its own words and arguments. The surprise:
+//! LaTeX stands beside the text, since neither can be made of the other without loss.
+
+use crate::model::card::Card;
+
+/// An equation with what its symbols mean.
+#[derive(Debug, PartialEq)]
+pub struct Formula {
+    pub text: &'static str,
+    pub latex: &'static str,
+    pub symbols: &'static [Symbol],
+}
+
+/// One symbol of an equation.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Symbol {
+    pub text: &'static str,
+    pub latex: &'static str,
+    pub unit: &'static str,
+    pub meaning: &'static str,
+}
+
+const fn symbol(text: &'static str, latex: &'static str, unit: &'static str, meaning: &'static str) -> Symbol {
+    Symbol { text, latex, unit, meaning }
+}
+
+const NU: Symbol = symbol("ν", r"\nu", "1", "stoichiometric numbers as written, positive for products");
+const FORMATION: Symbol = symbol(
+    "ΔfH°",
+    r"\Delta_\mathrm{f}H^\circ",
+    "kJ/mol",
+    "formation enthalpies at 298.15 K, all from one dataset unless another is asked for",
+);
+const INCREMENT: Symbol = symbol(
+    "H(T) - H(298.15 K)",
+    r"H(T)-H(298.15\,\mathrm{K})",
+    "kJ/mol",
+    "enthalpy increments, closed-form integrals of Cp",
+);
+const ENTROPY: Symbol =
+    symbol("S°", r"S^\circ", "J/(K mol)", "third-law entropies without nuclear spin, closed-form integrals of Cp/T");
+const TEMPERATURE: Symbol = symbol("T", "T", "K", "temperature");
+const DELTA_N: Symbol = symbol("Δn(gas)", r"\Delta n(\mathrm{gas})", "1", "sum of ν of the gases");
+const GAS_CONSTANT: Symbol = symbol("R", "R", "J/(K mol)", "gas constant of the constant set in force");
+
+static ENTHALPY: Formula = Formula {
+    text: "ΔrH°(T) = Σ ν [ΔfH°(298.15 K) + H(T) - H(298.15 K)]",
+    latex: r"\Delta_\mathrm{r}H^\circ(T)=\sum\nu\,[\Delta_\mathrm{f}H^\circ(298.15\,\mathrm{K})+H(T)-H(298.15\,\mathrm{K})]",
+    symbols: &[NU, FORMATION, INCREMENT, TEMPERATURE],
+};
+static INTERNAL_ENERGY: Formula = Formula {
+    text: "ΔrU°(T) = ΔrH°(T) - Δn(gas) R T",
+    latex: r"\Delta_\mathrm{r}U^\circ(T)=\Delta_\mathrm{r}H^\circ(T)-\Delta n(\mathrm{gas})\,RT",
+    symbols: &[NU, FORMATION, INCREMENT, DELTA_N, GAS_CONSTANT, TEMPERATURE],
+};
+static GIBBS_ENERGY: Formula = Formula {
+    text: "ΔrG°(T) = ΔrH°(T) - T Σ ν S°(T)",
+    latex: r"\Delta_\mathrm{r}G^\circ(T)=\Delta_\mathrm{r}H^\circ(T)-T\sum\nu\,S^\circ(T)",
+    symbols: &[NU, FORMATION, INCREMENT, ENTROPY, TEMPERATURE],
+};
+static HELMHOLTZ_ENERGY: Formula = Formula {
+    text: "ΔrA°(T) = ΔrG°(T) - Δn(gas) R T",
+    latex: r"\Delta_\mathrm{r}A^\circ(T)=\Delta_\mathrm{r}G^\circ(T)-\Delta n(\mathrm{gas})\,RT",
+    symbols: &[NU, FORMATION, INCREMENT, ENTROPY, DELTA_N, GAS_CONSTANT, TEMPERATURE],
+};
+static REACTION_ENTROPY: Formula = Formula {
+    text: "ΔrS°(T) = Σ ν S°(T)",
+    latex: r"\Delta_\mathrm{r}S^\circ(T)=\sum\nu\,S^\circ(T)",
+    symbols: &[NU, ENTROPY, TEMPERATURE],
+};
+static HEAT_CAPACITY: Formula = Formula {
+    text: "ΔrCp°(T) = Σ ν Cp°(T)",
+    latex: r"\Delta_\mathrm{r}C_p^\circ(T)=\sum\nu\,C_p^\circ(T)",
+    symbols: &[NU, symbol("Cp°", r"C_p^\circ", "J/(K mol)", "heat capacities at constant pressure"), TEMPERATURE],
+};
+static EQUILIBRIUM_CONSTANT: Formula = Formula {
+    text: "K°(T) = exp(-ΔrG°(T)/(R T))",
+    latex: r"K^\circ(T)=\exp\!\left(-\frac{\Delta_\mathrm{r}G^\circ(T)}{RT}\right)",
+    symbols: &[NU, FORMATION, INCREMENT, ENTROPY, GAS_CONSTANT, TEMPERATURE],
+};
+static PER: Formula = Formula {
+    text: "x per mole of X = x / |ν(X)|",
+    latex: r"x_\mathrm{X}=x/|\nu(\mathrm{X})|",
+    symbols: &[
+        symbol("x", "x", "as given", "a value per mole of reaction as written"),
+        symbol("ν(X)", r"\nu(\mathrm{X})", "1", "stoichiometric number of X in that reaction"),
+    ],
+};
+
+/// By the id of the card.
+static FORMULAS: &[(&str, &Formula)] = &[
+    ("reaction.enthalpy", &ENTHALPY),
+    ("reaction.internal-energy", &INTERNAL_ENERGY),
+    ("reaction.gibbs-energy", &GIBBS_ENERGY),
+    ("reaction.helmholtz-energy", &HELMHOLTZ_ENERGY),
+    ("reaction.entropy", &REACTION_ENTROPY),
+    ("reaction.heat-capacity", &HEAT_CAPACITY),
+    ("reaction.equilibrium-constant", &EQUILIBRIUM_CONSTANT),
+    ("quantity.per", &PER),
+];
+
+/// The equation of a card.
+pub fn of(card: &Card) -> Option<&'static Formula> {
+    FORMULAS.iter().find(|(id, _)| *id == card.id).map(|(_, formula)| *formula)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::model::CARDS;
+    use crate::model::card::On;
+
+    #[test]
+    fn every_equation_belongs_to_a_card_and_every_property_of_a_reaction_has_one() {
+        for (id, formula) in FORMULAS {
+            assert!(CARDS.iter().any(|card| card.id == *id), "{id} is no card");
+            assert!(formula.symbols.iter().all(|s| !s.meaning.is_empty() && !s.unit.is_empty()), "{id}");
+        }
+        for card in CARDS.iter().filter(|card| card.on == On::Reaction) {
+            assert!(of(card).is_some(), "{} has no equation", card.id);
+        }
+    }
+}
