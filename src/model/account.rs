@@ -5,12 +5,16 @@
 
 use std::rc::Rc;
 
+use crate::model::compare::Comparison;
 use crate::model::derivation::Derivation;
+use crate::model::gap::Gap;
 
 /// An answer to be read.
 #[derive(Clone)]
 pub enum Account {
     Derivation(Rc<Derivation>),
+    Comparison(Rc<Comparison>),
+    Gap(Rc<Gap>),
 }
 
 impl Account {
@@ -18,6 +22,8 @@ impl Account {
     pub fn sort(&self) -> &'static str {
         match self {
             Account::Derivation(_) => "a derivation",
+            Account::Comparison(_) => "a comparison",
+            Account::Gap(_) => "an explanation of a gap",
         }
     }
 }

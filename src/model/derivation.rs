@@ -11,7 +11,9 @@
 use std::collections::{BTreeMap, BTreeSet};
 use std::rc::Rc;
 
-use crate::fault::Place;
+use thiserror::Error;
+
+use crate::fault::{Explain, Place};
 use crate::model::account::Account;
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Sources, Takes, Value, call_of};
 use crate::model::review;
@@ -28,6 +30,26 @@ pub const LONGEST_RUN: usize = 12;
 pub const ENDS_OF_RUN: usize = 4;
 
 const LINES: f64 = 60.0;
+/// Below this nothing is left to read, and above nobody reads it.
+const LEAST: f64 = 2.0;
+const MOST: f64 = 10_000.0;
+
+/// Why a history is not shown.
+#[derive(Clone, Debug, PartialEq, Error)]
+pub enum DerivationError {
+    #[error("a derivation of at most {most} lines is not shown: from {LEAST} to {MOST} lines are")]
+    Lines { most: f64 },
+}
+
+impl Explain for DerivationError {
+    fn code(&self) -> &'static str {
+        "derivation-lines"
+    }
+
+    fn hint(&self) -> String {
+        format!("leave the number out for {LINES} lines; what is folded is counted")
+    }
+}
 
 /// A value's history, for readers.
 pub struct Derivation {
@@ -376,8 +398,11 @@ pub static DERIVATION: Card = Card {
     claims: &[],
     alternatives: &[],
     run: |cx, call| {
-        let most = call.number(1).clamp(2.0, 1e4) as usize;
-        let derivation = Derivation::of(cx, call.quantity(0), most);
+        let most = call.number(1);
+        if !(LEAST..=MOST).contains(&most) {
+            return Err(DerivationError::Lines { most }.into());
+        }
+        let derivation = Derivation::of(cx, call.quantity(0), most as usize);
         Ok(Value::Account(Account::Derivation(Rc::new(derivation))))
     },
     check_line: None,

@@ -238,7 +238,7 @@ fn formation_datasets(data: &Catalog) -> impl Iterator<Item = &Dataset> {
 }
 
 /// The formation enthalpy of a substance in one dataset: of the phase whose enthalpy scale its function continues.
-fn formation_of(substance: &Arc<Substance>, dataset: &DatasetId, data: &Catalog) -> Option<Figure> {
+pub(crate) fn formation_of(substance: &Arc<Substance>, dataset: &DatasetId, data: &Catalog) -> Option<Figure> {
     if substance.function.as_ref().is_some_and(|function| !function.covers(T_REFERENCE)) {
         return formation_at_reference(data.reference_phase(substance)?.as_ref(), dataset);
     }
@@ -290,7 +290,11 @@ pub fn contributions(
     Ok(all)
 }
 
-fn contribution(
+/// What one term contributes; its formation enthalpy must be in `dataset` ([`formation_of`]).
+///
+/// # Errors
+/// A figure is missing, or `t_k` is outside the record's range.
+pub(crate) fn contribution(
     term: &Term,
     dataset: &DatasetId,
     t_k: f64,

@@ -6,9 +6,11 @@ pub mod account;
 pub mod basis;
 pub mod card;
 pub mod claims;
+pub mod compare;
 pub mod conditions;
 pub mod derivation;
 pub mod function;
+pub mod gap;
 pub mod gather;
 pub mod property;
 pub mod quantities;
@@ -38,4 +40,6 @@ pub const CARDS: &[&Card] = &[
     &quantities::AGREES,
     &quantities::ASSUME,
     &derivation::DERIVATION,
+    &compare::COMPARE,
+    &gap::EXPLAIN_GAP,
 ];

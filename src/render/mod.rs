@@ -3,7 +3,9 @@
 //! A [`Bundle`] holds one output in several forms. A report's forms are all made from one [`report::Report`], so that
 //! text, HTML, LaTeX and the machine record cannot disagree.
 
+pub mod comparison;
 pub mod derivation;
+pub mod gap;
 pub mod headline;
 pub mod html;
 pub mod latex;
@@ -41,11 +43,12 @@ pub fn reaction(reaction: &Reaction) -> Bundle {
 
 /// An answer to be read, in text, HTML and LaTeX.
 pub fn account(account: &Account) -> Bundle {
-    match account {
-        Account::Derivation(derivation) => Bundle::text(derivation::text(derivation))
-            .with_text("text/html", derivation::html(derivation))
-            .with_text("text/latex", derivation::latex(derivation)),
-    }
+    let (text, html, latex) = match account {
+        Account::Derivation(it) => (derivation::text(it), derivation::html(it), derivation::latex(it)),
+        Account::Comparison(it) => (comparison::text(it), comparison::html(it), comparison::latex(it)),
+        Account::Gap(it) => (gap::text(it), gap::html(it), gap::latex(it)),
+    };
+    Bundle::text(text).with_text("text/html", html).with_text("text/latex", latex)
 }
 
 impl Bundle {
