@@ -2,13 +2,16 @@
 //!
 //! A node that rests on a run of more than [`LONGEST`] operator nodes takes in place of its input that input's
 //! [`Folded`] form: the same value, id, place and kind, as a linear form over whatever the run rested on. Values, sources
-//! and sensitivities stay as they are; what is lost is the single steps. Three rules keep it honest. A node that someone
-//! holds (a variable, a list, an argument of a formula) is never folded away. Formula steps and inputs are never folded.
-//! And a value in hand keeps its own full history: only what is computed from it later sees the folded form.
+//! and sensitivities stay as they are; what is lost is the single steps. Three rules keep it honest:
+//! - a value that someone holds (a variable, a list, an argument of a formula) stays in the history of what rests on it;
+//!   at most its own long run is folded there;
+//! - formula steps and inputs are never folded;
+//! - a value in hand keeps its own full history: only what is computed from it later sees a folded form.
 //!
-//! The surprise: inputs that differ cannot be folded away, so a loop that types a new figure with a stated uncertainty
-//! in each pass still grows by one input a pass. Only figures of the same text and place *without* a stated uncertainty
-//! are taken together ([`LeafKey::Repeated`]), as long as nothing outside the run uses one of them.
+//! The surprise: inputs that differ cannot be folded away, so a loop that types a new figure with a stated uncertainty in
+//! each pass still grows by one input a pass, some 400 bytes. Only figures of the same text and place *without* a stated
+//! uncertainty are taken together ([`LeafKey::Repeated`]), where nothing outside the run uses one of them. Values that feed
+//! each other are folded each for itself, so that m of them cost up to m walks over what they share.
 
 use std::collections::BTreeMap;
 use std::rc::Rc;
@@ -111,8 +114,9 @@ fn short_of(root: &Rc<Node>, depth: u8) -> Option<Rc<Node>> {
     } else if stands_for.iter().any(Option::is_some) {
         form.rebuilt(&stands_for)
     } else {
-        // It is wide rather than long, and most of it is held: not to be asked again soon.
-        root.run().set(Run { chain: form.nodes, since: root.id(), ..root.run().get() });
+        // It is wide rather than long and most of it is held, or a derivative is past all numbers: not to be asked again
+        // soon.
+        root.run().set(Run { chain: form.nodes.min(WORTHWHILE), since: root.id(), ..root.run().get() });
         return None;
     };
     Some(Rc::clone(root.short().get_or_init(|| short)))
