@@ -246,8 +246,13 @@ fn formation_of(substance: &Arc<Substance>, dataset: &DatasetId, data: &Catalog)
 }
 
 fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<Figure> {
-    let key =
-        LeafKey::Datum { dataset: dataset.shared(), record: substance.species.id.clone(), field: FORMATION, t_bits: 0 };
+    let key = LeafKey::Datum {
+        dataset: dataset.shared(),
+        record: substance.species.id.clone(),
+        field: FORMATION,
+        t_bits: 0,
+        way: "",
+    };
     if let Some(record) = substance.formation(dataset) {
         let digit = if record.dhf.is_convention() { None } else { Some(record.dhf.last_place()) };
         let input = Input { key, u: record.dhf.u, digit, label: None, citation: Some(record.citation.clone()) };
@@ -319,14 +324,15 @@ fn contribution(
         return Err(GatherError::Range { species: species(), t_k, t_min, t_max }.into());
     }
     let at_t = function::evaluate(function, t_k);
-    let figure = |si: f64, field: &'static str, digit: f64| Figure {
-        si,
+    let figure = |taken: &Drawn, field: &'static str, digit: f64| Figure {
+        si: taken.si,
         input: Input {
             key: LeafKey::Datum {
                 dataset: function.dataset.shared(),
                 record: substance.species.id.clone(),
                 field,
-                t_bits: t_k.to_bits(),
+                t_bits: taken.t_k.to_bits(),
+                way: taken.way,
             },
             u: None,
             digit: Some(digit),
@@ -336,61 +342,87 @@ fn contribution(
         printed: None,
     };
     // A phase that does not reach 298.15 K continues the enthalpy scale of another, whose formation enthalpy it is joined to.
+    // Where that scale stands at 298.15 K the function says, which may be off the printed figure by 1 J/mol (Hg by 0.5): the
+    // other phase is counted from there too, and only so do the two meet at their transition.
     let joined = if function.covers(T_REFERENCE) { None } else { data.reference_phase(substance) };
-    let dhf_298 = joined.as_ref().and_then(|phase| phase.function.as_ref()).map_or(function.dhf_298, |f| f.dhf_298);
-    let taken = between(function, dhf_298, t_k, at_t, mode);
+    let h_298 = joined
+        .as_ref()
+        .and_then(|phase| phase.function.as_ref())
+        .map_or(function.dhf_298, |f| function::evaluate(f, T_REFERENCE).h);
+    let taken = between(function, h_298, t_k, at_t, mode);
     // Table B and Appendix D of the source are good to 1 J/mol and 0.001 J/(mol K); fewer digits are defensible, none are stated.
     let increment =
-        (t_k != T_REFERENCE || !function.covers(T_REFERENCE)).then(|| figure(taken.increment, HEAT_CAPACITY, 1.0));
+        (t_k != T_REFERENCE || !function.covers(T_REFERENCE)).then(|| figure(&taken.increment, HEAT_CAPACITY, 1.0));
     Ok(Contribution {
         nu: term.nu,
         formation,
         increment,
-        entropy: Some(figure(taken.entropy, ENTROPY, 0.001)),
-        cp: Some(figure(taken.cp, HEAT_CAPACITY, 0.001)),
+        entropy: Some(figure(&taken.entropy, ENTROPY, 0.001)),
+        cp: Some(figure(&taken.cp, HEAT_CAPACITY, 0.001)),
         slopes: taken.slopes,
     })
 }
 
+/// A figure drawn from a function: at which temperature, and in which way where there are several.
+struct Drawn {
+    si: f64,
+    t_k: f64,
+    way: &'static str,
+}
+
 struct Taken {
-    increment: f64,
-    entropy: f64,
-    cp: f64,
+    increment: Drawn,
+    entropy: Drawn,
+    cp: Drawn,
     slopes: Slopes,
 }
+
+const INTEGRATED: &str = "integrated from 298.15 K";
 
 /// Increment and entropy between 298.15 K and T, as the method takes the heat capacity.
 ///
 /// A phase that does not reach down to 298.15 K has no heat capacity there, and is always integrated: its enthalpy scale
 /// continues that of the phase it forms from.
-fn between(function: &Function, dhf_298: f64, t_k: f64, at_t: function::Functions, mode: HeatCapacity) -> Taken {
+fn between(function: &Function, h_298: f64, t_k: f64, at_t: function::Functions, mode: HeatCapacity) -> Taken {
     let slope = function::cp_slope(function, t_k);
+    let integrated = |h_298: f64| Taken {
+        increment: Drawn { si: at_t.h - h_298, t_k, way: INTEGRATED },
+        entropy: Drawn { si: at_t.s, t_k, way: "" },
+        cp: Drawn { si: at_t.cp, t_k, way: "" },
+        slopes: Slopes { increment: at_t.cp, entropy: at_t.cp / t_k, cp: slope },
+    };
     if !function.covers(T_REFERENCE) {
-        let slopes = Slopes { increment: at_t.cp, entropy: at_t.cp / t_k, cp: slope };
-        return Taken { increment: at_t.h - dhf_298, entropy: at_t.s, cp: at_t.cp, slopes };
+        return integrated(h_298);
     }
     let at_0 = function::evaluate(function, T_REFERENCE);
     let (span, ln_ratio) = (t_k - T_REFERENCE, math::ln(t_k / T_REFERENCE));
-    let flat = |cp: f64, cp_slope: f64| Taken {
-        increment: cp * span,
-        entropy: at_0.s + cp * ln_ratio,
+    let flat = |cp: Drawn, cp_slope: f64, way: &'static str| Taken {
+        increment: Drawn { si: cp.si * span, t_k, way },
+        entropy: Drawn { si: at_0.s + cp.si * ln_ratio, t_k, way },
+        slopes: Slopes { increment: cp.si + cp_slope * span, entropy: cp.si / t_k + cp_slope * ln_ratio, cp: cp_slope },
         cp,
-        slopes: Slopes { increment: cp + cp_slope * span, entropy: cp / t_k + cp_slope * ln_ratio, cp: cp_slope },
     };
     match mode {
-        HeatCapacity::Full => Taken {
-            increment: at_t.h - at_0.h,
-            entropy: at_t.s,
-            cp: at_t.cp,
-            slopes: Slopes { increment: at_t.cp, entropy: at_t.cp / t_k, cp: slope },
-        },
-        HeatCapacity::Constant => flat(at_0.cp, 0.0),
+        HeatCapacity::Full => integrated(at_0.h),
+        HeatCapacity::Constant => {
+            let cp = Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" };
+            flat(cp, 0.0, "Cp held at its value at 298.15 K")
+        }
         HeatCapacity::Midpoint => {
             let middle = 0.5 * (t_k + T_REFERENCE);
-            flat(function::evaluate(function, middle).cp, 0.5 * function::cp_slope(function, middle))
+            let cp = Drawn { si: function::evaluate(function, middle).cp, t_k: middle, way: "" };
+            flat(cp, 0.5 * function::cp_slope(function, middle), "Cp held at its value half-way")
         }
-        HeatCapacity::Mean => flat(0.5 * (at_0.cp + at_t.cp), 0.5 * slope),
-        HeatCapacity::Neglected => Taken { increment: 0.0, entropy: at_0.s, cp: at_0.cp, slopes: Slopes::default() },
+        HeatCapacity::Mean => {
+            let cp = Drawn { si: 0.5 * (at_0.cp + at_t.cp), t_k, way: "mean of it and the one at 298.15 K" };
+            flat(cp, 0.5 * slope, "Cp held at the mean of both ends")
+        }
+        HeatCapacity::Neglected => Taken {
+            increment: Drawn { si: 0.0, t_k, way: "neglected" },
+            entropy: Drawn { si: at_0.s, t_k: T_REFERENCE, way: "" },
+            cp: Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" },
+            slopes: Slopes::default(),
+        },
     }
 }
 
@@ -404,6 +436,7 @@ fn tabulated_entropy(substance: &Substance) -> Option<Figure> {
         record: substance.species.id.clone(),
         field: ENTROPY,
         t_bits: 0,
+        way: "",
     };
     let input = Input { key, u: datum.u, digit, label: None, citation: Some(record.citation.clone()) };
     Some(Figure { si: datum.value, input, printed: Some(datum.printed.clone()) })
@@ -424,6 +457,21 @@ mod tests {
             // Heat of melting of ice at 273.15 K, 6.0067 kJ/mol: IAPWS-95 and IAPWS R10-06, computed from the published
             // formulations. Bound: the two functions of the report meet there with 6.0099 kJ/mol, 3.2 J/mol more.
             assert!((h - 6006.7).abs() < 3.5, "{formation}: {h} J/mol");
+        }
+    }
+    #[test]
+    fn phases_meet_at_their_transition_as_their_functions_do() {
+        let data = Catalog::shipped();
+        for (equation, t_k) in
+            [("Hg(cr) -> Hg(l)", 234.29), ("H2O(cr,ice-ih) -> H2O(l)", 273.15), ("Fe(cr,delta) -> Fe(l)", 1809.0)]
+        {
+            let reaction = Reaction::read(equation, &data).unwrap();
+            let all = contributions(&reaction, t_k, &Method::from_words(None, None, &data).unwrap(), &data).unwrap();
+            let h: f64 = all.iter().map(|c| c.nu * (c.formation.si + c.increment.as_ref().unwrap().si)).sum();
+            let of = |term: &Term| term.nu * function::evaluate(term.substance.function.as_ref().unwrap(), t_k).h;
+            let direct: f64 = reaction.terms().iter().map(of).sum();
+            // The same functions summed in another order: rounding at 3e5 J/mol, of terms that reach 1e9 J/mol in water.
+            assert!((h - direct).abs() < 1e-6, "{equation}: {h} and {direct} J/mol");
         }
     }
 }

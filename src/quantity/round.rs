@@ -52,13 +52,14 @@ pub fn with_brackets(value: f64, u: f64) -> String {
     if u == 0.0 {
         return shortest(value);
     }
-    let mut decimals = decimals_for(u);
-    // Very large or small values read better with a power of ten, and brackets need a last digit to refer to.
-    let exponent = decade(value.abs().max(u));
+    let decimals = decimals_for(u);
+    // Very large or small values read better with a power of ten, and brackets need a last digit to refer to. The rounded
+    // figures decide, or 9.9998e-5 would be printed as 10.0e-5 and read back as another text.
+    let rounded = |x: f64| fixed(x, decimals).parse::<f64>().map_or(0.0, f64::abs);
+    let exponent = decade(rounded(value).max(rounded(u)));
     if !(-4..7).contains(&exponent) {
         let scale = power_of_ten(exponent);
-        decimals = decimals_for(u / scale);
-        return format!("{}e{exponent}", bracketed(value / scale, u / scale, decimals));
+        return format!("{}e{exponent}", bracketed(value / scale, u / scale, decimals + exponent));
     }
     bracketed(value, u, decimals)
 }
@@ -96,6 +97,14 @@ mod tests {
         assert_eq!(with_brackets(0.5, 0.0996), "0.50(10)");
         assert_eq!(with_brackets(1234.5, 9.96), "1234(10)");
         assert_eq!(with_brackets(5.0, 0.0), "5");
+    }
+
+    #[test]
+    fn a_power_of_ten_is_chosen_by_the_rounded_figures() {
+        assert_eq!(with_brackets(9.999_78e-5, 8.51e-5), "0.000100(85)");
+        assert_eq!(with_brackets(9.96e-6, 2.1e-7), "9.96(21)e-6");
+        assert_eq!(with_brackets(9_999_999.7, 12.0), "1.0000000(12)e7");
+        assert_eq!(with_brackets(3.0e-7, 9.96e-6), "0.0(10)e-5");
     }
 
     #[test]

@@ -21,8 +21,9 @@ use crate::units::{Dimension, Entity, Kind};
 #[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord)]
 pub enum LeafKey {
     /// A figure of a published table. A function's value belongs to its temperature: `t_bits` holds the bits of T in
-    /// kelvin, 0 for what does not depend on it.
-    Datum { dataset: Arc<str>, record: Arc<str>, field: &'static str, t_bits: u64 },
+    /// kelvin, 0 for what does not depend on it. `way` says in words how it was taken from the function, where there are
+    /// several ways: two ways are two figures, which must not cancel. Empty for what the record itself gives.
+    Datum { dataset: Arc<str>, record: Arc<str>, field: &'static str, t_bits: u64, way: &'static str },
     /// A constant of the set of that year.
     Constant { year: u16, name: &'static str },
     /// Typed in a notebook: where, and which evaluation of that cell.
@@ -49,10 +50,11 @@ impl Input {
     pub fn name(&self) -> String {
         match (&self.label, &self.key) {
             (Some(label), _) => label.to_string(),
-            (None, LeafKey::Datum { record, field, t_bits, .. }) => match t_bits {
-                0 => format!("{field} of {record}"),
-                bits => format!("{field} of {record} at {} K", f64::from_bits(*bits)),
-            },
+            (None, LeafKey::Datum { record, field, t_bits, way, .. }) => {
+                let t = if *t_bits == 0 { String::new() } else { format!(" at {} K", f64::from_bits(*t_bits)) };
+                let way = if way.is_empty() { String::new() } else { format!(", {way}") };
+                format!("{field} of {record}{t}{way}")
+            }
             (None, LeafKey::Constant { year, name }) => format!("{name} (CODATA {year})"),
             (None, LeafKey::Own(name)) => name.to_string(),
             (None, LeafKey::Typed { .. }) => "a typed value".to_owned(),
