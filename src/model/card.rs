@@ -16,6 +16,8 @@ use thiserror::Error;
 use crate::data::catalog::Catalog;
 use crate::fault::{Explain, Fault, Place};
 use crate::model::reaction::Reaction;
+use crate::model::substance::PureSubstance;
+use crate::model::terms::Terms;
 use crate::quantity::{Mismatch, Quantity, text};
 use crate::record::node::{Node, Step};
 use crate::record::register::Finding;
@@ -33,6 +35,7 @@ pub enum Value {
     List(Vec<Value>),
     Options(Rc<BTreeMap<String, Value>>),
     Reaction(Rc<Reaction>),
+    Substance(Rc<PureSubstance>),
     /// Something no formula takes, by its name in words.
     Other(Rc<str>),
     Nothing,
@@ -49,6 +52,7 @@ impl Value {
             Value::List(_) => "a list",
             Value::Options(_) => "a map of options",
             Value::Reaction(_) => "a reaction",
+            Value::Substance(_) => "a substance",
             Value::Other(name) => name,
             Value::Nothing => "nothing",
         }
@@ -61,6 +65,7 @@ pub enum On {
     Nothing,
     Quantity,
     Reaction,
+    Substance,
 }
 
 /// What an argument takes.
@@ -213,10 +218,12 @@ impl Call {
         }
     }
 
-    pub fn reaction(&self) -> &Rc<Reaction> {
-        match &self.args[0] {
-            Value::Reaction(reaction) => reaction,
-            other => unreachable!("{}: the receiver is a reaction, not {}", self.card.id, other.sort()),
+    /// What the receiver is made of, where it is a reaction or a substance.
+    pub fn terms(&self) -> Option<&Terms> {
+        match self.args.first() {
+            Some(Value::Reaction(reaction)) => Some(reaction),
+            Some(Value::Substance(substance)) => Some(substance),
+            _ => None,
         }
     }
 
@@ -263,6 +270,7 @@ impl Step for Call {
                 Value::Text(word) => words.push(word.to_string()),
                 Value::Number(number) => words.push(number.to_string()),
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
+                Value::Substance(substance) => words.push(substance.text().to_owned()),
                 Value::Options(options) => {
                     words.extend(options.iter().filter_map(|(name, value)| match value {
                         Value::Text(word) => Some(format!("{name}: {word}")),
@@ -365,6 +373,7 @@ impl Card {
             On::Nothing => "",
             On::Quantity => "value.",
             On::Reaction => "reaction.",
+            On::Substance => "substance.",
         };
         format!("{receiver}{}({})", self.name, args.join(", "))
     }

@@ -14,7 +14,7 @@ use crate::model::card::{Call, Cx};
 use crate::model::function;
 use crate::model::gather::{self, Formation, HeatCapacity, Method};
 use crate::model::property::{self, Property};
-use crate::model::reaction::Reaction;
+use crate::model::terms::Terms;
 use crate::num::math;
 use crate::quantity::Quantity;
 use crate::record::node::Node;
@@ -27,7 +27,7 @@ const G_RESOLUTION: f64 = 1.0;
 
 struct Asked<'a> {
     property: Property,
-    reaction: &'a Reaction,
+    terms: &'a Terms,
     t_k: f64,
     method: Method,
 }
@@ -35,7 +35,7 @@ struct Asked<'a> {
 fn asked<'a>(cx: &Cx, call: &'a Call) -> Option<Asked<'a>> {
     let property = Property::of(call.card)?;
     let method = property::method_of(call, cx).ok()?;
-    Some(Asked { property, reaction: call.reaction(), t_k: call.quantity(1).si(), method })
+    Some(Asked { property, terms: call.terms()?, t_k: call.quantity(1).si(), method })
 }
 
 /// The value's own node with another number in it: the better alternative of a test.
@@ -52,20 +52,20 @@ pub fn constant_heat_capacity(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Fin
         return Vec::new();
     }
     let full = Method { heat_capacity: HeatCapacity::Full, ..asked.method.clone() };
-    let tested = match property::number(asked.property, asked.reaction, asked.t_k, &full, cx) {
+    let tested = match property::number(asked.property, asked.terms, asked.t_k, &full, cx) {
         Ok(better) => Tested::Better {
             value: alternative(value, better),
             how: "the integral of the heat capacities over T".to_owned(),
         },
         Err(fault) => Tested::Missing { what: fault.message().to_owned() },
     };
-    vec![Finding::known("constant-heat-capacity", asked.reaction.text(), value.node(), Some(asked.t_k), tested)]
+    vec![Finding::known("constant-heat-capacity", asked.terms.text(), value.node(), Some(asked.t_k), tested)]
 }
 
 /// `formation-dataset`: priced against the next dataset that has all species.
 pub fn formation_dataset(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
     let Some(asked) = asked(cx, call) else { return Vec::new() };
-    let Ok(used) = gather::datasets_for(asked.reaction, &asked.method.formation, cx.data()) else { return Vec::new() };
+    let Ok(used) = gather::datasets_for(asked.terms, &asked.method.formation, cx.data()) else { return Vec::new() };
     let mut names: Vec<String> = Vec::new();
     for id in &used {
         let short = cx.data().dataset(id).map_or_else(|| id.to_string(), |dataset| dataset.short.to_string());
@@ -74,13 +74,13 @@ pub fn formation_dataset(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding>
         }
     }
     let subject = names.join(" and ");
-    let other = gather::covering(asked.reaction, cx.data()).into_iter().find(|id| used.iter().any(|taken| taken != id));
+    let other = gather::covering(asked.terms, cx.data()).into_iter().find(|id| used.iter().any(|taken| taken != id));
     let tested = match other {
         None => Tested::Missing { what: "no other shipped dataset has all species of this reaction".to_owned() },
         Some(id) => {
             let name = cx.data().dataset(&id).map_or_else(|| id.to_string(), |dataset| dataset.short.to_string());
             let method = Method { formation: Formation::Of(id), ..asked.method.clone() };
-            match property::number(asked.property, asked.reaction, asked.t_k, &method, cx) {
+            match property::number(asked.property, asked.terms, asked.t_k, &method, cx) {
                 Ok(si) => {
                     Tested::Better { value: alternative(value, si), how: format!("formation enthalpies of {name}") }
                 }
@@ -98,7 +98,7 @@ pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
     let (mut stable, mut supercritical, mut alone, mut findings) = (Vec::new(), Vec::new(), Vec::new(), Vec::new());
     let mut sources = Vec::new();
     let at_t = |subject: String, tested| Finding::known("stable-phase", subject, value.node(), Some(asked.t_k), tested);
-    for term in asked.reaction.terms() {
+    for term in asked.terms.terms() {
         let species = &term.substance.species;
         if species.phase.state == Aggregate::Aqueous {
             continue; // A solute has no phase of its own to compare.
@@ -116,7 +116,7 @@ pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
             }
         }
     }
-    let tested: Vec<&str> = (asked.reaction.terms().iter())
+    let tested: Vec<&str> = (asked.terms.terms().iter())
         .map(|term| &*term.substance.species.id)
         .filter(|id| stable.contains(id) || supercritical.iter().any(|gas| gas.starts_with(id)))
         .collect();
@@ -218,7 +218,7 @@ pub fn condensed_volume(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> 
 
 fn gas_law(cx: &Cx, call: &Call, value: &Quantity, id: &'static str, state: Aggregate, lacking: &str) -> Vec<Finding> {
     let Some(asked) = asked(cx, call) else { return Vec::new() };
-    let species: Vec<&str> = (asked.reaction.terms().iter())
+    let species: Vec<&str> = (asked.terms.terms().iter())
         .map(|term| &term.substance.species)
         .filter(|species| species.phase.state == state)
         .map(|species| &*species.id)
@@ -256,5 +256,5 @@ fn shortcut(cx: &Cx, call: &Call, heat_capacity: HeatCapacity) -> Option<f64> {
         _ => asked.t_k,
     };
     let method = Method { heat_capacity, ..asked.method.clone() };
-    property::number(asked.property, asked.reaction, t_k, &method, cx).ok()
+    property::number(asked.property, asked.terms, t_k, &method, cx).ok()
 }

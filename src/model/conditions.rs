@@ -39,6 +39,10 @@ pub fn symbol(value: &Quantity) -> String {
             let standard = value.kind().state().is_some_and(|state| state.standard);
             format!("Δr{}{}", what.symbol(), if standard { "°" } else { "" })
         }
+        [Value::Substance(_), ..] => {
+            let standard = value.kind().state().is_some_and(|state| state.standard);
+            format!("{}{}", what.symbol(), if standard { "°" } else { "" })
+        }
         // A formula that hands its value on, per mole of something else or with an assumption attached.
         [Value::Quantity(inner), ..] if inner.kind().what == what => symbol(inner),
         _ => String::new(),

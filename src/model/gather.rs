@@ -14,7 +14,7 @@ use crate::data::function::Function;
 use crate::data::substance::Substance;
 use crate::fault::{Explain, Fault};
 use crate::model::function::{self, T_REFERENCE};
-use crate::model::reaction::{Reaction, Term};
+use crate::model::terms::{Term, Terms};
 use crate::num::math;
 use crate::record::node::{Input, LeafKey};
 use crate::source::Citation;
@@ -179,7 +179,7 @@ fn dataset_named(word: &str, data: &Catalog) -> Result<DatasetId, GatherError> {
 }
 
 /// The formation datasets that have every species of the reaction, by precedence.
-pub fn covering(reaction: &Reaction, data: &Catalog) -> Vec<DatasetId> {
+pub fn covering(reaction: &Terms, data: &Catalog) -> Vec<DatasetId> {
     let has_all =
         |id: &DatasetId| reaction.terms().iter().all(|term| formation_of(&term.substance, id, data).is_some());
     formation_datasets(data).map(|dataset| dataset.id.clone()).filter(has_all).collect()
@@ -189,7 +189,7 @@ pub fn covering(reaction: &Reaction, data: &Catalog) -> Vec<DatasetId> {
 ///
 /// # Errors
 /// The dataset asked for lacks a species, or none has all.
-pub fn datasets_for(reaction: &Reaction, formation: &Formation, data: &Catalog) -> Result<Vec<DatasetId>, GatherError> {
+pub fn datasets_for(reaction: &Terms, formation: &Formation, data: &Catalog) -> Result<Vec<DatasetId>, GatherError> {
     let terms = reaction.terms();
     match formation {
         Formation::Of(id) => {
@@ -219,7 +219,7 @@ pub fn datasets_for(reaction: &Reaction, formation: &Formation, data: &Catalog) 
     }
 }
 
-fn missing_words(reaction: &Reaction, data: &Catalog) -> String {
+fn missing_words(reaction: &Terms, data: &Catalog) -> String {
     let lacks: Vec<String> = formation_datasets(data)
         .map(|dataset| {
             let missing: Vec<&str> = (reaction.terms().iter())
@@ -281,12 +281,7 @@ pub const ENTROPY: &str = "entropy";
 ///
 /// # Errors
 /// A figure is missing, or `t_k` is outside a record's range.
-pub fn contributions(
-    reaction: &Reaction,
-    t_k: f64,
-    method: &Method,
-    data: &Catalog,
-) -> Result<Vec<Contribution>, Fault> {
+pub fn contributions(reaction: &Terms, t_k: f64, method: &Method, data: &Catalog) -> Result<Vec<Contribution>, Fault> {
     let datasets = datasets_for(reaction, &method.formation, data)?;
     let mut all = Vec::with_capacity(reaction.terms().len());
     for (term, dataset) in reaction.terms().iter().zip(&datasets) {
@@ -445,6 +440,7 @@ fn tabulated_entropy(substance: &Substance) -> Option<Figure> {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::model::reaction::Reaction;
 
     #[test]
     fn a_phase_below_298_k_is_joined_to_the_phase_it_melts_into() {

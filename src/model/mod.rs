@@ -9,9 +9,12 @@ pub mod conditions;
 pub mod function;
 pub mod gather;
 pub mod property;
+pub mod property_card;
 pub mod quantities;
 pub mod reaction;
 pub mod review;
+pub mod substance;
+pub mod terms;
 pub mod tolerance;
 
 use card::Card;
@@ -20,13 +23,21 @@ use card::Card;
 pub const CARDS: &[&Card] = &[
     &reaction::REACTION,
     &reaction::BALANCE,
-    &property::ENTHALPY,
-    &property::INTERNAL_ENERGY,
-    &property::GIBBS_ENERGY,
-    &property::HELMHOLTZ_ENERGY,
-    &property::ENTROPY,
-    &property::HEAT_CAPACITY,
-    &property::EQUILIBRIUM_CONSTANT,
+    &substance::SUBSTANCE,
+    &property_card::ENTHALPY,
+    &property_card::INTERNAL_ENERGY,
+    &property_card::GIBBS_ENERGY,
+    &property_card::HELMHOLTZ_ENERGY,
+    &property_card::ENTROPY,
+    &property_card::HEAT_CAPACITY,
+    &property_card::EQUILIBRIUM_CONSTANT,
+    &property_card::SUBSTANCE_ENTHALPY,
+    &property_card::SUBSTANCE_INTERNAL_ENERGY,
+    &property_card::SUBSTANCE_GIBBS_ENERGY,
+    &property_card::SUBSTANCE_HELMHOLTZ_ENERGY,
+    &property_card::SUBSTANCE_ENTROPY,
+    &property_card::SUBSTANCE_HEAT_CAPACITY,
+    &substance::ENTHALPY_INCREMENT,
     &basis::PER,
     &quantities::MEAN,
     &quantities::TO,

@@ -4,13 +4,14 @@
 //! |ν|. With a partial u: the larger of that and a tenth of the stated part. Scaled alike for S and Cp (t/T) and for ln K
 //! (t/RT). Values that are no reaction property: 1 %. (Common practice, no source.)
 
-use crate::model::card::{Call, Value, call_of};
+use crate::model::card::{Call, call_of};
+use crate::model::terms::Terms;
 use crate::num::math;
 use crate::quantity::Quantity;
 use crate::record::node;
 use crate::record::spread::Spread;
-use crate::units::What;
 use crate::units::constants::ConstantSet;
+use crate::units::{Of, What};
 
 /// 0.05 kJ/mol.
 const PER_NU: f64 = 50.0;
@@ -43,20 +44,17 @@ pub fn together(value: &Quantity, one: f64) -> f64 {
 /// The tolerance for |ν| = 1, for values that are reaction properties at one temperature.
 fn scale(value: &Quantity, constants: &ConstantSet) -> Option<f64> {
     let t_k = value.kind().state().and_then(|state| state.t_k);
-    let reaction = value.dim().is_per_reaction();
+    let molar = value.dim().entities().iter().any(|(of, _, halves)| *of == Of::Amount && *halves == -2);
     match value.kind().what {
-        What::S | What::Cp | What::Cv if reaction => t_k.map(|t| PER_NU / t),
+        What::S | What::Cp | What::Cv if molar => t_k.map(|t| PER_NU / t),
         // A tolerance in ln K, taken to K itself.
         What::K => t_k.map(|t| value.si() * math::expm1(PER_NU / (constants.molar_gas.value * t))),
-        _ if reaction => Some(PER_NU),
+        _ if molar => Some(PER_NU),
         _ => None,
     }
 }
 
 fn largest_nu(value: &Quantity) -> f64 {
-    let largest = |call: &Call| match &call.args[..] {
-        [Value::Reaction(reaction), ..] => reaction.largest_nu(),
-        _ => 1.0,
-    };
+    let largest = |call: &Call| call.terms().map_or(1.0, Terms::largest_nu);
     node::history(value.node()).iter().filter_map(|node| call_of(node).map(largest)).fold(1.0, f64::max)
 }

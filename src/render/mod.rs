@@ -13,6 +13,7 @@ pub mod text;
 use std::collections::BTreeMap;
 
 use crate::model::reaction::Reaction;
+use crate::model::substance::PureSubstance;
 use crate::quantity::Quantity;
 use crate::render::headline::Headline;
 
@@ -35,6 +36,18 @@ pub fn reaction(reaction: &Reaction) -> Bundle {
     Bundle::text(reaction.text())
         .with_text("text/html", html::equation(reaction))
         .with_text("text/latex", latex::equation(reaction))
+}
+
+/// What is known of a substance, in one line.
+pub fn substance(substance: &PureSubstance) -> Bundle {
+    let record = substance.record();
+    let name = record.name.as_ref().map_or_else(String::new, |name| format!(", {name}"));
+    let range = match &record.function {
+        Some(function) => format!("heat capacity from {} K to {} K", function.t_min, function.t_max),
+        None => "figures at 298.15 K only".to_owned(),
+    };
+    let text = format!("{}{name}: {range}", record.id());
+    Bundle::text(text.clone()).with_text("text/html", html::escaped(&text))
 }
 
 impl Bundle {

@@ -15,6 +15,7 @@ use crate::fault::{Fault, Place};
 use crate::model::CARDS;
 use crate::model::card::{self, Card, Cx, On, Value};
 use crate::model::reaction::Reaction;
+use crate::model::substance::PureSubstance;
 use crate::quantity::{Quantity, text};
 use crate::script::fault::raise;
 use crate::script::state::{Shared, place_of};
@@ -26,6 +27,7 @@ pub type Native<T> = Result<T, Box<EvalAltResult>>;
 pub fn register(engine: &mut Engine, shared: &Shared) {
     engine.register_type_with_name::<Quantity>("quantity");
     engine.register_type_with_name::<Rc<Reaction>>("reaction");
+    engine.register_type_with_name::<Rc<PureSubstance>>("substance");
     typed(engine, shared);
     for card in CARDS {
         bind(engine, card, shared);
@@ -60,6 +62,7 @@ fn receiver(on: On) -> Option<TypeId> {
         On::Nothing => None,
         On::Quantity => Some(TypeId::of::<Quantity>()),
         On::Reaction => Some(TypeId::of::<Rc<Reaction>>()),
+        On::Substance => Some(TypeId::of::<Rc<PureSubstance>>()),
     }
 }
 
@@ -70,6 +73,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     }
     if let Some(reaction) = value.read_lock::<Rc<Reaction>>() {
         return Value::Reaction(Rc::clone(&reaction));
+    }
+    if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
+        return Value::Substance(Rc::clone(&substance));
     }
     if let Some(text) = value.read_lock::<ImmutableString>() {
         return Value::Text(text.as_str().into());
@@ -105,6 +111,7 @@ fn from_value(value: Value) -> Dynamic {
             options.iter().map(|(name, value)| (name.as_str().into(), from_value(value.clone()))).collect(),
         ),
         Value::Reaction(reaction) => Dynamic::from(reaction),
+        Value::Substance(substance) => Dynamic::from(substance),
         Value::Nothing => Dynamic::UNIT,
     }
 }

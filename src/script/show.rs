@@ -11,6 +11,7 @@ use rhai::{Array, Blob, Dynamic, Engine, FnPtr, ImmutableString, Map};
 
 use crate::fault::Fault;
 use crate::model::reaction::Reaction;
+use crate::model::substance::PureSubstance;
 use crate::quantity::Quantity;
 use crate::render::{self, Bundle};
 use crate::script::verbs::Display;
@@ -31,6 +32,9 @@ fn own(value: &Dynamic) -> Option<Bundle> {
     }
     if let Some(reaction) = value.read_lock::<Rc<Reaction>>() {
         return Some(render::reaction(&reaction));
+    }
+    if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
+        return Some(render::substance(&substance));
     }
     value.read_lock::<Fault>().map(|fault| Bundle::text(fault.to_string()))
 }

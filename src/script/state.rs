@@ -62,6 +62,9 @@ impl State {
     pub fn enter(&mut self, cell: &str) {
         self.cell = cell.into();
         self.ordinal = 0;
+        // A cell that is run again says anew what it reports and declares; what it no longer says is gone.
+        self.reports.retain(|one| &*one.cell != cell);
+        self.parameters.retain(|one| &*one.cell != cell);
     }
 
     /// The next number in this cell, from 1.

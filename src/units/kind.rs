@@ -356,18 +356,34 @@ impl State {
         {
             return Err(KindMismatch::ReactionTemperatures { left_k, right_k, minus });
         }
-        if let (false, Some(a), Some(b)) = (reaction, &left.zero, &right.zero)
-            && a != b
-            && !matches!((a, b), (Zero::From(_), _) | (_, Zero::From(_)))
-        {
-            return Err(KindMismatch::Zeros { left: a.clone(), right: b.clone(), minus });
-        }
-        Ok(Some(State {
-            zero: if left.zero == right.zero { left.zero.clone() } else { None },
-            t_k: if left.t_k == right.t_k { left.t_k } else { None },
-            p_pa: if left.p_pa == right.p_pa { left.p_pa } else { None },
-            standard: left.standard && right.standard,
-        }))
+        let same = |a: Option<f64>, b: Option<f64>| if a == b { a } else { None };
+        let (zero, t_k) = match (&left.zero, &right.zero) {
+            (Some(_), Some(_)) if reaction => (left.zero.clone(), same(left.t_k, right.t_k)),
+            (Some(a), Some(b)) if a == b => (Some(a.clone()), same(left.t_k, right.t_k)),
+            (Some(a), Some(b)) => {
+                let joined = joined((a, left.t_k), (b, right.t_k), minus);
+                let refused = || KindMismatch::Zeros { left: a.clone(), right: b.clone(), minus };
+                joined.map(|(zero, t_k)| (Some(zero), t_k)).ok_or_else(refused)?
+            }
+            _ => (None, same(left.t_k, right.t_k)),
+        };
+        Ok(Some(State { zero, t_k, p_pa: same(left.p_pa, right.p_pa), standard: left.standard && right.standard }))
+    }
+}
+
+/// Zero and temperature of a sum of two values with different zeros, where an increment leads from one to the other:
+/// H(a) and H(T) − H(a) make H(T), and H(T) less H(T) − H(a) makes H(a). `None`: nothing joins them.
+fn joined(left: (&Zero, Option<f64>), right: (&Zero, Option<f64>), minus: bool) -> Option<(Zero, Option<f64>)> {
+    let starts = |value: (&Zero, Option<f64>)| match value.0 {
+        Zero::From(t_k) => Some(*t_k),
+        _ => None,
+    };
+    let meets = |t_k: Option<f64>, start: Option<f64>| t_k.is_some() && t_k == start;
+    match (minus, starts(left), starts(right)) {
+        (false, _, start @ Some(_)) if meets(left.1, start) => Some((left.0.clone(), right.1)),
+        (false, start @ Some(_), _) if meets(right.1, start) => Some((right.0.clone(), left.1)),
+        (true, _, start @ Some(_)) if left.1.is_some() && left.1 == right.1 => Some((left.0.clone(), start)),
+        _ => None,
     }
 }
 
@@ -451,6 +467,24 @@ mod tests {
             Err(KindMismatch::ReactionTemperatures { .. })
         ));
         assert_eq!(Kind::sum(&at(300.0), &at(400.0), true, &water, (1.0, 1.0)).unwrap().state().unwrap().t_k, None);
+    }
+
+    #[test]
+    fn an_increment_joins_only_where_it_starts_or_ends() {
+        let dim = energy().over(&Dimension::amount(crate::units::Entity::named("H2O")));
+        let at = |zero, t_k| Kind::in_state(What::H, State { zero: Some(zero), t_k: Some(t_k), ..State::default() });
+        let absolute = |t_k| at(Zero::Elements298, t_k);
+        let from = |start, t_k| at(Zero::From(start), t_k);
+        let sum = |a: &Kind, b: &Kind, minus| {
+            let kind = Kind::sum(a, b, minus, &dim, (1.0, 1.0)).ok()?;
+            let state = kind.state().unwrap().clone();
+            Some((state.zero.unwrap(), state.t_k))
+        };
+        assert_eq!(sum(&absolute(300.0), &from(300.0, 400.0), false), Some((Zero::Elements298, Some(400.0))));
+        assert_eq!(sum(&absolute(400.0), &from(300.0, 400.0), true), Some((Zero::Elements298, Some(300.0))));
+        assert_eq!(sum(&from(300.0, 400.0), &from(400.0, 500.0), false), Some((Zero::From(300.0), Some(500.0))));
+        assert_eq!(sum(&absolute(400.0), &from(300.0, 400.0), false), None);
+        assert_eq!(sum(&from(300.0, 400.0), &from(200.0, 500.0), true), None);
     }
 
     #[test]
