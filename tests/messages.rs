@@ -18,7 +18,9 @@ struct Silent;
 impl Host for Silent {
     fn write(&mut self, _stderr: bool, _text: &str) {}
 
-    fn show(&mut self, _bundle: &Bundle) {}
+    fn show(&mut self, _bundle: &Bundle, _id: Option<&str>) {}
+
+    fn update(&mut self, _bundle: &Bundle, _id: &str) {}
 }
 
 /// The faults of a script's cells, as users see them.

@@ -21,9 +21,11 @@ impl Host for Collected {
         if stderr { self.err.push_str(text) } else { self.out.push_str(text) }
     }
 
-    fn show(&mut self, bundle: &Bundle) {
+    fn show(&mut self, bundle: &Bundle, _id: Option<&str>) {
         self.out.push_str(bundle.plain());
     }
+
+    fn update(&mut self, _bundle: &Bundle, _id: &str) {}
 }
 
 /// What one cell gave, as text.
@@ -554,7 +556,9 @@ fn output_goes_to_the_host_while_the_cell_runs() {
             }
         }
 
-        fn show(&mut self, _bundle: &Bundle) {}
+        fn show(&mut self, _bundle: &Bundle, _id: Option<&str>) {}
+
+        fn update(&mut self, _bundle: &Bundle, _id: &str) {}
     }
     // If lines came only at the end, this loop would never end.
     let (lines, code) = on_big_stack(|| {
@@ -728,7 +732,9 @@ fn a_panic_in_native_code_is_a_bug_and_the_session_goes_on() {
             panic!("planned by this test");
         }
 
-        fn show(&mut self, _bundle: &Bundle) {}
+        fn show(&mut self, _bundle: &Bundle, _id: Option<&str>) {}
+
+        fn update(&mut self, _bundle: &Bundle, _id: &str) {}
     }
     on_big_stack(|| {
         let mut session = session();

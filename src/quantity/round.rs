@@ -55,7 +55,7 @@ pub fn with_brackets(value: f64, u: f64) -> String {
     let mut decimals = decimals_for(u);
     // Very large or small values read better with a power of ten, and brackets need a last digit to refer to.
     let exponent = decade(value.abs().max(u));
-    if exponent >= 7 || exponent < -4 {
+    if !(-4..7).contains(&exponent) {
         let scale = power_of_ten(exponent);
         decimals = decimals_for(u / scale);
         return format!("{}e{exponent}", bracketed(value / scale, u / scale, decimals));

@@ -1,4 +1,4 @@
-//! Every formula card as a function of the script language, and the literals that make quantities.
+//! Every formula card as a function of the script language, and `q`, which reads quantities.
 //!
 //! [`register`] loops over [`model::CARDS`](crate::model::CARDS): one native function for each receiver, name and number
 //! of arguments. Argument types are not spelled out to the engine; the card checks them, so that a wrong one is refused
@@ -18,7 +18,6 @@ use crate::model::reaction::Reaction;
 use crate::quantity::{Quantity, text};
 use crate::script::fault::raise;
 use crate::script::state::{Shared, place_of};
-use crate::units;
 
 /// A result of a function of the script.
 pub type Native<T> = Result<T, Box<EvalAltResult>>;
@@ -27,7 +26,7 @@ pub type Native<T> = Result<T, Box<EvalAltResult>>;
 pub fn register(engine: &mut Engine, shared: &Shared) {
     engine.register_type_with_name::<Quantity>("quantity");
     engine.register_type_with_name::<Rc<Reaction>>("reaction");
-    literals(engine, shared);
+    typed(engine, shared);
     for card in CARDS {
         bind(engine, card, shared);
     }
@@ -110,42 +109,18 @@ fn from_value(value: Value) -> Dynamic {
     }
 }
 
-/// `q("-285.830(20) kJ/mol")`, and a property of numbers for each unit: `450.0.K`.
-fn literals(engine: &mut Engine, shared: &Shared) {
-    let typed = shared.clone();
+/// `q("-285.830(20) kJ/mol")`: the one form that keeps typed digits and their uncertainty.
+fn typed(engine: &mut Engine, shared: &Shared) {
+    let session = shared.clone();
     FuncRegistration::new("q")
         .with_comments(["/// A quantity as written: number, uncertainty in brackets, unit."])
         .register_into_engine(
             engine,
             move |context: NativeCallContext<'_>, written: ImmutableString| -> Native<Quantity> {
                 let place = place_of(&context);
-                let ordinal = typed.state_mut().next_ordinal();
+                let ordinal = session.state_mut().next_ordinal();
                 text::parse(&written, place.clone(), ordinal).map_err(|error| raise(Fault::from(error).at(place)))
             },
         );
     engine.register_fn("q", |written: Quantity| written);
-    for (spelling, _) in units::table::spellings() {
-        let is_name = spelling.starts_with(|c: char| c.is_alphabetic())
-            && spelling.chars().all(|c| c.is_alphanumeric() || c == '_');
-        if !is_name {
-            continue;
-        }
-        let (whole, real) = (shared.clone(), shared.clone());
-        let (for_whole, for_real) = (spelling.clone(), spelling.clone());
-        engine.register_get(&spelling, move |context: NativeCallContext<'_>, number: &mut i64| {
-            literal(&context, &whole, *number as f64, &for_whole)
-        });
-        engine.register_get(&spelling, move |context: NativeCallContext<'_>, number: &mut f64| {
-            literal(&context, &real, *number, &for_real)
-        });
-    }
-}
-
-fn literal(context: &NativeCallContext<'_>, shared: &Shared, number: f64, spelling: &str) -> Native<Quantity> {
-    let place = place_of(context);
-    let ordinal = shared.state_mut().next_ordinal();
-    let made = units::parse::unit(spelling)
-        .map_err(Fault::from)
-        .and_then(|unit| text::from_number(number, unit, place.clone(), ordinal).map_err(Fault::from));
-    made.map_err(|fault| raise(fault.at(place)))
 }

@@ -9,6 +9,7 @@ pub mod engine;
 pub mod fault;
 pub mod guards;
 pub mod host;
+pub mod literals;
 pub mod memory;
 pub mod numbers;
 pub mod operators;

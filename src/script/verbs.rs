@@ -15,6 +15,7 @@ use crate::quantity::{Quantity, text};
 use crate::render::report::{Assumption, Report};
 use crate::render::{Bundle, register as register_view};
 use crate::script::bind::{Native, to_value, with_context};
+use crate::script::show;
 use crate::script::state::{Parameter, Reported, Shared, place_of};
 
 /// A verb as help shows it.
@@ -46,6 +47,11 @@ pub const VERBS: &[Verb] = &[
         name: "tolerate",
         signature: "tolerate(id, label, limit) or tolerate(id, label, limit, about)",
         doc: "Sets how large the price of an assumption may be for one result.",
+    },
+    Verb {
+        name: "display",
+        signature: "display(value)",
+        doc: "Shows a value at once, in the middle of a cell, as the cell's last value is shown.",
     },
     Verb {
         name: "assumptions",
@@ -196,6 +202,8 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
               limit: Dynamic,
               about: ImmutableString| { v.within(&c, |cx| v.tolerate(cx, &id, &label, &limit, Some(&about))) },
     );
+    let shown = shared.clone();
+    add("display").register_into_engine(engine, move |value: Dynamic| shown.show(&show::bundle_of(&value), None));
     let v = verb.clone();
     add("assumptions").register_into_engine(engine, move |c: NativeCallContext<'_>| {
         v.within(&c, |_| Ok(Display(Rc::new(register_view::bundle(&reports(&v.shared))))))

@@ -58,6 +58,7 @@ impl Session {
         host: &mut dyn Host,
         keep: Keep,
     ) -> Result<Option<Bundle>, Fault> {
+        self.literals.provide(&mut self.engine, &self.shared, code);
         let (ast, prepared) = engine::compile(&self.engine, &self.shared, cell, code)?;
         self.refuse_reserved_names(&ast, cell, code)?;
 

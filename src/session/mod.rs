@@ -16,6 +16,7 @@ use rhai::{Dynamic, Engine, FnPtr, Module, Scope};
 use crate::fault::Fault;
 use crate::render::Bundle;
 use crate::render::report::Report;
+use crate::script::literals::Literals;
 use crate::script::state::{Parameter, Shared};
 use crate::script::token::{Ending, tokens};
 use crate::script::{engine, verbs, words};
@@ -46,6 +47,7 @@ pub struct Session {
     shared: Shared,
     scope: Scope<'static>,
     modules: Vec<CellModule>,
+    literals: Literals,
     /// Number of modules at which the next look for unused ones is due.
     rebuild_at: usize,
 }
@@ -55,7 +57,14 @@ impl Session {
     pub fn new(stop: Arc<AtomicBool>) -> Self {
         let shared = Shared::new(stop, MEMORY_LIMIT);
         let engine = engine::build(&shared);
-        Session { engine, shared, scope: Scope::new(), modules: Vec::new(), rebuild_at: SPARE_MODULES }
+        Session {
+            engine,
+            shared,
+            scope: Scope::new(),
+            modules: Vec::new(),
+            literals: Literals::default(),
+            rebuild_at: SPARE_MODULES,
+        }
     }
 
     /// Sets what a cell may take beyond what the session holds when it starts; 1 GiB at first.
@@ -179,6 +188,7 @@ impl Session {
         }
         used.reverse();
         self.engine = engine::build(&self.shared);
+        self.literals.repeat(&mut self.engine, &self.shared);
         for module in &used {
             publish(&mut self.engine, module);
         }
