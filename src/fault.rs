@@ -4,7 +4,7 @@
 //! [`Fault`] is what a session hands on, made from anything that explains itself. This file knows no module.
 
 use std::fmt;
-use std::rc::Rc;
+use std::sync::Arc;
 
 /// What every module's error can say of itself.
 pub trait Explain: fmt::Display {
@@ -17,7 +17,7 @@ pub trait Explain: fmt::Display {
 /// A place in a notebook or script: cell, line and column, both counted from 1 in characters.
 #[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
 pub struct Place {
-    pub cell: Rc<str>,
+    pub cell: Arc<str>,
     pub line: u32,
     pub column: u32,
 }

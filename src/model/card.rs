@@ -114,6 +114,9 @@ pub struct Alternative {
     pub value: fn(&Cx, &Call, &Quantity) -> Option<f64>,
 }
 
+/// Writes the figures of a calculation, each with the number of its source.
+pub type CheckLine = fn(&Cx, &Call, &Quantity, &mut Sources) -> String;
+
 /// A formula.
 pub struct Card {
     pub id: &'static str,
@@ -129,7 +132,7 @@ pub struct Card {
     pub alternatives: &'static [Alternative],
     pub run: fn(&Cx, &Rc<Call>) -> Result<Value, Fault>,
     /// Figures of the calculation in the order a pocket calculator takes them.
-    pub check_line: Option<fn(&Cx, &Call, &Quantity, &mut Sources) -> String>,
+    pub check_line: Option<CheckLine>,
 }
 
 /// What formulas look up: substances and constants. Substances are read at their first use, since a start of the program
@@ -323,7 +326,7 @@ impl Explain for ArgumentError {
     fn code(&self) -> &'static str {
         match self {
             ArgumentError::Sort { .. } => "argument-sort",
-            ArgumentError::Count { .. } => "argument-count",
+            ArgumentError::Count { .. } => "formula-argument-count",
             ArgumentError::Option { .. } => "option-unknown",
             ArgumentError::Word { .. } => "word-unknown",
             ArgumentError::Difference { .. } => "difference-for-point",

@@ -1,5 +1,6 @@
 //! The conditions a value holds under, in one line, and the symbol it is written with.
 
+use crate::model::card::{Value, call_of};
 use crate::quantity::Quantity;
 use crate::quantity::round;
 use crate::units::What;
@@ -25,16 +26,21 @@ pub fn line(value: &Quantity) -> String {
     parts.join(", ")
 }
 
-/// The symbol of the IUPAC Green Book: `ΔrH°` for a reaction enthalpy, `H` for an enthalpy, empty for a plain value.
+/// The symbol of the IUPAC Green Book for what a formula gave: `ΔrH°` for a reaction enthalpy. Arithmetic on state functions
+/// has none: twice a reaction enthalpy, or its negative, is not the enthalpy of the reaction as written.
 pub fn symbol(value: &Quantity) -> String {
     let what = value.kind().what;
-    let symbol = what.symbol();
-    let reaction = value.dim().is_per_reaction();
-    let standard = value.kind().state().is_some_and(|state| state.standard);
-    match what {
-        What::U | What::H | What::A | What::G | What::S | What::Cp | What::Cv => {
-            format!("{}{symbol}{}", if reaction { "Δr" } else { "" }, if standard { "°" } else { "" })
+    let Some(call) = call_of(value.node()) else {
+        return if matches!(what, What::PV | What::TS) { what.symbol().to_owned() } else { String::new() };
+    };
+    match &call.args[..] {
+        [Value::Reaction(_), ..] if what == What::K => what.symbol().to_owned(),
+        [Value::Reaction(_), ..] => {
+            let standard = value.kind().state().is_some_and(|state| state.standard);
+            format!("Δr{}{}", what.symbol(), if standard { "°" } else { "" })
         }
-        _ => symbol.to_owned(),
+        // A formula that hands its value on, per mole of something else or with an assumption attached.
+        [Value::Quantity(inner), ..] if inner.kind().what == what => symbol(inner),
+        _ => String::new(),
     }
 }

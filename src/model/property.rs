@@ -289,7 +289,9 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     let rt = |sources: &mut Sources| {
         let r = &cx.constants().molar_gas;
         let source = sources.number(&r.citation());
-        format!("{} × {:.8e}[{source}] × {t_k}", reaction.delta_n_gas(), r.value / 1000.0)
+        let delta_n = reaction.delta_n_gas();
+        let delta_n = if delta_n < 0.0 { format!("({delta_n})") } else { delta_n.to_string() };
+        format!("{delta_n} × {:.8e}[{source}] × {t_k}", r.value / 1000.0)
     };
     match property {
         Property::H => format!("{enthalpy} = {result}"),

@@ -10,7 +10,7 @@ use crate::model::card::{Cx, Sources, call_of};
 use crate::model::{conditions, tolerance};
 use crate::quantity::{Quantity, round};
 use crate::record::node::{self, LeafKey, Node, Operator, Origin};
-use crate::record::register::{Finding, Status, Tested, judge, price_of};
+use crate::record::register::{Finding, Judgement, Status, Tested, judge, price_of};
 use crate::record::spread::Spread;
 use crate::source::Citation;
 
@@ -95,7 +95,7 @@ pub fn review(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing]) -> R
     }
     let silent = silent_inputs(value);
     let findings = findings(cx, value, &history, &silent);
-    for citation in findings.iter().flat_map(|finding| &finding.sources) {
+    for citation in findings.iter().flatten().flat_map(|finding| &finding.sources) {
         sources.number(citation);
     }
     let judged = judged_rows(cx, label, value, dealings, &findings);
@@ -115,48 +115,41 @@ fn in_unit(value: &Quantity, si: f64) -> f64 {
     si / value.unit().factor
 }
 
-fn judged_rows(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing], findings: &[Finding]) -> Vec<Row> {
+fn judged_rows(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing], groups: &[Vec<Finding>]) -> Vec<Row> {
     let default = tolerance::default(value, cx.constants());
     let mut rows = Vec::new();
     let mut held = 0.0;
-    for finding in findings {
-        let own: Vec<&Dealing> = dealings.iter().filter(|d| d.is_about(label, finding)).collect();
+    for group in groups {
+        let own: Vec<&Dealing> = dealings.iter().filter(|d| group.iter().any(|one| d.is_about(label, one))).collect();
         let limit = own.iter().rev().find_map(|dealing| match &dealing.decided {
             Decided::Tolerated { limit_si, .. } => Some(*limit_si),
             Decided::Justified { .. } => None,
         });
-        let judged = judge(finding, value.node(), limit.unwrap_or(default));
-        if judged.status == Status::Holds {
-            held += judged.price.unwrap_or(0.0);
+        let judgement = judge(group, value.node(), limit.unwrap_or(default));
+        if judgement.status == Status::Holds {
+            held += judgement.price.unwrap_or(0.0);
         }
-        rows.push(row(value, finding, judged.status, judged.price, judged.first_order, &own));
+        rows.push(row(value, group, judgement, &own));
     }
     let limit = tolerance::together(value, default);
     if held.abs() > limit {
         let limit = signed(value, in_unit(value, limit));
-        let tested = Tested::Given {
-            price: held,
-            how: format!("the prices of all assumptions that hold, added up, pass {}", limit.trim_start_matches('+')),
-        };
-        let finding = Finding::known("together", "all rows that hold", value.node(), None, tested);
-        let own: Vec<&Dealing> = dealings.iter().filter(|d| d.is_about(label, &finding)).collect();
-        rows.push(row(value, &finding, Status::Strained, Some(held), false, &own));
+        let how = format!("the prices of all assumptions that hold, added up, pass {}", limit.trim_start_matches('+'));
+        let tested = Tested::Given { price: held, how };
+        let group = [Finding::known("together", "all rows that hold", value.node(), None, tested)];
+        let own: Vec<&Dealing> = dealings.iter().filter(|d| d.is_about(label, &group[0])).collect();
+        rows.push(row(value, &group, judge(&group, value.node(), 0.0), &own));
     }
     rows.sort_by(|a, b| (a.status, &a.id, &a.subject).cmp(&(b.status, &b.id, &b.subject)));
     rows
 }
 
-fn row(
-    value: &Quantity,
-    finding: &Finding,
-    status: Status,
-    price: Option<f64>,
-    first_order: bool,
-    dealings: &[&Dealing],
-) -> Row {
+fn row(value: &Quantity, group: &[Finding], judgement: Judgement, dealings: &[&Dealing]) -> Row {
+    let Judgement { status, price, first_order } = judgement;
     let price = price.map(|price| in_unit(value, price));
-    let note = match &finding.tested {
-        Tested::True { how } | Tested::Better { how, .. } | Tested::Given { how, .. } => how.clone(),
+    let note = |finding: &Finding| match &finding.tested {
+        Tested::True { how } | Tested::Given { how, .. } => how.clone(),
+        Tested::Better { how, .. } => format!("against {how}"),
         Tested::False { why, .. } => why.clone(),
         Tested::Missing { what } => what.clone(),
     };
@@ -172,37 +165,55 @@ fn row(
         Decided::Tolerated { written, .. } => format!("tolerated up to {written}"),
     };
     let dealt: Vec<String> = dealings.iter().map(words).collect();
+    let places = listed_once(group.iter().filter_map(|finding| finding.at.place().map(ToString::to_string)));
     Row {
-        id: finding.id.to_string(),
-        claim: finding.claim.to_string(),
-        subject: finding.subject.clone(),
-        place: finding.at.place().map(ToString::to_string),
+        id: group[0].id.to_string(),
+        claim: group[0].claim.to_string(),
+        subject: group[0].subject.clone(),
+        place: (!places.is_empty()).then_some(places),
         status,
         price,
         first_order,
-        note,
+        note: listed_once(group.iter().map(note)),
         dealt: (!dealt.is_empty()).then(|| dealt.join("; ")),
     }
+}
+
+/// Texts joined, each once, in the order they come.
+fn listed_once(texts: impl Iterator<Item = String>) -> String {
+    let mut once: Vec<String> = Vec::new();
+    for text in texts {
+        if !once.contains(&text) {
+            once.push(text);
+        }
+    }
+    once.join("; ")
 }
 
 /// A price for people: signed, with the digits of the value it belongs to, and at least two of its own.
 pub fn signed(value: &Quantity, price: f64) -> String {
     let half_digit = in_unit(value, value.shown().half_digit_si);
     let of_value = if half_digit > 0.0 { round::decimals_of_digit(2.0 * half_digit) } else { 3 };
-    let decimals = if price == 0.0 { 0 } else { of_value.max(round::decimals_for(price.abs()).min(of_value + 2)) };
+    // Two digits of the price itself, or those of the value, but no more than six in all.
+    let own = round::decimals_for(price.abs());
+    let decimals = if price == 0.0 { 0 } else { of_value.max(own.min(of_value + 2)).min((own + 4).max(0)) };
     let text = round::fixed(price, decimals);
     if price > 0.0 && !text.starts_with('-') && text != "0" { format!("+{text}") } else { text }
 }
 
-fn findings(cx: &Cx, value: &Quantity, history: &[Rc<Node>], silent: &[(String, Vec<String>)]) -> Vec<Finding> {
-    let mut merged: BTreeMap<(Rc<str>, String, u64), Finding> = BTreeMap::new();
-    let mut order = Vec::new();
+/// Findings over the whole history, those of one assumption about one subject together: the rows of the register.
+fn findings(cx: &Cx, value: &Quantity, history: &[Rc<Node>], silent: &[(String, Vec<String>)]) -> Vec<Vec<Finding>> {
+    let mut at: BTreeMap<(Rc<str>, String), usize> = BTreeMap::new();
+    let mut groups: Vec<Vec<Finding>> = Vec::new();
     let mut enter = |finding: Finding| {
-        let key = (Rc::clone(&finding.id), finding.subject.clone(), finding.at.id());
-        merged.entry(key.clone()).or_insert_with(|| {
-            order.push(key);
-            finding
-        });
+        let key = (Rc::clone(&finding.id), finding.subject.clone());
+        match at.get(&key) {
+            Some(&group) => groups[group].push(finding),
+            None => {
+                at.insert(key, groups.len());
+                groups.push(vec![finding]);
+            }
+        }
     };
     for node in history {
         if let Some(call) = call_of(node) {
@@ -215,16 +226,10 @@ fn findings(cx: &Cx, value: &Quantity, history: &[Rc<Node>], silent: &[(String, 
         }
     }
     if !silent.is_empty() {
-        let what = format!("no u is stated for {}", silent_in_full(silent));
-        enter(Finding::known(
-            "uncertainty-incomplete",
-            silent_words(silent),
-            value.node(),
-            None,
-            Tested::Missing { what },
-        ));
+        let tested = Tested::Missing { what: format!("no u is stated for {}", silent_in_full(silent)) };
+        enter(Finding::known("uncertainty-incomplete", silent_words(silent), value.node(), None, tested));
     }
-    order.iter().filter_map(|key| merged.remove(key)).collect()
+    groups
 }
 
 fn alternatives(cx: &Cx, value: &Quantity, history: &[Rc<Node>]) -> Vec<Shortcut> {

@@ -38,3 +38,84 @@ pub fn cos(x: f64) -> f64 {
 pub fn tan(x: f64) -> f64 {
     libm::tan(x)
 }
+
+pub fn asin(x: f64) -> f64 {
+    libm::asin(x)
+}
+
+pub fn acos(x: f64) -> f64 {
+    libm::acos(x)
+}
+
+pub fn atan(x: f64) -> f64 {
+    libm::atan(x)
+}
+
+/// Angle of the point (x, y) from the x axis.
+pub fn atan2(y: f64, x: f64) -> f64 {
+    libm::atan2(y, x)
+}
+
+pub fn sinh(x: f64) -> f64 {
+    libm::sinh(x)
+}
+
+pub fn cosh(x: f64) -> f64 {
+    libm::cosh(x)
+}
+
+pub fn tanh(x: f64) -> f64 {
+    libm::tanh(x)
+}
+
+pub fn asinh(x: f64) -> f64 {
+    libm::asinh(x)
+}
+
+pub fn acosh(x: f64) -> f64 {
+    libm::acosh(x)
+}
+
+pub fn atanh(x: f64) -> f64 {
+    libm::atanh(x)
+}
+
+pub fn hypot(x: f64, y: f64) -> f64 {
+    libm::hypot(x, y)
+}
+
+/// Logarithm to any base; 2 and 10 take the routines that are exact for their own powers.
+pub fn log(x: f64, base: f64) -> f64 {
+    if base == 10.0 {
+        libm::log10(x)
+    } else if base == 2.0 {
+        libm::log2(x)
+    } else {
+        libm::log(x) / libm::log(base)
+    }
+}
+
+/// The square root is exact by IEEE 754, so the standard library's serves; it stands here so that a table of
+/// functions can name it beside the others.
+pub fn sqrt(x: f64) -> f64 {
+    x.sqrt()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn logarithms_are_exact_for_powers_of_the_base_where_libm_has_a_routine() {
+        assert_eq!(log(1e6, 10.0), 6.0);
+        assert_eq!(log(8.0, 2.0), 3.0);
+        // ln 81 / ln 3 = 4: two roundings and a division, so within three units of the last place.
+        assert!((log(81.0, 3.0) - 4.0).abs() <= 3.0 * 4.0 * f64::EPSILON);
+    }
+
+    #[test]
+    fn the_angle_of_a_point_takes_the_ordinate_first() {
+        assert_eq!(atan2(1.0, 0.0), std::f64::consts::FRAC_PI_2);
+        assert_eq!(atan2(0.0, -1.0), std::f64::consts::PI);
+    }
+}

@@ -50,7 +50,7 @@ impl Explain for TextError {
             TextError::Meaning { .. } => "plus-minus-unknown",
             TextError::Brackets { .. } => "brackets-unreadable",
             TextError::Twice { .. } => "uncertainty-twice",
-            TextError::Range { .. } => "number-out-of-range",
+            TextError::Range { .. } => "quantity-out-of-range",
             TextError::Negative { .. } => "uncertainty-negative",
             TextError::BelowZero { .. } => "below-absolute-zero",
             TextError::Unit(unit) => unit.code(),
@@ -276,7 +276,7 @@ impl Quantity {
                     let decimals = round::decimals_of_digit(digit / scale);
                     (round::fixed(value, decimals), 0.5 * round::power_of_ten(-decimals) * scale)
                 }
-                None => (round::shortest(value), 0.0),
+                None => (exact(value), 0.0),
             },
         };
         let caveat = match spread {
@@ -286,6 +286,13 @@ impl Quantity {
         };
         Shown { number, basis: units::basis_words(&unit.dim), unit, caveat, half_digit_si }
     }
+}
+
+/// A value that is exact as far as anyone said: all its digits where they are few, else six.
+fn exact(value: f64) -> String {
+    let all = round::shortest(value);
+    let digits = all.split('e').next().unwrap_or("").chars().filter(char::is_ascii_digit).count();
+    if digits <= 7 { all } else { round::significant(value, 6) }
 }
 
 /// The coarsest of what the last digits of the inputs are worth in the result, in SI units.
@@ -361,7 +368,7 @@ mod tests {
         assert_eq!(code("kJ"), "number-missing");
         assert_eq!(code("1,5 J"), "comma-in-number");
         assert_eq!(code("-300 degC"), "below-absolute-zero");
-        assert_eq!(code("1e999 J"), "number-out-of-range");
+        assert_eq!(code("1e999 J"), "quantity-out-of-range");
         assert_eq!(code("1.0(x) J"), "brackets-unreadable");
         assert_eq!(code("5 cal"), "bare-calorie");
     }

@@ -101,7 +101,7 @@ impl Status {
     }
 }
 
-/// A judgement on one finding.
+/// A judgement on one row.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Judgement {
     pub status: Status,
@@ -111,24 +111,33 @@ pub struct Judgement {
     pub first_order: bool,
 }
 
-/// The price and status of a finding at a reported value, with the tolerance in SI units of that value.
-pub fn judge(finding: &Finding, reported: &Rc<Node>, tolerance: f64) -> Judgement {
-    let (price, first_order) = match &finding.tested {
+/// The price and status, at a reported value, of findings that are one row: the same assumption about the same subject,
+/// leaned on by several steps. Their prices add up, and what cancels between the steps costs nothing. `tolerance` is in SI
+/// units of the reported value.
+pub fn judge(findings: &[Finding], reported: &Rc<Node>, tolerance: f64) -> Judgement {
+    let prices: Vec<(Option<f64>, bool)> = findings.iter().map(|finding| price_at(finding, reported)).collect();
+    let price: Option<f64> = prices.iter().map(|(price, _)| *price).sum();
+    let is_false = findings.iter().any(|finding| matches!(finding.tested, Tested::False { .. }));
+    let status = match price {
+        _ if is_false => Status::Broken,
+        None => Status::Untested,
+        Some(price) if price.abs() <= tolerance => Status::Holds,
+        Some(_) => Status::Strained,
+    };
+    Judgement { status, price, first_order: prices.iter().any(|(_, first_order)| *first_order) }
+}
+
+fn price_at(finding: &Finding, reported: &Rc<Node>) -> (Option<f64>, bool) {
+    match &finding.tested {
         Tested::True { .. } => (Some(0.0), false),
         Tested::Missing { .. } | Tested::False { value: None, .. } => (None, false),
-        Tested::Given { price, .. } => (Some(price * derivative(reported, finding.at.id())), true),
-        Tested::Better { value, .. } | Tested::False { value: Some(value), .. } => {
-            price_of(reported, finding.at.as_ref(), value.si())
+        Tested::Given { price, .. } => {
+            (Some(price * derivative(reported, finding.at.id())), finding.at.id() != reported.id())
         }
-    };
-    let status = match (&finding.tested, price) {
-        (Tested::False { .. }, _) => Status::Broken,
-        (Tested::Missing { .. }, _) | (_, None) => Status::Untested,
-        (_, Some(price)) if price.abs() <= tolerance => Status::Holds,
-        _ => Status::Strained,
-    };
-    let first_order = first_order && finding.at.id() != reported.id();
-    Judgement { status, price, first_order }
+        Tested::Better { value, .. } | Tested::False { value: Some(value), .. } => {
+            price_of(reported, &finding.at, value.si())
+        }
+    }
 }
 
 /// What the reported value costs if the node `at` should have been `better`, and whether that is first order only.
@@ -170,7 +179,7 @@ mod tests {
         let reported = Rc::new(doubled);
         let tested = Tested::Better { value: better, how: "computed".into() };
         let finding = Finding::known("ideal-gas", "CO2(g)", &at, None, tested);
-        let judged = |tolerance| judge(&finding, &reported, tolerance);
+        let judged = |tolerance| judge(std::slice::from_ref(&finding), &reported, tolerance);
         assert_eq!(judged(1.9), Judgement { status: Status::Strained, price: Some(2.0), first_order: false });
         assert_eq!(judged(2.0).status, Status::Holds);
     }
@@ -181,7 +190,7 @@ mod tests {
         let finding = |tested| Finding::known("stable-phase", "H2O(l)", &at, None, tested);
         let broken = finding(Tested::False { why: "it boils".into(), value: Some(leaf(3.0)) });
         let missing = finding(Tested::Missing { what: "no vapour record".into() });
-        assert_eq!(judge(&broken, &at, f64::INFINITY).status, Status::Broken);
-        assert_eq!(judge(&missing, &at, f64::INFINITY).status, Status::Untested);
+        assert_eq!(judge(&[broken], &at, f64::INFINITY).status, Status::Broken);
+        assert_eq!(judge(&[missing], &at, f64::INFINITY).status, Status::Untested);
     }
 }

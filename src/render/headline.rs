@@ -59,8 +59,7 @@ impl Headline {
 
     /// The unit for readers, empty for a pure number.
     pub fn unit_text(&self) -> String {
-        let unit = units::reader_text(&self.unit);
-        unit
+        units::reader_text(&self.unit)
     }
 
     /// The headline as text: `ΔrH° = -37.62(13) kJ/mol, partial (no u stated for heat capacities), per mole of ...`.

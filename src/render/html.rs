@@ -1,5 +1,6 @@
 //! Reports and values as HTML that sits in a notebook's page: no script, no style sheet, every text of the user's escaped.
 
+use crate::model::reaction::Reaction;
 use crate::render::headline::Headline;
 use crate::render::report::{Assumption, Report};
 use crate::render::text;
@@ -46,6 +47,43 @@ fn symbol(symbol: &str) -> String {
         }
     };
     format!("{difference}{rest}")
+}
+
+/// A reaction with subscripts, and what is derived from it.
+pub fn equation(reaction: &Reaction) -> String {
+    let side = |products: bool| {
+        let terms = reaction.terms().iter().filter(|term| (term.nu > 0.0) == products);
+        let shown = terms.map(|term| {
+            let nu = term.nu.abs();
+            let number = if nu == 1.0 { String::new() } else { format!("{nu}&nbsp;") };
+            format!("{number}{}", species(&term.substance.species.id))
+        });
+        shown.collect::<Vec<_>>().join(" + ")
+    };
+    let delta = reaction.delta_n_gas();
+    format!("{} → {}, Δ<i>n</i>(gas) = {delta}", side(false), side(true))
+}
+
+/// `CO<sub>2</sub>(g)`: digits after a letter or bracket of a formula are set low; names stay as they are.
+fn species(id: &str) -> String {
+    let (base, phase) = id.rsplit_once('(').map_or((id, ""), |(base, phase)| (base, phase));
+    let phase = if phase.is_empty() { String::new() } else { format!("({phase}") };
+    let is_formula = !base.contains(|c: char| c == ' ' || c == '-' && base.chars().any(char::is_lowercase))
+        && base.starts_with(|c: char| c.is_uppercase());
+    if !is_formula {
+        return escaped(&format!("{base}{phase}"));
+    }
+    let mut out = String::new();
+    let mut charge = false;
+    for c in base.chars() {
+        charge |= c == '+' || c == '-';
+        match c {
+            c if charge => out.push_str(&format!("<sup>{c}</sup>")),
+            c if c.is_ascii_digit() => out.push_str(&format!("<sub>{c}</sub>")),
+            c => out.push_str(&escaped(&c.to_string())),
+        }
+    }
+    format!("{out}{}", escaped(&phase))
 }
 
 /// A report, from headline to sources.

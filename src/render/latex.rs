@@ -1,5 +1,6 @@
 //! Values as LaTeX, for papers and for clients that set mathematics.
 
+use crate::model::reaction::Reaction;
 use crate::render::headline::Headline;
 use crate::render::report::Report;
 use crate::units;
@@ -53,6 +54,20 @@ pub fn headline(headline: &Headline) -> String {
     let remarks =
         if remarks.is_empty() { String::new() } else { format!("\\quad\\text{{{}}}", escaped(&remarks.join(", "))) };
     format!("$\\displaystyle {symbol}{number}{unit}{remarks}$")
+}
+
+/// A reaction, species upright.
+pub fn equation(reaction: &Reaction) -> String {
+    let side = |products: bool| {
+        let terms = reaction.terms().iter().filter(|term| (term.nu > 0.0) == products);
+        let shown = terms.map(|term| {
+            let nu = term.nu.abs();
+            let number = if nu == 1.0 { String::new() } else { format!("{nu}\\,") };
+            format!("{number}\\text{{{}}}", escaped(&term.substance.species.id))
+        });
+        shown.collect::<Vec<_>>().join(" + ")
+    };
+    format!("$\\displaystyle {} \\rightarrow {}$", side(false), side(true))
 }
 
 /// A report's headline with its label; the register stands in the other forms.

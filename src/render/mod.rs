@@ -12,10 +12,29 @@ pub mod text;
 
 use std::collections::BTreeMap;
 
+use crate::model::reaction::Reaction;
+use crate::quantity::Quantity;
+use crate::render::headline::Headline;
+
 /// One output in several forms: MIME type to its content (text types as strings, `+json` types as JSON values).
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Bundle {
     pub data: BTreeMap<String, serde_json::Value>,
+}
+
+/// A value in one line, in text, HTML and LaTeX.
+pub fn quantity(value: &Quantity) -> Bundle {
+    let headline = Headline::of(value);
+    Bundle::text(headline.line())
+        .with_text("text/html", html::headline(&headline))
+        .with_text("text/latex", latex::headline(&headline))
+}
+
+/// A reaction as written, in text, HTML and LaTeX.
+pub fn reaction(reaction: &Reaction) -> Bundle {
+    Bundle::text(reaction.text())
+        .with_text("text/html", html::equation(reaction))
+        .with_text("text/latex", latex::equation(reaction))
 }
 
 impl Bundle {

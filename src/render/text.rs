@@ -62,20 +62,23 @@ pub fn assumptions(rows: &[Assumption], indent: &str) -> String {
     let widest_id = rows.iter().map(|row| row.id.chars().count()).max().unwrap_or(0);
     let mut out = String::new();
     for row in rows {
-        let order = if row.first_order { ", to first order" } else { "" };
-        out.push_str(&format!(
-            "{indent}{:<9} {:<widest_id$}  {}{order}  {}: {}\n",
-            row.status,
-            row.id,
-            padded(&price(row), widest),
-            row.subject,
-            row.note
-        ));
+        let order = if row.first_order { " to first order" } else { "" };
+        let price = padded(&price(row), widest);
+        out.push_str(&format!("{indent}{:<9} {:<widest_id$}  {price}{order}  {}\n", row.status, row.id, row.subject));
+        out.push_str(&format!("{indent}          {}\n", row.note));
         if let Some(dealt) = &row.dealt {
             out.push_str(&format!("{indent}          {dealt}\n"));
         }
     }
     out
+}
+
+/// What was decided about a result's assumptions, one line each.
+pub fn decisions(record: &Record) -> String {
+    let decided = record.assumptions.iter().filter_map(|row| {
+        row.dealt.as_ref().map(|dealt| format!("{}: {} ({}), {dealt}", record.label, row.id, row.status))
+    });
+    decided.collect::<Vec<_>>().join("\n")
 }
 
 fn sources(record: &Record) -> String {

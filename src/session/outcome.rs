@@ -3,13 +3,7 @@
 use crate::fault::Fault;
 use crate::render::Bundle;
 
-/// Whoever runs cells: the kernel, the notebook runner and the tests are three hosts. Called while the cell runs.
-pub trait Host {
-    /// Text printed by the cell.
-    fn write(&mut self, stderr: bool, text: &str);
-    /// Something to show in the middle of a cell: a report, a picture.
-    fn show(&mut self, bundle: &Bundle);
-}
+pub use crate::script::host::Host;
 
 /// What one cell gave.
 #[derive(Debug)]

@@ -264,12 +264,12 @@ impl<'a> Reader<'a> {
     fn unknown(&mut self, symbol: &str, holder: Option<Term>) -> UnitError {
         let stem = symbol.trim_end_matches(|c: char| c.is_ascii_digit());
         let near = near(symbol);
-        if let Some(holder) = holder.filter(|term| term.of.is_none() && term.row.counts().is_some()) {
-            if near.is_empty() || looks_like_formula(symbol) {
-                let rest = self.rest_of_name();
-                let substance = format!("{symbol}{rest}");
-                return UnitError::SubstanceOutsideBrackets { substance, holder: holder.stem() };
-            }
+        if let Some(holder) = holder.filter(|term| term.of.is_none() && term.row.counts().is_some())
+            && (near.is_empty() || looks_like_formula(symbol))
+        {
+            let rest = self.rest_of_name();
+            let substance = format!("{symbol}{rest}");
+            return UnitError::SubstanceOutsideBrackets { substance, holder: holder.stem() };
         }
         if stem.len() < symbol.len() && lookup(stem).is_some() {
             let meant = format!("{stem}^{}", &symbol[stem.len()..]);

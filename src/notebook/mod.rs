@@ -1,0 +1,4 @@
+//! Notebook files: read leniently, run in order, written strictly.
+
+pub mod file;
+pub mod run;

@@ -1,0 +1,126 @@
+//! Every formula card as a function of the script language, and `q`, which reads quantities.
+//!
+//! [`register`] loops over [`model::CARDS`](crate::model::CARDS): one native function for each receiver, name and number
+//! of arguments. Argument types are not spelled out to the engine; the card checks them, so that a wrong one is refused
+//! in the words of the card.
+
+use std::any::TypeId;
+use std::cell::Cell;
+use std::collections::BTreeMap;
+use std::rc::Rc;
+
+use rhai::{Array, Dynamic, Engine, EvalAltResult, FuncRegistration, ImmutableString, Map, NativeCallContext};
+
+use crate::fault::{Fault, Place};
+use crate::model::CARDS;
+use crate::model::card::{self, Card, Cx, On, Value};
+use crate::model::reaction::Reaction;
+use crate::quantity::{Quantity, text};
+use crate::script::fault::raise;
+use crate::script::state::{Shared, place_of};
+
+/// A result of a function of the script.
+pub type Native<T> = Result<T, Box<EvalAltResult>>;
+
+/// Gives the engine the program's own types, literals and formulas.
+pub fn register(engine: &mut Engine, shared: &Shared) {
+    engine.register_type_with_name::<Quantity>("quantity");
+    engine.register_type_with_name::<Rc<Reaction>>("reaction");
+    typed(engine, shared);
+    for card in CARDS {
+        bind(engine, card, shared);
+    }
+}
+
+/// Runs `work` with what a formula needs of the session; `place` is where the script called from.
+pub fn with_context<T>(shared: &Shared, place: Option<Place>, work: impl FnOnce(&Cx) -> Result<T, Fault>) -> Native<T> {
+    let ordinal = Cell::new(shared.state_mut().next_ordinal());
+    let cx = Cx { references: shared.references(), place: place.clone(), ordinal: &ordinal };
+    let done = work(&cx);
+    shared.state_mut().skip_ordinals_to(ordinal.get());
+    done.map_err(|fault| raise(fault.at(place)))
+}
+
+fn bind(engine: &mut Engine, card: &'static Card, shared: &Shared) {
+    let (least, most) = card.arity();
+    for given in least..=most {
+        let mut types: Vec<TypeId> = receiver(card.on).into_iter().collect();
+        types.resize(types.len() + given, TypeId::of::<Dynamic>());
+        let shared = shared.clone();
+        let run = move |context: NativeCallContext<'_>, args: &mut [&mut Dynamic]| -> Native<Dynamic> {
+            let values = args.iter().map(|arg| to_value(arg)).collect();
+            with_context(&shared, place_of(&context), |cx| card::call(cx, card, values)).map(from_value)
+        };
+        engine.register_raw_fn(card.name, &types, run);
+    }
+}
+
+fn receiver(on: On) -> Option<TypeId> {
+    match on {
+        On::Nothing => None,
+        On::Quantity => Some(TypeId::of::<Quantity>()),
+        On::Reaction => Some(TypeId::of::<Rc<Reaction>>()),
+    }
+}
+
+/// A script's value as a formula takes it. What no formula takes becomes a text that names its type, and is refused.
+pub fn to_value(value: &Dynamic) -> Value {
+    if let Some(quantity) = value.read_lock::<Quantity>() {
+        return Value::Quantity(quantity.clone());
+    }
+    if let Some(reaction) = value.read_lock::<Rc<Reaction>>() {
+        return Value::Reaction(Rc::clone(&reaction));
+    }
+    if let Some(text) = value.read_lock::<ImmutableString>() {
+        return Value::Text(text.as_str().into());
+    }
+    if let Some(array) = value.read_lock::<Array>() {
+        return Value::List(array.iter().map(to_value).collect());
+    }
+    if let Some(map) = value.read_lock::<Map>() {
+        let options: BTreeMap<String, Value> =
+            map.iter().map(|(name, value)| (name.to_string(), to_value(value))).collect();
+        return Value::Options(Rc::new(options));
+    }
+    if let Ok(number) = value.as_float() {
+        return Value::Number(number);
+    }
+    if let Ok(whole) = value.as_int() {
+        return Value::Number(whole as f64);
+    }
+    if let Ok(flag) = value.as_bool() {
+        return Value::Flag(flag);
+    }
+    if value.is_unit() { Value::Nothing } else { Value::Other(crate::script::words::kind_of(value).into()) }
+}
+
+fn from_value(value: Value) -> Dynamic {
+    match value {
+        Value::Quantity(quantity) => Dynamic::from(quantity),
+        Value::Number(number) => Dynamic::from_float(number),
+        Value::Flag(flag) => Dynamic::from_bool(flag),
+        Value::Text(text) | Value::Other(text) => Dynamic::from(ImmutableString::from(&*text)),
+        Value::List(list) => Dynamic::from_array(list.into_iter().map(from_value).collect()),
+        Value::Options(options) => Dynamic::from_map(
+            options.iter().map(|(name, value)| (name.as_str().into(), from_value(value.clone()))).collect(),
+        ),
+        Value::Reaction(reaction) => Dynamic::from(reaction),
+        Value::Nothing => Dynamic::UNIT,
+    }
+}
+
+/// `q("-285.830(20) kJ/mol")`: the one form that keeps typed digits and their uncertainty.
+fn typed(engine: &mut Engine, shared: &Shared) {
+    let session = shared.clone();
+    FuncRegistration::new("q")
+        .with_comments(["/// A quantity as written: number, uncertainty in brackets, unit."])
+        .register_into_engine(
+            engine,
+            move |context: NativeCallContext<'_>, written: ImmutableString| -> Native<Quantity> {
+                let place = place_of(&context);
+                let ordinal = session.state_mut().next_ordinal();
+                text::parse(&written, place.clone(), ordinal).map_err(|error| raise(Fault::from(error).at(place)))
+            },
+        );
+    engine.register_fn("q", |written: Quantity| written);
+}

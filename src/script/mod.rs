@@ -1,0 +1,23 @@
+//! The script language of cells: the engine, made safe for numbers, and its faults in plain words.
+//!
+//! Reading order: `engine` (how it is set up), `numbers`, `compare` and `guards` (what is replaced), `prepare` (what
+//! is read before the engine reads it), `fault` (errors in and out). The engine's types stay in here and in `session`.
+
+pub mod bind;
+pub mod compare;
+pub mod engine;
+pub mod fault;
+pub mod guards;
+pub mod host;
+pub mod literals;
+pub mod memory;
+pub mod numbers;
+pub mod operators;
+pub mod prepare;
+pub mod script_error;
+pub mod show;
+pub mod state;
+pub mod syntax;
+pub mod token;
+pub mod verbs;
+pub mod words;

@@ -1,0 +1,383 @@
+//! What an analyst says in a notebook beside computing: report, parameter, justify, tolerate, require, assumptions.
+//!
+//! These change the session's own state, which a failed cell takes back. The surprise: deciding about an assumption
+//! changes the result where it was shown, so that a notebook's page and its records never lag behind the decision.
+
+use std::cell::Cell;
+use std::rc::Rc;
+
+use rhai::{Dynamic, Engine, FuncRegistration, ImmutableString, NativeCallContext};
+
+use crate::fault::{Explain, Fault};
+use crate::model::card::{Cx, Value};
+use crate::model::review::{Dealing, Decided};
+use crate::quantity::{Quantity, text};
+use crate::render::report::{Assumption, Report};
+use crate::render::{Bundle, register as register_view};
+use crate::script::bind::{Native, to_value, with_context};
+use crate::script::show;
+use crate::script::state::{Parameter, Reported, Shared, place_of};
+
+/// A verb as help shows it.
+pub struct Verb {
+    pub name: &'static str,
+    pub signature: &'static str,
+    pub doc: &'static str,
+}
+
+/// The verbs, in the order help lists them.
+pub const VERBS: &[Verb] = &[
+    Verb {
+        name: "report",
+        signature: "report(label, value)",
+        doc: "Makes a value a reported result: tests its assumptions and shows it with conditions, prices and sources. \
+              A label is used once in a notebook.",
+    },
+    Verb {
+        name: "parameter",
+        signature: "parameter(name, value)",
+        doc: "Declares an input that `hessbook run --set name=text` may override; gives the value in force.",
+    },
+    Verb {
+        name: "justify",
+        signature: "justify(id, label, reason) or justify(id, label, reason, about)",
+        doc: "Leaves a result as it is in spite of an assumption, for a reason that is kept with it.",
+    },
+    Verb {
+        name: "tolerate",
+        signature: "tolerate(id, label, limit) or tolerate(id, label, limit, about)",
+        doc: "Sets how large the price of an assumption may be for one result.",
+    },
+    Verb {
+        name: "display",
+        signature: "display(value)",
+        doc: "Shows a value at once, in the middle of a cell, as the cell's last value is shown.",
+    },
+    Verb {
+        name: "assumptions",
+        signature: "assumptions()",
+        doc: "Shows the register: every reported result with its assumptions.",
+    },
+    Verb {
+        name: "require",
+        signature: "require(condition, text)",
+        doc: "Makes the notebook fail, with this text, where the condition does not hold.",
+    },
+];
+
+/// Something made only to be shown, such as the register.
+#[derive(Clone)]
+pub struct Display(pub Rc<Bundle>);
+
+/// Why a verb is refused.
+#[derive(Clone, Debug, thiserror::Error)]
+enum VerbError {
+    #[error("`{label}` is reported already, by {by}")]
+    LabelTaken { label: String, by: String },
+    #[error("a report needs a label")]
+    EmptyLabel,
+    #[error("nothing is reported as `{label}`")]
+    UnknownLabel { label: String, known: Vec<String> },
+    #[error("`{label}` rests on no assumption `{id}`")]
+    UnknownRow { label: String, id: String, known: Vec<String> },
+    #[error("`{label}` has {count} assumptions `{id}`: {subjects}")]
+    SeveralRows { label: String, id: String, count: usize, subjects: String },
+    #[error("a justification of `{id}` needs a reason")]
+    NoReason { id: String },
+    #[error("{text}")]
+    Requirement { text: String },
+    #[error("`report` wants a quantity, not {given}")]
+    NotAQuantity { given: String },
+    #[error("the parameter `{name}` is declared twice")]
+    ParameterTwice { name: String },
+    #[error("the parameter `{name}` was set to a value in {given} and is declared in {declared}")]
+    ParameterUnit { name: String, given: String, declared: String },
+    #[error("the parameter `{name}` was set to `{given}`, which is no number")]
+    ParameterNumber { name: String, given: String },
+    #[error("the limit of `{id}` is given in {given}, and `{label}` is in {unit}")]
+    LimitUnit { id: String, given: String, label: String, unit: String },
+}
+
+impl Explain for VerbError {
+    fn code(&self) -> &'static str {
+        match self {
+            VerbError::LabelTaken { .. } => "label-taken",
+            VerbError::EmptyLabel => "label-empty",
+            VerbError::UnknownLabel { .. } => "label-unknown",
+            VerbError::UnknownRow { .. } => "assumption-unknown",
+            VerbError::SeveralRows { .. } => "assumption-not-one",
+            VerbError::NoReason { .. } => "reason-missing",
+            VerbError::Requirement { .. } => "requirement-failed",
+            VerbError::NotAQuantity { .. } => "report-not-a-quantity",
+            VerbError::ParameterTwice { .. } => "parameter-twice",
+            VerbError::ParameterUnit { .. } => "parameter-unit",
+            VerbError::ParameterNumber { .. } => "parameter-not-a-number",
+            VerbError::LimitUnit { .. } => "limit-unit",
+        }
+    }
+
+    fn hint(&self) -> String {
+        let listed = |known: &[String]| known.iter().map(|one| format!("`{one}`")).collect::<Vec<_>>().join(", ");
+        match self {
+            VerbError::LabelTaken { .. } => {
+                "give this result a label of its own; labels pair results in an audit".to_owned()
+            }
+            VerbError::EmptyLabel => {
+                "name what the value is, as in `report(\"shift enthalpy at outlet\", dH)`".to_owned()
+            }
+            VerbError::UnknownLabel { known, .. } if known.is_empty() => {
+                "report the value first, then decide about it".to_owned()
+            }
+            VerbError::UnknownLabel { known, .. } => format!("reported so far: {}", listed(known)),
+            VerbError::UnknownRow { known, .. } if known.is_empty() => {
+                "it rests on none; nothing needs to be said".to_owned()
+            }
+            VerbError::UnknownRow { known, .. } => format!("it rests on {}", listed(known)),
+            VerbError::SeveralRows { .. } => "name the one that is meant as a fourth argument".to_owned(),
+            VerbError::NoReason { .. } => "say in words why the value may stay as it is".to_owned(),
+            VerbError::Requirement { .. } => "the notebook asks for this on purpose; see the text".to_owned(),
+            VerbError::NotAQuantity { .. } => "give the number a unit, as in `q(\"1.5 kJ/mol\")`".to_owned(),
+            VerbError::ParameterTwice { .. } => "declare it in one place and use the variable elsewhere".to_owned(),
+            VerbError::ParameterUnit { declared, .. } => {
+                format!("set it in a unit of the same dimension, such as {declared}")
+            }
+            VerbError::ParameterNumber { .. } => "set it to a plain number".to_owned(),
+            VerbError::LimitUnit { unit, .. } => format!("give the limit in {unit}"),
+        }
+    }
+}
+
+/// Registers the verbs.
+pub fn register(engine: &mut Engine, shared: &Shared) {
+    engine.register_type_with_name::<Display>("display");
+    let add = |name: &'static str| {
+        let doc = VERBS.iter().find(|verb| verb.name == name).map_or("", |verb| verb.doc);
+        FuncRegistration::new(name).with_comments([format!("/// {doc}")])
+    };
+    let verb = Verbs { shared: shared.clone() };
+
+    let v = verb.clone();
+    add("report").register_into_engine(
+        engine,
+        move |c: NativeCallContext<'_>, label: ImmutableString, value: Dynamic| {
+            v.within(&c, |cx| v.report(cx, &label, &value))
+        },
+    );
+    let v = verb.clone();
+    add("parameter").register_into_engine(
+        engine,
+        move |c: NativeCallContext<'_>, name: ImmutableString, value: Dynamic| {
+            v.within(&c, |cx| v.parameter(cx, &name, &value))
+        },
+    );
+    let v = verb.clone();
+    add("justify").register_into_engine(
+        engine,
+        move |c: NativeCallContext<'_>, id: ImmutableString, label: ImmutableString, reason: ImmutableString| {
+            v.within(&c, |cx| v.justify(cx, &id, &label, &reason, None))
+        },
+    );
+    let v = verb.clone();
+    add("justify").register_into_engine(
+        engine,
+        move |c: NativeCallContext<'_>,
+              id: ImmutableString,
+              label: ImmutableString,
+              reason: ImmutableString,
+              about: ImmutableString| { v.within(&c, |cx| v.justify(cx, &id, &label, &reason, Some(&about))) },
+    );
+    let v = verb.clone();
+    add("tolerate").register_into_engine(
+        engine,
+        move |c: NativeCallContext<'_>, id: ImmutableString, label: ImmutableString, limit: Dynamic| {
+            v.within(&c, |cx| v.tolerate(cx, &id, &label, &limit, None))
+        },
+    );
+    let v = verb.clone();
+    add("tolerate").register_into_engine(
+        engine,
+        move |c: NativeCallContext<'_>,
+              id: ImmutableString,
+              label: ImmutableString,
+              limit: Dynamic,
+              about: ImmutableString| { v.within(&c, |cx| v.tolerate(cx, &id, &label, &limit, Some(&about))) },
+    );
+    let shown = shared.clone();
+    add("display").register_into_engine(engine, move |value: Dynamic| shown.show(&show::bundle_of(&value), None));
+    let v = verb.clone();
+    add("assumptions").register_into_engine(engine, move |c: NativeCallContext<'_>| {
+        v.within(&c, |_| Ok(Display(Rc::new(register_view::bundle(&reports(&v.shared))))))
+    });
+    let v = verb;
+    add("require").register_into_engine(
+        engine,
+        move |c: NativeCallContext<'_>, condition: bool, text: ImmutableString| {
+            v.within(&c, |_| {
+                if condition { Ok(()) } else { Err(Fault::from(VerbError::Requirement { text: text.to_string() })) }
+            })
+        },
+    );
+}
+
+/// Every report of the session so far, with the decisions in force.
+pub fn reports(shared: &Shared) -> Vec<Report> {
+    let (state, ordinal) = (shared.state(), Cell::new(0));
+    // Reviewing reads nothing as typed, so no numbers are given out.
+    let cx = &Cx { references: shared.references(), place: None, ordinal: &ordinal };
+    state.reports.iter().map(|one| Report::of(cx, &one.label, &one.value, &state.dealings)).collect()
+}
+
+#[derive(Clone)]
+struct Verbs {
+    shared: Shared,
+}
+
+impl Verbs {
+    fn within<T>(&self, context: &NativeCallContext<'_>, work: impl FnOnce(&Cx) -> Result<T, Fault>) -> Native<T> {
+        with_context(&self.shared, place_of(context), work)
+    }
+
+    fn report(&self, cx: &Cx, label: &str, value: &Dynamic) -> Result<(), Fault> {
+        let value = match to_value(value) {
+            Value::Quantity(value) => value,
+            other => return Err(VerbError::NotAQuantity { given: other.sort().to_owned() }.into()),
+        };
+        if label.trim().is_empty() {
+            return Err(VerbError::EmptyLabel.into());
+        }
+        let cell = self.shared.state().cell.clone();
+        let taken = self.shared.state().reports.iter().find(|one| one.label == label).map(|one| Rc::clone(&one.cell));
+        if let Some(by) = taken.filter(|by| *by != cell) {
+            return Err(VerbError::LabelTaken { label: label.to_owned(), by: by.to_string() }.into());
+        }
+        let one = Reported { label: label.to_owned(), value, cell };
+        let mut state = self.shared.state_mut();
+        match state.reports.iter_mut().find(|known| known.label == label) {
+            Some(known) => *known = one,
+            None => state.reports.push(one),
+        }
+        drop(state);
+        self.shared.show(&self.reviewed(cx, label)?.bundle(), Some(&display_id(label)));
+        Ok(())
+    }
+
+    fn reviewed(&self, cx: &Cx, label: &str) -> Result<Report, Fault> {
+        let state = self.shared.state();
+        let Some(one) = state.reports.iter().find(|one| one.label == label) else {
+            let known = state.reports.iter().map(|one| one.label.clone()).collect();
+            return Err(VerbError::UnknownLabel { label: label.to_owned(), known }.into());
+        };
+        Ok(Report::of(cx, label, &one.value, &state.dealings))
+    }
+
+    /// The one row that an id, and a subject where one is given, mean.
+    fn row(&self, cx: &Cx, id: &str, label: &str, about: Option<&str>) -> Result<Assumption, Fault> {
+        let report = self.reviewed(cx, label)?;
+        let rows: Vec<&Assumption> = report.record.assumptions.iter().filter(|row| row.id == id).collect();
+        let meant: Vec<&Assumption> =
+            rows.iter().copied().filter(|row| about.is_none_or(|about| row.subject.contains(about))).collect();
+        match meant.as_slice() {
+            [row] => Ok((*row).clone()),
+            [] => {
+                let mut known: Vec<String> = report.record.assumptions.iter().map(|row| row.id.clone()).collect();
+                known.dedup();
+                Err(VerbError::UnknownRow { label: label.to_owned(), id: id.to_owned(), known }.into())
+            }
+            several => {
+                let subjects = several.iter().map(|row| row.subject.clone()).collect::<Vec<_>>().join("; ");
+                Err(VerbError::SeveralRows {
+                    label: label.to_owned(),
+                    id: id.to_owned(),
+                    count: several.len(),
+                    subjects,
+                }
+                .into())
+            }
+        }
+    }
+
+    fn decide(&self, cx: &Cx, id: &str, label: &str, about: Option<&str>, decided: Decided) -> Result<(), Fault> {
+        let row = self.row(cx, id, label, about)?;
+        let dealing = Dealing { id: row.id, label: label.to_owned(), subject: row.subject, decided };
+        self.shared.state_mut().dealings.push(dealing);
+        self.shared.update(&self.reviewed(cx, label)?.bundle(), &display_id(label));
+        Ok(())
+    }
+
+    fn justify(&self, cx: &Cx, id: &str, label: &str, reason: &str, about: Option<&str>) -> Result<(), Fault> {
+        if reason.trim().is_empty() {
+            return Err(VerbError::NoReason { id: id.to_owned() }.into());
+        }
+        self.decide(cx, id, label, about, Decided::Justified { reason: reason.to_owned() })
+    }
+
+    fn tolerate(&self, cx: &Cx, id: &str, label: &str, limit: &Dynamic, about: Option<&str>) -> Result<(), Fault> {
+        let limit = quantity_of(cx, limit)?;
+        let (unit, dim) = {
+            let state = self.shared.state();
+            let value = state.reports.iter().find(|one| one.label == label).map(|one| one.value.clone());
+            drop(state);
+            match value {
+                Some(value) => (value.unit().text.to_string(), value.dim().clone()),
+                None => return self.reviewed(cx, label).map(|_| ()),
+            }
+        };
+        if limit.dim() != &dim && limit.dim().bindings_to(&dim).len() != 1 {
+            let given = limit.unit().text.to_string();
+            return Err(VerbError::LimitUnit { id: id.to_owned(), given, label: label.to_owned(), unit }.into());
+        }
+        let decided = Decided::Tolerated { limit_si: limit.si().abs(), written: text::shown_plain(&limit) };
+        self.decide(cx, id, label, about, decided)
+    }
+
+    fn parameter(&self, cx: &Cx, name: &str, declared: &Dynamic) -> Result<Dynamic, Fault> {
+        let cell = self.shared.state().cell.clone();
+        let twice = self.shared.state().parameters.iter().any(|known| known.name == name && known.cell != cell);
+        if twice {
+            return Err(VerbError::ParameterTwice { name: name.to_owned() }.into());
+        }
+        let set = self.shared.setting(name);
+        let (value, written) = match to_value(declared) {
+            Value::Number(default) => {
+                let number = match &set {
+                    None => default,
+                    Some(set) => set.trim().parse().map_err(|_| {
+                        Fault::from(VerbError::ParameterNumber { name: name.to_owned(), given: set.clone() })
+                    })?,
+                };
+                (Dynamic::from_float(number), number.to_string())
+            }
+            _ => {
+                let default = quantity_of(cx, declared)?;
+                let value = match &set {
+                    None => default.clone(),
+                    Some(set) => text::parse(set, cx.place.clone(), cx.next_ordinal())?,
+                };
+                if value.dim() != default.dim() {
+                    let (given, declared) = (value.unit().text.to_string(), default.unit().text.to_string());
+                    return Err(VerbError::ParameterUnit { name: name.to_owned(), given, declared }.into());
+                }
+                let written = text::shown_plain(&value);
+                (Dynamic::from(value), written)
+            }
+        };
+        let parameter = Parameter { name: name.to_owned(), written, set: set.is_some(), cell };
+        let mut state = self.shared.state_mut();
+        state.parameters.retain(|known| known.name != name);
+        state.parameters.push(parameter);
+        Ok(value)
+    }
+}
+
+/// Under which id a report is shown, so that a later decision changes it where it stands.
+fn display_id(label: &str) -> String {
+    format!("report: {label}")
+}
+
+fn quantity_of(cx: &Cx, value: &Dynamic) -> Result<Quantity, Fault> {
+    match to_value(value) {
+        Value::Quantity(value) => Ok(value),
+        Value::Text(written) => Ok(text::parse(&written, cx.place.clone(), cx.next_ordinal())?),
+        other => Err(VerbError::NotAQuantity { given: other.sort().to_owned() }.into()),
+    }
+}
