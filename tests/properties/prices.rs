@@ -118,7 +118,8 @@ fn the_price_of_a_dataset_is_the_difference_to_the_one_it_names() {
                 let Ok(value) = desk.ask(card, equation, t, &[("formation", formation)]) else { continue };
                 let record = report(&desk, &value);
                 let [row] = rows(&record, "formation-dataset")[..] else { panic!("{equation} has not one row") };
-                let other = row.note.strip_prefix("formation enthalpies of ").unwrap_or_else(|| panic!("{}", row.note));
+                let (_, other) =
+                    row.note.split_once("formation enthalpies of ").unwrap_or_else(|| panic!("{}", row.note));
                 let instead = desk.ask(card, equation, t, &[("formation", other)]).unwrap();
                 let wanted = in_own_unit(&value) - in_own_unit(&instead);
                 let price = number(row.price.as_ref().unwrap());
