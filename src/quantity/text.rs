@@ -348,6 +348,7 @@ mod tests {
         assert_eq!(value, -285_830.0);
         assert!((u.unwrap() - 20.0).abs() < 1e-12);
         assert_eq!(read("25.00(5) degC"), (298.15, Some(0.05)));
+        assert_eq!(read("77 degF").0, 298.15); // to the last bit, or it would not be the reference temperature
         assert_eq!(read("6.02(1)e23"), (6.02e23, Some(1e21)));
         assert_eq!(read("1.5 J"), (1.5, None));
         assert_eq!(read("5 eV").0, 5.0 * 1.602_176_634e-19); // SI Brochure, 9th ed.: e is exact

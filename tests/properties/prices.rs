@@ -8,7 +8,7 @@ use crate::{check, near};
 use hessbook::data::catalog::{Catalog, T_REFERENCE_K};
 use hessbook::model::basis::PER;
 use hessbook::model::card::{self, Card, Value};
-use hessbook::model::property::{
+use hessbook::model::property_card::{
     ENTHALPY, ENTROPY, EQUILIBRIUM_CONSTANT, GIBBS_ENERGY, HEAT_CAPACITY, HELMHOLTZ_ENERGY, INTERNAL_ENERGY,
 };
 use hessbook::quantity::Quantity;

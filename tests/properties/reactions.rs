@@ -12,7 +12,7 @@ use hessbook::data::catalog::Catalog;
 use hessbook::fault::Fault;
 use hessbook::model::card::Card;
 use hessbook::model::function;
-use hessbook::model::property::{
+use hessbook::model::property_card::{
     ENTHALPY, ENTROPY, EQUILIBRIUM_CONSTANT, GIBBS_ENERGY, HEAT_CAPACITY, HELMHOLTZ_ENERGY, INTERNAL_ENERGY,
 };
 use hessbook::num::math::ln;
