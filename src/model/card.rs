@@ -491,7 +491,10 @@ fn as_quantity(cx: &Cx, value: Value, refused: impl Fn(&Value) -> Fault) -> Resu
 
 fn as_point(card: &'static Card, arg: &'static Arg, value: Quantity) -> Result<Quantity, Fault> {
     if !value.kind().what.is_temperature() {
-        let given = format!("a value in {}", units::unit_for(value.dim()).text);
+        let given = match value.dim().is_none() {
+            true => "a pure number".to_owned(),
+            false => format!("a value in {}", units::unit_for(value.dim()).text),
+        };
         let wanted = "a temperature, as in `q(\"450 degC\")`".to_owned();
         return Err(ArgumentError::Sort { function: card.name, argument: arg.name, wanted, given }.into());
     }

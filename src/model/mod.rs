@@ -8,10 +8,12 @@ pub mod claims;
 pub mod conditions;
 pub mod function;
 pub mod gather;
+pub mod mass;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
 pub mod reaction;
+pub mod refusal;
 pub mod review;
 pub mod substance;
 pub mod terms;
@@ -39,6 +41,11 @@ pub const CARDS: &[&Card] = &[
     &property_card::SUBSTANCE_HEAT_CAPACITY,
     &substance::ENTHALPY_INCREMENT,
     &basis::PER,
+    &mass::PER_MASS,
+    &mass::PER_MOLE,
+    &mass::PER_KG_OF,
+    &mass::WAVENUMBER_ENERGY,
+    &mass::MOLAR_MASS,
     &quantities::MEAN,
     &quantities::TO,
     &quantities::VALUE,

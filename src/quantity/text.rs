@@ -35,7 +35,7 @@ pub enum TextError {
     Range { text: String },
     #[error("an uncertainty of {u} is negative")]
     Negative { u: f64 },
-    #[error("{t_k} K is below absolute zero")]
+    #[error("{t_k:.2} K is below absolute zero")]
     BelowZero { t_k: f64 },
     #[error(transparent)]
     Unit(#[from] UnitError),

@@ -83,7 +83,7 @@ fn register_language(engine: &mut Engine, shared: &Shared) {
 /// last, so that they may replace a form of the language where they know better.
 fn register_library(engine: &mut Engine, shared: &Shared) {
     bind::register(engine, shared);
-    operators::register(engine);
+    operators::register(engine, shared);
     verbs::register(engine, shared);
 }
 

@@ -3,14 +3,18 @@
 //! The engine answers some senseless comparisons with `false` and glues a quantity to a text without a word; each such
 //! road is closed here with a fault. There is no `==` on measured values.
 
+use std::cell::Cell;
+
 use rhai::{Dynamic, Engine, ImmutableString, NativeCallContext};
 
 use crate::fault::{Explain, Fault, Place};
+use crate::model::card::Cx;
+use crate::model::refusal;
 use crate::quantity::{Mismatch, Quantity};
 use crate::render;
 use crate::script::bind::Native;
 use crate::script::fault::raise;
-use crate::script::state::place_of;
+use crate::script::state::{Shared, place_of};
 
 /// A use of an operator that has no meaning for quantities.
 #[derive(Clone, Debug, thiserror::Error)]
@@ -100,8 +104,8 @@ macro_rules! with_numbers {
 }
 
 /// Registers operators and functions of quantities.
-pub fn register(engine: &mut Engine) {
-    pairs(engine);
+pub fn register(engine: &mut Engine, shared: &Shared) {
+    pairs(engine, shared);
     with_numbers!(engine, f64, |number| number);
     with_numbers!(engine, i64, |number| number as f64);
     functions(engine);
@@ -111,15 +115,25 @@ pub fn register(engine: &mut Engine) {
     engine.register_fn("to_debug", |value: &mut Quantity| render::text::value(value));
 }
 
-fn pairs(engine: &mut Engine) {
+fn pairs(engine: &mut Engine, shared: &Shared) {
     type Binary = fn(&Quantity, &Quantity, Option<Place>) -> Result<Quantity, Mismatch>;
     let operators: [(&str, Binary); 4] =
         [("+", Quantity::plus), ("-", Quantity::minus), ("*", Quantity::times), ("/", Quantity::over)];
     for (symbol, run) in operators {
-        engine.register_fn(symbol, move |context: NativeCallContext<'_>, a: Quantity, b: Quantity| {
-            let place = place_of(&context);
-            done(run(&a, &b, place.clone()), place)
-        });
+        let session = shared.clone();
+        engine.register_fn(
+            symbol,
+            move |context: NativeCallContext<'_>, a: Quantity, b: Quantity| -> Native<Quantity> {
+                let place = place_of(&context);
+                run(&a, &b, place.clone()).map_err(|mismatch| {
+                    let ordinal = Cell::new(0); // A refusal reads nothing as typed.
+                    let cx = Cx { references: session.references(), place: None, ordinal: &ordinal };
+                    let figure = refusal::figure(&cx, &a, &b, &mismatch);
+                    let fault = Fault::from(mismatch).at(place);
+                    raise(figure.map_or(fault.clone(), |figure| fault.adding(&figure)))
+                })
+            },
+        );
     }
     engine.register_fn("-", |context: NativeCallContext<'_>, a: Quantity| {
         done(a.negated(place_of(&context)), place_of(&context))
