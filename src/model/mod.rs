@@ -14,6 +14,7 @@ pub mod property_card;
 pub mod quantities;
 pub mod reaction;
 pub mod refusal;
+pub mod remedy;
 pub mod review;
 pub mod substance;
 pub mod terms;
@@ -40,6 +41,8 @@ pub const CARDS: &[&Card] = &[
     &property_card::SUBSTANCE_ENTROPY,
     &property_card::SUBSTANCE_HEAT_CAPACITY,
     &substance::ENTHALPY_INCREMENT,
+    &remedy::CORRECTED,
+    &remedy::WIDENED,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,

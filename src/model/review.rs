@@ -115,6 +115,20 @@ fn in_unit(value: &Quantity, si: f64) -> f64 {
     si / value.unit().factor
 }
 
+/// The rows a value rests on, each with its findings, as they stand without a report and without decisions.
+pub fn rows(cx: &Cx, value: &Quantity) -> Vec<(Vec<Finding>, Row)> {
+    let history = node::history(value.node());
+    let default = tolerance::default(value, cx.constants());
+    findings(cx, value, &history, &silent_inputs(value))
+        .into_iter()
+        .map(|group| {
+            let judgement = judge(&group, value.node(), default);
+            let row = row(value, &group, judgement, &[]);
+            (group, row)
+        })
+        .collect()
+}
+
 fn judged_rows(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing], groups: &[Vec<Finding>]) -> Vec<Row> {
     let default = tolerance::default(value, cx.constants());
     let mut rows = Vec::new();
