@@ -262,6 +262,10 @@ impl Call {
 }
 
 impl Step for Call {
+    fn name(&self) -> &'static str {
+        self.card.name
+    }
+
     fn does(&self) -> String {
         let mut words: Vec<String> = Vec::new();
         for arg in &self.args {

@@ -37,6 +37,17 @@ pub enum HeatCapacity {
 impl HeatCapacity {
     pub const WORDS: &'static [&'static str] = &["full", "constant", "midpoint", "mean"];
 
+    /// How Cp was taken, for the register.
+    pub fn words(self) -> &'static str {
+        match self {
+            HeatCapacity::Full => "integrated",
+            HeatCapacity::Constant => "held at its value at 298.15 K",
+            HeatCapacity::Midpoint => "held at its value half-way",
+            HeatCapacity::Mean => "held at the mean of both ends",
+            HeatCapacity::Neglected => "neglected",
+        }
+    }
+
     pub fn from_word(word: &str) -> HeatCapacity {
         match word {
             "constant" => HeatCapacity::Constant,
@@ -256,7 +267,9 @@ fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<
     if let Some(record) = substance.formation(dataset) {
         let digit = if record.dhf.is_convention() { None } else { Some(record.dhf.last_place()) };
         let input = Input { key, u: record.dhf.u, digit, label: None, citation: Some(record.citation.clone()) };
-        return Some(Figure { si: record.dhf.value, input, printed: Some(record.dhf.printed.clone()) });
+        // A figure that its table prints in J/mol would stand beside others in kJ/mol.
+        let printed = (record.dhf.unit == "kJ/mol").then(|| record.dhf.printed.clone());
+        return Some(Figure { si: record.dhf.value, input, printed });
     }
     let function = substance.function.as_ref()?;
     if function.is_reference_element && function.dhf_298 == 0.0 {

@@ -183,7 +183,7 @@ fn own_assumption(_: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
     vec![Finding {
         id: Rc::clone(call.text(1)),
         claim: Rc::clone(call.text(2)),
-        subject: "the analyst's own step".to_owned(),
+        subject: call.text(2).to_string(),
         at: Rc::clone(value.node()),
         t_k: None,
         tested,

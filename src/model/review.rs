@@ -69,6 +69,8 @@ pub struct Shortcut {
 
 /// What is to be said of a reported value.
 pub struct Review {
+    /// The reactions and substances it was computed from, as written.
+    pub about: Vec<String>,
     pub conditions: String,
     pub check_line: String,
     pub tolerance: f64,
@@ -100,6 +102,7 @@ pub fn review(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing]) -> R
     }
     let judged = judged_rows(cx, label, value, dealings, &findings);
     Review {
+        about: conditions::about(value),
         conditions: conditions::line(value),
         check_line,
         tolerance: in_unit(value, tolerance::default(value, cx.constants())),
@@ -135,27 +138,34 @@ fn judged_rows(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing], gro
     let mut held = 0.0;
     for group in groups {
         let own: Vec<&Dealing> = dealings.iter().filter(|d| group.iter().any(|one| d.is_about(label, one))).collect();
-        let limit = own.iter().rev().find_map(|dealing| match &dealing.decided {
-            Decided::Tolerated { limit_si, .. } => Some(*limit_si),
-            Decided::Justified { .. } => None,
-        });
-        let judgement = judge(group, value.node(), limit.unwrap_or(default));
+        let judgement = judge(group, value.node(), limit_of(&own).unwrap_or(default));
+        // What was tolerated beyond the default limit is decided about already.
         if judgement.status == Status::Holds {
-            held += judgement.price.unwrap_or(0.0);
+            held += judgement.price.filter(|price| price.abs() <= default).unwrap_or(0.0);
         }
         rows.push(row(value, group, judgement, &own));
     }
     let limit = tolerance::together(value, default);
     if held.abs() > limit {
-        let limit = signed(value, in_unit(value, limit));
-        let how = format!("the prices of all assumptions that hold, added up, pass {}", limit.trim_start_matches('+'));
+        let unit = crate::units::reader_text(&value.unit());
+        let shown = signed(value, in_unit(value, limit));
+        let how =
+            format!("the prices of all assumptions that hold, added up, pass {} {unit}", shown.trim_start_matches('+'));
         let tested = Tested::Given { price: held, how };
         let group = [Finding::known("together", "all rows that hold", value.node(), None, tested)];
         let own: Vec<&Dealing> = dealings.iter().filter(|d| d.is_about(label, &group[0])).collect();
-        rows.push(row(value, &group, judge(&group, value.node(), 0.0), &own));
+        rows.push(row(value, &group, judge(&group, value.node(), limit_of(&own).unwrap_or(0.0)), &own));
     }
     rows.sort_by(|a, b| (a.status, &a.id, &a.subject).cmp(&(b.status, &b.id, &b.subject)));
     rows
+}
+
+/// The limit an analyst set last.
+fn limit_of(dealings: &[&Dealing]) -> Option<f64> {
+    dealings.iter().rev().find_map(|dealing| match &dealing.decided {
+        Decided::Tolerated { limit_si, .. } => Some(*limit_si),
+        Decided::Justified { .. } => None,
+    })
 }
 
 fn row(value: &Quantity, group: &[Finding], judgement: Judgement, dealings: &[&Dealing]) -> Row {
@@ -307,39 +317,62 @@ fn silent_in_full(silent: &[(String, Vec<String>)]) -> String {
     silent.iter().map(one).collect::<Vec<_>>().join(" and ")
 }
 
-/// The figures a value was computed from: by its formula's own line, or, for arithmetic, the line of each formula in it.
+/// The figures a value was computed from: by its formula's own line, or, for arithmetic and for formulas that hand a value
+/// on, the line of each formula that went in, and then the step itself.
 fn check_line(cx: &Cx, value: &Quantity, sources: &mut Sources) -> String {
     if let Some(line) = own_line(cx, value.node(), sources) {
         return line;
     }
-    let Origin::Operator(operator) = value.node().origin() else { return String::new() };
+    let node = value.node();
+    if node.inputs().is_empty() {
+        return String::new();
+    }
     let mut names = Vec::new();
     let mut lines = Vec::new();
-    for (input, _) in value.node().inputs() {
-        let number = round::shortest(Quantity::of_node(Rc::clone(input)).unit().from_si(input.si()));
-        names.push(if number.starts_with('-') { format!("({number})") } else { number });
+    for (input, _) in node.inputs().iter().take(MOST_FIGURES) {
+        names.push(figure(&Quantity::of_node(Rc::clone(input))));
         if let Some(line) = own_line(cx, input, sources) {
             lines.push(line);
         }
     }
-    let result = round::shortest(Quantity::of_node(Rc::clone(value.node())).unit().from_si(value.si()));
-    let symbol = |operator: &Operator| match (operator, &names[..]) {
+    let more = if node.inputs().len() > MOST_FIGURES { ", …" } else { "" };
+    let step = match node.origin() {
+        Origin::Operator(operator) => arithmetic(operator, &names),
+        Origin::Step(step) => format!("{} of {}{more}", step.name(), names.join(", ")),
+        _ => return String::new(),
+    };
+    lines.push(format!("{step} = {}", figure(value)));
+    lines.join("; ")
+}
+
+/// A check line is to be followed by hand.
+const MOST_FIGURES: usize = 8;
+
+/// A value with its unit, to the digits a calculator needs.
+fn figure(value: &Quantity) -> String {
+    let unit = value.unit();
+    let number = round::shortest(round::significant(unit.from_si(value.si()), 9).parse().unwrap_or(f64::NAN));
+    let number = if number.starts_with('-') { format!("({number})") } else { number };
+    let unit = crate::units::reader_text(&unit);
+    if unit.is_empty() { number } else { format!("{number} {unit}") }
+}
+
+fn arithmetic(operator: &Operator, names: &[String]) -> String {
+    match (operator, names) {
         (Operator::Add, [a, b]) => format!("{a} + {b}"),
         (Operator::Subtract, [a, b]) => format!("{a} - {b}"),
         (Operator::Multiply, [a, b]) => format!("{a} × {b}"),
-        (Operator::Divide, [a, b]) => format!("{a} / {b}"),
+        (Operator::Divide, [a, b]) => format!("({a}) / ({b})"),
         (Operator::Negate, [a]) => format!("-{a}"),
         (Operator::Scale(factor), [a]) => format!("{factor} × {a}"),
         (Operator::Shift(by), [a]) => format!("{a} + {by}"),
-        (Operator::Reciprocal(numerator), [a]) => format!("{numerator} / {a}"),
-        (Operator::Power(exponent), [a]) => format!("{a} ^ {exponent}"),
+        (Operator::Reciprocal(numerator), [a]) => format!("{numerator} / ({a})"),
+        (Operator::Power(exponent), [a]) => format!("({a}) ^ {exponent}"),
         (Operator::Exp, [a]) => format!("exp {a}"),
         (Operator::Ln, [a]) => format!("ln {a}"),
         (Operator::Absolute, [a]) => format!("|{a}|"),
         (_, all) => format!("({}) / {}", all.join(" + "), all.len()),
-    };
-    let own = format!("{} = {result}", symbol(operator));
-    if lines.is_empty() { own } else { format!("{}; {own}", lines.join("; ")) }
+    }
 }
 
 fn own_line(cx: &Cx, node: &Rc<Node>, sources: &mut Sources) -> Option<String> {

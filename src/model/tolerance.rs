@@ -4,12 +4,13 @@
 //! |ν|. With a partial u: the larger of that and a tenth of the stated part. Scaled alike for S and Cp (t/T) and for ln K
 //! (t/RT). Values that are no reaction property: 1 %. (Common practice, no source.)
 
+use std::rc::Rc;
+
 use crate::model::card::{Call, call_of};
-use crate::model::terms::Terms;
 use crate::num::math;
 use crate::quantity::Quantity;
 use crate::record::node;
-use crate::record::spread::Spread;
+use crate::record::spread::{Spread, derivative};
 use crate::units::constants::ConstantSet;
 use crate::units::{Of, What};
 
@@ -25,11 +26,26 @@ pub fn default(value: &Quantity, constants: &ConstantSet) -> f64 {
     {
         return (u / 10.0).max(value.shown().half_digit_si);
     }
-    let fixed = scale(value, constants).map_or(OTHERWISE * value.si().abs(), |per_nu| per_nu * largest_nu(value));
+    let fixed = fixed(value, constants).unwrap_or(OTHERWISE * value.si().abs());
     match spread {
         Spread::Partial { u, .. } => fixed.max(u / 10.0),
         _ => fixed,
     }
+}
+
+/// The tolerance that does not look at u: of a formula's own result, else of the results it was computed from, carried here
+/// by the derivative, so that per kilogram or as a total a value is judged as it is per mole. `None`: it rests on none.
+fn fixed(value: &Quantity, constants: &ConstantSet) -> Option<f64> {
+    if let Some(terms) = call_of(value.node()).and_then(Call::terms) {
+        return scale(value, constants).map(|per_nu| per_nu * terms.largest_nu());
+    }
+    let history = node::history(value.node());
+    let carried = history.iter().filter_map(|node| {
+        let terms = call_of(node)?.terms()?;
+        let own = scale(&Quantity::of_node(Rc::clone(node)), constants)? * terms.largest_nu();
+        Some(own * derivative(value.node(), node.id()).abs())
+    });
+    carried.filter(|t| *t > 0.0).reduce(f64::max)
 }
 
 /// How large the prices of all rows that hold may be together: u/3, where u is complete. Where it is not, the stated part
@@ -52,9 +68,4 @@ fn scale(value: &Quantity, constants: &ConstantSet) -> Option<f64> {
         _ if molar => Some(PER_NU),
         _ => None,
     }
-}
-
-fn largest_nu(value: &Quantity) -> f64 {
-    let largest = |call: &Call| call.terms().map_or(1.0, Terms::largest_nu);
-    node::history(value.node()).iter().filter_map(|node| call_of(node).map(largest)).fold(1.0, f64::max)
 }

@@ -203,7 +203,7 @@ impl NotebookFile {
 /// As the file system says.
 pub fn write_whole(path: &Path, bytes: &[u8]) -> std::io::Result<()> {
     let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(Path::new("."));
-    let mut file = tempfile::NamedTempFile::new_in(folder)?;
+    let mut file = tempfile::Builder::new().permissions(readable()).tempfile_in(folder)?;
     file.write_all(bytes)?;
     file.as_file().sync_all()?;
     if let Ok(old) = std::fs::metadata(path) {
@@ -211,6 +211,12 @@ pub fn write_whole(path: &Path, bytes: &[u8]) -> std::io::Result<()> {
     }
     file.persist(path).map_err(|error| error.error)?;
     Ok(())
+}
+
+/// The rights of a file as any program makes one; the user's mask is taken off by the system.
+#[cfg(unix)]
+fn readable() -> std::fs::Permissions {
+    std::os::unix::fs::PermissionsExt::from_mode(0o666)
 }
 
 fn source_of(cell: &Value) -> Option<String> {

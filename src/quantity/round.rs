@@ -17,6 +17,11 @@ pub fn decimals_of_digit(digit: f64) -> i32 {
     -decade(digit * 1.000_000_1) // A digit of 0.01 may be 0.00999… after a unit factor.
 }
 
+/// Decimal places that show that many significant digits of a value.
+pub fn decimals_for_digits(value: f64, digits: i32) -> i32 {
+    if value == 0.0 { i32::MIN } else { digits - 1 - decade(value.abs()) }
+}
+
 /// Exponent of the leading digit.
 fn decade(x: f64) -> i32 {
     if x <= 0.0 || !x.is_finite() {
@@ -34,6 +39,9 @@ pub fn power_of_ten(exponent: i32) -> f64 {
 
 /// `value` with that many decimal places; negative places round to tens, hundreds.
 pub fn fixed(value: f64, decimals: i32) -> String {
+    if decimals > 12 {
+        return significant(value, decimals + decade(value.abs()) + 1);
+    }
     let text = if decimals >= 0 {
         format!("{value:.*}", decimals as usize)
     } else {

@@ -273,7 +273,10 @@ impl Quantity {
             }
             _ => match coarsest_digit(self) {
                 Some(digit) => {
-                    let decimals = round::decimals_of_digit(digit / scale);
+                    // A coarse input is no reason to turn 3.6 MJ into 4: where its decimals would round, at least four digits.
+                    let written = round::decimals_of_digit(digit / scale);
+                    let is_exact = round::fixed(value, written).parse() == Ok(value);
+                    let decimals = if is_exact { written } else { written.max(round::decimals_for_digits(value, 4)) };
                     (round::fixed(value, decimals), 0.5 * round::power_of_ten(-decimals) * scale)
                 }
                 None => (exact(value), 0.0),
@@ -307,7 +310,11 @@ fn coarsest_digit(value: &Quantity) -> Option<f64> {
 /// Number and unit alone, in machine text: `0.5 kJ/mol[rxn]`.
 pub fn shown_plain(value: &Quantity) -> String {
     let shown = value.shown();
-    format!("{} {}", shown.number, shown.unit.text)
+    if value.dim().is_none() && &*shown.unit.text == "1" {
+        shown.number
+    } else {
+        format!("{} {}", shown.number, shown.unit.text)
+    }
 }
 
 /// The value in one line: number, unit, basis in words, and what is not known of its uncertainty.

@@ -108,6 +108,8 @@ impl Operator {
 
 /// A call of a formula, as a node keeps it: enough to explain the step later and to test what it assumed.
 pub trait Step: Any {
+    /// The formula's name in scripts.
+    fn name(&self) -> &'static str;
     /// What was done, in words: `ΔrH° of CO(g) + H2O(g) -> CO2(g) + H2(g)`.
     fn does(&self) -> String;
     /// Publication or definition the formula rests on.

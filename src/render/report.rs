@@ -33,6 +33,8 @@ pub struct Record {
     pub unit: String,
     /// The headline as readers see it.
     pub shown: String,
+    /// The reactions and substances it was computed from, as written.
+    pub about: Vec<String>,
     pub conditions: String,
     pub check_line: String,
     pub tolerance: String,
@@ -139,6 +141,7 @@ fn record(label: &str, value: &Quantity, headline: &Headline, review: &Review) -
         u_missing: review.silent.iter().flat_map(missing).collect(),
         unit: price_unit.clone(),
         shown: headline.line(),
+        about: review.about.clone(),
         conditions: review.conditions.clone(),
         check_line: review.check_line.clone(),
         tolerance: shortest(review.tolerance),

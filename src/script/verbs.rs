@@ -94,6 +94,10 @@ enum VerbError {
     ParameterUnit { name: String, given: String, declared: String },
     #[error("the parameter `{name}` was set to `{given}`, which is no number")]
     ParameterNumber { name: String, given: String },
+    #[error("the limit of `{id}` is not positive")]
+    LimitNotPositive { id: String },
+    #[error("`{id}` of `{label}` has no price that a limit could be set for")]
+    NothingToTolerate { id: String, label: String },
     #[error("the limit of `{id}` is given in {given}, and `{label}` is in {unit}")]
     LimitUnit { id: String, given: String, label: String, unit: String },
 }
@@ -113,6 +117,8 @@ impl Explain for VerbError {
             VerbError::ParameterUnit { .. } => "parameter-unit",
             VerbError::ParameterNumber { .. } => "parameter-not-a-number",
             VerbError::LimitUnit { .. } => "limit-unit",
+            VerbError::LimitNotPositive { .. } => "limit-not-positive",
+            VerbError::NothingToTolerate { .. } => "nothing-to-tolerate",
         }
     }
 
@@ -142,6 +148,10 @@ impl Explain for VerbError {
                 format!("set it in a unit of the same dimension, such as {declared}")
             }
             VerbError::ParameterNumber { .. } => "set it to a plain number".to_owned(),
+            VerbError::LimitNotPositive { .. } => "give the largest size a price may have, without a sign".to_owned(),
+            VerbError::NothingToTolerate { .. } => {
+                "say why the value may stay, with `justify(id, label, reason)`".to_owned()
+            }
             VerbError::LimitUnit { unit, .. } => format!("give the limit in {unit}"),
         }
     }
@@ -246,17 +256,13 @@ impl Verbs {
             return Err(VerbError::EmptyLabel.into());
         }
         let cell = self.shared.state().cell.clone();
+        // What this cell reported before it was run again is gone when it begins, so a label found here is taken.
         let taken = self.shared.state().reports.iter().find(|one| one.label == label).map(|one| Rc::clone(&one.cell));
-        if let Some(by) = taken.filter(|by| *by != cell) {
+        if let Some(by) = taken {
             return Err(VerbError::LabelTaken { label: label.to_owned(), by: by.to_string() }.into());
         }
         let one = Reported { label: label.to_owned(), value, cell };
-        let mut state = self.shared.state_mut();
-        match state.reports.iter_mut().find(|known| known.label == label) {
-            Some(known) => *known = one,
-            None => state.reports.push(one),
-        }
-        drop(state);
+        self.shared.state_mut().reports.push(one);
         self.shared.show(&self.reviewed(cx, label)?.bundle(), Some(&display_id(label)));
         Ok(())
     }
@@ -313,6 +319,12 @@ impl Verbs {
 
     fn tolerate(&self, cx: &Cx, id: &str, label: &str, limit: &Dynamic, about: Option<&str>) -> Result<(), Fault> {
         let limit = quantity_of(cx, limit)?;
+        if limit.si() <= 0.0 {
+            return Err(VerbError::LimitNotPositive { id: id.to_owned() }.into());
+        }
+        if self.row(cx, id, label, about)?.price.is_none() {
+            return Err(VerbError::NothingToTolerate { id: id.to_owned(), label: label.to_owned() }.into());
+        }
         let (unit, dim) = {
             let state = self.shared.state();
             let value = state.reports.iter().find(|one| one.label == label).map(|one| one.value.clone());
@@ -332,7 +344,7 @@ impl Verbs {
 
     fn parameter(&self, cx: &Cx, name: &str, declared: &Dynamic) -> Result<Dynamic, Fault> {
         let cell = self.shared.state().cell.clone();
-        let twice = self.shared.state().parameters.iter().any(|known| known.name == name && known.cell != cell);
+        let twice = self.shared.state().parameters.iter().any(|known| known.name == name);
         if twice {
             return Err(VerbError::ParameterTwice { name: name.to_owned() }.into());
         }
@@ -362,9 +374,7 @@ impl Verbs {
             }
         };
         let parameter = Parameter { name: name.to_owned(), written, set: set.is_some(), cell };
-        let mut state = self.shared.state_mut();
-        state.parameters.retain(|known| known.name != name);
-        state.parameters.push(parameter);
+        self.shared.state_mut().parameters.push(parameter);
         Ok(value)
     }
 }
