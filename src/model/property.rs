@@ -260,7 +260,7 @@ fn gas_constant(constants: &ConstantSet) -> Quantity {
     let r = &constants.molar_gas;
     let dim = Dimension::whole([2, 1, -2, 0, -1, 0]).over(&Dimension::amount(Entity::OPEN));
     let key = LeafKey::Constant { year: constants.year, name: r.name };
-    let input = Input { key, u: Some(r.u), digit: None, label: None, citation: Some(r.citation()) };
+    let input = Input { u: Some(r.u), citation: Some(r.citation()), ..Input::of(key) };
     Quantity::of_node(Rc::new(Node::new(r.value, dim, Kind::PLAIN, SmallVec::new(), Origin::Input(input), None)))
 }
 

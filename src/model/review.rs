@@ -321,6 +321,9 @@ fn check_line(cx: &Cx, value: &Quantity, sources: &mut Sources) -> String {
         (Operator::Power(exponent), [a]) => format!("{a} ^ {exponent}"),
         (Operator::Exp, [a]) => format!("exp {a}"),
         (Operator::Ln, [a]) => format!("ln {a}"),
+        (Operator::Sin, [a]) => format!("sin {a}"),
+        (Operator::Cos, [a]) => format!("cos {a}"),
+        (Operator::Tan, [a]) => format!("tan {a}"),
         (Operator::Absolute, [a]) => format!("|{a}|"),
         (_, all) => format!("({}) / {}", all.join(" + "), all.len()),
     };

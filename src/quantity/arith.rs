@@ -135,6 +135,22 @@ impl Quantity {
         self.unary(Operator::Ln, 1.0 / self.si(), Dimension::none(), Kind::PLAIN, place)
     }
 
+    pub fn sin(&self, place: Option<Place>) -> Result<Quantity, Mismatch> {
+        self.pure("sin")?;
+        self.unary(Operator::Sin, math::cos(self.si()), Dimension::none(), Kind::PLAIN, place)
+    }
+
+    pub fn cos(&self, place: Option<Place>) -> Result<Quantity, Mismatch> {
+        self.pure("cos")?;
+        self.unary(Operator::Cos, -math::sin(self.si()), Dimension::none(), Kind::PLAIN, place)
+    }
+
+    pub fn tan(&self, place: Option<Place>) -> Result<Quantity, Mismatch> {
+        self.pure("tan")?;
+        let tangent = math::tan(self.si());
+        self.unary(Operator::Tan, 1.0 + tangent * tangent, Dimension::none(), Kind::PLAIN, place)
+    }
+
     pub fn absolute(&self, place: Option<Place>) -> Result<Quantity, Mismatch> {
         let partial = if self.si() < 0.0 { -1.0 } else { 1.0 };
         let unit = self.written_unit().cloned();
@@ -233,6 +249,19 @@ mod tests {
         let by_a = (make(a + h, b).si() - make(a - h, b).si()) / (2.0 * h);
         let by_b = (make(a, b + h).si() - make(a, b - h).si()) / (2.0 * h);
         assert!((partials[0] - (by_a + by_b)).abs() < 1e-8 * by_a.abs(), "{partials:?} {by_a} {by_b}");
+    }
+
+    #[test]
+    fn slopes_of_the_functions_of_an_angle_agree_with_a_finite_difference() {
+        // Bound: h²/6 times the third derivative, which is below 150 here (that of the tangent), and rounding of order ε/h.
+        let h = 1e-5;
+        for function in [Quantity::sin, Quantity::cos, Quantity::tan] {
+            let at = |angle: f64| function(&q(&format!("{angle:.17}(1) rad")), None).unwrap();
+            let slope = (at(1.0456 + h).si() - at(1.0456 - h).si()) / (2.0 * h);
+            let partial = at(1.0456).sensitivities()[0].derivative;
+            assert!((partial - slope).abs() < 1e-8, "{partial} {slope}");
+        }
+        assert!(matches!(q("1 K").sin(None), Err(Mismatch::NotPure { function: "sin", .. })));
     }
 
     #[test]

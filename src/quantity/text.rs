@@ -152,16 +152,17 @@ fn build(
         return Err(TextError::BelowZero { t_k: si });
     }
     let scale = unit.factor.abs();
+    let unit = Arc::new(unit);
     let input = Input {
-        key: LeafKey::Typed { place: place.clone(), ordinal },
         u: u.map(|u| u * scale),
         digit: digit.map(|digit| digit * scale),
         label: Some(name.into()),
-        citation: None,
+        unit: Some(Arc::clone(&unit)),
+        ..Input::of(LeafKey::Typed { place: place.clone(), ordinal })
     };
     let made = Quantity::input(si, unit.dim.clone(), kind, input, place);
     let made = made.map_err(|_| TextError::Range { text: name.to_owned() })?;
-    Ok(made.in_unit(Some(Arc::new(unit))))
+    Ok(made.in_unit(Some(unit)))
 }
 
 fn divisor(meaning: &str) -> Result<f64, TextError> {

@@ -14,8 +14,9 @@ use smallvec::SmallVec;
 
 use crate::fault::Place;
 use crate::num::math;
+use crate::record::evaluation::Evaluation;
 use crate::source::Citation;
-use crate::units::{Dimension, Entity, Kind};
+use crate::units::{Dimension, Entity, Kind, Unit};
 
 /// Which input a leaf is. Equal keys are one input, wherever they were read.
 #[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord)]
@@ -37,14 +38,23 @@ pub struct Input {
     pub key: LeafKey,
     /// Standard uncertainty in SI units; `None` where none is stated, which is not zero.
     pub u: Option<f64>,
+    /// How u was evaluated, and what the input is correlated with.
+    pub evaluation: Evaluation,
     /// SI value of one unit in the last digit printed or typed; `None` for what is exact or computed.
     pub digit: Option<f64>,
     /// The text as typed, or the analyst's name for it. A datum and a constant are named by their key.
     pub label: Option<Arc<str>>,
+    /// The unit it was written in, for budgets; `None` for the trade's usual one.
+    pub unit: Option<Arc<Unit>>,
     pub citation: Option<Citation>,
 }
 
 impl Input {
+    /// An input of which nothing is known but which it is.
+    pub fn of(key: LeafKey) -> Input {
+        Input { key, u: None, evaluation: Evaluation::default(), digit: None, label: None, unit: None, citation: None }
+    }
+
     /// What the figure is, for budgets: `formation enthalpy of CO2(g)`.
     pub fn name(&self) -> String {
         match (&self.label, &self.key) {
@@ -77,6 +87,10 @@ pub enum Operator {
     Power(f64),
     Exp,
     Ln,
+    /// Of an angle in radian.
+    Sin,
+    Cos,
+    Tan,
     Absolute,
     /// The weighted sum of all inputs, each with the same weight.
     Mean,
@@ -97,6 +111,9 @@ impl Operator {
             (Operator::Power(exponent), [a]) => math::pow(*a, exponent),
             (Operator::Exp, [a]) => math::exp(*a),
             (Operator::Ln, [a]) => math::ln(*a),
+            (Operator::Sin, [a]) => math::sin(*a),
+            (Operator::Cos, [a]) => math::cos(*a),
+            (Operator::Tan, [a]) => math::tan(*a),
             (Operator::Absolute, [a]) => a.abs(),
             (Operator::Mean, all) => all.iter().sum::<f64>() / all.len() as f64,
             _ => unreachable!("an operator node is built with the inputs its operator takes"),
@@ -112,6 +129,10 @@ pub trait Step: Any {
     fn source(&self) -> &str;
     /// Values that went in as arguments. Those that carry uncertainty are inputs of the node as well.
     fn arguments(&self) -> Vec<Rc<Node>>;
+    /// The value had the node's inputs been these instead; `None` where only its derivatives are known.
+    fn replay(&self, _inputs: &[f64]) -> Option<f64> {
+        None
+    }
     fn as_any(&self) -> &dyn Any;
 }
 
@@ -243,18 +264,22 @@ pub fn history(of: &Rc<Node>) -> Vec<Rc<Node>> {
     seen.into_values().collect()
 }
 
-/// The value of `of` had the node `changed` been `si` instead: recomputed where every step between is arithmetic,
-/// else `None`, and the caller falls back on the first derivative.
+/// The value of `of` had the node `changed` been `si` instead: recomputed where every step between can be, else `None`,
+/// and the caller falls back on the first derivative.
 pub fn replayed(of: &Rc<Node>, changed: u64, si: f64) -> Option<f64> {
     let mut values = std::collections::BTreeMap::from([(changed, si)]);
     for node in history(of) {
         if node.id <= changed || !node.inputs.iter().any(|(input, _)| values.contains_key(&input.id)) {
             continue;
         }
-        let Origin::Operator(operator) = node.origin else { return None };
         let inputs: SmallVec<[f64; 4]> =
             node.inputs.iter().map(|(input, _)| values.get(&input.id).copied().unwrap_or(input.si)).collect();
-        values.insert(node.id, operator.value(&inputs));
+        let value = match &node.origin {
+            Origin::Operator(operator) => operator.value(&inputs),
+            Origin::Step(step) => step.replay(&inputs)?,
+            Origin::Input(_) => unreachable!("an input has no inputs of its own"),
+        };
+        values.insert(node.id, value);
     }
     values.get(&of.id).copied()
 }
@@ -264,8 +289,7 @@ mod tests {
     use super::*;
 
     fn leaf(si: f64) -> Rc<Node> {
-        let input =
-            Input { key: LeafKey::Own(format!("{si}").into()), u: Some(0.1), digit: None, label: None, citation: None };
+        let input = Input { u: Some(0.1), ..Input::of(LeafKey::Own(format!("{si}").into())) };
         Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
     }
 

@@ -160,8 +160,7 @@ mod tests {
     use crate::units::{Dimension, Kind};
 
     fn leaf(si: f64) -> Rc<Node> {
-        let input =
-            Input { key: LeafKey::Own(si.to_string().into()), u: None, digit: None, label: None, citation: None };
+        let input = Input::of(LeafKey::Own(si.to_string().into()));
         Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
     }
 

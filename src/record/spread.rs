@@ -7,6 +7,7 @@
 use std::collections::BTreeMap;
 use std::rc::Rc;
 
+use crate::record::correlation;
 use crate::record::node::{Input, LeafKey, Node};
 
 /// How a value depends on one input.
@@ -20,6 +21,10 @@ pub struct Sensitivity {
 impl Sensitivity {
     pub fn input(&self) -> Option<&Input> {
         self.leaf.input()
+    }
+
+    pub fn key(&self) -> Option<&LeafKey> {
+        self.input().map(|input| &input.key)
     }
 
     /// The share of the standard uncertainty that this input brings, signed: derivative times u.
@@ -54,6 +59,15 @@ impl Spread {
             Spread::Partial { silent, .. } | Spread::NotStated { silent } => silent,
         }
     }
+}
+
+/// The correlation coefficient of two values, from the inputs they share and those that are correlated; `None` where one
+/// of them has no uncertainty.
+pub fn correlation_of(a: &Rc<Node>, b: &Rc<Node>) -> Option<f64> {
+    let (a, b) = (sensitivities(a), sensitivities(b));
+    let size = (correlation::variance(&a) * correlation::variance(&b)).sqrt();
+    // Rounding may take a full correlation past 1 by a bit.
+    (size > 0.0).then(|| (correlation::covariance(&a, &b) / size).clamp(-1.0, 1.0))
 }
 
 /// Derivatives of `of` with respect to each input it rests on, in the order of the inputs' keys. Inputs that cancel
@@ -93,15 +107,10 @@ pub fn derivative(of: &Rc<Node>, with_respect_to: u64) -> f64 {
 
 /// The spread of a value.
 pub fn spread(of: &Rc<Node>) -> Spread {
-    let mut variance = 0.0;
-    let mut silent = Vec::new();
-    for leaf in sensitivities(of) {
-        match leaf.part() {
-            Some(part) => variance += part * part,
-            None => silent.extend(leaf.input().map(|input| input.key.clone())),
-        }
-    }
-    let u = f64::sqrt(variance);
+    let inputs = sensitivities(of);
+    let silent: Vec<LeafKey> =
+        inputs.iter().filter(|one| one.part().is_none()).filter_map(|one| one.key().cloned()).collect();
+    let u = correlation::variance(&inputs).sqrt();
     match silent.is_empty() {
         true => Spread::Full(u),
         false if u > 0.0 => Spread::Partial { u, silent },
@@ -118,7 +127,7 @@ mod tests {
     use crate::units::{Dimension, Kind};
 
     fn leaf(name: &str, si: f64, u: Option<f64>) -> Rc<Node> {
-        let input = Input { key: LeafKey::Own(name.into()), u, digit: None, label: None, citation: None };
+        let input = Input { u, ..Input::of(LeafKey::Own(name.into())) };
         Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
     }
 

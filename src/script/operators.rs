@@ -137,8 +137,15 @@ fn pairs(engine: &mut Engine) {
 fn functions(engine: &mut Engine) {
     type Unary = fn(&Quantity, Option<Place>) -> Result<Quantity, Mismatch>;
     let root: Unary = |value, place| value.power(0.5, place);
-    let functions: [(&str, Unary); 4] =
-        [("abs", Quantity::absolute), ("exp", Quantity::exp), ("ln", Quantity::ln), ("sqrt", root)];
+    let functions: [(&str, Unary); 7] = [
+        ("abs", Quantity::absolute),
+        ("exp", Quantity::exp),
+        ("ln", Quantity::ln),
+        ("sin", Quantity::sin),
+        ("cos", Quantity::cos),
+        ("tan", Quantity::tan),
+        ("sqrt", root),
+    ];
     for (name, run) in functions {
         engine.register_fn(name, move |context: NativeCallContext<'_>, a: Quantity| {
             let place = place_of(&context);
