@@ -4,6 +4,7 @@
 //! [`Quantity::agrees`], which knows about correlation, or compare bits in an audit.
 
 pub mod arith;
+pub mod meaning;
 pub mod mismatch;
 pub mod round;
 pub mod text;
