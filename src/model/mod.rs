@@ -2,15 +2,21 @@
 //!
 //! [`CARDS`] is the one list of what the program can compute. Script binding, help, catalogue and checks read it.
 
+pub mod answer;
 pub mod basis;
+pub mod budget;
 pub mod card;
 pub mod claims;
 pub mod conditions;
+pub mod expanded;
 pub mod function;
 pub mod gather;
+pub mod linearity;
+pub mod monte_carlo;
 pub mod property;
 pub mod quantities;
 pub mod reaction;
+pub mod readings;
 pub mod review;
 pub mod tolerance;
 
@@ -34,4 +40,10 @@ pub const CARDS: &[&Card] = &[
     &quantities::UNCERTAINTY,
     &quantities::AGREES,
     &quantities::ASSUME,
+    &readings::READINGS,
+    &readings::CORRELATION,
+    &budget::BUDGET,
+    &expanded::EXPANDED,
+    &monte_carlo::MONTE_CARLO,
+    &linearity::TESTED,
 ];

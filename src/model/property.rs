@@ -515,7 +515,7 @@ mod tests {
 
     fn ask(card: &'static Card, equation: &str, t: &str, options: &[(&str, &str)]) -> Result<Quantity, Fault> {
         let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
-        let cx = Cx { references: &references, place: None, ordinal: &ordinal };
+        let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
         let reaction = card::call(&cx, &REACTION, vec![Value::Text(equation.into())])?;
         let options: BTreeMap<String, Value> =
             options.iter().map(|(name, word)| ((*name).to_owned(), Value::Text((*word).into()))).collect();

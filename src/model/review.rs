@@ -126,7 +126,8 @@ fn judged_rows(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing], gro
             Decided::Justified { .. } => None,
         });
         let judgement = judge(group, value.node(), limit.unwrap_or(default));
-        if judgement.status == Status::Holds {
+        let of_u = group.iter().any(|finding| matches!(finding.tested, Tested::Spread { .. }));
+        if judgement.status == Status::Holds && !of_u {
             held += judgement.price.unwrap_or(0.0);
         }
         rows.push(row(value, group, judgement, &own));
@@ -148,7 +149,7 @@ fn row(value: &Quantity, group: &[Finding], judgement: Judgement, dealings: &[&D
     let Judgement { status, price, first_order } = judgement;
     let price = price.map(|price| in_unit(value, price));
     let note = |finding: &Finding| match &finding.tested {
-        Tested::True { how } | Tested::Given { how, .. } => how.clone(),
+        Tested::True { how } | Tested::Given { how, .. } | Tested::Spread { how, .. } => how.clone(),
         Tested::Better { how, .. } => format!("against {how}"),
         Tested::False { why, .. } => why.clone(),
         Tested::Missing { what } => what.clone(),
@@ -218,7 +219,12 @@ fn findings(cx: &Cx, value: &Quantity, history: &[Rc<Node>], silent: &[(String, 
     for node in history {
         if let Some(call) = call_of(node) {
             let made = Quantity::of_node(Rc::clone(node));
-            call.card.claims.iter().flat_map(|claim| (claim.test)(cx, call, &made)).for_each(&mut enter);
+            let found = call.card.claims.iter().flat_map(|claim| (claim.test)(cx, call, &made));
+            // A test of the uncertainty of a value says nothing of that of another one.
+            let said = |finding: &Finding| {
+                !matches!(finding.tested, Tested::Spread { .. }) || finding.at.id() == value.node().id()
+            };
+            found.filter(said).for_each(&mut enter);
         }
         if let Some(entity) = node.bound() {
             let what = format!("what the moles are of was not said; taken as {}", entity.name());

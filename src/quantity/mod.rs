@@ -98,12 +98,14 @@ impl Quantity {
         spread::sensitivities(&self.node)
     }
 
-    /// Whether the difference is zero within `k` standard uncertainties of the difference itself.
+    /// Whether the difference is zero within `k` standard uncertainties of the difference itself; that of the logarithms for
+    /// two equilibrium constants, whose uncertainty is symmetric there.
     ///
     /// # Errors
     /// The two cannot be subtracted, or nothing is stated about the uncertainty of their difference.
     pub fn agrees(&self, other: &Quantity, k: f64) -> Result<bool, Mismatch> {
-        let gap = self.minus(other, None)?;
+        let logarithms = self.kind().what == What::K && other.kind().what == What::K;
+        let gap = if logarithms { self.ln(None)?.minus(&other.ln(None)?, None)? } else { self.minus(other, None)? };
         match gap.spread().u() {
             Some(u) => Ok(gap.si().abs() <= k * u),
             None => Err(Mismatch::AgreementWithoutUncertainty),

@@ -77,6 +77,12 @@ pub fn significant(value: f64, digits: i32) -> String {
     fixed(value, digits - 1 - exponent)
 }
 
+/// An uncertainty, or a part of one, with two digits: `0.13`, `130`, `1.3e-9`.
+pub fn with_two_digits(u: f64) -> String {
+    let decimals = decimals_for(u.abs());
+    if (-4..=6).contains(&decimals) { fixed(u, decimals) } else { format!("{u:.1e}") }
+}
+
 /// The shortest decimal that reads back as the same double; plain where that stays readable.
 pub fn shortest(value: f64) -> String {
     let magnitude = value.abs();

@@ -17,6 +17,7 @@ pub const CLAIMS: &[(&str, &str)] = &[
     ("ideal-gas", "the gases are ideal"),
     ("condensed-volume-neglected", "the volume of liquids and solids is too small to matter"),
     ("formation-dataset", "the formation enthalpies of this dataset are the ones to use"),
+    ("linear-propagation", "first derivatives are enough to propagate the uncertainties"),
     ("uncertainty-incomplete", "the inputs that state no uncertainty add none that matters"),
     ("basis-unnamed", "a mole of nothing in particular was a mole of what it met"),
     ("together", "the assumptions that hold one by one also hold together"),
@@ -40,6 +41,9 @@ pub enum Tested {
     Missing { what: String },
     /// The price was given by the analyst, in SI units of the node.
     Given { price: f64, how: String },
+    /// The standard uncertainty was computed in a better way: the price is the change of u, in SI units of the node. It says
+    /// nothing of the uncertainty of any other value.
+    Spread { price: f64, how: String },
 }
 
 /// One assumption, tested.
@@ -134,6 +138,7 @@ fn price_at(finding: &Finding, reported: &Rc<Node>) -> (Option<f64>, bool) {
         Tested::Given { price, .. } => {
             (Some(price * derivative(reported, finding.at.id())), finding.at.id() != reported.id())
         }
+        Tested::Spread { price, .. } => ((finding.at.id() == reported.id()).then_some(*price), false),
         Tested::Better { value, .. } | Tested::False { value: Some(value), .. } => {
             price_of(reported, &finding.at, value.si())
         }
@@ -181,6 +186,16 @@ mod tests {
         let judged = |tolerance| judge(std::slice::from_ref(&finding), &reported, tolerance);
         assert_eq!(judged(1.9), Judgement { status: Status::Strained, price: Some(2.0), first_order: false });
         assert_eq!(judged(2.0).status, Status::Holds);
+    }
+
+    #[test]
+    fn a_price_of_u_belongs_to_its_own_value_only() {
+        let (at, other) = (leaf(3.0), leaf(6.0));
+        let tested = Tested::Spread { price: -0.2, how: "drawn".into() };
+        let finding = Finding::known("linear-propagation", "u", &at, None, tested);
+        let judged = |value: &Rc<Node>| judge(std::slice::from_ref(&finding), value, 0.1);
+        assert_eq!((judged(&at).status, judged(&at).price), (Status::Strained, Some(-0.2)));
+        assert_eq!((judged(&other).status, judged(&other).price), (Status::Untested, None));
     }
 
     #[test]

@@ -13,6 +13,7 @@ use rhai::{Array, Dynamic, Engine, EvalAltResult, FuncRegistration, ImmutableStr
 
 use crate::fault::{Fault, Place};
 use crate::model::CARDS;
+use crate::model::answer::Answer;
 use crate::model::card::{self, Card, Cx, On, Value};
 use crate::model::reaction::Reaction;
 use crate::quantity::{Quantity, text};
@@ -27,6 +28,14 @@ pub type Native<T> = Result<T, Box<EvalAltResult>>;
 pub fn register(engine: &mut Engine, shared: &Shared) {
     engine.register_type_with_name::<Quantity>("quantity");
     engine.register_type_with_name::<Rc<Reaction>>("reaction");
+    engine.register_type_with_name::<Answer>("answer");
+    // Asked for every property that has no getter of its own.
+    engine.register_indexer_get(
+        |context: NativeCallContext<'_>, answer: &mut Answer, name: ImmutableString| -> Native<Dynamic> {
+            let part = answer.part(&name).map(from_value);
+            part.map_err(|error| raise(Fault::from(error).at(place_of(&context))))
+        },
+    );
     literals(engine, shared);
     for card in CARDS {
         bind(engine, card, shared);
@@ -36,7 +45,8 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
 /// Runs `work` with what a formula needs of the session; `place` is where the script called from.
 pub fn with_context<T>(shared: &Shared, place: Option<Place>, work: impl FnOnce(&Cx) -> Result<T, Fault>) -> Native<T> {
     let ordinal = Cell::new(shared.state_mut().next_ordinal());
-    let cx = Cx { references: shared.references(), place: place.clone(), ordinal: &ordinal };
+    let halted = || shared.halted().map(Fault::from);
+    let cx = Cx { references: shared.references(), place: place.clone(), ordinal: &ordinal, halted: &halted };
     let done = work(&cx);
     shared.state_mut().skip_ordinals_to(ordinal.get());
     done.map_err(|fault| raise(fault.at(place)))
@@ -72,6 +82,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     if let Some(reaction) = value.read_lock::<Rc<Reaction>>() {
         return Value::Reaction(Rc::clone(&reaction));
     }
+    if let Some(answer) = value.read_lock::<Answer>() {
+        return Value::Answer(answer.clone());
+    }
     if let Some(text) = value.read_lock::<ImmutableString>() {
         return Value::Text(text.as_str().into());
     }
@@ -106,6 +119,7 @@ fn from_value(value: Value) -> Dynamic {
             options.iter().map(|(name, value)| (name.as_str().into(), from_value(value.clone()))).collect(),
         ),
         Value::Reaction(reaction) => Dynamic::from(reaction),
+        Value::Answer(answer) => Dynamic::from(answer),
         Value::Nothing => Dynamic::UNIT,
     }
 }

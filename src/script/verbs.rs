@@ -223,7 +223,8 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
 pub fn reports(shared: &Shared) -> Vec<Report> {
     let (state, ordinal) = (shared.state(), Cell::new(0));
     // Reviewing reads nothing as typed, so no numbers are given out.
-    let cx = &Cx { references: shared.references(), place: None, ordinal: &ordinal };
+    let halted = || shared.halted().map(Fault::from);
+    let cx = &Cx { references: shared.references(), place: None, ordinal: &ordinal, halted: &halted };
     state.reports.iter().map(|one| Report::of(cx, &one.label, &one.value, &state.dealings)).collect()
 }
 
