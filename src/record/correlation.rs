@@ -107,7 +107,8 @@ fn coefficient(a: &Sensitivity, b: &Sensitivity) -> f64 {
 /// The variance of a value, from how it depends on its inputs; inputs that state no uncertainty add nothing.
 pub fn variance(inputs: &[Sensitivity]) -> f64 {
     let part = |at: usize| inputs[at].part().unwrap_or(0.0);
-    let independent: f64 = (0..inputs.len()).map(|at| part(at) * part(at)).sum();
+    // Not `sum`, which is -0 for nothing.
+    let independent = (0..inputs.len()).fold(0.0, |sum, at| sum + part(at) * part(at));
     let pairs = pairs(inputs);
     if pairs.is_empty() {
         return independent;
