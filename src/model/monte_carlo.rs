@@ -88,7 +88,7 @@ const LARGEST_SEED: f64 = 9_007_199_254_740_992.0;
 /// Why nothing can be drawn, or nothing said of the draws.
 #[derive(Clone, Debug, PartialEq, Error)]
 pub enum MonteCarloError {
-    #[error("no input states an uncertainty, so there is nothing to draw: {silent}")]
+    #[error("nothing is to be drawn: {why}", why = if silent.is_empty() { "all inputs are exact".to_owned() } else { format!("the inputs state no uncertainty ({silent})") })]
     NothingToDraw { silent: String },
     #[error("`{input}` has {dof} degrees of freedom, and Student's t has a standard deviation from more than 2 on")]
     NoDeviation { input: String, dof: f64 },

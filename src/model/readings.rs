@@ -26,7 +26,7 @@ use crate::record::correlation::Correlation;
 use crate::record::evaluation::{Evaluation, Shape};
 use crate::record::node::{Input, LeafKey};
 use crate::record::spread::{self, Spread};
-use crate::units::{parse as unit_parse, unit_for};
+use crate::units::parse as unit_parse;
 
 pub static READINGS: Card = Card {
     id: "uncertainty.readings",
@@ -77,7 +77,7 @@ pub static CORRELATION: Card = Card {
             return Ok(Value::Number(r));
         }
         let certain = [a, b].into_iter().find(|value| value.spread().u().is_none_or(|u| u == 0.0));
-        Err(ReadingsError::NoCorrelation { value: certain.map_or_else(String::new, text::shown) }.into())
+        Err(ReadingsError::NoCorrelation { value: certain.map_or_else(String::new, text::shown_plain) }.into())
     },
     check_line: None,
 };
@@ -87,21 +87,21 @@ pub static CORRELATION: Card = Card {
 pub enum ReadingsError {
     #[error("`readings` wants a list, or a map of lists, not {given}")]
     Sort { given: String },
-    #[error("{count} of `{name}` has no scatter to evaluate", count = readings(*count))]
+    #[error("{count} of {name} has no scatter to evaluate", count = readings(*count))]
     TooFew { name: String, count: usize },
-    #[error("all {count} readings of `{name}` are {value}, so their scatter is hidden below the last digit")]
+    #[error("all {count} readings of {name} are {value}, so their scatter is hidden below the last digit")]
     AllEqual { name: String, count: usize, value: String },
-    #[error("reading {nth} of `{name}` is a bare number, {number}, and no unit is given")]
+    #[error("reading {nth} of {name} is a bare number, {number}, and no unit is given")]
     NoUnit { name: String, nth: usize, number: f64 },
-    #[error("reading {nth} of `{name}` is {given}, which is no reading")]
+    #[error("reading {nth} of {name} is {given}, which is no reading")]
     NotAReading { name: String, nth: usize, given: String },
     #[error(
-        "reading {nth} of `{name}`, {reading}, states an uncertainty of its own, and `readings` takes the scatter alone"
+        "reading {nth} of {name}, {reading}, states an uncertainty of its own, and `readings` takes the scatter alone"
     )]
     OwnUncertainty { name: String, nth: usize, reading: String },
-    #[error("reading {nth} of `{name}` is in {other} and the first in {first}")]
+    #[error("reading {nth} of {name} is in {other} and the first in {first}")]
     Unlike { name: String, nth: usize, first: String, other: String },
-    #[error("`{a}` has {of_a} and `{b}` {of_b}, so they were not read together", of_a = readings(*count_a), of_b = count_b)]
+    #[error("{a} has {of_a} and {b} {of_b}, so they were not read together", of_a = readings(*count_a), of_b = count_b)]
     Unpaired { a: String, count_a: usize, b: String, count_b: usize },
     #[error("a unit is given for `{name}`, and the readings are of {known}")]
     UnitForNothing { name: String, known: String },
@@ -173,6 +173,8 @@ impl Explain for ReadingsError {
 /// One quantity's readings.
 struct Series {
     name: String,
+    /// Its name in messages.
+    worded: String,
     values: Vec<Quantity>,
     mean: Quantity,
     /// Sample standard deviation, in SI units.
@@ -196,7 +198,7 @@ fn evaluate(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
                 Value::Nothing => None,
                 other => Some(unit_text(other)?),
             };
-            let series = [series(cx, "the list", list, unit)?];
+            let series = [series(cx, String::new(), "the list".to_owned(), list, unit)?];
             let kept = Value::List(series[0].values.iter().cloned().map(Value::Quantity).collect());
             let mut means = means(cx, call, kept, &series, |_, count| format!("mean of {count} readings"))?;
             Ok(Value::Quantity(means.swap_remove(0)))
@@ -218,13 +220,13 @@ fn evaluate(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
                     Value::Options(units) => units.get(name).map(unit_text).transpose()?,
                     other => Some(unit_text(other)?),
                 };
-                all.push(series(cx, name, list, unit)?);
+                all.push(series(cx, name.clone(), format!("`{name}`"), list, unit)?);
             }
             if let Some([first, other]) = all.windows(2).find(|pair| pair[0].values.len() != pair[1].values.len()) {
                 return Err(ReadingsError::Unpaired {
-                    a: first.name.clone(),
+                    a: first.worded.clone(),
                     count_a: first.values.len(),
-                    b: other.name.clone(),
+                    b: other.worded.clone(),
                     count_b: other.values.len(),
                 }
                 .into());
@@ -248,16 +250,16 @@ fn unit_text(value: &Value) -> Result<&str, ReadingsError> {
 }
 
 /// Reads and checks one list.
-fn series(cx: &Cx, name: &str, list: &[Value], unit: Option<&str>) -> Result<Series, Fault> {
+fn series(cx: &Cx, name: String, worded: String, list: &[Value], unit: Option<&str>) -> Result<Series, Fault> {
     let values: Vec<Quantity> =
-        list.iter().zip(1..).map(|(item, nth)| reading(cx, name, nth, item, unit)).collect::<Result<_, Fault>>()?;
+        list.iter().zip(1..).map(|(item, nth)| reading(cx, &worded, nth, item, unit)).collect::<Result<_, Fault>>()?;
     if values.len() < 2 {
-        return Err(ReadingsError::TooFew { name: name.to_owned(), count: values.len() }.into());
+        return Err(ReadingsError::TooFew { name: worded, count: values.len() }.into());
     }
-    let unit_name = |value: &Quantity| unit_for(value.dim()).text.to_string();
-    if let Some(other) = values.iter().position(|value| value.dim() != values[0].dim()) {
-        let (first, other_unit) = (unit_name(&values[0]), unit_name(&values[other]));
-        return Err(ReadingsError::Unlike { name: name.to_owned(), nth: other + 1, first, other: other_unit }.into());
+    if let Some(nth) = values.iter().position(|value| value.dim() != values[0].dim()) {
+        let unit = |value: &Quantity| value.unit().text.to_string();
+        let (first, other) = (unit(&values[0]), unit(&values[nth]));
+        return Err(ReadingsError::Unlike { name: worded, nth: nth + 1, first, other }.into());
     }
     let mean = Quantity::mean(&values, None)?;
     let squares: f64 = values.iter().map(|value| value.si() - mean.si()).map(|d| d * d).sum();
@@ -265,9 +267,9 @@ fn series(cx: &Cx, name: &str, list: &[Value], unit: Option<&str>) -> Result<Ser
     // Equal readings differ from their mean by rounding alone.
     if s <= 4.0 * f64::EPSILON * mean.si().abs() {
         let value = text::shown_plain(&values[0]);
-        return Err(ReadingsError::AllEqual { name: name.to_owned(), count: values.len(), value }.into());
+        return Err(ReadingsError::AllEqual { name: worded, count: values.len(), value }.into());
     }
-    Ok(Series { name: name.to_owned(), values, mean, s })
+    Ok(Series { name, worded, values, mean, s })
 }
 
 fn reading(cx: &Cx, name: &str, nth: usize, item: &Value, unit: Option<&str>) -> Result<Quantity, Fault> {
@@ -300,7 +302,7 @@ fn reading(cx: &Cx, name: &str, nth: usize, item: &Value, unit: Option<&str>) ->
     match value.spread() {
         Spread::Full(0.0) | Spread::NotStated { .. } => Ok(value),
         Spread::Full(_) | Spread::Partial { .. } => {
-            let reading = text::shown_plain(&value);
+            let reading = value.node().input().map_or_else(|| text::shown_plain(&value), Input::name);
             Err(ReadingsError::OwnUncertainty { name: name.to_owned(), nth, reading }.into())
         }
     }

@@ -28,7 +28,7 @@ pub type Native<T> = Result<T, Box<EvalAltResult>>;
 pub fn register(engine: &mut Engine, shared: &Shared) {
     engine.register_type_with_name::<Quantity>("quantity");
     engine.register_type_with_name::<Rc<Reaction>>("reaction");
-    engine.register_type_with_name::<Answer>("answer");
+    engine.register_type_with_name::<Answer>("answer about uncertainty");
     // Asked for every property that has no getter of its own.
     engine.register_indexer_get(
         |context: NativeCallContext<'_>, answer: &mut Answer, name: ImmutableString| -> Native<Dynamic> {
