@@ -9,6 +9,7 @@ use std::sync::Arc;
 
 use crate::chem::species::State as Aggregate;
 use crate::data::critical::CriticalTemperature;
+use crate::data::dataset::DatasetId;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Call, Cx, Value};
@@ -16,7 +17,7 @@ use crate::model::function;
 use crate::model::gather::{self, HeatCapacity, Method};
 use crate::model::property::{self, Property};
 use crate::model::substance::PureSubstance;
-use crate::model::terms::{Term, Terms};
+use crate::model::terms::Terms;
 use crate::quantity::Quantity;
 use crate::record::node::Node;
 use crate::record::register::{Finding, Tested};
@@ -100,12 +101,8 @@ pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
     let at_t = |subject: String, tested| Finding::known("stable-phase", subject, value.node(), Some(asked.t_k), tested);
     for term in asked.terms.terms() {
         let species = &term.substance.species;
-        // A solute has no phase of its own to compare, and where another phase of the substance takes part too, the reaction
-        // is about the change between the two.
-        let changes_phase = |other: &Term| {
-            other.substance.species.entity == species.entity && other.substance.id() != term.substance.id()
-        };
-        if species.phase.state == Aggregate::Aqueous || asked.terms.terms().iter().any(changes_phase) {
+        // A solute has no phase of its own to compare, and a change of phase is about the change.
+        if species.phase.state == Aggregate::Aqueous || is_change_of_phase(asked.terms) {
             continue;
         }
         match compared(cx, &term.substance, asked.t_k) {
@@ -146,6 +143,13 @@ pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
         findings.push(at_t(names, Tested::Missing { what }));
     }
     findings
+}
+
+/// Whether all terms are phases of one substance.
+fn is_change_of_phase(terms: &Terms) -> bool {
+    let mut entities = terms.terms().iter().map(|term| term.substance.species.entity);
+    let first = entities.next();
+    terms.terms().len() > 1 && entities.all(|entity| Some(entity) == first)
 }
 
 enum Compared {
@@ -199,8 +203,8 @@ fn unstable(cx: &Cx, call: &Call, asked: &Asked, written: &Substance, stable: &A
     Tested::False { why, value }
 }
 
-/// The call with one phase in place of another. The formation dataset that was asked for need not have that phase; then the
-/// first that has all species serves, and the price says what the phase costs all the same.
+/// The call with one phase in place of another, and the formation dataset of the value kept, so that the price is that of the
+/// phase alone.
 fn in_phase(cx: &Cx, call: &Call, written: &Substance, stable: &Arc<Substance>) -> Result<Call, Fault> {
     let mut args = call.args.clone();
     args[0] = match &call.args[0] {
@@ -208,7 +212,16 @@ fn in_phase(cx: &Cx, call: &Call, written: &Substance, stable: &Arc<Substance>) 
         Value::Substance(_) => Value::Substance(Rc::new(PureSubstance::new(Arc::clone(stable)))),
         other => unreachable!("a property is asked of a reaction or a substance, not of {}", other.sort()),
     };
-    Ok(Call { card: call.card, args })
+    let other = Call { card: call.card, args };
+    let uses_formation = Property::of(call.card).is_some_and(Property::uses_formation);
+    let formation = property::method_of(call, cx)?.formation;
+    let used = call.terms().map(|terms| gather::datasets_for(terms, &formation, cx.data()));
+    match used {
+        Some(Ok(used)) if uses_formation && used.windows(2).all(|pair| pair[0] == pair[1]) => {
+            Ok(other.with_option("formation", used.first().map_or("", DatasetId::as_str)))
+        }
+        _ => Ok(other),
+    }
 }
 
 /// `ideal-gas`: untested as long as no second virial coefficients are shipped.

@@ -2,10 +2,11 @@
 
 use crate::chem::species::State as Aggregate;
 use crate::model::card::{Call, Value, call_of};
+use crate::model::terms::Terms;
 use crate::quantity::Quantity;
 use crate::quantity::round;
 use crate::record::node;
-use crate::units::What;
+use crate::units::{What, Zero};
 
 /// `723.15 K, 1 bar, each species pure, in its standard state, gases ideal`; empty for plain values.
 pub fn line(value: &Quantity) -> String {
@@ -54,8 +55,12 @@ fn temperature(value: &Quantity, t_k: f64) -> String {
     });
     match asked.filter(|u| *u > 0.0) {
         Some(u) => format!("{} K", round::with_brackets(t_k, u)),
-        None => format!("{} K", round::shortest(round::significant(t_k, 10).parse().unwrap_or(t_k))),
+        None => format!("{} K", rounded(t_k)),
     }
+}
+
+fn rounded(t_k: f64) -> String {
+    round::shortest(round::significant(t_k, 10).parse().unwrap_or(t_k))
 }
 
 /// The reactions and substances a value was computed from, as written, each once.
@@ -78,6 +83,13 @@ pub fn symbol(value: &Quantity) -> String {
     let Some(call) = call_of(value.node()) else {
         return if matches!(what, What::PV | What::TS) { what.symbol().to_owned() } else { String::new() };
     };
+    if let Some(Zero::From(from_k)) = value.kind().state().and_then(|state| state.zero.as_ref()) {
+        let (r, t_k) = (
+            if call.terms().is_some_and(Terms::is_reaction) { "Δr" } else { "" },
+            value.kind().state().and_then(|s| s.t_k),
+        );
+        return t_k.map_or_else(String::new, |t_k| format!("{r}H({} K) - {r}H({} K)", rounded(t_k), rounded(*from_k)));
+    }
     match &call.args[..] {
         [Value::Reaction(_), ..] if what == What::K => what.symbol().to_owned(),
         [Value::Reaction(_), ..] => {

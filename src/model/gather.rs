@@ -266,7 +266,7 @@ fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<
     };
     if let Some(record) = substance.formation(dataset) {
         let digit = if record.dhf.is_convention() { None } else { Some(record.dhf.last_place()) };
-        let input = Input { key, u: record.dhf.u, digit, label: None, citation: Some(record.citation.clone()) };
+        let input = Input { u: record.dhf.u, digit, citation: Some(record.citation.clone()), ..Input::of(key) };
         // A figure that its table prints in J/mol would stand beside others in kJ/mol.
         let printed = (record.dhf.unit == "kJ/mol").then(|| record.dhf.printed.clone());
         return Some(Figure { si: record.dhf.value, input, printed });
@@ -274,14 +274,14 @@ fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<
     let function = substance.function.as_ref()?;
     if function.is_reference_element && function.dhf_298 == 0.0 {
         let citation = Citation::new("convention: an element in its reference state", "");
-        let input = Input { key, u: Some(0.0), digit: None, label: None, citation: Some(citation) };
+        let input = Input { u: Some(0.0), citation: Some(citation), ..Input::of(key) };
         return Some(Figure { si: 0.0, input, printed: Some("0".into()) });
     }
     if function.dataset != *dataset {
         return None;
     }
     // The report prints formation enthalpies in J/mol to three decimals; that is not what they are good for.
-    let input = Input { key, u: None, digit: Some(1.0), label: None, citation: Some(function.citation.clone()) };
+    let input = Input { digit: Some(1.0), citation: Some(function.citation.clone()), ..Input::of(key) };
     Some(Figure { si: function.dhf_298, input, printed: None })
 }
 
@@ -335,17 +335,15 @@ fn contribution(
     let figure = |taken: &Drawn, field: &'static str, digit: f64| Figure {
         si: taken.si,
         input: Input {
-            key: LeafKey::Datum {
+            digit: Some(digit),
+            citation: Some(function.citation.clone()),
+            ..Input::of(LeafKey::Datum {
                 dataset: function.dataset.shared(),
                 record: substance.species.id.clone(),
                 field,
                 t_bits: taken.t_k.to_bits(),
                 way: taken.way,
-            },
-            u: None,
-            digit: Some(digit),
-            label: None,
-            citation: Some(function.citation.clone()),
+            })
         },
         printed: None,
     };
@@ -446,7 +444,7 @@ fn tabulated_entropy(substance: &Substance) -> Option<Figure> {
         t_bits: 0,
         way: "",
     };
-    let input = Input { key, u: datum.u, digit, label: None, citation: Some(record.citation.clone()) };
+    let input = Input { u: datum.u, digit, citation: Some(record.citation.clone()), ..Input::of(key) };
     Some(Figure { si: datum.value, input, printed: Some(datum.printed.clone()) })
 }
 

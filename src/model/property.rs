@@ -192,10 +192,11 @@ pub(super) fn dimension(property: Property, per: Entity) -> Dimension {
     }
 }
 
-fn kind(property: Property, t_k: f64) -> Kind {
+fn kind(property: Property, terms: &Terms, t_k: f64) -> Kind {
     let zero = property.uses_formation().then_some(Zero::Elements298);
     let p_pa = Some(STANDARD_PRESSURE.value);
-    Kind::in_state(property.what(), State { zero, t_k: Some(t_k), p_pa, standard: true })
+    let reaction = terms.is_reaction();
+    Kind::in_state(property.what(), State { zero, t_k: Some(t_k), p_pa, standard: true, reaction })
 }
 
 /// The method a call asks for.
@@ -238,19 +239,24 @@ pub fn quantity(property: Property, call: &Rc<Call>, method: &Method, cx: &Cx) -
     if property.uses_gas_law() && delta_n != 0.0 {
         inputs.push((Rc::clone(r.node()), -delta_n * t_k));
     }
-    // A temperature that states no uncertainty is a condition the analyst chose, not a measurement.
-    if t.spread().u().is_some_and(|u| u > 0.0) {
+    if !is_condition(t) {
         inputs.push((Rc::clone(t.node()), evaluated.slope));
     }
     let step = Rc::clone(call);
     Ok(Quantity::from_step(
         evaluated.si,
         dimension(property, terms.per()),
-        kind(property, t_k),
+        kind(property, terms, t_k),
         inputs,
         step,
         cx.place.clone(),
     )?)
+}
+
+/// Whether a temperature was chosen: typed as it is, without an uncertainty. One that was measured, computed, or has an
+/// assumption attached is an input of what is computed at it.
+pub(super) fn is_condition(t: &Quantity) -> bool {
+    t.node().input().is_some_and(|input| input.u.is_none())
 }
 
 pub(super) fn leaf(figure: &Figure, property: Property) -> Result<Rc<Node>, Fault> {
@@ -269,7 +275,7 @@ fn gas_constant(constants: &ConstantSet) -> Quantity {
     let r = &constants.molar_gas;
     let dim = Dimension::whole([2, 1, -2, 0, -1, 0]).over(&Dimension::amount(Entity::OPEN));
     let key = LeafKey::Constant { year: constants.year, name: r.name };
-    let input = Input { key, u: Some(r.u), digit: None, label: None, citation: Some(r.citation()) };
+    let input = Input { u: Some(r.u), citation: Some(r.citation()), ..Input::of(key) };
     Quantity::of_node(Rc::new(Node::new(r.value, dim, Kind::PLAIN, SmallVec::new(), Origin::Input(input), None)))
 }
 
@@ -294,7 +300,7 @@ mod tests {
 
     fn ask(card: &'static Card, equation: &str, t: &str, options: &[(&str, &str)]) -> Result<Quantity, Fault> {
         let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
-        let cx = Cx { references: &references, place: None, ordinal: &ordinal };
+        let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
         let reaction = card::call(&cx, &REACTION, vec![Value::Text(equation.into())])?;
         let options: BTreeMap<String, Value> =
             options.iter().map(|(name, word)| ((*name).to_owned(), Value::Text((*word).into()))).collect();

@@ -14,10 +14,11 @@ use thiserror::Error;
 use crate::fault::{Explain, Fault};
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
 use crate::model::review::{self, Row};
-use crate::quantity::{Mismatch, Quantity, text};
+use crate::quantity::{Mismatch, Quantity};
 use crate::record::node::{self, Input, LeafKey, Node, Operator, Origin};
 use crate::record::register::{Finding, Tested};
 use crate::source::Citation;
+use crate::units::{Dimension, Kind};
 
 /// Why an assumption cannot be dealt with this way.
 #[derive(Clone, Debug, PartialEq, Error)]
@@ -110,6 +111,15 @@ pub static WIDENED: Card = Card {
     check_line: None,
 };
 
+/// Whether a call widened a value for this assumption about this subject.
+pub fn widens(call: &Call, id: &str, subject: &str) -> bool {
+    let about = |about: &Value| match about {
+        Value::Text(about) => subject.contains(&**about),
+        _ => true,
+    };
+    call.card.id == WIDENED.id && **call.text(1) == *id && about(&call.args[2])
+}
+
 /// The findings that make up the one row which an id, and a subject where one is given, mean.
 fn meant(cx: &Cx, call: &Call) -> Result<(Vec<Finding>, Row), Fault> {
     let (value, id) = (call.quantity(0), call.text(1));
@@ -142,7 +152,10 @@ fn corrected(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
         let better = match &finding.tested {
             Tested::Better { value, .. } | Tested::False { value: Some(value), .. } => Rc::clone(value),
             Tested::True { .. } => continue,
-            Tested::Missing { .. } | Tested::False { value: None, .. } | Tested::Given { .. } => {
+            Tested::Missing { .. }
+            | Tested::False { value: None, .. }
+            | Tested::Given { .. }
+            | Tested::Spread { .. } => {
                 let why = row.note.clone();
                 return Err(RemedyError::NoBetter { id: row.id, subject: row.subject, why }.into());
             }
@@ -185,6 +198,11 @@ fn repeated(operator: Operator, inputs: &[Quantity], cx: &Cx) -> Result<Quantity
         (Operator::Divide, [a, b]) => a.over(b, place),
         (Operator::Negate, [a]) => a.negated(place),
         (Operator::Scale(factor), [a]) => a.scaled(factor, place),
+        (Operator::DivideBy(divisor), [a]) => a.divided(divisor, place),
+        (Operator::PowerOf, [a, b]) => a.power_of(b, place),
+        (Operator::Sin, [a]) => a.sin(place),
+        (Operator::Cos, [a]) => a.cos(place),
+        (Operator::Tan, [a]) => a.tan(place),
         (Operator::Shift(by), [a]) => a.shifted(by, place),
         (Operator::Reciprocal(numerator), [a]) => a.reciprocal(numerator, place),
         (Operator::Power(exponent), [a]) => a.power(exponent, place),
@@ -204,19 +222,19 @@ fn widened(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
         return Err(RemedyError::NoPrice { id: row.id, subject: row.subject, why }.into());
     };
     let unit = value.unit();
-    let u = price.abs() * unit.factor / f64::sqrt(3.0);
+    // One input for each assumption about one subject, of value 0 and half-width 1; the price is how strongly this value
+    // depends on it, so that two values widened for one assumption stay correlated, each by its own price.
     let name = format!("{} ({})", row.id, row.subject);
     let input = Input {
-        key: LeafKey::Own(name.as_str().into()),
-        u: Some(u),
-        digit: None,
+        u: Some(1.0 / f64::sqrt(3.0)),
         label: Some(name.as_str().into()),
-        citation: Some(Citation::new("price of the assumption, taken as a bound", text::shown_plain(value))),
+        citation: Some(Citation::new("price of the assumption, taken as a bound", "")),
+        ..Input::of(LeafKey::Own(name.as_str().into()))
     };
+    let leaf = Quantity::input(0.0, Dimension::none(), Kind::PLAIN, input, None)?;
     let dim = value.dim().clone();
-    let leaf = Quantity::input(0.0, dim.clone(), value.kind().clone(), input, cx.place.clone())?;
     let inputs: smallvec::SmallVec<[(Rc<Node>, f64); 2]> =
-        smallvec![(Rc::clone(value.node()), 1.0), (Rc::clone(leaf.node()), 1.0)];
+        smallvec![(Rc::clone(value.node()), 1.0), (Rc::clone(leaf.node()), price * unit.factor)];
     let step = Rc::clone(call);
     let made = Quantity::from_step(value.si(), dim, value.kind().clone(), inputs, step, cx.place.clone())?;
     Ok(Value::Quantity(made.in_unit(Some(unit))))

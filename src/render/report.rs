@@ -123,7 +123,7 @@ fn record(label: &str, value: &Quantity, headline: &Headline, review: &Review) -
     let price_unit = unit.text.to_string();
     let with_unit = |price: f64| {
         let reader = units::reader_text(&unit);
-        let number = review::signed(value, price);
+        let number = review::signed(review.precision, price);
         if reader.is_empty() { number } else { format!("{number} {reader}") }
     };
     let missing = |(field, records): &(String, Vec<String>)| {

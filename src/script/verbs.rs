@@ -10,6 +10,7 @@ use rhai::{Dynamic, Engine, FuncRegistration, ImmutableString, NativeCallContext
 
 use crate::fault::{Explain, Fault};
 use crate::model::card::{Cx, Value};
+use crate::model::quantities::PointForDifference;
 use crate::model::review::{Dealing, Decided};
 use crate::quantity::{Quantity, text};
 use crate::render::report::{Assumption, Report};
@@ -17,6 +18,7 @@ use crate::render::{Bundle, register as register_view};
 use crate::script::bind::{Native, to_value, with_context};
 use crate::script::show;
 use crate::script::state::{Parameter, Reported, Shared, place_of};
+use crate::units::What;
 
 /// A verb as help shows it.
 pub struct Verb {
@@ -233,7 +235,8 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
 pub fn reports(shared: &Shared) -> Vec<Report> {
     let (state, ordinal) = (shared.state(), Cell::new(0));
     // Reviewing reads nothing as typed, so no numbers are given out.
-    let cx = &Cx { references: shared.references(), place: None, ordinal: &ordinal };
+    let halted = || shared.halted().map(Fault::from);
+    let cx = &Cx { references: shared.references(), place: None, ordinal: &ordinal, halted: &halted };
     state.reports.iter().map(|one| Report::of(cx, &one.label, &one.value, &state.dealings)).collect()
 }
 
@@ -304,7 +307,8 @@ impl Verbs {
 
     fn decide(&self, cx: &Cx, id: &str, label: &str, about: Option<&str>, decided: Decided) -> Result<(), Fault> {
         let row = self.row(cx, id, label, about)?;
-        let dealing = Dealing { id: row.id, label: label.to_owned(), subject: row.subject, decided };
+        let cell = self.shared.state().cell.to_string();
+        let dealing = Dealing { id: row.id, label: label.to_owned(), subject: row.subject, cell, decided };
         self.shared.state_mut().dealings.push(dealing);
         self.shared.update(&self.reviewed(cx, label)?.bundle(), &display_id(label));
         Ok(())
@@ -319,6 +323,9 @@ impl Verbs {
 
     fn tolerate(&self, cx: &Cx, id: &str, label: &str, limit: &Dynamic, about: Option<&str>) -> Result<(), Fault> {
         let limit = quantity_of(cx, limit)?;
+        if limit.kind().what == What::TemperaturePoint {
+            return Err(PointForDifference { function: "tolerate", t_k: limit.si() }.into());
+        }
         if limit.si() <= 0.0 {
             return Err(VerbError::LimitNotPositive { id: id.to_owned() }.into());
         }
@@ -353,9 +360,11 @@ impl Verbs {
             Value::Number(default) => {
                 let number = match &set {
                     None => default,
-                    Some(set) => set.trim().parse().map_err(|_| {
-                        Fault::from(VerbError::ParameterNumber { name: name.to_owned(), given: set.clone() })
-                    })?,
+                    Some(set) => {
+                        set.trim().parse().ok().filter(|number: &f64| number.is_finite()).ok_or_else(|| {
+                            Fault::from(VerbError::ParameterNumber { name: name.to_owned(), given: set.clone() })
+                        })?
+                    }
                 };
                 (Dynamic::from_float(number), number.to_string())
             }
