@@ -366,6 +366,21 @@ fn what_is_not_known_is_said_with_every_answer() {
 }
 
 #[test]
+fn a_price_that_widens_a_value_stands_in_its_budget_and_is_drawn_between_its_bounds() {
+    let widened = "let r = reaction(\"CO(g) + H2O(g) -> CO2(g) + H2(g)\");
+        let dH = r.enthalpy(\"450 degC\", #{ heat_capacity: \"constant\" });
+        let wide = dH.widened(\"constant-heat-capacity\");";
+    let text = plain(&format!("{widened} wide.budget()"));
+    let first = text.lines().nth(2).unwrap_or_default();
+    assert!(first.trim().starts_with("constant-heat-capacity (") && first.contains("rectangular"), "{text}");
+    let found = numbers(&format!(
+        "{widened} let run = wide.monte_carlo(); [run.u.value(\"kJ/mol\"), wide.uncertainty(\"kJ/mol\"), run.draws]"
+    ));
+    // Stable to half a unit of the second digit of u, at most 5 % of it.
+    compare("the law of propagation, for a sum", &[("u", found[0], found[1], 0.05 * found[1])]);
+}
+
+#[test]
 fn readings_keep_their_check_line_and_their_places() {
     let (_, shown) =
         run("report(\"voltage\", readings([\"5.007\", \"4.994\", \"5.005\", \"4.990\", \"4.999\"], \"V\"))");

@@ -174,8 +174,8 @@ fn line(one: &Sensitivity, scale: f64, share: impl Fn(f64) -> f64) -> Option<Lin
         u: input.u.map(|u| u / difference_unit.factor),
         contribution: part / scale,
         share: share(part * part),
-        dof: input.evaluation.dof,
-        shape: input.evaluation.shape,
+        dof: input.evaluation().dof,
+        shape: input.evaluation().shape,
         source: source_of(&one.leaf),
         unit,
         difference_unit,
@@ -187,10 +187,10 @@ fn source_of(leaf: &Node) -> Origin {
     Origin::Here(match (&input.citation, &input.key) {
         (Some(citation), _) => return Origin::Published(citation.clone()),
         (None, LeafKey::Typed { place: Some(place), .. }) => place.to_string(),
-        (None, LeafKey::Typed { place: None, .. }) => "typed".to_owned(),
         (None, LeafKey::Own(_)) => "an assumption, by its price".to_owned(),
         (None, LeafKey::Datum { dataset, .. }) => dataset.to_string(),
         (None, LeafKey::Constant { year, .. }) => format!("CODATA {year}"),
+        (None, _) => "typed".to_owned(),
     })
 }
 

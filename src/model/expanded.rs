@@ -169,8 +169,8 @@ fn whole(dof: f64) -> f64 {
 /// An input between limits with more than half of the variance. (Half: common practice, no source.)
 fn dominating(value: &Quantity, u: f64) -> Option<(String, Shape)> {
     value.sensitivities().iter().find_map(|one| {
-        let input = one.input().filter(|input| input.evaluation.shape != Shape::Normal)?;
+        let input = one.input().filter(|input| input.evaluation().shape != Shape::Normal)?;
         let part = one.part()?;
-        (part * part > 0.5 * u * u).then(|| (input.name(), input.evaluation.shape))
+        (part * part > 0.5 * u * u).then(|| (input.name(), input.evaluation().shape))
     })
 }

@@ -268,9 +268,9 @@ fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<
     };
     if let Some(record) = substance.formation(dataset) {
         let digit = if record.dhf.is_convention() { None } else { Some(record.dhf.last_place()) };
-        let evaluation = Evaluation { correlation: record.correlation.clone(), ..Evaluation::default() };
+        let evaluation = Evaluation { correlation: record.correlation.clone(), ..Evaluation::UNSTATED };
         let citation = Some(record.citation.clone());
-        let input = Input { u: record.dhf.u, evaluation, digit, citation, ..Input::of(key) };
+        let input = Input { u: record.dhf.u, evaluated: evaluation.kept(), digit, citation, ..Input::of(key) };
         // A figure that its table prints in J/mol would stand beside others in kJ/mol.
         let printed = (record.dhf.unit == "kJ/mol").then(|| record.dhf.printed.clone());
         return Some(Figure { si: record.dhf.value, input, printed });

@@ -241,7 +241,7 @@ impl Propagation {
             answer::figure(call, value, back(drawn.low))?,
             answer::figure(call, value, back(drawn.high))?,
         ];
-        let evaluations = || tape.leaves().iter().map(|leaf| &leaf.input.evaluation);
+        let evaluations = || tape.leaves().iter().map(|leaf| leaf.input.evaluation());
         Ok(Propagation {
             value: value.clone(),
             logarithmic,
@@ -294,7 +294,7 @@ fn half_digit(u: f64) -> f64 {
 
 fn refuse_without_deviation(tape: &Tape) -> Result<(), MonteCarloError> {
     for leaf in tape.leaves() {
-        let evaluation = &leaf.input.evaluation;
+        let evaluation = leaf.input.evaluation();
         let as_t = evaluation.shape == Shape::Normal && evaluation.correlation.is_none();
         if let Some(dof) = evaluation.dof.filter(|dof| as_t && *dof <= 2.0) {
             return Err(MonteCarloError::NoDeviation { input: leaf.input.name(), dof });

@@ -327,7 +327,7 @@ fn means(
             Evaluation { shape: Shape::Normal, dof: Some(one.count() - 1.0), correlation: correlation.clone() };
         let input = Input {
             u: Some(one.s / one.count().sqrt()),
-            evaluation,
+            evaluated: evaluation.kept(),
             label: Some(label(&one.name, one.values.len()).into()),
             unit: Some(Arc::clone(&unit)),
             ..Input::of(key)

@@ -15,6 +15,7 @@ use crate::fault::{Explain, Fault};
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
 use crate::model::review::{self, Row};
 use crate::quantity::{Mismatch, Quantity};
+use crate::record::evaluation::{Evaluation, Shape};
 use crate::record::node::{self, Input, LeafKey, Node, Operator, Origin};
 use crate::record::register::{Finding, Tested};
 use crate::source::Citation;
@@ -227,6 +228,7 @@ fn widened(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     let name = format!("{} ({})", row.id, row.subject);
     let input = Input {
         u: Some(1.0 / f64::sqrt(3.0)),
+        evaluated: Evaluation { shape: Shape::Rectangular, ..Evaluation::UNSTATED }.kept(),
         label: Some(name.as_str().into()),
         citation: Some(Citation::new("price of the assumption, taken as a bound", "")),
         ..Input::of(LeafKey::Own(name.as_str().into()))

@@ -180,7 +180,7 @@ fn unit_of(text: &str) -> Result<Unit, UnitError> {
 fn without_plus_minus(body: &str, meaning: Option<Meaning>, whole: &str) -> Result<Written, TextError> {
     let first = number(body, whole)?;
     let unit = unit_of(first.rest.trim())?;
-    let mut evaluation = Evaluation::default();
+    let mut evaluation = Evaluation::UNSTATED;
     if let Some(meaning) = meaning {
         if first.u.is_none() {
             return Err(meaning.without_uncertainty(whole).into());
@@ -256,7 +256,7 @@ fn with_plus_minus(value: &str, half: &str, meaning: Option<Meaning>, whole: &st
 pub fn from_number(value: f64, unit: Unit, place: Option<Place>, ordinal: u64) -> Result<Quantity, TextError> {
     let name = format!("{} {}", round::shortest(value), unit.text);
     let digit = number(&round::shortest(value), &name).ok().map(|read| read.digit);
-    build(Written { value, digit, u: None, unit, evaluation: Evaluation::default() }, &name, place, ordinal)
+    build(Written { value, digit, u: None, unit, evaluation: Evaluation::UNSTATED }, &name, place, ordinal)
 }
 
 fn build(written: Written, name: &str, place: Option<Place>, ordinal: u64) -> Result<Quantity, TextError> {
@@ -274,7 +274,7 @@ fn build(written: Written, name: &str, place: Option<Place>, ordinal: u64) -> Re
     let input = Input {
         u: u.map(|u| u * scale),
         digit: digit.map(|digit| digit * scale),
-        evaluation,
+        evaluated: evaluation.kept(),
         label: Some(name.into()),
         unit: Some(Arc::clone(&unit)),
         ..Input::of(LeafKey::Typed { place: place.clone(), ordinal })
@@ -517,7 +517,7 @@ mod tests {
 
     #[test]
     fn degrees_of_freedom_go_with_both_forms_and_the_other_words_with_plus_minus_only() {
-        let evaluation = |text: &str| parse(text, None, 0).unwrap().node().input().unwrap().evaluation.clone();
+        let evaluation = |text: &str| parse(text, None, 0).unwrap().node().input().unwrap().evaluation().clone();
         assert_eq!(evaluation("25.0(3) nm, dof=18").dof, Some(18.0));
         assert_eq!(evaluation("25.0 ± 0.6 nm, 95 %, dof=18").dof, Some(18.0));
         assert_eq!(evaluation("25.0 ± 0.6 nm, limits, triangular").shape, Shape::Triangular);

@@ -95,7 +95,7 @@ pub fn pairs(inputs: &[Sensitivity]) -> Vec<Pair> {
 
 fn group(input: &Sensitivity) -> Option<&Correlation> {
     input.part()?;
-    input.input()?.evaluation.correlation.as_deref()
+    input.input()?.evaluation().correlation.as_deref()
 }
 
 /// The coefficient of two different inputs.
@@ -156,8 +156,8 @@ mod tests {
     }
 
     fn depends(group: &Arc<Correlation>, name: &str, derivative: f64, u: f64) -> Sensitivity {
-        let evaluation = Evaluation { correlation: Some(Arc::clone(group)), ..Evaluation::default() };
-        let input = Input { u: Some(u), evaluation, ..Input::of(key(name)) };
+        let evaluation = Evaluation { correlation: Some(Arc::clone(group)), ..Evaluation::UNSTATED };
+        let input = Input { u: Some(u), evaluated: evaluation.kept(), ..Input::of(key(name)) };
         let leaf = Node::new(1.0, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None);
         Sensitivity { leaf: Rc::new(leaf), derivative }
     }

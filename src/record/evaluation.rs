@@ -28,11 +28,28 @@ impl Shape {
 }
 
 /// What is known of an input beside its value and its standard uncertainty.
-#[derive(Clone, Debug, Default)]
+#[derive(Clone, Debug)]
 pub struct Evaluation {
     pub shape: Shape,
     /// Degrees of freedom of u; `None` where none are stated, which counts as infinitely many.
     pub dof: Option<f64>,
     /// Inputs that were determined together with this one; `None` for an independent input, which costs nothing.
     pub correlation: Option<Arc<Correlation>>,
+}
+
+/// What holds where nothing is stated.
+static UNSTATED: Evaluation = Evaluation::UNSTATED;
+
+impl Evaluation {
+    pub const UNSTATED: Evaluation = Evaluation { shape: Shape::Normal, dof: None, correlation: None };
+
+    /// As an input keeps it: nothing where nothing is stated, since most inputs are such and every node has room for one.
+    pub fn kept(self) -> Option<Box<Evaluation>> {
+        let unstated = self.shape == Shape::Normal && self.dof.is_none() && self.correlation.is_none();
+        (!unstated).then(|| Box::new(self))
+    }
+
+    pub(super) fn of(kept: Option<&Evaluation>) -> &Evaluation {
+        kept.unwrap_or(&UNSTATED)
+    }
 }

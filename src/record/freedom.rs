@@ -26,7 +26,7 @@ pub enum Freedom {
 /// The effective degrees of freedom of a value.
 pub fn of(value: &Rc<Node>) -> Freedom {
     let inputs = spread::sensitivities(value);
-    let limits = |at: usize| inputs[at].input().is_some_and(|input| input.evaluation.dof.is_some());
+    let limits = |at: usize| inputs[at].input().is_some_and(|input| input.evaluation().dof.is_some());
     let name = |at: usize| inputs[at].input().map_or_else(String::new, |input| input.name());
     let matters = |at: usize| inputs[at].part().is_some_and(|part| part != 0.0);
     for pair in correlation::pairs(&inputs) {
@@ -36,7 +36,7 @@ pub fn of(value: &Rc<Node>) -> Freedom {
     }
     let variance = correlation::variance(&inputs);
     let weighted = inputs.iter().filter_map(|one| {
-        let (part, dof) = (one.part()?, one.input()?.evaluation.dof?);
+        let (part, dof) = (one.part()?, one.input()?.evaluation().dof?);
         Some(part * part * (part * part) / dof)
     });
     let sum: f64 = weighted.sum();
@@ -60,8 +60,8 @@ mod tests {
     }
 
     fn leaf(name: &str, u: f64, dof: Option<f64>, correlation: Option<&Arc<Correlation>>) -> Rc<Node> {
-        let evaluation = Evaluation { dof, correlation: correlation.cloned(), ..Evaluation::default() };
-        let input = Input { u: Some(u), evaluation, ..Input::of(key(name)) };
+        let evaluation = Evaluation { dof, correlation: correlation.cloned(), ..Evaluation::UNSTATED };
+        let input = Input { u: Some(u), evaluated: evaluation.kept(), ..Input::of(key(name)) };
         Rc::new(Node::new(0.0, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
     }
 

@@ -40,8 +40,8 @@ pub struct Input {
     pub key: LeafKey,
     /// Standard uncertainty in SI units; `None` where none is stated, which is not zero.
     pub u: Option<f64>,
-    /// How u was evaluated, and what the input is correlated with.
-    pub evaluation: Evaluation,
+    /// How u was evaluated, where more than u is stated; read it by [`Input::evaluation`].
+    pub evaluated: Option<Box<Evaluation>>,
     /// SI value of one unit in the last digit printed or typed; `None` for what is exact or computed.
     pub digit: Option<f64>,
     /// The text as typed, or the analyst's name for it. A datum and a constant are named by their key.
@@ -54,7 +54,12 @@ pub struct Input {
 impl Input {
     /// An input of which nothing is known but which it is.
     pub fn of(key: LeafKey) -> Input {
-        Input { key, u: None, evaluation: Evaluation::default(), digit: None, label: None, unit: None, citation: None }
+        Input { key, u: None, evaluated: None, digit: None, label: None, unit: None, citation: None }
+    }
+
+    /// How u was evaluated, and what the input is correlated with.
+    pub fn evaluation(&self) -> &Evaluation {
+        Evaluation::of(self.evaluated.as_deref())
     }
 
     /// What the figure is, for budgets: `formation enthalpy of CO2(g)`.

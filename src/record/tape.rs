@@ -134,7 +134,7 @@ impl Tape {
                     self.by_derivatives.push(does);
                 }
             }
-            Origin::Input(_) => {}
+            _ => {}
         }
         let moving = node
             .inputs()
@@ -152,7 +152,7 @@ impl Tape {
 
     /// Sorts the leaves into groups of correlated ones and those that stand alone.
     fn group(&mut self) {
-        let correlation = |leaf: &Leaf| leaf.input.evaluation.correlation.clone();
+        let correlation = |leaf: &Leaf| leaf.input.evaluation().correlation.clone();
         let mut known: Vec<(std::sync::Arc<Correlation>, Vec<usize>)> = Vec::new();
         for (at, leaf) in self.leaves.iter().enumerate() {
             match correlation(leaf) {
@@ -203,7 +203,7 @@ impl Tape {
         offsets.resize(self.leaves.len(), 0.0);
         for &at in &self.alone {
             let leaf = &self.leaves[at];
-            let evaluation = &leaf.input.evaluation;
+            let evaluation = leaf.input.evaluation();
             let deviate = match (evaluation.shape, evaluation.dof) {
                 (Shape::Normal, None) => generator.normal(),
                 (Shape::Normal, Some(dof)) => generator.student(dof),
@@ -283,7 +283,7 @@ mod tests {
 
     fn leaf(name: &str, si: f64, u: Option<f64>, correlation: Option<Arc<Correlation>>) -> Rc<Node> {
         let input =
-            Input { u, evaluation: Evaluation { correlation, ..Evaluation::default() }, ..Input::of(key(name)) };
+            Input { u, evaluated: Evaluation { correlation, ..Evaluation::UNSTATED }.kept(), ..Input::of(key(name)) };
         Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
     }
 
