@@ -393,6 +393,30 @@ fn readings_keep_their_check_line_and_their_places() {
 }
 
 #[test]
+fn widths_on_a_temperature_scale_are_counted_in_its_degrees_and_given_in_kelvin() {
+    let (fahrenheit, celsius) = ("q(\"77.0(5) degF\")", "q(\"25.00(5) degC\")");
+    assert!(plain(&format!("{fahrenheit}.expanded(0.95)")).starts_with("(77.00 ± 0.98) °F, k = 1.96"));
+    assert!(plain(&format!("{celsius}.expanded(0.95)")).starts_with("(25.000 ± 0.098) °C, k = 1.96"));
+    assert!(plain(&format!("{celsius}.monte_carlo()")).starts_with("25.000(50) °C, 95 % from 24.9"));
+    let budget = plain(&format!("{fahrenheit}.budget()"));
+    assert!(budget.contains("77.00 °F  0.28 K"), "{budget}");
+    let found = numbers(&format!(
+        "let e = {fahrenheit}.expanded(0.95); let run = {fahrenheit}.monte_carlo();
+        [e.U.value(\"K\"), e.low.value(\"degF\"), run.u.value(\"K\"), run.mean.value(\"degF\")]"
+    ));
+    // The draws are stable to half a unit of the second digit of u = 0.50 °F.
+    compare(
+        "5/9 K to the degree Fahrenheit",
+        &[
+            ("U", found[0], 1.959_964 * 0.5 / 1.8, 1e-6),
+            ("low", found[1], 77.0 - 1.959_964 * 0.5, 1e-6),
+            ("u of the draws", found[2], 0.5 / 1.8, 0.005 / 1.8),
+            ("mean of the draws", found[3], 77.0, 0.005),
+        ],
+    );
+}
+
+#[test]
 fn a_long_run_stops_when_told_to() {
     let code = "let x = q(\"99.0(9.9) m\"); for k in 0..1000 { x = x + 0.001 * x; } x.monte_carlo()";
     let stopped = on_big_stack(move || {

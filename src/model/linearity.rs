@@ -68,7 +68,7 @@ fn test(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
         _ => None,
     };
     let run = Propagation::of(cx, call, value, Settings::read(number)?)?;
-    let scale = if run.logarithmic { value.si() } else { answer::difference_unit(value).factor };
+    let scale = if run.logarithmic { value.si() } else { run.unit.factor };
     let at = if run.logarithmic { math::ln(value.si()) } else { run.unit.from_si(value.si()) };
     let outcome: BTreeMap<String, Value> = [
         ("seed", run.settings.seed as f64),

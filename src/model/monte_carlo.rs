@@ -216,7 +216,8 @@ impl Propagation {
         refuse_without_deviation(&tape)?;
         let logarithmic = answer::is_logarithmic(value);
         let unit = value.unit();
-        let (y, size) = (value.si(), answer::difference_unit(value).factor);
+        // Widths are counted in the steps of the value's own unit, on a temperature scale too.
+        let (y, size) = (value.si(), unit.factor);
         let output = |si: f64| if logarithmic { math::ln(si) } else { unit.from_si(si) };
         // First derivatives of ln K are those of K over K.
         let linear = |si: f64| if logarithmic { math::ln(y) + (si - y) / y } else { unit.from_si(si) };

@@ -60,7 +60,7 @@ pub fn expanded(expanded: &Expanded) -> Bundle {
         lines.push(format!("K° from {} to {}, p° = 1 bar", end(&expanded.low), end(&expanded.high)));
     } else {
         let y = unit.from_si(value.si());
-        let half_width = expanded.half_width.si() / expanded.half_width.unit().factor;
+        let half_width = expanded.half_width.si() / unit.factor;
         let unit_text = reader_text(&unit);
         let shown = if half_width > 0.0 {
             with_half_width(y, half_width, &unit_text)
