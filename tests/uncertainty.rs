@@ -354,7 +354,7 @@ fn an_equilibrium_constant_has_its_interval_in_its_logarithm() {
 #[test]
 fn what_is_not_known_is_said_with_every_answer() {
     let partial = "let x = q(\"12.5(3) kJ\") + q(\"3.1 kJ\");";
-    assert!(plain(&format!("{partial} x.budget()")).contains("not stated"));
+    assert!(plain(&format!("{partial} x.budget()")).contains("3.1 kJ  not stated"));
     assert!(plain(&format!("{partial} x.budget()")).contains("u = 0.30 kJ, of the stated part alone"));
     assert!(
         plain(&format!("{partial} x.expanded(0.95)"))

@@ -89,8 +89,10 @@ fn rows(budget: &Budget, sources: &mut Sources) -> Vec<Row> {
 fn row(budget: &Budget, line: &Line, sources: &mut Sources) -> Row {
     let u = line.u.map_or_else(|| "not stated".to_owned(), |u| with_unit(&two_digits(u), &line.difference_unit));
     let value = line.unit.from_si(line.leaf.si());
-    let value = match line.u {
-        Some(u) if u > 0.0 => round::fixed(value, round::decimals_for(u)),
+    let digit = line.leaf.input().and_then(|input| input.digit).map(|digit| digit / line.difference_unit.factor);
+    let value = match (line.u, digit) {
+        (Some(u), _) if u > 0.0 => round::fixed(value, round::decimals_for(u)),
+        (_, Some(digit)) => round::fixed(value, round::decimals_of_digit(digit)),
         _ => round::significant(value, 6),
     };
     let output = if budget.logarithmic { String::new() } else { reader_text(&budget.unit) };
