@@ -213,8 +213,13 @@ fn correlate(
     if let Some(unknown) = records.iter().find(|record| !formations.iter().any(|one| is_of(one, record))) {
         return Err(unusable(format!("it has no record {unknown}")));
     }
-    let key =
-        |record| LeafKey::Datum { dataset: dataset.shared(), record: id(record), field: formation::FIELD, t_bits: 0 };
+    let key = |record| LeafKey::Datum {
+        dataset: dataset.shared(),
+        record: id(record),
+        field: formation::FIELD,
+        t_bits: 0,
+        way: "",
+    };
     let made = Correlation::new(records.iter().map(key).collect(), r).map_err(|error| unusable(error.to_string()))?;
     let made = Arc::new(made);
     for formation in formations.iter_mut().filter(|one| records.iter().any(|record| is_of(one, record))) {

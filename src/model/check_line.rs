@@ -64,6 +64,7 @@ fn arithmetic(operator: &Operator, names: &[String]) -> String {
         (Operator::Sin, [a]) => format!("sin {a}"),
         (Operator::Cos, [a]) => format!("cos {a}"),
         (Operator::Tan, [a]) => format!("tan {a}"),
+        (Operator::Condition, [a]) => a.clone(),
         (Operator::Absolute, [a]) => format!("|{a}|"),
         (_, all) => format!("({}) / {}", all.join(" + "), all.len()),
     }

@@ -28,7 +28,7 @@ use crate::model::gather::{self, Contribution, Figure, Method};
 use crate::model::terms::Terms;
 use crate::num::math;
 use crate::quantity::Quantity;
-use crate::record::node::{Input, LeafKey, Node, Origin};
+use crate::record::node::{Input, LeafKey, Node, Operator, Origin};
 use crate::units::constants::{ConstantSet, STANDARD_PRESSURE};
 use crate::units::{Base, Dimension, Entity, Kind, State, What, Zero};
 
@@ -239,9 +239,7 @@ pub fn quantity(property: Property, call: &Rc<Call>, method: &Method, cx: &Cx) -
     if property.uses_gas_law() && delta_n != 0.0 {
         inputs.push((Rc::clone(r.node()), -delta_n * t_k));
     }
-    if !is_condition(t) {
-        inputs.push((Rc::clone(t.node()), evaluated.slope));
-    }
+    inputs.push((as_argument(t), evaluated.slope));
     let step = Rc::clone(call);
     Ok(Quantity::from_step(
         evaluated.si,
@@ -253,10 +251,16 @@ pub fn quantity(property: Property, call: &Rc<Call>, method: &Method, cx: &Cx) -
     )?)
 }
 
-/// Whether a temperature was chosen: typed as it is, without an uncertainty. One that was measured, computed, or has an
-/// assumption attached is an input of what is computed at it.
-pub(super) fn is_condition(t: &Quantity) -> bool {
-    t.node().input().is_some_and(|input| input.u.is_none())
+/// A temperature as an input of what is computed at it. One that is typed as it is, without an uncertainty, was chosen and not
+/// measured: its node says so, and the result is not called partial for it.
+pub(super) fn as_argument(t: &Quantity) -> Rc<Node> {
+    let node = t.node();
+    if node.input().is_none_or(|input| input.u.is_some()) {
+        return Rc::clone(node);
+    }
+    let inputs = SmallVec::from_iter([(Rc::clone(node), 1.0)]);
+    let origin = Origin::Operator(Operator::Condition);
+    Rc::new(Node::new(node.si(), node.dim().clone(), node.kind().clone(), inputs, origin, node.place().cloned()))
 }
 
 pub(super) fn leaf(figure: &Figure, property: Property) -> Result<Rc<Node>, Fault> {
@@ -356,7 +360,11 @@ mod tests {
     #[test]
     fn a_temperature_without_uncertainty_is_a_condition_and_one_with_it_an_input() {
         let exact = ask(&ENTHALPY, SHIFT, "723.15 K", &[]).unwrap();
-        assert!(exact.sensitivities().iter().all(|s| !matches!(s.input().unwrap().key, LeafKey::Typed { .. })));
+        let typed = |value: &Quantity| {
+            let all = value.sensitivities();
+            all.into_iter().find(|s| matches!(s.input().unwrap().key, LeafKey::Typed { .. })).unwrap()
+        };
+        assert!(typed(&exact).chosen && !typed(&exact).is_silent());
         let sure = exact.spread().u().unwrap();
         let unsure = ask(&ENTHALPY, SHIFT, "723(20) K", &[]).unwrap().spread().u().unwrap();
         assert!(unsure > sure);

@@ -210,6 +210,7 @@ fn repeated(operator: Operator, inputs: &[Quantity], cx: &Cx) -> Result<Quantity
         (Operator::Exp, [a]) => a.exp(place),
         (Operator::Ln, [a]) => a.ln(place),
         (Operator::Absolute, [a]) => a.absolute(place),
+        (Operator::Condition, [a]) => Ok(a.clone()),
         (Operator::Mean, all) => Quantity::mean(all, place),
         _ => unreachable!("an operator node is built with the inputs its operator takes"),
     }

@@ -329,7 +329,7 @@ pub fn silent_inputs(value: &Quantity) -> Vec<(String, Vec<String>)> {
     }
     let mut by_field: BTreeMap<String, Vec<String>> = BTreeMap::new();
     for sensitivity in value.sensitivities() {
-        let Some(input) = sensitivity.input().filter(|input| input.u.is_none()) else { continue };
+        let Some(input) = sensitivity.input().filter(|_| sensitivity.is_silent()) else { continue };
         let (field, record) = match &input.key {
             LeafKey::Datum { record, field, .. } => ((*field).to_owned(), record.to_string()),
             _ => ("typed value".to_owned(), input.name()),

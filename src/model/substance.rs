@@ -195,8 +195,8 @@ fn increment(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
         _ => None,
     };
     for (temperature, slope) in [(Some(call.quantity(1)), slopes.0), (from, slopes.1)] {
-        if let Some(temperature) = temperature.filter(|t| !property::is_condition(t)) {
-            inputs.push((Rc::clone(temperature.node()), slope));
+        if let Some(temperature) = temperature {
+            inputs.push((property::as_argument(temperature), slope));
         }
     }
     let state = State {

@@ -413,7 +413,8 @@ fn exact(value: f64) -> String {
 
 /// The coarsest of what the last digits of the inputs are worth in the result, in SI units.
 fn coarsest_digit(value: &Quantity) -> Option<f64> {
-    let worth = value.sensitivities().into_iter().filter_map(|s| {
+    // A chosen condition is no measurement, and limits no digits.
+    let worth = value.sensitivities().into_iter().filter(|s| !s.chosen).filter_map(|s| {
         let digit = s.input().and_then(|input| input.digit)?;
         Some((s.derivative * digit).abs())
     });

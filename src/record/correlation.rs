@@ -159,7 +159,7 @@ mod tests {
         let evaluation = Evaluation { correlation: Some(Arc::clone(group)), ..Evaluation::UNSTATED };
         let input = Input { u: Some(u), evaluated: evaluation.kept(), ..Input::of(key(name)) };
         let leaf = Node::new(1.0, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None);
-        Sensitivity { leaf: Rc::new(leaf), derivative }
+        Sensitivity { leaf: Rc::new(leaf), derivative, chosen: false }
     }
 
     fn pair(r: f64) -> Arc<Correlation> {

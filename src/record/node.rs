@@ -104,6 +104,8 @@ pub enum Operator {
     Cos,
     Tan,
     Absolute,
+    /// A temperature that was chosen, on its way into a formula: its value is what was meant, not what was measured.
+    Condition,
     /// The weighted sum of all inputs, each with the same weight.
     Mean,
 }
@@ -129,6 +131,7 @@ impl Operator {
             (Operator::Cos, [a]) => math::cos(*a),
             (Operator::Tan, [a]) => math::tan(*a),
             (Operator::Absolute, [a]) => a.abs(),
+            (Operator::Condition, [a]) => *a,
             (Operator::Mean, all) => all.iter().sum::<f64>() / all.len() as f64,
             _ => unreachable!("an operator node is built with the inputs its operator takes"),
         }

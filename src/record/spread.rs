@@ -8,7 +8,7 @@ use std::collections::BTreeMap;
 use std::rc::Rc;
 
 use crate::record::correlation;
-use crate::record::node::{Input, LeafKey, Node};
+use crate::record::node::{Input, LeafKey, Node, Operator, Origin};
 
 /// How a value depends on one input.
 #[derive(Clone)]
@@ -16,6 +16,8 @@ pub struct Sensitivity {
     pub leaf: Rc<Node>,
     /// ∂(value)/∂(input), in SI units.
     pub derivative: f64,
+    /// Whether the input was chosen as a condition of some formula on the way, and so is not silent without an uncertainty.
+    pub chosen: bool,
 }
 
 impl Sensitivity {
@@ -25,6 +27,11 @@ impl Sensitivity {
 
     pub fn key(&self) -> Option<&LeafKey> {
         self.input().map(|input| &input.key)
+    }
+
+    /// Whether the input states no uncertainty, and was not chosen either.
+    pub fn is_silent(&self) -> bool {
+        self.part().is_none() && !self.chosen
     }
 
     /// The share of the standard uncertainty that this input brings, signed: derivative times u.
@@ -77,19 +84,21 @@ pub fn sensitivities(of: &Rc<Node>) -> Vec<Sensitivity> {
     let mut leaves: BTreeMap<LeafKey, (Sensitivity, f64)> = BTreeMap::new();
     // The largest id first: all users of a node have larger ids, so its adjoint is complete when it is taken out.
     while let Some((_, reached)) = pending.pop_last() {
-        let Reached { node, adjoint, size } = reached;
+        let Reached { node, adjoint, size, chosen } = reached;
         if let Some(input) = node.input() {
             let key = input.key.clone();
-            let empty = || (Sensitivity { leaf: Rc::clone(&node), derivative: 0.0 }, 0.0);
+            let empty = || (Sensitivity { leaf: Rc::clone(&node), derivative: 0.0, chosen: false }, 0.0);
             let entry = leaves.entry(key).or_insert_with(empty);
             entry.0.derivative += adjoint;
             entry.1 += size;
+            entry.0.chosen |= chosen;
             continue;
         }
         for (input, partial) in node.inputs() {
             let entry = pending.entry(input.id()).or_insert_with(|| Reached::not_yet(input));
             entry.adjoint += adjoint * partial;
             entry.size += size * partial.abs();
+            entry.chosen |= matches!(node.origin(), Origin::Operator(Operator::Condition));
         }
     }
     let is_left = |(leaf, size): &(Sensitivity, f64)| leaf.derivative.abs() > 16.0 * f64::EPSILON * size;
@@ -101,15 +110,16 @@ struct Reached {
     node: Rc<Node>,
     adjoint: f64,
     size: f64,
+    chosen: bool,
 }
 
 impl Reached {
     fn itself(node: &Rc<Node>) -> Self {
-        Reached { node: Rc::clone(node), adjoint: 1.0, size: 1.0 }
+        Reached { node: Rc::clone(node), adjoint: 1.0, size: 1.0, chosen: false }
     }
 
     fn not_yet(node: &Rc<Node>) -> Self {
-        Reached { node: Rc::clone(node), adjoint: 0.0, size: 0.0 }
+        Reached { node: Rc::clone(node), adjoint: 0.0, size: 0.0, chosen: false }
     }
 }
 
@@ -134,7 +144,7 @@ fn deviation(inputs: &[Sensitivity]) -> f64 {
         return largest;
     }
     let scaled: Vec<Sensitivity> = (inputs.iter())
-        .map(|one| Sensitivity { leaf: Rc::clone(&one.leaf), derivative: one.derivative / largest })
+        .map(|one| Sensitivity { leaf: Rc::clone(&one.leaf), derivative: one.derivative / largest, chosen: one.chosen })
         .collect();
     largest * correlation::variance(&scaled).sqrt()
 }
@@ -143,7 +153,7 @@ fn deviation(inputs: &[Sensitivity]) -> f64 {
 pub fn spread(of: &Rc<Node>) -> Spread {
     let inputs = sensitivities(of);
     let silent: Vec<LeafKey> =
-        inputs.iter().filter(|one| one.part().is_none()).filter_map(|one| one.key().cloned()).collect();
+        inputs.iter().filter(|one| one.is_silent()).filter_map(|one| one.key().cloned()).collect();
     let u = deviation(&inputs);
     match silent.is_empty() {
         true => Spread::Full(u),
