@@ -77,6 +77,14 @@ impl Fault {
         self
     }
 
+    /// The same fault with more said about the way out.
+    #[must_use]
+    pub fn adding(mut self, more: &str) -> Self {
+        self.hint.push_str("; ");
+        self.hint.push_str(more);
+        self
+    }
+
     /// The same fault, raised while `function` was being called.
     #[must_use]
     pub fn within(mut self, function: impl Into<String>, place: Option<Place>) -> Self {

@@ -97,3 +97,15 @@ fn an_explained_gap_names_mistake_fit_chance_and_source() {
     assert!(nothing.plain().contains("no usual mistake is named"), "{}", nothing.plain());
     assert!(nothing.plain().contains("needs no mistake"), "{}", nothing.plain());
 }
+
+#[test]
+fn values_of_a_substance_are_explained_and_answers_print_as_they_are_shown() {
+    // CODATA Key Values 1989: formation enthalpy of H2O(l) -285.830(40) kJ/mol at 95 %.
+    let code = "let w = substance(\"H2O(g)\").enthalpy(\"298.15 K\"); explain_gap(w, \"-285.830(20) kJ/mol[H2O]\")";
+    let shown = run(code);
+    assert!(shown.plain().contains("1. in b: H2O(l) was taken for H2O(g)"), "{}", shown.plain());
+    assert_eq!(
+        run(&format!("let w = {{ {code} }}; `${{w}}`")).plain().replace("\\n", "\n").trim_matches('"'),
+        shown.plain()
+    );
+}

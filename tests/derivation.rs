@@ -61,7 +61,7 @@ fn steps_inputs_places_and_sources_stand_in_the_order_of_calculation() {
         "1  enthalpy of CO(g) + H2O(g) -> CO2(g) + H2(g), T = i9 (450 °C), at cell-1, line 2",
         "ΔrH°(T) = Σ ν [ΔfH°(298.15 K) + H(T) - H(298.15 K)] [6]",
         "ν                   1       stoichiometric numbers as written, positive for products",
-        "from i1 to i8",
+        "from i1 to i9",
         "2  2 × step 1, at cell-2, line 2",
         "3  step 2 + i10, at cell-2, line 4",
         "i9   450 degC",

@@ -154,6 +154,16 @@ fn a_loop_of_a_script_is_bounded_too_and_reports_what_the_closed_form_reports() 
 }
 
 #[test]
+fn a_monte_carlo_run_says_where_a_folded_run_stood_in_for_its_steps() {
+    // Just past the limit, so that each draw computes a few steps and not thousands.
+    let (linear, _) = looped(4_100, "s = s + a*2;", "print(s.monte_carlo());");
+    assert!(linear.out.contains("two digits of u stable"), "{}", linear.out);
+    assert!(!linear.out.contains("long runs of arithmetic"), "{}", linear.out);
+    let (product, _) = looped(1_370, "s = s + s*0.0*(a/start);", "print(s.monte_carlo());");
+    assert!(product.out.contains("it cannot be computed again: long runs of arithmetic"), "{}", product.out);
+}
+
+#[test]
 fn figures_typed_in_a_loop_are_one_input_without_u_and_inputs_of_their_own_with_it() {
     let passes = 50_000;
     let (_, without) = looped(passes, "s = s + q(\"2.0 kJ\");", "");

@@ -15,7 +15,7 @@ use hessbook::model::gap::candidate::{Mistake, Scale};
 use hessbook::model::gap::{Fit, Gap, Told};
 use hessbook::num::math;
 use hessbook::quantity::{Quantity, text};
-use hessbook::record::register::price_of;
+use hessbook::record::register::Reported;
 use hessbook::units::constants;
 
 const HYDROGEN: &str = "2 H2(g) + O2(g) -> 2 H2O(g)";
@@ -36,7 +36,7 @@ impl Desk {
     }
 
     fn with<T>(&self, work: impl FnOnce(&Cx) -> T) -> T {
-        work(&Cx { references: &self.references, place: None, ordinal: &self.ordinal })
+        work(&Cx { references: &self.references, place: None, ordinal: &self.ordinal, halted: &|| None })
     }
 
     fn call(&self, name: &str, args: Vec<Value>) -> Result<Value, Fault> {
@@ -381,7 +381,8 @@ fn predictions_come_from_computed_alternatives_with_their_sources() {
     let gap = desk.gap(&a, &constant);
     let first = &gap.fits[0];
     assert_eq!(first.predicted, constant.si() - a.si());
-    assert_eq!(price_of(a.node(), a.node(), constant.si()).0, Some(-first.predicted));
+    let better = BTreeMap::from([(a.node().id(), constant.si())]);
+    assert_eq!(Reported::of(a.node()).price(&better).0, -first.predicted);
     assert!(first.sources.iter().any(|source| source.source.contains("NASA/TP-2002-211556")), "{:?}", first.sources);
     assert_eq!(gap.scale, Scale::Linear);
 }

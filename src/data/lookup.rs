@@ -87,12 +87,10 @@ impl Explain for NameFault {
                 format!("write the name of the one that is meant: {}", one_of(candidates))
             }
             NameFault::PhaseNotOnRecord { candidates, .. } => {
-                format!("use {}, or give the substance your own data with their source", one_of(candidates))
+                format!("use {}, or another substance", one_of(candidates))
             }
             NameFault::Unknown { near, .. } if near.is_empty() => {
-                "write a formula or name with its phase, as in CO2(g) or n-butane(g), or give the substance your own \
-                 data with their source"
-                    .to_owned()
+                "write a formula or name with its phase, as in CO2(g) or n-butane(g)".to_owned()
             }
             NameFault::Unknown { near, .. } => format!("perhaps {}", one_of(near)),
         }

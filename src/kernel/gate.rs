@@ -2,14 +2,14 @@
 //!
 //! The library sets memory aside for whatever length a frame announces, before it knows whom it talks to: nine bytes
 //! from any program that finds the port abort the process (zeromq 0.7.0). So [`Gate`] takes the connections, looks at
-//! the frame headers that go by, and hands the bytes on through sockets in a folder that only this user can enter.
-//! It also knows what has not left yet, which the library does not tell.
+//! the frame headers that go by, and hands the bytes on through a local socket that no client is told of. It also
+//! knows what has not left yet, which the library does not tell.
 
 use std::fs::Permissions;
 use std::io;
 use std::os::unix::fs::PermissionsExt;
 use std::os::unix::net::UnixListener as StdUnixListener;
-use std::path::Path;
+use std::path::{Path, PathBuf};
 use std::sync::Arc;
 use std::sync::atomic::{AtomicU64, AtomicUsize, Ordering};
 use std::time::Duration;
@@ -20,7 +20,7 @@ use tokio::net::{TcpListener, TcpStream, UnixListener, UnixStream};
 use tokio::task;
 use tokio::time::sleep;
 
-use crate::kernel::connection::{Channel, Listener};
+use crate::kernel::connection::Listener;
 
 /// What one message may announce in all. Cells are kilobytes; the largest that the tests send is 10 MB.
 const LARGEST_MESSAGE: u64 = 256 * 1024 * 1024;
@@ -114,23 +114,53 @@ struct Traffic {
     moves: AtomicU64,
 }
 
+/// A local socket between the gate and the message library.
+struct Passage {
+    address: PathBuf,
+    /// Where the socket lies, if it lies on disk; removed when the passage is closed.
+    _folder: Option<TempDir>,
+}
+
+impl Passage {
+    /// A name that is nowhere on disk, so that a kernel which is killed leaves nothing behind.
+    #[cfg(target_os = "linux")]
+    fn without_file() -> io::Result<(Passage, StdUnixListener)> {
+        use std::os::linux::net::SocketAddrExt;
+        use std::os::unix::net::SocketAddr;
+
+        let name = format!("hessbook-{}", uuid::Uuid::new_v4().simple());
+        let listener = StdUnixListener::bind_addr(&SocketAddr::from_abstract_name(&name)?)?;
+        Ok((Passage { address: PathBuf::from(format!("\0{name}")), _folder: None }, listener))
+    }
+
+    /// A file in a folder that only this user may enter, for systems that know no other names.
+    fn in_folder() -> io::Result<(Passage, StdUnixListener)> {
+        let folder =
+            tempfile::Builder::new().prefix("hessbook-").permissions(Permissions::from_mode(0o700)).tempdir()?;
+        let address = folder.path().join("gate");
+        let listener = StdUnixListener::bind(&address)?;
+        Ok((Passage { address, _folder: Some(folder) }, listener))
+    }
+
+    fn open() -> io::Result<(Passage, StdUnixListener)> {
+        #[cfg(target_os = "linux")]
+        if let Ok(opened) = Passage::without_file() {
+            return Ok(opened);
+        }
+        Passage::in_folder()
+    }
+}
+
 /// Takes the connections of all channels.
+#[derive(Default)]
 pub struct Gate {
-    folder: TempDir,
     traffic: Arc<Traffic>,
 }
 
 impl Gate {
-    pub fn new() -> io::Result<Gate> {
-        let folder =
-            tempfile::Builder::new().prefix("hessbook-").permissions(Permissions::from_mode(0o700)).tempdir()?;
-        Ok(Gate { folder, traffic: Arc::default() })
-    }
-
     /// Takes the connections that come to `listener`; gives the listener for the message library.
-    pub fn guard(&self, channel: Channel, listener: Listener) -> io::Result<zeromq::Listener> {
-        let inner = self.folder.path().join(channel.to_string());
-        let behind = StdUnixListener::bind(&inner)?;
+    pub fn guard(&self, listener: Listener) -> io::Result<zeromq::Listener> {
+        let (passage, behind) = Passage::open()?;
         let traffic = self.traffic.clone();
         match listener {
             Listener::Tcp(listener) => {
@@ -138,8 +168,8 @@ impl Gate {
                 let listener = TcpListener::from_std(listener)?;
                 task::spawn(async move {
                     loop {
-                        admit(listener.accept().await.and_then(|(client, _)| without_delay(client)), &inner, &traffic)
-                            .await;
+                        let client = listener.accept().await.and_then(|(client, _)| without_delay(client));
+                        admit(client, &passage.address, &traffic).await;
                     }
                 });
             }
@@ -148,7 +178,8 @@ impl Gate {
                 let listener = UnixListener::from_std(listener)?;
                 task::spawn(async move {
                     loop {
-                        admit(listener.accept().await.map(|(client, _)| client), &inner, &traffic).await;
+                        let client = listener.accept().await.map(|(client, _)| client);
+                        admit(client, &passage.address, &traffic).await;
                     }
                 });
             }
@@ -256,6 +287,9 @@ impl Drop for Held<'_> {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use std::io::{Read, Write};
+    use std::os::unix::net::UnixStream as StdUnixStream;
+    use tokio::runtime;
 
     fn greeted(frames: &[&[u8]]) -> Vec<u8> {
         let mut bytes = vec![0; 64];
@@ -319,5 +353,58 @@ mod tests {
         let frames = [0b001, 0].repeat(1000);
         let passed = (0..100_000).take_while(|_| inspector.pass(&frames).is_ok()).count();
         assert_eq!(passed as u64, LARGEST_MESSAGE / (1000 * FRAME_COST));
+    }
+
+    #[test]
+    fn a_passage_connects_and_leaves_nothing_behind() {
+        let runtime = runtime::Builder::new_current_thread().enable_all().build().unwrap();
+        for (passage, listener) in [Passage::open().unwrap(), Passage::in_folder().unwrap()] {
+            let mut carried = [0; 5];
+            runtime.block_on(async {
+                let mut inner = UnixStream::connect(&passage.address).await.unwrap();
+                inner.write_all(b"bytes").await.unwrap();
+            });
+            listener.accept().unwrap().0.read_exact(&mut carried).unwrap();
+            assert_eq!(&carried, b"bytes");
+            let folder = passage._folder.as_ref().map(|folder| folder.path().to_owned());
+            drop(passage);
+            assert!(folder.is_none_or(|folder| !folder.exists()));
+        }
+    }
+
+    #[test]
+    fn bytes_pass_both_ways_until_a_header_is_oversized() {
+        let folder = tempfile::tempdir().unwrap();
+        let outside = folder.path().join("outside");
+        let listener = Listener::Ipc(StdUnixListener::bind(&outside).unwrap());
+        let runtime = runtime::Builder::new_current_thread().enable_all().build().unwrap();
+        let gate = Gate::default();
+        let guard = runtime.enter();
+        let Ok(zeromq::Listener::Ipc(behind)) = gate.guard(listener) else { panic!("a local listener") };
+        drop(guard);
+        let talk = std::thread::spawn(move || {
+            let mut client = StdUnixStream::connect(outside).unwrap();
+            let (mut library, _) = behind.accept().unwrap();
+            client.write_all(&greeted(&[&[0b000, 2, b'h', b'i']])).unwrap();
+            let mut heard = [0; 68];
+            library.read_exact(&mut heard).unwrap();
+            assert_eq!(&heard[66..], b"hi");
+            library.write_all(b"yes").unwrap();
+            let mut answer = [0; 3];
+            client.read_exact(&mut answer).unwrap();
+            assert_eq!(&answer, b"yes");
+            client.write_all(&long(0b010, 1 << 40)).unwrap();
+            // Both ends are closed, and nothing of the header has passed.
+            assert_eq!(library.read(&mut heard).unwrap(), 0);
+            assert_eq!(client.read(&mut answer).unwrap_or(0), 0);
+        });
+        runtime.block_on(async {
+            while !talk.is_finished() {
+                sleep(Duration::from_millis(1)).await;
+            }
+            gate.empty(Duration::from_secs(60)).await;
+        });
+        talk.join().unwrap();
+        assert_eq!(gate.traffic.holding.load(Ordering::Relaxed), 0);
     }
 }

@@ -189,7 +189,7 @@ async fn run(connection: &Connection, listeners: [Listener; 5]) -> Result<(), Se
     let mut interrupts = signal(SignalKind::interrupt()).map_err(ServerError::Start)?;
     let mut terminations = signal(SignalKind::terminate()).map_err(ServerError::Start)?;
 
-    let gate = Gate::new().map_err(ServerError::Start)?;
+    let gate = Gate::default();
     let [shell, control, stdin, iopub, heartbeat] = listeners;
     let (shell_replies, shell_requests) = adopt::<RouterSocket>(&gate, Channel::Shell, shell).await?.split();
     let (control_replies, control_requests) = adopt::<RouterSocket>(&gate, Channel::Control, control).await?.split();
@@ -250,7 +250,7 @@ async fn run(connection: &Connection, listeners: [Listener; 5]) -> Result<(), Se
 
 async fn adopt<S: Socket>(gate: &Gate, channel: Channel, listener: Listener) -> Result<S, ServerError> {
     let mut socket = S::new();
-    let guarded = gate.guard(channel, listener).map_err(ServerError::Start)?;
+    let guarded = gate.guard(listener).map_err(ServerError::Start)?;
     let bound = socket.bind_listener(guarded).await;
     bound.map_err(|reason| ServerError::Socket { channel, reason: reason.to_string() })?;
     Ok(socket)

@@ -18,7 +18,7 @@ use std::sync::Arc;
 use thiserror::Error;
 
 use crate::fault::{Explain, Fault};
-use crate::model::account::Account;
+use crate::model::answer::Answer;
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
 use crate::quantity::{Quantity, round};
 use crate::record::spread::Spread;
@@ -113,6 +113,14 @@ impl Comparison {
         Ok(Comparison { a: a.clone(), b: b.clone(), difference, by_logarithm, k, limit, verdict, shared_inputs })
     }
 
+    pub(super) fn parts(&self) -> Vec<(&'static str, Value)> {
+        vec![
+            ("difference", Value::Quantity(self.difference.clone())),
+            ("k", self.k.map_or(Value::Nothing, Value::Number)),
+            ("verdict", Value::Text(self.sentence().into())),
+        ]
+    }
+
     /// The verdict in a sentence.
     pub fn sentence(&self) -> String {
         let apart = |k: f64| format!("{k:.1} standard uncertainties of their difference apart");
@@ -174,7 +182,8 @@ const CANCELLED: f64 = 1e-12;
 
 fn shared_inputs(a: &Quantity, b: &Quantity) -> usize {
     let keys = |value: &Quantity| -> BTreeSet<_> {
-        value.sensitivities().iter().filter_map(|s| s.input().map(|input| input.key.clone())).collect()
+        // A condition both were computed at is no figure that they share.
+        value.sensitivities().iter().filter(|s| !s.chosen).filter_map(|s| s.key().cloned()).collect()
     };
     keys(a).intersection(&keys(b)).count()
 }
@@ -212,7 +221,7 @@ pub static COMPARE: Card = Card {
 
 fn run(_: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     let comparison = Comparison::of(call.quantity(0), call.quantity(1), call.number(2))?;
-    Ok(Value::Account(Account::Comparison(Rc::new(comparison))))
+    Ok(Value::Answer(Answer::Comparison(Rc::new(comparison))))
 }
 
 #[cfg(test)]

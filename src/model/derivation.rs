@@ -14,13 +14,13 @@ use std::rc::Rc;
 use thiserror::Error;
 
 use crate::fault::{Explain, Place};
-use crate::model::account::Account;
+use crate::model::answer::Answer;
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Sources, Takes, Value, call_of};
-use crate::model::review;
+use crate::model::check_line;
 use crate::model::symbols::{self, Formula};
 use crate::quantity::Quantity;
 use crate::record::fold::Folded;
-use crate::record::node::{self, LeafKey, Node, Origin};
+use crate::record::node::{self, LeafKey, Node, Operator, Origin};
 use crate::source::Citation;
 use crate::units;
 
@@ -133,7 +133,8 @@ struct Numbers {
 
 impl Numbers {
     /// `i3` or `step 2`.
-    fn name(&self, node: &Node) -> String {
+    fn name(&self, node: &Rc<Node>) -> String {
+        let node = through_condition(node);
         match node.input() {
             Some(input) => {
                 self.inputs.get(&input.key).map_or_else(|| "an input".to_owned(), |number| format!("i{number}"))
@@ -145,7 +146,7 @@ impl Numbers {
     /// `i1 to i8, step 2`: neighbours joined, in order.
     fn names<'a>(&self, nodes: impl Iterator<Item = &'a Rc<Node>>) -> String {
         let (mut inputs, mut steps) = (BTreeSet::new(), BTreeSet::new());
-        for node in nodes {
+        for node in nodes.map(through_condition) {
             match node.input() {
                 Some(input) => inputs.extend(self.inputs.get(&input.key).copied()),
                 None => steps.extend(self.steps.get(&node.id()).copied()),
@@ -155,6 +156,15 @@ impl Numbers {
         parts.extend(ranges(&steps, "step "));
         parts.join(", ")
     }
+}
+
+/// A chosen temperature on its way into a formula is no step to be read about: it stands for the temperature itself.
+fn is_condition(node: &Rc<Node>) -> bool {
+    matches!(node.origin(), Origin::Operator(Operator::Condition))
+}
+
+fn through_condition(node: &Rc<Node>) -> &Rc<Node> {
+    if is_condition(node) { &node.inputs()[0].0 } else { node }
 }
 
 fn ranges(numbers: &BTreeSet<usize>, before: &str) -> Vec<String> {
@@ -179,11 +189,12 @@ impl Derivation {
         let history = node::history(value.node());
         let mut sources = Sources::default();
         // In the order of a report, so that its numbers serve here too.
-        review::check_line(cx, value, &mut sources);
+        check_line::check_line(cx, value, &mut sources);
         for citation in history.iter().filter_map(|node| node.input()?.citation.as_ref()) {
             sources.number(citation);
         }
-        let steps: Vec<&Rc<Node>> = history.iter().filter(|node| node.input().is_none()).collect();
+        let is_step = |node: &&Rc<Node>| node.input().is_none() && !is_condition(node);
+        let steps: Vec<&Rc<Node>> = history.iter().filter(is_step).collect();
         let leaves = leaves(&steps, value.node());
         let numbers = Numbers {
             inputs: (1..).zip(&leaves).filter_map(|(n, leaf)| Some((leaf.input()?.key.clone(), n))).collect(),
@@ -197,6 +208,14 @@ impl Derivation {
         let lines = lines(cx, &steps, most, &numbers, &mut sources);
         let inputs_hidden = leaves.len() - shown;
         Derivation { value: value.clone(), inputs, inputs_hidden, lines, sources: sources.list().to_vec() }
+    }
+
+    pub(super) fn parts(&self) -> Vec<(&'static str, Value)> {
+        let last = self.lines.iter().next_back().map_or(0, |line| match line {
+            Line::Step(step) => step.number,
+            Line::Hidden(hidden) => hidden.last,
+        });
+        vec![("steps", Value::Number(last as f64)), ("hidden", Value::Number(self.hidden() as f64))]
     }
 
     /// Steps that are not shown.
@@ -217,7 +236,7 @@ fn leaves(steps: &[&Rc<Node>], value: &Rc<Node>) -> Vec<Rc<Node>> {
         }
     };
     for step in steps {
-        step.inputs().iter().for_each(|(input, _)| enter(input));
+        step.inputs().iter().for_each(|(input, _)| enter(through_condition(input)));
         if let Some(call) = step.step() {
             call.arguments().iter().for_each(&mut enter);
         }
@@ -299,14 +318,15 @@ fn step(
     symbols_at: &mut BTreeMap<&'static str, usize>,
 ) -> Step {
     let inputs = || node.inputs().iter().map(|(input, _)| input);
+    let made_here = Quantity::of_node(Rc::clone(node));
     let (made, figures) = match node.origin() {
         Origin::Operator(operator) => {
             let names: Vec<String> = inputs().map(|input| numbers.name(input)).collect();
-            (Made::Arithmetic(review::operation(*operator, &names)), review::arithmetic(node, *operator))
+            (Made::Arithmetic(check_line::arithmetic(operator, &names)), check_line::step_line(&made_here))
         }
         Origin::Folded(folded) => (Made::Folded { folded: *folded, from: numbers.names(inputs()) }, String::new()),
         Origin::Input(_) | Origin::Step(_) => {
-            let figures = review::own_line(cx, node, sources).unwrap_or_default();
+            let figures = check_line::own_line(cx, node, sources).unwrap_or_else(|| check_line::step_line(&made_here));
             (formula(number, node, numbers, sources, symbols_at), figures)
         }
     };
@@ -314,7 +334,7 @@ fn step(
         number,
         made,
         figures,
-        value: shown(&Quantity::of_node(Rc::clone(node))),
+        value: shown(&made_here),
         place: node.place().map(place_words),
         taken_for: node.bound().map(|entity| entity.name().to_owned()),
     }
@@ -370,12 +390,13 @@ fn written(value: &Value, numbers: &Numbers) -> String {
         Value::Flag(flag) => flag.to_string(),
         Value::Text(text) => text.to_string(),
         Value::Reaction(reaction) => reaction.text().to_owned(),
+        Value::Substance(substance) => substance.text().to_owned(),
         Value::List(list) => list.iter().map(|item| written(item, numbers)).collect::<Vec<_>>().join(", "),
         Value::Options(options) => {
             let option = |(name, value): (&String, &Value)| format!("{name}: {}", written(value, numbers));
             options.iter().map(option).collect::<Vec<_>>().join(", ")
         }
-        Value::Account(_) | Value::Other(_) | Value::Nothing => String::new(),
+        Value::Answer(_) | Value::Other(_) | Value::Nothing => String::new(),
     }
 }
 
@@ -403,7 +424,7 @@ pub static DERIVATION: Card = Card {
             return Err(DerivationError::Lines { most }.into());
         }
         let derivation = Derivation::of(cx, call.quantity(0), most as usize);
-        Ok(Value::Account(Account::Derivation(Rc::new(derivation))))
+        Ok(Value::Answer(Answer::Derivation(Rc::new(derivation))))
     },
     check_line: None,
 };

@@ -10,12 +10,14 @@ use thiserror::Error;
 
 use crate::data::catalog::Catalog;
 use crate::data::dataset::{Dataset, DatasetId};
+use crate::data::formation;
 use crate::data::function::Function;
 use crate::data::substance::Substance;
 use crate::fault::{Explain, Fault};
 use crate::model::function::{self, T_REFERENCE};
-use crate::model::reaction::{Reaction, Term};
+use crate::model::terms::{Term, Terms};
 use crate::num::math;
+use crate::record::evaluation::Evaluation;
 use crate::record::node::{Input, LeafKey};
 use crate::source::Citation;
 
@@ -36,6 +38,17 @@ pub enum HeatCapacity {
 
 impl HeatCapacity {
     pub const WORDS: &'static [&'static str] = &["full", "constant", "midpoint", "mean"];
+
+    /// How Cp was taken, for the register.
+    pub fn words(self) -> &'static str {
+        match self {
+            HeatCapacity::Full => "integrated",
+            HeatCapacity::Constant => "held at its value at 298.15 K",
+            HeatCapacity::Midpoint => "held at its value half-way",
+            HeatCapacity::Mean => "held at the mean of both ends",
+            HeatCapacity::Neglected => "neglected",
+        }
+    }
 
     pub fn from_word(word: &str) -> HeatCapacity {
         match word {
@@ -179,7 +192,7 @@ fn dataset_named(word: &str, data: &Catalog) -> Result<DatasetId, GatherError> {
 }
 
 /// The formation datasets that have every species of the reaction, by precedence.
-pub fn covering(reaction: &Reaction, data: &Catalog) -> Vec<DatasetId> {
+pub fn covering(reaction: &Terms, data: &Catalog) -> Vec<DatasetId> {
     let has_all =
         |id: &DatasetId| reaction.terms().iter().all(|term| formation_of(&term.substance, id, data).is_some());
     formation_datasets(data).map(|dataset| dataset.id.clone()).filter(has_all).collect()
@@ -189,7 +202,7 @@ pub fn covering(reaction: &Reaction, data: &Catalog) -> Vec<DatasetId> {
 ///
 /// # Errors
 /// The dataset asked for lacks a species, or none has all.
-pub fn datasets_for(reaction: &Reaction, formation: &Formation, data: &Catalog) -> Result<Vec<DatasetId>, GatherError> {
+pub fn datasets_for(reaction: &Terms, formation: &Formation, data: &Catalog) -> Result<Vec<DatasetId>, GatherError> {
     let terms = reaction.terms();
     match formation {
         Formation::Of(id) => {
@@ -219,7 +232,7 @@ pub fn datasets_for(reaction: &Reaction, formation: &Formation, data: &Catalog) 
     }
 }
 
-fn missing_words(reaction: &Reaction, data: &Catalog) -> String {
+fn missing_words(reaction: &Terms, data: &Catalog) -> String {
     let lacks: Vec<String> = formation_datasets(data)
         .map(|dataset| {
             let missing: Vec<&str> = (reaction.terms().iter())
@@ -246,29 +259,38 @@ pub(crate) fn formation_of(substance: &Arc<Substance>, dataset: &DatasetId, data
 }
 
 fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<Figure> {
-    let key =
-        LeafKey::Datum { dataset: dataset.shared(), record: substance.species.id.clone(), field: FORMATION, t_bits: 0 };
+    let key = LeafKey::Datum {
+        dataset: dataset.shared(),
+        record: substance.species.id.clone(),
+        field: FORMATION,
+        t_bits: 0,
+        way: "",
+    };
     if let Some(record) = substance.formation(dataset) {
         let digit = if record.dhf.is_convention() { None } else { Some(record.dhf.last_place()) };
-        let input = Input { key, u: record.dhf.u, digit, label: None, citation: Some(record.citation.clone()) };
-        return Some(Figure { si: record.dhf.value, input, printed: Some(record.dhf.printed.clone()) });
+        let evaluation = Evaluation { correlation: record.correlation.clone(), ..Evaluation::UNSTATED };
+        let citation = Some(record.citation.clone());
+        let input = Input { u: record.dhf.u, evaluated: evaluation.kept(), digit, citation, ..Input::of(key) };
+        // A figure that its table prints in J/mol would stand beside others in kJ/mol.
+        let printed = (record.dhf.unit == "kJ/mol").then(|| record.dhf.printed.clone());
+        return Some(Figure { si: record.dhf.value, input, printed });
     }
     let function = substance.function.as_ref()?;
     if function.is_reference_element && function.dhf_298 == 0.0 {
         let citation = Citation::new("convention: an element in its reference state", "");
-        let input = Input { key, u: Some(0.0), digit: None, label: None, citation: Some(citation) };
+        let input = Input { u: Some(0.0), citation: Some(citation), ..Input::of(key) };
         return Some(Figure { si: 0.0, input, printed: Some("0".into()) });
     }
     if function.dataset != *dataset {
         return None;
     }
     // The report prints formation enthalpies in J/mol to three decimals; that is not what they are good for.
-    let input = Input { key, u: None, digit: Some(1.0), label: None, citation: Some(function.citation.clone()) };
+    let input = Input { digit: Some(1.0), citation: Some(function.citation.clone()), ..Input::of(key) };
     Some(Figure { si: function.dhf_298, input, printed: None })
 }
 
 /// Names of the fields that leaves are told apart by, singular, as in "formation enthalpy of CO2(g)".
-pub const FORMATION: &str = "formation enthalpy";
+pub const FORMATION: &str = formation::FIELD;
 pub const HEAT_CAPACITY: &str = "heat capacity";
 pub const ENTROPY: &str = "entropy";
 
@@ -276,12 +298,7 @@ pub const ENTROPY: &str = "entropy";
 ///
 /// # Errors
 /// A figure is missing, or `t_k` is outside a record's range.
-pub fn contributions(
-    reaction: &Reaction,
-    t_k: f64,
-    method: &Method,
-    data: &Catalog,
-) -> Result<Vec<Contribution>, Fault> {
+pub fn contributions(reaction: &Terms, t_k: f64, method: &Method, data: &Catalog) -> Result<Vec<Contribution>, Fault> {
     let datasets = datasets_for(reaction, &method.formation, data)?;
     let mut all = Vec::with_capacity(reaction.terms().len());
     for (term, dataset) in reaction.terms().iter().zip(&datasets) {
@@ -323,78 +340,103 @@ pub(crate) fn contribution(
         return Err(GatherError::Range { species: species(), t_k, t_min, t_max }.into());
     }
     let at_t = function::evaluate(function, t_k);
-    let figure = |si: f64, field: &'static str, digit: f64| Figure {
-        si,
+    let figure = |taken: &Drawn, field: &'static str, digit: f64| Figure {
+        si: taken.si,
         input: Input {
-            key: LeafKey::Datum {
+            digit: Some(digit),
+            citation: Some(function.citation.clone()),
+            ..Input::of(LeafKey::Datum {
                 dataset: function.dataset.shared(),
                 record: substance.species.id.clone(),
                 field,
-                t_bits: t_k.to_bits(),
-            },
-            u: None,
-            digit: Some(digit),
-            label: None,
-            citation: Some(function.citation.clone()),
+                t_bits: taken.t_k.to_bits(),
+                way: taken.way,
+            })
         },
         printed: None,
     };
     // A phase that does not reach 298.15 K continues the enthalpy scale of another, whose formation enthalpy it is joined to.
+    // Where that scale stands at 298.15 K the function says, which may be off the printed figure by 1 J/mol (Hg by 0.5): the
+    // other phase is counted from there too, and only so do the two meet at their transition.
     let joined = if function.covers(T_REFERENCE) { None } else { data.reference_phase(substance) };
-    let dhf_298 = joined.as_ref().and_then(|phase| phase.function.as_ref()).map_or(function.dhf_298, |f| f.dhf_298);
-    let taken = between(function, dhf_298, t_k, at_t, mode);
+    let h_298 = joined
+        .as_ref()
+        .and_then(|phase| phase.function.as_ref())
+        .map_or(function.dhf_298, |f| function::evaluate(f, T_REFERENCE).h);
+    let taken = between(function, h_298, t_k, at_t, mode);
     // Table B and Appendix D of the source are good to 1 J/mol and 0.001 J/(mol K); fewer digits are defensible, none are stated.
     let increment =
-        (t_k != T_REFERENCE || !function.covers(T_REFERENCE)).then(|| figure(taken.increment, HEAT_CAPACITY, 1.0));
+        (t_k != T_REFERENCE || !function.covers(T_REFERENCE)).then(|| figure(&taken.increment, HEAT_CAPACITY, 1.0));
     Ok(Contribution {
         nu: term.nu,
         formation,
         increment,
-        entropy: Some(figure(taken.entropy, ENTROPY, 0.001)),
-        cp: Some(figure(taken.cp, HEAT_CAPACITY, 0.001)),
+        entropy: Some(figure(&taken.entropy, ENTROPY, 0.001)),
+        cp: Some(figure(&taken.cp, HEAT_CAPACITY, 0.001)),
         slopes: taken.slopes,
     })
 }
 
+/// A figure drawn from a function: at which temperature, and in which way where there are several.
+struct Drawn {
+    si: f64,
+    t_k: f64,
+    way: &'static str,
+}
+
 struct Taken {
-    increment: f64,
-    entropy: f64,
-    cp: f64,
+    increment: Drawn,
+    entropy: Drawn,
+    cp: Drawn,
     slopes: Slopes,
 }
+
+const INTEGRATED: &str = "integrated from 298.15 K";
 
 /// Increment and entropy between 298.15 K and T, as the method takes the heat capacity.
 ///
 /// A phase that does not reach down to 298.15 K has no heat capacity there, and is always integrated: its enthalpy scale
 /// continues that of the phase it forms from.
-fn between(function: &Function, dhf_298: f64, t_k: f64, at_t: function::Functions, mode: HeatCapacity) -> Taken {
+fn between(function: &Function, h_298: f64, t_k: f64, at_t: function::Functions, mode: HeatCapacity) -> Taken {
     let slope = function::cp_slope(function, t_k);
+    let integrated = |h_298: f64| Taken {
+        increment: Drawn { si: at_t.h - h_298, t_k, way: INTEGRATED },
+        entropy: Drawn { si: at_t.s, t_k, way: "" },
+        cp: Drawn { si: at_t.cp, t_k, way: "" },
+        slopes: Slopes { increment: at_t.cp, entropy: at_t.cp / t_k, cp: slope },
+    };
     if !function.covers(T_REFERENCE) {
-        let slopes = Slopes { increment: at_t.cp, entropy: at_t.cp / t_k, cp: slope };
-        return Taken { increment: at_t.h - dhf_298, entropy: at_t.s, cp: at_t.cp, slopes };
+        return integrated(h_298);
     }
     let at_0 = function::evaluate(function, T_REFERENCE);
     let (span, ln_ratio) = (t_k - T_REFERENCE, math::ln(t_k / T_REFERENCE));
-    let flat = |cp: f64, cp_slope: f64| Taken {
-        increment: cp * span,
-        entropy: at_0.s + cp * ln_ratio,
+    let flat = |cp: Drawn, cp_slope: f64, way: &'static str| Taken {
+        increment: Drawn { si: cp.si * span, t_k, way },
+        entropy: Drawn { si: at_0.s + cp.si * ln_ratio, t_k, way },
+        slopes: Slopes { increment: cp.si + cp_slope * span, entropy: cp.si / t_k + cp_slope * ln_ratio, cp: cp_slope },
         cp,
-        slopes: Slopes { increment: cp + cp_slope * span, entropy: cp / t_k + cp_slope * ln_ratio, cp: cp_slope },
     };
     match mode {
-        HeatCapacity::Full => Taken {
-            increment: at_t.h - at_0.h,
-            entropy: at_t.s,
-            cp: at_t.cp,
-            slopes: Slopes { increment: at_t.cp, entropy: at_t.cp / t_k, cp: slope },
-        },
-        HeatCapacity::Constant => flat(at_0.cp, 0.0),
+        HeatCapacity::Full => integrated(at_0.h),
+        HeatCapacity::Constant => {
+            let cp = Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" };
+            flat(cp, 0.0, "Cp held at its value at 298.15 K")
+        }
         HeatCapacity::Midpoint => {
             let middle = 0.5 * (t_k + T_REFERENCE);
-            flat(function::evaluate(function, middle).cp, 0.5 * function::cp_slope(function, middle))
+            let cp = Drawn { si: function::evaluate(function, middle).cp, t_k: middle, way: "" };
+            flat(cp, 0.5 * function::cp_slope(function, middle), "Cp held at its value half-way")
         }
-        HeatCapacity::Mean => flat(0.5 * (at_0.cp + at_t.cp), 0.5 * slope),
-        HeatCapacity::Neglected => Taken { increment: 0.0, entropy: at_0.s, cp: at_0.cp, slopes: Slopes::default() },
+        HeatCapacity::Mean => {
+            let cp = Drawn { si: 0.5 * (at_0.cp + at_t.cp), t_k, way: "mean of it and the one at 298.15 K" };
+            flat(cp, 0.5 * slope, "Cp held at the mean of both ends")
+        }
+        HeatCapacity::Neglected => Taken {
+            increment: Drawn { si: 0.0, t_k, way: "neglected" },
+            entropy: Drawn { si: at_0.s, t_k: T_REFERENCE, way: "" },
+            cp: Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" },
+            slopes: Slopes::default(),
+        },
     }
 }
 
@@ -408,14 +450,68 @@ fn tabulated_entropy(substance: &Substance) -> Option<Figure> {
         record: substance.species.id.clone(),
         field: ENTROPY,
         t_bits: 0,
+        way: "",
     };
-    let input = Input { key, u: datum.u, digit, label: None, citation: Some(record.citation.clone()) };
+    let input = Input { u: datum.u, digit, citation: Some(record.citation.clone()), ..Input::of(key) };
     Some(Figure { si: datum.value, input, printed: Some(datum.printed.clone()) })
 }
 
 #[cfg(test)]
 mod tests {
+    use std::rc::Rc;
+
+    use smallvec::SmallVec;
+
     use super::*;
+    use crate::model::reaction::Reaction;
+    use crate::record::node::{Node, Operator, Origin};
+    use crate::record::spread::{Spread, spread};
+    use crate::source::Embedded;
+    use crate::units::{Dimension, Kind};
+
+    /// Two gases with invented figures, u = 0.3 and 0.4 kJ/mol, correlated by `r`.
+    fn invented(r: &str) -> Result<Catalog, crate::data::dataset::TableFault> {
+        let record = |id: &str, formula: &str, value: &str, u: &str| {
+            format!(
+                r#"{{"id": "{id}", "formula": "{formula}", "dhf_298": {{"value": "{value}", "u": "{u}"}},
+                "source": "invented for this test", "obtained": "", "confirmation": "single source"}}"#
+            )
+        };
+        let text = format!(
+            r#"{{"schema": "hessbook-formation/1", "dataset": {{"id": "invented", "short": "invented",
+            "publication": "none", "terms": "none", "uncertainty": "standard", "divisor": 1, "rank": 1}},
+            "title": "invented", "p_standard_pa": 100000, "records": [{}, {}],
+            "dhf_298_correlations": [{{"records": ["CO(g)", "CO2(g)"], "r": {r}}}]}}"#,
+            record("CO(g)", "CO", "-110.0", "0.3"),
+            record("CO2(g)", "CO2", "-390.0", "0.4"),
+        );
+        let file = Embedded { path: "invented.json", bytes: text.leak().as_bytes(), sha256: "" };
+        Catalog::from_files(&[file])
+    }
+
+    #[test]
+    fn correlation_that_a_table_gives_reaches_the_uncertainty() {
+        let data = invented("[[1, 0.5], [0.5, 1]]").unwrap();
+        let leaf = |id: &str| {
+            let figure = formation_of(&data.find(id).unwrap(), &DatasetId::new("invented"), &data).unwrap();
+            let origin = Origin::Input(figure.input);
+            Rc::new(Node::new(figure.si, Dimension::none(), Kind::PLAIN, SmallVec::new(), origin, None))
+        };
+        let inputs = SmallVec::from_vec(vec![(leaf("CO2(g)"), 1.0), (leaf("CO(g)"), -1.0)]);
+        let origin = Origin::Operator(Operator::Subtract);
+        let gap = Rc::new(Node::new(-280e3, Dimension::none(), Kind::PLAIN, inputs, origin, None));
+        // 0.3² + 0.4² − 2·0.5·0.12 in (kJ/mol)²
+        let Spread::Full(u) = spread(&gap) else { panic!("both state their u") };
+        assert!((u - 1000.0 * f64::sqrt(0.13)).abs() < 1e-9, "{u}");
+    }
+
+    #[test]
+    fn coefficients_that_cannot_be_are_refused_with_the_table() {
+        for r in ["[[1, 0.5], [0.4, 1]]", "[[1, 2], [2, 1]]", "[[1, 0.5]]"] {
+            let message = invented(r).unwrap_err().to_string();
+            assert!(message.contains("invented.json"), "{message}");
+        }
+    }
 
     #[test]
     fn a_phase_below_298_k_is_joined_to_the_phase_it_melts_into() {
@@ -428,6 +524,21 @@ mod tests {
             // Heat of melting of ice at 273.15 K, 6.0067 kJ/mol: IAPWS-95 and IAPWS R10-06, computed from the published
             // formulations. Bound: the two functions of the report meet there with 6.0099 kJ/mol, 3.2 J/mol more.
             assert!((h - 6006.7).abs() < 3.5, "{formation}: {h} J/mol");
+        }
+    }
+    #[test]
+    fn phases_meet_at_their_transition_as_their_functions_do() {
+        let data = Catalog::shipped();
+        for (equation, t_k) in
+            [("Hg(cr) -> Hg(l)", 234.29), ("H2O(cr,ice-ih) -> H2O(l)", 273.15), ("Fe(cr,delta) -> Fe(l)", 1809.0)]
+        {
+            let reaction = Reaction::read(equation, &data).unwrap();
+            let all = contributions(&reaction, t_k, &Method::from_words(None, None, &data).unwrap(), &data).unwrap();
+            let h: f64 = all.iter().map(|c| c.nu * (c.formation.si + c.increment.as_ref().unwrap().si)).sum();
+            let of = |term: &Term| term.nu * function::evaluate(term.substance.function.as_ref().unwrap(), t_k).h;
+            let direct: f64 = reaction.terms().iter().map(of).sum();
+            // The same functions summed in another order: rounding at 3e5 J/mol, of terms that reach 1e9 J/mol in water.
+            assert!((h - direct).abs() < 1e-6, "{equation}: {h} and {direct} J/mol");
         }
     }
 }

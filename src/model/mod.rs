@@ -2,21 +2,33 @@
 //!
 //! [`CARDS`] is the one list of what the program can compute. Script binding, help, catalogue and checks read it.
 
-pub mod account;
+pub mod answer;
 pub mod basis;
+pub mod budget;
 pub mod card;
+pub mod check_line;
 pub mod claims;
 pub mod compare;
 pub mod conditions;
 pub mod derivation;
+pub mod expanded;
 pub mod function;
 pub mod gap;
 pub mod gather;
+pub mod linearity;
+pub mod mass;
+pub mod monte_carlo;
 pub mod property;
+pub mod property_card;
 pub mod quantities;
 pub mod reaction;
+pub mod readings;
+pub mod refusal;
+pub mod remedy;
 pub mod review;
+pub mod substance;
 pub mod symbols;
+pub mod terms;
 pub mod tolerance;
 
 use card::Card;
@@ -25,20 +37,43 @@ use card::Card;
 pub const CARDS: &[&Card] = &[
     &reaction::REACTION,
     &reaction::BALANCE,
-    &property::ENTHALPY,
-    &property::INTERNAL_ENERGY,
-    &property::GIBBS_ENERGY,
-    &property::HELMHOLTZ_ENERGY,
-    &property::ENTROPY,
-    &property::HEAT_CAPACITY,
-    &property::EQUILIBRIUM_CONSTANT,
+    &substance::SUBSTANCE,
+    &substance::SUBSTANCES,
+    &property_card::ENTHALPY,
+    &property_card::INTERNAL_ENERGY,
+    &property_card::GIBBS_ENERGY,
+    &property_card::HELMHOLTZ_ENERGY,
+    &property_card::ENTROPY,
+    &property_card::HEAT_CAPACITY,
+    &property_card::EQUILIBRIUM_CONSTANT,
+    &property_card::SUBSTANCE_ENTHALPY,
+    &property_card::SUBSTANCE_INTERNAL_ENERGY,
+    &property_card::SUBSTANCE_GIBBS_ENERGY,
+    &property_card::SUBSTANCE_HELMHOLTZ_ENERGY,
+    &property_card::SUBSTANCE_ENTROPY,
+    &property_card::SUBSTANCE_HEAT_CAPACITY,
+    &substance::ENTHALPY_INCREMENT,
+    &substance::REACTION_INCREMENT,
+    &remedy::CORRECTED,
+    &remedy::WIDENED,
     &basis::PER,
+    &mass::PER_MASS,
+    &mass::PER_MOLE,
+    &mass::PER_KG_OF,
+    &mass::WAVENUMBER_ENERGY,
+    &mass::MOLAR_MASS,
     &quantities::MEAN,
     &quantities::TO,
     &quantities::VALUE,
     &quantities::UNCERTAINTY,
     &quantities::AGREES,
     &quantities::ASSUME,
+    &readings::READINGS,
+    &readings::CORRELATION,
+    &budget::BUDGET,
+    &expanded::EXPANDED,
+    &monte_carlo::MONTE_CARLO,
+    &linearity::TESTED,
     &derivation::DERIVATION,
     &compare::COMPARE,
     &gap::EXPLAIN_GAP,

@@ -3,6 +3,7 @@
 //! Made from an equation as written; Δn(gas) is derived and never typed. The surprise: a substance is one phase here, and
 //! a name without a phase is refused, since the phase is worth tens of kJ/mol.
 
+use std::ops::Deref;
 use std::rc::Rc;
 use std::sync::Arc;
 
@@ -12,18 +13,13 @@ use crate::data::catalog::Catalog;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Arg, Card, Default, On, Takes, Value};
+use crate::model::terms::{Term, Terms};
+use crate::units::Entity;
 
-/// A reaction as written.
+/// A reaction as written: its terms, per mole of reaction.
 pub struct Reaction {
     equation: Equation,
-    terms: Vec<Term>,
-}
-
-/// One species with its stoichiometric number, positive for products.
-#[derive(Clone)]
-pub struct Term {
-    pub substance: Arc<Substance>,
-    pub nu: f64,
+    terms: Terms,
 }
 
 impl Reaction {
@@ -37,30 +33,37 @@ impl Reaction {
         for (species, nu) in equation.terms() {
             terms.push(Term { substance: data.find(&species.id)?, nu: nu.to_f64() });
         }
+        let terms = Terms::new(terms, Entity::RXN, equation.to_string());
         Ok(Reaction { equation, terms })
     }
 
-    pub fn terms(&self) -> &[Term] {
-        &self.terms
-    }
-
-    /// The equation in a form that reads back.
-    pub fn text(&self) -> &str {
-        self.equation.text()
+    /// The reaction with one species in another phase. Where the reaction already has that phase, the two add up, and
+    /// where they cancel, nothing is left of them.
+    ///
+    /// # Errors
+    /// The catalogue does not have the species.
+    pub fn with(&self, id: &str, instead: &Arc<Substance>, data: &Catalog) -> Result<Reaction, Fault> {
+        let side = |products: bool| {
+            let terms = self.equation.terms().iter().filter(|(_, nu)| nu.is_positive() == products);
+            let named = terms.map(|(species, nu)| {
+                let name = if *species.id == *id { instead.id() } else { &species.id };
+                format!("{} {name}", nu.abs())
+            });
+            named.collect::<Vec<_>>().join(" + ")
+        };
+        Reaction::read(&format!("{} -> {}", side(false), side(true)), data)
     }
 
     pub fn equation(&self) -> &Equation {
         &self.equation
     }
+}
 
-    /// Sum of the stoichiometric numbers of the gases.
-    pub fn delta_n_gas(&self) -> f64 {
-        self.equation.delta_n_gas().to_f64()
-    }
+impl Deref for Reaction {
+    type Target = Terms;
 
-    /// The largest stoichiometric number by size: the scale of a tolerance.
-    pub fn largest_nu(&self) -> f64 {
-        self.equation.largest_nu_f64()
+    fn deref(&self) -> &Terms {
+        &self.terms
     }
 }
 

@@ -41,6 +41,7 @@ const INCREMENT: Symbol = symbol(
 );
 const ENTROPY: Symbol =
     symbol("S°", r"S^\circ", "J/(K mol)", "third-law entropies without nuclear spin, closed-form integrals of Cp/T");
+const CAPACITY: Symbol = symbol("Cp°", r"C_p^\circ", "J/(K mol)", "heat capacities at constant pressure");
 const TEMPERATURE: Symbol = symbol("T", "T", "K", "temperature");
 const DELTA_N: Symbol = symbol("Δn(gas)", r"\Delta n(\mathrm{gas})", "1", "sum of ν of the gases");
 const GAS_CONSTANT: Symbol = symbol("R", "R", "J/(K mol)", "gas constant of the constant set in force");
@@ -73,13 +74,36 @@ static REACTION_ENTROPY: Formula = Formula {
 static HEAT_CAPACITY: Formula = Formula {
     text: "ΔrCp°(T) = Σ ν Cp°(T)",
     latex: r"\Delta_\mathrm{r}C_p^\circ(T)=\sum\nu\,C_p^\circ(T)",
-    symbols: &[NU, symbol("Cp°", r"C_p^\circ", "J/(K mol)", "heat capacities at constant pressure"), TEMPERATURE],
+    symbols: &[NU, CAPACITY, TEMPERATURE],
 };
 static EQUILIBRIUM_CONSTANT: Formula = Formula {
     text: "K°(T) = exp(-ΔrG°(T)/(R T))",
     latex: r"K^\circ(T)=\exp\!\left(-\frac{\Delta_\mathrm{r}G^\circ(T)}{RT}\right)",
     symbols: &[NU, FORMATION, INCREMENT, ENTROPY, GAS_CONSTANT, TEMPERATURE],
 };
+static SUBSTANCE_ENTHALPY: Formula = Formula {
+    text: "H°(T) = ΔfH°(298.15 K) + H(T) - H(298.15 K)",
+    latex: r"H^\circ(T)=\Delta_\mathrm{f}H^\circ(298.15\,\mathrm{K})+H(T)-H(298.15\,\mathrm{K})",
+    symbols: &[FORMATION, INCREMENT, TEMPERATURE],
+};
+static SUBSTANCE_INTERNAL_ENERGY: Formula = Formula {
+    text: "U°(T) = H°(T) - R T for a gas",
+    latex: r"U^\circ(T)=H^\circ(T)-RT\ \text{for a gas}",
+    symbols: &[FORMATION, INCREMENT, GAS_CONSTANT, TEMPERATURE],
+};
+static SUBSTANCE_GIBBS_ENERGY: Formula = Formula {
+    text: "G°(T) = H°(T) - T S°(T)",
+    latex: r"G^\circ(T)=H^\circ(T)-T\,S^\circ(T)",
+    symbols: &[FORMATION, INCREMENT, ENTROPY, TEMPERATURE],
+};
+static SUBSTANCE_HELMHOLTZ_ENERGY: Formula = Formula {
+    text: "A°(T) = G°(T) - R T for a gas",
+    latex: r"A^\circ(T)=G^\circ(T)-RT\ \text{for a gas}",
+    symbols: &[FORMATION, INCREMENT, ENTROPY, GAS_CONSTANT, TEMPERATURE],
+};
+static SUBSTANCE_ENTROPY: Formula = Formula { text: "S°(T)", latex: r"S^\circ(T)", symbols: &[ENTROPY, TEMPERATURE] };
+static SUBSTANCE_HEAT_CAPACITY: Formula =
+    Formula { text: "Cp°(T)", latex: r"C_p^\circ(T)", symbols: &[CAPACITY, TEMPERATURE] };
 static PER: Formula = Formula {
     text: "x per mole of X = x / |ν(X)|",
     latex: r"x_\mathrm{X}=x/|\nu(\mathrm{X})|",
@@ -98,6 +122,12 @@ static FORMULAS: &[(&str, &Formula)] = &[
     ("reaction.entropy", &REACTION_ENTROPY),
     ("reaction.heat-capacity", &HEAT_CAPACITY),
     ("reaction.equilibrium-constant", &EQUILIBRIUM_CONSTANT),
+    ("substance.enthalpy", &SUBSTANCE_ENTHALPY),
+    ("substance.internal-energy", &SUBSTANCE_INTERNAL_ENERGY),
+    ("substance.gibbs-energy", &SUBSTANCE_GIBBS_ENERGY),
+    ("substance.helmholtz-energy", &SUBSTANCE_HELMHOLTZ_ENERGY),
+    ("substance.entropy", &SUBSTANCE_ENTROPY),
+    ("substance.heat-capacity", &SUBSTANCE_HEAT_CAPACITY),
     ("quantity.per", &PER),
 ];
 
@@ -110,7 +140,7 @@ pub fn of(card: &Card) -> Option<&'static Formula> {
 mod tests {
     use super::*;
     use crate::model::CARDS;
-    use crate::model::card::On;
+    use crate::model::property::Property;
 
     #[test]
     fn every_equation_belongs_to_a_card_and_every_property_of_a_reaction_has_one() {
@@ -118,7 +148,7 @@ mod tests {
             assert!(CARDS.iter().any(|card| card.id == *id), "{id} is no card");
             assert!(formula.symbols.iter().all(|s| !s.meaning.is_empty() && !s.unit.is_empty()), "{id}");
         }
-        for card in CARDS.iter().filter(|card| card.on == On::Reaction) {
+        for card in CARDS.iter().filter(|card| Property::of(card).is_some()) {
             assert!(of(card).is_some(), "{} has no equation", card.id);
         }
     }

@@ -49,7 +49,7 @@ impl Quantity {
         let (verb, operator, sign) =
             if minus { ("subtract", Operator::Subtract, -1.0) } else { ("add", Operator::Add, 1.0) };
         let meeting = meet(verb, self.dim(), other.dim())?;
-        let kind = Kind::sum(self.kind(), other.kind(), minus, &meeting.dim, (self.si(), other.si()))?;
+        let kind = Kind::sum(self.kind(), other.kind(), minus, (self.si(), other.si()))?;
         let inputs = smallvec![(Rc::clone(self.node()), 1.0), (Rc::clone(other.node()), sign)];
         // A difference of two points in degC is shown in K: the unit of a point would be refused.
         let unit = self.written_unit().or(other.written_unit());
@@ -61,7 +61,7 @@ impl Quantity {
 
     pub fn times(&self, other: &Quantity, place: Option<Place>) -> Result<Quantity, Mismatch> {
         let dim = self.dim().times(other.dim());
-        let kind = Kind::product((self.kind(), self.dim()), (other.kind(), other.dim()), &dim);
+        let kind = Kind::product((self.kind(), self.dim()), (other.kind(), other.dim()), &dim, (self.si(), other.si()));
         let inputs = smallvec![(Rc::clone(self.node()), other.si()), (Rc::clone(other.node()), self.si())];
         let unit = carried(self, &dim).or_else(|| carried(other, &dim));
         Ok(combine(Operator::Multiply, inputs, dim, kind, place, None)?.in_unit(unit))
@@ -85,9 +85,48 @@ impl Quantity {
     /// Times a bare number.
     pub fn scaled(&self, factor: f64, place: Option<Place>) -> Result<Quantity, Mismatch> {
         let number = (&Kind::PLAIN, &Dimension::none());
-        let kind = Kind::product((self.kind(), self.dim()), number, self.dim());
+        let kind = Kind::product((self.kind(), self.dim()), number, self.dim(), (self.si(), 1.0));
         let unit = carried(self, self.dim());
         Ok(self.unary(Operator::Scale(factor), factor, self.dim().clone(), kind, place)?.in_unit(unit))
+    }
+
+    /// Divided by a bare number.
+    pub fn divided(&self, divisor: f64, place: Option<Place>) -> Result<Quantity, Mismatch> {
+        let number = (&Kind::PLAIN, &Dimension::none());
+        let kind = Kind::product((self.kind(), self.dim()), number, self.dim(), (self.si(), 1.0));
+        let unit = carried(self, self.dim());
+        let made = self.unary(Operator::DivideBy(divisor), 1.0 / divisor, self.dim().clone(), kind, place)?;
+        Ok(made.in_unit(unit))
+    }
+
+    /// To the power of another value, both pure numbers; an exponent that is exact may have any base that `power` takes.
+    pub fn power_of(&self, exponent: &Quantity, place: Option<Place>) -> Result<Quantity, Mismatch> {
+        let (a, b) = (self.si(), exponent.si());
+        if !exponent.dim().is_none() {
+            return Err(Mismatch::NotPure { function: "an exponent", dim: exponent.dim().clone() });
+        }
+        if exponent.sensitivities().is_empty() {
+            return self.power(b, place);
+        }
+        if !self.dim().is_none() {
+            return Err(Mismatch::Exponent { exponent: b, dim: self.dim().clone() });
+        }
+        if a <= 0.0 {
+            return Err(Mismatch::NotPositive { function: "an uncertain power", number: a });
+        }
+        let power = math::pow(a, b);
+        let inputs = smallvec![
+            (Rc::clone(self.node()), b * math::pow(a, b - 1.0)),
+            (Rc::clone(exponent.node()), power * math::ln(a)),
+        ];
+        combine(Operator::PowerOf, inputs, Dimension::none(), Kind::PLAIN, place, None)
+    }
+
+    /// The same value with its open moles made moles of `entity`, and the node remembers it.
+    pub(crate) fn bound(&self, entity: Entity, place: Option<Place>) -> Result<Quantity, Mismatch> {
+        let dim = self.dim().bind(entity);
+        let inputs = smallvec![(Rc::clone(self.node()), 1.0)];
+        combine(Operator::Scale(1.0), inputs, dim, self.kind().clone(), place, Some(entity))
     }
 
     /// Plus a bare number; the value must be a pure number.
@@ -123,16 +162,32 @@ impl Quantity {
     }
 
     pub fn exp(&self, place: Option<Place>) -> Result<Quantity, Mismatch> {
-        self.pure("exp")?;
-        self.unary(Operator::Exp, math::exp(self.si()), Dimension::none(), Kind::PLAIN, place)
+        let of = self.pure("exp")?;
+        of.unary(Operator::Exp, math::exp(self.si()), Dimension::none(), Kind::PLAIN, place)
     }
 
     pub fn ln(&self, place: Option<Place>) -> Result<Quantity, Mismatch> {
-        self.pure("ln")?;
+        let of = self.pure("ln")?;
         if self.si() <= 0.0 {
             return Err(Mismatch::NotPositive { function: "ln", number: self.si() });
         }
-        self.unary(Operator::Ln, 1.0 / self.si(), Dimension::none(), Kind::PLAIN, place)
+        of.unary(Operator::Ln, 1.0 / self.si(), Dimension::none(), Kind::PLAIN, place)
+    }
+
+    pub fn sin(&self, place: Option<Place>) -> Result<Quantity, Mismatch> {
+        let of = self.pure("sin")?;
+        of.unary(Operator::Sin, math::cos(self.si()), Dimension::none(), Kind::PLAIN, place)
+    }
+
+    pub fn cos(&self, place: Option<Place>) -> Result<Quantity, Mismatch> {
+        let of = self.pure("cos")?;
+        of.unary(Operator::Cos, -math::sin(self.si()), Dimension::none(), Kind::PLAIN, place)
+    }
+
+    pub fn tan(&self, place: Option<Place>) -> Result<Quantity, Mismatch> {
+        let of = self.pure("tan")?;
+        let tangent = math::tan(self.si());
+        of.unary(Operator::Tan, 1.0 + tangent * tangent, Dimension::none(), Kind::PLAIN, place)
     }
 
     pub fn absolute(&self, place: Option<Place>) -> Result<Quantity, Mismatch> {
@@ -146,26 +201,37 @@ impl Quantity {
         let Some((first, rest)) = values.split_first() else { return Err(Mismatch::NotFinite) };
         let (mut dim, mut bound, mut kind) = (first.dim().clone(), None, first.kind().clone());
         for other in rest {
-            let meeting = meet("add", &dim, other.dim())?;
+            let meeting = meet("average", &dim, other.dim())?;
             (dim, bound) = (meeting.dim, meeting.bound.or(bound));
-            let both_points = kind.what == What::TemperaturePoint && other.kind().what.is_temperature();
-            kind =
-                if both_points { kind } else { Kind::sum(&kind, other.kind(), false, &dim, (first.si(), other.si()))? };
+            let other = other.kind();
+            kind = match (kind.what, other.what) {
+                (What::TemperaturePoint, What::TemperaturePoint | What::OpenTemperature) => kind,
+                (What::OpenTemperature, What::TemperaturePoint) => other.clone(),
+                _ => Kind::mean(&kind, other)?,
+            };
         }
         let weight = 1.0 / values.len() as f64;
         let inputs = values.iter().map(|value| (Rc::clone(value.node()), weight)).collect();
-        Ok(combine(Operator::Mean, inputs, dim, kind, place, bound)?.in_unit(first.written_unit().cloned()))
+        let unit = first.written_unit().filter(|unit| unit.dim == dim).cloned();
+        Ok(combine(Operator::Mean, inputs, dim, kind, place, bound)?.in_unit(unit))
     }
 
     /// Which is larger, for values of one dimension; by value alone.
     pub fn compared(&self, other: &Quantity) -> Result<std::cmp::Ordering, Mismatch> {
         meet("compare", self.dim(), other.dim())?;
-        Kind::sum(self.kind(), other.kind(), true, self.dim(), (self.si(), other.si()))?;
+        Kind::sum(self.kind(), other.kind(), true, (self.si(), other.si()))?;
         Ok(self.si().total_cmp(&other.si()))
     }
 
-    fn pure(&self, function: &'static str) -> Result<(), Mismatch> {
-        if self.dim().is_none() { Ok(()) } else { Err(Mismatch::NotPure { function, dim: self.dim().clone() }) }
+    /// The value as a pure number: as it is, or with an open mole bound to the one entity that makes it pure.
+    fn pure(&self, function: &'static str) -> Result<Quantity, Mismatch> {
+        if self.dim().is_none() {
+            return Ok(self.clone());
+        }
+        match self.dim().bindings_to(&Dimension::none()).as_slice() {
+            [entity] => self.bound(*entity, None),
+            _ => Err(Mismatch::NotPure { function, dim: self.dim().clone() }),
+        }
     }
 
     fn unary(
@@ -194,10 +260,15 @@ fn combine(
     bound: Option<Entity>,
 ) -> Result<Quantity, Mismatch> {
     let values: SmallVec<[f64; 4]> = inputs.iter().map(|(node, _)| node.si()).collect();
-    if inputs.iter().any(|(_, partial)| !partial.is_finite()) {
+    let value = operator.value(&values);
+    let underflows = value == 0.0 && matches!(operator, Operator::Exp | Operator::PowerOf);
+    if underflows || inputs.iter().any(|(_, partial)| !partial.is_finite()) {
         return Err(Mismatch::NotFinite);
     }
-    let node = Node::new(operator.value(&values), dim, kind, inputs, Origin::Operator(operator), place);
+    if dim.is_saturated() {
+        return Err(Mismatch::PowerTooHigh { dim });
+    }
+    let node = Node::new(value, dim, kind, inputs, Origin::Operator(operator), place);
     Quantity::from_node(node.with_bound(bound))
 }
 
@@ -233,6 +304,19 @@ mod tests {
         let by_a = (make(a + h, b).si() - make(a - h, b).si()) / (2.0 * h);
         let by_b = (make(a, b + h).si() - make(a, b - h).si()) / (2.0 * h);
         assert!((partials[0] - (by_a + by_b)).abs() < 1e-8 * by_a.abs(), "{partials:?} {by_a} {by_b}");
+    }
+
+    #[test]
+    fn slopes_of_the_functions_of_an_angle_agree_with_a_finite_difference() {
+        // Bound: h²/6 times the third derivative, which is below 150 here (that of the tangent), and rounding of order ε/h.
+        let h = 1e-5;
+        for function in [Quantity::sin, Quantity::cos, Quantity::tan] {
+            let at = |angle: f64| function(&q(&format!("{angle:.17}(1) rad")), None).unwrap();
+            let slope = (at(1.0456 + h).si() - at(1.0456 - h).si()) / (2.0 * h);
+            let partial = at(1.0456).sensitivities()[0].derivative;
+            assert!((partial - slope).abs() < 1e-8, "{partial} {slope}");
+        }
+        assert!(matches!(q("1 K").sin(None), Err(Mismatch::NotPure { function: "sin", .. })));
     }
 
     #[test]

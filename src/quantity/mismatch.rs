@@ -26,6 +26,8 @@ pub enum Mismatch {
     NotFinite,
     #[error("the exponent {exponent} gives {} no whole power of its units", unit_name(dim))]
     Exponent { exponent: f64, dim: Dimension },
+    #[error("the product's units have an exponent past any use, {}", dim)]
+    PowerTooHigh { dim: Dimension },
     #[error("{function} wants a pure number, not a value in {}", unit_name(dim))]
     NotPure { function: &'static str, dim: Dimension },
     #[error("{function} is taken of a positive number only, not of {number}")]
@@ -82,6 +84,7 @@ impl Explain for Mismatch {
             Mismatch::UnitText(unit) => unit.code(),
             Mismatch::NotFinite => "not-finite",
             Mismatch::Exponent { .. } => "exponent-not-whole",
+            Mismatch::PowerTooHigh { .. } => "power-too-high",
             Mismatch::NotPure { .. } => "not-a-pure-number",
             Mismatch::NotPositive { .. } => "not-positive",
             Mismatch::AgreementWithoutUncertainty => "agreement-without-uncertainty",
@@ -109,6 +112,7 @@ impl Explain for Mismatch {
             Mismatch::Exponent { .. } => {
                 "whole and half exponents keep their units, as in `x ** 2` and `x ** 0.5`".to_owned()
             }
+            Mismatch::PowerTooHigh { .. } => "divide before multiplying on".to_owned(),
             Mismatch::NotPure { function, dim } => {
                 let unit = unit_name(dim);
                 format!(
@@ -130,7 +134,7 @@ fn basis_hint(left: &Dimension, right: &Dimension) -> String {
         (Some(a), Some(b)) if b == Entity::RXN => (true, a),
         (Some(a), Some(b)) => {
             return format!(
-                "multiply one by the ratio of the two, `q(\"1 mol[{}]/mol[{}]\")` with the number that holds",
+                "multiply one by the ratio of the two, `exact(\"1 mol[{}]/mol[{}]\")` with the number that holds",
                 a.name(),
                 b.name()
             );
@@ -140,7 +144,7 @@ fn basis_hint(left: &Dimension, right: &Dimension) -> String {
     debug_assert!(reaction);
     let name = substance.name();
     format!(
-        "multiply the value per mole of {name} by its stoichiometric number, as in `x * q(\"1 mol[{name}]/mol[rxn]\")`, \
+        "multiply the value per mole of {name} by its stoichiometric number, as in `x * exact(\"1 mol[{name}]/mol[rxn]\")`, \
          or take the reaction value per mole of {name} with `.per(\"{name}\")`"
     )
 }

@@ -17,6 +17,11 @@ pub fn decimals_of_digit(digit: f64) -> i32 {
     -decade(digit * 1.000_000_1) // A digit of 0.01 may be 0.00999… after a unit factor.
 }
 
+/// Decimal places that show that many significant digits of a value.
+pub fn decimals_for_digits(value: f64, digits: i32) -> i32 {
+    if value == 0.0 { i32::MIN } else { digits - 1 - decade(value.abs()) }
+}
+
 /// Exponent of the leading digit.
 fn decade(x: f64) -> i32 {
     if x <= 0.0 || !x.is_finite() {
@@ -34,6 +39,11 @@ pub fn power_of_ten(exponent: i32) -> f64 {
 
 /// `value` with that many decimal places; negative places round to tens, hundreds.
 pub fn fixed(value: f64, decimals: i32) -> String {
+    // Figures that long are read by their power of ten, and digits past the seventeenth are noise.
+    if value != 0.0 && (decimals > 12 || decade(value.abs()) > 15) {
+        let digits = (decimals + decade(value.abs()) + 1).clamp(1, 17);
+        return format!("{value:.*e}", (digits - 1) as usize);
+    }
     let text = if decimals >= 0 {
         format!("{value:.*}", decimals as usize)
     } else {
@@ -52,13 +62,14 @@ pub fn with_brackets(value: f64, u: f64) -> String {
     if u == 0.0 {
         return shortest(value);
     }
-    let mut decimals = decimals_for(u);
-    // Very large or small values read better with a power of ten, and brackets need a last digit to refer to.
-    let exponent = decade(value.abs().max(u));
+    let decimals = decimals_for(u);
+    // Very large or small values read better with a power of ten, and brackets need a last digit to refer to. The rounded
+    // figures decide, or 9.9998e-5 would be printed as 10.0e-5 and read back as another text.
+    let rounded = |x: f64| fixed(x, decimals).parse::<f64>().map_or(0.0, f64::abs);
+    let exponent = decade(rounded(value).max(rounded(u)));
     if !(-4..7).contains(&exponent) {
         let scale = power_of_ten(exponent);
-        decimals = decimals_for(u / scale);
-        return format!("{}e{exponent}", bracketed(value / scale, u / scale, decimals));
+        return format!("{}e{exponent}", bracketed(value / scale, u / scale, decimals + exponent));
     }
     bracketed(value, u, decimals)
 }
@@ -75,6 +86,12 @@ pub fn significant(value: f64, digits: i32) -> String {
         return format!("{value:.*e}", (digits - 1).max(0) as usize);
     }
     fixed(value, digits - 1 - exponent)
+}
+
+/// An uncertainty, or a part of one, with two digits: `0.13`, `130`, `1.3e-9`.
+pub fn with_two_digits(u: f64) -> String {
+    let decimals = decimals_for(u.abs());
+    if (-4..=6).contains(&decimals) { fixed(u, decimals) } else { format!("{u:.1e}") }
 }
 
 /// The shortest decimal that reads back as the same double; plain where that stays readable.
@@ -96,6 +113,14 @@ mod tests {
         assert_eq!(with_brackets(0.5, 0.0996), "0.50(10)");
         assert_eq!(with_brackets(1234.5, 9.96), "1234(10)");
         assert_eq!(with_brackets(5.0, 0.0), "5");
+    }
+
+    #[test]
+    fn a_power_of_ten_is_chosen_by_the_rounded_figures() {
+        assert_eq!(with_brackets(9.999_78e-5, 8.51e-5), "0.000100(85)");
+        assert_eq!(with_brackets(9.96e-6, 2.1e-7), "9.96(21)e-6");
+        assert_eq!(with_brackets(9_999_999.7, 12.0), "1.0000000(12)e7");
+        assert_eq!(with_brackets(3.0e-7, 9.96e-6), "0.0(10)e-5");
     }
 
     #[test]

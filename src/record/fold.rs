@@ -187,6 +187,8 @@ impl<'a> Form<'a> {
         // One folded node can say of one entity that an open mole was taken for it.
         let binds_alike = self.bound.is_none() || node.bound().is_none_or(|entity| Some(entity) == self.bound);
         let part = match node.origin() {
+            // That a temperature was chosen is read off this very node.
+            Origin::Operator(Operator::Condition) => return false,
             Origin::Operator(operator) => {
                 Folded { steps: 1, linear: is_linear(*operator), since: node.id(), ..Folded::NOTHING }
             }
@@ -271,8 +273,8 @@ fn is_held(node: &Rc<Node>) -> bool {
 }
 
 fn is_linear(operator: Operator) -> bool {
-    use Operator::{Add, Mean, Negate, Scale, Shift, Subtract};
-    matches!(operator, Add | Subtract | Negate | Scale(_) | Shift(_) | Mean)
+    use Operator::{Add, DivideBy, Mean, Negate, Scale, Shift, Subtract};
+    matches!(operator, Add | Subtract | Negate | Scale(_) | DivideBy(_) | Shift(_) | Mean)
 }
 
 /// A typed figure that may be taken together with others of its place and text.
@@ -339,7 +341,7 @@ mod tests {
     use smallvec::smallvec;
 
     use super::*;
-    use crate::record::node::{self, Step, replayed};
+    use crate::record::node::{self, Step};
     use crate::record::spread::{Spread, sensitivities, spread};
     use crate::units::{Dimension, Kind};
 
@@ -349,7 +351,7 @@ mod tests {
     }
 
     fn leaf(key: LeafKey, u: Option<f64>, label: Option<&str>) -> Rc<Node> {
-        let input = Input { key, u, digit: Some(0.1), label: label.map(Arc::from), citation: None };
+        let input = Input { u, digit: Some(0.1), label: label.map(Arc::from), ..Input::of(key) };
         node(2.0, &[], Origin::Input(input))
     }
 
@@ -534,15 +536,26 @@ mod tests {
             assert!(folded_in(&s) > 0);
             (x, s)
         };
+        let replayed = |of: &Rc<Node>, changed: &Rc<Node>, si: f64| {
+            node::replayed(&node::history(of), &BTreeMap::from([(changed.id(), si)]))
+        };
         let (x, sum) = run(add);
-        assert_eq!(replayed(&sum, x.id(), x.si() + 5.0), Some(sum.si() + 5.0));
+        assert_eq!(replayed(&sum, &x, x.si() + 5.0), Some(sum.si() + 5.0));
         let (x, product) = run(|s, a| scale(&times(s, a), 0.5));
-        assert_eq!(replayed(&product, x.id(), x.si() + 5.0), None);
+        assert_eq!(replayed(&product, &x, x.si() + 5.0), None);
     }
 
     struct Formula(Rc<Node>);
 
     impl Step for Formula {
+        fn name(&self) -> &'static str {
+            "formula"
+        }
+
+        fn take_arguments(&mut self) -> Vec<Rc<Node>> {
+            Vec::new()
+        }
+
         fn does(&self) -> String {
             "a formula".to_owned()
         }

@@ -7,7 +7,8 @@
 use std::collections::BTreeMap;
 use std::rc::Rc;
 
-use crate::record::node::{Input, LeafKey, Node};
+use crate::record::correlation;
+use crate::record::node::{Input, LeafKey, Node, Operator, Origin};
 
 /// How a value depends on one input.
 #[derive(Clone)]
@@ -15,11 +16,22 @@ pub struct Sensitivity {
     pub leaf: Rc<Node>,
     /// ∂(value)/∂(input), in SI units.
     pub derivative: f64,
+    /// Whether the input was chosen as a condition of some formula on the way, and so is not silent without an uncertainty.
+    pub chosen: bool,
 }
 
 impl Sensitivity {
     pub fn input(&self) -> Option<&Input> {
         self.leaf.input()
+    }
+
+    pub fn key(&self) -> Option<&LeafKey> {
+        self.input().map(|input| &input.key)
+    }
+
+    /// Whether the input states no uncertainty, and was not chosen either.
+    pub fn is_silent(&self) -> bool {
+        self.part().is_none() && !self.chosen
     }
 
     /// The share of the standard uncertainty that this input brings, signed: derivative times u.
@@ -56,52 +68,93 @@ impl Spread {
     }
 }
 
-/// Derivatives of `of` with respect to each input it rests on, in the order of the inputs' keys. Inputs that cancel
-/// exactly are left out.
+/// The correlation coefficient of two values, from the inputs they share and those that are correlated; `None` where one
+/// of them has no uncertainty.
+pub fn correlation_of(a: &Rc<Node>, b: &Rc<Node>) -> Option<f64> {
+    let (a, b) = (sensitivities(a), sensitivities(b));
+    let size = (correlation::variance(&a) * correlation::variance(&b)).sqrt();
+    // Rounding may take a full correlation past 1 by a bit.
+    (size > 0.0).then(|| (correlation::covariance(&a, &b) / size).clamp(-1.0, 1.0))
+}
+
+/// Derivatives of `of` with respect to each input it rests on, in the order of the inputs' keys. Inputs that cancel are left
+/// out, also where rounding leaves a residue of them: less than 16 roundings of the sum of the sizes that cancelled.
 pub fn sensitivities(of: &Rc<Node>) -> Vec<Sensitivity> {
-    let mut adjoints: BTreeMap<u64, (Rc<Node>, f64)> = BTreeMap::from([(of.id(), (Rc::clone(of), 1.0))]);
-    let mut leaves: BTreeMap<LeafKey, Sensitivity> = BTreeMap::new();
+    let mut pending: BTreeMap<u64, Reached> = BTreeMap::from([(of.id(), Reached::itself(of))]);
+    let mut leaves: BTreeMap<LeafKey, (Sensitivity, f64)> = BTreeMap::new();
     // The largest id first: all users of a node have larger ids, so its adjoint is complete when it is taken out.
-    while let Some((_, (node, adjoint))) = adjoints.pop_last() {
+    while let Some((_, reached)) = pending.pop_last() {
+        let Reached { node, adjoint, size, chosen } = reached;
         if let Some(input) = node.input() {
             let key = input.key.clone();
-            let entry = leaves.entry(key).or_insert_with(|| Sensitivity { leaf: Rc::clone(&node), derivative: 0.0 });
-            entry.derivative += adjoint;
+            let empty = || (Sensitivity { leaf: Rc::clone(&node), derivative: 0.0, chosen: false }, 0.0);
+            let entry = leaves.entry(key).or_insert_with(empty);
+            entry.0.derivative += adjoint;
+            entry.1 += size;
+            entry.0.chosen |= chosen;
             continue;
         }
         for (input, partial) in node.inputs() {
-            let entry = adjoints.entry(input.id()).or_insert_with(|| (Rc::clone(input), 0.0));
-            entry.1 += adjoint * partial;
+            let entry = pending.entry(input.id()).or_insert_with(|| Reached::not_yet(input));
+            entry.adjoint += adjoint * partial;
+            entry.size += size * partial.abs();
+            entry.chosen |= matches!(node.origin(), Origin::Operator(Operator::Condition));
         }
     }
-    leaves.into_values().filter(|leaf| leaf.derivative != 0.0).collect()
+    let is_left = |(leaf, size): &(Sensitivity, f64)| leaf.derivative.abs() > 16.0 * f64::EPSILON * size;
+    leaves.into_values().filter(is_left).map(|(leaf, _)| leaf).collect()
 }
 
-/// The derivative of `of` with respect to one node it rests on; 0 where it does not.
-pub fn derivative(of: &Rc<Node>, with_respect_to: u64) -> f64 {
-    let mut adjoints: BTreeMap<u64, (Rc<Node>, f64)> = BTreeMap::from([(of.id(), (Rc::clone(of), 1.0))]);
-    while let Some((id, (node, adjoint))) = adjoints.pop_last() {
-        if id <= with_respect_to {
-            return if id == with_respect_to { adjoint } else { 0.0 };
-        }
-        for (input, partial) in node.inputs() {
-            adjoints.entry(input.id()).or_insert_with(|| (Rc::clone(input), 0.0)).1 += adjoint * partial;
+/// A node on the way back from a value: its adjoint, and the sum of the sizes of what was added up to it.
+struct Reached {
+    node: Rc<Node>,
+    adjoint: f64,
+    size: f64,
+    chosen: bool,
+}
+
+impl Reached {
+    fn itself(node: &Rc<Node>) -> Self {
+        Reached { node: Rc::clone(node), adjoint: 1.0, size: 1.0, chosen: false }
+    }
+
+    fn not_yet(node: &Rc<Node>) -> Self {
+        Reached { node: Rc::clone(node), adjoint: 0.0, size: 0.0, chosen: false }
+    }
+}
+
+/// Derivatives of `of` with respect to every node it rests on, by id: one sweep where many are asked for.
+pub fn derivatives(of: &Rc<Node>) -> BTreeMap<u64, f64> {
+    let mut all = BTreeMap::new();
+    let mut pending: BTreeMap<u64, Reached> = BTreeMap::from([(of.id(), Reached::itself(of))]);
+    while let Some((id, reached)) = pending.pop_last() {
+        all.insert(id, reached.adjoint);
+        for (input, partial) in reached.node.inputs() {
+            let entry = pending.entry(input.id()).or_insert_with(|| Reached::not_yet(input));
+            entry.adjoint += reached.adjoint * partial;
         }
     }
-    0.0
+    all
+}
+
+/// The root of the variance, by way of parts no larger than 1, since squares of large equilibrium constants overflow.
+fn deviation(inputs: &[Sensitivity]) -> f64 {
+    let largest = inputs.iter().filter_map(Sensitivity::part).fold(0.0, |largest, part| f64::max(largest, part.abs()));
+    if !(largest > 0.0 && largest.is_finite()) {
+        return largest;
+    }
+    let scaled: Vec<Sensitivity> = (inputs.iter())
+        .map(|one| Sensitivity { leaf: Rc::clone(&one.leaf), derivative: one.derivative / largest, chosen: one.chosen })
+        .collect();
+    largest * correlation::variance(&scaled).sqrt()
 }
 
 /// The spread of a value.
 pub fn spread(of: &Rc<Node>) -> Spread {
-    let mut variance = 0.0;
-    let mut silent = Vec::new();
-    for leaf in sensitivities(of) {
-        match leaf.part() {
-            Some(part) => variance += part * part,
-            None => silent.extend(leaf.input().map(|input| input.key.clone())),
-        }
-    }
-    let u = f64::sqrt(variance);
+    let inputs = sensitivities(of);
+    let silent: Vec<LeafKey> =
+        inputs.iter().filter(|one| one.is_silent()).filter_map(|one| one.key().cloned()).collect();
+    let u = deviation(&inputs);
     match silent.is_empty() {
         true => Spread::Full(u),
         false if u > 0.0 => Spread::Partial { u, silent },
@@ -118,7 +171,7 @@ mod tests {
     use crate::units::{Dimension, Kind};
 
     fn leaf(name: &str, si: f64, u: Option<f64>) -> Rc<Node> {
-        let input = Input { key: LeafKey::Own(name.into()), u, digit: None, label: None, citation: None };
+        let input = Input { u, ..Input::of(LeafKey::Own(name.into())) };
         Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
     }
 

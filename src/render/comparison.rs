@@ -3,7 +3,7 @@
 use crate::model::compare::{Comparison, Verdict};
 use crate::quantity::round;
 use crate::render::headline::Headline;
-use crate::render::{html, latex};
+use crate::render::{Bundle, html, latex};
 
 /// `a - b`, or what stands for it.
 fn name(comparison: &Comparison) -> &'static str {
@@ -31,8 +31,13 @@ fn rows(comparison: &Comparison) -> Vec<(&'static str, String)> {
     rows
 }
 
+/// In text, HTML and LaTeX.
+pub fn bundle(comparison: &Comparison) -> Bundle {
+    Bundle::text(text(comparison)).with_text("text/html", html(comparison)).with_text("text/latex", latex(comparison))
+}
+
 /// For terminals.
-pub fn text(comparison: &Comparison) -> String {
+fn text(comparison: &Comparison) -> String {
     let rows = rows(comparison);
     let width = rows.iter().map(|(name, _)| name.chars().count()).max().unwrap_or(0);
     let mut out = format!("{}\n", comparison.sentence());
@@ -44,7 +49,7 @@ pub fn text(comparison: &Comparison) -> String {
 }
 
 /// For a notebook's page.
-pub fn html(comparison: &Comparison) -> String {
+fn html(comparison: &Comparison) -> String {
     let mut out = format!("<div class=\"hessbook-comparison\"><p>{}</p><table>", html::escaped(&comparison.sentence()));
     for (name, value) in rows(comparison) {
         let cell = |text: &str| format!("<td style=\"text-align:left\">{}</td>", html::escaped(text));
@@ -55,7 +60,7 @@ pub fn html(comparison: &Comparison) -> String {
 }
 
 /// The difference as a formula, with the verdict.
-pub fn latex(comparison: &Comparison) -> String {
+fn latex(comparison: &Comparison) -> String {
     let escaped = latex::escaped;
     let value = Headline::of(&comparison.difference).line();
     format!(

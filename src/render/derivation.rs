@@ -7,7 +7,7 @@ use crate::model::derivation::{Applied, Derivation, Hidden, InputRow, Line, Made
 use crate::record::fold::Folded;
 use crate::render::headline::Headline;
 use crate::render::html::escaped;
-use crate::render::{html as html_parts, latex as latex_parts};
+use crate::render::{Bundle, html as html_parts, latex as latex_parts};
 
 /// The lines of a step, besides its number and place.
 struct Words {
@@ -136,8 +136,13 @@ fn columns<const N: usize>(rows: &[[String; N]], indent: &str) -> String {
     out
 }
 
+/// In text, HTML and LaTeX.
+pub fn bundle(derivation: &Derivation) -> Bundle {
+    Bundle::text(text(derivation)).with_text("text/html", html(derivation)).with_text("text/latex", latex(derivation))
+}
+
 /// For terminals, and for clients without HTML.
-pub fn text(derivation: &Derivation) -> String {
+fn text(derivation: &Derivation) -> String {
     let mut out = format!("{}\n  inputs\n", title(derivation));
     let numbered = |row: &InputRow| {
         let [name, value, from] = input_words(row);
@@ -183,7 +188,7 @@ fn step_text(step: &Step) -> String {
 }
 
 /// For a notebook's page.
-pub fn html(derivation: &Derivation) -> String {
+fn html(derivation: &Derivation) -> String {
     let cell = |text: &str| format!("<td style=\"text-align:left;vertical-align:top\">{}</td>", escaped(text));
     let mut out = String::from("<div class=\"hessbook-derivation\">");
     out.push_str(&format!("<p>derivation of {}</p>", html_parts::headline(&Headline::of(&derivation.value))));
@@ -240,7 +245,7 @@ fn step_html(step: &Step) -> String {
 }
 
 /// For papers: the steps as one array.
-pub fn latex(derivation: &Derivation) -> String {
+fn latex(derivation: &Derivation) -> String {
     let text = |text: &str| format!("\\text{{{}}}", latex_parts::escaped(text));
     let mut rows: Vec<String> = Vec::new();
     for row in &derivation.inputs {

@@ -7,7 +7,7 @@ use crate::model::gap::{Fit, Gap, NAMED, Told};
 use crate::quantity::round;
 use crate::render::headline::Headline;
 use crate::render::html::escaped;
-use crate::render::latex;
+use crate::render::{Bundle, latex};
 use crate::units;
 
 /// A figure on the scale of the gap, with its unit; `like` decides how many digits.
@@ -78,8 +78,13 @@ fn words(gap: &Gap, fit: &Fit) -> Words {
     Words { what: told(&fit.told), details }
 }
 
+/// In text, HTML and LaTeX.
+pub fn bundle(gap: &Gap) -> Bundle {
+    Bundle::text(text(gap)).with_text("text/html", html(gap)).with_text("text/latex", latex(gap))
+}
+
 /// For terminals.
-pub fn text(gap: &Gap) -> String {
+fn text(gap: &Gap) -> String {
     let mut out = format!("{}\n", title(gap));
     for (name, value) in [("a", &gap.a), ("b", &gap.b)] {
         out.push_str(&format!("  {name}  {}\n", Headline::of(value).line()));
@@ -98,7 +103,7 @@ pub fn text(gap: &Gap) -> String {
 }
 
 /// For a notebook's page.
-pub fn html(gap: &Gap) -> String {
+fn html(gap: &Gap) -> String {
     let mut out = format!("<div class=\"hessbook-gap\"><p><b>{}</b><br>", escaped(&title(gap)));
     for (name, value) in [("a", &gap.a), ("b", &gap.b)] {
         out.push_str(&format!("{name}: {}<br>", escaped(&Headline::of(value).line())));
@@ -121,7 +126,7 @@ pub fn html(gap: &Gap) -> String {
 }
 
 /// One line a mistake, as an array.
-pub fn latex(gap: &Gap) -> String {
+fn latex(gap: &Gap) -> String {
     let text = |text: &str| format!("\\text{{{}}}", latex::escaped(text));
     let mut rows = vec![format!("& {}", text(&title(gap))), format!("& {}", text(&verdict(gap)))];
     for (number, fit) in (1..).zip(&gap.fits) {

@@ -92,7 +92,8 @@ pub fn report(report: &Report) -> String {
     let mut out = String::from("<div class=\"hessbook-report\">");
     out.push_str(&format!("<p><b>{}</b><br>{}</p>", escaped(&record.label), headline(&report.headline)));
     let mut facts = String::new();
-    for (name, text) in [("conditions", &record.conditions), ("check", &record.check_line)] {
+    let about = record.about.join("; ");
+    for (name, text) in [("of", &about), ("conditions", &record.conditions), ("check", &record.check_line)] {
         if !text.is_empty() {
             facts.push_str(&format!(
                 "<tr><td style=\"text-align:left\">{name}</td><td style=\"text-align:left\">{}</td></tr>",
@@ -112,9 +113,9 @@ pub fn report(report: &Report) -> String {
         out.push_str("<p>Shortcuts not taken would have moved the value by</p><table>");
         for alternative in &record.alternatives {
             out.push_str(&format!(
-                "<tr><td style=\"text-align:right\">{}</td><td style=\"text-align:left\">{}</td>\
+                "<tr><td style=\"text-align:right;white-space:nowrap\">{}</td><td style=\"text-align:left\">{}</td>\
                  <td style=\"text-align:left\"><code>{}</code></td></tr>",
-                escaped(&alternative.price_shown),
+                escaped(&alternative.price_shown).replace('-', "−"),
                 escaped(&alternative.words),
                 escaped(&alternative.id)
             ));
@@ -141,7 +142,8 @@ pub fn assumptions(rows: &[Assumption]) -> String {
     );
     for row in rows {
         let left = |text: &str| format!("<td style=\"text-align:left\">{text}</td>");
-        let price = escaped(row.price_shown.as_deref().unwrap_or("no price"));
+        let word = |text: &str| format!("<td style=\"text-align:left;white-space:nowrap\">{text}</td>");
+        let price = escaped(row.price_shown.as_deref().unwrap_or("no price")).replace('-', "−");
         let order = if row.first_order { " (to first order)" } else { "" };
         // The status is a word first; weight only helps the eye and carries no meaning of its own.
         let status = match row.status.as_str() {
@@ -154,9 +156,9 @@ pub fn assumptions(rows: &[Assumption]) -> String {
         };
         let id = format!("<span title=\"{}\"><code>{}</code></span>", escaped(&row.claim), escaped(&row.id));
         out.push_str(&format!(
-            "<tr>{}{}<td style=\"text-align:right\">{price}{order}</td>{}{}</tr>",
-            left(&status),
-            left(&id),
+            "<tr>{}{}<td style=\"text-align:right;white-space:nowrap\">{price}{order}</td>{}{}</tr>",
+            word(&status),
+            word(&id),
             left(&escaped(&row.subject)),
             left(&note)
         ));

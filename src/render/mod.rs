@@ -3,11 +3,13 @@
 //! A [`Bundle`] holds one output in several forms. A report's forms are all made from one [`report::Report`], so that
 //! text, HTML, LaTeX and the machine record cannot disagree.
 
+pub mod budget;
 pub mod comparison;
 pub mod derivation;
 pub mod gap;
 pub mod headline;
 pub mod html;
+pub mod interval;
 pub mod latex;
 pub mod register;
 pub mod report;
@@ -15,8 +17,9 @@ pub mod text;
 
 use std::collections::BTreeMap;
 
-use crate::model::account::Account;
+use crate::model::answer::Answer;
 use crate::model::reaction::Reaction;
+use crate::model::substance::PureSubstance;
 use crate::quantity::Quantity;
 use crate::render::headline::Headline;
 
@@ -41,14 +44,28 @@ pub fn reaction(reaction: &Reaction) -> Bundle {
         .with_text("text/latex", latex::equation(reaction))
 }
 
-/// An answer to be read, in text, HTML and LaTeX.
-pub fn account(account: &Account) -> Bundle {
-    let (text, html, latex) = match account {
-        Account::Derivation(it) => (derivation::text(it), derivation::html(it), derivation::latex(it)),
-        Account::Comparison(it) => (comparison::text(it), comparison::html(it), comparison::latex(it)),
-        Account::Gap(it) => (gap::text(it), gap::html(it), gap::latex(it)),
+/// What is known of a substance, in one line.
+pub fn substance(substance: &PureSubstance) -> Bundle {
+    let record = substance.record();
+    let name = record.name.as_ref().map_or_else(String::new, |name| format!(", {name}"));
+    let range = match &record.function {
+        Some(function) => format!("heat capacity from {} K to {} K", function.t_min, function.t_max),
+        None => "figures at 298.15 K only".to_owned(),
     };
-    Bundle::text(text).with_text("text/html", html).with_text("text/latex", latex)
+    let text = format!("{}{name}: {range}", record.id());
+    Bundle::text(text.clone()).with_text("text/html", html::escaped(&text))
+}
+
+/// An answer to be read, in text and HTML, some in LaTeX.
+pub fn answer(answer: &Answer) -> Bundle {
+    match answer {
+        Answer::Budget(budget) => budget::bundle(budget),
+        Answer::Expanded(expanded) => interval::expanded(expanded),
+        Answer::Propagation(propagation) => interval::propagation(propagation),
+        Answer::Derivation(derivation) => derivation::bundle(derivation),
+        Answer::Comparison(comparison) => comparison::bundle(comparison),
+        Answer::Gap(gap) => gap::bundle(gap),
+    }
 }
 
 impl Bundle {

@@ -3,7 +3,6 @@
 //! Reading order: `engine` (how it is set up), `numbers`, `compare` and `guards` (what is replaced), `prepare` (what
 //! is read before the engine reads it), `fault` (errors in and out). The engine's types stay in here and in `session`.
 
-pub mod answers;
 pub mod bind;
 pub mod compare;
 pub mod engine;

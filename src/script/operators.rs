@@ -3,14 +3,18 @@
 //! The engine answers some senseless comparisons with `false` and glues a quantity to a text without a word; each such
 //! road is closed here with a fault. There is no `==` on measured values.
 
+use std::cell::Cell;
+
 use rhai::{Dynamic, Engine, ImmutableString, NativeCallContext};
 
 use crate::fault::{Explain, Fault, Place};
+use crate::model::card::Cx;
+use crate::model::refusal;
 use crate::quantity::{Mismatch, Quantity};
 use crate::render;
 use crate::script::bind::Native;
 use crate::script::fault::raise;
-use crate::script::state::place_of;
+use crate::script::state::{Shared, place_of};
 
 /// A use of an operator that has no meaning for quantities.
 #[derive(Clone, Debug, thiserror::Error)]
@@ -23,8 +27,6 @@ enum Misuse {
     WithOther { operator: &'static str, other: String },
     #[error("cannot add a bare number and a value in {unit}")]
     NumberAndUnit { unit: String },
-    #[error("an exponent with a unit, {unit}, has no meaning")]
-    ExponentWithUnit { unit: String },
 }
 
 impl Explain for Misuse {
@@ -34,7 +36,6 @@ impl Explain for Misuse {
             Misuse::WithText { .. } => "quantity-and-text",
             Misuse::WithOther { .. } => "quantity-and-other",
             Misuse::NumberAndUnit { .. } => "number-and-unit",
-            Misuse::ExponentWithUnit { .. } => "exponent-with-unit",
         }
     }
 
@@ -46,7 +47,6 @@ impl Explain for Misuse {
             Misuse::WithText { .. } => "make the text a quantity first: `q(\"1.5 kJ/mol\")`".to_owned(),
             Misuse::WithOther { .. } => "compute with quantities and numbers only".to_owned(),
             Misuse::NumberAndUnit { unit } => format!("give the number its unit: `q(\"1.5 {unit}\")`"),
-            Misuse::ExponentWithUnit { .. } => "divide until it is a pure number".to_owned(),
         }
     }
 }
@@ -81,7 +81,7 @@ macro_rules! with_numbers {
             done(b.scaled(real(a), place_of(&c)), place_of(&c))
         });
         $engine.register_fn("/", move |c: NativeCallContext<'_>, a: Quantity, b: $number| {
-            done(a.scaled(1.0 / real(b), place_of(&c)), place_of(&c))
+            done(a.divided(real(b), place_of(&c)), place_of(&c))
         });
         $engine.register_fn("/", move |c: NativeCallContext<'_>, a: $number, b: Quantity| {
             done(b.reciprocal(real(a), place_of(&c)), place_of(&c))
@@ -100,8 +100,8 @@ macro_rules! with_numbers {
 }
 
 /// Registers operators and functions of quantities.
-pub fn register(engine: &mut Engine) {
-    pairs(engine);
+pub fn register(engine: &mut Engine, shared: &Shared) {
+    pairs(engine, shared);
     with_numbers!(engine, f64, |number| number);
     with_numbers!(engine, i64, |number| number as f64);
     functions(engine);
@@ -111,34 +111,47 @@ pub fn register(engine: &mut Engine) {
     engine.register_fn("to_debug", |value: &mut Quantity| render::text::value(value));
 }
 
-fn pairs(engine: &mut Engine) {
+fn pairs(engine: &mut Engine, shared: &Shared) {
     type Binary = fn(&Quantity, &Quantity, Option<Place>) -> Result<Quantity, Mismatch>;
     let operators: [(&str, Binary); 4] =
         [("+", Quantity::plus), ("-", Quantity::minus), ("*", Quantity::times), ("/", Quantity::over)];
     for (symbol, run) in operators {
-        engine.register_fn(symbol, move |context: NativeCallContext<'_>, a: Quantity, b: Quantity| {
-            let place = place_of(&context);
-            done(run(&a, &b, place.clone()), place)
-        });
+        let session = shared.clone();
+        engine.register_fn(
+            symbol,
+            move |context: NativeCallContext<'_>, a: Quantity, b: Quantity| -> Native<Quantity> {
+                let place = place_of(&context);
+                run(&a, &b, place.clone()).map_err(|mismatch| {
+                    let ordinal = Cell::new(0); // A refusal reads nothing as typed.
+                    let cx = Cx { references: session.references(), place: None, ordinal: &ordinal, halted: &|| None };
+                    let figure = refusal::figure(&cx, &a, &b, &mismatch);
+                    let fault = Fault::from(mismatch).at(place);
+                    raise(figure.map_or(fault.clone(), |figure| fault.adding(&figure)))
+                })
+            },
+        );
     }
     engine.register_fn("-", |context: NativeCallContext<'_>, a: Quantity| {
         done(a.negated(place_of(&context)), place_of(&context))
     });
     engine.register_fn("+", |a: Quantity| a);
     engine.register_fn("**", |context: NativeCallContext<'_>, a: Quantity, b: Quantity| {
-        if b.dim().is_none() {
-            done(a.power(b.si(), place_of(&context)), place_of(&context))
-        } else {
-            refuse(&context, Misuse::ExponentWithUnit { unit: b.unit().text.to_string() })
-        }
+        done(a.power_of(&b, place_of(&context)), place_of(&context))
     });
 }
 
 fn functions(engine: &mut Engine) {
     type Unary = fn(&Quantity, Option<Place>) -> Result<Quantity, Mismatch>;
     let root: Unary = |value, place| value.power(0.5, place);
-    let functions: [(&str, Unary); 4] =
-        [("abs", Quantity::absolute), ("exp", Quantity::exp), ("ln", Quantity::ln), ("sqrt", root)];
+    let functions: [(&str, Unary); 7] = [
+        ("abs", Quantity::absolute),
+        ("exp", Quantity::exp),
+        ("ln", Quantity::ln),
+        ("sin", Quantity::sin),
+        ("cos", Quantity::cos),
+        ("tan", Quantity::tan),
+        ("sqrt", root),
+    ];
     for (name, run) in functions {
         engine.register_fn(name, move |context: NativeCallContext<'_>, a: Quantity| {
             let place = place_of(&context);

@@ -10,8 +10,9 @@ use std::rc::Rc;
 use rhai::{Array, Blob, Dynamic, Engine, FnPtr, ImmutableString, Map};
 
 use crate::fault::Fault;
-use crate::model::account::Account;
+use crate::model::answer::Answer;
 use crate::model::reaction::Reaction;
+use crate::model::substance::PureSubstance;
 use crate::quantity::Quantity;
 use crate::render::{self, Bundle};
 use crate::script::verbs::Display;
@@ -27,14 +28,17 @@ fn own(value: &Dynamic) -> Option<Bundle> {
     if let Some(quantity) = value.read_lock::<Quantity>() {
         return Some(render::quantity(&quantity));
     }
+    if let Some(answer) = value.read_lock::<Answer>() {
+        return Some(render::answer(&answer));
+    }
     if let Some(display) = value.read_lock::<Display>() {
         return Some((*display.0).clone());
     }
     if let Some(reaction) = value.read_lock::<Rc<Reaction>>() {
         return Some(render::reaction(&reaction));
     }
-    if let Some(account) = value.read_lock::<Account>() {
-        return Some(render::account(&account));
+    if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
+        return Some(render::substance(&substance));
     }
     value.read_lock::<Fault>().map(|fault| Bundle::text(fault.to_string()))
 }
@@ -185,7 +189,7 @@ pub fn register(engine: &mut Engine) {
         TypeId::of::<Blob>(),
         TypeId::of::<Range<i64>>(),
         TypeId::of::<RangeInclusive<i64>>(),
-        TypeId::of::<Account>(),
+        TypeId::of::<Answer>(),
     ];
     for name in ["print", "debug", "to_string", "to_debug"] {
         for kind in kinds {

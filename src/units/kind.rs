@@ -138,6 +138,8 @@ pub struct State {
     pub p_pa: Option<f64>,
     /// Each species pure, in its standard state.
     pub standard: bool,
+    /// Of a reaction, whatever it is now per mole of: such values belong to their temperature.
+    pub reaction: bool,
 }
 
 /// The sort of quantity with its state.
@@ -162,6 +164,8 @@ pub enum KindMismatch {
     NegatedPoint { t_k: f64 },
     #[error("cannot {verb} a reaction value at {left_k} K and one at {right_k} K: a reaction value belongs to its temperature", verb = verb(*minus))]
     ReactionTemperatures { left_k: f64, right_k: f64, minus: bool },
+    #[error("cannot {verb} a reaction's value and a substance's", verb = verb(*minus))]
+    ReactionAndSubstance { minus: bool },
     #[error("cannot {verb} a value counted from {left} and one counted from {right}", verb = verb(*minus))]
     Zeros { left: Zero, right: Zero, minus: bool },
 }
@@ -179,6 +183,7 @@ impl Explain for KindMismatch {
             KindMismatch::MinusPoint { .. } => "minus-point",
             KindMismatch::NegatedPoint { .. } => "negated-point",
             KindMismatch::ReactionTemperatures { .. } => "reaction-temperatures-differ",
+            KindMismatch::ReactionAndSubstance { .. } => "reaction-and-substance",
             KindMismatch::Zeros { .. } => "zeros-differ",
         }
     }
@@ -215,7 +220,14 @@ impl Explain for KindMismatch {
                 "subtract two points instead, T1 - T2, which is a difference".to_owned()
             }
             KindMismatch::ReactionTemperatures { .. } => {
-                "evaluate both at one temperature, `r.enthalpy(T)` with the same T".to_owned()
+                "evaluate both at one temperature, `r.enthalpy(T)` with the same T; the change of an enthalpy between two is \
+                 `r.enthalpy_increment(T, from)`"
+                    .to_owned()
+            }
+            KindMismatch::ReactionAndSubstance { .. } => {
+                "a reaction's value is a difference of substances already; write the substance into the reaction, or add \
+                 substances' values alone"
+                    .to_owned()
             }
             KindMismatch::Zeros { .. } => {
                 "bring both to one zero: add the substance's own increment between the two temperatures".to_owned()
@@ -244,15 +256,16 @@ impl Kind {
         Kind::of(if *dim == Dimension::base(Base::Kelvin) { What::OpenTemperature } else { What::Plain })
     }
 
-    /// Kind of `left + right` or `left - right`, both of dimension `dim`; `si` are the two values, for messages.
-    pub fn sum(left: &Kind, right: &Kind, minus: bool, dim: &Dimension, si: (f64, f64)) -> Result<Kind, KindMismatch> {
+    /// Kind of `left + right` or `left - right`, both of one dimension; `si` are the two values, for messages.
+    pub fn sum(left: &Kind, right: &Kind, minus: bool, si: (f64, f64)) -> Result<Kind, KindMismatch> {
         use What::*;
         if left.what.is_temperature() && right.what.is_temperature() {
             return Kind::sum_of_temperatures(left.what, right.what, minus, si).map(Kind::of);
         }
-        let state = State::merged(left.state(), right.state(), minus, dim.is_per_reaction())?;
+        let state = State::merged(left, right, minus)?;
         let keep = |what| Ok(Kind { what, state: state.map(Arc::new) });
         match (left.what, right.what) {
+            (K, _) | (_, K) => Ok(Kind::PLAIN), // A sum of constants is none.
             (a, b) if a == b => keep(a),
             (Plain, _) | (_, Plain) => keep(Plain), // A typed correction says nothing of its kind, so the sum claims none.
             (Heat, Work) | (Work, Heat) => keep(U), // First law.
@@ -292,6 +305,20 @@ impl Kind {
         })
     }
 
+    /// Kind of a mean of two values that are no temperature points.
+    pub fn mean(left: &Kind, right: &Kind) -> Result<Kind, KindMismatch> {
+        match (left.what, right.what) {
+            (a, b) if a.is_temperature() && a != b => Err(KindMismatch::Unlike { left: a, right: b, minus: false }),
+            _ => Kind::sum(left, right, false, (0.0, 0.0)),
+        }
+    }
+
+    /// An increment between temperatures that are not known any more, as Cp times a difference is.
+    fn increment(what: What, of: &Kind) -> Kind {
+        let reaction = of.state().is_some_and(|state| state.reaction);
+        Kind::in_state(what, State { reaction, ..State::default() })
+    }
+
     pub fn negated(&self, si: f64) -> Result<Kind, KindMismatch> {
         match self.what {
             What::TemperaturePoint => Err(KindMismatch::NegatedPoint { t_k: si }),
@@ -301,15 +328,24 @@ impl Kind {
     }
 
     /// Kind of a product. A kind survives a factor that only changes the basis (mol[X]/mol[rxn], kg, a bare number).
-    pub fn product(left: (&Kind, &Dimension), right: (&Kind, &Dimension), dim: &Dimension) -> Kind {
-        for ((kind, kind_dim), (other, other_dim)) in [(left, right), (right, left)] {
+    /// `si` are the two values: T times an entropy at another temperature is no TS term.
+    pub fn product(left: (&Kind, &Dimension), right: (&Kind, &Dimension), dim: &Dimension, si: (f64, f64)) -> Kind {
+        for ((kind, kind_dim), (other, other_dim), other_si) in [(left, right, si.1), (right, left, si.0)] {
             match (kind.what, other.what) {
                 (What::K, _) => continue,
-                (What::S, other) if other.is_temperature() => {
+                (What::S, What::TemperaturePoint | What::OpenTemperature) => {
+                    let own = kind.state().and_then(|state| state.t_k);
+                    if own.is_some_and(|t_k| t_k != other_si) {
+                        return Kind::bare(dim);
+                    }
                     return Kind { what: What::TS, state: kind.state.clone() };
                 }
-                (What::Cp, What::TemperatureDifference | What::OpenTemperature) => return Kind::of(What::H),
-                (What::Cv, What::TemperatureDifference | What::OpenTemperature) => return Kind::of(What::U),
+                (What::Cp, What::TemperatureDifference | What::OpenTemperature) => {
+                    return Kind::increment(What::H, kind);
+                }
+                (What::Cv, What::TemperatureDifference | What::OpenTemperature) => {
+                    return Kind::increment(What::U, kind);
+                }
                 _ => {}
             }
             if is_pressure(kind_dim) && is_volume(other_dim) {
@@ -341,33 +377,54 @@ impl Kind {
 }
 
 impl State {
-    fn merged(
-        left: Option<&State>,
-        right: Option<&State>,
-        minus: bool,
-        reaction: bool,
-    ) -> Result<Option<State>, KindMismatch> {
+    fn merged(left: &Kind, right: &Kind, minus: bool) -> Result<Option<State>, KindMismatch> {
         let (left, right) = match (left, right) {
-            (Some(left), Some(right)) => (left, right),
-            (one, other) => return Ok(one.or(other).cloned()),
+            (Kind { state: Some(left), .. }, Kind { state: Some(right), .. }) => (left, right),
+            // A plain value takes no part in the state; a state function without one is at no known temperature.
+            (Kind { state: Some(state), .. }, other) | (other, Kind { state: Some(state), .. }) => {
+                let t_k = if other.what == What::Plain { state.t_k } else { None };
+                return Ok(Some(State { t_k, ..(**state).clone() }));
+            }
+            _ => return Ok(None),
         };
+        if left.reaction != right.reaction {
+            return Err(KindMismatch::ReactionAndSubstance { minus });
+        }
+        let reaction = left.reaction;
         if let (true, Some(left_k), Some(right_k)) = (reaction, left.t_k, right.t_k)
             && left_k != right_k
+            && !matches!((&left.zero, &right.zero), (Some(Zero::From(_)), _) | (_, Some(Zero::From(_))))
         {
             return Err(KindMismatch::ReactionTemperatures { left_k, right_k, minus });
         }
-        if let (false, Some(a), Some(b)) = (reaction, &left.zero, &right.zero)
-            && a != b
-            && !matches!((a, b), (Zero::From(_), _) | (_, Zero::From(_)))
-        {
-            return Err(KindMismatch::Zeros { left: a.clone(), right: b.clone(), minus });
-        }
-        Ok(Some(State {
-            zero: if left.zero == right.zero { left.zero.clone() } else { None },
-            t_k: if left.t_k == right.t_k { left.t_k } else { None },
-            p_pa: if left.p_pa == right.p_pa { left.p_pa } else { None },
-            standard: left.standard && right.standard,
-        }))
+        let same = |a: Option<f64>, b: Option<f64>| if a == b { a } else { None };
+        let (zero, t_k) = match (&left.zero, &right.zero) {
+            (Some(a), Some(b)) if a == b => (Some(a.clone()), same(left.t_k, right.t_k)),
+            (Some(a), Some(b)) => {
+                let joined = joined((a, left.t_k), (b, right.t_k), minus);
+                let refused = || KindMismatch::Zeros { left: a.clone(), right: b.clone(), minus };
+                joined.map(|(zero, t_k)| (Some(zero), t_k)).ok_or_else(refused)?
+            }
+            _ => (None, same(left.t_k, right.t_k)),
+        };
+        let standard = left.standard && right.standard;
+        Ok(Some(State { zero, t_k, p_pa: same(left.p_pa, right.p_pa), standard, reaction }))
+    }
+}
+
+/// Zero and temperature of a sum of two values with different zeros, where an increment leads from one to the other:
+/// H(a) and H(T) − H(a) make H(T), and H(T) less H(T) − H(a) makes H(a). `None`: nothing joins them.
+fn joined(left: (&Zero, Option<f64>), right: (&Zero, Option<f64>), minus: bool) -> Option<(Zero, Option<f64>)> {
+    let starts = |value: (&Zero, Option<f64>)| match value.0 {
+        Zero::From(t_k) => Some(*t_k),
+        _ => None,
+    };
+    let meets = |t_k: Option<f64>, start: Option<f64>| t_k.is_some() && t_k == start;
+    match (minus, starts(left), starts(right)) {
+        (false, _, start @ Some(_)) if meets(left.1, start) => Some((left.0.clone(), right.1)),
+        (false, start @ Some(_), _) if meets(right.1, start) => Some((right.0.clone(), left.1)),
+        (true, _, start @ Some(_)) if left.1.is_some() && left.1 == right.1 => Some((left.0.clone(), start)),
+        _ => None,
     }
 }
 
@@ -395,7 +452,7 @@ mod tests {
     }
 
     fn add(left: What, right: What, minus: bool) -> Option<What> {
-        Kind::sum(&Kind::of(left), &Kind::of(right), minus, &energy(), (1.0, 2.0)).ok().map(|kind| kind.what)
+        Kind::sum(&Kind::of(left), &Kind::of(right), minus, (1.0, 2.0)).ok().map(|kind| kind.what)
     }
 
     #[test]
@@ -442,15 +499,38 @@ mod tests {
 
     #[test]
     fn reaction_values_meet_only_at_one_temperature_and_substance_values_at_any() {
-        let at =
-            |t_k| Kind::in_state(What::H, State { zero: Some(Zero::Elements298), t_k: Some(t_k), ..State::default() });
-        let reaction = energy().over(&Dimension::amount(crate::units::Entity::RXN));
-        let water = energy().over(&Dimension::amount(crate::units::Entity::named("H2O")));
-        assert!(matches!(
-            Kind::sum(&at(300.0), &at(400.0), false, &reaction, (1.0, 1.0)),
-            Err(KindMismatch::ReactionTemperatures { .. })
-        ));
-        assert_eq!(Kind::sum(&at(300.0), &at(400.0), true, &water, (1.0, 1.0)).unwrap().state().unwrap().t_k, None);
+        let of = |reaction, t_k| {
+            let state = State { zero: Some(Zero::Elements298), t_k: Some(t_k), reaction, ..State::default() };
+            Kind::in_state(What::H, state)
+        };
+        let sum = |a: &Kind, b: &Kind| Kind::sum(a, b, true, (1.0, 1.0));
+        assert!(matches!(sum(&of(true, 300.0), &of(true, 400.0)), Err(KindMismatch::ReactionTemperatures { .. })));
+        assert_eq!(sum(&of(false, 300.0), &of(false, 400.0)).unwrap().state().unwrap().t_k, None);
+        assert!(matches!(sum(&of(true, 300.0), &of(false, 300.0)), Err(KindMismatch::ReactionAndSubstance { .. })));
+        // An increment of the reaction's own leads from one temperature to the other; Cp times a difference to none known.
+        let increment = Kind::in_state(
+            What::H,
+            State { zero: Some(Zero::From(300.0)), t_k: Some(400.0), reaction: true, ..State::default() },
+        );
+        let joined = Kind::sum(&of(true, 300.0), &increment, false, (1.0, 1.0)).unwrap();
+        assert_eq!(joined.state().unwrap().t_k, Some(400.0));
+    }
+
+    #[test]
+    fn an_increment_joins_only_where_it_starts_or_ends() {
+        let at = |zero, t_k| Kind::in_state(What::H, State { zero: Some(zero), t_k: Some(t_k), ..State::default() });
+        let absolute = |t_k| at(Zero::Elements298, t_k);
+        let from = |start, t_k| at(Zero::From(start), t_k);
+        let sum = |a: &Kind, b: &Kind, minus| {
+            let kind = Kind::sum(a, b, minus, (1.0, 1.0)).ok()?;
+            let state = kind.state().unwrap().clone();
+            Some((state.zero.unwrap(), state.t_k))
+        };
+        assert_eq!(sum(&absolute(300.0), &from(300.0, 400.0), false), Some((Zero::Elements298, Some(400.0))));
+        assert_eq!(sum(&absolute(400.0), &from(300.0, 400.0), true), Some((Zero::Elements298, Some(300.0))));
+        assert_eq!(sum(&from(300.0, 400.0), &from(400.0, 500.0), false), Some((Zero::From(300.0), Some(500.0))));
+        assert_eq!(sum(&absolute(400.0), &from(300.0, 400.0), false), None);
+        assert_eq!(sum(&from(300.0, 400.0), &from(200.0, 500.0), true), None);
     }
 
     #[test]
@@ -458,7 +538,7 @@ mod tests {
         let (kelvin, none) = (Dimension::base(Base::Kelvin), Dimension::none());
         let per_kelvin = energy().over(&kelvin);
         let make = |a: What, da: &Dimension, b: What, db: &Dimension| {
-            Kind::product((&Kind::of(a), da), (&Kind::of(b), db), &da.times(db)).what
+            Kind::product((&Kind::of(a), da), (&Kind::of(b), db), &da.times(db), (1.0, 1.0)).what
         };
         assert_eq!(make(What::TemperaturePoint, &kelvin, What::S, &per_kelvin), What::TS);
         assert_eq!(make(What::Cp, &per_kelvin, What::TemperatureDifference, &kelvin), What::H);

@@ -528,8 +528,8 @@ mod tests {
 
     #[test]
     fn degrees_are_points_alone_and_intervals_below_the_line() {
-        assert_eq!(unit("degC").unwrap().scale, Scale::Point { offset: 273.15 });
-        assert_eq!(unit("°F").unwrap().scale, Scale::Point { offset: 459.67 });
+        assert_eq!(unit("degC").unwrap().scale, Scale::Point { ice: 0.0, degrees: 1.0 });
+        assert_eq!(unit("°F").unwrap().scale, Scale::Point { ice: 32.0, degrees: 1.8 });
         let per_degree = unit("J/(g degC)").unwrap();
         assert_eq!((per_degree.factor, per_degree.scale), (1000.0, Scale::Plain));
         assert_eq!(per_degree.dim, unit("J/(kg K)").unwrap().dim);

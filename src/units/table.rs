@@ -71,8 +71,8 @@ pub struct Row {
     pub bases: [i8; 6],
     pub moles: i8,
     pub prefixes: Prefixes,
-    /// What is added to a number on a temperature scale before the factor applies; such a unit names a point.
-    pub offset: Option<f64>,
+    /// The number on a temperature scale at the ice point, 273.15 K; such a unit names a point.
+    pub ice: Option<f64>,
     pub sureness: Sureness,
     /// As a reader sees it; what follows `_` is an index.
     pub shown: &'static str,
@@ -135,8 +135,8 @@ impl Row {
         Row { sureness: Sureness::Measured(relative), ..self }
     }
 
-    const fn point(self, offset: f64) -> Row {
-        Row { offset: Some(offset), ..self }
+    const fn point(self, ice: f64) -> Row {
+        Row { ice: Some(ice), ..self }
     }
 
     const fn moles(self, moles: i8) -> Row {
@@ -261,7 +261,7 @@ const fn row(symbols: &'static [&'static str], name: &'static str, size: Size, b
         bases,
         moles: 0,
         prefixes: Prefixes::None,
-        offset: None,
+        ice: None,
         sureness: Sureness::Exact,
         shown: symbols[0],
         source,
@@ -317,7 +317,7 @@ pub static UNITS: &[Row] = &[
     every(&["Gy"], "gray", ONE, DOSE, SI_NAMED),
     every(&["Sv"], "sievert", ONE, DOSE, SI_NAMED),
     every(&["kat"], "katal", ONE, RATE, SI_NAMED).moles(1),
-    row(&["degC"], "degree Celsius", ONE, TEMPERATURE, SI_NAMED).point(273.15).named(&["degC", "°C", "℃"], "°C"),
+    row(&["degC"], "degree Celsius", ONE, TEMPERATURE, SI_NAMED).point(0.0).named(&["degC", "°C", "℃"], "°C"),
     // Accepted for use with the SI.
     row(&["min"], "minute", decimal(60, 0), TIME, SI_ACCEPTED),
     row(&["h"], "hour", decimal(3600, 0), TIME, SI_ACCEPTED),
@@ -380,7 +380,7 @@ pub static UNITS: &[Row] = &[
     row(&["gal_UK"], "UK gallon", decimal(454_609, -8), VOLUME, SP811),
     row(&["bbl"], "petroleum barrel, 42 US gallons", decimal(158_987_294_928, -12), VOLUME, SP811),
     row(&["degF"], "degree Fahrenheit", ratio(5, 9, 0), TEMPERATURE, SP811)
-        .point(459.67)
+        .point(32.0)
         .named(&["degF", "°F", "℉"], "°F"),
     row(&["degR"], "degree Rankine", ratio(5, 9, 0), TEMPERATURE, SP811).named(&["degR"], "°R"),
 ];

@@ -117,9 +117,12 @@ impl Terms {
     }
 
     fn scale(&self) -> Result<Scale, UnitError> {
-        let Some(point) = self.over().find(|term| term.row.offset.is_some()) else { return Ok(Scale::Plain) };
-        match (point.row.offset, self.terms.len(), point.halves) {
-            (Some(offset), 1, 2) => Ok(Scale::Point { offset }),
+        let Some(point) = self.over().find(|term| term.row.ice.is_some()) else { return Ok(Scale::Plain) };
+        match (point.row.ice, self.terms.len(), point.halves) {
+            (Some(ice), 1, 2) => {
+                let size = &point.row.size;
+                Ok(Scale::Point { ice, degrees: size.denominator as f64 / size.numerator as f64 })
+            }
             _ => Err(UnitError::PointInProduct {
                 symbol: point.row.symbol(),
                 interval: interval_symbol(point.row),
@@ -132,7 +135,7 @@ impl Terms {
     /// The same product with the intervals K and degR in the place of degC and degF.
     fn with_intervals(&self) -> Terms {
         let terms = self.terms.iter().map(|term| match lookup(interval_symbol(term.row)) {
-            Some(interval) if term.row.offset.is_some() => Term { row: interval.row, ..*term },
+            Some(interval) if term.row.ice.is_some() => Term { row: interval.row, ..*term },
             _ => *term,
         });
         Terms { terms: terms.collect() }

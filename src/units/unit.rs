@@ -4,13 +4,17 @@ use std::sync::Arc;
 
 use crate::units::dimension::Dimension;
 
+/// 0 degC in kelvin (SI Brochure, 9th ed., section 2.3.1, from memory).
+const ICE_POINT: f64 = 273.15;
+
 /// How a unit's numbers are read.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum Scale {
     /// value in SI = factor × number
     Plain,
-    /// A temperature point: value in kelvin = factor × (number + offset). Only degC and degF, and only standing alone.
-    Point { offset: f64 },
+    /// A temperature point: value in kelvin = (number - ice) / degrees + 273.15. Only degC and degF, and only standing
+    /// alone. By way of the ice point, so that 25 degC and 77 degF are 298.15 K to the last bit.
+    Point { ice: f64, degrees: f64 },
 }
 
 /// A unit as someone wrote it, or as the program chose to print it.
@@ -29,7 +33,7 @@ impl Unit {
     pub fn to_si(&self, number: f64) -> f64 {
         match self.scale {
             Scale::Plain => self.factor * number,
-            Scale::Point { offset } => self.factor * (number + offset),
+            Scale::Point { ice, degrees } => (number - ice) / degrees + ICE_POINT,
         }
     }
 
@@ -37,7 +41,7 @@ impl Unit {
     pub fn from_si(&self, si: f64) -> f64 {
         match self.scale {
             Scale::Plain => si / self.factor,
-            Scale::Point { offset } => si / self.factor - offset,
+            Scale::Point { ice, degrees } => (si - ICE_POINT) * degrees + ice,
         }
     }
 

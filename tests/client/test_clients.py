@@ -87,6 +87,22 @@ def test_an_interrupt_ends_the_cell_and_keeps_the_variables(manager, client):
     assert shown(run(client, "kept + 1")[1]) == ["42"]
 
 
+@pytest.mark.parametrize(
+    "code",
+    [
+        "fn deeper(x) { deeper(x) } deeper(1)",
+        "blob(100000000000000)",
+        'let text = "x"; loop { text += text; }',
+        '"x".pad(100000000000000, "y")',
+    ],
+)
+def test_a_cell_that_wants_too_much_fails_alone(client, code):
+    run(client, "let kept = 41;")
+    reply, _ = run(client, code)
+    assert reply["status"] == "error"
+    assert shown(run(client, "kept + 1")[1]) == ["42"]
+
+
 def test_a_restart_forgets_and_serves_the_same_client(manager, client):
     run(client, "let kept = 41;")
     manager.restart_kernel()

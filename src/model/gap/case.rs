@@ -1,8 +1,9 @@
-//! One reaction property in the history of a value, ready to be computed again with a mistake in it.
+//! One property in the history of a value, ready to be computed again with a mistake in it.
 //!
 //! Every alternative is evaluated by the code that made the value itself, from figures of the same catalogue, and is then
 //! carried to the value asked about: by replay of the arithmetic between, or by its first derivative.
 
+use std::collections::BTreeMap;
 use std::rc::Rc;
 
 use crate::chem::species::State as Aggregate;
@@ -12,23 +13,24 @@ use crate::model::card::{Call, Cx};
 use crate::model::gap::candidate::{Candidate, Mistake, Scale};
 use crate::model::gather::{self, Contribution, Figure, Method};
 use crate::model::property::{self, Property};
-use crate::model::reaction::Reaction;
+use crate::model::terms::Terms;
 use crate::quantity::{Quantity, text};
 use crate::record::node::Node;
-use crate::record::register::price_of;
+use crate::record::register::Reported;
 use crate::source::Citation;
 
-/// A property of a reaction that a value rests on.
+/// A property of a reaction or a substance that a value rests on.
 pub struct Case<'a> {
     pub cx: &'a Cx<'a>,
     pub property: Property,
-    pub reaction: &'a Reaction,
+    pub terms: &'a Terms,
     pub t_k: f64,
     pub method: Method,
     pub contributions: Vec<Contribution>,
     pub datasets: Vec<DatasetId>,
     pub call: &'a Call,
     value: &'a Quantity,
+    reported: &'a Reported,
     node: &'a Rc<Node>,
     scale: Scale,
     /// Named before each mistake where the value rests on several properties.
@@ -40,6 +42,7 @@ impl<'a> Case<'a> {
     pub fn of(
         cx: &'a Cx<'a>,
         value: &'a Quantity,
+        reported: &'a Reported,
         node: &'a Rc<Node>,
         call: &'a Call,
         scale: Scale,
@@ -47,10 +50,24 @@ impl<'a> Case<'a> {
     ) -> Option<Case<'a>> {
         let property = Property::of(call.card)?;
         let method = property::method_of(call, cx).ok()?;
-        let (reaction, t_k) = (&**call.reaction(), call.quantity(1).si());
-        let contributions = gather::contributions(reaction, t_k, &method, cx.data()).ok()?;
-        let datasets = gather::datasets_for(reaction, &method.formation, cx.data()).ok()?;
-        Some(Case { cx, property, reaction, t_k, method, contributions, datasets, call, value, node, scale, named })
+        let (terms, t_k) = (call.terms()?, call.quantity(1).si());
+        let contributions = gather::contributions(terms, t_k, &method, cx.data()).ok()?;
+        let datasets = gather::datasets_for(terms, &method.formation, cx.data()).ok()?;
+        Some(Case {
+            cx,
+            property,
+            terms,
+            t_k,
+            method,
+            contributions,
+            datasets,
+            call,
+            value,
+            reported,
+            node,
+            scale,
+            named,
+        })
     }
 
     pub fn r(&self) -> f64 {
@@ -58,12 +75,19 @@ impl<'a> Case<'a> {
     }
 
     pub fn delta_n(&self) -> f64 {
-        self.reaction.delta_n_gas()
+        self.terms.delta_n_gas()
     }
 
     /// A property from other contributions.
     pub fn evaluated(&self, property: Property, contributions: &[Contribution], delta_n: f64) -> Option<f64> {
-        property::evaluate(property, contributions, delta_n, self.t_k, self.r(), self.reaction).ok().map(|made| made.si)
+        // The gas term is taken with the Δn(gas) of the alternative, which the terms as written do not know.
+        let (without, gas_term) = match property {
+            Property::U => (Property::H, delta_n * self.r() * self.t_k),
+            Property::A => (Property::G, delta_n * self.r() * self.t_k),
+            other => (other, 0.0),
+        };
+        let made = property::evaluate(without, contributions, self.terms, self.t_k, self.r()).ok()?;
+        Some(made.si - gas_term)
     }
 
     /// The property with one species' contribution changed.
@@ -75,11 +99,11 @@ impl<'a> Case<'a> {
 
     /// The property at another temperature or by another method.
     pub fn number(&self, t_k: f64, method: &Method) -> Option<f64> {
-        property::number(self.property, self.reaction, t_k, method, self.cx).ok()
+        property::number(self.property, self.terms, t_k, method, self.cx).ok()
     }
 
     pub fn substance(&self, at: usize) -> &Substance {
-        &self.reaction.terms()[at].substance
+        &self.terms.terms()[at].substance
     }
 
     /// Adds a mistake by what the property would have been with it.
@@ -92,14 +116,14 @@ impl<'a> Case<'a> {
         sources: impl IntoIterator<Item = Citation>,
     ) {
         let Some(si) = with_mistake else { return };
-        let Some(price) = price_of(self.value.node(), self.node, si).0 else { return };
+        let price = self.reported.price(&BTreeMap::from([(self.node.id(), si)])).0;
         let (Some(before), Some(after)) = (self.scale.of(self.value.si()), self.scale.of(self.value.si() - price))
         else {
             return;
         };
         let words = if self.named {
             let at = text::shown(&self.call.quantity(1).clone());
-            format!("in {} of {} at {at}: {words}", self.call.card.name.replace('_', " "), self.reaction.text())
+            format!("in {} of {} at {at}: {words}", self.call.card.name.replace('_', " "), self.terms.text())
         } else {
             words
         };

@@ -32,12 +32,12 @@ use std::collections::BTreeMap;
 use std::rc::Rc;
 
 use crate::fault::Fault;
-use crate::model::account::Account;
+use crate::model::answer::Answer;
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value, call_of};
 use crate::model::compare;
 use crate::quantity::{Quantity, text};
 use crate::record::node::{self, LeafKey, Node};
-use crate::record::register::price_of;
+use crate::record::register::Reported;
 use crate::source::Citation;
 use candidate::{Candidate, Mistake, Scale};
 use case::Case;
@@ -141,6 +141,30 @@ impl Gap {
     }
 }
 
+impl Gap {
+    pub(super) fn parts(&self) -> Vec<(&'static str, Value)> {
+        vec![("fits", Value::List(self.fits.iter().map(|fit| self.fit_map(fit)).collect()))]
+    }
+
+    /// Numbers are bare, in the unit of the first value, so that they can be sorted and tested.
+    fn fit_map(&self, fit: &Fit) -> Value {
+        let unit = self.a.unit();
+        let factor = if unit.is_point() { 1.0 } else { unit.factor };
+        let text = |text: &str| Value::Text(text.into());
+        let sources = fit.sources.iter().map(|source| text(&source.to_string())).collect();
+        let entries = [
+            ("id", text(fit.told.mistake.id())),
+            ("words", text(&fit.told.words)),
+            ("value", text(if fit.told.in_first { "a" } else { "b" })),
+            ("predicted", Value::Number(fit.predicted / factor)),
+            ("residual", Value::Number(fit.residual / factor)),
+            ("chance", Value::Number(fit.chance)),
+            ("sources", Value::List(sources)),
+        ];
+        Value::Options(Rc::new(entries.into_iter().map(|(name, value)| (name.to_owned(), value)).collect()))
+    }
+}
+
 /// Every mistake in either value, each with the gap b - a that it leaves.
 fn trials(cx: &Cx, a: &Quantity, b: &Quantity, scale: Scale, left_out: &mut Vec<String>) -> Vec<Trial> {
     // What can happen to a finished figure reads the same from both sides, so it is told of the second.
@@ -158,17 +182,17 @@ fn trials(cx: &Cx, a: &Quantity, b: &Quantity, scale: Scale, left_out: &mut Vec<
 }
 
 fn properties(cx: &Cx, value: &Quantity, scale: Scale, out: &mut Vec<Candidate>, left_out: &mut Vec<String>) {
-    let history = node::history(value.node());
+    let reported = Reported::of(value.node());
     let is_property = |call: &Call| crate::model::property::Property::of(call.card).is_some();
     let of_property = |node: &'_ Rc<Node>| call_of(node).is_some_and(is_property);
-    let nodes: Vec<&Rc<Node>> = history.iter().filter(|node| of_property(node)).collect();
+    let nodes: Vec<&Rc<Node>> = reported.history().iter().filter(|node| of_property(node)).collect();
     if nodes.len() > MOST_PROPERTIES {
         left_out.push(format!("mistakes inside a value that rests on {} properties of reactions", nodes.len()));
         return;
     }
     for node in &nodes {
         let Some(call) = call_of(node) else { continue };
-        let Some(case) = Case::of(cx, value, node, call, scale, nodes.len() > 1) else { continue };
+        let Some(case) = Case::of(cx, value, &reported, node, call, scale, nodes.len() > 1) else { continue };
         reaction::candidates(&case, out);
         species::candidates(&case, out, left_out);
     }
@@ -177,14 +201,14 @@ fn properties(cx: &Cx, value: &Quantity, scale: Scale, out: &mut Vec<Candidate>,
 /// Two neighbouring digits of a typed figure swapped.
 fn typed_digits(value: &Quantity, scale: Scale, out: &mut Vec<Candidate>) {
     let Some(y) = scale.of(value.si()) else { return };
-    for sensitivity in value.sensitivities() {
-        let Some(input) = sensitivity.input().filter(|input| matches!(input.key, LeafKey::Typed { .. })) else {
-            continue;
-        };
-        let Some(label) = &input.label else { continue };
+    let reported = Reported::of(value.node());
+    // Digits of a chosen temperature are swapped where the property is computed anew with it.
+    for sensitivity in value.sensitivities().into_iter().filter(|sensitivity| !sensitivity.chosen) {
+        let typed = sensitivity.input().filter(|input| matches!(input.key, LeafKey::Typed { .. }));
+        let Some(label) = typed.and_then(|input| input.label.as_ref()) else { continue };
         for swapped in digits::swapped(label) {
             let Ok(other) = text::parse(&swapped, None, 0) else { continue };
-            let Some(price) = price_of(value.node(), &sensitivity.leaf, other.si()).0 else { continue };
+            let price = reported.price(&BTreeMap::from([(sensitivity.leaf.id(), other.si())])).0;
             let Some(with) = scale.of(value.si() - price) else { continue };
             let words = format!("{label} was typed as {swapped}");
             out.push(Candidate { mistake: Mistake::Digits, words, predicted: with - y, sources: Vec::new() });
@@ -196,7 +220,9 @@ fn typed_digits(value: &Quantity, scale: Scale, out: &mut Vec<Candidate>) {
 /// tables is not rounded, and a mistake in it starts from the same figures.
 fn rounding_of(value: &Quantity) -> f64 {
     let typed = |input: &node::Input| matches!(input.key, LeafKey::Typed { .. } | LeafKey::Repeated { .. });
-    let parts = value.sensitivities().into_iter().filter_map(|sensitivity| {
+    // A temperature that was chosen is what it says, to all digits.
+    let measured = value.sensitivities().into_iter().filter(|sensitivity| !sensitivity.chosen);
+    let parts = measured.filter_map(|sensitivity| {
         let digit = sensitivity.input().filter(|input| typed(input))?.digit?;
         Some((0.5 * sensitivity.derivative * digit).abs())
     });
@@ -310,5 +336,5 @@ pub static EXPLAIN_GAP: Card = Card {
 
 fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     let gap = Gap::of(cx, call.quantity(0), call.quantity(1))?;
-    Ok(Value::Account(Account::Gap(Rc::new(gap))))
+    Ok(Value::Answer(Answer::Gap(Rc::new(gap))))
 }

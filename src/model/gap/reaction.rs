@@ -6,7 +6,7 @@ use crate::model::card::{Value, call_of};
 use crate::model::function::T_REFERENCE;
 use crate::model::gap::candidate::{Candidate, Mistake, Scale};
 use crate::model::gap::case::{Case, cited};
-use crate::model::gap::digits;
+use crate::model::gap::{digits, whole};
 use crate::model::gather::{self, Formation, HeatCapacity, Method};
 use crate::model::property::Property;
 use crate::model::reaction::Reaction;
@@ -14,8 +14,8 @@ use crate::num::math;
 use crate::quantity::{Quantity, round, text};
 use crate::record::node::{self, LeafKey};
 use crate::source::Citation;
+use crate::units;
 use crate::units::constants::{STANDARD_ATMOSPHERE, STANDARD_PRESSURE};
-use crate::units::{self, table};
 
 /// What each mistake about the reaction would do.
 pub fn candidates(case: &Case, out: &mut Vec<Candidate>) {
@@ -96,16 +96,15 @@ fn standard_pressure(case: &Case, out: &mut Vec<Candidate>) {
 
 /// Degrees Celsius for kelvin, and digits of the temperature swapped.
 fn temperature(case: &Case, out: &mut Vec<Candidate>) {
-    let celsius = table::lookup("degC").expect("the unit table has the degree Celsius").row;
-    let offset = celsius.offset.expect("a temperature scale has an offset");
+    let (offset, source) = whole::celsius_zero();
     // A difference of two decimals is off in the last bits, which nobody typed.
     let shown = |t: f64| format!("{t:.6}").trim_end_matches('0').trim_end_matches('.').to_owned();
     let (t_k, up, down) = (case.t_k, case.t_k + offset, case.t_k - offset);
     let words = format!("{} °C was taken where {} K was meant", shown(t_k), shown(t_k));
-    case.push(out, Mistake::Celsius, words, case.number(up, &case.method), [celsius.citation()]);
+    case.push(out, Mistake::Celsius, words, case.number(up, &case.method), [source.clone()]);
     if down > 0.0 {
         let words = format!("{} K was taken where {} °C was meant", shown(down), shown(down));
-        case.push(out, Mistake::Celsius, words, case.number(down, &case.method), [celsius.citation()]);
+        case.push(out, Mistake::Celsius, words, case.number(down, &case.method), [source.clone()]);
     }
     let typed = case.call.quantity(1).node().input();
     let Some(label) = typed.filter(|input| matches!(input.key, LeafKey::Typed { .. })).and_then(|i| i.label.as_ref())
@@ -147,12 +146,10 @@ fn dataset(case: &Case, out: &mut Vec<Candidate>) {
         return;
     }
     let data = case.cx.data();
-    for id in
-        gather::covering(case.reaction, data).into_iter().filter(|id| !case.datasets.iter().all(|used| used == id))
-    {
+    for id in gather::covering(case.terms, data).into_iter().filter(|id| !case.datasets.iter().all(|used| used == id)) {
         let name = data.dataset(&id).map_or_else(|| id.to_string(), |dataset| dataset.short.to_string());
         let method = Method { formation: Formation::Of(id.clone()), ..case.method.clone() };
-        let figures = gather::contributions(case.reaction, case.t_k, &method, data).unwrap_or_default();
+        let figures = gather::contributions(case.terms, case.t_k, &method, data).unwrap_or_default();
         let sources = cited(figures.iter().map(|contribution| &contribution.formation));
         let words = format!("the formation enthalpies are those of {name}");
         case.push(out, Mistake::Dataset, words, case.number(case.t_k, &method), sources);

@@ -7,14 +7,16 @@ use crate::model::gap::candidate::{Candidate, Mistake};
 use crate::model::gap::case::{Case, cited, is_gas};
 use crate::model::gap::digits;
 use crate::model::gather::{self, Contribution};
-use crate::model::reaction::Term;
+use crate::model::terms::Term;
 use crate::source::Citation;
 
 /// What each mistake about a species would do. `left_out` says what lacked data.
 pub fn candidates(case: &Case, out: &mut Vec<Candidate>, left_out: &mut Vec<String>) {
     for at in 0..case.contributions.len() {
         phases(case, at, out);
-        coefficient(case, at, out);
+        if case.terms.is_reaction() {
+            coefficient(case, at, out);
+        }
         if case.property.uses_formation() {
             zero_of_one(case, at, out);
             datasets(case, at, out);
@@ -29,7 +31,7 @@ pub fn candidates(case: &Case, out: &mut Vec<Candidate>, left_out: &mut Vec<Stri
 /// Another phase of the same substance: its formation enthalpy alone, or altogether.
 fn phases(case: &Case, at: usize, out: &mut Vec<Candidate>) {
     let data = case.cx.data();
-    let term = &case.reaction.terms()[at];
+    let term = &case.terms.terms()[at];
     let mistake = |other: &Substance| {
         let water = other.species.entity.name() == "H2O";
         let fluid = |substance: &Substance| matches!(substance.species.phase.to_string().as_str(), "l" | "g");
@@ -149,7 +151,7 @@ fn zero_of_all(case: &Case, out: &mut Vec<Candidate>, left_out: &mut Vec<String>
 /// The formation enthalpy of one species from another dataset.
 fn datasets(case: &Case, at: usize, out: &mut Vec<Candidate>) {
     let data = case.cx.data();
-    let substance = &case.reaction.terms()[at].substance;
+    let substance = &case.terms.terms()[at].substance;
     for dataset in data.datasets().iter().filter(|dataset| dataset.rank.is_some() && dataset.id != case.datasets[at]) {
         let Some(formation) = gather::formation_of(substance, &dataset.id, data) else { continue };
         let sources = cited([&formation]);

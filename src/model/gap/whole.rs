@@ -3,8 +3,7 @@
 use crate::model::gap::candidate::{Candidate, Mistake, Scale};
 use crate::quantity::Quantity;
 use crate::source::Citation;
-use crate::units::table;
-use crate::units::{Base, What};
+use crate::units::{Base, What, parse, table};
 
 /// Steps of ten that happen: a prefix, or two.
 const POWERS: [i32; 3] = [1, 2, 3];
@@ -69,17 +68,23 @@ fn is_energy(value: &Quantity) -> bool {
     dim.halves(Base::Metre) == 4 && dim.halves(Base::Second) == -4 && matches!(dim.halves(Base::Kilogram), 0 | 2)
 }
 
+/// 0 °C in kelvin, with the source of the unit table.
+pub fn celsius_zero() -> (f64, Citation) {
+    let row = table::lookup("degC").expect("the unit table has the degree Celsius").row;
+    let unit = parse::unit("degC").expect("the unit table has the degree Celsius");
+    (unit.to_si(0.0), row.citation())
+}
+
 fn temperature(value: &Quantity) -> Vec<Candidate> {
     if value.kind().what == What::TemperatureDifference {
         return Vec::new();
     }
-    let celsius = table::lookup("degC").expect("the unit table has the degree Celsius").row;
-    let offset = celsius.offset.expect("a temperature scale has an offset");
+    let (offset, source) = celsius_zero();
     let candidate = |words: &str, predicted: f64| Candidate {
         mistake: Mistake::Celsius,
         words: words.to_owned(),
         predicted,
-        sources: vec![celsius.citation()],
+        sources: vec![source.clone()],
     };
     vec![
         candidate("a figure in kelvin is read in degrees Celsius", offset),
@@ -101,5 +106,7 @@ mod tests {
         assert!(kinds("1 kJ/mol") && kinds("1 J/(K mol)") && kinds("1 kJ/kg[feed]"));
         assert!(!kinds("1 bar") && !kinds("1") && !kinds("300 K"));
         assert_eq!(of("300 K").len(), 2);
+        // SI Brochure, 9th ed., section 2.3.1, from memory: t/°C = T/K - 273.15.
+        assert_eq!(celsius_zero().0, 273.15);
     }
 }

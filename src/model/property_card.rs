@@ -1,0 +1,316 @@
+//! The cards of the properties in `property`: how each is asked, what it leans on, and the figures it was computed from.
+
+use std::rc::Rc;
+
+use crate::fault::Fault;
+use crate::model::card::{Alternative, Arg, Call, Card, Claim, Cx, Default, On, Sources, Takes, Value};
+use crate::model::claims;
+use crate::model::gather::{self, Contribution, Figure, HeatCapacity};
+use crate::model::property::{self, Property};
+use crate::quantity::Quantity;
+
+fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
+    let asked = Property::of(call.card).unwrap_or_else(|| unreachable!("{} is a property's card", call.card.id));
+    Ok(Value::Quantity(property::quantity(asked, call, &property::method_of(call, cx)?, cx)?))
+}
+
+/// The figures of the calculation, each with the number of its source.
+fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> String {
+    let Some(asked) = Property::of(call.card) else { return String::new() };
+    let (Some(terms), t_k) = (call.terms(), call.quantity(1).si()) else { return String::new() };
+    let Ok(method) = property::method_of(call, cx) else { return String::new() };
+    let Ok(contributions) = gather::contributions(terms, t_k, &method, cx.data()) else { return String::new() };
+    let kilo = |figure: &Figure| match &figure.printed {
+        Some(printed) => printed.to_string(),
+        None => format!("{:.3}", figure.si / 1000.0),
+    };
+    let plain =
+        |figure: &Figure| figure.printed.as_ref().map_or_else(|| format!("{:.3}", figure.si), ToString::to_string);
+    let enthalpy = |sources: &mut Sources| {
+        let formation = sum_of(&contributions, sources, |c| Some(&c.formation), kilo);
+        let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), kilo);
+        if increments.is_empty() { formation } else { format!("({formation}) + ({increments})") }
+    };
+    let entropies = |sources: &mut Sources| sum_of(&contributions, sources, |c| c.entropy.as_ref(), plain);
+    let result = format!("{:.3} kJ/mol", value.si() / 1000.0);
+    let per_kelvin = format!("{:.3} J/(K mol)", value.si());
+    let rt = |sources: &mut Sources| {
+        let r = &cx.constants().molar_gas;
+        let source = sources.number(&r.citation());
+        let delta_n = terms.delta_n_gas();
+        let delta_n = if delta_n < 0.0 { format!("({delta_n})") } else { delta_n.to_string() };
+        format!("{delta_n} × {:.8e}[{source}] × {t_k}", r.value / 1000.0)
+    };
+    match asked {
+        Property::H => format!("{} = {result}", enthalpy(sources)),
+        Property::U => {
+            let enthalpy = enthalpy(sources);
+            format!("{enthalpy} - {} = {result}", rt(sources))
+        }
+        Property::G => {
+            let enthalpy = enthalpy(sources);
+            format!("{enthalpy} - {t_k} × ({}) / 1000 = {result}", entropies(sources))
+        }
+        Property::A => {
+            let (enthalpy, entropies) = (enthalpy(sources), entropies(sources));
+            format!("{enthalpy} - {t_k} × ({entropies}) / 1000 - {} = {result}", rt(sources))
+        }
+        Property::S => format!("{} = {per_kelvin}", entropies(sources)),
+        Property::Cp => format!("{} = {per_kelvin}", sum_of(&contributions, sources, |c| c.cp.as_ref(), plain)),
+        Property::K => {
+            let (enthalpy, entropies) = (enthalpy(sources), entropies(sources));
+            let r = &cx.constants().molar_gas;
+            let source = sources.number(&r.citation());
+            format!(
+                "exp(-({enthalpy} - {t_k} × ({entropies}) / 1000) / ({:.8e}[{source}] × {t_k})) = {:.6e}",
+                r.value / 1000.0,
+                value.si()
+            )
+        }
+    }
+}
+
+/// `-393.51[1] + 0[1] - (-110.53)[1]`: terms in the order written, signs as a calculator takes them.
+fn sum_of<'a>(
+    contributions: &'a [Contribution],
+    sources: &mut Sources,
+    pick: impl Fn(&'a Contribution) -> Option<&'a Figure>,
+    show: impl Fn(&Figure) -> String,
+) -> String {
+    let mut line = String::new();
+    for contribution in contributions {
+        let Some(figure) = pick(contribution) else { continue };
+        let (nu, shown) = (contribution.nu, show(figure));
+        let source = figure.input.citation.as_ref().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+        line.push_str(match (line.is_empty(), nu < 0.0) {
+            (true, false) => "",
+            (true, true) => "-",
+            (false, false) => " + ",
+            (false, true) => " - ",
+        });
+        if nu.abs() != 1.0 {
+            line.push_str(&format!("{} × ", nu.abs()));
+        }
+        line.push_str(&if shown.starts_with('-') { format!("({shown}){source}") } else { format!("{shown}{source}") });
+    }
+    line
+}
+
+const OPTIONS: &[Arg] = &[
+    Arg {
+        name: "heat_capacity",
+        takes: Takes::Word(HeatCapacity::WORDS),
+        default: Default::Absent,
+        doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
+    },
+    Arg {
+        name: "formation",
+        takes: Takes::Text,
+        default: Default::Absent,
+        doc: "the dataset of formation enthalpies, such as \"codata-1989\", or \"mixed\"",
+    },
+];
+
+const HEAT_CAPACITY_ONLY: &[Arg] = &[Arg {
+    name: "heat_capacity",
+    takes: Takes::Word(HeatCapacity::WORDS),
+    default: Default::Absent,
+    doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
+}];
+
+const TEMPERATURE: Arg =
+    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "temperature: degC, degF or kelvin" };
+
+const ARGS: &[Arg] = &[
+    TEMPERATURE,
+    Arg {
+        name: "options",
+        takes: Takes::Options(OPTIONS),
+        default: Default::NoOptions,
+        doc: "how it is to be computed",
+    },
+];
+
+const ARGS_WITHOUT_FORMATION: &[Arg] = &[
+    TEMPERATURE,
+    Arg {
+        name: "options",
+        takes: Takes::Options(HEAT_CAPACITY_ONLY),
+        default: Default::NoOptions,
+        doc: "how it is to be computed",
+    },
+];
+
+const CONSTANT_HEAT_CAPACITY: Claim = Claim { id: "constant-heat-capacity", test: claims::constant_heat_capacity };
+const STABLE_PHASE: Claim = Claim { id: "stable-phase", test: claims::stable_phase };
+const FORMATION_DATASET: Claim = Claim { id: "formation-dataset", test: claims::formation_dataset };
+const IDEAL_GAS: Claim = Claim { id: "ideal-gas", test: claims::ideal_gas };
+const CONDENSED_VOLUME: Claim = Claim { id: "condensed-volume-neglected", test: claims::condensed_volume };
+
+const ENERGY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET];
+const GAS_LAW_CLAIMS: &[Claim] =
+    &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET, IDEAL_GAS, CONDENSED_VOLUME];
+const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE];
+
+const SHORTCUTS: &[Alternative] = &[
+    Alternative {
+        id: "constant-heat-capacity",
+        words: "with ΔCp held at its value at 298.15 K",
+        value: claims::with_constant_heat_capacity,
+    },
+    Alternative { id: "no-correction", words: "with the value at 298.15 K", value: claims::without_correction },
+];
+
+const SOURCE: &str = "definitions of the state functions; IUPAC Green Book, 3rd ed., section 2.11 (from memory)";
+
+macro_rules! property_card {
+    ($on:expr, $of:literal, $name:ident, $id:literal, $script:literal, $args:expr, $claims:expr, $gives:literal, $doc:literal) => {
+        pub static $name: Card = Card {
+            id: $id,
+            name: $script,
+            on: $on,
+            args: $args,
+            gives: $gives,
+            doc: $doc,
+            source: SOURCE,
+            example: concat!($of, ".", $script, "(\"450 degC\")"),
+            claims: $claims,
+            alternatives: SHORTCUTS,
+            run,
+            check_line: Some(check_line),
+        };
+    };
+}
+
+macro_rules! reaction_card {
+    ($($rest:tt)*) => {
+        property_card!(On::Reaction, "reaction(\"CO(g) + H2O(g) -> CO2(g) + H2(g)\")", $($rest)*);
+    };
+}
+
+macro_rules! substance_card {
+    ($($rest:tt)*) => {
+        property_card!(On::Substance, "substance(\"CO2(g)\")", $($rest)*);
+    };
+}
+
+reaction_card!(
+    ENTHALPY,
+    "reaction.enthalpy",
+    "enthalpy",
+    ARGS,
+    ENERGY_CLAIMS,
+    "ΔrH° per mole of reaction as written",
+    "Reaction enthalpy at T. ΔrH°(T) = Σ ν [ΔfH°(298.15 K) + H(T) - H(298.15 K)], each species pure, in its standard \
+     state, p° = 1 bar; formation enthalpies from one dataset."
+);
+reaction_card!(
+    INTERNAL_ENERGY,
+    "reaction.internal-energy",
+    "internal_energy",
+    ARGS,
+    GAS_LAW_CLAIMS,
+    "ΔrU° per mole of reaction as written",
+    "Reaction internal energy at T. ΔrU°(T) = ΔrH°(T) - Δn(gas) R T, gases ideal, condensed volumes neglected."
+);
+reaction_card!(
+    GIBBS_ENERGY,
+    "reaction.gibbs-energy",
+    "gibbs_energy",
+    ARGS,
+    ENERGY_CLAIMS,
+    "ΔrG° per mole of reaction as written",
+    "Reaction Gibbs energy at T. ΔrG°(T) = ΔrH°(T) - T ΔrS°(T), p° = 1 bar."
+);
+reaction_card!(
+    HELMHOLTZ_ENERGY,
+    "reaction.helmholtz-energy",
+    "helmholtz_energy",
+    ARGS,
+    GAS_LAW_CLAIMS,
+    "ΔrA° per mole of reaction as written",
+    "Reaction Helmholtz energy at T. ΔrA°(T) = ΔrG°(T) - Δn(gas) R T, gases ideal, condensed volumes neglected."
+);
+reaction_card!(
+    ENTROPY,
+    "reaction.entropy",
+    "entropy",
+    ARGS_WITHOUT_FORMATION,
+    ENTROPY_CLAIMS,
+    "ΔrS° per mole of reaction as written",
+    "Reaction entropy at T. ΔrS°(T) = Σ ν S°(T), third-law entropies without nuclear spin, p° = 1 bar."
+);
+reaction_card!(
+    HEAT_CAPACITY,
+    "reaction.heat-capacity",
+    "heat_capacity",
+    ARGS_WITHOUT_FORMATION,
+    ENTROPY_CLAIMS,
+    "ΔrCp° per mole of reaction as written",
+    "Reaction heat capacity at T. ΔrCp°(T) = Σ ν Cp°(T)."
+);
+reaction_card!(
+    EQUILIBRIUM_CONSTANT,
+    "reaction.equilibrium-constant",
+    "equilibrium_constant",
+    ARGS,
+    ENERGY_CLAIMS,
+    "K°, a pure number on p° = 1 bar",
+    "Standard equilibrium constant at T. K°(T) = exp(-ΔrG°(T)/RT), p° = 1 bar; its uncertainty lives in ln K°. It depends \
+     on temperature only."
+);
+
+substance_card!(
+    SUBSTANCE_ENTHALPY,
+    "substance.enthalpy",
+    "enthalpy",
+    ARGS,
+    ENERGY_CLAIMS,
+    "H° per mole of the substance, zero: the elements at 298.15 K",
+    "Enthalpy at T, counted from the elements at 298.15 K. H°(T) = ΔfH°(298.15 K) + H(T) - H(298.15 K)."
+);
+substance_card!(
+    SUBSTANCE_INTERNAL_ENERGY,
+    "substance.internal-energy",
+    "internal_energy",
+    ARGS,
+    GAS_LAW_CLAIMS,
+    "U° per mole of the substance",
+    "Internal energy at T, counted from the elements at 298.15 K. U°(T) = H°(T) - R T for a gas, taken as ideal; condensed volumes neglected."
+);
+substance_card!(
+    SUBSTANCE_GIBBS_ENERGY,
+    "substance.gibbs-energy",
+    "gibbs_energy",
+    ARGS,
+    ENERGY_CLAIMS,
+    "G° per mole of the substance",
+    "Gibbs energy at T, H counted from the elements at 298.15 K. G°(T) = H°(T) - T S°(T), p° = 1 bar."
+);
+substance_card!(
+    SUBSTANCE_HELMHOLTZ_ENERGY,
+    "substance.helmholtz-energy",
+    "helmholtz_energy",
+    ARGS,
+    GAS_LAW_CLAIMS,
+    "A° per mole of the substance",
+    "Helmholtz energy at T, H counted from the elements at 298.15 K. A°(T) = G°(T) - R T for a gas, taken as ideal; condensed volumes neglected."
+);
+substance_card!(
+    SUBSTANCE_ENTROPY,
+    "substance.entropy",
+    "entropy",
+    ARGS_WITHOUT_FORMATION,
+    ENTROPY_CLAIMS,
+    "S° per mole of the substance",
+    "Third-law entropy at T, without nuclear spin, p° = 1 bar."
+);
+substance_card!(
+    SUBSTANCE_HEAT_CAPACITY,
+    "substance.heat-capacity",
+    "heat_capacity",
+    ARGS_WITHOUT_FORMATION,
+    ENTROPY_CLAIMS,
+    "Cp° per mole of the substance",
+    "Heat capacity at constant pressure at T."
+);

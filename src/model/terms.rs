@@ -1,0 +1,57 @@
+//! A formal sum of species: what a reaction and a pure substance have in common.
+//!
+//! A reaction is Σ ν X per mole of reaction, a substance is 1 X per mole of X. Everything that is computed from species'
+//! records is computed of [`Terms`], so both answer the same questions with the same code.
+
+use std::sync::Arc;
+
+use crate::data::substance::Substance;
+use crate::units::Entity;
+
+/// One species with its stoichiometric number, positive for products.
+#[derive(Clone)]
+pub struct Term {
+    pub substance: Arc<Substance>,
+    pub nu: f64,
+}
+
+/// The sum, and per mole of what it is.
+pub struct Terms {
+    terms: Vec<Term>,
+    per: Entity,
+    text: String,
+}
+
+impl Terms {
+    pub fn new(terms: Vec<Term>, per: Entity, text: String) -> Self {
+        Terms { terms, per, text }
+    }
+
+    pub fn terms(&self) -> &[Term] {
+        &self.terms
+    }
+
+    /// Per mole of this: of reaction as written, or of the substance.
+    pub fn per(&self) -> Entity {
+        self.per
+    }
+
+    pub fn is_reaction(&self) -> bool {
+        self.per == Entity::RXN
+    }
+
+    /// As written, in a form that reads back.
+    pub fn text(&self) -> &str {
+        &self.text
+    }
+
+    /// Sum of the stoichiometric numbers of the gases.
+    pub fn delta_n_gas(&self) -> f64 {
+        self.terms.iter().filter(|term| term.substance.species.is_gas()).map(|term| term.nu).sum()
+    }
+
+    /// The largest stoichiometric number by size: the scale of a tolerance.
+    pub fn largest_nu(&self) -> f64 {
+        self.terms.iter().map(|term| term.nu.abs()).fold(0.0, f64::max)
+    }
+}
