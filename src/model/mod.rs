@@ -23,6 +23,7 @@ pub mod readings;
 pub mod refusal;
 pub mod remedy;
 pub mod review;
+pub mod shortcut;
 pub mod substance;
 pub mod terms;
 pub mod tolerance;
@@ -52,6 +53,8 @@ pub const CARDS: &[&Card] = &[
     &substance::REACTION_INCREMENT,
     &remedy::CORRECTED,
     &remedy::WIDENED,
+    &shortcut::VALID_TO,
+    &shortcut::COMPARE_SHORTCUTS,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,
