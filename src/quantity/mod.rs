@@ -31,7 +31,7 @@ pub struct Quantity {
 impl Quantity {
     /// An input, such as a figure of a table. `si` must be finite.
     pub fn input(si: f64, dim: Dimension, kind: Kind, input: Input, place: Option<Place>) -> Result<Self, Mismatch> {
-        Quantity::from_node(Node::new(si, dim, kind, SmallVec::new(), Origin::Input(input), place))
+        Quantity::from_node(Node::new(si, dim, kind, SmallVec::new(), Origin::Input(Box::new(input)), place))
     }
 
     /// The result of a formula.

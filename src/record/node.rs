@@ -120,7 +120,8 @@ pub trait Step: Any {
 /// How a node came to be.
 #[derive(Clone)]
 pub enum Origin {
-    Input(Input),
+    /// Boxed, since arithmetic makes many nodes and an input would double the size of each.
+    Input(Box<Input>),
     Operator(Operator),
     Step(Rc<dyn Step>),
 }
@@ -219,10 +220,12 @@ impl Node {
 
 impl Drop for Node {
     fn drop(&mut self) {
-        let mut pending: Vec<Rc<Node>> = self.inputs.drain(..).map(|(node, _)| node).collect();
-        while let Some(node) = pending.pop() {
-            if let Ok(mut node) = Rc::try_unwrap(node) {
-                pending.extend(node.inputs.drain(..).map(|(input, _)| input));
+        // In a chain of sums two wait here at a time, so that dropping it takes no memory.
+        let mut pending = std::mem::take(&mut self.inputs);
+        while let Some((mut node, _)) = pending.pop() {
+            let Some(last_use) = Rc::get_mut(&mut node) else { continue };
+            while let Some(input) = last_use.inputs.pop() {
+                pending.push(input);
             }
         }
     }
@@ -268,7 +271,8 @@ mod tests {
     fn leaf(si: f64) -> Rc<Node> {
         let input =
             Input { key: LeafKey::Own(format!("{si}").into()), u: Some(0.1), digit: None, label: None, citation: None };
-        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
+        let origin = Origin::Input(Box::new(input));
+        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), origin, None))
     }
 
     fn combine(operator: Operator, inputs: &[(&Rc<Node>, f64)]) -> Rc<Node> {

@@ -162,7 +162,7 @@ mod tests {
     fn leaf(si: f64) -> Rc<Node> {
         let input =
             Input { key: LeafKey::Own(si.to_string().into()), u: None, digit: None, label: None, citation: None };
-        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
+        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
     }
 
     #[test]

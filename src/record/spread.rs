@@ -4,7 +4,9 @@
 //! `x - x` is 0 ± 0 and two results that rest on one figure cancel as they should. The surprise: an input without a
 //! stated u is *silent*, not exact, and the result says so.
 
-use std::collections::BTreeMap;
+use std::cmp::Ordering;
+use std::collections::binary_heap::PeekMut;
+use std::collections::{BTreeMap, BinaryHeap};
 use std::rc::Rc;
 
 use crate::record::node::{Input, LeafKey, Node};
@@ -56,23 +58,64 @@ impl Spread {
     }
 }
 
+/// One user's share in the adjoint of a node. The largest is the node with the largest id, and of its shares the first.
+struct Share<'a> {
+    node: &'a Rc<Node>,
+    nth: u64,
+    adjoint: f64,
+}
+
+impl Ord for Share<'_> {
+    fn cmp(&self, other: &Self) -> Ordering {
+        // A fixed order of the shares makes their sum the same to the last bit.
+        self.node.id().cmp(&other.node.id()).then(other.nth.cmp(&self.nth))
+    }
+}
+
+impl PartialOrd for Share<'_> {
+    fn partial_cmp(&self, other: &Self) -> Option<Ordering> {
+        Some(self.cmp(other))
+    }
+}
+
+impl PartialEq for Share<'_> {
+    fn eq(&self, other: &Self) -> bool {
+        self.cmp(other).is_eq()
+    }
+}
+
+impl Eq for Share<'_> {}
+
 /// Derivatives of `of` with respect to each input it rests on, in the order of the inputs' keys. Inputs that cancel
 /// exactly are left out.
 pub fn sensitivities(of: &Rc<Node>) -> Vec<Sensitivity> {
-    let mut adjoints: BTreeMap<u64, (Rc<Node>, f64)> = BTreeMap::from([(of.id(), (Rc::clone(of), 1.0))]);
-    let mut leaves: BTreeMap<LeafKey, Sensitivity> = BTreeMap::new();
-    // The largest id first: all users of a node have larger ids, so its adjoint is complete when it is taken out.
-    while let Some((_, (node, adjoint))) = adjoints.pop_last() {
-        if let Some(input) = node.input() {
-            let key = input.key.clone();
-            let entry = leaves.entry(key).or_insert_with(|| Sensitivity { leaf: Rc::clone(&node), derivative: 0.0 });
-            entry.derivative += adjoint;
-            continue;
+    let mut read: BTreeMap<u64, (&Rc<Node>, f64)> = BTreeMap::new();
+    let mut pending = BinaryHeap::from([Share { node: of, nth: 0, adjoint: 1.0 }]);
+    let mut count = 0;
+    // The largest id first: all users of a node have larger ids, so every share of its adjoint is there when it comes.
+    while let Some(Share { node, mut adjoint, .. }) = pending.pop() {
+        while let Some(next) = pending.peek_mut().filter(|next| next.node.id() == node.id()) {
+            adjoint += PeekMut::pop(next).adjoint;
+        }
+        if node.input().is_some() {
+            read.entry(node.id()).or_insert((node, 0.0)).1 += adjoint;
         }
         for (input, partial) in node.inputs() {
-            let entry = adjoints.entry(input.id()).or_insert_with(|| (Rc::clone(input), 0.0));
-            entry.1 += adjoint * partial;
+            let share = adjoint * partial;
+            // Inputs wait in no queue: a sum of many terms would fill it with shares of one and the same.
+            if input.input().is_some() {
+                read.entry(input.id()).or_insert((input, 0.0)).1 += share;
+            } else {
+                count += 1;
+                pending.push(Share { node: input, nth: count, adjoint: share });
+            }
         }
+    }
+    let mut leaves: BTreeMap<&LeafKey, Sensitivity> = BTreeMap::new();
+    for (node, adjoint) in read.into_values().rev() {
+        let Some(input) = node.input() else { continue };
+        let leaf = leaves.entry(&input.key);
+        leaf.or_insert_with(|| Sensitivity { leaf: Rc::clone(node), derivative: 0.0 }).derivative += adjoint;
     }
     leaves.into_values().filter(|leaf| leaf.derivative != 0.0).collect()
 }
@@ -119,7 +162,7 @@ mod tests {
 
     fn leaf(name: &str, si: f64, u: Option<f64>) -> Rc<Node> {
         let input = Input { key: LeafKey::Own(name.into()), u, digit: None, label: None, citation: None };
-        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
+        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
     }
 
     fn weighted(a: &Rc<Node>, by_a: f64, b: &Rc<Node>, by_b: f64) -> Rc<Node> {
@@ -133,6 +176,17 @@ mod tests {
         let (x, x_again, y) = (leaf("x", 2.0, Some(0.3)), leaf("x", 2.0, Some(0.3)), leaf("y", 1.0, Some(0.4)));
         assert_eq!(spread(&weighted(&x, 1.0, &x_again, -1.0)), Spread::Full(0.0));
         assert_eq!(spread(&weighted(&x, 1.0, &y, 1.0)), Spread::Full(0.5));
+    }
+
+    #[test]
+    fn shares_of_one_node_meet_before_they_go_on() {
+        let (x, y) = (leaf("x", 2.0, Some(0.1)), leaf("y", 5.0, Some(0.2)));
+        let a = weighted(&x, 2.0, &y, 1.0);
+        let b = weighted(&a, 1.0, &a, 3.0);
+        let c = weighted(&b, 1.0, &a, 0.5);
+        let derivatives: Vec<f64> = sensitivities(&c).iter().map(|one| one.derivative).collect();
+        assert_eq!(derivatives, [9.0, 4.5]);
+        assert_eq!((derivative(&c, a.id()), derivative(&c, x.id())), (4.5, 9.0));
     }
 
     #[test]
