@@ -319,6 +319,7 @@ fn check_line(cx: &Cx, value: &Quantity, sources: &mut Sources) -> String {
         (Operator::Shift(by), [a]) => format!("{a} + {by}"),
         (Operator::Reciprocal(numerator), [a]) => format!("{numerator} / {a}"),
         (Operator::Power(exponent), [a]) => format!("{a} ^ {exponent}"),
+        (Operator::Raise, [a, b]) => format!("{a} ^ {b}"),
         (Operator::Exp, [a]) => format!("exp {a}"),
         (Operator::Ln, [a]) => format!("ln {a}"),
         (Operator::Absolute, [a]) => format!("|{a}|"),

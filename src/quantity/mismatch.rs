@@ -26,6 +26,10 @@ pub enum Mismatch {
     NotFinite,
     #[error("the exponent {exponent} gives {} no whole power of its units", unit_name(dim))]
     Exponent { exponent: f64, dim: Dimension },
+    #[error(
+        "the exponent {exponent} is uncertain by {u}, and only a positive pure number has such a power, not {base}"
+    )]
+    UncertainExponent { exponent: f64, u: f64, base: String },
     #[error("{function} wants a pure number, not a value in {}", unit_name(dim))]
     NotPure { function: &'static str, dim: Dimension },
     #[error("{function} is taken of a positive number only, not of {number}")]
@@ -52,6 +56,11 @@ impl Mismatch {
 
 fn joiner(verb: &str) -> &'static str {
     if verb == "compare" { "with" } else { "and" }
+}
+
+/// A value as the base of a power.
+pub(super) fn base_name(si: f64, dim: &Dimension) -> String {
+    if dim.is_none() { si.to_string() } else { format!("a value in {}", unit_name(dim)) }
 }
 
 fn unit_name(dim: &Dimension) -> String {
@@ -82,6 +91,7 @@ impl Explain for Mismatch {
             Mismatch::UnitText(unit) => unit.code(),
             Mismatch::NotFinite => "not-finite",
             Mismatch::Exponent { .. } => "exponent-not-whole",
+            Mismatch::UncertainExponent { .. } => "uncertain-exponent",
             Mismatch::NotPure { .. } => "not-a-pure-number",
             Mismatch::NotPositive { .. } => "not-positive",
             Mismatch::AgreementWithoutUncertainty => "agreement-without-uncertainty",
@@ -108,6 +118,9 @@ impl Explain for Mismatch {
             }
             Mismatch::Exponent { .. } => {
                 "whole and half exponents keep their units, as in `x ** 2` and `x ** 0.5`".to_owned()
+            }
+            Mismatch::UncertainExponent { exponent, .. } => {
+                format!("if the exponent is exact, write it as a bare number: `x ** {exponent}`")
             }
             Mismatch::NotPure { function, dim } => {
                 let unit = unit_name(dim);

@@ -77,6 +77,8 @@ pub enum Operator {
     /// A bare number divided by the value.
     Reciprocal(f64),
     Power(f64),
+    /// To the power of another value.
+    Raise,
     Exp,
     Ln,
     Absolute,
@@ -97,6 +99,7 @@ impl Operator {
             (Operator::Shift(by), [a]) => a + by,
             (Operator::Reciprocal(numerator), [a]) => numerator / a,
             (Operator::Power(exponent), [a]) => math::pow(*a, exponent),
+            (Operator::Raise, [a, b]) => math::pow(*a, *b),
             (Operator::Exp, [a]) => math::exp(*a),
             (Operator::Ln, [a]) => math::ln(*a),
             (Operator::Absolute, [a]) => a.abs(),

@@ -142,7 +142,7 @@ fn pairs(engine: &mut Engine, shared: &Shared) {
     engine.register_fn("+", |a: Quantity| a);
     engine.register_fn("**", |context: NativeCallContext<'_>, a: Quantity, b: Quantity| {
         if b.dim().is_none() {
-            done(&context, |place| a.power(b.si(), place))
+            done(&context, |place| a.raised(&b, place))
         } else {
             refuse(&context, Misuse::ExponentWithUnit { unit: b.unit().text.to_string() })
         }
