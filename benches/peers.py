@@ -1,8 +1,8 @@
 """The work of benches/quantity.rs done by two general-purpose Python libraries, for comparison.
 
-Usage: peers.py ITERATIONS REPEATS. Prints one line per row, `NAME SECONDS RESULT`, the time being the best of the repeats:
-the loop `s = s + a * 2` and its two operations alone, and the standard uncertainty of the last value read at the end,
-which is part of the time, since a lazy sum would otherwise be measured half done.
+Usage: peers.py ITERATIONS REPEATS. Prints one line per row, `NAME SECONDS RESULT`, the time being the best of the
+repeats: the loop `s = s + a * 2`, an addition and a multiplication alone. Reading the standard uncertainty of the last
+value is part of the time, since a lazy sum would otherwise be measured half done.
 """
 import sys
 import time

@@ -1,8 +1,8 @@
 //! What defending a number costs: the same work in Rust, in a script, and in Python, printed as ratios of one run.
 //!
-//! The work is the loop `s = s + a * 2` and the reading of u at its end. `benches/peers.py` does it in Python, once with
-//! an uncertainty alone and once with a unit as well. The surprise: only results are compared here, never times; a figure
-//! that is worse than its aim is for a person to judge, on a machine that does nothing else.
+//! The work is the loop `s = s + a * 2` and the reading of u at its end. `benches/peers.py` does it in Python, once
+//! with an uncertainty alone and once with a unit as well. The surprise: only results are compared here, never times; a
+//! figure that is worse than its aim is for a person to judge, on a machine that does nothing else.
 
 use std::cell::Cell;
 use std::collections::BTreeMap;
@@ -21,7 +21,9 @@ use hessbook::session::{Session, on_big_stack};
 use hessbook::units::constants;
 
 const PASSES: u32 = 20_000;
-const REPEATS: u32 = 7;
+/// Each run of ours takes a few milliseconds, so that a single disturbance would last through several.
+const REPEATS: u32 = 25;
+const PEER_REPEATS: u32 = 7;
 const CALLS: u32 = 100_000;
 
 /// Invented values; `peers.py` has the same.
@@ -133,7 +135,7 @@ fn enthalpy() -> [Row; 2] {
 /// The rows of `peers.py` by name, or why there are none.
 fn peers() -> Result<BTreeMap<String, Row>, String> {
     let mut python = Command::new(PYTHON);
-    python.args(["benches/peers.py", &PASSES.to_string(), "5"]);
+    python.args(["benches/peers.py", &PASSES.to_string(), &PEER_REPEATS.to_string()]);
     let output = python.output().map_err(|e| format!("{PYTHON}: {e}; {SETUP}"))?;
     if !output.status.success() {
         let text = String::from_utf8_lossy(&output.stderr);
@@ -154,7 +156,7 @@ fn print(name: &str, row: Row) {
 
 /// One line of ratios: ours, theirs, and how many times faster we aim to be.
 fn ratio(name: &str, ours: Row, theirs: Row, aim: &str) {
-    // Unlike results would mean unlike work. Bound: both add 40,000 rounded terms, each off by at most 1.2e-16 of the sum.
+    // Unlike results would mean unlike work. Bound: both add 20,000 terms, each rounded by at most 1.2e-16 of the sum.
     assert!((ours.u / theirs.u - 1.0).abs() < 1e-11, "{name}: u is {} here and {} there", ours.u, theirs.u);
     println!("  {name:<44}{:>9.1} {aim:>9}", theirs.seconds / ours.seconds);
 }
