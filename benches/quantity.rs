@@ -111,7 +111,7 @@ fn script() -> Row {
 /// One reaction enthalpy with its provenance: natively, and of many calls through the script.
 fn enthalpy() -> [Row; 2] {
     let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
-    let cx = Cx { references: &references, place: None, ordinal: &ordinal };
+    let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
     let asked = |result: Result<Value, hessbook::fault::Fault>| result.unwrap_or_else(|fault| panic!("{fault}"));
     let reaction = asked(card::call(&cx, &REACTION, vec![Value::Text(SHIFT.into())]));
     let t = Value::Quantity(q("450 degC", 0));

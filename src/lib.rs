@@ -25,7 +25,8 @@
 //!
 //! # Invariants
 //! - Modules point one way, in the order above; `notebook` and `kernel` do not know each other.
-//! - `num` to `model` do no input or output, read no clock, draw no random number, and never panic on user input.
+//! - `num` to `model` do no input or output, read no clock, and never panic on user input; the only random numbers are
+//!   those of a seed that stands in the result.
 //! - Order that reaches output comes from a `BTreeMap` or a `Vec`.
 //! - rhai types stay in `script` and `session`, ZeroMQ in `kernel`, notebook JSON in `notebook`.
 //! - Types below `notebook` and `kernel` are not `Serialize`, except the report record, whose name has its version.

@@ -76,17 +76,32 @@ fn executed(args: &Run, stop: Arc<AtomicBool>) -> Result<RunStatus, Fault> {
             "give a .ipynb notebook, or leave out --output and --in-place",
         ));
     }
-    let settings: BTreeMap<String, String> = args.set.iter().cloned().collect();
+    if let Some(folder) = target.and_then(|path| path.parent()).filter(|folder| !folder.as_os_str().is_empty())
+        && !folder.is_dir()
+    {
+        return Err(Fault::new(
+            "output-folder-missing",
+            format!("there is no folder {} to write the notebook to", folder.display()),
+            "make the folder first, or choose another file",
+        ));
+    }
+    let mut settings: BTreeMap<String, String> = BTreeMap::new();
+    for (name, value) in &args.set {
+        if settings.insert(name.clone(), value.clone()).is_some() {
+            return Err(Fault::new("parameter-set-twice", format!("`{name}` is set twice"), "set each parameter once"));
+        }
+    }
     let mut session = Session::new(stop);
     session.set_parameters(settings);
     let name = args.file.display().to_string();
     let mut progress = Progress { format: args.format, terminal: std::io::stderr().is_terminal() };
     let record = run(&name, &mut source, &mut session, &mut progress);
     progress.clear();
+    // The record comes first: results are not to be lost to a file that cannot be written.
+    print(&record, args.format);
     if let (Some(path), Source::Notebook(notebook)) = (target, &source) {
         notebook.write(path).map_err(|error: FileError| Fault::from(error))?;
     }
-    print(&record, args.format);
     // The process ends here; taking the engine apart first would be a tenth of a short run.
     std::mem::forget(session);
     Ok(record.status)

@@ -9,12 +9,14 @@ use std::sync::{Arc, LazyLock};
 use crate::chem::formula::Formula;
 use crate::chem::species::{Species, SpeciesName, State};
 use crate::fault::Fault;
+use crate::record::correlation::Correlation;
+use crate::record::node::LeafKey;
 use crate::source::{Embedded, STDLIB};
 use crate::units::dimension::Entity;
 
 use super::critical::CriticalTemperature;
 use super::dataset::{Dataset, DatasetId, TableFault};
-use super::formation::Formation;
+use super::formation::{self, Coefficients, Formation};
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
 use super::substance::Substance;
@@ -54,8 +56,12 @@ impl Catalog {
 
     /// The tables among some files; a dataset whose file is missing is simply not there.
     pub fn from_files(files: &[Embedded]) -> Result<Catalog, TableFault> {
-        let Tables { datasets, functions, formations, transitions, critical, names } = Tables::read(files)?;
+        let Tables { datasets, functions, mut formations, coefficients, transitions, critical, names } =
+            Tables::read(files)?;
         let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
+        for group in coefficients {
+            correlate(group, &mut formations, id)?;
+        }
         let mut gathered: BTreeMap<Arc<str>, Gathered> = BTreeMap::new();
         for function in functions {
             let entry = gathered.entry(id(&function.id)).or_default();
@@ -193,6 +199,35 @@ impl Catalog {
     pub fn dataset(&self, id: &DatasetId) -> Option<&Dataset> {
         self.datasets.iter().find(|dataset| dataset.id == *id)
     }
+}
+
+/// Joins correlation coefficients to the formation enthalpies they are of. `id` is the name a substance goes by.
+fn correlate(
+    group: Coefficients,
+    formations: &mut [Formation],
+    id: impl Fn(&Arc<str>) -> Arc<str>,
+) -> Result<(), TableFault> {
+    let Coefficients { dataset, path, records, r } = group;
+    let unusable = |why: String| TableFault::Correlation { path: path.to_owned(), why };
+    let is_of = |formation: &Formation, record: &Arc<str>| formation.dataset == dataset && formation.id == *record;
+    if let Some(unknown) = records.iter().find(|record| !formations.iter().any(|one| is_of(one, record))) {
+        return Err(unusable(format!("it has no record {unknown}")));
+    }
+    let key = |record| LeafKey::Datum {
+        dataset: dataset.shared(),
+        record: id(record),
+        field: formation::FIELD,
+        t_bits: 0,
+        way: "",
+    };
+    let made = Correlation::new(records.iter().map(key).collect(), r).map_err(|error| unusable(error.to_string()))?;
+    let made = Arc::new(made);
+    for formation in formations.iter_mut().filter(|one| records.iter().any(|record| is_of(one, record))) {
+        if formation.correlation.replace(Arc::clone(&made)).is_some() {
+            return Err(unusable(format!("{} is in two groups", formation.id)));
+        }
+    }
+    Ok(())
 }
 
 /// Makes a substance of its records.

@@ -234,6 +234,8 @@ pub enum TableFault {
     Figure { path: String, record: String, column: &'static str },
     /// A record's id or formula names no species.
     Name { record: String, why: String },
+    /// Numbers that are no correlation coefficients of records of the table.
+    Correlation { path: String, why: String },
 }
 
 impl fmt::Display for TableFault {
@@ -244,6 +246,9 @@ impl fmt::Display for TableFault {
                 write!(f, "cannot read the figure {column} of {record} in the data table {path}")
             }
             TableFault::Name { record, why } => write!(f, "the record {record} names no species: {why}"),
+            TableFault::Correlation { path, why } => {
+                write!(f, "cannot use the correlation coefficients in the data table {path}: {why}")
+            }
         }
     }
 }
@@ -254,6 +259,7 @@ impl Explain for TableFault {
             TableFault::Unreadable { .. } => "data-table-unreadable",
             TableFault::Figure { .. } => "data-figure-unreadable",
             TableFault::Name { .. } => "data-record-nameless",
+            TableFault::Correlation { .. } => "data-correlation-unusable",
         }
     }
 
@@ -262,6 +268,10 @@ impl Explain for TableFault {
             TableFault::Unreadable { .. } => "compare the file with a shipped one of the same schema".to_owned(),
             TableFault::Figure { .. } => {
                 "write figures as decimal text, and declare a divisor where uncertainties are printed".to_owned()
+            }
+            TableFault::Correlation { .. } => {
+                "give one row of coefficients per record, symmetric, with 1 on the diagonal, to as many digits as are printed"
+                    .to_owned()
             }
             TableFault::Name { .. } => "give the record an id with phase, as CO2(g), and a formula".to_owned(),
         }

@@ -7,6 +7,7 @@ use std::sync::Arc;
 
 use serde::Deserialize;
 
+use crate::record::correlation::Correlation;
 use crate::source::{Citation, Embedded};
 
 use super::dataset::{self, Column, Dataset, DatasetId, Datum, Figure, Heading, TableFault};
@@ -41,6 +42,8 @@ pub struct Formation {
     pub cas: Option<Arc<str>>,
     /// Standard enthalpy of formation at 298.15 K.
     pub dhf: Datum,
+    /// How it is correlated with other formation enthalpies of its table, where the source gives that.
+    pub correlation: Option<Arc<Correlation>>,
     /// The same at 0 K.
     pub dhf_0: Option<Datum>,
     /// Standard entropy at 298.15 K.
@@ -69,6 +72,7 @@ impl Formation {
             name: Some(function.name.clone()),
             cas: function.cas.clone(),
             dhf: Datum::formation_j_mol(function.dhf_298),
+            correlation: None,
             dhf_0: None,
             s: None,
             cp: None,
@@ -84,6 +88,30 @@ impl Formation {
 
 pub(super) const SCHEMA: &str = "hessbook-formation/1";
 
+/// The field by which formation enthalpies are told apart as inputs, singular, as in "formation enthalpy of CO2(g)".
+pub const FIELD: &str = "formation enthalpy";
+
+/// Correlation coefficients of formation enthalpies at 298.15 K, as a table gives them:
+/// `"dhf_298_correlations": [{"records": ["CO(g)", "CO2(g)"], "r": [[1, 0.6], [0.6, 1]]}]`.
+///
+/// No shipped table has the member, since no coefficients were read from a source; a table that has it needs nothing else.
+#[derive(Debug)]
+pub(super) struct Coefficients {
+    pub dataset: DatasetId,
+    pub path: &'static str,
+    /// Ids of records, as the table has them.
+    pub records: Vec<Arc<str>>,
+    /// Row by row.
+    pub r: Vec<f64>,
+}
+
+#[derive(Deserialize)]
+struct Group<'a> {
+    #[serde(borrow)]
+    records: Vec<&'a str>,
+    r: Vec<Vec<f64>>,
+}
+
 #[derive(Deserialize)]
 struct Page<'a> {
     #[serde(borrow)]
@@ -92,6 +120,8 @@ struct Page<'a> {
     p_standard_pa: f64,
     #[serde(borrow)]
     records: Vec<Record<'a>>,
+    #[serde(borrow, default)]
+    dhf_298_correlations: Vec<Group<'a>>,
 }
 
 #[derive(Deserialize)]
@@ -117,14 +147,21 @@ struct Record<'a> {
     check: Option<&'a str>,
 }
 
-/// Reads a file of formation properties into `formations` and its description into `datasets`.
+/// Reads a file of formation properties into `formations` and `coefficients`, and its description into `datasets`.
 pub(super) fn read(
     file: &Embedded,
     datasets: &mut Vec<Dataset>,
     formations: &mut Vec<Formation>,
+    coefficients: &mut Vec<Coefficients>,
 ) -> Result<(), TableFault> {
     let page: Page<'_> = dataset::parse(file)?;
     let dataset = dataset::enter(datasets, &page.dataset, page.title, file, page.records.len());
+    coefficients.extend(page.dhf_298_correlations.into_iter().map(|group| Coefficients {
+        dataset: dataset.clone(),
+        path: file.path,
+        records: group.records.into_iter().map(Arc::from).collect(),
+        r: group.r.concat(),
+    }));
     formations.reserve(page.records.len());
     for record in page.records {
         let datum = |figure: &Figure<'_>, column, name| {
@@ -144,6 +181,7 @@ pub(super) fn read(
             name: record.name.map(Arc::from),
             cas: record.cas.map(Arc::from),
             dhf: datum(&record.dhf_298, Column::Formation, "dhf_298")?,
+            correlation: None, // Joined by the catalogue, which knows by which names records go.
             dhf_0: maybe(&record.dhf_0, Column::Formation, "dhf_0")?,
             s: maybe(&record.s_298, Column::Entropy, "s_298")?,
             cp: maybe(&record.cp_298, Column::Entropy, "cp_298")?,

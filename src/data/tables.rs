@@ -7,7 +7,7 @@ use crate::source::Embedded;
 
 use super::critical::CriticalTemperature;
 use super::dataset::{Dataset, TableFault};
-use super::formation::Formation;
+use super::formation::{Coefficients, Formation};
 use super::function::Function;
 use super::names::Names;
 use super::transition::Transition;
@@ -19,6 +19,7 @@ pub(super) struct Tables {
     pub datasets: Vec<Dataset>,
     pub functions: Vec<Function>,
     pub formations: Vec<Formation>,
+    pub coefficients: Vec<Coefficients>,
     pub transitions: Vec<Transition>,
     pub critical: Vec<CriticalTemperature>,
     pub names: Names,
@@ -30,7 +31,9 @@ impl Tables {
         for file in files {
             match schema(file.bytes) {
                 Some(function::SCHEMA) => function::read(file, &mut tables.datasets, &mut tables.functions)?,
-                Some(formation::SCHEMA) => formation::read(file, &mut tables.datasets, &mut tables.formations)?,
+                Some(formation::SCHEMA) => {
+                    formation::read(file, &mut tables.datasets, &mut tables.formations, &mut tables.coefficients)?;
+                }
                 Some(transition::SCHEMA) => transition::read(file, &mut tables.datasets, &mut tables.transitions)?,
                 Some(critical::SCHEMA) => critical::read(file, &mut tables.critical)?,
                 Some(names::SCHEMA) => names::read(file, &mut tables.names)?,

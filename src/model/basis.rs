@@ -55,13 +55,13 @@ impl Explain for BasisError {
             BasisError::NotPerReaction { .. } => "ask a value of a reaction, such as `r.enthalpy(T)`".to_owned(),
             BasisError::NoReaction { entity } => {
                 format!(
-                    "multiply by it yourself, as in `x * q(\"1 mol[rxn]/mol[{entity}]\")` with the number that holds"
+                    "multiply by it yourself, as in `x * exact(\"1 mol[rxn]/mol[{entity}]\")` with the number that holds"
                 )
             }
             BasisError::NotInReaction { known, .. } => format!("choose one of {known}"),
             BasisError::SeveralNumbers { .. } => "take the value per mole before adding the reactions".to_owned(),
             BasisError::SeveralPhases { entity, .. } => {
-                format!("multiply by the number that is meant, as in `x * q(\"1 mol[rxn]/mol[{entity}]\")`")
+                format!("multiply by the number that is meant, as in `x * exact(\"1 mol[rxn]/mol[{entity}]\")`")
             }
         }
     }

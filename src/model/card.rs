@@ -15,6 +15,7 @@ use thiserror::Error;
 
 use crate::data::catalog::Catalog;
 use crate::fault::{Explain, Fault, Place};
+use crate::model::answer::Answer;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::model::terms::Terms;
@@ -36,6 +37,8 @@ pub enum Value {
     Options(Rc<BTreeMap<String, Value>>),
     Reaction(Rc<Reaction>),
     Substance(Rc<PureSubstance>),
+    /// What was asked of an uncertainty.
+    Answer(Answer),
     /// Something no formula takes, by its name in words.
     Other(Rc<str>),
     Nothing,
@@ -53,6 +56,7 @@ impl Value {
             Value::Options(_) => "a map of options",
             Value::Reaction(_) => "a reaction",
             Value::Substance(_) => "a substance",
+            Value::Answer(answer) => answer.sort(),
             Value::Other(name) => name,
             Value::Nothing => "nothing",
         }
@@ -84,6 +88,8 @@ pub enum Takes {
     Word(&'static [&'static str]),
     Quantities,
     Options(&'static [Arg]),
+    /// Whatever it is; the formula looks for itself.
+    Any,
 }
 
 /// What stands for an argument that was not given.
@@ -163,6 +169,8 @@ pub struct Cx<'a> {
     pub place: Option<Place>,
     /// Counts evaluations in a cell, so that inputs typed in a loop are told apart.
     pub ordinal: &'a Cell<u64>,
+    /// Why the work must end now, if it must: to be asked by every loop that may take longer than a millisecond.
+    pub halted: &'a dyn Fn() -> Option<Fault>,
 }
 
 impl<'a> Cx<'a> {
@@ -261,7 +269,14 @@ impl Call {
     }
 }
 
+/// Formulas that hand on the value of their one input as it is.
+const KEEP_VALUE: [&str; 3] = ["quantity.assume", "uncertainty.readings", "uncertainty.tested"];
+
 impl Step for Call {
+    fn name(&self) -> &'static str {
+        self.card.name
+    }
+
     fn does(&self) -> String {
         let mut words: Vec<String> = Vec::new();
         for arg in &self.args {
@@ -274,10 +289,13 @@ impl Step for Call {
                 Value::Options(options) => {
                     words.extend(options.iter().filter_map(|(name, value)| match value {
                         Value::Text(word) => Some(format!("{name}: {word}")),
+                        Value::Number(number) => Some(format!("{name}: {number}")),
+                        Value::List(list) => Some(format!("{name}: {} values", list.len())),
                         _ => None,
                     }));
                 }
-                Value::Flag(_) | Value::List(_) | Value::Other(_) | Value::Nothing => {}
+                Value::List(list) => words.push(format!("{} values", list.len())),
+                Value::Flag(_) | Value::Answer(_) | Value::Other(_) | Value::Nothing => {}
             }
         }
         format!("{}({})", self.card.name, words.join(", "))
@@ -288,15 +306,27 @@ impl Step for Call {
     }
 
     fn arguments(&self) -> Vec<Rc<Node>> {
-        let quantity = |value: &Value| match value {
-            Value::Quantity(value) => vec![Rc::clone(value.node())],
-            Value::List(list) => list
-                .iter()
-                .filter_map(|item| if let Value::Quantity(value) = item { Some(Rc::clone(value.node())) } else { None })
-                .collect(),
-            _ => Vec::new(),
-        };
-        self.args.iter().flat_map(quantity).collect()
+        fn collect(value: &Value, nodes: &mut Vec<Rc<Node>>) {
+            match value {
+                Value::Quantity(value) => nodes.push(Rc::clone(value.node())),
+                Value::List(list) => list.iter().for_each(|item| collect(item, nodes)),
+                Value::Options(options) => options.values().for_each(|item| collect(item, nodes)),
+                _ => {}
+            }
+        }
+        let mut nodes = Vec::new();
+        self.args.iter().for_each(|arg| collect(arg, &mut nodes));
+        nodes
+    }
+
+    fn replay(&self, inputs: &[f64]) -> Option<f64> {
+        if KEEP_VALUE.contains(&self.card.id) { inputs.first().copied() } else { None }
+    }
+
+    fn take_arguments(&mut self) -> Vec<Rc<Node>> {
+        let arguments = self.arguments();
+        self.args.clear();
+        arguments
     }
 
     fn as_any(&self) -> &dyn Any {
@@ -414,6 +444,7 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
     };
     Ok(match (&arg.takes, value) {
         (_, Value::Nothing) if matches!(arg.default, Default::Absent) => Value::Nothing,
+        (Takes::Any, value) => value,
         (Takes::Quantity { unit }, value) => {
             let wanted = unit_parse::unit(unit)?;
             let quantity = as_quantity(cx, value, |v| refused("a quantity", v))?;

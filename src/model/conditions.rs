@@ -1,29 +1,79 @@
 //! The conditions a value holds under, in one line, and the symbol it is written with.
 
-use crate::model::card::{Value, call_of};
+use crate::chem::species::State as Aggregate;
+use crate::model::card::{Call, Value, call_of};
+use crate::model::terms::Terms;
 use crate::quantity::Quantity;
 use crate::quantity::round;
-use crate::units::What;
+use crate::record::node;
+use crate::units::{What, Zero};
 
-/// `723.15 K, 1 bar, each species pure, in its standard state`; empty for plain values.
+/// `723.15 K, 1 bar, each species pure, in its standard state, gases ideal`; empty for plain values.
 pub fn line(value: &Quantity) -> String {
     let Some(state) = value.kind().state() else { return String::new() };
     let mut parts = Vec::new();
     match state.t_k {
-        Some(t_k) => parts.push(format!("{} K", round::shortest(t_k))),
+        Some(t_k) => parts.push(temperature(value, t_k)),
         None => parts.push("temperature: not one value".to_owned()),
     }
     match state.p_pa {
         Some(p_pa) => parts.push(format!("{} bar", round::shortest(p_pa / 1e5))),
         None => parts.push("pressure: not one value".to_owned()),
     }
+    let terms = node::history(value.node()).into_iter().filter_map(|node| call_of(&node).map(species_states));
+    let (gas, pure, solute) = terms.fold((false, false, false), |a, b| (a.0 || b.0, a.1 || b.1, a.2 || b.2));
     if state.standard {
-        parts.push("each species pure, in its standard state".to_owned());
+        if pure || !solute {
+            let ideal = if gas { ", gases ideal" } else { "" };
+            parts.push(format!("each species pure, in its standard state{ideal}"));
+        }
+        if solute {
+            parts.push("each solute in its ideal solution of 1 mol/kg".to_owned());
+        }
     }
-    if let (Some(zero), false) = (&state.zero, value.dim().is_per_reaction() || value.kind().what == What::K) {
+    let per_substance =
+        call_of(value.node()).is_some_and(|call| matches!(call.args.first(), Some(Value::Substance(_))));
+    if let (Some(zero), true) = (&state.zero, per_substance) {
         parts.push(format!("counted from {zero}"));
     }
     parts.join(", ")
+}
+
+/// Whether a call's species are gases, pure phases of any sort, and solutes.
+fn species_states(call: &Call) -> (bool, bool, bool) {
+    let Some(terms) = call.terms() else { return (false, false, false) };
+    let states = || terms.terms().iter().map(|term| term.substance.species.phase.state);
+    let solute = |state| state == Aggregate::Aqueous;
+    (states().any(|s| s == Aggregate::Gas), states().any(|s| !solute(s)), states().any(solute))
+}
+
+/// The temperature, with its uncertainty where it states one. Ten digits: past them there is rounding of scales alone.
+fn temperature(value: &Quantity, t_k: f64) -> String {
+    let asked = call_of(value.node()).and_then(|call| match call.args.get(1) {
+        Some(Value::Quantity(t)) if t.si() == t_k => t.spread().u(),
+        _ => None,
+    });
+    match asked.filter(|u| *u > 0.0) {
+        Some(u) => format!("{} K", round::with_brackets(t_k, u)),
+        None => format!("{} K", rounded(t_k)),
+    }
+}
+
+fn rounded(t_k: f64) -> String {
+    round::shortest(round::significant(t_k, 10).parse().unwrap_or(t_k))
+}
+
+/// The reactions and substances a value was computed from, as written, each once.
+pub fn about(value: &Quantity) -> Vec<String> {
+    let mut texts: Vec<String> = Vec::new();
+    for node in node::history(value.node()) {
+        if let Some(terms) = call_of(&node).and_then(Call::terms)
+            && !texts.iter().any(|text| text == terms.text())
+        {
+            texts.push(terms.text().to_owned());
+        }
+    }
+    texts
 }
 
 /// The symbol of the IUPAC Green Book for what a formula gave: `ΔrH°` for a reaction enthalpy. Arithmetic on state functions
@@ -33,6 +83,13 @@ pub fn symbol(value: &Quantity) -> String {
     let Some(call) = call_of(value.node()) else {
         return if matches!(what, What::PV | What::TS) { what.symbol().to_owned() } else { String::new() };
     };
+    if let Some(Zero::From(from_k)) = value.kind().state().and_then(|state| state.zero.as_ref()) {
+        let (r, t_k) = (
+            if call.terms().is_some_and(Terms::is_reaction) { "Δr" } else { "" },
+            value.kind().state().and_then(|s| s.t_k),
+        );
+        return t_k.map_or_else(String::new, |t_k| format!("{r}H({} K) - {r}H({} K)", rounded(t_k), rounded(*from_k)));
+    }
     match &call.args[..] {
         [Value::Reaction(_), ..] if what == What::K => what.symbol().to_owned(),
         [Value::Reaction(_), ..] => {

@@ -10,12 +10,14 @@ use thiserror::Error;
 
 use crate::data::catalog::Catalog;
 use crate::data::dataset::{Dataset, DatasetId};
+use crate::data::formation;
 use crate::data::function::Function;
 use crate::data::substance::Substance;
 use crate::fault::{Explain, Fault};
 use crate::model::function::{self, T_REFERENCE};
 use crate::model::terms::{Term, Terms};
 use crate::num::math;
+use crate::record::evaluation::Evaluation;
 use crate::record::node::{Input, LeafKey};
 use crate::source::Citation;
 
@@ -36,6 +38,17 @@ pub enum HeatCapacity {
 
 impl HeatCapacity {
     pub const WORDS: &'static [&'static str] = &["full", "constant", "midpoint", "mean"];
+
+    /// How Cp was taken, for the register.
+    pub fn words(self) -> &'static str {
+        match self {
+            HeatCapacity::Full => "integrated",
+            HeatCapacity::Constant => "held at its value at 298.15 K",
+            HeatCapacity::Midpoint => "held at its value half-way",
+            HeatCapacity::Mean => "held at the mean of both ends",
+            HeatCapacity::Neglected => "neglected",
+        }
+    }
 
     pub fn from_word(word: &str) -> HeatCapacity {
         match word {
@@ -255,25 +268,29 @@ fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<
     };
     if let Some(record) = substance.formation(dataset) {
         let digit = if record.dhf.is_convention() { None } else { Some(record.dhf.last_place()) };
-        let input = Input { key, u: record.dhf.u, digit, label: None, citation: Some(record.citation.clone()) };
-        return Some(Figure { si: record.dhf.value, input, printed: Some(record.dhf.printed.clone()) });
+        let evaluation = Evaluation { correlation: record.correlation.clone(), ..Evaluation::UNSTATED };
+        let citation = Some(record.citation.clone());
+        let input = Input { u: record.dhf.u, evaluated: evaluation.kept(), digit, citation, ..Input::of(key) };
+        // A figure that its table prints in J/mol would stand beside others in kJ/mol.
+        let printed = (record.dhf.unit == "kJ/mol").then(|| record.dhf.printed.clone());
+        return Some(Figure { si: record.dhf.value, input, printed });
     }
     let function = substance.function.as_ref()?;
     if function.is_reference_element && function.dhf_298 == 0.0 {
         let citation = Citation::new("convention: an element in its reference state", "");
-        let input = Input { key, u: Some(0.0), digit: None, label: None, citation: Some(citation) };
+        let input = Input { u: Some(0.0), citation: Some(citation), ..Input::of(key) };
         return Some(Figure { si: 0.0, input, printed: Some("0".into()) });
     }
     if function.dataset != *dataset {
         return None;
     }
     // The report prints formation enthalpies in J/mol to three decimals; that is not what they are good for.
-    let input = Input { key, u: None, digit: Some(1.0), label: None, citation: Some(function.citation.clone()) };
+    let input = Input { digit: Some(1.0), citation: Some(function.citation.clone()), ..Input::of(key) };
     Some(Figure { si: function.dhf_298, input, printed: None })
 }
 
 /// Names of the fields that leaves are told apart by, singular, as in "formation enthalpy of CO2(g)".
-pub const FORMATION: &str = "formation enthalpy";
+pub const FORMATION: &str = formation::FIELD;
 pub const HEAT_CAPACITY: &str = "heat capacity";
 pub const ENTROPY: &str = "entropy";
 
@@ -322,17 +339,15 @@ fn contribution(
     let figure = |taken: &Drawn, field: &'static str, digit: f64| Figure {
         si: taken.si,
         input: Input {
-            key: LeafKey::Datum {
+            digit: Some(digit),
+            citation: Some(function.citation.clone()),
+            ..Input::of(LeafKey::Datum {
                 dataset: function.dataset.shared(),
                 record: substance.species.id.clone(),
                 field,
                 t_bits: taken.t_k.to_bits(),
                 way: taken.way,
-            },
-            u: None,
-            digit: Some(digit),
-            label: None,
-            citation: Some(function.citation.clone()),
+            })
         },
         printed: None,
     };
@@ -433,14 +448,66 @@ fn tabulated_entropy(substance: &Substance) -> Option<Figure> {
         t_bits: 0,
         way: "",
     };
-    let input = Input { key, u: datum.u, digit, label: None, citation: Some(record.citation.clone()) };
+    let input = Input { u: datum.u, digit, citation: Some(record.citation.clone()), ..Input::of(key) };
     Some(Figure { si: datum.value, input, printed: Some(datum.printed.clone()) })
 }
 
 #[cfg(test)]
 mod tests {
+    use std::rc::Rc;
+
+    use smallvec::SmallVec;
+
     use super::*;
     use crate::model::reaction::Reaction;
+    use crate::record::node::{Node, Operator, Origin};
+    use crate::record::spread::{Spread, spread};
+    use crate::source::Embedded;
+    use crate::units::{Dimension, Kind};
+
+    /// Two gases with invented figures, u = 0.3 and 0.4 kJ/mol, correlated by `r`.
+    fn invented(r: &str) -> Result<Catalog, crate::data::dataset::TableFault> {
+        let record = |id: &str, formula: &str, value: &str, u: &str| {
+            format!(
+                r#"{{"id": "{id}", "formula": "{formula}", "dhf_298": {{"value": "{value}", "u": "{u}"}},
+                "source": "invented for this test", "obtained": "", "confirmation": "single source"}}"#
+            )
+        };
+        let text = format!(
+            r#"{{"schema": "hessbook-formation/1", "dataset": {{"id": "invented", "short": "invented",
+            "publication": "none", "terms": "none", "uncertainty": "standard", "divisor": 1, "rank": 1}},
+            "title": "invented", "p_standard_pa": 100000, "records": [{}, {}],
+            "dhf_298_correlations": [{{"records": ["CO(g)", "CO2(g)"], "r": {r}}}]}}"#,
+            record("CO(g)", "CO", "-110.0", "0.3"),
+            record("CO2(g)", "CO2", "-390.0", "0.4"),
+        );
+        let file = Embedded { path: "invented.json", bytes: text.leak().as_bytes(), sha256: "" };
+        Catalog::from_files(&[file])
+    }
+
+    #[test]
+    fn correlation_that_a_table_gives_reaches_the_uncertainty() {
+        let data = invented("[[1, 0.5], [0.5, 1]]").unwrap();
+        let leaf = |id: &str| {
+            let figure = formation_of(&data.find(id).unwrap(), &DatasetId::new("invented"), &data).unwrap();
+            let origin = Origin::Input(Box::new(figure.input));
+            Rc::new(Node::new(figure.si, Dimension::none(), Kind::PLAIN, SmallVec::new(), origin, None))
+        };
+        let inputs = SmallVec::from_vec(vec![(leaf("CO2(g)"), 1.0), (leaf("CO(g)"), -1.0)]);
+        let origin = Origin::Operator(Operator::Subtract);
+        let gap = Rc::new(Node::new(-280e3, Dimension::none(), Kind::PLAIN, inputs, origin, None));
+        // 0.3² + 0.4² − 2·0.5·0.12 in (kJ/mol)²
+        let Spread::Full(u) = spread(&gap) else { panic!("both state their u") };
+        assert!((u - 1000.0 * f64::sqrt(0.13)).abs() < 1e-9, "{u}");
+    }
+
+    #[test]
+    fn coefficients_that_cannot_be_are_refused_with_the_table() {
+        for r in ["[[1, 0.5], [0.4, 1]]", "[[1, 2], [2, 1]]", "[[1, 0.5]]"] {
+            let message = invented(r).unwrap_err().to_string();
+            assert!(message.contains("invented.json"), "{message}");
+        }
+    }
 
     #[test]
     fn a_phase_below_298_k_is_joined_to_the_phase_it_melts_into() {

@@ -83,7 +83,7 @@ fn molar_mass(cx: &Cx, entity: Entity, step: Rc<dyn Step>) -> Result<Quantity, F
             way: "",
         };
         let citation = Some(weight.citation.clone());
-        let input = Input { key, u: Some(weight.u_standard), digit: None, label: None, citation };
+        let input = Input { u: Some(weight.u_standard), citation, ..Input::of(key) };
         let leaf = Quantity::input(weight.value_g_mol, Dimension::none(), Kind::PLAIN, input, None)?;
         let partial = count / 1000.0;
         si += partial * weight.value_g_mol;
@@ -217,7 +217,7 @@ pub static WAVENUMBER_ENERGY: Card = Card {
 
 fn constant(cx: &Cx, constant: &units::constants::Constant, dim: Dimension) -> Result<Quantity, Fault> {
     let key = LeafKey::Constant { year: cx.constants().year, name: constant.name };
-    let input = Input { key, u: Some(constant.u), digit: None, label: None, citation: Some(constant.citation()) };
+    let input = Input { u: Some(constant.u), citation: Some(constant.citation()), ..Input::of(key) };
     Ok(Quantity::input(constant.value, dim, Kind::PLAIN, input, None)?)
 }
 
@@ -279,7 +279,7 @@ mod tests {
 
     fn ask(card: &'static Card, args: &[&str]) -> Result<Quantity, Fault> {
         let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
-        let cx = Cx { references: &references, place: None, ordinal: &ordinal };
+        let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
         let mut args: Vec<Value> = args.iter().map(|arg| Value::Text((*arg).into())).collect();
         if card.on == On::Quantity {
             let Value::Text(written) = &args[0] else { unreachable!() };

@@ -2,18 +2,26 @@
 //!
 //! [`CARDS`] is the one list of what the program can compute. Script binding, help, catalogue and checks read it.
 
+pub mod answer;
 pub mod basis;
+pub mod budget;
 pub mod card;
+pub mod check_line;
 pub mod claims;
 pub mod conditions;
+pub mod expanded;
 pub mod function;
 pub mod gather;
+pub mod linearity;
 pub mod mass;
+pub mod monte_carlo;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
 pub mod reaction;
+pub mod readings;
 pub mod refusal;
+pub mod remedy;
 pub mod review;
 pub mod substance;
 pub mod terms;
@@ -26,6 +34,7 @@ pub const CARDS: &[&Card] = &[
     &reaction::REACTION,
     &reaction::BALANCE,
     &substance::SUBSTANCE,
+    &substance::SUBSTANCES,
     &property_card::ENTHALPY,
     &property_card::INTERNAL_ENERGY,
     &property_card::GIBBS_ENERGY,
@@ -40,6 +49,9 @@ pub const CARDS: &[&Card] = &[
     &property_card::SUBSTANCE_ENTROPY,
     &property_card::SUBSTANCE_HEAT_CAPACITY,
     &substance::ENTHALPY_INCREMENT,
+    &substance::REACTION_INCREMENT,
+    &remedy::CORRECTED,
+    &remedy::WIDENED,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,
@@ -52,4 +64,10 @@ pub const CARDS: &[&Card] = &[
     &quantities::UNCERTAINTY,
     &quantities::AGREES,
     &quantities::ASSUME,
+    &readings::READINGS,
+    &readings::CORRELATION,
+    &budget::BUDGET,
+    &expanded::EXPANDED,
+    &monte_carlo::MONTE_CARLO,
+    &linearity::TESTED,
 ];

@@ -28,7 +28,7 @@ use crate::model::gather::{self, Contribution, Figure, Method};
 use crate::model::terms::Terms;
 use crate::num::math;
 use crate::quantity::Quantity;
-use crate::record::node::{Input, LeafKey, Node, Origin};
+use crate::record::node::{Input, LeafKey, Node, Operator, Origin};
 use crate::units::constants::{ConstantSet, STANDARD_PRESSURE};
 use crate::units::{Base, Dimension, Entity, Kind, State, What, Zero};
 
@@ -192,10 +192,11 @@ pub(super) fn dimension(property: Property, per: Entity) -> Dimension {
     }
 }
 
-fn kind(property: Property, t_k: f64) -> Kind {
+fn kind(property: Property, terms: &Terms, t_k: f64) -> Kind {
     let zero = property.uses_formation().then_some(Zero::Elements298);
     let p_pa = Some(STANDARD_PRESSURE.value);
-    Kind::in_state(property.what(), State { zero, t_k: Some(t_k), p_pa, standard: true })
+    let reaction = terms.is_reaction();
+    Kind::in_state(property.what(), State { zero, t_k: Some(t_k), p_pa, standard: true, reaction })
 }
 
 /// The method a call asks for.
@@ -238,19 +239,28 @@ pub fn quantity(property: Property, call: &Rc<Call>, method: &Method, cx: &Cx) -
     if property.uses_gas_law() && delta_n != 0.0 {
         inputs.push((Rc::clone(r.node()), -delta_n * t_k));
     }
-    // A temperature that states no uncertainty is a condition the analyst chose, not a measurement.
-    if t.spread().u().is_some_and(|u| u > 0.0) {
-        inputs.push((Rc::clone(t.node()), evaluated.slope));
-    }
+    inputs.push((as_argument(t), evaluated.slope));
     let step = Rc::clone(call);
     Ok(Quantity::from_step(
         evaluated.si,
         dimension(property, terms.per()),
-        kind(property, t_k),
+        kind(property, terms, t_k),
         inputs,
         step,
         cx.place.clone(),
     )?)
+}
+
+/// A temperature as an input of what is computed at it. One that is typed as it is, without an uncertainty, was chosen and not
+/// measured: its node says so, and the result is not called partial for it.
+pub(super) fn as_argument(t: &Quantity) -> Rc<Node> {
+    let node = t.node();
+    if node.input().is_none_or(|input| input.u.is_some()) {
+        return Rc::clone(node);
+    }
+    let inputs = SmallVec::from_iter([(Rc::clone(node), 1.0)]);
+    let origin = Origin::Operator(Operator::Condition);
+    Rc::new(Node::new(node.si(), node.dim().clone(), node.kind().clone(), inputs, origin, node.place().cloned()))
 }
 
 pub(super) fn leaf(figure: &Figure, property: Property) -> Result<Rc<Node>, Fault> {
@@ -269,7 +279,7 @@ fn gas_constant(constants: &ConstantSet) -> Quantity {
     let r = &constants.molar_gas;
     let dim = Dimension::whole([2, 1, -2, 0, -1, 0]).over(&Dimension::amount(Entity::OPEN));
     let key = LeafKey::Constant { year: constants.year, name: r.name };
-    let input = Input { key, u: Some(r.u), digit: None, label: None, citation: Some(r.citation()) };
+    let input = Input { u: Some(r.u), citation: Some(r.citation()), ..Input::of(key) };
     Quantity::of_node(Rc::new(Node::new(
         r.value,
         dim,
@@ -301,7 +311,7 @@ mod tests {
 
     fn ask(card: &'static Card, equation: &str, t: &str, options: &[(&str, &str)]) -> Result<Quantity, Fault> {
         let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
-        let cx = Cx { references: &references, place: None, ordinal: &ordinal };
+        let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
         let reaction = card::call(&cx, &REACTION, vec![Value::Text(equation.into())])?;
         let options: BTreeMap<String, Value> =
             options.iter().map(|(name, word)| ((*name).to_owned(), Value::Text((*word).into()))).collect();
@@ -357,7 +367,11 @@ mod tests {
     #[test]
     fn a_temperature_without_uncertainty_is_a_condition_and_one_with_it_an_input() {
         let exact = ask(&ENTHALPY, SHIFT, "723.15 K", &[]).unwrap();
-        assert!(exact.sensitivities().iter().all(|s| !matches!(s.input().unwrap().key, LeafKey::Typed { .. })));
+        let typed = |value: &Quantity| {
+            let all = value.sensitivities();
+            all.into_iter().find(|s| matches!(s.input().unwrap().key, LeafKey::Typed { .. })).unwrap()
+        };
+        assert!(typed(&exact).chosen && !typed(&exact).is_silent());
         let sure = exact.spread().u().unwrap();
         let unsure = ask(&ENTHALPY, SHIFT, "723(20) K", &[]).unwrap().spread().u().unwrap();
         assert!(unsure > sure);

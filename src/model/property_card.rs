@@ -16,7 +16,7 @@ fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
 
 /// The figures of the calculation, each with the number of its source.
 fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> String {
-    let Some(property) = Property::of(call.card) else { return String::new() };
+    let Some(asked) = Property::of(call.card) else { return String::new() };
     let (Some(terms), t_k) = (call.terms(), call.quantity(1).si()) else { return String::new() };
     let Ok(method) = property::method_of(call, cx) else { return String::new() };
     let Ok(contributions) = gather::contributions(terms, t_k, &method, cx.data()) else { return String::new() };
@@ -26,11 +26,14 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     };
     let plain =
         |figure: &Figure| figure.printed.as_ref().map_or_else(|| format!("{:.3}", figure.si), ToString::to_string);
-    let formation = sum_of(&contributions, sources, |c| Some(&c.formation), kilo);
-    let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), kilo);
+    let enthalpy = |sources: &mut Sources| {
+        let formation = sum_of(&contributions, sources, |c| Some(&c.formation), kilo);
+        let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), kilo);
+        if increments.is_empty() { formation } else { format!("({formation}) + ({increments})") }
+    };
     let entropies = |sources: &mut Sources| sum_of(&contributions, sources, |c| c.entropy.as_ref(), plain);
-    let enthalpy = if increments.is_empty() { formation } else { format!("({formation}) + ({increments})") };
-    let result = format!("{:.3}", value.si() / 1000.0);
+    let result = format!("{:.3} kJ/mol", value.si() / 1000.0);
+    let per_kelvin = format!("{:.3} J/(K mol)", value.si());
     let rt = |sources: &mut Sources| {
         let r = &cx.constants().molar_gas;
         let source = sources.number(&r.citation());
@@ -38,21 +41,25 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
         let delta_n = if delta_n < 0.0 { format!("({delta_n})") } else { delta_n.to_string() };
         format!("{delta_n} × {:.8e}[{source}] × {t_k}", r.value / 1000.0)
     };
-    match property {
-        Property::H => format!("{enthalpy} = {result}"),
-        Property::U => format!("{enthalpy} - {} = {result}", rt(sources)),
-        Property::G => format!("{enthalpy} - {t_k} × ({}) / 1000 = {result}", entropies(sources)),
+    match asked {
+        Property::H => format!("{} = {result}", enthalpy(sources)),
+        Property::U => {
+            let enthalpy = enthalpy(sources);
+            format!("{enthalpy} - {} = {result}", rt(sources))
+        }
+        Property::G => {
+            let enthalpy = enthalpy(sources);
+            format!("{enthalpy} - {t_k} × ({}) / 1000 = {result}", entropies(sources))
+        }
         Property::A => {
-            let entropies = entropies(sources);
+            let (enthalpy, entropies) = (enthalpy(sources), entropies(sources));
             format!("{enthalpy} - {t_k} × ({entropies}) / 1000 - {} = {result}", rt(sources))
         }
-        Property::S => format!("{} = {:.3}", entropies(sources), value.si()),
-        Property::Cp => {
-            format!("{} = {:.3}", sum_of(&contributions, sources, |c| c.cp.as_ref(), plain), value.si())
-        }
+        Property::S => format!("{} = {per_kelvin}", entropies(sources)),
+        Property::Cp => format!("{} = {per_kelvin}", sum_of(&contributions, sources, |c| c.cp.as_ref(), plain)),
         Property::K => {
+            let (enthalpy, entropies) = (enthalpy(sources), entropies(sources));
             let r = &cx.constants().molar_gas;
-            let entropies = entropies(sources);
             let source = sources.number(&r.citation());
             format!(
                 "exp(-({enthalpy} - {t_k} × ({entropies}) / 1000) / ({:.8e}[{source}] × {t_k})) = {:.6e}",

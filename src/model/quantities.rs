@@ -4,12 +4,13 @@
 use std::rc::Rc;
 
 use smallvec::smallvec;
+use thiserror::Error;
 
-use crate::fault::Fault;
+use crate::fault::{Explain, Fault};
 use crate::model::card::{Arg, Call, Card, Claim, Cx, Default, On, Takes, Value};
 use crate::quantity::{Mismatch, Quantity};
 use crate::record::register::{Finding, Tested};
-use crate::units::{Unit, parse as unit_parse};
+use crate::units::{Unit, What, parse as unit_parse};
 
 const UNIT: Arg = Arg {
     name: "unit",
@@ -145,6 +146,24 @@ pub static ASSUME: Card = Card {
     check_line: None,
 };
 
+/// A temperature on a scale, where the size of a difference is wanted.
+#[derive(Clone, Debug, Error)]
+#[error("`{function}` wants the size of a difference, not a temperature point, {t_k} K")]
+pub struct PointForDifference {
+    pub function: &'static str,
+    pub t_k: f64,
+}
+
+impl Explain for PointForDifference {
+    fn code(&self) -> &'static str {
+        "point-for-difference"
+    }
+
+    fn hint(&self) -> String {
+        "write the difference in kelvin, as in \"2 K\"".to_owned()
+    }
+}
+
 fn in_unit(call: &Call) -> Result<Quantity, Fault> {
     let unit: Unit = unit_parse::unit(call.text(1))?;
     Ok(call.quantity(0).to(unit)?)
@@ -162,6 +181,9 @@ fn attach(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
         ));
     }
     if let Value::Quantity(price) = &call.args[3] {
+        if price.kind().what == What::TemperaturePoint {
+            return Err(PointForDifference { function: "assume", t_k: price.si() }.into());
+        }
         // The price must be a difference of such values, so subtracting it must make sense.
         let fits = price.dim() == value.dim() || price.dim().bindings_to(value.dim()).len() == 1;
         if !fits {
@@ -183,7 +205,7 @@ fn own_assumption(_: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
     vec![Finding {
         id: Rc::clone(call.text(1)),
         claim: Rc::clone(call.text(2)),
-        subject: "the analyst's own step".to_owned(),
+        subject: call.text(2).to_string(),
         at: Rc::clone(value.node()),
         t_k: None,
         tested,

@@ -5,10 +5,12 @@
 
 use std::ops::Deref;
 use std::rc::Rc;
+use std::sync::Arc;
 
 use crate::chem::balance::{self, Party};
 use crate::chem::equation::Equation;
 use crate::data::catalog::Catalog;
+use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Arg, Card, Default, On, Takes, Value};
 use crate::model::terms::{Term, Terms};
@@ -33,6 +35,23 @@ impl Reaction {
         }
         let terms = Terms::new(terms, Entity::RXN, equation.to_string());
         Ok(Reaction { equation, terms })
+    }
+
+    /// The reaction with one species in another phase. Where the reaction already has that phase, the two add up, and
+    /// where they cancel, nothing is left of them.
+    ///
+    /// # Errors
+    /// The catalogue does not have the species.
+    pub fn with(&self, id: &str, instead: &Arc<Substance>, data: &Catalog) -> Result<Reaction, Fault> {
+        let side = |products: bool| {
+            let terms = self.equation.terms().iter().filter(|(_, nu)| nu.is_positive() == products);
+            let named = terms.map(|(species, nu)| {
+                let name = if *species.id == *id { instead.id() } else { &species.id };
+                format!("{} {name}", nu.abs())
+            });
+            named.collect::<Vec<_>>().join(" + ")
+        };
+        Reaction::read(&format!("{} -> {}", side(false), side(true)), data)
     }
 
     pub fn equation(&self) -> &Equation {

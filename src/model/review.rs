@@ -6,11 +6,11 @@
 use std::collections::BTreeMap;
 use std::rc::Rc;
 
-use crate::model::card::{Cx, Sources, call_of};
-use crate::model::{conditions, tolerance};
+use crate::model::card::{Alternative, Cx, Sources, call_of};
+use crate::model::{check_line, conditions, remedy, tolerance};
 use crate::quantity::{Quantity, round};
-use crate::record::node::{self, LeafKey, Node, Operator, Origin};
-use crate::record::register::{Finding, Judgement, Status, Tested, judge, price_of};
+use crate::record::node::LeafKey;
+use crate::record::register::{Finding, Judgement, Reported, Status, Tested, judge};
 use crate::record::spread::Spread;
 use crate::source::Citation;
 
@@ -22,6 +22,8 @@ pub struct Dealing {
     pub label: String,
     /// Which of the rows of that id: what it is about.
     pub subject: String,
+    /// The cell it was decided in.
+    pub cell: String,
     pub decided: Decided,
 }
 
@@ -69,9 +71,13 @@ pub struct Shortcut {
 
 /// What is to be said of a reported value.
 pub struct Review {
+    /// The reactions and substances it was computed from, as written.
+    pub about: Vec<String>,
     pub conditions: String,
     pub check_line: String,
     pub tolerance: f64,
+    /// Half a unit of the last digit the value is shown with, in its unit.
+    pub precision: f64,
     pub rows: Vec<Row>,
     pub alternatives: Vec<Shortcut>,
     pub sources: Vec<Citation>,
@@ -82,73 +88,118 @@ pub struct Review {
 
 /// Reviews a value under the label it is reported with.
 pub fn review(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing]) -> Review {
-    let history = node::history(value.node());
+    let at = At::of(cx, value);
     let mut sources = Sources::default();
-    let check_line = check_line(cx, value, &mut sources);
-    for node in &history {
+    let check_line = check_line::check_line(cx, value, &mut sources);
+    for node in at.reported.history() {
         if let Some(citation) = node.input().and_then(|input| input.citation.as_ref()) {
             sources.number(citation);
         }
     }
-    for step in history.iter().filter_map(|node| node.step()) {
+    for step in at.reported.history().iter().filter_map(|node| node.step()) {
         sources.number(&Citation::new(step.source(), ""));
     }
     let silent = silent_inputs(value);
-    let findings = findings(cx, value, &history, &silent);
+    let findings = findings(cx, &at, &silent);
     for citation in findings.iter().flatten().flat_map(|finding| &finding.sources) {
         sources.number(citation);
     }
-    let judged = judged_rows(cx, label, value, dealings, &findings);
     Review {
+        about: conditions::about(value),
         conditions: conditions::line(value),
         check_line,
-        tolerance: in_unit(value, tolerance::default(value, cx.constants())),
-        rows: judged,
-        alternatives: alternatives(cx, value, &history),
+        tolerance: at.in_unit(at.tolerance),
+        precision: at.half_digit,
+        rows: judged_rows(&at, label, dealings, &findings),
+        alternatives: alternatives(cx, &at),
         sources: sources.list().to_vec(),
         silent,
         cautions: Vec::new(),
     }
 }
 
-fn in_unit(value: &Quantity, si: f64) -> f64 {
-    si / value.unit().factor
+/// A value under review, with what every row needs of it, found once.
+struct At<'a> {
+    value: &'a Quantity,
+    reported: Reported,
+    /// The default tolerance, in SI units.
+    tolerance: f64,
+    /// Half a unit of the last digit shown, in the value's unit.
+    half_digit: f64,
+    factor: f64,
 }
 
-fn judged_rows(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing], groups: &[Vec<Finding>]) -> Vec<Row> {
-    let default = tolerance::default(value, cx.constants());
+impl<'a> At<'a> {
+    fn of(cx: &Cx, value: &'a Quantity) -> Self {
+        let reported = Reported::of(value.node());
+        let factor = value.unit().factor;
+        let tolerance = tolerance::default(value, &reported, cx.constants());
+        At { value, reported, tolerance, half_digit: value.shown().half_digit_si / factor, factor }
+    }
+
+    fn in_unit(&self, si: f64) -> f64 {
+        si / self.factor
+    }
+
+    /// A price in the value's unit, with its unit.
+    fn shown(&self, price: f64) -> String {
+        let unit = crate::units::reader_text(&self.value.unit());
+        format!("{} {unit}", signed(self.half_digit, price)).trim_end().to_owned()
+    }
+}
+
+/// The rows a value rests on, each with its findings, as they stand without a report and without decisions.
+pub fn rows(cx: &Cx, value: &Quantity) -> Vec<(Vec<Finding>, Row)> {
+    let at = At::of(cx, value);
+    findings(cx, &at, &silent_inputs(value))
+        .into_iter()
+        .map(|group| {
+            let judgement = judge(&group, &at.reported, at.tolerance);
+            let row = row(&at, &group, judgement, &[]);
+            (group, row)
+        })
+        .collect()
+}
+
+fn judged_rows(at: &At, label: &str, dealings: &[Dealing], groups: &[Vec<Finding>]) -> Vec<Row> {
     let mut rows = Vec::new();
     let mut held = 0.0;
     for group in groups {
         let own: Vec<&Dealing> = dealings.iter().filter(|d| group.iter().any(|one| d.is_about(label, one))).collect();
-        let limit = own.iter().rev().find_map(|dealing| match &dealing.decided {
-            Decided::Tolerated { limit_si, .. } => Some(*limit_si),
-            Decided::Justified { .. } => None,
-        });
-        let judgement = judge(group, value.node(), limit.unwrap_or(default));
-        if judgement.status == Status::Holds {
-            held += judgement.price.unwrap_or(0.0);
+        let judgement = judge(group, &at.reported, limit_of(&own).unwrap_or(at.tolerance));
+        let of_u = group.iter().any(|finding| matches!(finding.tested, Tested::Spread { .. }));
+        // What was tolerated beyond the default limit is decided about already.
+        if judgement.status == Status::Holds && !of_u {
+            held += judgement.price.filter(|price| price.abs() <= at.tolerance).unwrap_or(0.0);
         }
-        rows.push(row(value, group, judgement, &own));
+        rows.push(row(at, group, judgement, &own));
     }
-    let limit = tolerance::together(value, default);
+    let limit = tolerance::together(at.value, at.tolerance);
     if held.abs() > limit {
-        let limit = signed(value, in_unit(value, limit));
-        let how = format!("the prices of all assumptions that hold, added up, pass {}", limit.trim_start_matches('+'));
+        let shown = at.shown(at.in_unit(limit));
+        let how = format!("the prices of all assumptions that hold, added up, pass {}", shown.trim_start_matches('+'));
         let tested = Tested::Given { price: held, how };
-        let group = [Finding::known("together", "all rows that hold", value.node(), None, tested)];
+        let group = [Finding::known("together", "all rows that hold", at.value.node(), None, tested)];
         let own: Vec<&Dealing> = dealings.iter().filter(|d| d.is_about(label, &group[0])).collect();
-        rows.push(row(value, &group, judge(&group, value.node(), 0.0), &own));
+        rows.push(row(at, &group, judge(&group, &at.reported, limit_of(&own).unwrap_or(0.0)), &own));
     }
     rows.sort_by(|a, b| (a.status, &a.id, &a.subject).cmp(&(b.status, &b.id, &b.subject)));
     rows
 }
 
-fn row(value: &Quantity, group: &[Finding], judgement: Judgement, dealings: &[&Dealing]) -> Row {
+/// The limit an analyst set last.
+fn limit_of(dealings: &[&Dealing]) -> Option<f64> {
+    dealings.iter().rev().find_map(|dealing| match &dealing.decided {
+        Decided::Tolerated { limit_si, .. } => Some(*limit_si),
+        Decided::Justified { .. } => None,
+    })
+}
+
+fn row(at: &At, group: &[Finding], judgement: Judgement, dealings: &[&Dealing]) -> Row {
     let Judgement { status, price, first_order } = judgement;
-    let price = price.map(|price| in_unit(value, price));
+    let price = price.map(|price| at.in_unit(price));
     let note = |finding: &Finding| match &finding.tested {
-        Tested::True { how } | Tested::Given { how, .. } => how.clone(),
+        Tested::True { how } | Tested::Given { how, .. } | Tested::Spread { how, .. } => how.clone(),
         Tested::Better { how, .. } => format!("against {how}"),
         Tested::False { why, .. } => why.clone(),
         Tested::Missing { what } => what.clone(),
@@ -156,15 +207,13 @@ fn row(value: &Quantity, group: &[Finding], judgement: Judgement, dealings: &[&D
     let words = |dealing: &&Dealing| match &dealing.decided {
         Decided::Justified { reason } if status == Status::Holds => format!("justified: {reason}"),
         Decided::Justified { reason } => match price {
-            Some(price) => {
-                let unit = crate::units::reader_text(&value.unit());
-                format!("justified: {reason}; not corrected: {} {unit}", signed(value, price))
-            }
+            Some(price) => format!("justified: {reason}; not corrected: {}", at.shown(price)),
             None => format!("justified: {reason}; not corrected"),
         },
         Decided::Tolerated { written, .. } => format!("tolerated up to {written}"),
     };
-    let dealt: Vec<String> = dealings.iter().map(words).collect();
+    let mut dealt: Vec<String> = dealings.iter().map(words).collect();
+    dealt.extend(widened_by(at, group));
     let places = listed_once(group.iter().filter_map(|finding| finding.at.place().map(ToString::to_string)));
     Row {
         id: group[0].id.to_string(),
@@ -190,9 +239,18 @@ fn listed_once(texts: impl Iterator<Item = String>) -> String {
     once.join("; ")
 }
 
-/// A price for people: signed, with the digits of the value it belongs to, and at least two of its own.
-pub fn signed(value: &Quantity, price: f64) -> String {
-    let half_digit = in_unit(value, value.shown().half_digit_si);
+/// Whether the value was widened for an assumption after the step that leaned on it, in words.
+fn widened_by(at: &At, group: &[Finding]) -> Option<String> {
+    let first = group.iter().map(|finding| finding.at.id()).min()?;
+    let later = at.reported.history().iter().filter(|node| node.id() > first);
+    let widened =
+        later.filter_map(|node| call_of(node)).any(|call| remedy::widens(call, &group[0].id, &group[0].subject));
+    widened.then(|| "widened: its price is in u".to_owned())
+}
+
+/// A price for people, in the unit of its value: signed, with the digits of the value, and at least two of its own.
+/// `half_digit` is half a unit of the last digit that the value is shown with.
+pub fn signed(half_digit: f64, price: f64) -> String {
     let of_value = if half_digit > 0.0 { round::decimals_of_digit(2.0 * half_digit) } else { 3 };
     // Two digits of the price itself, or those of the value, but no more than six in all.
     let own = round::decimals_for(price.abs());
@@ -202,7 +260,8 @@ pub fn signed(value: &Quantity, price: f64) -> String {
 }
 
 /// Findings over the whole history, those of one assumption about one subject together: the rows of the register.
-fn findings(cx: &Cx, value: &Quantity, history: &[Rc<Node>], silent: &[(String, Vec<String>)]) -> Vec<Vec<Finding>> {
+fn findings(cx: &Cx, at_value: &At, silent: &[(String, Vec<String>)]) -> Vec<Vec<Finding>> {
+    let value = at_value.value;
     let mut at: BTreeMap<(Rc<str>, String), usize> = BTreeMap::new();
     let mut groups: Vec<Vec<Finding>> = Vec::new();
     let mut enter = |finding: Finding| {
@@ -215,10 +274,15 @@ fn findings(cx: &Cx, value: &Quantity, history: &[Rc<Node>], silent: &[(String, 
             }
         }
     };
-    for node in history {
+    for node in at_value.reported.history() {
         if let Some(call) = call_of(node) {
             let made = Quantity::of_node(Rc::clone(node));
-            call.card.claims.iter().flat_map(|claim| (claim.test)(cx, call, &made)).for_each(&mut enter);
+            let found = call.card.claims.iter().flat_map(|claim| (claim.test)(cx, call, &made));
+            // A test of the uncertainty of a value says nothing of that of another one.
+            let said = |finding: &Finding| {
+                !matches!(finding.tested, Tested::Spread { .. }) || finding.at.id() == value.node().id()
+            };
+            found.filter(said).for_each(&mut enter);
         }
         if let Some(entity) = node.bound() {
             let what = format!("what the moles are of was not said; taken as {}", entity.name());
@@ -232,27 +296,29 @@ fn findings(cx: &Cx, value: &Quantity, history: &[Rc<Node>], silent: &[(String, 
     groups
 }
 
-fn alternatives(cx: &Cx, value: &Quantity, history: &[Rc<Node>]) -> Vec<Shortcut> {
-    let mut shortcuts: Vec<Shortcut> = Vec::new();
-    for node in history {
+/// What each usual shortcut would have moved the value by, taken in every step that could have taken it.
+fn alternatives(cx: &Cx, at: &At) -> Vec<Shortcut> {
+    let mut taken: Vec<(&Alternative, BTreeMap<u64, f64>)> = Vec::new();
+    for node in at.reported.history() {
         let Some(call) = call_of(node) else { continue };
         let made = Quantity::of_node(Rc::clone(node));
         for alternative in call.card.alternatives {
             let Some(si) = (alternative.value)(cx, call, &made) else { continue };
-            // Price of the shortcut: value by the shortcut minus the value, so the sign of `price_of` is turned.
-            let Some(price) = price_of(value.node(), node, si).0 else { continue };
-            let price = -in_unit(value, price);
-            match shortcuts.iter_mut().find(|known| known.id == alternative.id) {
-                Some(known) => known.price += price,
-                None => shortcuts.push(Shortcut {
-                    id: alternative.id.to_owned(),
-                    words: alternative.words.to_owned(),
-                    price,
-                }),
+            match taken.iter_mut().find(|(known, _)| known.id == alternative.id) {
+                Some((_, instead)) => {
+                    instead.insert(node.id(), si);
+                }
+                None => taken.push((alternative, BTreeMap::from([(node.id(), si)]))),
             }
         }
     }
-    shortcuts
+    let shortcut = |(alternative, instead): (&Alternative, BTreeMap<u64, f64>)| Shortcut {
+        id: alternative.id.to_owned(),
+        words: alternative.words.to_owned(),
+        // Value by the shortcut minus the value: the price of the value over the shortcut, with its sign turned.
+        price: -at.in_unit(at.reported.price(&instead).0),
+    };
+    taken.into_iter().map(shortcut).collect()
 }
 
 /// Inputs that state no u and matter to the value, by field.
@@ -263,7 +329,7 @@ pub fn silent_inputs(value: &Quantity) -> Vec<(String, Vec<String>)> {
     }
     let mut by_field: BTreeMap<String, Vec<String>> = BTreeMap::new();
     for sensitivity in value.sensitivities() {
-        let Some(input) = sensitivity.input().filter(|input| input.u.is_none()) else { continue };
+        let Some(input) = sensitivity.input().filter(|_| sensitivity.is_silent()) else { continue };
         let (field, record) = match &input.key {
             LeafKey::Datum { record, field, .. } => ((*field).to_owned(), record.to_string()),
             _ => ("typed value".to_owned(), input.name()),
@@ -291,46 +357,4 @@ pub fn silent_words(silent: &[(String, Vec<String>)]) -> String {
 fn silent_in_full(silent: &[(String, Vec<String>)]) -> String {
     let one = |(field, records): &(String, Vec<String>)| format!("{} ({})", plural(field), records.join(", "));
     silent.iter().map(one).collect::<Vec<_>>().join(" and ")
-}
-
-/// The figures a value was computed from: by its formula's own line, or, for arithmetic, the line of each formula in it.
-fn check_line(cx: &Cx, value: &Quantity, sources: &mut Sources) -> String {
-    if let Some(line) = own_line(cx, value.node(), sources) {
-        return line;
-    }
-    let Origin::Operator(operator) = value.node().origin() else { return String::new() };
-    let mut names = Vec::new();
-    let mut lines = Vec::new();
-    for (input, _) in value.node().inputs() {
-        let number = round::shortest(Quantity::of_node(Rc::clone(input)).unit().from_si(input.si()));
-        names.push(if number.starts_with('-') { format!("({number})") } else { number });
-        if let Some(line) = own_line(cx, input, sources) {
-            lines.push(line);
-        }
-    }
-    let result = round::shortest(Quantity::of_node(Rc::clone(value.node())).unit().from_si(value.si()));
-    let symbol = |operator: &Operator| match (operator, &names[..]) {
-        (Operator::Add, [a, b]) => format!("{a} + {b}"),
-        (Operator::Subtract, [a, b]) => format!("{a} - {b}"),
-        (Operator::Multiply, [a, b]) => format!("{a} × {b}"),
-        (Operator::Divide, [a, b]) => format!("{a} / {b}"),
-        (Operator::Negate, [a]) => format!("-{a}"),
-        (Operator::Scale(factor), [a]) => format!("{factor} × {a}"),
-        (Operator::Shift(by), [a]) => format!("{a} + {by}"),
-        (Operator::Reciprocal(numerator), [a]) => format!("{numerator} / {a}"),
-        (Operator::Power(exponent), [a]) => format!("{a} ^ {exponent}"),
-        (Operator::Raise, [a, b]) => format!("{a} ^ {b}"),
-        (Operator::Exp, [a]) => format!("exp {a}"),
-        (Operator::Ln, [a]) => format!("ln {a}"),
-        (Operator::Absolute, [a]) => format!("|{a}|"),
-        (_, all) => format!("({}) / {}", all.join(" + "), all.len()),
-    };
-    let own = format!("{} = {result}", symbol(operator));
-    if lines.is_empty() { own } else { format!("{}; {own}", lines.join("; ")) }
-}
-
-fn own_line(cx: &Cx, node: &Rc<Node>, sources: &mut Sources) -> Option<String> {
-    let call = call_of(node)?;
-    let line = call.card.check_line?;
-    Some(line(cx, call, &Quantity::of_node(Rc::clone(node)), sources))
 }

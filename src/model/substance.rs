@@ -10,11 +10,11 @@ use std::ops::Deref;
 use std::rc::Rc;
 use std::sync::Arc;
 
-use smallvec::smallvec;
+use smallvec::SmallVec;
 
 use crate::data::substance::Substance;
 use crate::fault::Fault;
-use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
+use crate::model::card::{Arg, Call, Card, Cx, Default, On, Sources, Takes, Value};
 use crate::model::function::{self, T_REFERENCE};
 use crate::model::gather::{self, Figure, GatherError};
 use crate::model::property::{self, Property};
@@ -68,40 +68,86 @@ pub static SUBSTANCE: Card = Card {
     check_line: None,
 };
 
-pub static ENTHALPY_INCREMENT: Card = Card {
-    id: "substance.enthalpy-increment",
-    name: "enthalpy_increment",
-    on: On::Substance,
-    args: &[
-        Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "end temperature" },
-        Arg {
-            name: "from",
-            takes: Takes::Temperature,
-            default: Default::Absent,
-            doc: "start temperature; 298.15 K unless given",
-        },
-    ],
-    gives: "H(T) - H(from) per mole of the substance, zero: the substance itself at the start",
-    doc: "Enthalpy taken up on heating within one phase, from the function's closed-form integral of Cp.",
-    source: "definition of Cp; IUPAC Green Book, 3rd ed., section 2.11 (from memory)",
-    example: "substance(\"CO2(g)\").enthalpy_increment(\"450 degC\", \"25 degC\")",
+pub static SUBSTANCES: Card = Card {
+    id: "substance.search",
+    name: "substances",
+    on: On::Nothing,
+    args: &[Arg {
+        name: "text",
+        takes: Takes::Text,
+        default: Default::Required,
+        doc: "a part of a name or formula, upper and lower case alike",
+    }],
+    gives: "the names with phase of the substances on record that hold the text",
+    doc: "Lists substances on record by a part of their name or formula.",
+    source: "the shipped tables",
+    example: "substances(\"methan\")",
     claims: &[],
     alternatives: &[],
-    run: increment,
+    run: |cx, call| {
+        let found = cx.data().search(call.text(0));
+        Ok(Value::List(found.iter().map(|substance| Value::Text(substance.id().into())).collect()))
+    },
     check_line: None,
 };
 
-fn increment(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
-    let Value::Substance(substance) = &call.args[0] else {
-        unreachable!("{} is asked of a substance", call.card.id);
+macro_rules! increment_card {
+    ($name:ident, $id:literal, $on:expr, $gives:literal, $doc:literal, $of:literal) => {
+        pub static $name: Card = Card {
+            id: $id,
+            name: "enthalpy_increment",
+            on: $on,
+            args: INCREMENT_ARGS,
+            gives: $gives,
+            doc: $doc,
+            source: "definition of Cp; IUPAC Green Book, 3rd ed., section 2.11 (from memory)",
+            example: concat!($of, ".enthalpy_increment(\"450 degC\", \"25 degC\")"),
+            claims: &[],
+            alternatives: &[],
+            run: increment,
+            check_line: Some(check_line),
+        };
     };
-    let t = call.quantity(1);
-    let from = match &call.args[2] {
-        Value::Quantity(from) => Some(from),
-        _ => None,
-    };
-    let (t_k, from_k) = (t.si(), from.map_or(T_REFERENCE, Quantity::si));
-    let record = substance.record();
+}
+
+const INCREMENT_ARGS: &[Arg] = &[
+    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "end temperature" },
+    Arg {
+        name: "from",
+        takes: Takes::Temperature,
+        default: Default::Absent,
+        doc: "start temperature; 298.15 K unless given",
+    },
+];
+
+increment_card!(
+    ENTHALPY_INCREMENT,
+    "substance.enthalpy-increment",
+    On::Substance,
+    "H(T) - H(from) per mole of the substance, zero: the substance itself at the start",
+    "Enthalpy taken up on heating within one phase, from the function's closed-form integral of Cp.",
+    "substance(\"CO2(g)\")"
+);
+increment_card!(
+    REACTION_INCREMENT,
+    "reaction.enthalpy-increment",
+    On::Reaction,
+    "ΔrH(T) - ΔrH(from) per mole of reaction as written",
+    "Change of the reaction enthalpy between two temperatures: what is added to a figure of one's own at the start.",
+    "reaction(\"CO(g) + H2O(g) -> CO2(g) + H2(g)\")"
+);
+
+/// H(T) and H(from) of one species, with its stoichiometric number.
+struct Heated {
+    nu: f64,
+    end: f64,
+    start: f64,
+    cp: (f64, f64),
+    input: Input,
+}
+
+fn heated(term: &Term, t_k: f64, from_k: f64) -> Result<Heated, Fault> {
+    let record = &term.substance;
     let species = || record.id().to_owned();
     let function = record.function.as_ref().ok_or_else(|| GatherError::NoFunction { species: species(), t_k })?;
     if let Some(outside) = [t_k, from_k].into_iter().find(|t| !function.covers(*t)) {
@@ -109,37 +155,79 @@ fn increment(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
         return Err(GatherError::Range { species: species(), t_k: outside, t_min, t_max }.into());
     }
     let (end, start) = (function::evaluate(function, t_k), function::evaluate(function, from_k));
-    let drawn = |h: f64, t_k: f64| Figure {
-        si: h,
-        input: Input {
-            key: LeafKey::Datum {
-                dataset: function.dataset.shared(),
-                record: record.species.id.clone(),
-                field: gather::HEAT_CAPACITY,
-                t_bits: t_k.to_bits(),
-                way: "integrated from the start",
-            },
-            u: None,
-            digit: Some(1.0),
-            label: None,
-            citation: Some(function.citation.clone()),
-        },
-        printed: None,
+    let input = Input {
+        digit: Some(1.0),
+        citation: Some(function.citation.clone()),
+        ..Input::of(LeafKey::Datum {
+            dataset: function.dataset.shared(),
+            record: record.species.id.clone(),
+            field: gather::HEAT_CAPACITY,
+            t_bits: t_k.to_bits(),
+            way: "integrated from the start",
+        })
     };
-    let si = end.h - start.h;
-    let mut inputs = smallvec![(property::leaf(&drawn(end.h, t_k), Property::H)?, 1.0)];
-    if from_k != T_REFERENCE {
-        inputs.push((property::leaf(&drawn(start.h, from_k), Property::H)?, -1.0));
+    Ok(Heated { nu: term.nu, end: end.h, start: start.h, cp: (end.cp, start.cp), input })
+}
+
+/// The two temperatures of a call, in kelvin.
+fn span(call: &Call) -> (f64, f64) {
+    let from_k = match &call.args[2] {
+        Value::Quantity(from) => from.si(),
+        _ => T_REFERENCE,
+    };
+    (call.quantity(1).si(), from_k)
+}
+
+fn increment(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
+    let Some(terms) = call.terms() else { unreachable!("{} is asked of a reaction or a substance", call.card.id) };
+    let (t_k, from_k) = span(call);
+    let (mut si, mut slopes, mut inputs) = (0.0, (0.0, 0.0), SmallVec::new());
+    for term in terms.terms() {
+        let heated = heated(term, t_k, from_k)?;
+        si += heated.nu * (heated.end - heated.start);
+        slopes = (slopes.0 + heated.nu * heated.cp.0, slopes.1 - heated.nu * heated.cp.1);
+        // What is drawn from the function is the difference; start and end of one function are not two figures.
+        let figure = Figure { si: heated.end - heated.start, input: heated.input, printed: None };
+        inputs.push((property::leaf(&figure, Property::H)?, heated.nu));
     }
-    for (temperature, slope) in [(Some(t), end.cp), (from, -start.cp)] {
-        // A temperature that states no uncertainty is a condition the analyst chose, not a measurement.
-        if let Some(temperature) = temperature.filter(|t| t.spread().u().is_some_and(|u| u > 0.0)) {
-            inputs.push((Rc::clone(temperature.node()), slope));
+    let from = match &call.args[2] {
+        Value::Quantity(from) => Some(from),
+        _ => None,
+    };
+    for (temperature, slope) in [(Some(call.quantity(1)), slopes.0), (from, slopes.1)] {
+        if let Some(temperature) = temperature {
+            inputs.push((property::as_argument(temperature), slope));
         }
     }
-    let p_pa = Some(STANDARD_PRESSURE.value);
-    let kind = Kind::in_state(What::H, State { zero: Some(Zero::From(from_k)), t_k: Some(t_k), p_pa, standard: true });
-    let dim = property::dimension(Property::H, substance.per());
+    let state = State {
+        zero: Some(Zero::From(from_k)),
+        t_k: Some(t_k),
+        p_pa: Some(STANDARD_PRESSURE.value),
+        standard: true,
+        reaction: terms.is_reaction(),
+    };
+    let dim = property::dimension(Property::H, terms.per());
+    let kind = Kind::in_state(What::H, state);
     let step = Rc::clone(call);
     Ok(Value::Quantity(Quantity::from_step(si, dim, kind, inputs, step, cx.place.clone())?))
+}
+
+fn check_line(_: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> String {
+    let Some(terms) = call.terms() else { return String::new() };
+    let (t_k, from_k) = span(call);
+    let mut line = String::new();
+    for term in terms.terms() {
+        let Ok(heated) = heated(term, t_k, from_k) else { return String::new() };
+        let source = heated.input.citation.as_ref().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+        let (end, start) = (heated.end / 1000.0, heated.start / 1000.0);
+        let sign = match (line.is_empty(), heated.nu < 0.0) {
+            (true, false) => "",
+            (true, true) => "-",
+            (false, false) => " + ",
+            (false, true) => " - ",
+        };
+        let nu = if heated.nu.abs() == 1.0 { String::new() } else { format!("{} × ", heated.nu.abs()) };
+        line.push_str(&format!("{sign}{nu}({end:.3} - ({start:.3})){source}"));
+    }
+    format!("{line} = {:.3} kJ/mol", value.si() / 1000.0)
 }

@@ -4,32 +4,47 @@
 //! |ν|. With a partial u: the larger of that and a tenth of the stated part. Scaled alike for S and Cp (t/T) and for ln K
 //! (t/RT). Values that are no reaction property: 1 %. (Common practice, no source.)
 
+use std::rc::Rc;
+
 use crate::model::card::{Call, call_of};
-use crate::model::terms::Terms;
 use crate::num::math;
 use crate::quantity::Quantity;
-use crate::record::node;
+use crate::record::register::Reported;
 use crate::record::spread::Spread;
+use crate::units::What;
 use crate::units::constants::ConstantSet;
-use crate::units::{Of, What};
 
 /// 0.05 kJ/mol.
 const PER_NU: f64 = 50.0;
 const OTHERWISE: f64 = 0.01;
 
 /// The default tolerance of a value, in its SI unit.
-pub fn default(value: &Quantity, constants: &ConstantSet) -> f64 {
+pub fn default(value: &Quantity, reported: &Reported, constants: &ConstantSet) -> f64 {
     let spread = value.spread();
     if let Spread::Full(u) = spread
         && u > 0.0
     {
         return (u / 10.0).max(value.shown().half_digit_si);
     }
-    let fixed = scale(value, constants).map_or(OTHERWISE * value.si().abs(), |per_nu| per_nu * largest_nu(value));
+    let fixed = fixed(value, reported, constants).unwrap_or(OTHERWISE * value.si().abs());
     match spread {
         Spread::Partial { u, .. } => fixed.max(u / 10.0),
         _ => fixed,
     }
+}
+
+/// The tolerance that does not look at u: of a formula's own result, else of the results it was computed from, carried here
+/// by the derivative, so that per kilogram or as a total a value is judged as it is per mole. `None`: it rests on none.
+fn fixed(value: &Quantity, reported: &Reported, constants: &ConstantSet) -> Option<f64> {
+    if let Some(terms) = call_of(value.node()).and_then(Call::terms) {
+        return scale(value, constants).map(|per_nu| per_nu * terms.largest_nu());
+    }
+    let carried = reported.history().iter().filter_map(|node| {
+        let terms = call_of(node)?.terms()?;
+        let own = scale(&Quantity::of_node(Rc::clone(node)), constants)? * terms.largest_nu();
+        Some(own * reported.derivative(node.id()).abs())
+    });
+    carried.filter(|t| *t > 0.0).reduce(f64::max)
 }
 
 /// How large the prices of all rows that hold may be together: u/3, where u is complete. Where it is not, the stated part
@@ -44,17 +59,11 @@ pub fn together(value: &Quantity, one: f64) -> f64 {
 /// The tolerance for |ν| = 1, for values that are reaction properties at one temperature.
 fn scale(value: &Quantity, constants: &ConstantSet) -> Option<f64> {
     let t_k = value.kind().state().and_then(|state| state.t_k);
-    let molar = value.dim().entities().iter().any(|(of, _, halves)| *of == Of::Amount && *halves == -2);
     match value.kind().what {
-        What::S | What::Cp | What::Cv if molar => t_k.map(|t| PER_NU / t),
+        What::S | What::Cp | What::Cv => t_k.map(|t| PER_NU / t),
         // A tolerance in ln K, taken to K itself.
         What::K => t_k.map(|t| value.si() * math::expm1(PER_NU / (constants.molar_gas.value * t))),
-        _ if molar => Some(PER_NU),
+        What::U | What::H | What::A | What::G => Some(PER_NU),
         _ => None,
     }
-}
-
-fn largest_nu(value: &Quantity) -> f64 {
-    let largest = |call: &Call| call.terms().map_or(1.0, Terms::largest_nu);
-    node::history(value.node()).iter().filter_map(|node| call_of(node).map(largest)).fold(1.0, f64::max)
 }

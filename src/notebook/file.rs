@@ -22,6 +22,8 @@ pub enum FileError {
     NotANotebook { path: PathBuf, why: String },
     #[error("{path} is a notebook of format {major}, and this program reads format 4", path = path.display())]
     Format { path: PathBuf, major: i64 },
+    #[error("{path} is a notebook in {language}, and this program runs rhai", path = path.display())]
+    Language { path: PathBuf, language: String },
     #[error("cannot write {path}: {why}", path = path.display())]
     Write { path: PathBuf, why: String },
 }
@@ -32,6 +34,7 @@ impl Explain for FileError {
             FileError::Read { .. } => "file-unreadable",
             FileError::NotANotebook { .. } => "not-a-notebook",
             FileError::Format { .. } => "notebook-format",
+            FileError::Language { .. } => "notebook-language",
             FileError::Write { .. } => "file-unwritable",
         }
     }
@@ -45,12 +48,18 @@ impl Explain for FileError {
             FileError::Format { .. } => {
                 "open and save it in a current notebook front end, which writes format 4".to_owned()
             }
+            FileError::Language { .. } => {
+                "choose the kernel of this program in the front end, and save the notebook".to_owned()
+            }
             FileError::Write { .. } => {
                 "check the folder's rights and the space left; the old file is untouched".to_owned()
             }
         }
     }
 }
+
+/// The language of cells, as the kernel names it.
+const LANGUAGE: &str = "rhai";
 
 /// One code cell.
 #[derive(Clone, Debug, PartialEq)]
@@ -99,7 +108,9 @@ impl NotebookFile {
         let read = |why: std::io::Error| FileError::Read { path: path.to_owned(), why: why.to_string() };
         let bytes = std::fs::read(path).map_err(read)?;
         let refused = |why: String| FileError::NotANotebook { path: path.to_owned(), why };
-        let tree: Value = serde_json::from_slice(&bytes).map_err(|e| refused(e.to_string()))?;
+        // Some editors begin a file with a byte order mark.
+        let text = bytes.strip_prefix(b"\xef\xbb\xbf").unwrap_or(&bytes);
+        let tree: Value = serde_json::from_slice(text).map_err(|e| refused(e.to_string()))?;
         let Value::Object(tree) = tree else { return Err(refused("it is no JSON object".to_owned())) };
         match tree.get("nbformat").and_then(Value::as_i64) {
             Some(4) => {}
@@ -109,6 +120,9 @@ impl NotebookFile {
         let Some(Value::Array(cells)) = tree.get("cells") else {
             return Err(refused("it has no list of cells".to_owned()));
         };
+        if let Some(language) = language_of(&tree).filter(|language| *language != LANGUAGE) {
+            return Err(FileError::Language { path: path.to_owned(), language: language.to_owned() });
+        }
         let mut quirks = Vec::new();
         if tree.get("nbformat_minor").and_then(Value::as_i64) != Some(5) {
             quirks.push("the minor version of its format is not 5".to_owned());
@@ -202,8 +216,13 @@ impl NotebookFile {
 /// # Errors
 /// As the file system says.
 pub fn write_whole(path: &Path, bytes: &[u8]) -> std::io::Result<()> {
+    // A link stays a link, and what it points to is written; a pipe or device is no place for a notebook.
+    let path = &std::fs::canonicalize(path).unwrap_or_else(|_| path.to_owned());
+    if std::fs::metadata(path).is_ok_and(|there| !there.is_file()) {
+        return Err(std::io::Error::other("it is there and is no regular file"));
+    }
     let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(Path::new("."));
-    let mut file = tempfile::NamedTempFile::new_in(folder)?;
+    let mut file = tempfile::Builder::new().permissions(readable()).tempfile_in(folder)?;
     file.write_all(bytes)?;
     file.as_file().sync_all()?;
     if let Ok(old) = std::fs::metadata(path) {
@@ -211,6 +230,19 @@ pub fn write_whole(path: &Path, bytes: &[u8]) -> std::io::Result<()> {
     }
     file.persist(path).map_err(|error| error.error)?;
     Ok(())
+}
+
+/// The rights of a file as any program makes one; the user's mask is taken off by the system.
+#[cfg(unix)]
+fn readable() -> std::fs::Permissions {
+    std::os::unix::fs::PermissionsExt::from_mode(0o666)
+}
+
+/// The language a notebook says it is written in.
+fn language_of(tree: &Map<String, Value>) -> Option<&str> {
+    let metadata = tree.get("metadata")?;
+    let named = metadata.pointer("/kernelspec/language").or_else(|| metadata.pointer("/language_info/name"))?;
+    named.as_str()
 }
 
 fn source_of(cell: &Value) -> Option<String> {

@@ -83,6 +83,7 @@ impl Source {
         }
         let failed = |why: std::io::Error| FileError::Read { path: path.to_owned(), why: why.to_string() };
         let text = std::fs::read_to_string(path).map_err(failed)?;
+        let text = text.strip_prefix('\u{feff}').unwrap_or(&text).to_owned();
         let name = path.file_name().map_or_else(|| "script".to_owned(), |name| name.to_string_lossy().into_owned());
         Ok(Source::Script { name, text })
     }
@@ -143,9 +144,11 @@ pub fn run(file: &str, source: &mut Source, session: &mut Session, watcher: &mut
         faults.push(FaultRecord::of(&fault, file));
     }
     if let Source::Notebook(notebook) = source {
-        for ((_, _, cell), ran) in cells.iter().zip(&ran) {
+        // Cells behind a fault did not run, and what an earlier run left there would pass for this one's.
+        for (nth, (_, _, cell)) in cells.iter().enumerate() {
             if let Some(cell) = cell {
-                notebook.set_outputs(cell, ran.count, &ran.outputs);
+                let ran = ran.get(nth);
+                notebook.set_outputs(cell, ran.and_then(|ran| ran.count), ran.map_or(&[], |ran| &ran.outputs));
             }
         }
     }

@@ -95,6 +95,16 @@ pub fn log(x: f64, base: f64) -> f64 {
     }
 }
 
+/// 1 − erf(x), without the cancellation for large x.
+pub fn erfc(x: f64) -> f64 {
+    libm::erfc(x)
+}
+
+/// ln |Γ(x)|
+pub fn ln_gamma(x: f64) -> f64 {
+    libm::lgamma(x)
+}
+
 /// The square root is exact by IEEE 754, so the standard library's serves; it stands here so that a table of
 /// functions can name it beside the others.
 pub fn sqrt(x: f64) -> f64 {

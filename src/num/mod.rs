@@ -1,4 +1,7 @@
 //! Plain numerics, with no nouns of the field.
 
+pub mod cholesky;
 pub mod math;
+pub mod random;
 pub mod rational;
+pub mod student;

@@ -26,10 +26,8 @@ pub enum Mismatch {
     NotFinite,
     #[error("the exponent {exponent} gives {} no whole power of its units", unit_name(dim))]
     Exponent { exponent: f64, dim: Dimension },
-    #[error(
-        "the exponent {exponent} is uncertain by {u}, and only a positive pure number has such a power, not {base}"
-    )]
-    UncertainExponent { exponent: f64, u: f64, base: String },
+    #[error("the product's units have an exponent past any use, {}", dim)]
+    PowerTooHigh { dim: Dimension },
     #[error("{function} wants a pure number, not a value in {}", unit_name(dim))]
     NotPure { function: &'static str, dim: Dimension },
     #[error("{function} is taken of a positive number only, not of {number}")]
@@ -56,11 +54,6 @@ impl Mismatch {
 
 fn joiner(verb: &str) -> &'static str {
     if verb == "compare" { "with" } else { "and" }
-}
-
-/// A value as the base of a power.
-pub(super) fn base_name(si: f64, dim: &Dimension) -> String {
-    if dim.is_none() { si.to_string() } else { format!("a value in {}", unit_name(dim)) }
 }
 
 fn unit_name(dim: &Dimension) -> String {
@@ -91,7 +84,7 @@ impl Explain for Mismatch {
             Mismatch::UnitText(unit) => unit.code(),
             Mismatch::NotFinite => "not-finite",
             Mismatch::Exponent { .. } => "exponent-not-whole",
-            Mismatch::UncertainExponent { .. } => "uncertain-exponent",
+            Mismatch::PowerTooHigh { .. } => "power-too-high",
             Mismatch::NotPure { .. } => "not-a-pure-number",
             Mismatch::NotPositive { .. } => "not-positive",
             Mismatch::AgreementWithoutUncertainty => "agreement-without-uncertainty",
@@ -119,9 +112,7 @@ impl Explain for Mismatch {
             Mismatch::Exponent { .. } => {
                 "whole and half exponents keep their units, as in `x ** 2` and `x ** 0.5`".to_owned()
             }
-            Mismatch::UncertainExponent { exponent, .. } => {
-                format!("if the exponent is exact, write it as a bare number: `x ** {exponent}`")
-            }
+            Mismatch::PowerTooHigh { .. } => "divide before multiplying on".to_owned(),
             Mismatch::NotPure { function, dim } => {
                 let unit = unit_name(dim);
                 format!(
@@ -143,7 +134,7 @@ fn basis_hint(left: &Dimension, right: &Dimension) -> String {
         (Some(a), Some(b)) if b == Entity::RXN => (true, a),
         (Some(a), Some(b)) => {
             return format!(
-                "multiply one by the ratio of the two, `q(\"1 mol[{}]/mol[{}]\")` with the number that holds",
+                "multiply one by the ratio of the two, `exact(\"1 mol[{}]/mol[{}]\")` with the number that holds",
                 a.name(),
                 b.name()
             );
@@ -153,7 +144,7 @@ fn basis_hint(left: &Dimension, right: &Dimension) -> String {
     debug_assert!(reaction);
     let name = substance.name();
     format!(
-        "multiply the value per mole of {name} by its stoichiometric number, as in `x * q(\"1 mol[{name}]/mol[rxn]\")`, \
+        "multiply the value per mole of {name} by its stoichiometric number, as in `x * exact(\"1 mol[{name}]/mol[rxn]\")`, \
          or take the reaction value per mole of {name} with `.per(\"{name}\")`"
     )
 }

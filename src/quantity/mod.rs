@@ -4,6 +4,7 @@
 //! [`Quantity::agrees`], which knows about correlation, or compare bits in an audit.
 
 pub mod arith;
+pub mod meaning;
 pub mod mismatch;
 pub mod round;
 pub mod text;
@@ -19,6 +20,9 @@ use crate::record::spread::{self, Sensitivity, Spread};
 use crate::units::{Dimension, Kind, Unit, What, parse, unit_for};
 
 pub use mismatch::Mismatch;
+
+/// Relative rounding error of a value that took a few dozen operations in double precision.
+const ROUNDING: f64 = 64.0 * f64::EPSILON;
 
 /// A value in SI units with its history. Invariant: finite; every constructor refuses NaN and infinity.
 #[derive(Clone)]
@@ -51,6 +55,16 @@ impl Quantity {
             return Err(Mismatch::NotFinite);
         }
         Ok(Quantity { node: Rc::new(node), unit: None })
+    }
+
+    /// The same input with more said of it; values that were computed are left as they are.
+    #[must_use]
+    pub fn with_input(self, say: impl FnOnce(&mut Input)) -> Self {
+        let Some(mut input) = self.node.input().cloned() else { return self };
+        say(&mut input);
+        let (si, dim, kind, place) = (self.si(), self.dim().clone(), self.kind().clone(), self.node.place().cloned());
+        let node = Node::new(si, dim, kind, SmallVec::new(), Origin::Input(Box::new(input)), place);
+        Quantity { node: Rc::new(node), unit: self.unit }
     }
 
     /// A reading of an existing node, without a unit of its own.
@@ -97,14 +111,17 @@ impl Quantity {
         spread::sensitivities(&self.node)
     }
 
-    /// Whether the difference is zero within `k` standard uncertainties of the difference itself.
+    /// Whether the difference is zero within `k` standard uncertainties of the difference itself; that of the logarithms for
+    /// two equilibrium constants, whose uncertainty is symmetric there.
     ///
     /// # Errors
     /// The two cannot be subtracted, or nothing is stated about the uncertainty of their difference.
     pub fn agrees(&self, other: &Quantity, k: f64) -> Result<bool, Mismatch> {
-        let gap = self.minus(other, None)?;
+        let logarithms = self.kind().what == What::K && other.kind().what == What::K;
+        let gap = if logarithms { self.ln(None)?.minus(&other.ln(None)?, None)? } else { self.minus(other, None)? };
         match gap.spread().u() {
-            Some(u) => Ok(gap.si().abs() <= k * u),
+            // Two ways of computing one value differ by rounding, which no uncertainty covers.
+            Some(u) => Ok(gap.si().abs() <= k * u + ROUNDING * (self.si().abs() + other.si().abs())),
             None => Err(Mismatch::AgreementWithoutUncertainty),
         }
     }
@@ -114,11 +131,12 @@ impl Quantity {
     /// # Errors
     /// The unit measures something else, or the value is a temperature difference and the unit a point.
     pub fn to(&self, unit: Unit) -> Result<Quantity, Mismatch> {
-        let fits = *self.dim() == unit.dim || self.dim().bindings_to(&unit.dim).len() == 1;
-        if !fits {
-            // A unit with an open mole is short for the value's own basis: `dH.to("kcal_th/mol")`.
-            return match unit.dim.bindings_to(self.dim()).as_slice() {
-                [entity] => self.to(parse::bound(&unit, *entity)?),
+        if *self.dim() != unit.dim {
+            // An open mole takes the basis of the unit asked for, and the value remembers it; a unit with an open mole is
+            // short for the value's own basis: `dH.to("kcal_th/mol")`.
+            return match (self.dim().bindings_to(&unit.dim).as_slice(), unit.dim.bindings_to(self.dim()).as_slice()) {
+                ([entity], _) => self.bound(*entity, None)?.to(unit),
+                (_, [entity]) => self.to(parse::bound(&unit, *entity)?),
                 _ => Err(Mismatch::unit(self.dim(), &unit)),
             };
         }

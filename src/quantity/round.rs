@@ -17,6 +17,11 @@ pub fn decimals_of_digit(digit: f64) -> i32 {
     -decade(digit * 1.000_000_1) // A digit of 0.01 may be 0.00999… after a unit factor.
 }
 
+/// Decimal places that show that many significant digits of a value.
+pub fn decimals_for_digits(value: f64, digits: i32) -> i32 {
+    if value == 0.0 { i32::MIN } else { digits - 1 - decade(value.abs()) }
+}
+
 /// Exponent of the leading digit.
 fn decade(x: f64) -> i32 {
     if x <= 0.0 || !x.is_finite() {
@@ -34,6 +39,11 @@ pub fn power_of_ten(exponent: i32) -> f64 {
 
 /// `value` with that many decimal places; negative places round to tens, hundreds.
 pub fn fixed(value: f64, decimals: i32) -> String {
+    // Figures that long are read by their power of ten, and digits past the seventeenth are noise.
+    if value != 0.0 && (decimals > 12 || decade(value.abs()) > 15) {
+        let digits = (decimals + decade(value.abs()) + 1).clamp(1, 17);
+        return format!("{value:.*e}", (digits - 1) as usize);
+    }
     let text = if decimals >= 0 {
         format!("{value:.*}", decimals as usize)
     } else {
@@ -76,6 +86,12 @@ pub fn significant(value: f64, digits: i32) -> String {
         return format!("{value:.*e}", (digits - 1).max(0) as usize);
     }
     fixed(value, digits - 1 - exponent)
+}
+
+/// An uncertainty, or a part of one, with two digits: `0.13`, `130`, `1.3e-9`.
+pub fn with_two_digits(u: f64) -> String {
+    let decimals = decimals_for(u.abs());
+    if (-4..=6).contains(&decimals) { fixed(u, decimals) } else { format!("{u:.1e}") }
 }
 
 /// The shortest decimal that reads back as the same double; plain where that stays readable.

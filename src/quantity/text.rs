@@ -1,20 +1,20 @@
 //! Quantities as text: `q("-285.830(20) kJ/mol")` in, value with its uncertainty out.
 //!
-//! In: brackets are a standard uncertainty in the last digits; `±` must say what it is (`k=2`, `95 %`, `limits`), since
-//! a bare one means three different things. Out: two digits of u decide; without u, the decimals of the coarsest input.
+//! In: brackets are a standard uncertainty in the last digits; `±` must say what it is (`k=2`, `95 %`, `limits`; see
+//! [`Meaning`]), since a bare one means three different things; its half-width may have a unit of its own, and is a share of
+//! the value where that unit is % or ppm. Out: two digits of u decide; without u, the decimals of the coarsest input.
 
 use std::sync::Arc;
 
 use thiserror::Error;
 
 use crate::fault::{Explain, Place};
+use crate::quantity::meaning::{Meaning, MeaningError};
 use crate::quantity::{Quantity, round};
+use crate::record::evaluation::Evaluation;
 use crate::record::node::{Input, LeafKey};
 use crate::record::spread::Spread;
 use crate::units::{self, Kind, Unit, UnitError, What, parse as unit_parse};
-
-/// Factor between a 95 % interval and a standard uncertainty for a normal distribution (JCGM 100:2008, table G.1).
-const K_95: f64 = 1.96;
 
 /// Why a text is no quantity.
 #[derive(Clone, Debug, Error)]
@@ -25,8 +25,20 @@ pub enum TextError {
     Comma { text: String },
     #[error("`{text}` says ± without saying what it is: a standard uncertainty, an expanded one, or limits")]
     BarePlusMinus { text: String },
-    #[error("`{what}` is not a meaning of ±")]
-    Meaning { what: String },
+    #[error(transparent)]
+    Meaning(#[from] MeaningError),
+    #[error("`{text}` could mean a share of the value or so many per cent more and less")]
+    ShareOrPoints { text: String },
+    #[error("the value in `{text}` is in {value}, and its half-width {half}")]
+    HalfWidthUnit { text: String, value: String, half: String },
+    #[error("`relative` is said of the uncertainty in `{text}`, and its half-width is no share in % or ppm")]
+    NotAShare { text: String },
+    #[error("a share of a temperature point, as in `{text}`, depends on where the scale {unit} begins")]
+    ShareOfPoint { text: String, unit: String },
+    #[error("a share of zero, as in `{text}`, is no uncertainty")]
+    ShareOfZero { text: String },
+    #[error("`{text}` has a space before its brackets, which could be an uncertainty or a factor")]
+    Detached { text: String },
     #[error("the brackets in `{text}` are not an uncertainty in the last digits")]
     Brackets { text: String },
     #[error("`{text}` states its uncertainty twice, in brackets and with ±")]
@@ -47,7 +59,13 @@ impl Explain for TextError {
             TextError::NoNumber { .. } => "number-missing",
             TextError::Comma { .. } => "comma-in-number",
             TextError::BarePlusMinus { .. } => "bare-plus-minus",
-            TextError::Meaning { .. } => "plus-minus-unknown",
+            TextError::Meaning(meaning) => meaning.code(),
+            TextError::ShareOrPoints { .. } => "percent-after-plus-minus",
+            TextError::HalfWidthUnit { .. } => "half-width-unit",
+            TextError::NotAShare { .. } => "relative-without-share",
+            TextError::ShareOfPoint { .. } => "relative-of-a-point",
+            TextError::ShareOfZero { .. } => "relative-of-zero",
+            TextError::Detached { .. } => "brackets-detached",
             TextError::Brackets { .. } => "brackets-unreadable",
             TextError::Twice { .. } => "uncertainty-twice",
             TextError::Range { .. } => "quantity-out-of-range",
@@ -64,15 +82,33 @@ impl Explain for TextError {
             }
             TextError::Comma { .. } => "write the decimal mark as a point and group no digits: `1234.5`".to_owned(),
             TextError::BarePlusMinus { text } => {
-                let number = text.split('±').next().unwrap_or("").trim().trim_start_matches('(');
+                let number = text.trim_start_matches('(').split([' ', '±']).next().unwrap_or("");
                 format!(
                     "write `{number}(u)` for a standard uncertainty in the last digits, or say what ± is: \
-                     `{number} ± U unit, k=2` (expanded), `{number} ± U unit, 95 %` (expanded, normal), \
+                     `{number} ± U unit, k=2` or `{number} ± U unit, 95 %` (expanded), \
                      `{number} ± a unit, limits` (bounds, rectangular)"
                 )
             }
-            TextError::Meaning { .. } => "after the comma stands `k=2`, `95 %` or `limits`".to_owned(),
-            TextError::Brackets { .. } => "`-285.830(20)` means a standard uncertainty of 0.020".to_owned(),
+            TextError::Meaning(meaning) => meaning.hint(),
+            TextError::ShareOrPoints { .. } => {
+                "for percentage points write brackets, `(85 ± 2) %, k=2`; for a share of the value say so, \
+                 `85 % ± 2 %, relative, k=2`, or write the value's unit before ±, `12.5 nm ± 2 %, k=2`"
+                    .to_owned()
+            }
+            TextError::HalfWidthUnit { value, .. } => {
+                format!("write the half-width in {value} too, or as a share in %")
+            }
+            TextError::NotAShare { .. } => {
+                "write the half-width in %, or leave `relative` out where it is in the unit of the value".to_owned()
+            }
+            TextError::ShareOfPoint { .. } => "state the half-width in kelvin, as in `25 degC ± 0.3 K, k=2`".to_owned(),
+            TextError::ShareOfZero { .. } => "state the half-width in the unit of the value".to_owned(),
+            TextError::Detached { .. } => "write the uncertainty right behind the digits: `-285.830(20)`".to_owned(),
+            TextError::Brackets { .. } => {
+                "`-285.830(20)` means a standard uncertainty of 0.020; a share of the value is written after ±, \
+                 as in `12.5 nm ± 3 %, k=1`"
+                    .to_owned()
+            }
             TextError::Twice { .. } => "keep one of the two".to_owned(),
             TextError::Range { .. } => "check the exponent".to_owned(),
             TextError::Negative { .. } => "give its size, without a sign".to_owned(),
@@ -90,38 +126,127 @@ struct Number<'a> {
     rest: &'a str,
 }
 
+/// A text taken apart: the number, its standard uncertainty in the same unit, the unit.
+struct Written {
+    value: f64,
+    digit: Option<f64>,
+    u: Option<f64>,
+    unit: Unit,
+    evaluation: Evaluation,
+}
+
 /// Reads a quantity. `ordinal` tells evaluations of one place apart, as in a loop.
 ///
 /// # Errors
 /// See [`TextError`]; nothing is guessed.
 pub fn parse(text: &str, place: Option<Place>, ordinal: u64) -> Result<Quantity, TextError> {
     let whole = text.trim();
-    let (body, meaning) = match whole.split_once(',') {
-        Some((body, meaning)) if whole.contains('±') || whole.contains("+/-") => (body.trim(), Some(meaning.trim())),
-        _ => (whole, None),
+    let (body, words) = split_words(whole);
+    let meaning = words.map(Meaning::read).transpose()?;
+    let halves = body.split_once('±').or_else(|| body.split_once("+/-"));
+    let written = match halves {
+        Some((value, half)) => with_plus_minus(value.trim(), half.trim(), meaning, whole)?,
+        None => without_plus_minus(body, meaning, whole)?,
     };
-    let grouped = body.starts_with('(');
-    let inner = if grouped { &body[1..] } else { body };
-    let first = number(inner, whole)?;
-    let after = first.rest.trim_start();
-    let plus_minus = after.strip_prefix('±').or_else(|| after.strip_prefix("+/-"));
-    let (u, rest) = match plus_minus {
-        None if grouped => return Err(TextError::NoNumber { text: whole.to_owned() }),
-        None => (first.u, first.rest),
-        Some(_) if first.u.is_some() => return Err(TextError::Twice { text: whole.to_owned() }),
-        Some(after) => {
-            let half = number(after.trim_start(), whole)?;
-            let Some(meaning) = meaning else { return Err(TextError::BarePlusMinus { text: whole.to_owned() }) };
-            if half.value < 0.0 {
-                return Err(TextError::Negative { u: half.value });
+    build(written, whole, place, ordinal)
+}
+
+/// The text before the comma that begins the words about the uncertainty, and those words. A comma in brackets belongs to
+/// a name, and one between digits to a number.
+fn split_words(text: &str) -> (&str, Option<&str>) {
+    let mut depth = 0_i32;
+    let mut before = ' ';
+    for (at, c) in text.char_indices() {
+        match c {
+            '(' | '[' | '{' => depth += 1,
+            ')' | ']' | '}' => depth -= 1,
+            ',' if depth == 0 => {
+                let after = text[at + 1..].chars().next();
+                if !(before.is_ascii_digit() && after.is_some_and(|c| c.is_ascii_digit())) {
+                    return (text[..at].trim(), Some(text[at + 1..].trim()));
+                }
             }
-            let rest = if grouped { half.rest.trim_start().strip_prefix(')') } else { Some(half.rest) };
-            let rest = rest.ok_or_else(|| TextError::Brackets { text: whole.to_owned() })?;
-            (Some(half.value / divisor(meaning)?), rest)
+            _ => {}
         }
+        before = c;
+    }
+    (text, None)
+}
+
+fn unit_of(text: &str) -> Result<Unit, UnitError> {
+    unit_parse::unit(if text.is_empty() { "1" } else { text })
+}
+
+fn without_plus_minus(body: &str, meaning: Option<Meaning>, whole: &str) -> Result<Written, TextError> {
+    let first = number(body, whole)?;
+    let unit = unit_of(first.rest.trim())?;
+    let mut evaluation = Evaluation::UNSTATED;
+    if let Some(meaning) = meaning {
+        if first.u.is_none() {
+            return Err(meaning.without_uncertainty(whole).into());
+        }
+        meaning.fits_brackets(whole)?;
+        evaluation.dof = meaning.dof();
+    }
+    Ok(Written { value: first.value, digit: Some(first.digit), u: first.u, unit, evaluation })
+}
+
+fn with_plus_minus(value: &str, half: &str, meaning: Option<Meaning>, whole: &str) -> Result<Written, TextError> {
+    let text = || whole.to_owned();
+    let grouped = value.strip_prefix('(');
+    let first = number(grouped.unwrap_or(value), whole)?;
+    let half = number(half, whole)?;
+    if first.u.is_some() || half.u.is_some() {
+        return Err(TextError::Twice { text: text() });
+    }
+    let bare = || TextError::BarePlusMinus { text: text() };
+    let meaning = meaning.ok_or_else(bare)?;
+    let divisor = meaning.divisor().ok_or_else(bare)?;
+    if half.value < 0.0 {
+        return Err(TextError::Negative { u: half.value });
+    }
+    let (before, after) = (first.rest.trim(), half.rest.trim());
+    let (unit, half_unit) = if grouped.is_some() {
+        let after = after.strip_prefix(')').filter(|_| before.is_empty());
+        let unit = unit_of(after.ok_or_else(|| TextError::Brackets { text: text() })?.trim())?;
+        (unit.clone(), unit)
+    } else if before.is_empty() {
+        if after.starts_with('%') && !meaning.relative {
+            return Err(TextError::ShareOrPoints { text: text() });
+        }
+        let half_unit = unit_of(after)?;
+        (if meaning.relative { unit_of("")? } else { half_unit.clone() }, half_unit)
+    } else {
+        (unit_of(before)?, unit_of(after)?)
     };
-    let unit = unit_parse::unit(if rest.trim().is_empty() { "1" } else { rest.trim() })?;
-    build(first.value, u, Some(first.digit), unit, whole, place, ordinal)
+    // A ratio such as % or ppm; radian and the bare number are of dimension 1 too, with factor 1.
+    let is_ratio = |unit: &Unit| unit.dim.is_none() && unit.factor != 1.0;
+    let share = is_ratio(&half_unit) && (meaning.relative || !unit.dim.is_none());
+    if share {
+        if unit.is_point() {
+            return Err(TextError::ShareOfPoint { text: text(), unit: unit.text.to_string() });
+        }
+        if first.value == 0.0 {
+            return Err(TextError::ShareOfZero { text: text() });
+        }
+    } else if meaning.relative {
+        return Err(TextError::NotAShare { text: text() });
+    } else if grouped.is_none() && !before.is_empty() {
+        if is_ratio(&half_unit) {
+            return Err(TextError::ShareOrPoints { text: text() });
+        }
+        if half_unit.dim != unit.dim || after.is_empty() {
+            let half = if after.is_empty() { "is a bare number".to_owned() } else { format!("in {}", half_unit.text) };
+            return Err(TextError::HalfWidthUnit { text: text(), value: unit.text.to_string(), half });
+        }
+    }
+    let half_width = if share {
+        first.value.abs() * half.value * half_unit.factor
+    } else {
+        half.value * half_unit.factor.abs() / unit.factor.abs()
+    };
+    let evaluation = Evaluation { shape: meaning.shape(), dof: meaning.dof(), correlation: None };
+    Ok(Written { value: first.value, digit: Some(first.digit), u: Some(half_width / divisor), unit, evaluation })
 }
 
 /// A bare number in a unit, as in `450.0.K`: no uncertainty stated.
@@ -130,19 +255,12 @@ pub fn parse(text: &str, place: Option<Place>, ordinal: u64) -> Result<Quantity,
 /// The number is not finite, or a temperature below absolute zero.
 pub fn from_number(value: f64, unit: Unit, place: Option<Place>, ordinal: u64) -> Result<Quantity, TextError> {
     let name = format!("{} {}", round::shortest(value), unit.text);
-    let digit = round::shortest(value).split_once('.').map(|(_, d)| round::power_of_ten(-(d.len() as i32)));
-    build(value, None, digit.or(Some(1.0)), unit, &name, place, ordinal)
+    let digit = number(&round::shortest(value), &name).ok().map(|read| read.digit);
+    build(Written { value, digit, u: None, unit, evaluation: Evaluation::UNSTATED }, &name, place, ordinal)
 }
 
-fn build(
-    value: f64,
-    u: Option<f64>,
-    digit: Option<f64>,
-    unit: Unit,
-    name: &str,
-    place: Option<Place>,
-    ordinal: u64,
-) -> Result<Quantity, TextError> {
+fn build(written: Written, name: &str, place: Option<Place>, ordinal: u64) -> Result<Quantity, TextError> {
+    let Written { value, digit, u, unit, evaluation } = written;
     let si = unit.to_si(value);
     if !si.is_finite() {
         return Err(TextError::Range { text: name.to_owned() });
@@ -152,29 +270,18 @@ fn build(
         return Err(TextError::BelowZero { t_k: si });
     }
     let scale = unit.factor.abs();
+    let unit = Arc::new(unit);
     let input = Input {
-        key: LeafKey::Typed { place: place.clone(), ordinal },
         u: u.map(|u| u * scale),
         digit: digit.map(|digit| digit * scale),
+        evaluated: evaluation.kept(),
         label: Some(name.into()),
-        citation: None,
+        unit: Some(Arc::clone(&unit)),
+        ..Input::of(LeafKey::Typed { place: place.clone(), ordinal })
     };
     let made = Quantity::input(si, unit.dim.clone(), kind, input, place);
     let made = made.map_err(|_| TextError::Range { text: name.to_owned() })?;
-    Ok(made.in_unit(Some(Arc::new(unit))))
-}
-
-fn divisor(meaning: &str) -> Result<f64, TextError> {
-    let compact: String = meaning.chars().filter(|c| !c.is_whitespace()).collect();
-    let unknown = || TextError::Meaning { what: meaning.to_owned() };
-    match compact.as_str() {
-        "95%" => Ok(K_95),
-        "limits" => Ok(3f64.sqrt()),
-        other => {
-            let k: f64 = other.strip_prefix("k=").ok_or_else(unknown)?.parse().map_err(|_| unknown())?;
-            if k > 0.0 && k.is_finite() { Ok(k) } else { Err(unknown()) }
-        }
-    }
+    Ok(made.in_unit(Some(unit)))
 }
 
 /// A number at the start of `text`, with brackets and exponent where it has them.
@@ -197,6 +304,11 @@ fn number<'a>(text: &'a str, whole: &str) -> Result<Number<'a>, TextError> {
     if rest.starts_with(',') && rest[1..].starts_with(|c: char| c.is_ascii_digit()) {
         return Err(TextError::Comma { text: whole.to_owned() });
     }
+    let detached =
+        rest.trim_start().strip_prefix('(').is_some_and(|after| after.starts_with(|c: char| c.is_ascii_digit()));
+    if rest.starts_with(' ') && detached {
+        return Err(TextError::Detached { text: whole.to_owned() });
+    }
     let mut brackets = None;
     if let Some(after) = rest.strip_prefix('(') {
         let unreadable = || TextError::Brackets { text: whole.to_owned() };
@@ -210,7 +322,8 @@ fn number<'a>(text: &'a str, whole: &str) -> Result<Number<'a>, TextError> {
     let (exponent, rest) = exponent(rest);
     let read = |mantissa: &str, shift: i32| -> Result<f64, TextError> {
         let value: f64 = format!("{mantissa}e{}", exponent.saturating_add(shift)).parse().map_err(|_| missing())?;
-        if value.is_finite() { Ok(value) } else { Err(TextError::Range { text: whole.to_owned() }) }
+        let vanished = value == 0.0 && mantissa.contains(|c: char| ('1'..='9').contains(&c));
+        if value.is_finite() && !vanished { Ok(value) } else { Err(TextError::Range { text: whole.to_owned() }) }
     };
     let magnitude = read(mantissa, 0)?;
     let u = match brackets {
@@ -273,7 +386,10 @@ impl Quantity {
             }
             _ => match coarsest_digit(self) {
                 Some(digit) => {
-                    let decimals = round::decimals_of_digit(digit / scale);
+                    // A coarse input is no reason to turn 3.6 MJ into 4: where its decimals would round, at least four digits.
+                    let written = round::decimals_of_digit(digit / scale);
+                    let is_exact = round::fixed(value, written).parse() == Ok(value);
+                    let decimals = if is_exact { written } else { written.max(round::decimals_for_digits(value, 4)) };
                     (round::fixed(value, decimals), 0.5 * round::power_of_ten(-decimals) * scale)
                 }
                 None => (exact(value), 0.0),
@@ -297,7 +413,8 @@ fn exact(value: f64) -> String {
 
 /// The coarsest of what the last digits of the inputs are worth in the result, in SI units.
 fn coarsest_digit(value: &Quantity) -> Option<f64> {
-    let worth = value.sensitivities().into_iter().filter_map(|s| {
+    // A chosen condition is no measurement, and limits no digits.
+    let worth = value.sensitivities().into_iter().filter(|s| !s.chosen).filter_map(|s| {
         let digit = s.input().and_then(|input| input.digit)?;
         Some((s.derivative * digit).abs())
     });
@@ -307,7 +424,11 @@ fn coarsest_digit(value: &Quantity) -> Option<f64> {
 /// Number and unit alone, in machine text: `0.5 kJ/mol[rxn]`.
 pub fn shown_plain(value: &Quantity) -> String {
     let shown = value.shown();
-    format!("{} {}", shown.number, shown.unit.text)
+    if value.dim().is_none() && &*shown.unit.text == "1" {
+        shown.number
+    } else {
+        format!("{} {}", shown.number, shown.unit.text)
+    }
 }
 
 /// The value in one line: number, unit, basis in words, and what is not known of its uncertainty.
@@ -332,6 +453,7 @@ pub fn shown(value: &Quantity) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::record::evaluation::Shape;
 
     fn read(text: &str) -> (f64, Option<f64>) {
         let value = parse(text, None, 0).unwrap();
@@ -357,11 +479,55 @@ mod tests {
     #[test]
     fn plus_minus_must_say_what_it_is() {
         assert_eq!(read("-285.830 ± 0.040 kJ/mol, k=2"), (-285_830.0, Some(20.0)));
-        assert_eq!(read("(10.0 ± 1.96) J, 95 %").1, Some(1.0));
+        // JCGM 100:2008, table G.1: 95 % of a normal distribution lie within 1.960 standard deviations.
+        assert!((read("(10.0 ± 1.960) J, 95 %").1.unwrap() - 1.0).abs() < 0.000_5 / 1.96);
         assert!((read("10 ± 3 J, limits").1.unwrap() - 3f64.sqrt()).abs() < 1e-15);
         assert_eq!(code("-285.830 ± 0.040 kJ/mol"), "bare-plus-minus");
         assert_eq!(code("1 ± 0.1 J, maybe"), "plus-minus-unknown");
         assert_eq!(code("1.0(1) ± 0.1 J, k=2"), "uncertainty-twice");
+    }
+
+    #[test]
+    fn a_half_width_may_have_a_unit_of_its_own_or_be_a_share() {
+        let close = |text: &str, value: f64, u: f64| {
+            let (found, found_u) = read(text);
+            let found_u = found_u.unwrap();
+            assert!(
+                (found - value).abs() < 1e-12 * value.abs() && (found_u / u - 1.0).abs() < 1e-12,
+                "{text}: {found_u}"
+            );
+        };
+        close("9.7 nm ± 500 pm, k=2", 9.7e-9, 0.25e-9);
+        close("25 degC ± 0.5 K, k=2", 298.15, 0.25);
+        close("12.5 nm ± 0.5 %, k=2", 12.5e-9, 12.5e-9 * 0.0025);
+        close("-4.184 J/(g K) ± 300 ppm, limits", -4184.0, 4184.0 * 300e-6 / 3f64.sqrt());
+        close("(85 ± 2) %, k=2", 0.85, 0.01);
+        close("85 % ± 2 %, relative, k=2", 0.85, 0.0085);
+        close("0.85 ± 2 %, relative, k=2", 0.85, 0.0085);
+        close("1.0456 rad ± 0.0004 rad, k=2", 1.0456, 0.0002);
+        assert_eq!(code("85 % ± 2 %, k=2"), "percent-after-plus-minus");
+        assert_eq!(code("0.85 ± 2 %, k=2"), "percent-after-plus-minus");
+        assert_eq!(code("12.5 ± 0.5 % nm, k=2"), "percent-after-plus-minus");
+        assert_eq!(code("12.5 nm ± 0.5, k=2"), "half-width-unit");
+        assert_eq!(code("12.5 nm ± 0.5 K, k=2"), "half-width-unit");
+        assert_eq!(code("12.5 ± 0.5 nm, k=2, relative"), "relative-without-share");
+        assert_eq!(code("25 degC ± 1 %, k=2"), "relative-of-a-point");
+        assert_eq!(code("0 nm ± 1 %, k=2"), "relative-of-zero");
+        assert_eq!(code("12.5(3 %) nm"), "brackets-unreadable");
+    }
+
+    #[test]
+    fn degrees_of_freedom_go_with_both_forms_and_the_other_words_with_plus_minus_only() {
+        let evaluation = |text: &str| parse(text, None, 0).unwrap().node().input().unwrap().evaluation().clone();
+        assert_eq!(evaluation("25.0(3) nm, dof=18").dof, Some(18.0));
+        assert_eq!(evaluation("25.0 ± 0.6 nm, 95 %, dof=18").dof, Some(18.0));
+        assert_eq!(evaluation("25.0 ± 0.6 nm, limits, triangular").shape, Shape::Triangular);
+        assert_eq!(evaluation("25.0 ± 0.6 nm, k=2").dof, None);
+        assert_eq!(code("25.0(3) nm, k=2"), "brackets-with-meaning");
+        assert_eq!(code("25.0 nm, dof=18"), "meaning-without-uncertainty");
+        assert_eq!(code("25.0 ± 0.3 nm, dof=18"), "bare-plus-minus");
+        // Commas of a name belong to the unit.
+        assert_eq!(read("1.5(1) kJ/mol[SiO2(cr,alpha-quartz)]").1, Some(100.0));
     }
 
     #[test]

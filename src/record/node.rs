@@ -7,6 +7,7 @@
 
 use std::any::Any;
 use std::cell::Cell;
+use std::collections::BTreeMap;
 use std::rc::Rc;
 use std::sync::Arc;
 
@@ -14,8 +15,9 @@ use smallvec::SmallVec;
 
 use crate::fault::Place;
 use crate::num::math;
+use crate::record::evaluation::Evaluation;
 use crate::source::Citation;
-use crate::units::{Dimension, Entity, Kind};
+use crate::units::{Dimension, Entity, Kind, Unit};
 
 /// Which input a leaf is. Equal keys are one input, wherever they were read.
 #[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord)]
@@ -38,14 +40,28 @@ pub struct Input {
     pub key: LeafKey,
     /// Standard uncertainty in SI units; `None` where none is stated, which is not zero.
     pub u: Option<f64>,
+    /// How u was evaluated, where more than u is stated; read it by [`Input::evaluation`].
+    pub evaluated: Option<Box<Evaluation>>,
     /// SI value of one unit in the last digit printed or typed; `None` for what is exact or computed.
     pub digit: Option<f64>,
     /// The text as typed, or the analyst's name for it. A datum and a constant are named by their key.
     pub label: Option<Arc<str>>,
+    /// The unit it was written in, for budgets; `None` for the trade's usual one.
+    pub unit: Option<Arc<Unit>>,
     pub citation: Option<Citation>,
 }
 
 impl Input {
+    /// An input of which nothing is known but which it is.
+    pub fn of(key: LeafKey) -> Input {
+        Input { key, u: None, evaluated: None, digit: None, label: None, unit: None, citation: None }
+    }
+
+    /// How u was evaluated, and what the input is correlated with.
+    pub fn evaluation(&self) -> &Evaluation {
+        Evaluation::of(self.evaluated.as_deref())
+    }
+
     /// What the figure is, for budgets: `formation enthalpy of CO2(g)`.
     pub fn name(&self) -> String {
         match (&self.label, &self.key) {
@@ -74,14 +90,22 @@ pub enum Operator {
     Scale(f64),
     /// Plus a bare number (of dimension 1).
     Shift(f64),
+    /// Divided by a bare number.
+    DivideBy(f64),
     /// A bare number divided by the value.
     Reciprocal(f64),
     Power(f64),
-    /// To the power of another value.
-    Raise,
+    /// A pure number to the power of another.
+    PowerOf,
     Exp,
     Ln,
+    /// Of an angle in radian.
+    Sin,
+    Cos,
+    Tan,
     Absolute,
+    /// A temperature that was chosen, on its way into a formula: its value is what was meant, not what was measured.
+    Condition,
     /// The weighted sum of all inputs, each with the same weight.
     Mean,
 }
@@ -97,12 +121,17 @@ impl Operator {
             (Operator::Negate, [a]) => -a,
             (Operator::Scale(factor), [a]) => factor * a,
             (Operator::Shift(by), [a]) => a + by,
+            (Operator::DivideBy(divisor), [a]) => a / divisor,
             (Operator::Reciprocal(numerator), [a]) => numerator / a,
             (Operator::Power(exponent), [a]) => math::pow(*a, exponent),
-            (Operator::Raise, [a, b]) => math::pow(*a, *b),
+            (Operator::PowerOf, [a, b]) => math::pow(*a, *b),
             (Operator::Exp, [a]) => math::exp(*a),
             (Operator::Ln, [a]) => math::ln(*a),
+            (Operator::Sin, [a]) => math::sin(*a),
+            (Operator::Cos, [a]) => math::cos(*a),
+            (Operator::Tan, [a]) => math::tan(*a),
             (Operator::Absolute, [a]) => a.abs(),
+            (Operator::Condition, [a]) => *a,
             (Operator::Mean, all) => all.iter().sum::<f64>() / all.len() as f64,
             _ => unreachable!("an operator node is built with the inputs its operator takes"),
         }
@@ -111,12 +140,20 @@ impl Operator {
 
 /// A call of a formula, as a node keeps it: enough to explain the step later and to test what it assumed.
 pub trait Step: Any {
+    /// The formula's name in scripts.
+    fn name(&self) -> &'static str;
     /// What was done, in words: `ΔrH° of CO(g) + H2O(g) -> CO2(g) + H2(g)`.
     fn does(&self) -> String;
     /// Publication or definition the formula rests on.
     fn source(&self) -> &str;
     /// Values that went in as arguments. Those that carry uncertainty are inputs of the node as well.
     fn arguments(&self) -> Vec<Rc<Node>>;
+    /// The value had the node's inputs been these instead; `None` where only its derivatives are known.
+    fn replay(&self, _inputs: &[f64]) -> Option<f64> {
+        None
+    }
+    /// Takes the arguments out, so that dropping a long chain of steps is a loop and no recursion.
+    fn take_arguments(&mut self) -> Vec<Rc<Node>>;
     fn as_any(&self) -> &dyn Any;
 }
 
@@ -221,14 +258,29 @@ impl Node {
     }
 }
 
+impl Node {
+    /// Hands over every node this one holds.
+    fn give_up(&mut self, to: &mut SmallVec<[Rc<Node>; 4]>) {
+        while let Some((input, _)) = self.inputs.pop() {
+            to.push(input);
+        }
+        if let Origin::Step(step) = &mut self.origin
+            && let Some(step) = Rc::get_mut(step)
+        {
+            to.extend(step.take_arguments());
+        }
+    }
+}
+
 impl Drop for Node {
     fn drop(&mut self) {
         // In a chain of sums two wait here at a time, so that dropping it takes no memory.
-        let mut pending = std::mem::take(&mut self.inputs);
-        while let Some((mut node, _)) = pending.pop() {
-            let Some(last_use) = Rc::get_mut(&mut node) else { continue };
-            while let Some(input) = last_use.inputs.pop() {
-                pending.push(input);
+        let mut pending = SmallVec::new();
+        self.give_up(&mut pending);
+        while let Some(mut node) = pending.pop() {
+            // A node held both as input and as argument comes twice: the first goes without effect, the second ends it.
+            if let Some(last_use) = Rc::get_mut(&mut node) {
+                last_use.give_up(&mut pending);
             }
         }
     }
@@ -236,7 +288,7 @@ impl Drop for Node {
 
 /// Every node the value rests on, itself last, each once, inputs before their users.
 pub fn history(of: &Rc<Node>) -> Vec<Rc<Node>> {
-    let mut seen = std::collections::BTreeMap::new();
+    let mut seen = BTreeMap::new();
     let mut pending = vec![Rc::clone(of)];
     while let Some(node) = pending.pop() {
         if seen.contains_key(&node.id) {
@@ -251,20 +303,25 @@ pub fn history(of: &Rc<Node>) -> Vec<Rc<Node>> {
     seen.into_values().collect()
 }
 
-/// The value of `of` had the node `changed` been `si` instead: recomputed where every step between is arithmetic,
-/// else `None`, and the caller falls back on the first derivative.
-pub fn replayed(of: &Rc<Node>, changed: u64, si: f64) -> Option<f64> {
-    let mut values = std::collections::BTreeMap::from([(changed, si)]);
-    for node in history(of) {
-        if node.id <= changed || !node.inputs.iter().any(|(input, _)| values.contains_key(&input.id)) {
+/// The value of the last node of a history had some of its nodes been these instead, by id in SI units: recomputed where
+/// every step between can be, else `None`, and the caller falls back on first derivatives.
+pub fn replayed(history: &[Rc<Node>], changed: &BTreeMap<u64, f64>) -> Option<f64> {
+    let mut values = changed.clone();
+    for node in history {
+        if values.contains_key(&node.id) || !node.inputs.iter().any(|(input, _)| values.contains_key(&input.id)) {
             continue;
         }
-        let Origin::Operator(operator) = node.origin else { return None };
         let inputs: SmallVec<[f64; 4]> =
             node.inputs.iter().map(|(input, _)| values.get(&input.id).copied().unwrap_or(input.si)).collect();
-        values.insert(node.id, operator.value(&inputs));
+        let value = match &node.origin {
+            Origin::Operator(operator) => operator.value(&inputs),
+            Origin::Step(step) => step.replay(&inputs)?,
+            Origin::Input(_) => unreachable!("an input has no inputs of its own"),
+        };
+        values.insert(node.id, value);
     }
-    values.get(&of.id).copied()
+    let last = history.last()?;
+    Some(values.get(&last.id).copied().unwrap_or(last.si))
 }
 
 #[cfg(test)]
@@ -272,10 +329,8 @@ mod tests {
     use super::*;
 
     fn leaf(si: f64) -> Rc<Node> {
-        let input =
-            Input { key: LeafKey::Own(format!("{si}").into()), u: Some(0.1), digit: None, label: None, citation: None };
-        let origin = Origin::Input(Box::new(input));
-        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), origin, None))
+        let input = Input { u: Some(0.1), ..Input::of(LeafKey::Own(format!("{si}").into())) };
+        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
     }
 
     fn combine(operator: Operator, inputs: &[(&Rc<Node>, f64)]) -> Rc<Node> {
@@ -300,8 +355,9 @@ mod tests {
         let x = leaf(3.0);
         let square = combine(Operator::Multiply, &[(&x, 3.0), (&x, 3.0)]);
         let y = combine(Operator::Shift(1.0), &[(&square, 1.0)]);
-        assert_eq!(replayed(&y, x.id(), 5.0), Some(26.0));
-        assert_eq!(replayed(&y, y.id(), 7.0), Some(7.0));
-        assert_eq!(replayed(&x, y.id(), 7.0), None);
+        let replay = |of: &Rc<Node>, id, si| replayed(&history(of), &BTreeMap::from([(id, si)]));
+        assert_eq!(replay(&y, x.id(), 5.0), Some(26.0));
+        assert_eq!(replay(&y, y.id(), 7.0), Some(7.0));
+        assert_eq!(replay(&x, y.id(), 7.0), Some(3.0), "what is not rested on changes nothing");
     }
 }

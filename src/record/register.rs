@@ -4,10 +4,11 @@
 //! *reported* value, and so its status, is worked out when that value is reported: [`judge`]. The surprise: a status is
 //! never stored, since it depends on the value asked for and on the tolerance in force.
 
+use std::collections::BTreeMap;
 use std::rc::Rc;
 
-use crate::record::node::{Node, replayed};
-use crate::record::spread::derivative;
+use crate::record::node::{Node, history, replayed};
+use crate::record::spread::derivatives;
 use crate::source::Citation;
 
 /// Every assumption the program knows, with its claim in words. Ids are fixed: notebooks and seals hold them.
@@ -17,6 +18,7 @@ pub const CLAIMS: &[(&str, &str)] = &[
     ("ideal-gas", "the gases are ideal"),
     ("condensed-volume-neglected", "the volume of liquids and solids is too small to matter"),
     ("formation-dataset", "the formation enthalpies of this dataset are the ones to use"),
+    ("linear-propagation", "first derivatives are enough to propagate the uncertainties"),
     ("uncertainty-incomplete", "the inputs that state no uncertainty add none that matters"),
     ("basis-unnamed", "a mole of nothing in particular was a mole of what it met"),
     ("together", "the assumptions that hold one by one also hold together"),
@@ -40,6 +42,9 @@ pub enum Tested {
     Missing { what: String },
     /// The price was given by the analyst, in SI units of the node.
     Given { price: f64, how: String },
+    /// The standard uncertainty was computed in a better way: the price is the change of u, in SI units of the node. It says
+    /// nothing of the uncertainty of any other value.
+    Spread { price: f64, how: String },
 }
 
 /// One assumption, tested.
@@ -111,12 +116,46 @@ pub struct Judgement {
     pub first_order: bool,
 }
 
+/// A value as prices are worked out at it: with its history and its derivatives, each found once.
+pub struct Reported {
+    history: Vec<Rc<Node>>,
+    derivatives: BTreeMap<u64, f64>,
+    si: f64,
+    id: u64,
+}
+
+impl Reported {
+    pub fn of(node: &Rc<Node>) -> Self {
+        let (si, id) = (node.si(), node.id());
+        Reported { history: history(node), derivatives: derivatives(node), si, id }
+    }
+
+    /// Every node the value rests on, inputs before their users, itself last.
+    pub fn history(&self) -> &[Rc<Node>] {
+        &self.history
+    }
+
+    /// The derivative with respect to a node; 0 where the value does not rest on it.
+    pub fn derivative(&self, id: u64) -> f64 {
+        self.derivatives.get(&id).copied().unwrap_or(0.0)
+    }
+
+    /// What the value costs if some of its nodes should have been these, all at once, and whether that is to first order:
+    /// recomputed through every step that can be, else by the derivatives.
+    pub fn price(&self, better: &BTreeMap<u64, f64>) -> (f64, bool) {
+        if let Some(instead) = replayed(&self.history, better).filter(|instead| instead.is_finite()) {
+            return (self.si - instead, false);
+        }
+        let changed = self.history.iter().filter_map(|node| Some((node, better.get(&node.id())?)));
+        (changed.map(|(node, si)| self.derivative(node.id()) * (node.si() - si)).sum(), true)
+    }
+}
+
 /// The price and status, at a reported value, of findings that are one row: the same assumption about the same subject,
-/// leaned on by several steps. Their prices add up, and what cancels between the steps costs nothing. `tolerance` is in SI
-/// units of the reported value.
-pub fn judge(findings: &[Finding], reported: &Rc<Node>, tolerance: f64) -> Judgement {
-    let prices: Vec<(Option<f64>, bool)> = findings.iter().map(|finding| price_at(finding, reported)).collect();
-    let price: Option<f64> = prices.iter().map(|(price, _)| *price).sum();
+/// leaned on by several steps. All their better values are put in at once, so what cancels between the steps costs nothing.
+/// `tolerance` is in SI units of the reported value.
+pub fn judge(findings: &[Finding], reported: &Reported, tolerance: f64) -> Judgement {
+    let (price, first_order) = row_price(findings, reported);
     let is_false = findings.iter().any(|finding| matches!(finding.tested, Tested::False { .. }));
     let status = match price {
         _ if is_false => Status::Broken,
@@ -124,31 +163,32 @@ pub fn judge(findings: &[Finding], reported: &Rc<Node>, tolerance: f64) -> Judge
         Some(price) if price.abs() <= tolerance => Status::Holds,
         Some(_) => Status::Strained,
     };
-    Judgement { status, price, first_order: prices.iter().any(|(_, first_order)| *first_order) }
+    Judgement { status, price, first_order }
 }
 
-fn price_at(finding: &Finding, reported: &Rc<Node>) -> (Option<f64>, bool) {
-    match &finding.tested {
-        Tested::True { .. } => (Some(0.0), false),
-        Tested::Missing { .. } | Tested::False { value: None, .. } => (None, false),
-        Tested::Given { price, .. } => {
-            (Some(price * derivative(reported, finding.at.id())), finding.at.id() != reported.id())
+fn row_price(findings: &[Finding], reported: &Reported) -> (Option<f64>, bool) {
+    let mut better = BTreeMap::new();
+    let mut of_u = 0.0;
+    for finding in findings {
+        let at = &finding.at;
+        match &finding.tested {
+            Tested::True { .. } => {}
+            Tested::Missing { .. } | Tested::False { value: None, .. } => return (None, false),
+            Tested::Better { value, .. } | Tested::False { value: Some(value), .. } => {
+                better.insert(at.id(), value.si());
+            }
+            Tested::Given { price, .. } => {
+                better.insert(at.id(), at.si() - price);
+            }
+            Tested::Spread { price, .. } if at.id() == reported.id => of_u += price,
+            Tested::Spread { .. } => return (None, false),
         }
-        Tested::Better { value, .. } | Tested::False { value: Some(value), .. } => {
-            price_of(reported, &finding.at, value.si())
-        }
     }
-}
-
-/// What the reported value costs if the node `at` should have been `better`, and whether that is first order only.
-pub fn price_of(reported: &Rc<Node>, at: &Node, better: f64) -> (Option<f64>, bool) {
-    if at.id() == reported.id() {
-        return (Some(reported.si() - better), false);
+    if better.is_empty() {
+        return (Some(of_u), false);
     }
-    match replayed(reported, at.id(), better) {
-        Some(instead) => (Some(reported.si() - instead), false),
-        None => (Some(derivative(reported, at.id()) * (at.si() - better)), true),
-    }
+    let (price, first_order) = reported.price(&better);
+    (Some(price + of_u), first_order)
 }
 
 #[cfg(test)]
@@ -160,8 +200,7 @@ mod tests {
     use crate::units::{Dimension, Kind};
 
     fn leaf(si: f64) -> Rc<Node> {
-        let input =
-            Input { key: LeafKey::Own(si.to_string().into()), u: None, digit: None, label: None, citation: None };
+        let input = Input::of(LeafKey::Own(si.to_string().into()));
         Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
     }
 
@@ -179,9 +218,32 @@ mod tests {
         let reported = Rc::new(doubled);
         let tested = Tested::Better { value: better, how: "computed".into() };
         let finding = Finding::known("ideal-gas", "CO2(g)", &at, None, tested);
-        let judged = |tolerance| judge(std::slice::from_ref(&finding), &reported, tolerance);
+        let judged = |tolerance| judge(std::slice::from_ref(&finding), &Reported::of(&reported), tolerance);
         assert_eq!(judged(1.9), Judgement { status: Status::Strained, price: Some(2.0), first_order: false });
         assert_eq!(judged(2.0).status, Status::Holds);
+    }
+
+    #[test]
+    fn a_price_of_u_belongs_to_its_own_value_only() {
+        let (at, other) = (leaf(3.0), leaf(6.0));
+        let tested = Tested::Spread { price: -0.2, how: "drawn".into() };
+        let finding = Finding::known("linear-propagation", "u", &at, None, tested);
+        let judged = |value: &Rc<Node>| judge(std::slice::from_ref(&finding), &Reported::of(value), 0.1);
+        assert_eq!((judged(&at).status, judged(&at).price), (Status::Strained, Some(-0.2)));
+        assert_eq!((judged(&other).status, judged(&other).price), (Status::Untested, None));
+    }
+
+    #[test]
+    fn steps_of_one_row_are_corrected_together() {
+        // (3/2) with both steps better by 1: (2/1), where each alone would give 2/2 and 3/1.
+        let (a, b) = (leaf(3.0), leaf(2.0));
+        let inputs = smallvec![(Rc::clone(&a), 0.5), (Rc::clone(&b), -0.75)];
+        let quotient = Node::new(1.5, Dimension::none(), Kind::PLAIN, inputs, Origin::Operator(Operator::Divide), None);
+        let finding = |at: &Rc<Node>, si| {
+            Finding::known("ideal-gas", "x", at, None, Tested::Better { value: leaf(si), how: "computed".into() })
+        };
+        let judged = judge(&[finding(&a, 2.0), finding(&b, 1.0)], &Reported::of(&Rc::new(quotient)), 1.0);
+        assert_eq!(judged, Judgement { status: Status::Holds, price: Some(-0.5), first_order: false });
     }
 
     #[test]
@@ -190,7 +252,7 @@ mod tests {
         let finding = |tested| Finding::known("stable-phase", "H2O(l)", &at, None, tested);
         let broken = finding(Tested::False { why: "it boils".into(), value: Some(leaf(3.0)) });
         let missing = finding(Tested::Missing { what: "no vapour record".into() });
-        assert_eq!(judge(&[broken], &at, f64::INFINITY).status, Status::Broken);
-        assert_eq!(judge(&[missing], &at, f64::INFINITY).status, Status::Untested);
+        assert_eq!(judge(&[broken], &Reported::of(&at), f64::INFINITY).status, Status::Broken);
+        assert_eq!(judge(&[missing], &Reported::of(&at), f64::INFINITY).status, Status::Untested);
     }
 }

@@ -9,7 +9,8 @@ use std::collections::binary_heap::PeekMut;
 use std::collections::{BTreeMap, BinaryHeap};
 use std::rc::Rc;
 
-use crate::record::node::{Input, LeafKey, Node};
+use crate::record::correlation;
+use crate::record::node::{Input, LeafKey, Node, Operator, Origin};
 
 /// How a value depends on one input.
 #[derive(Clone)]
@@ -17,11 +18,22 @@ pub struct Sensitivity {
     pub leaf: Rc<Node>,
     /// ∂(value)/∂(input), in SI units.
     pub derivative: f64,
+    /// Whether the input was chosen as a condition of some formula on the way, and so is not silent without an uncertainty.
+    pub chosen: bool,
 }
 
 impl Sensitivity {
     pub fn input(&self) -> Option<&Input> {
         self.leaf.input()
+    }
+
+    pub fn key(&self) -> Option<&LeafKey> {
+        self.input().map(|input| &input.key)
+    }
+
+    /// Whether the input states no uncertainty, and was not chosen either.
+    pub fn is_silent(&self) -> bool {
+        self.part().is_none() && !self.chosen
     }
 
     /// The share of the standard uncertainty that this input brings, signed: derivative times u.
@@ -58,17 +70,90 @@ impl Spread {
     }
 }
 
-/// One user's share in the adjoint of a node. The largest is the node with the largest id, and of its shares the first.
-struct Share<'a> {
+/// The correlation coefficient of two values, from the inputs they share and those that are correlated; `None` where one
+/// of them has no uncertainty.
+pub fn correlation_of(a: &Rc<Node>, b: &Rc<Node>) -> Option<f64> {
+    let (a, b) = (sensitivities(a), sensitivities(b));
+    let size = (correlation::variance(&a) * correlation::variance(&b)).sqrt();
+    // Rounding may take a full correlation past 1 by a bit.
+    (size > 0.0).then(|| (correlation::covariance(&a, &b) / size).clamp(-1.0, 1.0))
+}
+
+/// Derivatives of `of` with respect to each input it rests on, in the order of the inputs' keys. Inputs that cancel are left
+/// out, also where rounding leaves a residue of them: less than 16 roundings of the sum of the sizes that cancelled.
+pub fn sensitivities(of: &Rc<Node>) -> Vec<Sensitivity> {
+    let mut pending = BinaryHeap::from([Share { reached: Reached::itself(of), nth: 0 }]);
+    let mut read: BTreeMap<u64, Reached<'_>> = BTreeMap::new();
+    let mut count = 0;
+    // The largest id first: all users of a node have larger ids, so all its shares are there when it is taken out.
+    while let Some(Share { mut reached, .. }) = pending.pop() {
+        let node = reached.node;
+        while let Some(next) = pending.peek_mut().filter(|next| next.reached.node.id() == node.id()) {
+            reached.add(&PeekMut::pop(next).reached);
+        }
+        if node.input().is_some() {
+            read.entry(node.id()).or_insert_with(|| Reached::not_yet(node)).add(&reached);
+        }
+        let chosen = matches!(node.origin(), Origin::Operator(Operator::Condition));
+        for (input, partial) in node.inputs() {
+            let (adjoint, size) = (reached.adjoint * partial, reached.size * partial.abs());
+            let share = Reached { node: input, adjoint, size, chosen };
+            // Inputs wait in no queue: a sum of many terms would fill it with shares of one and the same.
+            if input.input().is_some() {
+                read.entry(input.id()).or_insert_with(|| Reached::not_yet(input)).add(&share);
+            } else {
+                count += 1;
+                pending.push(Share { reached: share, nth: count });
+            }
+        }
+    }
+    let mut leaves: BTreeMap<&LeafKey, (Sensitivity, f64)> = BTreeMap::new();
+    for reached in read.into_values().rev() {
+        let Some(input) = reached.node.input() else { continue };
+        let empty = || (Sensitivity { leaf: Rc::clone(reached.node), derivative: 0.0, chosen: false }, 0.0);
+        let entry = leaves.entry(&input.key).or_insert_with(empty);
+        entry.0.derivative += reached.adjoint;
+        entry.1 += reached.size;
+        entry.0.chosen |= reached.chosen;
+    }
+    let is_left = |(leaf, size): &(Sensitivity, f64)| leaf.derivative.abs() > 16.0 * f64::EPSILON * size;
+    leaves.into_values().filter(is_left).map(|(leaf, _)| leaf).collect()
+}
+
+/// A node on the way back from a value: its adjoint, and the sum of the sizes of what was added up to it.
+struct Reached<'a> {
     node: &'a Rc<Node>,
-    nth: u64,
     adjoint: f64,
+    size: f64,
+    chosen: bool,
+}
+
+impl<'a> Reached<'a> {
+    fn itself(node: &'a Rc<Node>) -> Self {
+        Reached { node, adjoint: 1.0, size: 1.0, chosen: false }
+    }
+
+    fn not_yet(node: &'a Rc<Node>) -> Self {
+        Reached { node, adjoint: 0.0, size: 0.0, chosen: false }
+    }
+
+    fn add(&mut self, share: &Reached<'_>) {
+        self.adjoint += share.adjoint;
+        self.size += share.size;
+        self.chosen |= share.chosen;
+    }
+}
+
+/// What one user of a node adds to it. The largest is the node with the largest id, and of its shares the first.
+struct Share<'a> {
+    reached: Reached<'a>,
+    nth: u64,
 }
 
 impl Ord for Share<'_> {
     fn cmp(&self, other: &Self) -> Ordering {
         // A fixed order of the shares makes their sum the same to the last bit.
-        self.node.id().cmp(&other.node.id()).then(other.nth.cmp(&self.nth))
+        self.reached.node.id().cmp(&other.reached.node.id()).then(other.nth.cmp(&self.nth))
     }
 }
 
@@ -86,65 +171,38 @@ impl PartialEq for Share<'_> {
 
 impl Eq for Share<'_> {}
 
-/// Derivatives of `of` with respect to each input it rests on, in the order of the inputs' keys. Inputs that cancel
-/// exactly are left out.
-pub fn sensitivities(of: &Rc<Node>) -> Vec<Sensitivity> {
-    let mut read: BTreeMap<u64, (&Rc<Node>, f64)> = BTreeMap::new();
-    let mut pending = BinaryHeap::from([Share { node: of, nth: 0, adjoint: 1.0 }]);
-    let mut count = 0;
-    // The largest id first: all users of a node have larger ids, so every share of its adjoint is there when it comes.
-    while let Some(Share { node, mut adjoint, .. }) = pending.pop() {
-        while let Some(next) = pending.peek_mut().filter(|next| next.node.id() == node.id()) {
-            adjoint += PeekMut::pop(next).adjoint;
-        }
-        if node.input().is_some() {
-            read.entry(node.id()).or_insert((node, 0.0)).1 += adjoint;
-        }
-        for (input, partial) in node.inputs() {
-            let share = adjoint * partial;
-            // Inputs wait in no queue: a sum of many terms would fill it with shares of one and the same.
-            if input.input().is_some() {
-                read.entry(input.id()).or_insert((input, 0.0)).1 += share;
-            } else {
-                count += 1;
-                pending.push(Share { node: input, nth: count, adjoint: share });
-            }
+/// Derivatives of `of` with respect to every node it rests on, by id: one sweep where many are asked for.
+pub fn derivatives(of: &Rc<Node>) -> BTreeMap<u64, f64> {
+    let mut all = BTreeMap::new();
+    let mut pending: BTreeMap<u64, Reached<'_>> = BTreeMap::from([(of.id(), Reached::itself(of))]);
+    while let Some((id, reached)) = pending.pop_last() {
+        all.insert(id, reached.adjoint);
+        for (input, partial) in reached.node.inputs() {
+            let entry = pending.entry(input.id()).or_insert_with(|| Reached::not_yet(input));
+            entry.adjoint += reached.adjoint * partial;
         }
     }
-    let mut leaves: BTreeMap<&LeafKey, Sensitivity> = BTreeMap::new();
-    for (node, adjoint) in read.into_values().rev() {
-        let Some(input) = node.input() else { continue };
-        let leaf = leaves.entry(&input.key);
-        leaf.or_insert_with(|| Sensitivity { leaf: Rc::clone(node), derivative: 0.0 }).derivative += adjoint;
-    }
-    leaves.into_values().filter(|leaf| leaf.derivative != 0.0).collect()
+    all
 }
 
-/// The derivative of `of` with respect to one node it rests on; 0 where it does not.
-pub fn derivative(of: &Rc<Node>, with_respect_to: u64) -> f64 {
-    let mut adjoints: BTreeMap<u64, (Rc<Node>, f64)> = BTreeMap::from([(of.id(), (Rc::clone(of), 1.0))]);
-    while let Some((id, (node, adjoint))) = adjoints.pop_last() {
-        if id <= with_respect_to {
-            return if id == with_respect_to { adjoint } else { 0.0 };
-        }
-        for (input, partial) in node.inputs() {
-            adjoints.entry(input.id()).or_insert_with(|| (Rc::clone(input), 0.0)).1 += adjoint * partial;
-        }
+/// The root of the variance, by way of parts no larger than 1, since squares of large equilibrium constants overflow.
+fn deviation(inputs: &[Sensitivity]) -> f64 {
+    let largest = inputs.iter().filter_map(Sensitivity::part).fold(0.0, |largest, part| f64::max(largest, part.abs()));
+    if !(largest > 0.0 && largest.is_finite()) {
+        return largest;
     }
-    0.0
+    let scaled: Vec<Sensitivity> = (inputs.iter())
+        .map(|one| Sensitivity { leaf: Rc::clone(&one.leaf), derivative: one.derivative / largest, chosen: one.chosen })
+        .collect();
+    largest * correlation::variance(&scaled).sqrt()
 }
 
 /// The spread of a value.
 pub fn spread(of: &Rc<Node>) -> Spread {
-    let mut variance = 0.0;
-    let mut silent = Vec::new();
-    for leaf in sensitivities(of) {
-        match leaf.part() {
-            Some(part) => variance += part * part,
-            None => silent.extend(leaf.input().map(|input| input.key.clone())),
-        }
-    }
-    let u = f64::sqrt(variance);
+    let inputs = sensitivities(of);
+    let silent: Vec<LeafKey> =
+        inputs.iter().filter(|one| one.is_silent()).filter_map(|one| one.key().cloned()).collect();
+    let u = deviation(&inputs);
     match silent.is_empty() {
         true => Spread::Full(u),
         false if u > 0.0 => Spread::Partial { u, silent },
@@ -161,7 +219,7 @@ mod tests {
     use crate::units::{Dimension, Kind};
 
     fn leaf(name: &str, si: f64, u: Option<f64>) -> Rc<Node> {
-        let input = Input { key: LeafKey::Own(name.into()), u, digit: None, label: None, citation: None };
+        let input = Input { u, ..Input::of(LeafKey::Own(name.into())) };
         Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
     }
 
@@ -184,9 +242,10 @@ mod tests {
         let a = weighted(&x, 2.0, &y, 1.0);
         let b = weighted(&a, 1.0, &a, 3.0);
         let c = weighted(&b, 1.0, &a, 0.5);
-        let derivatives: Vec<f64> = sensitivities(&c).iter().map(|one| one.derivative).collect();
-        assert_eq!(derivatives, [9.0, 4.5]);
-        assert_eq!((derivative(&c, a.id()), derivative(&c, x.id())), (4.5, 9.0));
+        let by_input: Vec<f64> = sensitivities(&c).iter().map(|one| one.derivative).collect();
+        assert_eq!(by_input, [9.0, 4.5]);
+        let by_node = derivatives(&c);
+        assert_eq!((by_node[&a.id()], by_node[&x.id()]), (4.5, 9.0));
     }
 
     #[test]

@@ -5,6 +5,7 @@
 use std::sync::Arc;
 
 use crate::model::basis;
+use crate::model::card::call_of;
 use crate::model::conditions;
 use crate::model::review;
 use crate::num::math;
@@ -52,6 +53,10 @@ impl Headline {
         };
         let basis = match (shown.basis, basis::direction(value)) {
             (Some(basis), Some(direction)) => Some(format!("{basis} {direction}")),
+            // Twice a reaction value, or a sum of two reactions, is not per mole of one reaction as written.
+            (Some(_), None) if value.dim().is_per_reaction() && call_of(value.node()).is_none() => {
+                Some("per mole of reaction".to_owned())
+            }
             (basis, _) => basis,
         };
         Headline { symbol: conditions::symbol(value), number, unit: shown.unit, caveat, basis, logarithm }

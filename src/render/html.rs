@@ -92,7 +92,8 @@ pub fn report(report: &Report) -> String {
     let mut out = String::from("<div class=\"hessbook-report\">");
     out.push_str(&format!("<p><b>{}</b><br>{}</p>", escaped(&record.label), headline(&report.headline)));
     let mut facts = String::new();
-    for (name, text) in [("conditions", &record.conditions), ("check", &record.check_line)] {
+    let about = record.about.join("; ");
+    for (name, text) in [("of", &about), ("conditions", &record.conditions), ("check", &record.check_line)] {
         if !text.is_empty() {
             facts.push_str(&format!(
                 "<tr><td style=\"text-align:left\">{name}</td><td style=\"text-align:left\">{}</td></tr>",

@@ -3,8 +3,10 @@
 //! A [`Bundle`] holds one output in several forms. A report's forms are all made from one [`report::Report`], so that
 //! text, HTML, LaTeX and the machine record cannot disagree.
 
+pub mod budget;
 pub mod headline;
 pub mod html;
+pub mod interval;
 pub mod latex;
 pub mod register;
 pub mod report;
@@ -12,6 +14,7 @@ pub mod text;
 
 use std::collections::BTreeMap;
 
+use crate::model::answer::Answer;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::quantity::Quantity;
@@ -48,6 +51,15 @@ pub fn substance(substance: &PureSubstance) -> Bundle {
     };
     let text = format!("{}{name}: {range}", record.id());
     Bundle::text(text.clone()).with_text("text/html", html::escaped(&text))
+}
+
+/// What was asked of an uncertainty, in text and HTML.
+pub fn answer(answer: &Answer) -> Bundle {
+    match answer {
+        Answer::Budget(budget) => budget::bundle(budget),
+        Answer::Expanded(expanded) => interval::expanded(expanded),
+        Answer::Propagation(propagation) => interval::propagation(propagation),
+    }
 }
 
 impl Bundle {

@@ -33,6 +33,8 @@ pub struct Record {
     pub unit: String,
     /// The headline as readers see it.
     pub shown: String,
+    /// The reactions and substances it was computed from, as written.
+    pub about: Vec<String>,
     pub conditions: String,
     pub check_line: String,
     pub tolerance: String,
@@ -121,7 +123,7 @@ fn record(label: &str, value: &Quantity, headline: &Headline, review: &Review) -
     let price_unit = unit.text.to_string();
     let with_unit = |price: f64| {
         let reader = units::reader_text(&unit);
-        let number = review::signed(value, price);
+        let number = review::signed(review.precision, price);
         if reader.is_empty() { number } else { format!("{number} {reader}") }
     };
     let missing = |(field, records): &(String, Vec<String>)| {
@@ -139,6 +141,7 @@ fn record(label: &str, value: &Quantity, headline: &Headline, review: &Review) -
         u_missing: review.silent.iter().flat_map(missing).collect(),
         unit: price_unit.clone(),
         shown: headline.line(),
+        about: review.about.clone(),
         conditions: review.conditions.clone(),
         check_line: review.check_line.clone(),
         tolerance: shortest(review.tolerance),

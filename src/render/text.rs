@@ -19,6 +19,7 @@ pub fn report(report: &Report) -> String {
             out.push_str(&format!("  {name:<12}{text}\n"));
         }
     };
+    line("of", &record.about.join("; "));
     line("conditions", &record.conditions);
     line("check", &record.check_line);
     for caution in &record.cautions {

@@ -13,12 +13,14 @@ use rhai::{Array, Dynamic, Engine, EvalAltResult, FuncRegistration, ImmutableStr
 
 use crate::fault::{Fault, Place};
 use crate::model::CARDS;
+use crate::model::answer::Answer;
 use crate::model::card::{self, Card, Cx, On, Value};
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::quantity::{Quantity, text};
 use crate::script::fault::raise;
 use crate::script::state::{Shared, place_of};
+use crate::source::Citation;
 
 /// A result of a function of the script.
 pub type Native<T> = Result<T, Box<EvalAltResult>>;
@@ -28,6 +30,18 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
     engine.register_type_with_name::<Quantity>("quantity");
     engine.register_type_with_name::<Rc<Reaction>>("reaction");
     engine.register_type_with_name::<Rc<PureSubstance>>("substance");
+    for name in ["to_string", "to_debug"] {
+        engine.register_fn(name, |reaction: &mut Rc<Reaction>| reaction.text().to_owned());
+        engine.register_fn(name, |substance: &mut Rc<PureSubstance>| substance.text().to_owned());
+    }
+    engine.register_type_with_name::<Answer>("answer about uncertainty");
+    // Asked for every property that has no getter of its own.
+    engine.register_indexer_get(
+        |context: NativeCallContext<'_>, answer: &mut Answer, name: ImmutableString| -> Native<Dynamic> {
+            let part = answer.part(&name).map(from_value);
+            part.map_err(|error| raise(Fault::from(error).at(place_of(&context))))
+        },
+    );
     typed(engine, shared);
     for card in CARDS {
         bind(engine, card, shared);
@@ -37,7 +51,8 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
 /// Runs `work` with what a formula needs of the session; `place` is where the script called from.
 pub fn with_context<T>(shared: &Shared, place: Option<Place>, work: impl FnOnce(&Cx) -> Result<T, Fault>) -> Native<T> {
     let ordinal = Cell::new(shared.state_mut().next_ordinal());
-    let cx = Cx { references: shared.references(), place: place.clone(), ordinal: &ordinal };
+    let halted = || shared.halted().map(Fault::from);
+    let cx = Cx { references: shared.references(), place: place.clone(), ordinal: &ordinal, halted: &halted };
     let done = work(&cx);
     shared.state_mut().skip_ordinals_to(ordinal.get());
     done.map_err(|fault| raise(fault.at(place)))
@@ -77,6 +92,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
         return Value::Substance(Rc::clone(&substance));
     }
+    if let Some(answer) = value.read_lock::<Answer>() {
+        return Value::Answer(answer.clone());
+    }
     if let Some(text) = value.read_lock::<ImmutableString>() {
         return Value::Text(text.as_str().into());
     }
@@ -112,22 +130,60 @@ fn from_value(value: Value) -> Dynamic {
         ),
         Value::Reaction(reaction) => Dynamic::from(reaction),
         Value::Substance(substance) => Dynamic::from(substance),
+        Value::Answer(answer) => Dynamic::from(answer),
         Value::Nothing => Dynamic::UNIT,
     }
 }
 
-/// `q("-285.830(20) kJ/mol")`: the one form that keeps typed digits and their uncertainty.
+/// `q("-285.830(20) kJ/mol")`: the one form that keeps typed digits and their uncertainty; with a second text, the source of
+/// the figure. `exact("2 mol[H2]/mol[O2]")`: a figure that is exact by definition or by counting.
 fn typed(engine: &mut Engine, shared: &Shared) {
+    let read = |shared: &Shared, context: &NativeCallContext<'_>, written: &str, more: More<'_>| -> Native<Quantity> {
+        let place = place_of(context);
+        let ordinal = shared.state_mut().next_ordinal();
+        let made = text::parse(written, place.clone(), ordinal).map_err(Fault::from);
+        let made = made.and_then(|value| match more {
+            More::Nothing => Ok(value),
+            More::Source(source) => Ok(value.with_input(|input| input.citation = Some(Citation::new(source, "")))),
+            More::Exact if value.node().input().is_some_and(|input| input.u.is_some()) => Err(Fault::new(
+                "exact-with-uncertainty",
+                format!("`{written}` states an uncertainty, and an exact figure has none"),
+                "write it without, or use `q`",
+            )),
+            More::Exact => Ok(value.with_input(|input| {
+                input.u = Some(0.0);
+                input.digit = None;
+            })),
+        });
+        made.map_err(|fault| raise(fault.at(place)))
+    };
     let session = shared.clone();
     FuncRegistration::new("q")
         .with_comments(["/// A quantity as written: number, uncertainty in brackets, unit."])
+        .register_into_engine(engine, move |context: NativeCallContext<'_>, written: ImmutableString| {
+            read(&session, &context, &written, More::Nothing)
+        });
+    let session = shared.clone();
+    FuncRegistration::new("q")
+        .with_comments(["/// A quantity as written, with the source of the figure."])
         .register_into_engine(
             engine,
-            move |context: NativeCallContext<'_>, written: ImmutableString| -> Native<Quantity> {
-                let place = place_of(&context);
-                let ordinal = session.state_mut().next_ordinal();
-                text::parse(&written, place.clone(), ordinal).map_err(|error| raise(Fault::from(error).at(place)))
+            move |context: NativeCallContext<'_>, written: ImmutableString, source: ImmutableString| {
+                read(&session, &context, &written, More::Source(&source))
             },
         );
+    let session = shared.clone();
+    FuncRegistration::new("exact")
+        .with_comments(["/// A figure that is exact by definition or by counting, such as a ratio of moles."])
+        .register_into_engine(engine, move |context: NativeCallContext<'_>, written: ImmutableString| {
+            read(&session, &context, &written, More::Exact)
+        });
     engine.register_fn("q", |written: Quantity| written);
+}
+
+/// What is said of a typed figure besides its text.
+enum More<'a> {
+    Nothing,
+    Source(&'a str),
+    Exact,
 }

@@ -7,7 +7,7 @@
 use std::any::TypeId;
 use std::fmt;
 
-use rhai::{Array, Blob, Dynamic, Engine, EvalAltResult, FnPtr, ImmutableString, NativeCallContext};
+use rhai::{Array, Blob, Dynamic, Engine, EvalAltResult, FnPtr, ImmutableString, Map, NativeCallContext};
 
 use crate::fault::Explain;
 use crate::script::fault::raise;
@@ -21,6 +21,8 @@ pub enum GuardError {
     ReadsTheClock { function: &'static str },
     /// It shows the engine's own bookkeeping.
     ShowsTheEngine { function: &'static str },
+    /// The engine's JSON has names of Rust types for values of ours, and takes memory that nobody counts.
+    WritesJson,
     /// A `switch` on something that no case can be equal to.
     NotSwitchable { kind: String },
     /// `dedup` without a rule, on values that have no `==`.
@@ -38,6 +40,7 @@ impl fmt::Display for GuardError {
                 write!(f, "{function} is refused: the result would depend on when the notebook is run")
             }
             GuardError::ShowsTheEngine { function } => write!(f, "{function} is not offered in notebooks"),
+            GuardError::WritesJson => write!(f, "values are not turned into JSON in notebooks"),
             GuardError::NotSwitchable { kind } => {
                 write!(f, "switch looks for identical values, and {kind} is identical to no case")
             }
@@ -53,6 +56,7 @@ impl Explain for GuardError {
         match self {
             GuardError::ReadsTheClock { .. } => "reads-the-clock",
             GuardError::ShowsTheEngine { .. } => "shows-the-engine",
+            GuardError::WritesJson => "writes-json",
             GuardError::NotSwitchable { .. } => "not-switchable",
             GuardError::NoEquality { .. } => "no-equality",
             GuardError::NotJson { .. } => "not-json",
@@ -64,6 +68,7 @@ impl Explain for GuardError {
         match self {
             GuardError::ReadsTheClock { .. } => "leave it out; a date belongs in the text of the notebook",
             GuardError::ShowsTheEngine { .. } => "complete or inspect names in the notebook's own front end",
+            GuardError::WritesJson => "print what is wanted; `hessbook run --format json` gives every report",
             GuardError::NotSwitchable { .. } => "use if … else if …, or make it a whole number with to_int()",
             GuardError::NoEquality { .. } => "give the rule: dedup(|a, b| …), true where b is to be dropped",
             GuardError::NotJson { .. } => {
@@ -95,6 +100,8 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
 fn refuse(engine: &mut Engine) {
     let clock = |function| move || -> Outcome<Dynamic> { Err(raise(GuardError::ReadsTheClock { function })) };
     engine.register_fn("timestamp", clock("timestamp()"));
+    let json = || -> Outcome<Dynamic> { Err(raise(GuardError::WritesJson)) };
+    engine.register_fn("to_json", move |_: &mut Map| json());
     let pause = clock("sleep()");
     engine.register_fn("sleep", move |_: i64| pause());
     engine.register_fn("sleep", move |_: f64| pause());

@@ -27,8 +27,6 @@ enum Misuse {
     WithOther { operator: &'static str, other: String },
     #[error("cannot add a bare number and a value in {unit}")]
     NumberAndUnit { unit: String },
-    #[error("an exponent with a unit, {unit}, has no meaning")]
-    ExponentWithUnit { unit: String },
 }
 
 impl Explain for Misuse {
@@ -38,7 +36,6 @@ impl Explain for Misuse {
             Misuse::WithText { .. } => "quantity-and-text",
             Misuse::WithOther { .. } => "quantity-and-other",
             Misuse::NumberAndUnit { .. } => "number-and-unit",
-            Misuse::ExponentWithUnit { .. } => "exponent-with-unit",
         }
     }
 
@@ -50,7 +47,6 @@ impl Explain for Misuse {
             Misuse::WithText { .. } => "make the text a quantity first: `q(\"1.5 kJ/mol\")`".to_owned(),
             Misuse::WithOther { .. } => "compute with quantities and numbers only".to_owned(),
             Misuse::NumberAndUnit { unit } => format!("give the number its unit: `q(\"1.5 {unit}\")`"),
-            Misuse::ExponentWithUnit { .. } => "divide until it is a pure number".to_owned(),
         }
     }
 }
@@ -89,7 +85,7 @@ macro_rules! with_numbers {
             done(&c, |place| b.scaled(real(a), place))
         });
         $engine.register_fn("/", move |c: NativeCallContext<'_>, a: Quantity, b: $number| {
-            done(&c, |place| a.scaled(1.0 / real(b), place))
+            done(&c, |place| a.divided(real(b), place))
         });
         $engine.register_fn("/", move |c: NativeCallContext<'_>, a: $number, b: Quantity| {
             done(&c, |place| b.reciprocal(real(a), place))
@@ -130,7 +126,7 @@ fn pairs(engine: &mut Engine, shared: &Shared) {
             move |context: NativeCallContext<'_>, a: Quantity, b: Quantity| -> Native<Quantity> {
                 run(&a, &b, place_of(&context)).map_err(|mismatch| {
                     let ordinal = Cell::new(0); // A refusal reads nothing as typed.
-                    let cx = Cx { references: session.references(), place: None, ordinal: &ordinal };
+                    let cx = Cx { references: session.references(), place: None, ordinal: &ordinal, halted: &|| None };
                     let figure = refusal::figure(&cx, &a, &b, &mismatch);
                     let fault = Fault::from(mismatch).at(place_of(&context));
                     raise(figure.map_or(fault.clone(), |figure| fault.adding(&figure)))
@@ -141,19 +137,22 @@ fn pairs(engine: &mut Engine, shared: &Shared) {
     engine.register_fn("-", |context: NativeCallContext<'_>, a: Quantity| done(&context, |place| a.negated(place)));
     engine.register_fn("+", |a: Quantity| a);
     engine.register_fn("**", |context: NativeCallContext<'_>, a: Quantity, b: Quantity| {
-        if b.dim().is_none() {
-            done(&context, |place| a.raised(&b, place))
-        } else {
-            refuse(&context, Misuse::ExponentWithUnit { unit: b.unit().text.to_string() })
-        }
+        done(&context, |place| a.power_of(&b, place))
     });
 }
 
 fn functions(engine: &mut Engine) {
     type Unary = fn(&Quantity, Option<Place>) -> Result<Quantity, Mismatch>;
     let root: Unary = |value, place| value.power(0.5, place);
-    let functions: [(&str, Unary); 4] =
-        [("abs", Quantity::absolute), ("exp", Quantity::exp), ("ln", Quantity::ln), ("sqrt", root)];
+    let functions: [(&str, Unary); 7] = [
+        ("abs", Quantity::absolute),
+        ("exp", Quantity::exp),
+        ("ln", Quantity::ln),
+        ("sin", Quantity::sin),
+        ("cos", Quantity::cos),
+        ("tan", Quantity::tan),
+        ("sqrt", root),
+    ];
     for (name, run) in functions {
         engine.register_fn(name, move |context: NativeCallContext<'_>, a: Quantity| {
             done(&context, |place| run(&a, place))

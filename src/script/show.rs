@@ -10,6 +10,7 @@ use std::rc::Rc;
 use rhai::{Array, Blob, Dynamic, Engine, FnPtr, ImmutableString, Map};
 
 use crate::fault::Fault;
+use crate::model::answer::Answer;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::quantity::Quantity;
@@ -26,6 +27,9 @@ const ENTRIES: usize = 100;
 fn own(value: &Dynamic) -> Option<Bundle> {
     if let Some(quantity) = value.read_lock::<Quantity>() {
         return Some(render::quantity(&quantity));
+    }
+    if let Some(answer) = value.read_lock::<Answer>() {
+        return Some(render::answer(&answer));
     }
     if let Some(display) = value.read_lock::<Display>() {
         return Some((*display.0).clone());

@@ -29,7 +29,8 @@ use crate::units::constants;
 pub struct State {
     /// The cell being run, or the last one that was.
     pub cell: Rc<str>,
-    /// How many things this cell has numbered so far: with the cell's name, an identity that a re-run repeats.
+    /// How many inputs the session has numbered so far. Never taken back to 0: one number is one evaluation, or two readings
+    /// made by one function would be taken for one figure.
     ordinal: u64,
     /// Reported results, in the order of their first report.
     pub reports: Vec<Reported>,
@@ -58,16 +59,16 @@ pub struct Parameter {
 }
 
 impl State {
-    /// The state as a cell finds it: numbering starts again.
+    /// The state as a cell finds it.
     pub fn enter(&mut self, cell: &str) {
         self.cell = cell.into();
-        self.ordinal = 0;
         // A cell that is run again says anew what it reports and declares; what it no longer says is gone.
         self.reports.retain(|one| &*one.cell != cell);
         self.parameters.retain(|one| &*one.cell != cell);
+        self.dealings.retain(|one| one.cell != cell);
     }
 
-    /// The next number in this cell, from 1.
+    /// The next number, from 1.
     pub fn next_ordinal(&mut self) -> u64 {
         self.ordinal += 1;
         self.ordinal
@@ -341,7 +342,7 @@ mod tests {
         assert_eq!(host.0, ["1 at cell-4, line 1, column 1", "2 at cell-4, line 2, column 27"]);
         assert_eq!(&*shared.state().cell, "cell-4");
         shared.state_mut().enter("cell-5");
-        assert_eq!(shared.state_mut().next_ordinal(), 1);
+        assert_eq!(shared.state_mut().next_ordinal(), 3, "numbers are not given out twice");
     }
 
     #[test]

@@ -10,6 +10,7 @@ use rhai::{Dynamic, Engine, FuncRegistration, ImmutableString, NativeCallContext
 
 use crate::fault::{Explain, Fault};
 use crate::model::card::{Cx, Value};
+use crate::model::quantities::PointForDifference;
 use crate::model::review::{Dealing, Decided};
 use crate::quantity::{Quantity, text};
 use crate::render::report::{Assumption, Report};
@@ -17,6 +18,7 @@ use crate::render::{Bundle, register as register_view};
 use crate::script::bind::{Native, to_value, with_context};
 use crate::script::show;
 use crate::script::state::{Parameter, Reported, Shared, place_of};
+use crate::units::What;
 
 /// A verb as help shows it.
 pub struct Verb {
@@ -94,6 +96,10 @@ enum VerbError {
     ParameterUnit { name: String, given: String, declared: String },
     #[error("the parameter `{name}` was set to `{given}`, which is no number")]
     ParameterNumber { name: String, given: String },
+    #[error("the limit of `{id}` is not positive")]
+    LimitNotPositive { id: String },
+    #[error("`{id}` of `{label}` has no price that a limit could be set for")]
+    NothingToTolerate { id: String, label: String },
     #[error("the limit of `{id}` is given in {given}, and `{label}` is in {unit}")]
     LimitUnit { id: String, given: String, label: String, unit: String },
 }
@@ -113,6 +119,8 @@ impl Explain for VerbError {
             VerbError::ParameterUnit { .. } => "parameter-unit",
             VerbError::ParameterNumber { .. } => "parameter-not-a-number",
             VerbError::LimitUnit { .. } => "limit-unit",
+            VerbError::LimitNotPositive { .. } => "limit-not-positive",
+            VerbError::NothingToTolerate { .. } => "nothing-to-tolerate",
         }
     }
 
@@ -142,6 +150,10 @@ impl Explain for VerbError {
                 format!("set it in a unit of the same dimension, such as {declared}")
             }
             VerbError::ParameterNumber { .. } => "set it to a plain number".to_owned(),
+            VerbError::LimitNotPositive { .. } => "give the largest size a price may have, without a sign".to_owned(),
+            VerbError::NothingToTolerate { .. } => {
+                "say why the value may stay, with `justify(id, label, reason)`".to_owned()
+            }
             VerbError::LimitUnit { unit, .. } => format!("give the limit in {unit}"),
         }
     }
@@ -223,7 +235,8 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
 pub fn reports(shared: &Shared) -> Vec<Report> {
     let (state, ordinal) = (shared.state(), Cell::new(0));
     // Reviewing reads nothing as typed, so no numbers are given out.
-    let cx = &Cx { references: shared.references(), place: None, ordinal: &ordinal };
+    let halted = || shared.halted().map(Fault::from);
+    let cx = &Cx { references: shared.references(), place: None, ordinal: &ordinal, halted: &halted };
     state.reports.iter().map(|one| Report::of(cx, &one.label, &one.value, &state.dealings)).collect()
 }
 
@@ -246,17 +259,13 @@ impl Verbs {
             return Err(VerbError::EmptyLabel.into());
         }
         let cell = self.shared.state().cell.clone();
+        // What this cell reported before it was run again is gone when it begins, so a label found here is taken.
         let taken = self.shared.state().reports.iter().find(|one| one.label == label).map(|one| Rc::clone(&one.cell));
-        if let Some(by) = taken.filter(|by| *by != cell) {
+        if let Some(by) = taken {
             return Err(VerbError::LabelTaken { label: label.to_owned(), by: by.to_string() }.into());
         }
         let one = Reported { label: label.to_owned(), value, cell };
-        let mut state = self.shared.state_mut();
-        match state.reports.iter_mut().find(|known| known.label == label) {
-            Some(known) => *known = one,
-            None => state.reports.push(one),
-        }
-        drop(state);
+        self.shared.state_mut().reports.push(one);
         self.shared.show(&self.reviewed(cx, label)?.bundle(), Some(&display_id(label)));
         Ok(())
     }
@@ -298,7 +307,8 @@ impl Verbs {
 
     fn decide(&self, cx: &Cx, id: &str, label: &str, about: Option<&str>, decided: Decided) -> Result<(), Fault> {
         let row = self.row(cx, id, label, about)?;
-        let dealing = Dealing { id: row.id, label: label.to_owned(), subject: row.subject, decided };
+        let cell = self.shared.state().cell.to_string();
+        let dealing = Dealing { id: row.id, label: label.to_owned(), subject: row.subject, cell, decided };
         self.shared.state_mut().dealings.push(dealing);
         self.shared.update(&self.reviewed(cx, label)?.bundle(), &display_id(label));
         Ok(())
@@ -313,6 +323,15 @@ impl Verbs {
 
     fn tolerate(&self, cx: &Cx, id: &str, label: &str, limit: &Dynamic, about: Option<&str>) -> Result<(), Fault> {
         let limit = quantity_of(cx, limit)?;
+        if limit.kind().what == What::TemperaturePoint {
+            return Err(PointForDifference { function: "tolerate", t_k: limit.si() }.into());
+        }
+        if limit.si() <= 0.0 {
+            return Err(VerbError::LimitNotPositive { id: id.to_owned() }.into());
+        }
+        if self.row(cx, id, label, about)?.price.is_none() {
+            return Err(VerbError::NothingToTolerate { id: id.to_owned(), label: label.to_owned() }.into());
+        }
         let (unit, dim) = {
             let state = self.shared.state();
             let value = state.reports.iter().find(|one| one.label == label).map(|one| one.value.clone());
@@ -332,7 +351,7 @@ impl Verbs {
 
     fn parameter(&self, cx: &Cx, name: &str, declared: &Dynamic) -> Result<Dynamic, Fault> {
         let cell = self.shared.state().cell.clone();
-        let twice = self.shared.state().parameters.iter().any(|known| known.name == name && known.cell != cell);
+        let twice = self.shared.state().parameters.iter().any(|known| known.name == name);
         if twice {
             return Err(VerbError::ParameterTwice { name: name.to_owned() }.into());
         }
@@ -341,9 +360,11 @@ impl Verbs {
             Value::Number(default) => {
                 let number = match &set {
                     None => default,
-                    Some(set) => set.trim().parse().map_err(|_| {
-                        Fault::from(VerbError::ParameterNumber { name: name.to_owned(), given: set.clone() })
-                    })?,
+                    Some(set) => {
+                        set.trim().parse().ok().filter(|number: &f64| number.is_finite()).ok_or_else(|| {
+                            Fault::from(VerbError::ParameterNumber { name: name.to_owned(), given: set.clone() })
+                        })?
+                    }
                 };
                 (Dynamic::from_float(number), number.to_string())
             }
@@ -362,9 +383,7 @@ impl Verbs {
             }
         };
         let parameter = Parameter { name: name.to_owned(), written, set: set.is_some(), cell };
-        let mut state = self.shared.state_mut();
-        state.parameters.retain(|known| known.name != name);
-        state.parameters.push(parameter);
+        self.shared.state_mut().parameters.push(parameter);
         Ok(value)
     }
 }

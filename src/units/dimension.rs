@@ -165,6 +165,12 @@ impl Dimension {
         self.of.iter().find(|e| e.0 == of && e.1 == entity).map_or(0, |e| e.2)
     }
 
+    /// Whether an exponent has grown past what the program holds, so that the dimension is not to be trusted.
+    pub fn is_saturated(&self) -> bool {
+        let past = |halves: i8| halves == i8::MAX || halves == i8::MIN;
+        self.halves.iter().any(|halves| past(*halves)) || self.of.iter().any(|(_, _, halves)| past(*halves))
+    }
+
     /// Whether this is a value per mole of reaction as written.
     pub fn is_per_reaction(&self) -> bool {
         self.exponent_of(Of::Amount, Entity::RXN) == -2

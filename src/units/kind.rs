@@ -138,6 +138,8 @@ pub struct State {
     pub p_pa: Option<f64>,
     /// Each species pure, in its standard state.
     pub standard: bool,
+    /// Of a reaction, whatever it is now per mole of: such values belong to their temperature.
+    pub reaction: bool,
 }
 
 /// The sort of quantity with its state.
@@ -162,6 +164,8 @@ pub enum KindMismatch {
     NegatedPoint { t_k: f64 },
     #[error("cannot {verb} a reaction value at {left_k} K and one at {right_k} K: a reaction value belongs to its temperature", verb = verb(*minus))]
     ReactionTemperatures { left_k: f64, right_k: f64, minus: bool },
+    #[error("cannot {verb} a reaction's value and a substance's", verb = verb(*minus))]
+    ReactionAndSubstance { minus: bool },
     #[error("cannot {verb} a value counted from {left} and one counted from {right}", verb = verb(*minus))]
     Zeros { left: Zero, right: Zero, minus: bool },
 }
@@ -179,6 +183,7 @@ impl Explain for KindMismatch {
             KindMismatch::MinusPoint { .. } => "minus-point",
             KindMismatch::NegatedPoint { .. } => "negated-point",
             KindMismatch::ReactionTemperatures { .. } => "reaction-temperatures-differ",
+            KindMismatch::ReactionAndSubstance { .. } => "reaction-and-substance",
             KindMismatch::Zeros { .. } => "zeros-differ",
         }
     }
@@ -215,7 +220,14 @@ impl Explain for KindMismatch {
                 "subtract two points instead, T1 - T2, which is a difference".to_owned()
             }
             KindMismatch::ReactionTemperatures { .. } => {
-                "evaluate both at one temperature, `r.enthalpy(T)` with the same T".to_owned()
+                "evaluate both at one temperature, `r.enthalpy(T)` with the same T; the change of an enthalpy between two is \
+                 `r.enthalpy_increment(T, from)`"
+                    .to_owned()
+            }
+            KindMismatch::ReactionAndSubstance { .. } => {
+                "a reaction's value is a difference of substances already; write the substance into the reaction, or add \
+                 substances' values alone"
+                    .to_owned()
             }
             KindMismatch::Zeros { .. } => {
                 "bring both to one zero: add the substance's own increment between the two temperatures".to_owned()
@@ -245,21 +257,16 @@ impl Kind {
         Kind::of(if kelvin { What::OpenTemperature } else { What::Plain })
     }
 
-    /// Kind of `left + right` or `left - right`, both of dimension `dim`; `si` are the two values, for messages.
-    pub fn sum(left: &Kind, right: &Kind, minus: bool, dim: &Dimension, si: (f64, f64)) -> Result<Kind, KindMismatch> {
+    /// Kind of `left + right` or `left - right`, both of one dimension; `si` are the two values, for messages.
+    pub fn sum(left: &Kind, right: &Kind, minus: bool, si: (f64, f64)) -> Result<Kind, KindMismatch> {
         use What::*;
         if left.what.is_temperature() && right.what.is_temperature() {
             return Kind::sum_of_temperatures(left.what, right.what, minus, si).map(Kind::of);
         }
-        let state = match (&left.state, &right.state) {
-            (Some(one), Some(other)) if !Arc::ptr_eq(one, other) => {
-                Some(Arc::new(State::merged(one, other, minus, dim.is_per_reaction())?))
-            }
-            // One state at most, or one and the same.
-            (one, other) => one.as_ref().or(other.as_ref()).cloned(),
-        };
+        let state = State::merged(left, right, minus)?;
         let keep = |what| Ok(Kind { what, state });
         match (left.what, right.what) {
+            (K, _) | (_, K) => Ok(Kind::PLAIN), // A sum of constants is none.
             (a, b) if a == b => keep(a),
             (Plain, _) | (_, Plain) => keep(Plain), // A typed correction says nothing of its kind, so the sum claims none.
             (Heat, Work) | (Work, Heat) => keep(U), // First law.
@@ -299,6 +306,20 @@ impl Kind {
         })
     }
 
+    /// Kind of a mean of two values that are no temperature points.
+    pub fn mean(left: &Kind, right: &Kind) -> Result<Kind, KindMismatch> {
+        match (left.what, right.what) {
+            (a, b) if a.is_temperature() && a != b => Err(KindMismatch::Unlike { left: a, right: b, minus: false }),
+            _ => Kind::sum(left, right, false, (0.0, 0.0)),
+        }
+    }
+
+    /// An increment between temperatures that are not known any more, as Cp times a difference is.
+    fn increment(what: What, of: &Kind) -> Kind {
+        let reaction = of.state().is_some_and(|state| state.reaction);
+        Kind::in_state(what, State { reaction, ..State::default() })
+    }
+
     pub fn negated(&self, si: f64) -> Result<Kind, KindMismatch> {
         match self.what {
             What::TemperaturePoint => Err(KindMismatch::NegatedPoint { t_k: si }),
@@ -308,15 +329,24 @@ impl Kind {
     }
 
     /// Kind of a product. A kind survives a factor that only changes the basis (mol[X]/mol[rxn], kg, a bare number).
-    pub fn product(left: (&Kind, &Dimension), right: (&Kind, &Dimension), dim: &Dimension) -> Kind {
-        for ((kind, kind_dim), (other, other_dim)) in [(left, right), (right, left)] {
+    /// `si` are the two values: T times an entropy at another temperature is no TS term.
+    pub fn product(left: (&Kind, &Dimension), right: (&Kind, &Dimension), dim: &Dimension, si: (f64, f64)) -> Kind {
+        for ((kind, kind_dim), (other, other_dim), other_si) in [(left, right, si.1), (right, left, si.0)] {
             match (kind.what, other.what) {
                 (What::K, _) => continue,
-                (What::S, other) if other.is_temperature() => {
+                (What::S, What::TemperaturePoint | What::OpenTemperature) => {
+                    let own = kind.state().and_then(|state| state.t_k);
+                    if own.is_some_and(|t_k| t_k != other_si) {
+                        return Kind::bare(dim);
+                    }
                     return Kind { what: What::TS, state: kind.state.clone() };
                 }
-                (What::Cp, What::TemperatureDifference | What::OpenTemperature) => return Kind::of(What::H),
-                (What::Cv, What::TemperatureDifference | What::OpenTemperature) => return Kind::of(What::U),
+                (What::Cp, What::TemperatureDifference | What::OpenTemperature) => {
+                    return Kind::increment(What::H, kind);
+                }
+                (What::Cv, What::TemperatureDifference | What::OpenTemperature) => {
+                    return Kind::increment(What::U, kind);
+                }
                 _ => {}
             }
             if is_pressure(kind_dim) && is_volume(other_dim) {
@@ -349,15 +379,33 @@ impl Kind {
 }
 
 impl State {
-    fn merged(left: &State, right: &State, minus: bool, reaction: bool) -> Result<State, KindMismatch> {
+    fn merged(left: &Kind, right: &Kind, minus: bool) -> Result<Option<Arc<State>>, KindMismatch> {
+        let (left, right) = match (left, right) {
+            (Kind { state: Some(left), .. }, Kind { state: Some(right), .. }) if Arc::ptr_eq(left, right) => {
+                return Ok(Some(Arc::clone(left)));
+            }
+            (Kind { state: Some(left), .. }, Kind { state: Some(right), .. }) => (left, right),
+            // A plain value takes no part in the state; a state function without one is at no known temperature.
+            (Kind { state: Some(state), .. }, other) | (other, Kind { state: Some(state), .. }) => {
+                if other.what == What::Plain {
+                    return Ok(Some(Arc::clone(state)));
+                }
+                return Ok(Some(Arc::new(State { t_k: None, ..(**state).clone() })));
+            }
+            _ => return Ok(None),
+        };
+        if left.reaction != right.reaction {
+            return Err(KindMismatch::ReactionAndSubstance { minus });
+        }
+        let reaction = left.reaction;
         if let (true, Some(left_k), Some(right_k)) = (reaction, left.t_k, right.t_k)
             && left_k != right_k
+            && !matches!((&left.zero, &right.zero), (Some(Zero::From(_)), _) | (_, Some(Zero::From(_))))
         {
             return Err(KindMismatch::ReactionTemperatures { left_k, right_k, minus });
         }
         let same = |a: Option<f64>, b: Option<f64>| if a == b { a } else { None };
         let (zero, t_k) = match (&left.zero, &right.zero) {
-            (Some(_), Some(_)) if reaction => (left.zero.clone(), same(left.t_k, right.t_k)),
             (Some(a), Some(b)) if a == b => (Some(a.clone()), same(left.t_k, right.t_k)),
             (Some(a), Some(b)) => {
                 let joined = joined((a, left.t_k), (b, right.t_k), minus);
@@ -366,7 +414,8 @@ impl State {
             }
             _ => (None, same(left.t_k, right.t_k)),
         };
-        Ok(State { zero, t_k, p_pa: same(left.p_pa, right.p_pa), standard: left.standard && right.standard })
+        let standard = left.standard && right.standard;
+        Ok(Some(Arc::new(State { zero, t_k, p_pa: same(left.p_pa, right.p_pa), standard, reaction })))
     }
 }
 
@@ -409,7 +458,7 @@ mod tests {
     }
 
     fn add(left: What, right: What, minus: bool) -> Option<What> {
-        Kind::sum(&Kind::of(left), &Kind::of(right), minus, &energy(), (1.0, 2.0)).ok().map(|kind| kind.what)
+        Kind::sum(&Kind::of(left), &Kind::of(right), minus, (1.0, 2.0)).ok().map(|kind| kind.what)
     }
 
     #[test]
@@ -456,25 +505,30 @@ mod tests {
 
     #[test]
     fn reaction_values_meet_only_at_one_temperature_and_substance_values_at_any() {
-        let at =
-            |t_k| Kind::in_state(What::H, State { zero: Some(Zero::Elements298), t_k: Some(t_k), ..State::default() });
-        let reaction = energy().over(&Dimension::amount(crate::units::Entity::RXN));
-        let water = energy().over(&Dimension::amount(crate::units::Entity::named("H2O")));
-        assert!(matches!(
-            Kind::sum(&at(300.0), &at(400.0), false, &reaction, (1.0, 1.0)),
-            Err(KindMismatch::ReactionTemperatures { .. })
-        ));
-        assert_eq!(Kind::sum(&at(300.0), &at(400.0), true, &water, (1.0, 1.0)).unwrap().state().unwrap().t_k, None);
+        let of = |reaction, t_k| {
+            let state = State { zero: Some(Zero::Elements298), t_k: Some(t_k), reaction, ..State::default() };
+            Kind::in_state(What::H, state)
+        };
+        let sum = |a: &Kind, b: &Kind| Kind::sum(a, b, true, (1.0, 1.0));
+        assert!(matches!(sum(&of(true, 300.0), &of(true, 400.0)), Err(KindMismatch::ReactionTemperatures { .. })));
+        assert_eq!(sum(&of(false, 300.0), &of(false, 400.0)).unwrap().state().unwrap().t_k, None);
+        assert!(matches!(sum(&of(true, 300.0), &of(false, 300.0)), Err(KindMismatch::ReactionAndSubstance { .. })));
+        // An increment of the reaction's own leads from one temperature to the other; Cp times a difference to none known.
+        let increment = Kind::in_state(
+            What::H,
+            State { zero: Some(Zero::From(300.0)), t_k: Some(400.0), reaction: true, ..State::default() },
+        );
+        let joined = Kind::sum(&of(true, 300.0), &increment, false, (1.0, 1.0)).unwrap();
+        assert_eq!(joined.state().unwrap().t_k, Some(400.0));
     }
 
     #[test]
     fn an_increment_joins_only_where_it_starts_or_ends() {
-        let dim = energy().over(&Dimension::amount(crate::units::Entity::named("H2O")));
         let at = |zero, t_k| Kind::in_state(What::H, State { zero: Some(zero), t_k: Some(t_k), ..State::default() });
         let absolute = |t_k| at(Zero::Elements298, t_k);
         let from = |start, t_k| at(Zero::From(start), t_k);
         let sum = |a: &Kind, b: &Kind, minus| {
-            let kind = Kind::sum(a, b, minus, &dim, (1.0, 1.0)).ok()?;
+            let kind = Kind::sum(a, b, minus, (1.0, 1.0)).ok()?;
             let state = kind.state().unwrap().clone();
             Some((state.zero.unwrap(), state.t_k))
         };
@@ -490,7 +544,7 @@ mod tests {
         let (kelvin, none) = (Dimension::base(Base::Kelvin), Dimension::none());
         let per_kelvin = energy().over(&kelvin);
         let make = |a: What, da: &Dimension, b: What, db: &Dimension| {
-            Kind::product((&Kind::of(a), da), (&Kind::of(b), db), &da.times(db)).what
+            Kind::product((&Kind::of(a), da), (&Kind::of(b), db), &da.times(db), (1.0, 1.0)).what
         };
         assert_eq!(make(What::TemperaturePoint, &kelvin, What::S, &per_kelvin), What::TS);
         assert_eq!(make(What::Cp, &per_kelvin, What::TemperatureDifference, &kelvin), What::H);

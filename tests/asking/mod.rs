@@ -24,7 +24,7 @@ impl Desk {
     }
 
     pub fn cx(&self) -> Cx<'_> {
-        Cx { references: &self.references, place: None, ordinal: &self.ordinal }
+        Cx { references: &self.references, place: None, ordinal: &self.ordinal, halted: &|| None }
     }
 
     /// A property of a reaction, asked with texts as in a script.
