@@ -206,7 +206,14 @@ mod tests {
     fn own(name: &str, u: f64) -> Quantity {
         let input = Input { u: Some(u), ..Input::of(LeafKey::Own(name.into())) };
         let dim = parse("1 kJ", None, 0).unwrap().dim().clone();
-        Quantity::of_node(Rc::new(Node::new(0.0, dim, Kind::PLAIN, SmallVec::new(), NodeOrigin::Input(input), None)))
+        Quantity::of_node(Rc::new(Node::new(
+            0.0,
+            dim,
+            Kind::PLAIN,
+            SmallVec::new(),
+            NodeOrigin::Input(Box::new(input)),
+            None,
+        )))
     }
 
     #[test]

@@ -294,7 +294,14 @@ fn gas_constant(constants: &ConstantSet) -> Quantity {
     let dim = Dimension::whole([2, 1, -2, 0, -1, 0]).over(&Dimension::amount(Entity::OPEN));
     let key = LeafKey::Constant { year: constants.year, name: r.name };
     let input = Input { u: Some(r.u), citation: Some(r.citation()), ..Input::of(key) };
-    Quantity::of_node(Rc::new(Node::new(r.value, dim, Kind::PLAIN, SmallVec::new(), Origin::Input(input), None)))
+    Quantity::of_node(Rc::new(Node::new(
+        r.value,
+        dim,
+        Kind::PLAIN,
+        SmallVec::new(),
+        Origin::Input(Box::new(input)),
+        None,
+    )))
 }
 
 /// Whether a property at this temperature is the tabulated one, so that no correction is made.

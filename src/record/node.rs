@@ -160,7 +160,8 @@ pub trait Step: Any {
 /// How a node came to be.
 #[derive(Clone)]
 pub enum Origin {
-    Input(Input),
+    /// Boxed, since arithmetic makes many nodes and an input would double the size of each.
+    Input(Box<Input>),
     Operator(Operator),
     Step(Rc<dyn Step>),
 }
@@ -259,8 +260,10 @@ impl Node {
 
 impl Node {
     /// Hands over every node this one holds.
-    fn give_up(&mut self, to: &mut Vec<Rc<Node>>) {
-        to.extend(self.inputs.drain(..).map(|(input, _)| input));
+    fn give_up(&mut self, to: &mut SmallVec<[Rc<Node>; 4]>) {
+        while let Some((input, _)) = self.inputs.pop() {
+            to.push(input);
+        }
         if let Origin::Step(step) = &mut self.origin
             && let Some(step) = Rc::get_mut(step)
         {
@@ -271,12 +274,13 @@ impl Node {
 
 impl Drop for Node {
     fn drop(&mut self) {
-        let mut pending = Vec::new();
+        // In a chain of sums two wait here at a time, so that dropping it takes no memory.
+        let mut pending = SmallVec::new();
         self.give_up(&mut pending);
-        while let Some(node) = pending.pop() {
+        while let Some(mut node) = pending.pop() {
             // A node held both as input and as argument comes twice: the first goes without effect, the second ends it.
-            if let Ok(mut node) = Rc::try_unwrap(node) {
-                node.give_up(&mut pending);
+            if let Some(last_use) = Rc::get_mut(&mut node) {
+                last_use.give_up(&mut pending);
             }
         }
     }
@@ -326,7 +330,7 @@ mod tests {
 
     fn leaf(si: f64) -> Rc<Node> {
         let input = Input { u: Some(0.1), ..Input::of(LeafKey::Own(format!("{si}").into())) };
-        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
+        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
     }
 
     fn combine(operator: Operator, inputs: &[(&Rc<Node>, f64)]) -> Rc<Node> {
