@@ -63,6 +63,8 @@ pub struct Line {
     pub share: f64,
     pub dof: Option<f64>,
     pub shape: Shape,
+    /// Whether it is a condition that was chosen, so that no uncertainty is missing.
+    pub chosen: bool,
     pub source: Origin,
 }
 
@@ -176,6 +178,7 @@ fn line(one: &Sensitivity, scale: f64, share: impl Fn(f64) -> f64) -> Option<Lin
         share: share(part * part),
         dof: input.evaluation().dof,
         shape: input.evaluation().shape,
+        chosen: one.chosen,
         source: source_of(&one.leaf),
         unit,
         difference_unit,
