@@ -63,6 +63,8 @@ pub struct Line {
     pub share: f64,
     pub dof: Option<f64>,
     pub shape: Shape,
+    /// Whether it is a condition that was chosen, so that no uncertainty is missing.
+    pub chosen: bool,
     pub source: Origin,
 }
 
@@ -176,6 +178,7 @@ fn line(one: &Sensitivity, scale: f64, share: impl Fn(f64) -> f64) -> Option<Lin
         share: share(part * part),
         dof: input.evaluation().dof,
         shape: input.evaluation().shape,
+        chosen: one.chosen,
         source: source_of(&one.leaf),
         unit,
         difference_unit,
@@ -206,7 +209,14 @@ mod tests {
     fn own(name: &str, u: f64) -> Quantity {
         let input = Input { u: Some(u), ..Input::of(LeafKey::Own(name.into())) };
         let dim = parse("1 kJ", None, 0).unwrap().dim().clone();
-        Quantity::of_node(Rc::new(Node::new(0.0, dim, Kind::PLAIN, SmallVec::new(), NodeOrigin::Input(input), None)))
+        Quantity::of_node(Rc::new(Node::new(
+            0.0,
+            dim,
+            Kind::PLAIN,
+            SmallVec::new(),
+            NodeOrigin::Input(Box::new(input)),
+            None,
+        )))
     }
 
     #[test]

@@ -87,6 +87,7 @@ pub enum Takes {
     Text,
     Word(&'static [&'static str]),
     Quantities,
+    Reaction,
     Options(&'static [Arg]),
     /// Whatever it is; the formula looks for itself.
     Any,
@@ -462,6 +463,7 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
         }
         (Takes::Number, Value::Number(number)) => Value::Number(number),
         (Takes::Number, Value::Quantity(value)) if value.dim().is_none() => Value::Number(value.si()),
+        (Takes::Reaction, Value::Reaction(reaction)) => Value::Reaction(reaction),
         (Takes::Text, Value::Text(text)) => Value::Text(text),
         (Takes::Word(words), Value::Text(word)) => {
             if !words.contains(&&*word) {
@@ -499,6 +501,7 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
             let wanted = match takes {
                 Takes::Number => "a number",
                 Takes::Text => "a text",
+                Takes::Reaction => "a reaction, as in `reaction(\"CO(g) + H2O(g) -> CO2(g) + H2(g)\")`",
                 Takes::Word(words) => {
                     return Err(refused(&format!("one of {}", listed(words.iter().copied())), &value));
                 }

@@ -494,7 +494,7 @@ mod tests {
         let data = invented("[[1, 0.5], [0.5, 1]]").unwrap();
         let leaf = |id: &str| {
             let figure = formation_of(&data.find(id).unwrap(), &DatasetId::new("invented"), &data).unwrap();
-            let origin = Origin::Input(figure.input);
+            let origin = Origin::Input(Box::new(figure.input));
             Rc::new(Node::new(figure.si, Dimension::none(), Kind::PLAIN, SmallVec::new(), origin, None))
         };
         let inputs = SmallVec::from_vec(vec![(leaf("CO2(g)"), 1.0), (leaf("CO(g)"), -1.0)]);

@@ -26,6 +26,7 @@ pub mod readings;
 pub mod refusal;
 pub mod remedy;
 pub mod review;
+pub mod shortcut;
 pub mod substance;
 pub mod symbols;
 pub mod terms;
@@ -56,6 +57,8 @@ pub const CARDS: &[&Card] = &[
     &substance::REACTION_INCREMENT,
     &remedy::CORRECTED,
     &remedy::WIDENED,
+    &shortcut::VALID_TO,
+    &shortcut::COMPARE_SHORTCUTS,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,

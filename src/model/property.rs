@@ -226,7 +226,21 @@ pub fn quantity(property: Property, call: &Rc<Call>, method: &Method, cx: &Cx) -
     let Some(terms) = call.terms() else {
         unreachable!("{} is asked of a reaction or a substance", call.card.id);
     };
-    let t = call.quantity(1);
+    value(property, terms, call.quantity(1), method, call, cx)
+}
+
+/// A property of some terms at a temperature, as a value with its inputs, made by `call`.
+///
+/// # Errors
+/// As [`evaluate`].
+pub fn value(
+    property: Property,
+    terms: &Terms,
+    t: &Quantity,
+    method: &Method,
+    call: &Rc<Call>,
+    cx: &Cx,
+) -> Result<Quantity, Fault> {
     let t_k = t.si();
     let contributions = gather::contributions(terms, t_k, method, cx.data())?;
     let r = gas_constant(cx.constants());
@@ -280,7 +294,14 @@ fn gas_constant(constants: &ConstantSet) -> Quantity {
     let dim = Dimension::whole([2, 1, -2, 0, -1, 0]).over(&Dimension::amount(Entity::OPEN));
     let key = LeafKey::Constant { year: constants.year, name: r.name };
     let input = Input { u: Some(r.u), citation: Some(r.citation()), ..Input::of(key) };
-    Quantity::of_node(Rc::new(Node::new(r.value, dim, Kind::PLAIN, SmallVec::new(), Origin::Input(input), None)))
+    Quantity::of_node(Rc::new(Node::new(
+        r.value,
+        dim,
+        Kind::PLAIN,
+        SmallVec::new(),
+        Origin::Input(Box::new(input)),
+        None,
+    )))
 }
 
 /// Whether a property at this temperature is the tabulated one, so that no correction is made.

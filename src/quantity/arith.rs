@@ -6,7 +6,7 @@
 use std::rc::Rc;
 use std::sync::Arc;
 
-use smallvec::{SmallVec, smallvec};
+use smallvec::SmallVec;
 
 use crate::fault::Place;
 use crate::num::math;
@@ -14,20 +14,20 @@ use crate::quantity::{Mismatch, Quantity};
 use crate::record::node::{Node, Operator, Origin};
 use crate::units::{Dimension, Entity, Kind, Unit, What};
 
-struct Meeting {
-    dim: Dimension,
+struct Meeting<'a> {
+    dim: &'a Dimension,
     bound: Option<Entity>,
 }
 
 /// The common dimension of two values that are to be added or compared.
-fn meet(verb: &'static str, left: &Dimension, right: &Dimension) -> Result<Meeting, Mismatch> {
+fn meet<'a>(verb: &'static str, left: &'a Dimension, right: &'a Dimension) -> Result<Meeting<'a>, Mismatch> {
     if left == right {
-        return Ok(Meeting { dim: left.clone(), bound: None });
+        return Ok(Meeting { dim: left, bound: None });
     }
     for (open, named) in [(left, right), (right, left)] {
         match open.bindings_to(named).as_slice() {
             [] => {}
-            [entity] => return Ok(Meeting { dim: named.clone(), bound: Some(*entity) }),
+            [entity] => return Ok(Meeting { dim: named, bound: Some(*entity) }),
             [first, second, ..] => {
                 return Err(Mismatch::OpenMole { first: first.name(), second: second.name() });
             }
@@ -48,21 +48,19 @@ impl Quantity {
     fn sum(&self, other: &Quantity, minus: bool, place: Option<Place>) -> Result<Quantity, Mismatch> {
         let (verb, operator, sign) =
             if minus { ("subtract", Operator::Subtract, -1.0) } else { ("add", Operator::Add, 1.0) };
-        let meeting = meet(verb, self.dim(), other.dim())?;
+        let Meeting { dim, bound } = meet(verb, self.dim(), other.dim())?;
         let kind = Kind::sum(self.kind(), other.kind(), minus, (self.si(), other.si()))?;
-        let inputs = smallvec![(Rc::clone(self.node()), 1.0), (Rc::clone(other.node()), sign)];
         // A difference of two points in degC is shown in K: the unit of a point would be refused.
         let unit = self.written_unit().or(other.written_unit());
-        let unit =
-            unit.filter(|unit| unit.dim == meeting.dim && (!unit.is_point() || kind.what == What::TemperaturePoint));
-        let made = combine(operator, inputs, meeting.dim.clone(), kind, place, meeting.bound)?;
+        let unit = unit.filter(|unit| unit.dim == *dim && (!unit.is_point() || kind.what == What::TemperaturePoint));
+        let made = combine(operator, [(self, 1.0), (other, sign)], dim.clone(), kind, place, bound)?;
         Ok(made.in_unit(unit.cloned()))
     }
 
     pub fn times(&self, other: &Quantity, place: Option<Place>) -> Result<Quantity, Mismatch> {
         let dim = self.dim().times(other.dim());
         let kind = Kind::product((self.kind(), self.dim()), (other.kind(), other.dim()), &dim, (self.si(), other.si()));
-        let inputs = smallvec![(Rc::clone(self.node()), other.si()), (Rc::clone(other.node()), self.si())];
+        let inputs = [(self, other.si()), (other, self.si())];
         let unit = carried(self, &dim).or_else(|| carried(other, &dim));
         Ok(combine(Operator::Multiply, inputs, dim, kind, place, None)?.in_unit(unit))
     }
@@ -71,7 +69,7 @@ impl Quantity {
         let dim = self.dim().over(other.dim());
         let kind = Kind::quotient((self.kind(), self.dim()), (other.kind(), other.dim()), &dim);
         let (a, b) = (self.si(), other.si());
-        let inputs = smallvec![(Rc::clone(self.node()), 1.0 / b), (Rc::clone(other.node()), -a / (b * b))];
+        let inputs = [(self, 1.0 / b), (other, -a / (b * b))];
         let unit = carried(self, &dim);
         Ok(combine(Operator::Divide, inputs, dim, kind, place, None)?.in_unit(unit))
     }
@@ -84,16 +82,14 @@ impl Quantity {
 
     /// Times a bare number.
     pub fn scaled(&self, factor: f64, place: Option<Place>) -> Result<Quantity, Mismatch> {
-        let number = (&Kind::PLAIN, &Dimension::none());
-        let kind = Kind::product((self.kind(), self.dim()), number, self.dim(), (self.si(), 1.0));
+        let kind = self.kind().scaled(self.dim());
         let unit = carried(self, self.dim());
         Ok(self.unary(Operator::Scale(factor), factor, self.dim().clone(), kind, place)?.in_unit(unit))
     }
 
     /// Divided by a bare number.
     pub fn divided(&self, divisor: f64, place: Option<Place>) -> Result<Quantity, Mismatch> {
-        let number = (&Kind::PLAIN, &Dimension::none());
-        let kind = Kind::product((self.kind(), self.dim()), number, self.dim(), (self.si(), 1.0));
+        let kind = self.kind().scaled(self.dim());
         let unit = carried(self, self.dim());
         let made = self.unary(Operator::DivideBy(divisor), 1.0 / divisor, self.dim().clone(), kind, place)?;
         Ok(made.in_unit(unit))
@@ -115,18 +111,14 @@ impl Quantity {
             return Err(Mismatch::NotPositive { function: "an uncertain power", number: a });
         }
         let power = math::pow(a, b);
-        let inputs = smallvec![
-            (Rc::clone(self.node()), b * math::pow(a, b - 1.0)),
-            (Rc::clone(exponent.node()), power * math::ln(a)),
-        ];
+        let inputs = [(self, b * math::pow(a, b - 1.0)), (exponent, power * math::ln(a))];
         combine(Operator::PowerOf, inputs, Dimension::none(), Kind::PLAIN, place, None)
     }
 
     /// The same value with its open moles made moles of `entity`, and the node remembers it.
     pub(crate) fn bound(&self, entity: Entity, place: Option<Place>) -> Result<Quantity, Mismatch> {
         let dim = self.dim().bind(entity);
-        let inputs = smallvec![(Rc::clone(self.node()), 1.0)];
-        combine(Operator::Scale(1.0), inputs, dim, self.kind().clone(), place, Some(entity))
+        combine(Operator::Scale(1.0), [(self, 1.0)], dim, self.kind().clone(), place, Some(entity))
     }
 
     /// Plus a bare number; the value must be a pure number.
@@ -202,7 +194,7 @@ impl Quantity {
         let (mut dim, mut bound, mut kind) = (first.dim().clone(), None, first.kind().clone());
         for other in rest {
             let meeting = meet("average", &dim, other.dim())?;
-            (dim, bound) = (meeting.dim, meeting.bound.or(bound));
+            (bound, dim) = (meeting.bound.or(bound), meeting.dim.clone());
             let other = other.kind();
             kind = match (kind.what, other.what) {
                 (What::TemperaturePoint, What::TemperaturePoint | What::OpenTemperature) => kind,
@@ -213,7 +205,8 @@ impl Quantity {
         let weight = 1.0 / values.len() as f64;
         let inputs = values.iter().map(|value| (Rc::clone(value.node()), weight)).collect();
         let unit = first.written_unit().filter(|unit| unit.dim == dim).cloned();
-        Ok(combine(Operator::Mean, inputs, dim, kind, place, bound)?.in_unit(unit))
+        let si = Operator::Mean.value(&values.iter().map(Quantity::si).collect::<Vec<f64>>());
+        Ok(made(Operator::Mean, si, inputs, dim, kind, place, bound)?.in_unit(unit))
     }
 
     /// Which is larger, for values of one dimension; by value alone.
@@ -242,7 +235,7 @@ impl Quantity {
         kind: Kind,
         place: Option<Place>,
     ) -> Result<Quantity, Mismatch> {
-        combine(operator, smallvec![(Rc::clone(self.node()), partial)], dim, kind, place, None)
+        combine(operator, [(self, partial)], dim, kind, place, None)
     }
 }
 
@@ -251,24 +244,40 @@ fn carried(from: &Quantity, dim: &Dimension) -> Option<Arc<Unit>> {
     from.written_unit().filter(|unit| unit.dim == *dim && !unit.is_point()).cloned()
 }
 
-fn combine(
+/// The result of an operator on one or two values, each with its partial derivative.
+fn combine<const N: usize>(
     operator: Operator,
+    inputs: [(&Quantity, f64); N],
+    dim: Dimension,
+    kind: Kind,
+    place: Option<Place>,
+    bound: Option<Entity>,
+) -> Result<Quantity, Mismatch> {
+    let si = operator.value(&inputs.map(|(value, _)| value.si()));
+    let mut kept = SmallVec::new();
+    for (value, partial) in inputs {
+        kept.push((Rc::clone(value.node()), partial));
+    }
+    made(operator, si, kept, dim, kind, place, bound)
+}
+
+fn made(
+    operator: Operator,
+    si: f64,
     inputs: SmallVec<[(Rc<Node>, f64); 2]>,
     dim: Dimension,
     kind: Kind,
     place: Option<Place>,
     bound: Option<Entity>,
 ) -> Result<Quantity, Mismatch> {
-    let values: SmallVec<[f64; 4]> = inputs.iter().map(|(node, _)| node.si()).collect();
-    let value = operator.value(&values);
-    let underflows = value == 0.0 && matches!(operator, Operator::Exp | Operator::PowerOf);
+    let underflows = si == 0.0 && matches!(operator, Operator::Exp | Operator::PowerOf);
     if underflows || inputs.iter().any(|(_, partial)| !partial.is_finite()) {
         return Err(Mismatch::NotFinite);
     }
     if dim.is_saturated() {
         return Err(Mismatch::PowerTooHigh { dim });
     }
-    let node = Node::new(value, dim, kind, inputs, Origin::Operator(operator), place);
+    let node = Node::new(si, dim, kind, inputs, Origin::Operator(operator), place);
     Quantity::from_node(node.with_bound(bound))
 }
 

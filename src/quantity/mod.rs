@@ -35,7 +35,7 @@ pub struct Quantity {
 impl Quantity {
     /// An input, such as a figure of a table. `si` must be finite.
     pub fn input(si: f64, dim: Dimension, kind: Kind, input: Input, place: Option<Place>) -> Result<Self, Mismatch> {
-        Quantity::from_node(Node::new(si, dim, kind, SmallVec::new(), Origin::Input(input), place))
+        Quantity::from_node(Node::new(si, dim, kind, SmallVec::new(), Origin::Input(Box::new(input)), place))
     }
 
     /// The result of a formula.
@@ -63,7 +63,7 @@ impl Quantity {
         let Some(mut input) = self.node.input().cloned() else { return self };
         say(&mut input);
         let (si, dim, kind, place) = (self.si(), self.dim().clone(), self.kind().clone(), self.node.place().cloned());
-        let node = Node::new(si, dim, kind, SmallVec::new(), Origin::Input(input), place);
+        let node = Node::new(si, dim, kind, SmallVec::new(), Origin::Input(Box::new(input)), place);
         Quantity { node: Rc::new(node), unit: self.unit }
     }
 

@@ -158,7 +158,8 @@ mod tests {
     fn depends(group: &Arc<Correlation>, name: &str, derivative: f64, u: f64) -> Sensitivity {
         let evaluation = Evaluation { correlation: Some(Arc::clone(group)), ..Evaluation::UNSTATED };
         let input = Input { u: Some(u), evaluated: evaluation.kept(), ..Input::of(key(name)) };
-        let leaf = Node::new(1.0, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None);
+        let leaf =
+            Node::new(1.0, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None);
         Sensitivity { leaf: Rc::new(leaf), derivative, chosen: false }
     }
 

@@ -331,7 +331,7 @@ impl<'a> Repeated<'a> {
         // The digits of the result are decided by the coarsest single figure, not by their sum.
         let digit = self.worth.filter(|_| self.partial != 0.0).map(|worth| worth / self.partial.abs());
         let input = Input { key, digit, ..one.clone() };
-        let made = self.model.remade(Origin::Input(input), SmallVec::new(), Run::NONE);
+        let made = self.model.remade(Origin::Input(Box::new(input)), SmallVec::new(), Run::NONE);
         (Rc::new(made), self.partial)
     }
 }
@@ -352,7 +352,7 @@ mod tests {
 
     fn leaf(key: LeafKey, u: Option<f64>, label: Option<&str>) -> Rc<Node> {
         let input = Input { u, digit: Some(0.1), label: label.map(Arc::from), ..Input::of(key) };
-        node(2.0, &[], Origin::Input(input))
+        node(2.0, &[], Origin::Input(Box::new(input)))
     }
 
     fn own(name: &str) -> Rc<Node> {

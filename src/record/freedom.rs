@@ -62,7 +62,7 @@ mod tests {
     fn leaf(name: &str, u: f64, dof: Option<f64>, correlation: Option<&Arc<Correlation>>) -> Rc<Node> {
         let evaluation = Evaluation { dof, correlation: correlation.cloned(), ..Evaluation::UNSTATED };
         let input = Input { u: Some(u), evaluated: evaluation.kept(), ..Input::of(key(name)) };
-        Rc::new(Node::new(0.0, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
+        Rc::new(Node::new(0.0, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
     }
 
     fn sum(leaves: &[Rc<Node>]) -> Rc<Node> {

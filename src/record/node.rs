@@ -165,7 +165,8 @@ pub trait Step: Any {
 /// How a node came to be.
 #[derive(Clone)]
 pub enum Origin {
-    Input(Input),
+    /// Boxed, since arithmetic makes many nodes and an input would double the size of each.
+    Input(Box<Input>),
     Operator(Operator),
     Step(Rc<dyn Step>),
     /// A long run of arithmetic, as its linear form over what the run rested on.
@@ -310,8 +311,8 @@ impl Node {
 
 impl Node {
     /// Hands over every node that this one alone may hold, and lets go of the others.
-    fn give_up(&mut self, to: &mut Vec<Rc<Node>>) {
-        for (input, _) in self.inputs.drain(..) {
+    fn give_up(&mut self, to: &mut SmallVec<[Rc<Node>; 4]>) {
+        while let Some((input, _)) = self.inputs.pop() {
             input.users.set(input.users.get() - 1);
             if Rc::strong_count(&input) == 1 {
                 to.push(input);
@@ -328,12 +329,13 @@ impl Node {
 
 impl Drop for Node {
     fn drop(&mut self) {
-        let mut pending = Vec::new();
+        // In a chain of sums two wait here at a time, so that dropping it takes no memory.
+        let mut pending = SmallVec::new();
         self.give_up(&mut pending);
-        while let Some(node) = pending.pop() {
+        while let Some(mut node) = pending.pop() {
             // A node held both as input and as argument: the first goes without effect, the second ends it.
-            if let Ok(mut node) = Rc::try_unwrap(node) {
-                node.give_up(&mut pending);
+            if let Some(last_use) = Rc::get_mut(&mut node) {
+                last_use.give_up(&mut pending);
             }
         }
     }
@@ -389,7 +391,7 @@ mod tests {
 
     fn leaf(si: f64) -> Rc<Node> {
         let input = Input { u: Some(0.1), ..Input::of(LeafKey::Own(format!("{si}").into())) };
-        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
+        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
     }
 
     fn combine(operator: Operator, inputs: &[(&Rc<Node>, f64)]) -> Rc<Node> {

@@ -201,7 +201,7 @@ mod tests {
 
     fn leaf(si: f64) -> Rc<Node> {
         let input = Input::of(LeafKey::Own(si.to_string().into()));
-        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
+        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
     }
 
     #[test]

@@ -4,7 +4,9 @@
 //! `x - x` is 0 ± 0 and two results that rest on one figure cancel as they should. The surprise: an input without a
 //! stated u is *silent*, not exact, and the result says so.
 
-use std::collections::BTreeMap;
+use std::cmp::Ordering;
+use std::collections::binary_heap::PeekMut;
+use std::collections::{BTreeMap, BinaryHeap};
 use std::rc::Rc;
 
 use crate::record::correlation;
@@ -80,53 +82,99 @@ pub fn correlation_of(a: &Rc<Node>, b: &Rc<Node>) -> Option<f64> {
 /// Derivatives of `of` with respect to each input it rests on, in the order of the inputs' keys. Inputs that cancel are left
 /// out, also where rounding leaves a residue of them: less than 16 roundings of the sum of the sizes that cancelled.
 pub fn sensitivities(of: &Rc<Node>) -> Vec<Sensitivity> {
-    let mut pending: BTreeMap<u64, Reached> = BTreeMap::from([(of.id(), Reached::itself(of))]);
-    let mut leaves: BTreeMap<LeafKey, (Sensitivity, f64)> = BTreeMap::new();
-    // The largest id first: all users of a node have larger ids, so its adjoint is complete when it is taken out.
-    while let Some((_, reached)) = pending.pop_last() {
-        let Reached { node, adjoint, size, chosen } = reached;
-        if let Some(input) = node.input() {
-            let key = input.key.clone();
-            let empty = || (Sensitivity { leaf: Rc::clone(&node), derivative: 0.0, chosen: false }, 0.0);
-            let entry = leaves.entry(key).or_insert_with(empty);
-            entry.0.derivative += adjoint;
-            entry.1 += size;
-            entry.0.chosen |= chosen;
-            continue;
+    let mut pending = BinaryHeap::from([Share { reached: Reached::itself(of), nth: 0 }]);
+    let mut read: BTreeMap<u64, Reached<'_>> = BTreeMap::new();
+    let mut count = 0;
+    // The largest id first: all users of a node have larger ids, so all its shares are there when it is taken out.
+    while let Some(Share { mut reached, .. }) = pending.pop() {
+        let node = reached.node;
+        while let Some(next) = pending.peek_mut().filter(|next| next.reached.node.id() == node.id()) {
+            reached.add(&PeekMut::pop(next).reached);
         }
+        if node.input().is_some() {
+            read.entry(node.id()).or_insert_with(|| Reached::not_yet(node)).add(&reached);
+        }
+        let chosen = matches!(node.origin(), Origin::Operator(Operator::Condition));
         for (input, partial) in node.inputs() {
-            let entry = pending.entry(input.id()).or_insert_with(|| Reached::not_yet(input));
-            entry.adjoint += adjoint * partial;
-            entry.size += size * partial.abs();
-            entry.chosen |= matches!(node.origin(), Origin::Operator(Operator::Condition));
+            let (adjoint, size) = (reached.adjoint * partial, reached.size * partial.abs());
+            let share = Reached { node: input, adjoint, size, chosen };
+            // Inputs wait in no queue: a sum of many terms would fill it with shares of one and the same.
+            if input.input().is_some() {
+                read.entry(input.id()).or_insert_with(|| Reached::not_yet(input)).add(&share);
+            } else {
+                count += 1;
+                pending.push(Share { reached: share, nth: count });
+            }
         }
+    }
+    let mut leaves: BTreeMap<&LeafKey, (Sensitivity, f64)> = BTreeMap::new();
+    for reached in read.into_values().rev() {
+        let Some(input) = reached.node.input() else { continue };
+        let empty = || (Sensitivity { leaf: Rc::clone(reached.node), derivative: 0.0, chosen: false }, 0.0);
+        let entry = leaves.entry(&input.key).or_insert_with(empty);
+        entry.0.derivative += reached.adjoint;
+        entry.1 += reached.size;
+        entry.0.chosen |= reached.chosen;
     }
     let is_left = |(leaf, size): &(Sensitivity, f64)| leaf.derivative.abs() > 16.0 * f64::EPSILON * size;
     leaves.into_values().filter(is_left).map(|(leaf, _)| leaf).collect()
 }
 
 /// A node on the way back from a value: its adjoint, and the sum of the sizes of what was added up to it.
-struct Reached {
-    node: Rc<Node>,
+struct Reached<'a> {
+    node: &'a Rc<Node>,
     adjoint: f64,
     size: f64,
     chosen: bool,
 }
 
-impl Reached {
-    fn itself(node: &Rc<Node>) -> Self {
-        Reached { node: Rc::clone(node), adjoint: 1.0, size: 1.0, chosen: false }
+impl<'a> Reached<'a> {
+    fn itself(node: &'a Rc<Node>) -> Self {
+        Reached { node, adjoint: 1.0, size: 1.0, chosen: false }
     }
 
-    fn not_yet(node: &Rc<Node>) -> Self {
-        Reached { node: Rc::clone(node), adjoint: 0.0, size: 0.0, chosen: false }
+    fn not_yet(node: &'a Rc<Node>) -> Self {
+        Reached { node, adjoint: 0.0, size: 0.0, chosen: false }
+    }
+
+    fn add(&mut self, share: &Reached<'_>) {
+        self.adjoint += share.adjoint;
+        self.size += share.size;
+        self.chosen |= share.chosen;
     }
 }
+
+/// What one user of a node adds to it. The largest is the node with the largest id, and of its shares the first.
+struct Share<'a> {
+    reached: Reached<'a>,
+    nth: u64,
+}
+
+impl Ord for Share<'_> {
+    fn cmp(&self, other: &Self) -> Ordering {
+        // A fixed order of the shares makes their sum the same to the last bit.
+        self.reached.node.id().cmp(&other.reached.node.id()).then(other.nth.cmp(&self.nth))
+    }
+}
+
+impl PartialOrd for Share<'_> {
+    fn partial_cmp(&self, other: &Self) -> Option<Ordering> {
+        Some(self.cmp(other))
+    }
+}
+
+impl PartialEq for Share<'_> {
+    fn eq(&self, other: &Self) -> bool {
+        self.cmp(other).is_eq()
+    }
+}
+
+impl Eq for Share<'_> {}
 
 /// Derivatives of `of` with respect to every node it rests on, by id: one sweep where many are asked for.
 pub fn derivatives(of: &Rc<Node>) -> BTreeMap<u64, f64> {
     let mut all = BTreeMap::new();
-    let mut pending: BTreeMap<u64, Reached> = BTreeMap::from([(of.id(), Reached::itself(of))]);
+    let mut pending: BTreeMap<u64, Reached<'_>> = BTreeMap::from([(of.id(), Reached::itself(of))]);
     while let Some((id, reached)) = pending.pop_last() {
         all.insert(id, reached.adjoint);
         for (input, partial) in reached.node.inputs() {
@@ -172,7 +220,7 @@ mod tests {
 
     fn leaf(name: &str, si: f64, u: Option<f64>) -> Rc<Node> {
         let input = Input { u, ..Input::of(LeafKey::Own(name.into())) };
-        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
+        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
     }
 
     fn weighted(a: &Rc<Node>, by_a: f64, b: &Rc<Node>, by_b: f64) -> Rc<Node> {
@@ -186,6 +234,18 @@ mod tests {
         let (x, x_again, y) = (leaf("x", 2.0, Some(0.3)), leaf("x", 2.0, Some(0.3)), leaf("y", 1.0, Some(0.4)));
         assert_eq!(spread(&weighted(&x, 1.0, &x_again, -1.0)), Spread::Full(0.0));
         assert_eq!(spread(&weighted(&x, 1.0, &y, 1.0)), Spread::Full(0.5));
+    }
+
+    #[test]
+    fn shares_of_one_node_meet_before_they_go_on() {
+        let (x, y) = (leaf("x", 2.0, Some(0.1)), leaf("y", 5.0, Some(0.2)));
+        let a = weighted(&x, 2.0, &y, 1.0);
+        let b = weighted(&a, 1.0, &a, 3.0);
+        let c = weighted(&b, 1.0, &a, 0.5);
+        let by_input: Vec<f64> = sensitivities(&c).iter().map(|one| one.derivative).collect();
+        assert_eq!(by_input, [9.0, 4.5]);
+        let by_node = derivatives(&c);
+        assert_eq!((by_node[&a.id()], by_node[&x.id()]), (4.5, 9.0));
     }
 
     #[test]

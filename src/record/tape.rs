@@ -291,7 +291,7 @@ mod tests {
     fn leaf(name: &str, si: f64, u: Option<f64>, correlation: Option<Arc<Correlation>>) -> Rc<Node> {
         let input =
             Input { u, evaluated: Evaluation { correlation, ..Evaluation::UNSTATED }.kept(), ..Input::of(key(name)) };
-        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(input), None))
+        Rc::new(Node::new(si, Dimension::none(), Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
     }
 
     fn product(x: &Rc<Node>, y: &Rc<Node>) -> Rc<Node> {

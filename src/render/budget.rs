@@ -87,7 +87,8 @@ fn rows(budget: &Budget, sources: &mut Sources) -> Vec<Row> {
 }
 
 fn row(budget: &Budget, line: &Line, sources: &mut Sources) -> Row {
-    let u = line.u.map_or_else(|| "not stated".to_owned(), |u| with_unit(&two_digits(u), &line.difference_unit));
+    let unstated = if line.chosen { "chosen" } else { "not stated" };
+    let u = line.u.map_or_else(|| unstated.to_owned(), |u| with_unit(&two_digits(u), &line.difference_unit));
     let value = line.unit.from_si(line.leaf.si());
     let digit = line.leaf.input().and_then(|input| input.digit).map(|digit| digit / line.difference_unit.factor);
     let value = match (line.u, digit) {
@@ -129,7 +130,7 @@ fn remarks(budget: &Budget) -> Vec<String> {
     let mut remarks = Vec::new();
     match budget.u {
         Some(u) => {
-            let scope = if budget.silent.is_empty() { "" } else { ", of the stated part alone" };
+            let scope = if budget.silent.iter().all(|line| line.chosen) { "" } else { ", of the stated part alone" };
             remarks.push(format!("combined standard uncertainty u = {}{scope}", contribution(budget, u)));
         }
         None => remarks.push("no input states an uncertainty".to_owned()),

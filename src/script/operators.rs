@@ -51,8 +51,12 @@ impl Explain for Misuse {
     }
 }
 
-fn done(result: Result<Quantity, Mismatch>, place: Option<Place>) -> Native<Quantity> {
-    result.map_err(|mismatch| raise(Fault::from(mismatch).at(place)))
+/// Runs a step of arithmetic; a refusal gets the place it was called from.
+fn done(
+    context: &NativeCallContext<'_>,
+    step: impl FnOnce(Option<Place>) -> Result<Quantity, Mismatch>,
+) -> Native<Quantity> {
+    step(place_of(context)).map_err(|mismatch| raise(Fault::from(mismatch).at(place_of(context))))
 }
 
 fn refuse<T>(context: &NativeCallContext<'_>, misuse: Misuse) -> Native<T> {
@@ -62,7 +66,7 @@ fn refuse<T>(context: &NativeCallContext<'_>, misuse: Misuse) -> Native<T> {
 /// Adds a bare number: fine for pure numbers, else refused with the unit the number should have.
 fn shifted(context: &NativeCallContext<'_>, value: &Quantity, by: f64) -> Native<Quantity> {
     if value.dim().is_none() {
-        done(value.shifted(by, place_of(context)), place_of(context))
+        done(context, |place| value.shifted(by, place))
     } else {
         refuse(context, Misuse::NumberAndUnit { unit: value.unit().text.to_string() })
     }
@@ -75,25 +79,25 @@ macro_rules! with_numbers {
         let real: fn($number) -> f64 = $real;
 
         $engine.register_fn("*", move |c: NativeCallContext<'_>, a: Quantity, b: $number| {
-            done(a.scaled(real(b), place_of(&c)), place_of(&c))
+            done(&c, |place| a.scaled(real(b), place))
         });
         $engine.register_fn("*", move |c: NativeCallContext<'_>, a: $number, b: Quantity| {
-            done(b.scaled(real(a), place_of(&c)), place_of(&c))
+            done(&c, |place| b.scaled(real(a), place))
         });
         $engine.register_fn("/", move |c: NativeCallContext<'_>, a: Quantity, b: $number| {
-            done(a.divided(real(b), place_of(&c)), place_of(&c))
+            done(&c, |place| a.divided(real(b), place))
         });
         $engine.register_fn("/", move |c: NativeCallContext<'_>, a: $number, b: Quantity| {
-            done(b.reciprocal(real(a), place_of(&c)), place_of(&c))
+            done(&c, |place| b.reciprocal(real(a), place))
         });
         $engine.register_fn("**", move |c: NativeCallContext<'_>, a: Quantity, b: $number| {
-            done(a.power(real(b), place_of(&c)), place_of(&c))
+            done(&c, |place| a.power(real(b), place))
         });
         $engine.register_fn("+", move |c: NativeCallContext<'_>, a: Quantity, b: $number| shifted(&c, &a, real(b)));
         $engine.register_fn("+", move |c: NativeCallContext<'_>, a: $number, b: Quantity| shifted(&c, &b, real(a)));
         $engine.register_fn("-", move |c: NativeCallContext<'_>, a: Quantity, b: $number| shifted(&c, &a, -real(b)));
         $engine.register_fn("-", move |c: NativeCallContext<'_>, a: $number, b: Quantity| -> Native<Quantity> {
-            let negative = done(b.negated(place_of(&c)), place_of(&c))?;
+            let negative = done(&c, |place| b.negated(place))?;
             shifted(&c, &negative, real(a))
         });
     };
@@ -120,23 +124,20 @@ fn pairs(engine: &mut Engine, shared: &Shared) {
         engine.register_fn(
             symbol,
             move |context: NativeCallContext<'_>, a: Quantity, b: Quantity| -> Native<Quantity> {
-                let place = place_of(&context);
-                run(&a, &b, place.clone()).map_err(|mismatch| {
+                run(&a, &b, place_of(&context)).map_err(|mismatch| {
                     let ordinal = Cell::new(0); // A refusal reads nothing as typed.
                     let cx = Cx { references: session.references(), place: None, ordinal: &ordinal, halted: &|| None };
                     let figure = refusal::figure(&cx, &a, &b, &mismatch);
-                    let fault = Fault::from(mismatch).at(place);
+                    let fault = Fault::from(mismatch).at(place_of(&context));
                     raise(figure.map_or(fault.clone(), |figure| fault.adding(&figure)))
                 })
             },
         );
     }
-    engine.register_fn("-", |context: NativeCallContext<'_>, a: Quantity| {
-        done(a.negated(place_of(&context)), place_of(&context))
-    });
+    engine.register_fn("-", |context: NativeCallContext<'_>, a: Quantity| done(&context, |place| a.negated(place)));
     engine.register_fn("+", |a: Quantity| a);
     engine.register_fn("**", |context: NativeCallContext<'_>, a: Quantity, b: Quantity| {
-        done(a.power_of(&b, place_of(&context)), place_of(&context))
+        done(&context, |place| a.power_of(&b, place))
     });
 }
 
@@ -154,8 +155,7 @@ fn functions(engine: &mut Engine) {
     ];
     for (name, run) in functions {
         engine.register_fn(name, move |context: NativeCallContext<'_>, a: Quantity| {
-            let place = place_of(&context);
-            done(run(&a, place.clone()), place)
+            done(&context, |place| run(&a, place))
         });
     }
     for (name, wanted) in [("min", std::cmp::Ordering::Less), ("max", std::cmp::Ordering::Greater)] {

@@ -126,6 +126,8 @@ pub struct Shared {
     /// Values of parameters that were set from outside, by name.
     settings: Rc<RefCell<BTreeMap<String, String>>>,
     shifts: Rc<RefCell<Shifts>>,
+    /// The source that places were last asked of, since every step of arithmetic asks for one.
+    source: Rc<RefCell<Arc<str>>>,
     /// Functions that cells have defined, with the numbers of arguments they take.
     defined: Rc<RefCell<BTreeMap<String, BTreeSet<usize>>>>,
     library: Rc<OnceCell<Library>>,
@@ -146,6 +148,7 @@ impl Shared {
             references: Rc::new(References::new(constants::current())),
             settings: Rc::default(),
             shifts: Rc::default(),
+            source: Rc::new(RefCell::new("".into())),
             defined: Rc::default(),
             library: Rc::default(),
             limit: Rc::new(Cell::new(limit)),
@@ -271,7 +274,15 @@ impl Shared {
         let line = position.line()?;
         let column = self.shifts.borrow().written(source, line, position.position().unwrap_or(0));
         let counted = |n: usize| u32::try_from(n).unwrap_or(u32::MAX);
-        Some(Place { cell: source.into(), line: counted(line), column: counted(column) })
+        Some(Place { cell: self.source(source), line: counted(line), column: counted(column) })
+    }
+
+    fn source(&self, name: &str) -> Arc<str> {
+        let mut last = self.source.borrow_mut();
+        if **last != *name {
+            *last = name.into();
+        }
+        Arc::clone(&last)
     }
 
     /// The session a running native function belongs to, and the place it was called from.
@@ -282,7 +293,8 @@ impl Shared {
 
 /// The place a native function was called from.
 pub fn place_of(context: &NativeCallContext<'_>) -> Option<Place> {
-    Shared::of(context)?.place(context.call_source().unwrap_or(""), context.call_position())
+    let shared = context.tag()?.read_lock::<Shared>()?;
+    shared.place(context.call_source().unwrap_or(""), context.call_position())
 }
 
 /// A fault that a native function raises, at the place it was called from.

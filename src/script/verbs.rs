@@ -6,10 +6,11 @@
 use std::cell::Cell;
 use std::rc::Rc;
 
-use rhai::{Dynamic, Engine, FuncRegistration, ImmutableString, NativeCallContext};
+use rhai::{Dynamic, Engine, FnPtr, FuncRegistration, ImmutableString, NativeCallContext};
 
 use crate::fault::{Explain, Fault};
-use crate::model::card::{Cx, Value};
+use crate::model::card::{self, Cx, Value};
+use crate::model::quantities;
 use crate::model::quantities::PointForDifference;
 use crate::model::review::{Dealing, Decided};
 use crate::quantity::{Quantity, text};
@@ -173,6 +174,28 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
         engine,
         move |c: NativeCallContext<'_>, label: ImmutableString, value: Dynamic| {
             v.within(&c, |cx| v.report(cx, &label, &value))
+        },
+    );
+    let v = verb.clone();
+    // The price computed by a closure that gives the better value; a price that is a quantity or a text is the card's.
+    engine.register_fn(
+        "assume",
+        move |c: NativeCallContext<'_>,
+              value: Quantity,
+              id: ImmutableString,
+              claim: ImmutableString,
+              better: FnPtr|
+              -> Native<Quantity> {
+            let better = better.call_within_context::<Dynamic>(&c, ())?;
+            v.within(&c, |cx| {
+                let price = value.minus(&quantity_of(cx, &better)?, cx.place.clone())?;
+                let [id, claim] = [id, claim].map(|text| Value::Text(text.as_str().into()));
+                let args = vec![Value::Quantity(value), id, claim, Value::Quantity(price)];
+                match card::call(cx, &quantities::ASSUME, args)? {
+                    Value::Quantity(value) => Ok(value),
+                    other => unreachable!("assume gives a quantity, not {}", other.sort()),
+                }
+            })
         },
     );
     let v = verb.clone();

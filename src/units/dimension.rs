@@ -85,11 +85,18 @@ const BASES: usize = 6;
 const BASE_SYMBOLS: [&str; BASES] = ["m", "kg", "s", "A", "K", "cd"];
 
 /// Exponents of the base units. Exponents are counted in halves, so that a square root of a unit has a dimension.
-#[derive(Clone, Debug, Default, PartialEq, Eq, Hash)]
+#[derive(Debug, Default, PartialEq, Eq, Hash)]
 pub struct Dimension {
     halves: [i8; BASES],
     /// Sorted by (Of, Entity); no zero exponents. Equality of dimensions is equality of these fields.
     of: SmallVec<[(Of, Entity, i8); 2]>,
+}
+
+impl Clone for Dimension {
+    /// Every step of arithmetic makes one: a copy of the bytes, where the derived form would push entity by entity.
+    fn clone(&self) -> Self {
+        Dimension { halves: self.halves, of: SmallVec::from_slice(&self.of) }
+    }
 }
 
 impl Dimension {
@@ -138,6 +145,11 @@ impl Dimension {
         Dimension { halves: self.halves, of: SmallVec::new() }
     }
 
+    /// Whether the base units, entities apart, have these whole exponents, in the order of [`Dimension::whole`].
+    pub fn has_bases(&self, exponents: [i8; BASES]) -> bool {
+        self.halves == exponents.map(|exponent| 2 * exponent)
+    }
+
     /// The entities with their exponents in halves, sorted by kind and interning order.
     pub fn entities(&self) -> &[(Of, Entity, i8)] {
         &self.of
@@ -181,7 +193,7 @@ impl Dimension {
         for (mine, theirs) in halves.iter_mut().zip(other.halves) {
             *mine = mine.saturating_add(sign.saturating_mul(theirs));
         }
-        let mut of = self.of.clone();
+        let mut of = SmallVec::from_slice(&self.of);
         for &(kind, entity, exponent) in &other.of {
             add_exponent(&mut of, kind, entity, exponent.saturating_mul(sign));
         }

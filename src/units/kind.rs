@@ -10,7 +10,7 @@ use std::sync::Arc;
 use thiserror::Error;
 
 use crate::fault::Explain;
-use crate::units::dimension::{Base, Dimension};
+use crate::units::dimension::Dimension;
 
 /// The sort of quantity.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
@@ -253,7 +253,8 @@ impl Kind {
 
     /// The kind a value of this dimension has when nothing else is known: kelvin are open, all else is plain.
     pub fn bare(dim: &Dimension) -> Kind {
-        Kind::of(if *dim == Dimension::base(Base::Kelvin) { What::OpenTemperature } else { What::Plain })
+        let kelvin = dim.has_bases([0, 0, 0, 0, 1, 0]) && dim.entities().is_empty();
+        Kind::of(if kelvin { What::OpenTemperature } else { What::Plain })
     }
 
     /// Kind of `left + right` or `left - right`, both of one dimension; `si` are the two values, for messages.
@@ -263,7 +264,7 @@ impl Kind {
             return Kind::sum_of_temperatures(left.what, right.what, minus, si).map(Kind::of);
         }
         let state = State::merged(left, right, minus)?;
-        let keep = |what| Ok(Kind { what, state: state.map(Arc::new) });
+        let keep = |what| Ok(Kind { what, state });
         match (left.what, right.what) {
             (K, _) | (_, K) => Ok(Kind::PLAIN), // A sum of constants is none.
             (a, b) if a == b => keep(a),
@@ -354,7 +355,7 @@ impl Kind {
         }
         for ((kind, _), (other, other_dim)) in [(left, right), (right, left)] {
             if scales(other_dim) && matches!(other.what, What::Plain) {
-                return Kind::scaled(kind, dim);
+                return kind.scaled(dim);
             }
         }
         Kind::bare(dim)
@@ -365,25 +366,31 @@ impl Kind {
         if left.0.what == What::TS && right.0.what.is_temperature() {
             return Kind { what: What::S, state: left.0.state.clone() };
         }
-        if scales(right.1) && right.0.what == What::Plain { Kind::scaled(left.0, dim) } else { Kind::bare(dim) }
+        if scales(right.1) && right.0.what == What::Plain { left.0.scaled(dim) } else { Kind::bare(dim) }
     }
 
-    fn scaled(kind: &Kind, dim: &Dimension) -> Kind {
-        match kind.what {
+    /// Kind of a value of this kind times a bare number, or times what only changes the basis to that of `dim`.
+    pub fn scaled(&self, dim: &Dimension) -> Kind {
+        match self.what {
             What::TemperaturePoint | What::K | What::OpenTemperature => Kind::bare(dim),
-            _ => kind.clone(),
+            _ => self.clone(),
         }
     }
 }
 
 impl State {
-    fn merged(left: &Kind, right: &Kind, minus: bool) -> Result<Option<State>, KindMismatch> {
+    fn merged(left: &Kind, right: &Kind, minus: bool) -> Result<Option<Arc<State>>, KindMismatch> {
         let (left, right) = match (left, right) {
+            (Kind { state: Some(left), .. }, Kind { state: Some(right), .. }) if Arc::ptr_eq(left, right) => {
+                return Ok(Some(Arc::clone(left)));
+            }
             (Kind { state: Some(left), .. }, Kind { state: Some(right), .. }) => (left, right),
             // A plain value takes no part in the state; a state function without one is at no known temperature.
             (Kind { state: Some(state), .. }, other) | (other, Kind { state: Some(state), .. }) => {
-                let t_k = if other.what == What::Plain { state.t_k } else { None };
-                return Ok(Some(State { t_k, ..(**state).clone() }));
+                if other.what == What::Plain {
+                    return Ok(Some(Arc::clone(state)));
+                }
+                return Ok(Some(Arc::new(State { t_k: None, ..(**state).clone() })));
             }
             _ => return Ok(None),
         };
@@ -408,7 +415,7 @@ impl State {
             _ => (None, same(left.t_k, right.t_k)),
         };
         let standard = left.standard && right.standard;
-        Ok(Some(State { zero, t_k, p_pa: same(left.p_pa, right.p_pa), standard, reaction }))
+        Ok(Some(Arc::new(State { zero, t_k, p_pa: same(left.p_pa, right.p_pa), standard, reaction })))
     }
 }
 
@@ -430,22 +437,21 @@ fn joined(left: (&Zero, Option<f64>), right: (&Zero, Option<f64>), minus: bool) 
 
 /// Whether multiplying by this only changes how much of something is meant.
 fn scales(dim: &Dimension) -> bool {
-    dim.is_basis_only()
-        || dim.without_basis() == Dimension::base(Base::Kilogram)
-        || dim.without_basis() == Dimension::none().over(&Dimension::base(Base::Kilogram))
+    dim.is_basis_only() || dim.has_bases([0, 1, 0, 0, 0, 0]) || dim.has_bases([0, -1, 0, 0, 0, 0])
 }
 
 fn is_pressure(dim: &Dimension) -> bool {
-    *dim == Dimension::whole([-1, 1, -2, 0, 0, 0])
+    dim.has_bases([-1, 1, -2, 0, 0, 0]) && dim.entities().is_empty()
 }
 
 fn is_volume(dim: &Dimension) -> bool {
-    dim.without_basis() == Dimension::whole([3, 0, 0, 0, 0, 0])
+    dim.has_bases([3, 0, 0, 0, 0, 0])
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::units::dimension::Base;
 
     fn energy() -> Dimension {
         Dimension::whole([2, 1, -2, 0, 0, 0])

@@ -2,9 +2,11 @@
 
 Waiting polls for up to a minute and no duration is asserted, so that a slow machine fails no test.
 """
+import json
 import os
 import subprocess
 import sys
+from pathlib import Path
 
 import nbformat
 import pytest
@@ -146,6 +148,22 @@ def test_a_notebook_becomes_a_page_on_the_command_line(tmp_path):
     assert made.returncode == 0, made.stderr
     page = (tmp_path / "first.html").read_text(encoding="utf8")
     assert "<pre>42</pre>" in page
+
+
+RECORD = "application/vnd.hessbook.report.v1+json"
+
+
+@pytest.mark.parametrize("source", sorted(Path("notebooks").glob("*.ipynb")), ids=lambda path: path.stem)
+def test_a_shipped_notebook_gives_the_records_of_the_command_line(source, tmp_path):
+    """Kernel and runner are two ways to one session: the same records, to the last digit."""
+    made = jupyter("nbconvert", "--to", "notebook", "--execute", str(source), "--output-dir", str(tmp_path))
+    assert made.returncode == 0, made.stderr
+    executed = nbformat.read(tmp_path / source.name, as_version=4)
+    outputs = [output for cell in executed.cells for output in cell.get("outputs", [])]
+    by_kernel = [output["data"][RECORD] for output in outputs if RECORD in output.get("data", {})]
+    [program] = KernelManager(kernel_name=KERNEL).kernel_spec.argv[:1]
+    ran = subprocess.run([program, "run", "--format", "json", str(source)], capture_output=True, text=True, check=True)
+    assert by_kernel and json.loads(ran.stdout)["reports"] == by_kernel
 
 
 def test_the_kernel_is_listed_with_its_logo():
