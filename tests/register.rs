@@ -12,9 +12,10 @@ use asking::Desk;
 use hessbook::data::catalog::Catalog;
 use hessbook::fault::Place;
 use hessbook::model::card::{self, Card, Cx, References, Value};
-use hessbook::model::property_card::{ENTHALPY, ENTROPY, EQUILIBRIUM_CONSTANT, HEAT_CAPACITY};
+use hessbook::model::property_card::{ENTHALPY, ENTROPY, EQUILIBRIUM_CONSTANT, HEAT_CAPACITY, SUBSTANCE_ENTROPY};
 use hessbook::model::quantities::ASSUME;
 use hessbook::model::review::{Dealing, Decided};
+use hessbook::model::substance::SUBSTANCE;
 use hessbook::num::math;
 use hessbook::quantity::{Quantity, text};
 use hessbook::render::report::{Assumption, Record, Report};
@@ -65,13 +66,22 @@ fn assumed(desk: &Desk, written: &str, prices: &[&str]) -> Quantity {
     value
 }
 
+fn entropy_of(desk: &Desk, species: &str, t: &str) -> Quantity {
+    let substance = card::call(&desk.cx(), &SUBSTANCE, vec![Value::Text(species.into())]).unwrap();
+    match card::call(&desk.cx(), &SUBSTANCE_ENTROPY, vec![substance, Value::Text(t.into())]) {
+        Ok(Value::Quantity(value)) => value,
+        Ok(other) => panic!("{} is no quantity", other.sort()),
+        Err(fault) => panic!("{species} at {t}: {fault}"),
+    }
+}
+
 /// By a constant heat capacity, which is priced.
 fn shortened(desk: &Desk, equation: &str) -> Quantity {
     desk.ask(&ENTHALPY, equation, "1000 K", &[("heat_capacity", "constant")]).unwrap()
 }
 
 fn dealing(id: &str, subject: &str, decided: Decided) -> Dealing {
-    Dealing { id: id.to_owned(), label: LABEL.to_owned(), subject: subject.to_owned(), decided }
+    Dealing { id: id.to_owned(), label: LABEL.to_owned(), cell: String::new(), subject: subject.to_owned(), decided }
 }
 
 fn justified(reason: &str) -> Decided {
@@ -92,10 +102,11 @@ fn two_phases_are_both_stable_where_they_meet() {
         all.filter(|t| t.from != t.to).map(|t| (format!("{} K", t.t_k), &*t.from, &*t.to)).collect();
     assert!(between.len() > 50, "{}", between.len());
     for (t, from, to) in between {
-        let melting = desk.ask(&ENTROPY, &format!("{from} -> {to}"), &t, &[]).unwrap();
-        let record = report(&desk, &melting, &[]);
-        let row = only(&record, "stable-phase");
-        assert_eq!((row.status.as_str(), &row.subject), ("holds", &format!("{from}, {to}")), "at {t}: {}", row.note);
+        for phase in [from, to] {
+            let record = report(&desk, &entropy_of(&desk, phase, &t), &[]);
+            let row = only(&record, "stable-phase");
+            assert_eq!((row.status.as_str(), row.subject.as_str()), ("holds", phase), "at {t}: {}", row.note);
+        }
     }
 }
 
@@ -103,14 +114,17 @@ fn two_phases_are_both_stable_where_they_meet() {
 fn water_boils_between_the_temperatures_at_which_the_stable_phase_changes() {
     // Saturation at 1 bar: 372.756 K (IAPWS-IF97, table 36; from memory). The functions take the vapour as ideal, which
     // moves it by -B p/ΔS = 0.4 K for B = -450 cm3/mol and 109 J/(mol K) (from memory); 1.5 K bounds that and their digits.
+    // Within 0.3 kJ/mol, here 2.8 K, a gas and a liquid are not told apart.
     let desk = Desk::new();
-    for (t, unstable) in [("371.2 K", "H2O(g)"), ("374.3 K", "H2O(l)")] {
+    for (t, unstable) in [("368.4 K", "H2O(g)"), ("377.1 K", "H2O(l)")] {
+        for phase in ["H2O(g)", "H2O(l)"] {
+            let record = report(&desk, &entropy_of(&desk, phase, t), &[]);
+            let status = if phase == unstable { "broken" } else { "holds" };
+            assert_eq!(only(&record, "stable-phase").status, status, "{phase} at {t}");
+        }
+        // A reaction that is the change of phase itself needs both.
         let boiling = desk.ask(&ENTHALPY, "H2O(l) -> H2O(g)", t, &[]).unwrap();
-        let record = report(&desk, &boiling, &[]);
-        let found: Vec<(&str, &str)> =
-            rows(&record, "stable-phase").iter().map(|row| (row.status.as_str(), row.subject.as_str())).collect();
-        let stable = if unstable == "H2O(g)" { "H2O(l)" } else { "H2O(g)" };
-        assert_eq!(found, [("broken", unstable), ("holds", stable)], "at {t}");
+        assert_eq!(rows(&report(&desk, &boiling, &[]), "stable-phase").len(), 0);
     }
 }
 
@@ -138,8 +152,8 @@ fn the_limit_of_a_price_follows_what_is_known_of_u() {
         (typed(&desk, "-285.830(20) kJ/mol[H2O]"), 0.002, "u/10"),
         (typed(&desk, "100.0(30) J"), 0.3, "u/10, of what is not molar too"),
         (sum("1.0(30) kJ/mol[CH4]", "5 kJ/mol[CH4]"), 0.3, "a tenth of the part of u that is stated"),
-        (sum("1.00(3) kJ/mol[CH4]", "5 kJ/mol[CH4]"), 0.05, "0.05 kJ/mol, more than a tenth of the stated part"),
-        (typed(&desk, "5 kJ/mol[CH4]"), 0.05, "0.05 kJ/mol without any u"),
+        (sum("1.00(3) kJ/mol[CH4]", "5 kJ/mol[CH4]"), 0.06, "1 % of 6, more than a tenth of the stated part"),
+        (typed(&desk, "5 kJ/mol[CH4]"), 0.05, "1 % without any u"),
         (typed(&desk, "-200 J"), 2.0, "1 % of what is not molar"),
     ] {
         close(why, number(&report(&desk, &value, &[]).tolerance), limit);
@@ -202,7 +216,8 @@ fn a_price_that_the_analyst_gives_is_carried_with_its_sign() {
         let record = report(&desk, &scaled, &[]);
         let row = only(&record, "own-0");
         close("price", price(row), wanted);
-        assert_eq!(row.first_order, factor != 1.0);
+        // A factor carries it whole.
+        assert!(!row.first_order);
     }
 }
 
@@ -228,7 +243,7 @@ fn a_row_names_every_place_that_leaned_on_its_assumption() {
     let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
     let at = |line: u32| {
         let place = Some(Place { cell: "cell-1".into(), line, column: 5 });
-        let cx = Cx { references: &references, place, ordinal: &ordinal };
+        let cx = Cx { references: &references, place, ordinal: &ordinal, halted: &|| None };
         let given = ["12.5(3) kJ", "no-heat-loss", "the vessel loses no heat", "0.1 kJ"];
         match card::call(&cx, &ASSUME, given.map(|text| Value::Text(text.into())).to_vec()).unwrap() {
             Value::Quantity(value) => value,
