@@ -322,6 +322,7 @@ mod tests {
     use crate::units::constants;
 
     const SHIFT: &str = "CO(g) + H2O(g) -> CO2(g) + H2(g)";
+    const REFORMING: &str = "CH4(g) + 2 H2O(g) -> CO2(g) + 4 H2(g)";
 
     fn ask(card: &'static Card, equation: &str, t: &str, options: &[(&str, &str)]) -> Result<Quantity, Fault> {
         let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
@@ -359,9 +360,20 @@ mod tests {
     #[test]
     fn slopes_agree_with_differences_of_the_values() {
         // Bound: a central difference over 2 × 0.01 K is off by h²/6 of a third derivative, below 1e-6 relative here.
-        for card in [&ENTHALPY, &INTERNAL_ENERGY, &GIBBS_ENERGY, &ENTROPY, &HEAT_CAPACITY, &EQUILIBRIUM_CONSTANT] {
-            for mode in HeatCapacity::WORDS {
-                let at = |t: &str| ask(card, SHIFT, t, &[("heat_capacity", mode)]).unwrap();
+        for card in [
+            &ENTHALPY,
+            &INTERNAL_ENERGY,
+            &GIBBS_ENERGY,
+            &HELMHOLTZ_ENERGY,
+            &ENTROPY,
+            &HEAT_CAPACITY,
+            &EQUILIBRIUM_CONSTANT,
+        ] {
+            // The shift alone would not tell ν from its sign, nor Δn(gas) from nothing.
+            for (equation, mode) in
+                [SHIFT, REFORMING].into_iter().flat_map(|e| HeatCapacity::WORDS.iter().map(move |m| (e, m)))
+            {
+                let at = |t: &str| ask(card, equation, t, &[("heat_capacity", mode)]).unwrap();
                 let difference = (at("600.01 K").si() - at("599.99 K").si()) / 0.02;
                 let with_u = at("600.00(1) K");
                 let of_t = with_u
@@ -371,10 +383,27 @@ mod tests {
                 let slope = of_t.map_or(0.0, |s| s.derivative); // A constant ΔCp has none.
                 assert!(
                     (slope - difference).abs() <= 1e-5 * (difference.abs() + 1e-3),
-                    "{} {mode}: {slope} {difference}",
+                    "{} of {equation} {mode}: {slope} {difference}",
                     card.id
                 );
             }
+        }
+    }
+
+    #[test]
+    fn r_is_an_input_with_the_weight_of_what_it_multiplies() {
+        // U = H - Δn R T and A = G - Δn R T, so the derivative by R is -Δn T, with Δn = 5 - 3 counted by hand.
+        for (card, equation, weight) in [
+            (&INTERNAL_ENERGY, REFORMING, Some(-2.0 * 600.0)),
+            (&HELMHOLTZ_ENERGY, REFORMING, Some(-2.0 * 600.0)),
+            (&INTERNAL_ENERGY, SHIFT, None),
+        ] {
+            let value = ask(card, equation, "600 K", &[]).unwrap();
+            let of_r = value
+                .sensitivities()
+                .into_iter()
+                .find(|s| matches!(s.input().unwrap().key, LeafKey::Constant { name: "molar gas constant", .. }));
+            assert_eq!(of_r.map(|s| s.derivative), weight, "{} of {equation}", card.id);
         }
     }
 

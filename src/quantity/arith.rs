@@ -330,8 +330,13 @@ mod tests {
 
     #[test]
     fn an_open_mole_takes_the_basis_it_meets_and_the_node_remembers() {
-        let sum = q("1 kJ/mol").plus(&q("2 kJ/mol[CH4]"), None).unwrap();
-        assert_eq!(sum.node().bound(), Some(Entity::named("CH4")));
+        let (open, named) = (q("1 kJ/mol"), q("2 kJ/mol[CH4]"));
+        for (a, b) in [(&open, &named), (&named, &open)] {
+            let gap = a.minus(b, None).unwrap();
+            assert_eq!((gap.node().bound(), gap.dim()), (Some(Entity::named("CH4")), named.dim()));
+            let mean = Quantity::mean(&[a.clone(), b.clone()], None).unwrap();
+            assert_eq!((mean.node().bound(), mean.dim()), (Some(Entity::named("CH4")), named.dim()));
+        }
         assert!(matches!(q("1 kJ/mol[CH4]").plus(&q("1 kJ/mol[rxn]"), None), Err(Mismatch::Basis { .. })));
     }
 

@@ -10,7 +10,9 @@ use hessbook::model::basis::PER;
 use hessbook::model::card::{self, Card, Value};
 use hessbook::model::property_card::{
     ENTHALPY, ENTROPY, EQUILIBRIUM_CONSTANT, GIBBS_ENERGY, HEAT_CAPACITY, HELMHOLTZ_ENERGY, INTERNAL_ENERGY,
+    SUBSTANCE_ENTROPY, SUBSTANCE_HEAT_CAPACITY,
 };
+use hessbook::model::substance::SUBSTANCE;
 use hessbook::quantity::Quantity;
 use hessbook::record::spread::Spread;
 use hessbook::render::report::{Assumption, Record, Report};
@@ -215,6 +217,8 @@ fn a_value_per_mole_of_a_species_carries_its_prices_along() {
         };
         near("price", price(&of_it), factor * price(&all), slack)?;
         prop_assert_eq!(of_it.unit, format!("kJ/mol[{name}]"));
+        let direction = if *nu < 0 { "consumed" } else { "formed" };
+        prop_assert!(of_it.shown.ends_with(&format!(", per mole of {name} {direction}")), "{}", of_it.shown);
         Ok(())
     });
 }
@@ -306,4 +310,24 @@ fn two_ways_of_taking_the_heat_capacity_do_not_cancel_as_if_they_were_one_figure
     let kelvin = hessbook::quantity::text::parse("1 K", None, 99).unwrap();
     let rest = shift("full").minus(&cp.times(&kelvin, None).unwrap(), None).unwrap();
     assert!(matches!(rest.spread(), Spread::Partial { .. }), "{:?}", rest.spread());
+}
+
+#[test]
+fn a_function_at_two_temperatures_gives_two_figures() {
+    // Neither states a u, so the difference of the two has none either; zero would say that it is known exactly.
+    let desk = Desk::new();
+    let at = |card, t: &str| {
+        let gas = card::call(&desk.cx(), &SUBSTANCE, vec![Value::Text("CO(g)".into())]).unwrap();
+        let Value::Quantity(value) = card::call(&desk.cx(), card, vec![gas, Value::Text(t.into())]).unwrap() else {
+            panic!("not a quantity")
+        };
+        value
+    };
+    for card in [&SUBSTANCE_HEAT_CAPACITY, &SUBSTANCE_ENTROPY] {
+        let change = at(card, "900 K").minus(&at(card, "700 K"), None).unwrap();
+        assert!(change.si() > 0.1, "{}: {}", card.id, change.si());
+        assert!(matches!(change.spread(), Spread::NotStated { .. }), "{}: {:?}", card.id, change.spread());
+        let nothing = at(card, "900 K").minus(&at(card, "900 K"), None).unwrap();
+        assert_eq!(nothing.spread(), Spread::Full(0.0), "{}", card.id);
+    }
 }

@@ -17,6 +17,7 @@ use hessbook::model::property_card::{
 };
 use hessbook::num::math::ln;
 use hessbook::quantity::Quantity;
+use hessbook::record::spread::Spread;
 
 /// Atoms of C, H, O and N, counted by hand. All gases, each with a function from 200 to 6000 K.
 const SPECIES: [(&str, [i64; 4]); 16] = [
@@ -192,6 +193,20 @@ fn the_u_of_a_cycle_is_that_of_the_reaction_it_adds_up_to() {
         near("u along the path", along, f64::sqrt(by_hand), 1e-9 * f64::sqrt(by_hand) + 1e-9)?;
         near("u of the sum", direct, f64::sqrt(by_hand), 1e-9 * f64::sqrt(by_hand) + 1e-9)
     });
+}
+
+#[test]
+fn figures_of_two_datasets_do_not_cancel_as_if_they_were_one() {
+    // H2O(l), half of the printed 95 % figures: 0.040 kJ/mol in CODATA Key Values 1989, 0.027 kJ/mol in ATcT 1.112 (from a
+    // machine-readable copy). The elements have none by convention, in both.
+    let desk = Desk::new();
+    let formed =
+        |dataset| desk.ask(&ENTHALPY, "H2(g) + 1/2 O2(g) -> H2O(l)", "298.15 K", &[("formation", dataset)]).unwrap();
+    let (codata, atct) = (formed("codata-1989"), formed("atct-1.112"));
+    let u = codata.minus(&atct, None).unwrap().spread().u().unwrap();
+    assert!((u - f64::sqrt(20.0 * 20.0 + 13.5 * 13.5)).abs() < 1e-9, "{u} J/mol");
+    let again = codata.minus(&formed("codata-1989"), None).unwrap().spread();
+    assert_eq!(again, Spread::Full(0.0));
 }
 
 #[test]
