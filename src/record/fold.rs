@@ -9,7 +9,7 @@
 //! - a value in hand keeps its own full history: only what is computed from it later sees a folded form.
 //!
 //! The surprise: inputs that differ cannot be folded away, so a loop that types a new figure with a stated uncertainty in
-//! each pass still grows by one input a pass, some 400 bytes. Only figures of the same text and place *without* a stated
+//! each pass still grows by one input a pass, some 600 bytes. Only figures of the same text and place *without* a stated
 //! uncertainty are taken together ([`LeafKey::Repeated`]), where nothing outside the run uses one of them. Values that feed
 //! each other are folded each for itself, so that m of them cost up to m walks over what they share.
 
