@@ -7,6 +7,7 @@
 use rhai::{Dynamic, Engine, EvalAltResult, FnPtr, Map, NativeCallContext, ParseError, Position, Scope};
 
 use crate::fault::{Fault, Place};
+use crate::model::CARDS;
 use crate::script::prepare::CAUGHT;
 use crate::script::script_error::{ScriptError, count};
 use crate::script::show;
@@ -162,7 +163,10 @@ fn function_not_found(call: &str, site: Site<'_>) -> ScriptError {
     let library = site.shared.library();
     if library.holds(&name) {
         let fitting = library.forms(&name, Some(given.len()));
-        return if fitting.is_empty() {
+        let written: Vec<String> = CARDS.iter().filter(|card| card.name == name).map(|card| card.signature()).collect();
+        return if fitting.is_empty() && !written.is_empty() {
+            ScriptError::FormulaArguments { name, written }
+        } else if fitting.is_empty() {
             ScriptError::ArgumentCount { given: given.len(), takes: library.forms(&name, None), name }
         } else {
             ScriptError::WrongArguments { name, given, takes: fitting }

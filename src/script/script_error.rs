@@ -24,6 +24,11 @@ pub enum ScriptError {
         given: usize,
         takes: Vec<String>,
     },
+    /// A formula that is not written so; `written` lists how it is.
+    FormulaArguments {
+        name: String,
+        written: Vec<String>,
+    },
     /// A function of the library that has forms for this number of arguments, but not for their kinds.
     WrongArguments {
         name: String,
@@ -114,6 +119,7 @@ impl fmt::Display for ScriptError {
         match self {
             ScriptError::UnknownFunction { name, .. } => write!(f, "there is no function {name}"),
             ScriptError::WrongArguments { name, given, .. } => write!(f, "{name} does not take {}", words::list(given)),
+            ScriptError::FormulaArguments { name, .. } => write!(f, "{name} takes another number of arguments"),
             ScriptError::ArgumentCount { name, given, .. } => {
                 write!(f, "{name} was called with {}", count(*given, "argument"))
             }
@@ -162,7 +168,9 @@ impl Explain for ScriptError {
         match self {
             ScriptError::UnknownFunction { .. } => "unknown-function",
             ScriptError::WrongArguments { .. } => "wrong-arguments",
-            ScriptError::ArgumentCount { .. } | ScriptError::ClosureArguments { .. } => "argument-count",
+            ScriptError::ArgumentCount { .. }
+            | ScriptError::FormulaArguments { .. }
+            | ScriptError::ClosureArguments { .. } => "argument-count",
             ScriptError::CalledVariable { .. } => "called-variable",
             ScriptError::Operator { .. } => "operator-mismatch",
             ScriptError::Unsortable { .. } => "unsortable",
@@ -196,6 +204,9 @@ impl Explain for ScriptError {
             }
             ScriptError::WrongArguments { name, takes, .. } | ScriptError::ArgumentCount { name, takes, .. } => {
                 format!("{name} takes {}", takes.join(", or "))
+            }
+            ScriptError::FormulaArguments { written, .. } => {
+                format!("write {}; what has a default may be left out", written.join(", or "))
             }
             ScriptError::ClosureArguments { .. } => {
                 "what stands between its bars is what it takes: |a, b| takes 2".to_owned()
