@@ -324,7 +324,7 @@ fn step(
             let names: Vec<String> = inputs().map(|input| numbers.name(input)).collect();
             (Made::Arithmetic(check_line::arithmetic(operator, &names)), check_line::step_line(&made_here))
         }
-        Origin::Folded(folded) => (Made::Folded { folded: *folded, from: numbers.names(inputs()) }, String::new()),
+        Origin::Folded(folded) => (Made::Folded { folded: **folded, from: numbers.names(inputs()) }, String::new()),
         Origin::Input(_) | Origin::Step(_) => {
             let figures = check_line::own_line(cx, node, sources).unwrap_or_else(|| check_line::step_line(&made_here));
             (formula(number, node, numbers, sources, symbols_at), figures)

@@ -110,7 +110,7 @@ fn short_of(root: &Rc<Node>, depth: u8) -> Option<Rc<Node>> {
     let stands_for: Vec<Option<Rc<Node>>> = form.ends.iter().map(|end| short_end(end.node, root.id(), depth)).collect();
     let short = if form.nodes >= WORTHWHILE && finite {
         let (folded, bound) = (form.folded, form.bound);
-        Rc::new(root.remade(Origin::Folded(folded), form.inputs(&stands_for), Run::FOLDED).with_bound(bound))
+        Rc::new(root.remade(Origin::Folded(Box::new(folded)), form.inputs(&stands_for), Run::FOLDED).with_bound(bound))
     } else if stands_for.iter().any(Option::is_some) {
         form.rebuilt(&stands_for)
     } else {
@@ -193,7 +193,7 @@ impl<'a> Form<'a> {
                 Folded { steps: 1, linear: is_linear(*operator), since: node.id(), ..Folded::NOTHING }
             }
             // An older form over many inputs stays as it is: to write it out anew each time would cost its length again.
-            Origin::Folded(folded) if node.inputs().len() <= self.nodes as usize => *folded,
+            Origin::Folded(folded) if node.inputs().len() <= self.nodes as usize => **folded,
             _ => return false,
         };
         if binds_alike {
@@ -391,7 +391,7 @@ mod tests {
         assert_eq!(s.si().to_bits(), si.to_bits());
         let history = node::history(&s);
         assert!(history.len() < 2 * LONGEST as usize, "{} nodes", history.len());
-        assert!(history.iter().all(|node| !matches!(node.origin(), Origin::Folded(Folded { at_least: true, .. }))));
+        assert!(history.iter().all(|node| !matches!(node.origin(), Origin::Folded(folded) if folded.at_least)));
         let kept = history.iter().filter(|node| matches!(node.origin(), Origin::Operator(_))).count();
         assert_eq!(folded_in(&s) + kept as u64, 2 * PASSES as u64);
         let partials: Vec<f64> = sensitivities(&s).iter().map(|s| s.derivative).collect();
@@ -460,7 +460,7 @@ mod tests {
             }
         }
         let folded = node::history(&x).iter().find_map(|node| match node.origin() {
-            Origin::Folded(folded) => Some(*folded),
+            Origin::Folded(folded) => Some(**folded),
             _ => None,
         });
         // Each of the two stands for steps of the other, so that only a bound on their number is known.

@@ -169,8 +169,8 @@ pub enum Origin {
     Input(Box<Input>),
     Operator(Operator),
     Step(Rc<dyn Step>),
-    /// A long run of arithmetic, as its linear form over what the run rested on.
-    Folded(Folded),
+    /// A long run of arithmetic, as its linear form over what the run rested on. Boxed for the same reason.
+    Folded(Box<Folded>),
 }
 
 /// A value in SI units with its history.
@@ -205,6 +205,8 @@ fn next_id() -> u64 {
 
 impl Node {
     /// `inputs` come with the partial derivative of the value in SI units with respect to each.
+    // A node is large and is moved at every call on its way to its place, so these few are inlined.
+    #[inline]
     pub fn new(
         si: f64,
         dim: Dimension,
@@ -227,6 +229,7 @@ impl Node {
         Node::with_id(self.id, self.si, dim, kind, inputs, origin, place, run)
     }
 
+    #[inline]
     #[expect(clippy::too_many_arguments, reason = "one private constructor, so that users are counted in one place")]
     fn with_id(
         id: u64,
@@ -244,6 +247,7 @@ impl Node {
     }
 
     #[must_use]
+    #[inline]
     pub fn with_bound(mut self, entity: Option<Entity>) -> Self {
         self.bound = entity;
         self
