@@ -11,6 +11,7 @@ pub mod headline;
 pub mod html;
 pub mod interval;
 pub mod latex;
+pub mod plot;
 pub mod register;
 pub mod report;
 pub mod text;
