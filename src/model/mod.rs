@@ -31,6 +31,7 @@ pub mod shortcut;
 pub mod substance;
 pub mod symbols;
 pub mod terms;
+pub mod thermo;
 pub mod tolerance;
 
 use card::Card;

@@ -31,7 +31,7 @@ impl Reaction {
         let equation = Equation::parse(text, &|name| Ok(data.find(name)?.species.clone()))?;
         let mut terms = Vec::with_capacity(equation.terms().len());
         for (species, nu) in equation.terms() {
-            terms.push(Term { substance: data.find(&species.id)?, nu: nu.to_f64() });
+            terms.push(Term::of_tables(data.find(&species.id)?, nu.to_f64()));
         }
         let terms = Terms::new(terms, Entity::RXN, equation.to_string());
         Ok(Reaction { equation, terms })
