@@ -17,6 +17,7 @@ use crate::data::function::Function;
 use crate::data::substance::Substance;
 use crate::fault::{Explain, Fault};
 use crate::model::card::Cx;
+use crate::model::first_order;
 use crate::model::function::{self, T_REFERENCE};
 use crate::model::terms::{Term, Terms};
 use crate::model::thermo::{AtT, Thermo};
@@ -26,7 +27,7 @@ use crate::record::node::{Input, LeafKey, Node};
 use crate::source::Citation;
 
 /// How heat capacities are taken between 298.15 K and T.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq)]
 pub enum HeatCapacity {
     /// The integral of the function.
     Full,
@@ -36,22 +37,26 @@ pub enum HeatCapacity {
     Midpoint,
     /// The mean of its values at both ends throughout.
     Mean,
+    /// To first order about a temperature: integrated to there, and its value there onwards.
+    FirstOrder { about_k: f64 },
     /// None: the value at 298.15 K stands for the value at T.
     Neglected,
 }
 
 impl HeatCapacity {
-    pub const WORDS: &'static [&'static str] = &["full", "constant", "midpoint", "mean"];
+    pub const WORDS: &'static [&'static str] = &["full", "constant", "midpoint", "mean", "taylor"];
 
     /// How Cp was taken, for the register.
-    pub fn words(self) -> &'static str {
-        match self {
+    pub fn words(self) -> String {
+        let words = match self {
+            HeatCapacity::FirstOrder { about_k } => return format!("taken to first order about {about_k} K"),
             HeatCapacity::Full => "integrated",
             HeatCapacity::Constant => "held at its value at 298.15 K",
             HeatCapacity::Midpoint => "held at its value half-way",
             HeatCapacity::Mean => "held at the mean of both ends",
             HeatCapacity::Neglected => "neglected",
-        }
+        };
+        words.to_owned()
     }
 
     pub fn from_word(word: &str) -> HeatCapacity {
@@ -354,6 +359,9 @@ pub(crate) fn contribution(
     mode: HeatCapacity,
     cx: &Cx,
 ) -> Result<Contribution, Fault> {
+    if let HeatCapacity::FirstOrder { about_k } = mode {
+        return first_order::contribution(term, dataset, t_k, about_k, cx);
+    }
     let (substance, data) = (&term.substance, cx.data());
     let species = || substance.species.id.to_string();
     let formation =
@@ -446,7 +454,7 @@ fn of_own(
     let at_0 = own.at(cx, T_REFERENCE)?;
     let (span, ln_ratio) = (t_k - T_REFERENCE, math::ln(t_k / T_REFERENCE));
     let (cp, cp_slope) = match mode {
-        HeatCapacity::Full => unreachable!("it was answered above"),
+        HeatCapacity::Full | HeatCapacity::FirstOrder { .. } => unreachable!("it was answered above"),
         HeatCapacity::Constant => (at_0.cp.clone(), 0.0),
         HeatCapacity::Midpoint => {
             let middle = own.at(cx, 0.5 * (t_k + T_REFERENCE))?;
@@ -514,6 +522,7 @@ fn between(function: &Function, h_298: f64, t_k: f64, at_t: function::Functions,
     };
     match mode {
         HeatCapacity::Full => integrated(at_0.h),
+        HeatCapacity::FirstOrder { .. } => unreachable!("it is a sum of two full integrals"),
         HeatCapacity::Constant => {
             let cp = Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" };
             flat(cp, 0.0, "Cp held at its value at 298.15 K")

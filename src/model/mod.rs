@@ -13,6 +13,7 @@ pub mod compare;
 pub mod conditions;
 pub mod derivation;
 pub mod expanded;
+pub mod first_order;
 pub mod function;
 pub mod gap;
 pub mod gather;
