@@ -5,9 +5,10 @@ use std::rc::Rc;
 use crate::fault::Fault;
 use crate::model::card::{Alternative, Arg, Call, Card, Claim, Cx, Default, On, Sources, Takes, Value};
 use crate::model::claims;
-use crate::model::gather::{self, Contribution, Figure, HeatCapacity};
+use crate::model::gather::{self, Contribution, Figure, FigureOrigin, HeatCapacity};
 use crate::model::property::{self, Property};
 use crate::quantity::Quantity;
+use crate::source::Citation;
 
 fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     let asked = Property::of(call.card).unwrap_or_else(|| unreachable!("{} is a property's card", call.card.id));
@@ -20,12 +21,7 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     let (Some(terms), t_k) = (call.terms(), call.quantity(1).si()) else { return String::new() };
     let Ok(method) = property::method_of(call, cx) else { return String::new() };
     let Ok(contributions) = gather::contributions(terms, t_k, &method, cx) else { return String::new() };
-    let kilo = |figure: &Figure| match &figure.printed {
-        Some(printed) => printed.to_string(),
-        None => format!("{:.3}", figure.si / 1000.0),
-    };
-    let plain =
-        |figure: &Figure| figure.printed.as_ref().map_or_else(|| format!("{:.3}", figure.si), ToString::to_string);
+    let (kilo, plain) = (|si: f64| format!("{:.3}", si / 1000.0), |si: f64| format!("{si:.3}"));
     let enthalpy = |sources: &mut Sources| {
         let formation = sum_of(&contributions, sources, |c| Some(&c.formation), kilo);
         let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), kilo);
@@ -75,13 +71,12 @@ fn sum_of<'a>(
     contributions: &'a [Contribution],
     sources: &mut Sources,
     pick: impl Fn(&'a Contribution) -> Option<&'a Figure>,
-    show: impl Fn(&Figure) -> String,
+    show: impl Fn(f64) -> String,
 ) -> String {
     let mut line = String::new();
     for contribution in contributions {
         let Some(figure) = pick(contribution) else { continue };
-        let (nu, shown) = (contribution.nu, show(figure));
-        let source = figure.citation().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+        let (nu, shown) = (contribution.nu, shown(figure, sources, &show));
         line.push_str(match (line.is_empty(), nu < 0.0) {
             (true, false) => "",
             (true, true) => "-",
@@ -91,9 +86,28 @@ fn sum_of<'a>(
         if nu.abs() != 1.0 {
             line.push_str(&format!("{} × ", nu.abs()));
         }
-        line.push_str(&if shown.starts_with('-') { format!("({shown}){source}") } else { format!("{shown}{source}") });
+        line.push_str(&shown);
     }
     line
+}
+
+/// `(-110.53)[1]`, or of a figure that is a sum of inputs, as over changes of phase, `(25.408[2] + 0.900[3] + 4.086[4])`.
+fn shown(figure: &Figure, sources: &mut Sources, show: &impl Fn(f64) -> String) -> String {
+    let mut cited = |shown: String, citation: Option<&Citation>| {
+        let source = citation.map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+        if shown.starts_with('-') { format!("({shown}){source}") } else { format!("{shown}{source}") }
+    };
+    if let FigureOrigin::Nodes(nodes) = &figure.origin {
+        let inputs = nodes.iter().map(|(node, slope)| node.input().filter(|_| *slope == 1.0).map(|input| (node, input)));
+        let inputs: Option<Vec<_>> = inputs.collect();
+        if let Some(inputs) = inputs.filter(|inputs| !inputs.is_empty()) {
+            let parts = inputs.iter().map(|(node, input)| cited(show(node.si()), input.citation.as_ref()));
+            let sum = parts.collect::<Vec<_>>().join(" + ");
+            return if inputs.len() == 1 { sum } else { format!("({sum})") };
+        }
+    }
+    let written = figure.printed.as_ref().map_or_else(|| show(figure.si), ToString::to_string);
+    cited(written, figure.citation())
 }
 
 const OPTIONS: &[Arg] = &[
@@ -159,6 +173,11 @@ const SHORTCUTS: &[Alternative] = &[
         value: claims::with_constant_heat_capacity,
     },
     Alternative { id: "no-correction", words: "with the value at 298.15 K", value: claims::without_correction },
+    Alternative {
+        id: "missed-phase-change",
+        words: "with the changes of phase left out, Cp of the phase as written held on",
+        value: claims::with_missed_phase_change,
+    },
 ];
 
 const SOURCE: &str = "definitions of the state functions; IUPAC Green Book, 3rd ed., section 2.11 (from memory)";
