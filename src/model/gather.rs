@@ -140,7 +140,9 @@ pub struct Slopes {
 pub enum GatherError {
     #[error("{t_k} K is outside the range of the data for {species}, {t_min} K to {t_max} K")]
     Range { species: String, t_k: f64, t_min: f64, t_max: f64 },
-    #[error("{phase} ends at {t_end} K on record, and the change to {gas} is not inserted on the way to {t_k} K: where it happens depends on the pressure")]
+    #[error(
+        "{phase} ends at {t_end} K on record, and the change to {gas} is not inserted on the way to {t_k} K: where it happens depends on the pressure"
+    )]
     GasNotInserted { phase: String, gas: String, t_k: f64, t_end: f64 },
     #[error("no heat capacity of {species} is at hand, so nothing can be said of it at {t_k} K")]
     NoFunction { species: String, t_k: f64 },

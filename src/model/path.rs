@@ -194,7 +194,8 @@ impl Route {
 
     /// Whether the route passes into a phase that another term of the reaction is.
     pub(super) fn meets_another_term(&self, at: usize, terms: &Terms) -> bool {
-        let is_other = |id: &str| terms.terms().iter().enumerate().any(|(n, term)| n != at && term.substance.id() == id);
+        let is_other =
+            |id: &str| terms.terms().iter().enumerate().any(|(n, term)| n != at && term.substance.id() == id);
         self.changes.iter().any(|(_, phase)| is_other(phase.substance.id()))
     }
 
@@ -244,11 +245,7 @@ impl Route {
         }
         let (last, t_k) = (self.last(), self.t_k);
         let cp = Drawn { si: last.at(t_k).cp, t_k, way: "" };
-        let slopes = Slopes {
-            increment: cp.si,
-            entropy: cp.si / t_k,
-            cp: function::cp_slope(&last.function, t_k),
-        };
+        let slopes = Slopes { increment: cp.si, entropy: cp.si / t_k, cp: function::cp_slope(&last.function, t_k) };
         let cp = Figure::sum_of_nodes([drawn(last, gather::HEAT_CAPACITY, &cp, Sort::PerKelvin)?]);
         Ok(assembled(nu, formation, enthalpies, entropies, cp, slopes))
     }

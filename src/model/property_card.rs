@@ -98,7 +98,8 @@ fn shown(figure: &Figure, sources: &mut Sources, show: &impl Fn(f64) -> String) 
         if shown.starts_with('-') { format!("({shown}){source}") } else { format!("{shown}{source}") }
     };
     if let FigureOrigin::Nodes(nodes) = &figure.origin {
-        let inputs = nodes.iter().map(|(node, slope)| node.input().filter(|_| *slope == 1.0).map(|input| (node, input)));
+        let inputs =
+            nodes.iter().map(|(node, slope)| node.input().filter(|_| *slope == 1.0).map(|input| (node, input)));
         let inputs: Option<Vec<_>> = inputs.collect();
         if let Some(inputs) = inputs.filter(|inputs| !inputs.is_empty()) {
             let parts = inputs.iter().map(|(node, input)| cited(show(node.si()), input.citation.as_ref()));
