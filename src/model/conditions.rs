@@ -47,8 +47,13 @@ fn changed_phases(cx: &Cx, value: &Quantity) -> Vec<String> {
     let mut all: Vec<String> = Vec::new();
     for node in node::history(value.node()) {
         let Some(call) = call_of(&node) else { continue };
-        let (Some(terms), Some(Value::Quantity(t))) = (call.terms(), call.args.get(1)) else { continue };
-        for words in path::crossings(terms, t.si(), cx.data()).iter().filter_map(|(_, route)| route.words()) {
+        let Some(terms) = call.terms() else { continue };
+        let temperatures = call.args.iter().filter_map(|arg| match arg {
+            Value::Quantity(t) if t.kind().what.is_temperature() => Some(t.si()),
+            _ => None,
+        });
+        let routes = temperatures.flat_map(|t_k| path::crossings(terms, t_k, cx.data()));
+        for words in routes.filter_map(|(_, route)| route.words()) {
             if !all.contains(&words) {
                 all.push(words);
             }

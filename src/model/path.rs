@@ -37,6 +37,8 @@ use crate::units::{Base, Dimension, Entity, Kind};
 pub const TRANSITION_ENTHALPY: &str = "transition enthalpy";
 pub const TRANSITION_ENTROPY: &str = "transition entropy";
 
+/// Of an increment between two temperatures that a user gives.
+pub(super) const FROM_START: &str = "integrated from the start";
 const FROM_TRANSITION: &str = "integrated from the transition into the phase";
 const HELD: &str = "Cp held at its value where the phase ends";
 
@@ -68,7 +70,7 @@ pub struct Route {
 /// A part of a route.
 pub enum Leg<'a> {
     /// One phase between two temperatures.
-    Heating { phase: &'a Phase, from_k: f64, to_k: f64 },
+    Heating { phase: &'a Phase, from_k: f64, to_k: f64, way: &'static str },
     /// A change of phase.
     Change(&'a Transition),
 }
@@ -77,7 +79,7 @@ impl Leg<'_> {
     /// Enthalpy taken up, J/mol.
     pub fn dh(&self) -> f64 {
         match self {
-            Leg::Heating { phase, from_k, to_k } => phase.at(*to_k).h - phase.at(*from_k).h,
+            Leg::Heating { phase, from_k, to_k, .. } => phase.at(*to_k).h - phase.at(*from_k).h,
             Leg::Change(transition) => transition.dh,
         }
     }
@@ -88,8 +90,7 @@ impl Leg<'_> {
     /// The figure is not finite.
     pub fn node(&self) -> Result<Rc<Node>, Fault> {
         match self {
-            Leg::Heating { phase, from_k, to_k } => {
-                let way = if *from_k == T_REFERENCE { INTEGRATED } else { FROM_TRANSITION };
+            Leg::Heating { phase, to_k, way, .. } => {
                 drawn(phase, gather::HEAT_CAPACITY, &Drawn { si: self.dh(), t_k: *to_k, way }, Sort::Energy)
             }
             Leg::Change(transition) => changed(transition, Sort::Energy),
@@ -100,10 +101,10 @@ impl Leg<'_> {
     fn entropy_node(&self) -> Result<Rc<Node>, Fault> {
         let drawn = |phase, figure| drawn(phase, gather::ENTROPY, &figure, Sort::PerKelvin);
         match self {
-            Leg::Heating { phase, from_k, to_k } if *from_k == T_REFERENCE => {
+            Leg::Heating { phase, from_k, to_k, .. } if *from_k == T_REFERENCE => {
                 drawn(phase, Drawn { si: phase.at(*to_k).s, t_k: *to_k, way: "" })
             }
-            Leg::Heating { phase, from_k, to_k } => {
+            Leg::Heating { phase, from_k, to_k, .. } => {
                 let si = phase.at(*to_k).s - phase.at(*from_k).s;
                 drawn(phase, Drawn { si, t_k: *to_k, way: "gained since the transition into the phase" })
             }
@@ -159,20 +160,24 @@ impl Route {
     }
 
     /// The phase at a temperature on the route; a transition temperature belongs to the phase that ends there.
-    fn phase_at(&self, t_k: f64) -> &Phase {
+    pub(super) fn phase_at(&self, t_k: f64) -> &Phase {
         self.changes.iter().rev().find(|(transition, _)| transition.t_k < t_k).map_or(&self.first, |(_, phase)| phase)
     }
 
-    /// The parts of the route, from 298.15 K up.
-    pub fn legs(&self) -> Vec<Leg<'_>> {
+    /// The parts of the route above a temperature on it, from low to high.
+    pub fn legs_from(&self, start_k: f64) -> Vec<Leg<'_>> {
         let mut legs = Vec::with_capacity(2 * self.changes.len() + 1);
-        let (mut phase, mut from_k) = (&self.first, T_REFERENCE);
+        let (mut phase, mut from_k) = (&self.first, start_k);
+        let mut way = if start_k == T_REFERENCE { INTEGRATED } else { FROM_START };
         for (transition, next) in &self.changes {
-            legs.push(Leg::Heating { phase, from_k, to_k: transition.t_k });
-            legs.push(Leg::Change(transition));
-            (phase, from_k) = (next, transition.t_k);
+            if start_k <= transition.t_k {
+                legs.push(Leg::Heating { phase, from_k, to_k: transition.t_k, way });
+                legs.push(Leg::Change(transition));
+                (from_k, way) = (transition.t_k, FROM_TRANSITION);
+            }
+            phase = next;
         }
-        legs.push(Leg::Heating { phase, from_k, to_k: self.t_k });
+        legs.push(Leg::Heating { phase, from_k, to_k: self.t_k, way });
         legs
     }
 
@@ -180,7 +185,7 @@ impl Route {
     pub fn words(&self) -> Option<String> {
         let (_, last) = self.changes.last()?;
         let at: Vec<String> = self.changes().map(|transition| format!("{} K", transition.t_k)).collect();
-        Some(format!("{} is {}, changed at {}", self.first.substance.id(), last.substance.id(), at.join(" and ")))
+        Some(format!("{} is {}, changed at {}", self.first.substance.id(), last.substance.id(), at.join(", ")))
     }
 
     /// The changes with their enthalpies: `to Fe(cr,gamma) at 1184 K with ΔtrsH = 0.900 kJ/mol`.
@@ -239,7 +244,7 @@ impl Route {
     /// Cp integrated phase by phase, with the changes between.
     fn integrated(&self, nu: f64, formation: Figure) -> Result<Contribution, Fault> {
         let (mut enthalpies, mut entropies) = (Vec::new(), Vec::new());
-        for leg in self.legs() {
+        for leg in self.legs_from(T_REFERENCE) {
             enthalpies.push(leg.node()?);
             entropies.push(leg.entropy_node()?);
         }
@@ -257,7 +262,7 @@ impl Route {
         let at_end = first.at(end_k);
         let (span, ln_ratio) = (t_k - end_k, math::ln(t_k / end_k));
         let enthalpies = vec![
-            Leg::Heating { phase: first, from_k: T_REFERENCE, to_k: end_k }.node()?,
+            Leg::Heating { phase: first, from_k: T_REFERENCE, to_k: end_k, way: INTEGRATED }.node()?,
             drawn(first, gather::HEAT_CAPACITY, &Drawn { si: at_end.cp * span, t_k, way: HELD }, Sort::Energy)?,
         ];
         let entropies = vec![

@@ -4,11 +4,11 @@ use std::rc::Rc;
 
 use crate::fault::Fault;
 use crate::model::card::{Alternative, Arg, Call, Card, Claim, Cx, Default, On, Sources, Takes, Value};
+use crate::model::check_line;
 use crate::model::claims;
-use crate::model::gather::{self, Contribution, Figure, FigureOrigin, HeatCapacity};
+use crate::model::gather::{self, Contribution, Figure, HeatCapacity};
 use crate::model::property::{self, Property};
 use crate::quantity::Quantity;
-use crate::source::Citation;
 
 fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     let asked = Property::of(call.card).unwrap_or_else(|| unreachable!("{} is a property's card", call.card.id));
@@ -21,11 +21,13 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     let (Some(terms), t_k) = (call.terms(), call.quantity(1).si()) else { return String::new() };
     let Ok(method) = property::method_of(call, cx) else { return String::new() };
     let Ok(contributions) = gather::contributions(terms, t_k, &method, cx) else { return String::new() };
-    let (kilo, plain) = (|si: f64| format!("{:.3}", si / 1000.0), |si: f64| format!("{si:.3}"));
+    let plain = |si: f64| format!("{si:.3}");
     let enthalpy = |sources: &mut Sources| {
-        let formation = sum_of(&contributions, sources, |c| Some(&c.formation), kilo);
-        let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), kilo);
-        if increments.is_empty() { formation } else { format!("({formation}) + ({increments})") }
+        let formation = sum_of(&contributions, sources, |c| Some(&c.formation), check_line::kilo);
+        let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), check_line::kilo);
+        let whole =
+            |sum: String| if sum.starts_with('(') && contributions.len() == 1 { sum } else { format!("({sum})") };
+        if increments.is_empty() { formation } else { format!("({formation}) + {}", whole(increments)) }
     };
     let entropies = |sources: &mut Sources| sum_of(&contributions, sources, |c| c.entropy.as_ref(), plain);
     let result = format!("{:.3} kJ/mol", value.si() / 1000.0);
@@ -76,7 +78,7 @@ fn sum_of<'a>(
     let mut line = String::new();
     for contribution in contributions {
         let Some(figure) = pick(contribution) else { continue };
-        let (nu, shown) = (contribution.nu, shown(figure, sources, &show));
+        let (nu, shown) = (contribution.nu, check_line::figures_of(figure, sources, &show));
         line.push_str(match (line.is_empty(), nu < 0.0) {
             (true, false) => "",
             (true, true) => "-",
@@ -89,26 +91,6 @@ fn sum_of<'a>(
         line.push_str(&shown);
     }
     line
-}
-
-/// `(-110.53)[1]`, or of a figure that is a sum of inputs, as over changes of phase, `(25.408[2] + 0.900[3] + 4.086[4])`.
-fn shown(figure: &Figure, sources: &mut Sources, show: &impl Fn(f64) -> String) -> String {
-    let mut cited = |shown: String, citation: Option<&Citation>| {
-        let source = citation.map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
-        if shown.starts_with('-') { format!("({shown}){source}") } else { format!("{shown}{source}") }
-    };
-    if let FigureOrigin::Nodes(nodes) = &figure.origin {
-        let inputs =
-            nodes.iter().map(|(node, slope)| node.input().filter(|_| *slope == 1.0).map(|input| (node, input)));
-        let inputs: Option<Vec<_>> = inputs.collect();
-        if let Some(inputs) = inputs.filter(|inputs| !inputs.is_empty()) {
-            let parts = inputs.iter().map(|(node, input)| cited(show(node.si()), input.citation.as_ref()));
-            let sum = parts.collect::<Vec<_>>().join(" + ");
-            return if inputs.len() == 1 { sum } else { format!("({sum})") };
-        }
-    }
-    let written = figure.printed.as_ref().map_or_else(|| show(figure.si), ToString::to_string);
-    cited(written, figure.citation())
 }
 
 const OPTIONS: &[Arg] = &[
