@@ -69,6 +69,7 @@ pub static SUBSTANCE: Card = Card {
     alternatives: &[],
     run: |cx, call| Ok(Value::Substance(Rc::new(PureSubstance::new(cx.data().find(call.text(0))?)))),
     check_line: None,
+    caution: None,
 };
 
 pub static SUBSTANCES: Card = Card {
@@ -92,6 +93,7 @@ pub static SUBSTANCES: Card = Card {
         Ok(Value::List(found.iter().map(|substance| Value::Text(substance.id().into())).collect()))
     },
     check_line: None,
+    caution: None,
 };
 
 macro_rules! increment_card {
@@ -109,6 +111,7 @@ macro_rules! increment_card {
             alternatives: &[],
             run: increment,
             check_line: Some(check_line),
+            caution: None,
         };
     };
 }

@@ -111,15 +111,16 @@ enum Compared {
 }
 
 fn compared(cx: &Cx, substance: &Substance, t_k: f64) -> Compared {
-    let Some(own) = substance.function.as_ref().filter(|function| function.covers(t_k)) else {
-        return Compared::NothingToCompare;
+    let comparable = |substance: &Substance| {
+        substance.function.clone().filter(|function| function.covers(t_k) && function.has_gibbs_energy())
     };
-    let g_own = function::evaluate(own, t_k).g(t_k);
+    let Some(own) = comparable(substance) else { return Compared::NothingToCompare };
+    let g_own = function::evaluate(&own, t_k).g(t_k);
     let mut compared = Compared::NothingToCompare;
     let mut lowest = g_own;
     for other in cx.data().phases_of(substance) {
-        let Some(function) = other.function.as_ref().filter(|function| function.covers(t_k)) else { continue };
-        let g = function::evaluate(function, t_k).g(t_k);
+        let Some(function) = comparable(&other) else { continue };
+        let g = function::evaluate(&function, t_k).g(t_k);
         let gas = other.species.is_gas() || substance.species.is_gas();
         let resolution = if gas { RESOLUTION_GAS } else { RESOLUTION_CONDENSED };
         if g < lowest.min(g_own - resolution) {
