@@ -20,6 +20,7 @@ pub mod gather;
 pub mod linearity;
 pub mod mass;
 pub mod monte_carlo;
+pub mod path;
 pub mod property;
 pub mod property_card;
 pub mod quantities;

@@ -21,12 +21,14 @@ use std::rc::Rc;
 
 use thiserror::Error;
 
+use crate::data::catalog::Catalog;
 use crate::data::dataset::DatasetId;
 use crate::fault::{Explain, Fault};
 use crate::model::answer::{self, Answer};
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
 use crate::model::function::T_REFERENCE;
 use crate::model::gather::{self, GatherError, HeatCapacity, Method};
+use crate::model::path;
 use crate::model::property::{self, Property};
 use crate::model::terms::{Term, Terms};
 use crate::quantity::Quantity;
@@ -297,7 +299,7 @@ impl<'a> Heating<'a> {
     fn of(terms: &'a Terms, cx: &'a Cx<'a>) -> Result<Self, Fault> {
         let mut range = (0.0_f64, f64::INFINITY);
         for term in terms.terms() {
-            let own = range_of(term, cx)?;
+            let own = range_of(term, terms, cx.data())?;
             range = (range.0.max(own.0), range.1.min(own.1));
         }
         if !(range.0 <= T_REFERENCE && T_REFERENCE <= range.1) {
@@ -380,15 +382,18 @@ const ROUNDING: f64 = 1e-6;
 /// Straight pieces of a curve in a picture.
 const PIECES: u32 = 120;
 
-/// Where a term has functions, K.
-fn range_of(term: &Term, _cx: &Cx) -> Result<(f64, f64), GatherError> {
+/// Where a term has functions, K, changes of phase on the way included. Two phases that the equation tells apart stay two.
+fn range_of(term: &Term, terms: &Terms, data: &Catalog) -> Result<(f64, f64), GatherError> {
     if let Some(own) = &term.own {
         return Ok(own.range_k());
     }
     let species = || term.substance.id().to_owned();
     let function = term.substance.function.as_ref();
     let function = function.ok_or_else(|| GatherError::NoFunction { species: species(), t_k: T_REFERENCE })?;
-    Ok((function.t_min, function.t_max))
+    let entity = |term: &Term| term.substance.species.entity;
+    let told_apart = terms.terms().iter().filter(|other| entity(other) == entity(term)).count() > 1;
+    let reach_k = if told_apart { None } else { path::reach_k(&term.substance, data) };
+    Ok((function.t_min, reach_k.unwrap_or(function.t_max)))
 }
 
 /// What a tolerance is in J/mol.
