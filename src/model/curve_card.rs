@@ -60,6 +60,7 @@ macro_rules! curve_card {
             alternatives: &[],
             run: $run,
             check_line: None,
+            caution: None,
         };
     };
 }

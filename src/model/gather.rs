@@ -317,7 +317,7 @@ fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<
         let input = Input { u: Some(0.0), citation: Some(citation), ..Input::of(key) };
         return Some(Figure { si: 0.0, origin: input.into(), printed: Some("0".into()) });
     }
-    if function.dataset != *dataset {
+    if function.dataset != *dataset || !function.zero.enthalpy {
         return None;
     }
     // The report prints formation enthalpies in J/mol to three decimals; that is not what they are good for.
@@ -410,7 +410,7 @@ pub(crate) fn contribution(
         nu: term.nu,
         formation,
         increment,
-        entropy: Some(figure(&taken.entropy, ENTROPY, 0.001)),
+        entropy: function.zero.entropy.then(|| figure(&taken.entropy, ENTROPY, 0.001)),
         cp: Some(figure(&taken.cp, HEAT_CAPACITY, 0.001)),
         slopes: taken.slopes,
     })

@@ -214,6 +214,7 @@ pub static GRID: Card = Card {
         Ok(Value::Grid(Rc::new(grid)))
     },
     check_line: None,
+    caution: None,
 };
 
 pub static GRID_OF: Card = Card {
@@ -234,6 +235,7 @@ pub static GRID_OF: Card = Card {
     alternatives: &[],
     run: of_list,
     check_line: None,
+    caution: None,
 };
 
 fn of_list(_: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {

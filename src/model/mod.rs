@@ -6,6 +6,7 @@ pub mod answer;
 pub mod basis;
 pub mod budget;
 pub mod card;
+pub mod caution;
 pub mod check_line;
 pub mod claims;
 pub mod compare;

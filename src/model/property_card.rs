@@ -182,6 +182,7 @@ macro_rules! property_card {
             alternatives: SHORTCUTS,
             run,
             check_line: Some(check_line),
+            caution: None,
         };
     };
 }

@@ -86,6 +86,7 @@ pub static REACTION: Card = Card {
     alternatives: &[],
     run: |cx, call| Ok(Value::Reaction(Rc::new(Reaction::read(call.text(0), cx.data())?))),
     check_line: None,
+    caution: None,
 };
 
 pub static BALANCE: Card = Card {
@@ -114,4 +115,5 @@ pub static BALANCE: Card = Card {
         Ok(Value::Text(balanced.to_string().into()))
     },
     check_line: None,
+    caution: None,
 };

@@ -66,6 +66,7 @@ pub static SUBSTANCE: Card = Card {
     alternatives: &[],
     run: |cx, call| Ok(Value::Substance(Rc::new(PureSubstance::new(cx.data().find(call.text(0))?)))),
     check_line: None,
+    caution: None,
 };
 
 pub static SUBSTANCES: Card = Card {
@@ -89,6 +90,7 @@ pub static SUBSTANCES: Card = Card {
         Ok(Value::List(found.iter().map(|substance| Value::Text(substance.id().into())).collect()))
     },
     check_line: None,
+    caution: None,
 };
 
 macro_rules! increment_card {
@@ -106,6 +108,7 @@ macro_rules! increment_card {
             alternatives: &[],
             run: increment,
             check_line: Some(check_line),
+            caution: None,
         };
     };
 }

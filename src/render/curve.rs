@@ -1,13 +1,17 @@
-//! A curve as people see it: what it is, and its first and last rows with their uncertainties, in text and HTML.
+//! A curve as people see it: what it is, a picture, and its first and last rows with their uncertainties.
 //!
 //! The surprise: an equilibrium constant stands beside its lg K°, where its uncertainty is symmetric and a curve can be read.
 
+use std::sync::Arc;
+
 use crate::model::card::Value;
 use crate::model::curve::Curve;
+use crate::num::math;
 use crate::quantity::round;
 use crate::render::Bundle;
 use crate::render::headline::Headline;
 use crate::render::html::escaped;
+use crate::render::plot::curve::{self as plot, Axis, Picture};
 use crate::units::{self, Unit, What};
 
 /// Rows shown at either end of a curve that is too long to be shown whole.
@@ -15,10 +19,51 @@ const ENDS: usize = 4;
 /// Rows up to which a curve is shown whole.
 const WHOLE: usize = 12;
 
-/// A curve in text and HTML.
+/// Characters that the legend of a picture has room for.
+const NAME: usize = 20;
+
+/// Pieces of the temperature axis of which a picture shows the lowest and the highest value: as many as it has pixels.
+const PIECES: usize = 480;
+
+/// A curve in text, HTML and as a picture.
 pub fn bundle(curve: &Curve) -> Bundle {
     let table = Table::of(curve);
-    Bundle::text(text(&table)).with_text("text/html", html(&table))
+    let picture = picture(curve, &table);
+    let page = format!("<div class=\"hessbook-curve\">{}{picture}</div>", html(&table));
+    Bundle::text(text(&table)).with_text("text/html", page).with_text("image/svg+xml", picture)
+}
+
+/// The values against temperature; of an equilibrium constant lg K°, since K° itself would hug one axis.
+fn picture(curve: &Curve, table: &Table) -> String {
+    let (x_unit, y_unit) = (Arc::clone(curve.grid().unit()), curve.unit());
+    let is_constant = curve.kind().what == What::K;
+    let y_of = |si: f64| if is_constant { math::log10(si) } else { y_unit.from_si(si) };
+    let point = |row: usize| (x_unit.from_si(curve.grid().points_k()[row]), y_of(curve.numbers()[row]));
+    let label = if is_constant { table.heads.last() } else { table.heads.get(1) };
+    plot::svg(&Picture {
+        title: table.title(),
+        x: Axis { label: table.heads[0].clone(), limits: None },
+        y: Axis { label: label.cloned().unwrap_or_default(), limits: None },
+        curves: vec![plot::Curve { name: table.name(), points: seen(curve).into_iter().map(point).collect() }],
+        band: None,
+    })
+}
+
+/// The rows that a picture shows: all, or of each piece of the axis the lowest and the highest, and the ends.
+fn seen(curve: &Curve) -> Vec<usize> {
+    let (numbers, count) = (curve.numbers(), curve.len());
+    if count <= 4 * PIECES {
+        return (0..count).collect();
+    }
+    let mut rows = vec![0, count - 1];
+    for piece in 0..PIECES {
+        let range = piece * count / PIECES..(piece + 1) * count / PIECES;
+        let by_size = |a: &usize, b: &usize| numbers[*a].total_cmp(&numbers[*b]);
+        rows.extend(range.clone().min_by(by_size).into_iter().chain(range.max_by(by_size)));
+    }
+    rows.sort_unstable();
+    rows.dedup();
+    rows
 }
 
 /// What text and HTML are made of.
@@ -79,6 +124,15 @@ impl Table {
             heads,
             rows,
             left_out,
+        }
+    }
+
+    /// What the line of the picture is called: the reaction or substance where there is one, else the symbol.
+    fn name(&self) -> String {
+        match self.of.as_slice() {
+            [only] if only.chars().count() <= NAME => only.clone(),
+            _ if self.symbol.is_empty() => "the curve".to_owned(),
+            _ => self.symbol.clone(),
         }
     }
 
