@@ -22,6 +22,7 @@ pub mod grid;
 pub mod linearity;
 pub mod mass;
 pub mod monte_carlo;
+pub mod path;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
