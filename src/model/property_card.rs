@@ -120,8 +120,12 @@ const HEAT_CAPACITY_ONLY: &[Arg] = &[
     ABOUT,
 ];
 
-const TEMPERATURE: Arg =
-    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "temperature: degC, degF or kelvin" };
+const TEMPERATURE: Arg = Arg {
+    name: "T",
+    takes: Takes::Temperatures,
+    default: Default::Required,
+    doc: "temperature: degC, degF or kelvin; with a grid of temperatures the answer is a curve",
+};
 
 const ARGS: &[Arg] = &[
     TEMPERATURE,
