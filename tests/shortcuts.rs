@@ -118,6 +118,7 @@ impl Route {
     }
 }
 
+type Intervals = Vec<(f64, f64)>;
 type Row = (&'static str, &'static [(f64, &'static str)]);
 
 /// Species with their numbers, as written by hand.
@@ -131,7 +132,7 @@ const REACTIONS: [Row; 6] = [
 ];
 
 /// Intervals within 1 kJ/mol, and those in which the shortcut is worse than none.
-fn answered(cx: &Cx, equation: &str, shortcut: &str) -> (Vec<(f64, f64)>, Vec<(f64, f64)>) {
+fn answered(cx: &Cx, equation: &str, shortcut: &str) -> (Intervals, Intervals) {
     let reaction = card::call(cx, &REACTION, vec![Value::Text(equation.into())]).unwrap();
     let given = vec![reaction, Value::Text(shortcut.into()), Value::Text("1 kJ/mol".into())];
     match card::call(cx, &VALID_TO, given).unwrap() {
