@@ -20,6 +20,7 @@ pub mod function;
 pub mod gap;
 pub mod gather;
 pub mod grid;
+pub mod heat_capacity;
 pub mod linearity;
 pub mod mass;
 pub mod monte_carlo;
