@@ -7,7 +7,7 @@ use std::collections::BTreeMap;
 use std::rc::Rc;
 
 use crate::model::card::{Alternative, Cx, Sources, call_of};
-use crate::model::{check_line, conditions, remedy, tolerance};
+use crate::model::{caution, check_line, conditions, remedy, tolerance};
 use crate::quantity::{Quantity, round};
 use crate::record::node::LeafKey;
 use crate::record::register::{Finding, Judgement, Reported, Status, Tested, judge};
@@ -108,7 +108,7 @@ pub fn review(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing]) -> R
     }
     Review {
         about: conditions::about(value),
-        conditions: conditions::line(value),
+        conditions: conditions::line(cx, value),
         check_line,
         tolerance: at.in_unit(at.tolerance),
         precision: at.half_digit,
@@ -116,7 +116,7 @@ pub fn review(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing]) -> R
         alternatives: alternatives(cx, &at),
         sources: sources.list().to_vec(),
         silent,
-        cautions: Vec::new(),
+        cautions: caution::texts(value),
     }
 }
 
@@ -349,6 +349,7 @@ pub fn silent_inputs(value: &Quantity) -> Vec<(String, Vec<String>)> {
 }
 
 fn plural(field: &str) -> String {
+    // "transition enthalpies", "heat capacities", "typed values".
     match field.strip_suffix('y') {
         Some(stem) => format!("{stem}ies"),
         None => format!("{field}s"),

@@ -1,6 +1,7 @@
 //! A pure substance in one phase, asked for its properties per mole of it.
 //!
-//! H(T) − H(T₁) = ∫Cp dT, from the function's closed form       (zero: the substance itself at T₁)
+//! H(T) − H(T₁) = ∫Cp dT, from the function's closed form, + ΣΔtrsH of the changes of phase between
+//! (zero: the substance itself at T₁)
 //!
 //! Its enthalpy is counted from the elements at 298.15 K; an increment is counted from the substance itself. The two have
 //! different zeros and are kept apart.
@@ -15,8 +16,10 @@ use smallvec::SmallVec;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Sources, Takes, Value};
+use crate::model::check_line;
 use crate::model::function::{self, T_REFERENCE};
-use crate::model::gather::{self, Figure, GatherError};
+use crate::model::gather::{self, Figure, FigureOrigin, GatherError};
+use crate::model::path::{FROM_START, Leg, Route};
 use crate::model::property::{self, Property};
 use crate::model::terms::{Term, Terms};
 use crate::quantity::Quantity;
@@ -32,7 +35,7 @@ pub struct PureSubstance {
 impl PureSubstance {
     pub fn new(substance: Arc<Substance>) -> Self {
         let (per, text) = (substance.species.entity, substance.id().to_owned());
-        PureSubstance { terms: Terms::new(vec![Term { substance, nu: 1.0 }], per, text) }
+        PureSubstance { terms: Terms::new(vec![Term::of_tables(substance, 1.0)], per, text) }
     }
 
     pub fn record(&self) -> &Arc<Substance> {
@@ -66,6 +69,7 @@ pub static SUBSTANCE: Card = Card {
     alternatives: &[],
     run: |cx, call| Ok(Value::Substance(Rc::new(PureSubstance::new(cx.data().find(call.text(0))?)))),
     check_line: None,
+    caution: None,
 };
 
 pub static SUBSTANCES: Card = Card {
@@ -89,6 +93,7 @@ pub static SUBSTANCES: Card = Card {
         Ok(Value::List(found.iter().map(|substance| Value::Text(substance.id().into())).collect()))
     },
     check_line: None,
+    caution: None,
 };
 
 macro_rules! increment_card {
@@ -106,6 +111,7 @@ macro_rules! increment_card {
             alternatives: &[],
             run: increment,
             check_line: Some(check_line),
+            caution: None,
         };
     };
 }
@@ -125,7 +131,8 @@ increment_card!(
     "substance.enthalpy-increment",
     On::Substance,
     "H(T) - H(from) per mole of the substance, zero: the substance itself at the start",
-    "Enthalpy taken up on heating within one phase, from the function's closed-form integral of Cp.",
+    "Enthalpy taken up on heating, from the function's closed-form integral of Cp; recorded changes between condensed phases \
+     on the way are included.",
     "substance(\"CO2(g)\")"
 );
 increment_card!(
@@ -143,16 +150,34 @@ struct Heated {
     end: f64,
     start: f64,
     cp: (f64, f64),
-    input: Input,
+    difference: Figure,
 }
 
-fn heated(term: &Term, t_k: f64, from_k: f64) -> Result<Heated, Fault> {
+fn heated(term: &Term, t_k: f64, from_k: f64, cx: &Cx) -> Result<Heated, Fault> {
     let record = &term.substance;
     let species = || record.id().to_owned();
+    if let Some(own) = &term.own {
+        let (t_min, t_max) = own.range_k();
+        if let Some(outside) = [t_k, from_k].into_iter().find(|t| !(t_min <= *t && *t <= t_max)) {
+            return Err(GatherError::Range { species: species(), t_k: outside, t_min, t_max }.into());
+        }
+        let (end, start) = (own.at(cx, t_k)?, own.at(cx, from_k)?);
+        return Ok(Heated {
+            nu: term.nu,
+            difference: Figure::combined(&[(&end.increment, 1.0), (&start.increment, -1.0)]),
+            end: end.increment.si,
+            start: start.increment.si,
+            cp: (end.cp.si, start.cp.si),
+        });
+    }
     let function = record.function.as_ref().ok_or_else(|| GatherError::NoFunction { species: species(), t_k })?;
-    if let Some(outside) = [t_k, from_k].into_iter().find(|t| !function.covers(*t)) {
+    let (lower, upper) = (t_k.min(from_k), t_k.max(from_k));
+    if !(function.covers(lower) && function.covers(upper)) {
         let (t_min, t_max) = (function.t_min, function.t_max);
-        return Err(GatherError::Range { species: species(), t_k: outside, t_min, t_max }.into());
+        if lower < t_min {
+            return Err(GatherError::Range { species: species(), t_k: lower, t_min, t_max }.into());
+        }
+        return over_changes(term, &Route::to(record, upper, cx.data())?, t_k, from_k);
     }
     let (end, start) = (function::evaluate(function, t_k), function::evaluate(function, from_k));
     let input = Input {
@@ -163,10 +188,21 @@ fn heated(term: &Term, t_k: f64, from_k: f64) -> Result<Heated, Fault> {
             record: record.species.id.clone(),
             field: gather::HEAT_CAPACITY,
             t_bits: t_k.to_bits(),
-            way: "integrated from the start",
+            way: FROM_START,
         })
     };
-    Ok(Heated { nu: term.nu, end: end.h, start: start.h, cp: (end.cp, start.cp), input })
+    // What is drawn from the function is the difference; start and end of one function are not two figures.
+    let difference = Figure { si: end.h - start.h, origin: input.into(), printed: None };
+    Ok(Heated { nu: term.nu, end: end.h, start: start.h, cp: (end.cp, start.cp), difference })
+}
+
+/// The same over changes of phase on the way; cooling is heating the other way round.
+fn over_changes(term: &Term, route: &Route, t_k: f64, from_k: f64) -> Result<Heated, Fault> {
+    let legs = route.legs_from(t_k.min(from_k));
+    let difference = Figure::sum_of_nodes(legs.iter().map(Leg::node).collect::<Result<Vec<_>, Fault>>()?);
+    let way = if t_k < from_k { -1.0 } else { 1.0 };
+    let cp = |t_k: f64| way * route.phase_at(t_k).at(t_k).cp;
+    Ok(Heated { nu: way * term.nu, end: difference.si, start: 0.0, cp: (cp(t_k), cp(from_k)), difference })
 }
 
 /// The two temperatures of a call, in kelvin.
@@ -183,12 +219,10 @@ fn increment(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     let (t_k, from_k) = span(call);
     let (mut si, mut slopes, mut inputs) = (0.0, (0.0, 0.0), SmallVec::new());
     for term in terms.terms() {
-        let heated = heated(term, t_k, from_k)?;
+        let heated = heated(term, t_k, from_k, cx)?;
         si += heated.nu * (heated.end - heated.start);
         slopes = (slopes.0 + heated.nu * heated.cp.0, slopes.1 - heated.nu * heated.cp.1);
-        // What is drawn from the function is the difference; start and end of one function are not two figures.
-        let figure = Figure { si: heated.end - heated.start, input: heated.input, printed: None };
-        inputs.push((property::leaf(&figure, Property::H)?, heated.nu));
+        property::enter(&mut inputs, &heated.difference, heated.nu, Property::H)?;
     }
     let from = match &call.args[2] {
         Value::Quantity(from) => Some(from),
@@ -212,14 +246,22 @@ fn increment(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     Ok(Value::Quantity(Quantity::from_step(si, dim, kind, inputs, step, cx.place.clone())?))
 }
 
-fn check_line(_: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> String {
+fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> String {
     let Some(terms) = call.terms() else { return String::new() };
     let (t_k, from_k) = span(call);
     let mut line = String::new();
     for term in terms.terms() {
-        let Ok(heated) = heated(term, t_k, from_k) else { return String::new() };
-        let source = heated.input.citation.as_ref().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+        let Ok(heated) = heated(term, t_k, from_k, cx) else { return String::new() };
         let (end, start) = (heated.end / 1000.0, heated.start / 1000.0);
+        let figures = match &heated.difference.origin {
+            FigureOrigin::Nodes(_) if term.own.is_none() => {
+                check_line::figures_of(&heated.difference, sources, &check_line::kilo)
+            }
+            _ => {
+                let source = heated.difference.citation().map(|c| format!("[{}]", sources.number(c)));
+                format!("({end:.3} - ({start:.3})){}", source.unwrap_or_default())
+            }
+        };
         let sign = match (line.is_empty(), heated.nu < 0.0) {
             (true, false) => "",
             (true, true) => "-",
@@ -227,7 +269,7 @@ fn check_line(_: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> S
             (false, true) => " - ",
         };
         let nu = if heated.nu.abs() == 1.0 { String::new() } else { format!("{} × ", heated.nu.abs()) };
-        line.push_str(&format!("{sign}{nu}({end:.3} - ({start:.3})){source}"));
+        line.push_str(&format!("{sign}{nu}{figures}"));
     }
     format!("{line} = {:.3} kJ/mol", value.si() / 1000.0)
 }
