@@ -115,8 +115,12 @@ const HEAT_CAPACITY_ONLY: &[Arg] = &[Arg {
     doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
 }];
 
-const TEMPERATURE: Arg =
-    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "temperature: degC, degF or kelvin" };
+const TEMPERATURE: Arg = Arg {
+    name: "T",
+    takes: Takes::Temperatures,
+    default: Default::Required,
+    doc: "temperature: degC, degF or kelvin; with a grid of temperatures the answer is a curve",
+};
 
 const ARGS: &[Arg] = &[
     TEMPERATURE,

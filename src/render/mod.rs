@@ -5,6 +5,7 @@
 
 pub mod budget;
 pub mod comparison;
+pub mod curve;
 pub mod derivation;
 pub mod gap;
 pub mod headline;
