@@ -3,6 +3,7 @@
 //! [`CARDS`] is the one list of what the program can compute. Script binding, help, catalogue and checks read it.
 
 pub mod answer;
+pub mod association;
 pub mod basis;
 pub mod budget;
 pub mod card;
@@ -13,6 +14,7 @@ pub mod compare;
 pub mod conditions;
 pub mod curve;
 pub mod curve_card;
+pub mod decomposition;
 pub mod derivation;
 pub mod expanded;
 pub mod first_order;

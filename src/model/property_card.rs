@@ -153,10 +153,23 @@ const FORMATION_DATASET: Claim = Claim { id: "formation-dataset", test: claims::
 const IDEAL_GAS: Claim = Claim { id: "ideal-gas", test: claims::ideal_gas };
 const CONDENSED_VOLUME: Claim = Claim { id: "condensed-volume-neglected", test: claims::condensed_volume };
 
-const ENERGY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET];
-const GAS_LAW_CLAIMS: &[Claim] =
-    &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET, IDEAL_GAS, CONDENSED_VOLUME];
-const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE];
+const MONOMER_VAPOUR: Claim = Claim { id: "monomer-vapour", test: claims::monomer_vapour };
+const NO_DECOMPOSITION: Claim = Claim { id: "no-decomposition", test: claims::no_decomposition };
+const FIT_QUALITY: Claim = Claim { id: "fit-quality", test: claims::fit_quality };
+
+const ENERGY_CLAIMS: &[Claim] =
+    &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET, MONOMER_VAPOUR, NO_DECOMPOSITION, FIT_QUALITY];
+const GAS_LAW_CLAIMS: &[Claim] = &[
+    CONSTANT_HEAT_CAPACITY,
+    STABLE_PHASE,
+    FORMATION_DATASET,
+    IDEAL_GAS,
+    CONDENSED_VOLUME,
+    MONOMER_VAPOUR,
+    NO_DECOMPOSITION,
+    FIT_QUALITY,
+];
+const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, MONOMER_VAPOUR, NO_DECOMPOSITION, FIT_QUALITY];
 
 const SHORTCUTS: &[Alternative] = &[
     Alternative {

@@ -38,6 +38,12 @@ impl PureSubstance {
         PureSubstance { terms: Terms::new(vec![Term::of_tables(substance, 1.0)], per, text) }
     }
 
+    /// The same with other figures.
+    pub(super) fn answered_by(term: Term) -> Self {
+        let (per, text) = (term.substance.species.entity, term.substance.id().to_owned());
+        PureSubstance { terms: Terms::new(vec![term], per, text) }
+    }
+
     pub fn record(&self) -> &Arc<Substance> {
         &self.terms.terms()[0].substance
     }
