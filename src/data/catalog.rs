@@ -55,7 +55,7 @@ impl Catalog {
     }
 
     /// The tables among some files; a dataset whose file is missing is simply not there.
-    pub fn from_files(files: &[Embedded]) -> Result<Catalog, TableFault> {
+    pub fn from_files(files: &[Embedded<'_>]) -> Result<Catalog, TableFault> {
         let Tables { datasets, functions, mut formations, coefficients, transitions, critical, names } =
             Tables::read(files)?;
         let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
@@ -208,7 +208,7 @@ fn correlate(
     id: impl Fn(&Arc<str>) -> Arc<str>,
 ) -> Result<(), TableFault> {
     let Coefficients { dataset, path, records, r } = group;
-    let unusable = |why: String| TableFault::Correlation { path: path.to_owned(), why };
+    let unusable = |why: String| TableFault::Correlation { path: path.clone(), why };
     let is_of = |formation: &Formation, record: &Arc<str>| formation.dataset == dataset && formation.id == *record;
     if let Some(unknown) = records.iter().find(|record| !formations.iter().any(|one| is_of(one, record))) {
         return Err(unusable(format!("it has no record {unknown}")));

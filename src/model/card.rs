@@ -162,6 +162,11 @@ impl References {
         References { catalog: OnceCell::new(), constants }
     }
 
+    /// Substances of another catalogue than the shipped one.
+    pub fn of(catalog: Arc<Catalog>, constants: &'static ConstantSet) -> Self {
+        References { catalog: OnceCell::from(catalog), constants }
+    }
+
     pub fn catalog(&self) -> &Catalog {
         self.catalog.get_or_init(Catalog::shipped)
     }
