@@ -93,6 +93,9 @@ fn executed(args: &Run, stop: Arc<AtomicBool>) -> Result<RunStatus, Fault> {
     }
     let mut session = Session::new(stop);
     session.set_parameters(settings);
+    if let Some(folder) = args.file.parent() {
+        session.set_folder(folder.to_owned());
+    }
     let name = args.file.display().to_string();
     let mut progress = Progress { format: args.format, terminal: std::io::stderr().is_terminal() };
     let record = run(&name, &mut source, &mut session, &mut progress);

@@ -19,6 +19,7 @@ use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::{self, Coefficients, Formation};
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
+use super::names::Names;
 use super::substance::Substance;
 use super::tables::Tables;
 use super::transition::Transition;
@@ -33,19 +34,20 @@ static SHIPPED: LazyLock<Arc<Catalog>> = LazyLock::new(|| {
 /// The records of a set of tables.
 #[derive(Debug)]
 pub struct Catalog {
-    datasets: Vec<Dataset>,
-    substances: BTreeMap<Arc<str>, Arc<Substance>>,
+    pub(super) datasets: Vec<Dataset>,
+    pub(super) substances: BTreeMap<Arc<str>, Arc<Substance>>,
     /// Substance id to its transitions, by temperature.
-    transitions: BTreeMap<Arc<str>, Vec<Arc<Transition>>>,
-    lookup: Lookup,
+    pub(super) transitions: BTreeMap<Arc<str>, Vec<Arc<Transition>>>,
+    pub(super) names: Arc<Names>,
+    pub(super) lookup: Lookup,
 }
 
 /// What is being gathered on one substance.
 #[derive(Default)]
-struct Gathered {
-    function: Option<Arc<Function>>,
-    formations: Vec<Arc<Formation>>,
-    critical: Option<Arc<CriticalTemperature>>,
+pub(super) struct Gathered {
+    pub function: Option<Arc<Function>>,
+    pub formations: Vec<Arc<Formation>>,
+    pub critical: Option<Arc<CriticalTemperature>>,
 }
 
 impl Catalog {
@@ -77,8 +79,7 @@ impl Catalog {
                 entry.critical = Some(Arc::new(critical));
             }
         }
-        let listed: BTreeMap<&str, &Arc<str>> =
-            names.entities.iter().filter_map(|record| Some((&*record.entity, record.name.as_ref()?))).collect();
+        let listed = names.preferred();
         let mut substances = BTreeMap::new();
         for (id, mut found) in gathered {
             if let Some(function) = &found.function
@@ -105,7 +106,7 @@ impl Catalog {
             transitions.sort_by(|left, right| left.t_k.total_cmp(&right.t_k));
         }
         let lookup = Lookup::new(&names, substances.values().map(|substance: &Arc<Substance>| &**substance));
-        Ok(Catalog { datasets, substances, transitions: by_substance, lookup })
+        Ok(Catalog { datasets, substances, transitions: by_substance, names: Arc::new(names), lookup })
     }
 
     /// The one substance that a text such as `CO2(g)`, `water(l)` or `C(cr,graphite)` names.
@@ -199,6 +200,12 @@ impl Catalog {
     pub fn dataset(&self, id: &DatasetId) -> Option<&Dataset> {
         self.datasets.iter().find(|dataset| dataset.id == *id)
     }
+
+    /// A dataset and those that it extends, nearest first.
+    pub fn with_extended<'a>(&'a self, id: &'a DatasetId) -> impl Iterator<Item = &'a DatasetId> {
+        // A dataset extends one that was there before it, so this ends.
+        std::iter::successors(Some(id), |id| self.dataset(id)?.extends.as_ref())
+    }
 }
 
 /// Joins correlation coefficients to the formation enthalpies they are of. `id` is the name a substance goes by.
@@ -231,7 +238,11 @@ fn correlate(
 }
 
 /// Makes a substance of its records.
-fn substance(id: &Arc<str>, found: Gathered, listed: &BTreeMap<&str, &Arc<str>>) -> Result<Substance, TableFault> {
+pub(super) fn substance(
+    id: &Arc<str>,
+    found: Gathered,
+    listed: &BTreeMap<&str, &Arc<str>>,
+) -> Result<Substance, TableFault> {
     let function = found.function.as_ref();
     let formations = || found.formations.iter();
     let unreadable = |why: String| TableFault::Name { record: id.to_string(), why };

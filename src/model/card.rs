@@ -152,6 +152,7 @@ pub struct Card {
 
 /// What formulas look up: substances and constants. Substances are read at their first use, since a start of the program
 /// that asks for none should not wait for them.
+#[derive(Debug)]
 pub struct References {
     catalog: OnceCell<Arc<Catalog>>,
     pub constants: &'static ConstantSet,

@@ -5,6 +5,7 @@
 
 pub mod budget;
 pub mod comparison;
+pub mod dataset;
 pub mod derivation;
 pub mod gap;
 pub mod headline;

@@ -7,6 +7,7 @@ pub mod bind;
 pub mod compare;
 pub mod engine;
 pub mod fault;
+pub mod files;
 pub mod guards;
 pub mod host;
 pub mod literals;

@@ -8,6 +8,7 @@ pub mod closures;
 pub mod outcome;
 
 use std::collections::{BTreeMap, BTreeSet};
+use std::path::PathBuf;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
 
@@ -17,7 +18,7 @@ use crate::fault::Fault;
 use crate::render::Bundle;
 use crate::render::report::Report;
 use crate::script::literals::Literals;
-use crate::script::state::{Parameter, Shared};
+use crate::script::state::{Loaded, Parameter, Shared};
 use crate::script::token::{Ending, tokens};
 use crate::script::{engine, verbs, words};
 use closures::SharedValues;
@@ -92,6 +93,16 @@ impl Session {
         }
         let shown = self.run("expression", code, &mut Silent, cell::Keep::Nothing)?;
         Ok(shown.unwrap_or_else(|| Bundle::text("")))
+    }
+
+    /// Sets the folder in which a notebook's files are looked for; the process's own at first.
+    pub fn set_folder(&mut self, folder: PathBuf) {
+        self.shared.set_folder(folder);
+    }
+
+    /// Datasets that cells have loaded, in the order in which they lie over each other.
+    pub fn loaded(&self) -> Vec<Loaded> {
+        self.shared.state().loaded.clone()
     }
 
     /// Sets declared parameters from outside, before the first cell runs.
