@@ -111,7 +111,7 @@ impl Function {
     }
 }
 
-pub(super) const SCHEMA: &str = "hessbook-functions/1";
+pub const SCHEMA: &str = "hessbook-functions/1";
 
 #[derive(Deserialize)]
 struct Page<'a> {

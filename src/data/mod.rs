@@ -15,6 +15,7 @@ pub mod overlay;
 pub mod own;
 pub mod own_fault;
 mod own_reader;
+pub mod records;
 pub mod substance;
 mod tables;
 pub mod transition;

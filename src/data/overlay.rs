@@ -8,7 +8,7 @@
 use std::collections::BTreeMap;
 use std::sync::Arc;
 
-use super::catalog::{self, Catalog, Gathered, T_REFERENCE_K};
+use super::catalog::{self, Catalog, Contents, Gathered, T_REFERENCE_K};
 use super::dataset::{Datum, TableFault};
 use super::function::Function;
 use super::lookup::Lookup;
@@ -41,16 +41,17 @@ impl Catalog {
     /// # Errors
     /// A record names no species.
     pub fn overlaid(&self, own: &Own) -> Result<(Catalog, Vec<Precedence>), TableFault> {
+        let base = self.contents();
         let mut told = Vec::new();
-        let mut datasets = self.datasets.clone();
+        let mut datasets = base.datasets.clone();
         datasets.insert(0, own.dataset.clone());
-        let mut substances = self.substances.clone();
-        let listed = self.names.preferred();
+        let mut substances = base.substances.clone();
+        let listed = base.names.preferred();
         let formula = |id: &str| own.phases.iter().find(|phase| *phase.id == *id);
         let mut ids: Vec<&Arc<str>> = own.phases.iter().map(|phase| &phase.id).collect();
         ids.sort();
         for id in ids {
-            let known = self.substances.get(id);
+            let known = base.substances.get(id);
             let mut found = known.map_or_else(Gathered::default, |known| Gathered {
                 function: known.function.clone(),
                 formations: known.formations.clone(),
@@ -81,7 +82,7 @@ impl Catalog {
             substances.insert(id.clone(), Arc::new(made));
         }
         self.rebase(own, &mut substances);
-        let mut transitions = self.transitions.clone();
+        let mut transitions = base.transitions.clone();
         for transition in &own.transitions {
             let same = |other: &Arc<Transition>| other.from == transition.from && other.to == transition.to;
             for end in [&transition.from, &transition.to] {
@@ -104,8 +105,9 @@ impl Catalog {
                 of_end.sort_by(|left, right| left.t_k.total_cmp(&right.t_k));
             }
         }
-        let lookup = Lookup::new(&self.names, substances.values().map(|substance: &Arc<Substance>| &**substance));
-        Ok((Catalog { datasets, substances, transitions, names: self.names.clone(), lookup }, told))
+        let lookup = Lookup::new(&base.names, substances.values().map(|substance: &Arc<Substance>| &**substance));
+        let contents = Contents { datasets, substances, transitions, names: base.names.clone(), lookup };
+        Ok((self.watched_alike(contents), told))
     }
 
     fn hidden(&self, own: &Function, other: &Function) -> Precedence {
@@ -127,7 +129,7 @@ impl Catalog {
     /// Phases that continue the enthalpy scale of a phase whose function was replaced are moved along with it, so that their
     /// enthalpy counted from that phase at 298.15 K stays what their own table says.
     fn rebase(&self, own: &Own, substances: &mut BTreeMap<Arc<str>, Arc<Substance>>) {
-        for (id, substance) in &self.substances {
+        for (id, substance) in &self.contents().substances {
             let Some(function) = substance.function.as_ref().filter(|function| !function.covers(T_REFERENCE_K)) else {
                 continue;
             };

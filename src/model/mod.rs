@@ -11,14 +11,18 @@ pub mod check_line;
 pub mod claims;
 pub mod compare;
 pub mod conditions;
+pub mod curve;
+pub mod curve_card;
 pub mod derivation;
 pub mod expanded;
 pub mod function;
 pub mod gap;
 pub mod gather;
+pub mod grid;
 pub mod linearity;
 pub mod mass;
 pub mod monte_carlo;
+pub mod path;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
@@ -62,6 +66,17 @@ pub const CARDS: &[&Card] = &[
     &remedy::WIDENED,
     &shortcut::VALID_TO,
     &shortcut::COMPARE_SHORTCUTS,
+    &grid::GRID,
+    &grid::GRID_OF,
+    &curve_card::X,
+    &curve_card::Y,
+    &curve_card::AT,
+    &curve_card::TO,
+    &curve_card::VALUES,
+    &curve_card::UNCERTAINTIES,
+    &curve_card::MIN,
+    &curve_card::MAX,
+    &curve_card::CROSSINGS,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,

@@ -5,6 +5,7 @@
 
 pub mod budget;
 pub mod comparison;
+pub mod curve;
 pub mod dataset;
 pub mod derivation;
 pub mod gap;
@@ -12,6 +13,7 @@ pub mod headline;
 pub mod html;
 pub mod interval;
 pub mod latex;
+pub mod plot;
 pub mod register;
 pub mod report;
 pub mod text;
