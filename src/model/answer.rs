@@ -17,6 +17,7 @@ use crate::model::derivation::Derivation;
 use crate::model::expanded::Expanded;
 use crate::model::gap::Gap;
 use crate::model::monte_carlo::Propagation;
+use crate::model::shortcut::{SideBySide, Validity};
 use crate::quantity::Quantity;
 use crate::record::node::Step;
 use crate::units::{Base, Dimension, Kind, Unit, What, unit_for};
@@ -30,6 +31,8 @@ pub enum Answer {
     Derivation(Rc<Derivation>),
     Comparison(Rc<Comparison>),
     Gap(Rc<Gap>),
+    Validity(Rc<Validity>),
+    SideBySide(Rc<SideBySide>),
 }
 
 /// The argument that says how sure an interval is to be.
@@ -69,6 +72,8 @@ impl Answer {
             Answer::Derivation(_) => "a derivation",
             Answer::Comparison(_) => "a comparison",
             Answer::Gap(_) => "an explanation of a gap",
+            Answer::Validity(_) => "the range of a shortcut",
+            Answer::SideBySide(_) => "shortcuts side by side",
         }
     }
 
@@ -80,6 +85,8 @@ impl Answer {
             Answer::Derivation(derivation) => derivation.parts(),
             Answer::Comparison(comparison) => comparison.parts(),
             Answer::Gap(gap) => gap.parts(),
+            Answer::Validity(validity) => validity.parts(),
+            Answer::SideBySide(ways) => ways.parts(),
         }
     }
 
