@@ -11,6 +11,7 @@ pub mod check_line;
 pub mod claims;
 pub mod compare;
 pub mod conditions;
+pub mod cycle;
 pub mod derivation;
 pub mod expanded;
 pub mod function;
@@ -50,6 +51,7 @@ pub const CARDS: &[&Card] = &[
     &property_card::ENTROPY,
     &property_card::HEAT_CAPACITY,
     &property_card::EQUILIBRIUM_CONSTANT,
+    &cycle::CYCLE,
     &property_card::SUBSTANCE_ENTHALPY,
     &property_card::SUBSTANCE_INTERNAL_ENERGY,
     &property_card::SUBSTANCE_GIBBS_ENERGY,

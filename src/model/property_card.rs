@@ -118,7 +118,7 @@ const HEAT_CAPACITY_ONLY: &[Arg] = &[Arg {
 const TEMPERATURE: Arg =
     Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "temperature: degC, degF or kelvin" };
 
-const ARGS: &[Arg] = &[
+pub(super) const ARGS: &[Arg] = &[
     TEMPERATURE,
     Arg {
         name: "options",

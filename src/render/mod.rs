@@ -5,6 +5,7 @@
 
 pub mod budget;
 pub mod comparison;
+pub mod cycle;
 pub mod derivation;
 pub mod gap;
 pub mod headline;
@@ -67,6 +68,7 @@ pub fn answer(answer: &Answer) -> Bundle {
         Answer::Propagation(propagation) => interval::propagation(propagation),
         Answer::Derivation(derivation) => derivation::bundle(derivation),
         Answer::Comparison(comparison) => comparison::bundle(comparison),
+        Answer::Cycle(cycle) => cycle::bundle(cycle),
         Answer::Gap(gap) => gap::bundle(gap),
     }
 }
