@@ -17,6 +17,8 @@ use crate::data::catalog::Catalog;
 use crate::fault::{Explain, Fault, Place};
 use crate::model::answer::Answer;
 use crate::model::caution::Caution;
+use crate::model::curve::Curve;
+use crate::model::grid::Grid;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::model::terms::Terms;
@@ -38,6 +40,9 @@ pub enum Value {
     Options(Rc<BTreeMap<String, Value>>),
     Reaction(Rc<Reaction>),
     Substance(Rc<PureSubstance>),
+    /// Temperatures at which a formula is asked in one call.
+    Grid(Rc<Grid>),
+    Curve(Rc<Curve>),
     /// What was asked of an uncertainty.
     Answer(Answer),
     /// Something no formula takes, by its name in words.
@@ -57,6 +62,8 @@ impl Value {
             Value::Options(_) => "a map of options",
             Value::Reaction(_) => "a reaction",
             Value::Substance(_) => "a substance",
+            Value::Grid(_) => "a grid of temperatures",
+            Value::Curve(_) => "a curve",
             Value::Answer(answer) => answer.sort(),
             Value::Other(name) => name,
             Value::Nothing => "nothing",
@@ -71,6 +78,7 @@ pub enum On {
     Quantity,
     Reaction,
     Substance,
+    Curve,
 }
 
 /// What an argument takes.
@@ -84,6 +92,8 @@ pub enum Takes {
     AnyQuantity,
     /// A temperature point: degC, degF or kelvin.
     Temperature,
+    /// The same, or a grid of them: then the formula is asked at each, and gives a curve.
+    Temperatures,
     Number,
     Text,
     Word(&'static [&'static str]),
@@ -152,6 +162,7 @@ pub struct Card {
 
 /// What formulas look up: substances and constants. Substances are read at their first use, since a start of the program
 /// that asks for none should not wait for them.
+#[derive(Clone)]
 pub struct References {
     catalog: OnceCell<Arc<Catalog>>,
     pub constants: &'static ConstantSet,
@@ -160,6 +171,11 @@ pub struct References {
 impl References {
     pub fn new(constants: &'static ConstantSet) -> Self {
         References { catalog: OnceCell::new(), constants }
+    }
+
+    /// With tables of one's own in place of the shipped ones.
+    pub fn with_catalog(catalog: Arc<Catalog>, constants: &'static ConstantSet) -> Self {
+        References { catalog: OnceCell::from(catalog), constants }
     }
 
     pub fn catalog(&self) -> &Catalog {
@@ -290,6 +306,8 @@ impl Step for Call {
                 Value::Number(number) => words.push(number.to_string()),
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
                 Value::Substance(substance) => words.push(substance.text().to_owned()),
+                Value::Grid(grid) => words.push(grid.words()),
+                Value::Curve(curve) => words.push(curve.words()),
                 Value::Options(options) => {
                     words.extend(options.iter().filter_map(|(name, value)| match value {
                         Value::Text(word) => Some(format!("{name}: {word}")),
@@ -408,6 +426,7 @@ impl Card {
             On::Quantity => "value.",
             On::Reaction => "reaction.",
             On::Substance => "substance.",
+            On::Curve => "curve.",
         };
         format!("{receiver}{}({})", self.name, args.join(", "))
     }
@@ -438,7 +457,13 @@ pub fn call(cx: &Cx, card: &'static Card, given: Vec<Value>) -> Result<Value, Fa
         };
         args.push(checked(cx, card, arg, value)?);
     }
-    (card.run)(cx, &Rc::new(Call { card, args }))
+    let at_a_grid = card
+        .args
+        .iter()
+        .zip(&args[receivers..])
+        .any(|pair| matches!(pair, (Arg { takes: Takes::Temperatures, .. }, Value::Grid(_))));
+    let call = Rc::new(Call { card, args });
+    if at_a_grid { Ok(Value::Curve(Rc::new(Curve::of_call(cx, call)?))) } else { (card.run)(cx, &call) }
 }
 
 fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Result<Value, Fault> {
@@ -459,7 +484,8 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
             Value::Quantity(quantity)
         }
         (Takes::AnyQuantity, value) => Value::Quantity(as_quantity(cx, value, |v| refused("a quantity", v))?),
-        (Takes::Temperature, value) => {
+        (Takes::Temperatures, Value::Grid(grid)) => Value::Grid(grid),
+        (Takes::Temperature | Takes::Temperatures, value) => {
             let wanted = "a temperature, as in `q(\"450 degC\")`";
             let quantity = as_quantity(cx, value, |v| refused(wanted, v))?;
             Value::Quantity(as_point(card, arg, quantity)?)
@@ -526,7 +552,7 @@ fn as_quantity(cx: &Cx, value: Value, refused: impl Fn(&Value) -> Fault) -> Resu
     }
 }
 
-fn as_point(card: &'static Card, arg: &'static Arg, value: Quantity) -> Result<Quantity, Fault> {
+pub(super) fn as_point(card: &'static Card, arg: &'static Arg, value: Quantity) -> Result<Quantity, Fault> {
     if !value.kind().what.is_temperature() {
         let given = match value.dim().is_none() {
             true => "a pure number".to_owned(),

@@ -167,7 +167,8 @@ fn cycle(cx: &Cx, call: &Rc<Call>) -> Result<Cycle, Fault> {
             legs.push(made(cx, call, leg, contribution.nu, &mut sources)?);
         }
     }
-    legs.push(reaction_leg(cx, call, &contributions, &mut sources)?);
+    let equation = at_reference(call, &ups, cx.data());
+    legs.push(reaction_leg(cx, call, equation, &contributions, &mut sources)?);
     for (contribution, up) in sides(true) {
         for leg in up {
             legs.push(made(cx, call, leg, contribution.nu, &mut sources)?);
@@ -204,6 +205,7 @@ fn made(cx: &Cx, call: &Rc<Call>, up: &Up, nu: f64, sources: &mut Sources) -> Re
 fn reaction_leg(
     cx: &Cx,
     call: &Rc<Call>,
+    what: String,
     contributions: &[Contribution],
     sources: &mut Sources,
 ) -> Result<CycleLeg, Fault> {
@@ -214,7 +216,6 @@ fn reaction_leg(
     }
     let figures: Vec<&Figure> = contributions.iter().map(|contribution| &contribution.formation).collect();
     let cited = numbers(&figures, sources);
-    let what = call.terms().map_or_else(String::new, |terms| terms.text().to_owned());
     let dh = enthalpy(cx, call, si, inputs)?;
     Ok(CycleLeg {
         happens: Happens::Reaction,
@@ -225,6 +226,22 @@ fn reaction_leg(
         dh,
         sources: cited,
     })
+}
+
+/// The equation in the phases of 298.15 K, which are others where a written phase does not exist there.
+fn at_reference(call: &Call, ups: &[Vec<Up>], data: &Catalog) -> String {
+    let Some(Value::Reaction(written)) = call.args.first() else { return String::new() };
+    let mut equation = Rc::clone(written);
+    for (term, up) in written.terms().iter().zip(ups) {
+        let Some(first) = up.first().filter(|first| first.from != term.substance.id()) else { continue };
+        let there = data.find(&first.from).map_err(Fault::from);
+        match there.and_then(|there| equation.with(term.substance.id(), &there, data)) {
+            Ok(other) => equation = Rc::new(other),
+            // Both sides are one phase there, and nothing happens.
+            Err(_) => return format!("none: only {} at {T_REFERENCE} K", first.from),
+        }
+    }
+    equation.text().to_owned()
 }
 
 /// The numbers of the sources of some figures, each once.

@@ -11,12 +11,15 @@ pub mod check_line;
 pub mod claims;
 pub mod compare;
 pub mod conditions;
+pub mod curve;
+pub mod curve_card;
 pub mod cycle;
 pub mod derivation;
 pub mod expanded;
 pub mod function;
 pub mod gap;
 pub mod gather;
+pub mod grid;
 pub mod linearity;
 pub mod mass;
 pub mod monte_carlo;
@@ -32,6 +35,7 @@ pub mod review;
 pub mod shortcut;
 pub mod substance;
 pub mod symbols;
+pub mod tabulated;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
@@ -64,6 +68,17 @@ pub const CARDS: &[&Card] = &[
     &remedy::WIDENED,
     &shortcut::VALID_TO,
     &shortcut::COMPARE_SHORTCUTS,
+    &grid::GRID,
+    &grid::GRID_OF,
+    &curve_card::X,
+    &curve_card::Y,
+    &curve_card::AT,
+    &curve_card::TO,
+    &curve_card::VALUES,
+    &curve_card::UNCERTAINTIES,
+    &curve_card::MIN,
+    &curve_card::MAX,
+    &curve_card::CROSSINGS,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,

@@ -342,7 +342,7 @@ pub fn crossings(terms: &Terms, t_k: f64, data: &Catalog) -> Vec<(usize, Route)>
 
 /// What a figure is per mole.
 #[derive(Clone, Copy, PartialEq)]
-enum Sort {
+pub(super) enum Sort {
     Energy,
     PerKelvin,
 }
@@ -394,7 +394,11 @@ fn changed(transition: &Transition, sort: Sort) -> Result<Rc<Node>, Fault> {
 }
 
 fn leaf(si: f64, key: LeafKey, citation: &Citation, sort: Sort) -> Result<Rc<Node>, Fault> {
-    let input = Input { digit: Some(sort.digit()), citation: Some(citation.clone()), ..Input::of(key) };
+    input_node(si, Input { digit: Some(sort.digit()), citation: Some(citation.clone()), ..Input::of(key) }, sort)
+}
+
+/// A figure per mole of its species as an input.
+pub(super) fn input_node(si: f64, input: Input, sort: Sort) -> Result<Rc<Node>, Fault> {
     let energy = Dimension::whole([2, 1, -2, 0, 0, 0]);
     let dim = if sort == Sort::Energy { energy } else { energy.over(&Dimension::base(Base::Kelvin)) };
     let dim = dim.over(&Dimension::amount(Entity::OPEN));

@@ -117,7 +117,12 @@ macro_rules! increment_card {
 }
 
 const INCREMENT_ARGS: &[Arg] = &[
-    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "end temperature" },
+    Arg {
+        name: "T",
+        takes: Takes::Temperatures,
+        default: Default::Required,
+        doc: "end temperature; with a grid of them the answer is a curve",
+    },
     Arg {
         name: "from",
         takes: Takes::Temperature,

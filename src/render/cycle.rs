@@ -141,6 +141,6 @@ fn picture(cycle: &Cycle) -> Ladder {
         title: format!("enthalpy ladder: {}", title(cycle)),
         axis: "H / (kJ/mol), reactants at T = 0".to_owned(),
         steps: cycle.legs.iter().map(step).collect(),
-        total: format!("in all {} kJ/mol", kilo(cycle.sum.si())),
+        total: format!("in all {} kJ/mol", kilo(cycle.sum.si())).replace('-', "−"),
     }
 }

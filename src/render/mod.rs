@@ -5,6 +5,7 @@
 
 pub mod budget;
 pub mod comparison;
+pub mod curve;
 pub mod cycle;
 pub mod derivation;
 pub mod gap;
