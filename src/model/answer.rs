@@ -18,6 +18,7 @@ use crate::model::derivation::Derivation;
 use crate::model::expanded::Expanded;
 use crate::model::gap::Gap;
 use crate::model::monte_carlo::Propagation;
+use crate::model::shortcut::{SideBySide, Validity};
 use crate::quantity::Quantity;
 use crate::record::node::Step;
 use crate::units::{Base, Dimension, Kind, Unit, What, unit_for};
@@ -32,6 +33,8 @@ pub enum Answer {
     Comparison(Rc<Comparison>),
     Cycle(Rc<Cycle>),
     Gap(Rc<Gap>),
+    Validity(Rc<Validity>),
+    SideBySide(Rc<SideBySide>),
 }
 
 /// The argument that says how sure an interval is to be.
@@ -72,6 +75,8 @@ impl Answer {
             Answer::Comparison(_) => "a comparison",
             Answer::Cycle(_) => "a cycle",
             Answer::Gap(_) => "an explanation of a gap",
+            Answer::Validity(_) => "the range of a shortcut",
+            Answer::SideBySide(_) => "shortcuts side by side",
         }
     }
 
@@ -84,6 +89,8 @@ impl Answer {
             Answer::Comparison(comparison) => comparison.parts(),
             Answer::Cycle(cycle) => cycle.parts(),
             Answer::Gap(gap) => gap.parts(),
+            Answer::Validity(validity) => validity.parts(),
+            Answer::SideBySide(ways) => ways.parts(),
         }
     }
 

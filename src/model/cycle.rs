@@ -281,11 +281,12 @@ fn upward(
     let Some(increment) = &contribution.increment else { return Ok(Vec::new()) };
     let in_one = || vec![Up::heating(id, T_REFERENCE, t_k, increment.clone())];
     let Some(written) = Phase::of(&term.substance).filter(|_| term.own.is_none()) else { return Ok(in_one()) };
-    if !written.function.covers(T_REFERENCE) {
+    if !written.function.covers(T_REFERENCE) && !matches!(method.heat_capacity, HeatCapacity::FirstOrder { .. }) {
         return Ok(through_reference(&written, t_k, data)?.unwrap_or_else(in_one));
     }
     let route = Route::to(&term.substance, t_k, data)?;
-    if !route.crosses() {
+    // An expansion is no path through temperatures, so it has no legs to be told apart.
+    if !route.crosses() || matches!(method.heat_capacity, HeatCapacity::FirstOrder { .. }) {
         return Ok(in_one());
     }
     let held = (method.heat_capacity != HeatCapacity::Full).then_some(increment);

@@ -17,7 +17,9 @@ use crate::data::function::Function;
 use crate::data::substance::Substance;
 use crate::fault::{Explain, Fault};
 use crate::model::card::Cx;
+use crate::model::first_order;
 use crate::model::function::{self, Functions, T_REFERENCE};
+pub use crate::model::heat_capacity::HeatCapacity;
 use crate::model::path::Route;
 use crate::model::tabulated;
 use crate::model::terms::{Term, Terms};
@@ -26,49 +28,6 @@ use crate::num::math;
 use crate::record::evaluation::Evaluation;
 use crate::record::node::{Input, LeafKey, Node};
 use crate::source::Citation;
-
-/// How heat capacities are taken between 298.15 K and T.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum HeatCapacity {
-    /// The integral of the function.
-    Full,
-    /// Its value at 298.15 K throughout.
-    Constant,
-    /// Its value half-way between 298.15 K and T throughout.
-    Midpoint,
-    /// The mean of its values at both ends throughout.
-    Mean,
-    /// None: the value at 298.15 K stands for the value at T.
-    Neglected,
-    /// The integral of the function of the phase as written, its value held beyond the end of its record: changes of phase on
-    /// the way are left out.
-    Missed,
-}
-
-impl HeatCapacity {
-    pub const WORDS: &'static [&'static str] = &["full", "constant", "midpoint", "mean"];
-
-    /// How Cp was taken, for the register.
-    pub fn words(self) -> &'static str {
-        match self {
-            HeatCapacity::Full => "integrated",
-            HeatCapacity::Constant => "held at its value at 298.15 K",
-            HeatCapacity::Midpoint => "held at its value half-way",
-            HeatCapacity::Mean => "held at the mean of both ends",
-            HeatCapacity::Neglected => "neglected",
-            HeatCapacity::Missed => "that of the phase as written",
-        }
-    }
-
-    pub fn from_word(word: &str) -> HeatCapacity {
-        match word {
-            "constant" => HeatCapacity::Constant,
-            "midpoint" => HeatCapacity::Midpoint,
-            "mean" => HeatCapacity::Mean,
-            _ => HeatCapacity::Full,
-        }
-    }
-}
 
 /// Which formation enthalpies are used.
 #[derive(Clone, Debug, PartialEq)]
@@ -388,6 +347,9 @@ pub(crate) fn contribution(
     mode: HeatCapacity,
     cx: &Cx,
 ) -> Result<Contribution, Fault> {
+    if let HeatCapacity::FirstOrder { about_k } = mode {
+        return first_order::contribution(term, dataset, t_k, about_k, cx);
+    }
     let (substance, data) = (&term.substance, cx.data());
     let formation =
         term_formation(term, dataset, data).unwrap_or_else(|| unreachable!("the dataset was found to have it"));
@@ -469,7 +431,9 @@ fn of_own(
     let at_0 = own.at(cx, T_REFERENCE)?;
     let (span, ln_ratio) = (t_k - T_REFERENCE, math::ln(t_k / T_REFERENCE));
     let (cp, cp_slope) = match mode {
-        HeatCapacity::Full | HeatCapacity::Missed => unreachable!("it was answered above"),
+        HeatCapacity::Full | HeatCapacity::Missed | HeatCapacity::FirstOrder { .. } => {
+            unreachable!("it was answered above")
+        }
         HeatCapacity::Constant => (at_0.cp.clone(), 0.0),
         HeatCapacity::Midpoint => {
             let middle = own.at(cx, 0.5 * (t_k + T_REFERENCE))?;
@@ -557,6 +521,7 @@ fn between(function: &Function, h_298: f64, t_k: f64, at_t: Functions, mode: Hea
     match mode {
         // Within one record there is no change of phase to miss.
         HeatCapacity::Full | HeatCapacity::Missed => integrated(at_0.h),
+        HeatCapacity::FirstOrder { .. } => unreachable!("it is a sum of two full integrals"),
         HeatCapacity::Constant => {
             let cp = Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" };
             flat(at_0, t_k, cp, 0.0, AT_REFERENCE)

@@ -219,6 +219,7 @@ impl Route {
         let (taken, cp_of) = match mode {
             HeatCapacity::Full => return self.integrated(nu, formation),
             HeatCapacity::Missed => return self.missed(nu, formation),
+            HeatCapacity::FirstOrder { .. } => unreachable!("it is a sum of two full integrals"),
             HeatCapacity::Neglected => (gather::neglected(at_0, t_k), first),
             HeatCapacity::Constant => (flat(at_0, t_k, cp_at(first, T_REFERENCE), 0.0, gather::AT_REFERENCE), first),
             HeatCapacity::Midpoint => {
@@ -296,6 +297,17 @@ fn assembled(
     let increment = Some(Figure::sum_of_nodes(enthalpies));
     let entropy = Some(Figure::sum_of_nodes(entropies));
     Contribution { nu, formation, increment, entropy, cp: Some(cp), slopes }
+}
+
+/// The highest temperature that routes from a phase lead to.
+pub(super) fn reach_k(written: &Arc<Substance>, data: &Catalog) -> Option<f64> {
+    let mut last = Phase::of(written)?;
+    if last.function.covers(T_REFERENCE) {
+        while let Some((_, next)) = onward(&last, data) {
+            last = next;
+        }
+    }
+    Some(last.function.t_max)
 }
 
 /// The transition recorded where a phase ends on heating, and the condensed phase it leads to.

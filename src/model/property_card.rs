@@ -8,6 +8,7 @@ use crate::model::check_line;
 use crate::model::claims;
 use crate::model::gather::{self, Contribution, Figure, HeatCapacity};
 use crate::model::property::{self, Property};
+use crate::model::shortcut::ABOUT;
 use crate::quantity::Quantity;
 
 fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
@@ -100,6 +101,7 @@ const OPTIONS: &[Arg] = &[
         default: Default::Absent,
         doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
     },
+    ABOUT,
     Arg {
         name: "formation",
         takes: Takes::Text,
@@ -108,12 +110,15 @@ const OPTIONS: &[Arg] = &[
     },
 ];
 
-const HEAT_CAPACITY_ONLY: &[Arg] = &[Arg {
-    name: "heat_capacity",
-    takes: Takes::Word(HeatCapacity::WORDS),
-    default: Default::Absent,
-    doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
-}];
+const HEAT_CAPACITY_ONLY: &[Arg] = &[
+    Arg {
+        name: "heat_capacity",
+        takes: Takes::Word(HeatCapacity::WORDS),
+        default: Default::Absent,
+        doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
+    },
+    ABOUT,
+];
 
 const TEMPERATURE: Arg = Arg {
     name: "T",
@@ -163,11 +168,32 @@ const SHORTCUTS: &[Alternative] = &[
         words: "with ΔCp held at its value at 298.15 K",
         value: claims::with_constant_heat_capacity,
     },
+    Alternative {
+        id: "midpoint",
+        words: "with ΔCp held at its value half-way",
+        value: claims::with_midpoint_heat_capacity,
+    },
+    Alternative {
+        id: "mean", words: "with ΔCp held at the mean of both ends", value: claims::with_mean_heat_capacity
+    },
     Alternative { id: "no-correction", words: "with the value at 298.15 K", value: claims::without_correction },
     Alternative {
         id: "missed-phase-change",
         words: "with the changes of phase left out, Cp of the phase as written held on",
         value: claims::with_missed_phase_change,
+    },
+    Alternative {
+        id: "internal-energy-for-enthalpy",
+        words: "with ΔrU in place of ΔrH",
+        value: claims::with_internal_energy,
+    },
+    Alternative {
+        id: "enthalpy-for-internal-energy", words: "with ΔrH in place of ΔrU", value: claims::with_enthalpy
+    },
+    Alternative {
+        id: "standard-pressure",
+        words: "with gases counted from 1 atm, as in tables before 1982",
+        value: claims::with_atmosphere,
     },
 ];
 

@@ -185,8 +185,7 @@ mod tests {
         look: impl FnOnce(&Cx, &Quantity) -> T,
     ) -> Result<T, Fault> {
         let constants = constants::current();
-        let references =
-            data.map_or_else(|| References::new(constants), |data| References::with_catalog(data, constants));
+        let references = data.map_or_else(|| References::new(constants), |data| References::of(data, constants));
         let ordinal = Cell::new(0);
         let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
         let reaction = card::call(&cx, &REACTION, vec![Value::Text(equation.into())])?;

@@ -16,6 +16,7 @@ pub mod latex;
 pub mod plot;
 pub mod register;
 pub mod report;
+pub mod shortcut;
 pub mod text;
 
 use std::collections::BTreeMap;
@@ -71,6 +72,8 @@ pub fn answer(answer: &Answer) -> Bundle {
         Answer::Comparison(comparison) => comparison::bundle(comparison),
         Answer::Cycle(cycle) => cycle::bundle(cycle),
         Answer::Gap(gap) => gap::bundle(gap),
+        Answer::Validity(validity) => shortcut::validity(validity),
+        Answer::SideBySide(ways) => shortcut::side_by_side(ways),
     }
 }
 

@@ -17,7 +17,7 @@ pub fn constant_heat_capacity(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Fin
     if asked.method.heat_capacity == HeatCapacity::Full || property::is_reference(asked.t_k) {
         return Vec::new();
     }
-    let tested = match asked_anew(cx, call.with_option("heat_capacity", "full")) {
+    let tested = match asked_anew(cx, call.with_option("heat_capacity", "full").without_option("about")) {
         Ok(value) => {
             Tested::Better { value, how: format!("the integral over T; Cp was {}", asked.method.heat_capacity.words()) }
         }
