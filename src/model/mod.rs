@@ -13,6 +13,7 @@ pub mod compare;
 pub mod conditions;
 pub mod curve;
 pub mod curve_card;
+pub mod cycle;
 pub mod derivation;
 pub mod expanded;
 pub mod first_order;
@@ -37,6 +38,7 @@ pub mod shortcut;
 mod stated;
 pub mod substance;
 pub mod symbols;
+pub mod tabulated;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
@@ -56,6 +58,7 @@ pub const CARDS: &[&Card] = &[
     &property_card::ENTROPY,
     &property_card::HEAT_CAPACITY,
     &property_card::EQUILIBRIUM_CONSTANT,
+    &cycle::CYCLE,
     &property_card::SUBSTANCE_ENTHALPY,
     &property_card::SUBSTANCE_INTERNAL_ENERGY,
     &property_card::SUBSTANCE_GIBBS_ENERGY,
