@@ -21,6 +21,8 @@ use crate::model::first_order;
 use crate::model::function::{self, Functions, T_REFERENCE};
 pub use crate::model::heat_capacity::HeatCapacity;
 use crate::model::path::Route;
+use crate::model::stated;
+use crate::model::tabulated;
 use crate::model::terms::{Term, Terms};
 use crate::model::thermo::{AtT, Thermo};
 use crate::num::math;
@@ -103,8 +105,10 @@ pub enum GatherError {
         "{phase} ends at {t_end} K on record, and the change to {gas} is not inserted on the way to {t_k} K: where it happens depends on the pressure"
     )]
     GasNotInserted { phase: String, gas: String, t_k: f64, t_end: f64 },
-    #[error("no heat capacity of {species} is at hand, so nothing can be said of it at {t_k} K")]
+    #[error("no heat capacity of {species} is at hand, so nothing can be said at {t_k} K")]
     NoFunction { species: String, t_k: f64 },
+    #[error("the heat capacity of {species} is on record at 298.15 K only, so it cannot be integrated to {t_k} K")]
+    ConstantOnly { species: String, t_k: f64 },
     #[error("no one dataset has the formation enthalpies of all species: {missing}")]
     NotCovered { missing: String },
     #[error("the dataset {dataset} has no formation enthalpy of {species}")]
@@ -121,6 +125,7 @@ impl Explain for GatherError {
             GatherError::Range { .. } => "temperature-out-of-range",
             GatherError::GasNotInserted { .. } => "gas-not-inserted",
             GatherError::NoFunction { .. } => "heat-capacity-missing",
+            GatherError::ConstantOnly { .. } => "heat-capacity-at-298-only",
             GatherError::NotCovered { .. } => "formation-not-covered",
             GatherError::NotInDataset { .. } => "formation-missing",
             GatherError::UnknownDataset { .. } => "dataset-unknown",
@@ -137,6 +142,10 @@ impl Explain for GatherError {
                 format!("write {gas} where the gas is meant, or choose a temperature up to {t_end} K")
             }
             GatherError::NoFunction { .. } => "ask for 298.15 K, where the tables give it".to_owned(),
+            GatherError::ConstantOnly { .. } => {
+                "add `#{ heat_capacity: \"constant\" }` to hold it there for all species; the register then says what that rests on"
+                    .to_owned()
+            }
             GatherError::NotCovered { .. } => {
                 "mixing datasets is done on demand only: add `#{ formation: \"mixed\" }`, and the register prices it"
                     .to_owned()
@@ -193,9 +202,23 @@ fn dataset_named(word: &str, data: &Catalog) -> Result<DatasetId, GatherError> {
 }
 
 /// The formation datasets that have every species of the reaction, by precedence.
+///
+/// One that was read beside the notebook is among them only where it has a record of its own of one of the species: a file
+/// that is loaded must not change results that use nothing of it.
 pub fn covering(reaction: &Terms, data: &Catalog) -> Vec<DatasetId> {
-    let has_all = |id: &DatasetId| reaction.terms().iter().all(|term| term_formation(term, id, data).is_some());
-    formation_datasets(data).map(|dataset| dataset.id.clone()).filter(has_all).collect()
+    let terms = || reaction.terms().iter();
+    let serves = |dataset: &&Dataset| {
+        !dataset.own || terms().any(|term| term.own.is_none() && has_own_formation(&term.substance, dataset, data))
+    };
+    let has_all = |dataset: &&Dataset| terms().all(|term| term_formation(term, &dataset.id, data).is_some());
+    formation_datasets(data).filter(serves).filter(has_all).map(|dataset| dataset.id.clone()).collect()
+}
+
+/// Whether the formation enthalpy of a substance would come from a record of this dataset, not of one that it extends.
+fn has_own_formation(substance: &Arc<Substance>, dataset: &Dataset, data: &Catalog) -> bool {
+    let joined = substance.function.as_ref().is_some_and(|function| !function.covers(T_REFERENCE));
+    let phase = if joined { data.reference_phase(substance) } else { Some(Arc::clone(substance)) };
+    phase.is_some_and(|phase| phase.formation(&dataset.id).is_some())
 }
 
 /// Which dataset each term's formation enthalpy is taken from.
@@ -261,10 +284,9 @@ pub(crate) fn term_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -
 
 /// The formation enthalpy of a substance in one dataset: of the phase whose enthalpy scale its function continues.
 pub(crate) fn formation_of(substance: &Arc<Substance>, dataset: &DatasetId, data: &Catalog) -> Option<Figure> {
-    if substance.function.as_ref().is_some_and(|function| !function.covers(T_REFERENCE)) {
-        return formation_at_reference(data.reference_phase(substance)?.as_ref(), dataset);
-    }
-    formation_at_reference(substance, dataset)
+    let joined = substance.function.as_ref().is_some_and(|function| !function.covers(T_REFERENCE));
+    let phase = if joined { data.reference_phase(substance)? } else { Arc::clone(substance) };
+    data.with_extended(dataset).find_map(|dataset| formation_at_reference(&phase, dataset))
 }
 
 fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<Figure> {
@@ -276,8 +298,9 @@ fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<
         way: "",
     };
     if let Some(record) = substance.formation(dataset) {
-        let digit = if record.dhf.is_convention() { None } else { Some(record.dhf.last_place()) };
-        let evaluation = Evaluation { correlation: record.correlation.clone(), ..Evaluation::UNSTATED };
+        let digit = if record.dhf.is_convention() { None } else { Some(record.dhf.last_place) };
+        let (shape, dof) = (record.dhf.shape, record.dhf.dof);
+        let evaluation = Evaluation { shape, dof, correlation: record.correlation.clone() };
         let citation = Some(record.citation.clone());
         let input = Input { u: record.dhf.u, evaluated: evaluation.kept(), digit, citation, ..Input::of(key) };
         // A figure that its table prints in J/mol would stand beside others in kJ/mol.
@@ -310,6 +333,7 @@ pub const ENTROPY: &str = "entropy";
 pub fn contributions(reaction: &Terms, t_k: f64, method: &Method, cx: &Cx) -> Result<Vec<Contribution>, Fault> {
     let datasets = datasets_for(reaction, &method.formation, cx.data())?;
     let mut all = Vec::with_capacity(reaction.terms().len());
+    tabulated::refuse(reaction, t_k, method.heat_capacity)?;
     for (at, (term, dataset)) in reaction.terms().iter().zip(&datasets).enumerate() {
         refuse_two_in_one(at, reaction, t_k, cx.data())?;
         all.push(contribution(term, dataset, t_k, method.heat_capacity, cx)?);
@@ -343,24 +367,13 @@ pub(crate) fn contribution(
         return first_order::contribution(term, dataset, t_k, about_k, cx);
     }
     let (substance, data) = (&term.substance, cx.data());
-    let species = || substance.species.id.to_string();
     let formation =
         term_formation(term, dataset, data).unwrap_or_else(|| unreachable!("the dataset was found to have it"));
     if let Some(own) = &term.own {
         return of_own(own.as_ref(), term, formation, t_k, mode, cx);
     }
     let Some(function) = &substance.function else {
-        if t_k != T_REFERENCE {
-            return Err(GatherError::NoFunction { species: species(), t_k }.into());
-        }
-        return Ok(Contribution {
-            nu: term.nu,
-            formation,
-            increment: None,
-            entropy: tabulated_entropy(substance),
-            cp: None,
-            slopes: Slopes::default(),
-        });
+        return tabulated::contribution(term, formation, t_k, mode);
     };
     if !function.covers(t_k) {
         return Route::to(substance, t_k, data)?.contribution(term.nu, formation, mode);
@@ -393,14 +406,15 @@ pub(crate) fn contribution(
     // Table B and Appendix D of the source are good to 1 J/mol and 0.001 J/(mol K); fewer digits are defensible, none are stated.
     let increment =
         (t_k != T_REFERENCE || !function.covers(T_REFERENCE)).then(|| figure(&taken.increment, HEAT_CAPACITY, 1.0));
-    Ok(Contribution {
+    let plain = Contribution {
         nu: term.nu,
         formation,
         increment,
         entropy: function.zero.entropy.then(|| figure(&taken.entropy, ENTROPY, 0.001)),
         cp: Some(figure(&taken.cp, HEAT_CAPACITY, 0.001)),
         slopes: taken.slopes,
-    })
+    };
+    stated::applied(plain, function, substance)
 }
 
 /// What a substance of one's own contributes, with the heat capacity as the method takes it.
@@ -540,22 +554,6 @@ fn between(function: &Function, h_298: f64, t_k: f64, at_t: Functions, mode: Hea
         }
         HeatCapacity::Neglected => neglected(at_0, t_k),
     }
-}
-
-/// The entropy at 298.15 K from a table, for species without a function, such as ions in solution.
-fn tabulated_entropy(substance: &Substance) -> Option<Figure> {
-    let record = substance.formations.iter().find(|record| record.s.is_some())?;
-    let datum = record.s.as_ref()?;
-    let digit = if datum.is_convention() { None } else { Some(datum.last_place()) };
-    let key = LeafKey::Datum {
-        dataset: record.dataset.shared(),
-        record: substance.species.id.clone(),
-        field: ENTROPY,
-        t_bits: 0,
-        way: "",
-    };
-    let input = Input { u: datum.u, digit, citation: Some(record.citation.clone()), ..Input::of(key) };
-    Some(Figure { si: datum.value, origin: input.into(), printed: Some(datum.printed.clone()) })
 }
 
 #[cfg(test)]

@@ -14,6 +14,7 @@ pub mod compare;
 pub mod conditions;
 pub mod curve;
 pub mod curve_card;
+pub mod cycle;
 pub mod decomposition;
 pub mod derivation;
 pub mod expanded;
@@ -36,8 +37,10 @@ pub mod refusal;
 pub mod remedy;
 pub mod review;
 pub mod shortcut;
+mod stated;
 pub mod substance;
 pub mod symbols;
+pub mod tabulated;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
@@ -57,6 +60,7 @@ pub const CARDS: &[&Card] = &[
     &property_card::ENTROPY,
     &property_card::HEAT_CAPACITY,
     &property_card::EQUILIBRIUM_CONSTANT,
+    &cycle::CYCLE,
     &property_card::SUBSTANCE_ENTHALPY,
     &property_card::SUBSTANCE_INTERNAL_ENERGY,
     &property_card::SUBSTANCE_GIBBS_ENERGY,

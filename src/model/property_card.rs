@@ -127,7 +127,7 @@ const TEMPERATURE: Arg = Arg {
     doc: "temperature: degC, degF or kelvin; with a grid of temperatures the answer is a curve",
 };
 
-const ARGS: &[Arg] = &[
+pub(super) const ARGS: &[Arg] = &[
     TEMPERATURE,
     Arg {
         name: "options",
@@ -153,14 +153,27 @@ const FORMATION_DATASET: Claim = Claim { id: "formation-dataset", test: claims::
 const IDEAL_GAS: Claim = Claim { id: "ideal-gas", test: claims::ideal_gas };
 const CONDENSED_VOLUME: Claim = Claim { id: "condensed-volume-neglected", test: claims::condensed_volume };
 
+const AQUEOUS: Claim = Claim { id: "aqueous-heat-capacity", test: claims::aqueous_heat_capacity };
+const SATURATED_VAPOUR: Claim = Claim { id: "saturated-vapour-ideal", test: claims::vapour_of_records };
 const MONOMER_VAPOUR: Claim = Claim { id: "monomer-vapour", test: claims::monomer_vapour };
 const NO_DECOMPOSITION: Claim = Claim { id: "no-decomposition", test: claims::no_decomposition };
 const FIT_QUALITY: Claim = Claim { id: "fit-quality", test: claims::fit_quality };
 
+const ENTHALPY_CLAIMS: &[Claim] = &[
+    CONSTANT_HEAT_CAPACITY,
+    AQUEOUS,
+    STABLE_PHASE,
+    FORMATION_DATASET,
+    SATURATED_VAPOUR,
+    MONOMER_VAPOUR,
+    NO_DECOMPOSITION,
+    FIT_QUALITY,
+];
 const ENERGY_CLAIMS: &[Claim] =
-    &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET, MONOMER_VAPOUR, NO_DECOMPOSITION, FIT_QUALITY];
+    &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET, MONOMER_VAPOUR, NO_DECOMPOSITION, FIT_QUALITY];
 const GAS_LAW_CLAIMS: &[Claim] = &[
     CONSTANT_HEAT_CAPACITY,
+    AQUEOUS,
     STABLE_PHASE,
     FORMATION_DATASET,
     IDEAL_GAS,
@@ -169,7 +182,8 @@ const GAS_LAW_CLAIMS: &[Claim] = &[
     NO_DECOMPOSITION,
     FIT_QUALITY,
 ];
-const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, MONOMER_VAPOUR, NO_DECOMPOSITION, FIT_QUALITY];
+const ENTROPY_CLAIMS: &[Claim] =
+    &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, MONOMER_VAPOUR, NO_DECOMPOSITION, FIT_QUALITY];
 
 const SHORTCUTS: &[Alternative] = &[
     Alternative {
@@ -245,7 +259,7 @@ reaction_card!(
     "reaction.enthalpy",
     "enthalpy",
     ARGS,
-    ENERGY_CLAIMS,
+    ENTHALPY_CLAIMS,
     "ΔrH° per mole of reaction as written",
     "Reaction enthalpy at T. ΔrH°(T) = Σ ν [ΔfH°(298.15 K) + H(T) - H(298.15 K)], each species pure, in its standard \
      state, p° = 1 bar; formation enthalpies from one dataset."

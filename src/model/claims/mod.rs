@@ -10,6 +10,7 @@ mod formation;
 mod heat_capacity;
 mod independence;
 mod phase;
+mod vaporisation;
 mod volume;
 
 pub use alternatives::{
@@ -20,9 +21,10 @@ pub use association::monomer_vapour;
 pub use decomposition::no_decomposition;
 pub use fit::fit_quality;
 pub use formation::formation_dataset;
-pub use heat_capacity::constant_heat_capacity;
+pub use heat_capacity::{aqueous_heat_capacity, constant_heat_capacity};
 pub use independence::worst_correlation;
 pub use phase::stable_phase;
+pub use vaporisation::vapour_of_records;
 pub use volume::{condensed_volume, ideal_gas};
 
 use std::rc::Rc;
