@@ -27,6 +27,7 @@ pub mod refusal;
 pub mod remedy;
 pub mod review;
 pub mod shortcut;
+pub mod statmech;
 pub mod substance;
 pub mod symbols;
 pub mod terms;
