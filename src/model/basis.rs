@@ -85,6 +85,7 @@ pub static PER: Card = Card {
     alternatives: &[],
     run,
     check_line: None,
+    caution: None,
 };
 
 fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {

@@ -44,6 +44,7 @@ pub static BUDGET: Card = Card {
         Ok(Value::Answer(Answer::Budget(Rc::new(budget))))
     },
     check_line: None,
+    caution: None,
 };
 
 /// One input's line.

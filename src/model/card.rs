@@ -16,6 +16,7 @@ use thiserror::Error;
 use crate::data::catalog::Catalog;
 use crate::fault::{Explain, Fault, Place};
 use crate::model::answer::Answer;
+use crate::model::caution::Caution;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::model::terms::Terms;
@@ -145,6 +146,8 @@ pub struct Card {
     pub run: fn(&Cx, &Rc<Call>) -> Result<Value, Fault>,
     /// Figures of the calculation in the order a pocket calculator takes them.
     pub check_line: Option<CheckLine>,
+    /// What must stand beside each value that rests on it, where a figure can hurt someone.
+    pub caution: Option<Caution>,
 }
 
 /// What formulas look up: substances and constants. Substances are read at their first use, since a start of the program

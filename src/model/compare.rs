@@ -217,6 +217,7 @@ pub static COMPARE: Card = Card {
     alternatives: &[],
     run,
     check_line: None,
+    caution: None,
 };
 
 fn run(_: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {

@@ -16,8 +16,8 @@ use thiserror::Error;
 use crate::fault::{Explain, Place};
 use crate::model::answer::Answer;
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Sources, Takes, Value, call_of};
-use crate::model::check_line;
 use crate::model::symbols::{self, Formula};
+use crate::model::{caution, check_line};
 use crate::quantity::Quantity;
 use crate::record::fold::Folded;
 use crate::record::node::{self, LeafKey, Node, Operator, Origin};
@@ -60,6 +60,7 @@ pub struct Derivation {
     pub lines: Vec<Line>,
     /// As a report of the same value numbers them, from 1.
     pub sources: Vec<Citation>,
+    pub cautions: Vec<String>,
 }
 
 /// An input with its value.
@@ -207,7 +208,8 @@ impl Derivation {
         let inputs = (1..).zip(&leaves[..shown]).map(|(number, leaf)| input_row(number, leaf, &mut sources)).collect();
         let lines = lines(cx, &steps, most, &numbers, &mut sources);
         let inputs_hidden = leaves.len() - shown;
-        Derivation { value: value.clone(), inputs, inputs_hidden, lines, sources: sources.list().to_vec() }
+        let cautions = caution::texts(value);
+        Derivation { value: value.clone(), inputs, inputs_hidden, lines, sources: sources.list().to_vec(), cautions }
     }
 
     pub(super) fn parts(&self) -> Vec<(&'static str, Value)> {
@@ -427,4 +429,5 @@ pub static DERIVATION: Card = Card {
         Ok(Value::Answer(Answer::Derivation(Rc::new(derivation))))
     },
     check_line: None,
+    caution: None,
 };

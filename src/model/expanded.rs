@@ -44,6 +44,7 @@ pub static EXPANDED: Card = Card {
         Ok(Value::Answer(Answer::Expanded(Rc::new(expanded))))
     },
     check_line: None,
+    caution: None,
 };
 
 /// Why there is no expanded uncertainty.

@@ -4,8 +4,10 @@
 //! serves all species of a reaction, joined to each function's increment H(T) − H(298.15 K), so that no cycle is opened
 //! by mixing editions. The surprise: an element in its reference state belongs to every dataset, by convention.
 
+use std::rc::Rc;
 use std::sync::Arc;
 
+use smallvec::SmallVec;
 use thiserror::Error;
 
 use crate::data::catalog::Catalog;
@@ -14,11 +16,13 @@ use crate::data::formation;
 use crate::data::function::Function;
 use crate::data::substance::Substance;
 use crate::fault::{Explain, Fault};
+use crate::model::card::Cx;
 use crate::model::function::{self, T_REFERENCE};
 use crate::model::terms::{Term, Terms};
+use crate::model::thermo::{AtT, Thermo};
 use crate::num::math;
 use crate::record::evaluation::Evaluation;
-use crate::record::node::{Input, LeafKey};
+use crate::record::node::{Input, LeafKey, Node};
 use crate::source::Citation;
 
 /// How heat capacities are taken between 298.15 K and T.
@@ -72,17 +76,42 @@ pub enum Formation {
 }
 
 /// A printed figure or a function's value, with where it comes from.
-#[derive(Clone, Debug)]
+#[derive(Clone)]
 pub struct Figure {
     /// J/mol or J/(mol K)
     pub si: f64,
-    pub input: Input,
+    pub origin: FigureOrigin,
     /// As printed in kJ/mol, for check lines; absent for function values.
     pub printed: Option<Arc<str>>,
 }
 
+/// What a figure rests on.
+#[derive(Clone)]
+pub enum FigureOrigin {
+    /// It is an input itself: a printed figure, or a value drawn from a function.
+    Input(Box<Input>),
+    /// It follows from nodes, with its derivatives.
+    Nodes(SmallVec<[(Rc<Node>, f64); 2]>),
+}
+
+impl From<Input> for FigureOrigin {
+    fn from(input: Input) -> Self {
+        FigureOrigin::Input(Box::new(input))
+    }
+}
+
+impl Figure {
+    /// Where an input was printed; `None` for a figure that follows from others.
+    pub fn citation(&self) -> Option<&Citation> {
+        match &self.origin {
+            FigureOrigin::Input(input) => input.citation.as_ref(),
+            FigureOrigin::Nodes(_) => None,
+        }
+    }
+}
+
 /// What one species contributes at T, per mole of it.
-#[derive(Clone, Debug)]
+#[derive(Clone)]
 pub struct Contribution {
     pub nu: f64,
     pub formation: Figure,
@@ -193,8 +222,7 @@ fn dataset_named(word: &str, data: &Catalog) -> Result<DatasetId, GatherError> {
 
 /// The formation datasets that have every species of the reaction, by precedence.
 pub fn covering(reaction: &Terms, data: &Catalog) -> Vec<DatasetId> {
-    let has_all =
-        |id: &DatasetId| reaction.terms().iter().all(|term| formation_of(&term.substance, id, data).is_some());
+    let has_all = |id: &DatasetId| reaction.terms().iter().all(|term| term_formation(term, id, data).is_some());
     formation_datasets(data).map(|dataset| dataset.id.clone()).filter(has_all).collect()
 }
 
@@ -206,7 +234,7 @@ pub fn datasets_for(reaction: &Terms, formation: &Formation, data: &Catalog) -> 
     let terms = reaction.terms();
     match formation {
         Formation::Of(id) => {
-            if let Some(term) = terms.iter().find(|term| formation_of(&term.substance, id, data).is_none()) {
+            if let Some(term) = terms.iter().find(|term| term_formation(term, id, data).is_none()) {
                 let others: Vec<String> = covering(reaction, data).iter().map(|id| format!("\"{id}\"")).collect();
                 let others = if others.is_empty() { "\"mixed\"".to_owned() } else { others.join(", ") };
                 let species = term.substance.species.id.to_string();
@@ -223,7 +251,7 @@ pub fn datasets_for(reaction: &Terms, formation: &Formation, data: &Catalog) -> 
             let first = |term: &Term| {
                 ranked
                     .iter()
-                    .find(|dataset| formation_of(&term.substance, &dataset.id, data).is_some())
+                    .find(|dataset| term_formation(term, &dataset.id, data).is_some())
                     .map(|dataset| dataset.id.clone())
             };
             let found: Option<Vec<DatasetId>> = terms.iter().map(first).collect();
@@ -236,7 +264,7 @@ fn missing_words(reaction: &Terms, data: &Catalog) -> String {
     let lacks: Vec<String> = formation_datasets(data)
         .map(|dataset| {
             let missing: Vec<&str> = (reaction.terms().iter())
-                .filter(|term| formation_of(&term.substance, &dataset.id, data).is_none())
+                .filter(|term| term_formation(term, &dataset.id, data).is_none())
                 .map(|term| &*term.substance.species.id)
                 .collect();
             format!("{} lacks {}", dataset.short, missing.join(", "))
@@ -248,6 +276,14 @@ fn missing_words(reaction: &Terms, data: &Catalog) -> String {
 /// Datasets that have formation enthalpies, by precedence.
 fn formation_datasets(data: &Catalog) -> impl Iterator<Item = &Dataset> {
     data.datasets().iter().filter(|dataset| dataset.rank.is_some())
+}
+
+/// The formation enthalpy of a term: a substance of one's own brings it, whichever dataset serves the others.
+pub(crate) fn term_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -> Option<Figure> {
+    match &term.own {
+        Some(own) => own.formation(),
+        None => formation_of(&term.substance, dataset, data),
+    }
 }
 
 /// The formation enthalpy of a substance in one dataset: of the phase whose enthalpy scale its function continues.
@@ -273,20 +309,20 @@ fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<
         let input = Input { u: record.dhf.u, evaluated: evaluation.kept(), digit, citation, ..Input::of(key) };
         // A figure that its table prints in J/mol would stand beside others in kJ/mol.
         let printed = (record.dhf.unit == "kJ/mol").then(|| record.dhf.printed.clone());
-        return Some(Figure { si: record.dhf.value, input, printed });
+        return Some(Figure { si: record.dhf.value, origin: input.into(), printed });
     }
     let function = substance.function.as_ref()?;
     if function.is_reference_element && function.dhf_298 == 0.0 {
         let citation = Citation::new("convention: an element in its reference state", "");
         let input = Input { u: Some(0.0), citation: Some(citation), ..Input::of(key) };
-        return Some(Figure { si: 0.0, input, printed: Some("0".into()) });
+        return Some(Figure { si: 0.0, origin: input.into(), printed: Some("0".into()) });
     }
-    if function.dataset != *dataset {
+    if function.dataset != *dataset || !function.zero.enthalpy {
         return None;
     }
     // The report prints formation enthalpies in J/mol to three decimals; that is not what they are good for.
     let input = Input { digit: Some(1.0), citation: Some(function.citation.clone()), ..Input::of(key) };
-    Some(Figure { si: function.dhf_298, input, printed: None })
+    Some(Figure { si: function.dhf_298, origin: input.into(), printed: None })
 }
 
 /// Names of the fields that leaves are told apart by, singular, as in "formation enthalpy of CO2(g)".
@@ -298,11 +334,11 @@ pub const ENTROPY: &str = "entropy";
 ///
 /// # Errors
 /// A figure is missing, or `t_k` is outside a record's range.
-pub fn contributions(reaction: &Terms, t_k: f64, method: &Method, data: &Catalog) -> Result<Vec<Contribution>, Fault> {
-    let datasets = datasets_for(reaction, &method.formation, data)?;
+pub fn contributions(reaction: &Terms, t_k: f64, method: &Method, cx: &Cx) -> Result<Vec<Contribution>, Fault> {
+    let datasets = datasets_for(reaction, &method.formation, cx.data())?;
     let mut all = Vec::with_capacity(reaction.terms().len());
     for (term, dataset) in reaction.terms().iter().zip(&datasets) {
-        all.push(contribution(term, dataset, t_k, method.heat_capacity, data)?);
+        all.push(contribution(term, dataset, t_k, method.heat_capacity, cx)?);
     }
     Ok(all)
 }
@@ -316,12 +352,15 @@ pub(crate) fn contribution(
     dataset: &DatasetId,
     t_k: f64,
     mode: HeatCapacity,
-    data: &Catalog,
+    cx: &Cx,
 ) -> Result<Contribution, Fault> {
-    let substance = &term.substance;
+    let (substance, data) = (&term.substance, cx.data());
     let species = || substance.species.id.to_string();
     let formation =
-        formation_of(substance, dataset, data).unwrap_or_else(|| unreachable!("the dataset was found to have it"));
+        term_formation(term, dataset, data).unwrap_or_else(|| unreachable!("the dataset was found to have it"));
+    if let Some(own) = &term.own {
+        return of_own(own.as_ref(), term, formation, t_k, mode, cx);
+    }
     let Some(function) = &substance.function else {
         if t_k != T_REFERENCE {
             return Err(GatherError::NoFunction { species: species(), t_k }.into());
@@ -342,7 +381,7 @@ pub(crate) fn contribution(
     let at_t = function::evaluate(function, t_k);
     let figure = |taken: &Drawn, field: &'static str, digit: f64| Figure {
         si: taken.si,
-        input: Input {
+        origin: FigureOrigin::from(Input {
             digit: Some(digit),
             citation: Some(function.citation.clone()),
             ..Input::of(LeafKey::Datum {
@@ -352,7 +391,7 @@ pub(crate) fn contribution(
                 t_bits: taken.t_k.to_bits(),
                 way: taken.way,
             })
-        },
+        }),
         printed: None,
     };
     // A phase that does not reach 298.15 K continues the enthalpy scale of another, whose formation enthalpy it is joined to.
@@ -371,9 +410,66 @@ pub(crate) fn contribution(
         nu: term.nu,
         formation,
         increment,
-        entropy: Some(figure(&taken.entropy, ENTROPY, 0.001)),
+        entropy: function.zero.entropy.then(|| figure(&taken.entropy, ENTROPY, 0.001)),
         cp: Some(figure(&taken.cp, HEAT_CAPACITY, 0.001)),
         slopes: taken.slopes,
+    })
+}
+
+/// What a substance of one's own contributes, with the heat capacity as the method takes it.
+fn of_own(
+    own: &dyn Thermo,
+    term: &Term,
+    formation: Figure,
+    t_k: f64,
+    mode: HeatCapacity,
+    cx: &Cx,
+) -> Result<Contribution, Fault> {
+    let species = || term.substance.species.id.to_string();
+    let (t_min, t_max) = own.range_k();
+    // Every way but the full integral starts from 298.15 K.
+    let needed = if mode == HeatCapacity::Full { [t_k; 2] } else { [t_k, T_REFERENCE] };
+    if let Some(outside) = needed.into_iter().find(|t| !(t_min <= *t && *t <= t_max)) {
+        return Err(GatherError::Range { species: species(), t_k: outside, t_min, t_max }.into());
+    }
+    let whole = |at: AtT| Contribution {
+        nu: term.nu,
+        formation: formation.clone(),
+        slopes: Slopes { increment: at.cp.si, entropy: at.cp.si / t_k, cp: at.cp_slope },
+        increment: (t_k != T_REFERENCE).then_some(at.increment),
+        entropy: at.entropy,
+        cp: Some(at.cp),
+    };
+    if mode == HeatCapacity::Full {
+        return Ok(whole(own.at(cx, t_k)?));
+    }
+    let at_0 = own.at(cx, T_REFERENCE)?;
+    let (span, ln_ratio) = (t_k - T_REFERENCE, math::ln(t_k / T_REFERENCE));
+    let (cp, cp_slope) = match mode {
+        HeatCapacity::Full => unreachable!("it was answered above"),
+        HeatCapacity::Constant => (at_0.cp.clone(), 0.0),
+        HeatCapacity::Midpoint => {
+            let middle = own.at(cx, 0.5 * (t_k + T_REFERENCE))?;
+            (middle.cp, 0.5 * middle.cp_slope)
+        }
+        HeatCapacity::Mean => {
+            let at_t = own.at(cx, t_k)?;
+            (Figure::combined(&[(&at_0.cp, 0.5), (&at_t.cp, 0.5)]), 0.5 * at_t.cp_slope)
+        }
+        HeatCapacity::Neglected => {
+            let slopes = Slopes::default();
+            let increment = Some(Figure::of_nodes(0.0, []));
+            let (entropy, cp) = (at_0.entropy, Some(at_0.cp));
+            return Ok(Contribution { nu: term.nu, formation, increment, entropy, cp, slopes });
+        }
+    };
+    Ok(Contribution {
+        nu: term.nu,
+        formation,
+        increment: Some(Figure::combined(&[(&cp, span)])),
+        entropy: at_0.entropy.map(|s_0| Figure::combined(&[(&s_0, 1.0), (&cp, ln_ratio)])),
+        slopes: Slopes { increment: cp.si + cp_slope * span, entropy: cp.si / t_k + cp_slope * ln_ratio, cp: cp_slope },
+        cp: Some(cp),
     })
 }
 
@@ -453,21 +549,20 @@ fn tabulated_entropy(substance: &Substance) -> Option<Figure> {
         way: "",
     };
     let input = Input { u: datum.u, digit, citation: Some(record.citation.clone()), ..Input::of(key) };
-    Some(Figure { si: datum.value, input, printed: Some(datum.printed.clone()) })
+    Some(Figure { si: datum.value, origin: input.into(), printed: Some(datum.printed.clone()) })
 }
 
 #[cfg(test)]
 mod tests {
-    use std::rc::Rc;
-
-    use smallvec::SmallVec;
+    use std::cell::Cell;
 
     use super::*;
+    use crate::model::card::References;
     use crate::model::reaction::Reaction;
     use crate::record::node::{Node, Operator, Origin};
     use crate::record::spread::{Spread, spread};
     use crate::source::Embedded;
-    use crate::units::{Dimension, Kind};
+    use crate::units::{Dimension, Kind, constants};
 
     /// Two gases with invented figures, u = 0.3 and 0.4 kJ/mol, correlated by `r`.
     fn invented(r: &str) -> Result<Catalog, crate::data::dataset::TableFault> {
@@ -494,7 +589,10 @@ mod tests {
         let data = invented("[[1, 0.5], [0.5, 1]]").unwrap();
         let leaf = |id: &str| {
             let figure = formation_of(&data.find(id).unwrap(), &DatasetId::new("invented"), &data).unwrap();
-            let origin = Origin::Input(Box::new(figure.input));
+            let origin = match figure.origin {
+                FigureOrigin::Input(input) => Origin::Input(input),
+                FigureOrigin::Nodes(_) => unreachable!("a printed figure is an input"),
+            };
             Rc::new(Node::new(figure.si, Dimension::none(), Kind::PLAIN, SmallVec::new(), origin, None))
         };
         let inputs = SmallVec::from_vec(vec![(leaf("CO2(g)"), 1.0), (leaf("CO(g)"), -1.0)]);
@@ -515,11 +613,13 @@ mod tests {
 
     #[test]
     fn a_phase_below_298_k_is_joined_to_the_phase_it_melts_into() {
-        let data = Catalog::shipped();
-        let melting = Reaction::read("H2O(cr,ice-ih) -> H2O(l)", &data).unwrap();
+        let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
+        let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
+        let data = cx.data();
+        let melting = Reaction::read("H2O(cr,ice-ih) -> H2O(l)", data).unwrap();
         for formation in ["codata-1989", "atct-1.112", "nasa-tp-2002-211556"] {
-            let method = Method::from_words(None, Some(formation), &data).unwrap();
-            let all = contributions(&melting, 273.15, &method, &data).unwrap();
+            let method = Method::from_words(None, Some(formation), data).unwrap();
+            let all = contributions(&melting, 273.15, &method, &cx).unwrap();
             let h: f64 = all.iter().map(|c| c.nu * (c.formation.si + c.increment.as_ref().unwrap().si)).sum();
             // Heat of melting of ice at 273.15 K, 6.0067 kJ/mol: IAPWS-95 and IAPWS R10-06, computed from the published
             // formulations. Bound: the two functions of the report meet there with 6.0099 kJ/mol, 3.2 J/mol more.
@@ -528,12 +628,14 @@ mod tests {
     }
     #[test]
     fn phases_meet_at_their_transition_as_their_functions_do() {
-        let data = Catalog::shipped();
+        let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
+        let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
+        let data = cx.data();
         for (equation, t_k) in
             [("Hg(cr) -> Hg(l)", 234.29), ("H2O(cr,ice-ih) -> H2O(l)", 273.15), ("Fe(cr,delta) -> Fe(l)", 1809.0)]
         {
-            let reaction = Reaction::read(equation, &data).unwrap();
-            let all = contributions(&reaction, t_k, &Method::from_words(None, None, &data).unwrap(), &data).unwrap();
+            let reaction = Reaction::read(equation, data).unwrap();
+            let all = contributions(&reaction, t_k, &Method::from_words(None, None, data).unwrap(), &cx).unwrap();
             let h: f64 = all.iter().map(|c| c.nu * (c.formation.si + c.increment.as_ref().unwrap().si)).sum();
             let of = |term: &Term| term.nu * function::evaluate(term.substance.function.as_ref().unwrap(), t_k).h;
             let direct: f64 = reaction.terms().iter().map(of).sum();

@@ -48,6 +48,7 @@ pub static TESTED: Card = Card {
     alternatives: &[],
     run: test,
     check_line: None,
+    caution: None,
 };
 
 /// Names of the outcome's numbers among the step's options; SI units, of K itself for an equilibrium constant.

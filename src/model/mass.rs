@@ -138,6 +138,7 @@ pub static MOLAR_MASS: Card = Card {
         Ok(Value::Quantity(molar_mass(cx, entity, step)?))
     },
     check_line: None,
+    caution: None,
 };
 
 pub static PER_MASS: Card = Card {
@@ -153,6 +154,7 @@ pub static PER_MASS: Card = Card {
     alternatives: &[],
     run: per_mass,
     check_line: None,
+    caution: None,
 };
 
 fn per_mass(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
@@ -177,6 +179,7 @@ pub static PER_MOLE: Card = Card {
     alternatives: &[],
     run: per_mole,
     check_line: None,
+    caution: None,
 };
 
 fn per_mole(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
@@ -213,6 +216,7 @@ pub static WAVENUMBER_ENERGY: Card = Card {
         Ok(Value::Quantity(value.times(&hc, cx.place.clone())?))
     },
     check_line: None,
+    caution: None,
 };
 
 fn constant(cx: &Cx, constant: &units::constants::Constant, dim: Dimension) -> Result<Quantity, Fault> {
@@ -247,6 +251,7 @@ pub static PER_KG_OF: Card = Card {
     alternatives: &[],
     run: per_kg_of,
     check_line: None,
+    caution: None,
 };
 
 fn per_kg_of(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {

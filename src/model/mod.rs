@@ -6,6 +6,7 @@ pub mod answer;
 pub mod basis;
 pub mod budget;
 pub mod card;
+pub mod caution;
 pub mod check_line;
 pub mod claims;
 pub mod compare;
@@ -31,6 +32,7 @@ pub mod statmech;
 pub mod substance;
 pub mod symbols;
 pub mod terms;
+pub mod thermo;
 pub mod tolerance;
 
 use card::Card;

@@ -55,6 +55,7 @@ pub static MONTE_CARLO: Card = Card {
         Ok(Value::Answer(Answer::Propagation(Rc::new(propagation))))
     },
     check_line: None,
+    caution: None,
 };
 
 /// The options of every formula that draws.

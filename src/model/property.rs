@@ -24,7 +24,7 @@ use thiserror::Error;
 use crate::fault::{Explain, Fault};
 use crate::model::card::{Call, Card, Cx};
 use crate::model::function::T_REFERENCE;
-use crate::model::gather::{self, Contribution, Figure, Method};
+use crate::model::gather::{self, Contribution, Figure, FigureOrigin, Method};
 use crate::model::terms::Terms;
 use crate::num::math;
 use crate::quantity::Quantity;
@@ -213,7 +213,7 @@ pub fn method_of(call: &Call, cx: &Cx) -> Result<Method, Fault> {
 /// # Errors
 /// As [`evaluate`].
 pub fn number(property: Property, terms: &Terms, t_k: f64, method: &Method, cx: &Cx) -> Result<f64, Fault> {
-    let contributions = gather::contributions(terms, t_k, method, cx.data())?;
+    let contributions = gather::contributions(terms, t_k, method, cx)?;
     let r = cx.constants().molar_gas.value;
     Ok(evaluate(property, &contributions, terms, t_k, r)?.si)
 }
@@ -242,13 +242,13 @@ pub fn value(
     cx: &Cx,
 ) -> Result<Quantity, Fault> {
     let t_k = t.si();
-    let contributions = gather::contributions(terms, t_k, method, cx.data())?;
+    let contributions = gather::contributions(terms, t_k, method, cx)?;
     let r = gas_constant(cx.constants());
     let delta_n = terms.delta_n_gas();
     let evaluated = evaluate(property, &contributions, terms, t_k, r.si())?;
     let mut inputs: SmallVec<[(Rc<Node>, f64); 2]> = SmallVec::with_capacity(evaluated.parts.len() + 2);
     for part in &evaluated.parts {
-        inputs.push((leaf(part.figure, property)?, part.weight));
+        enter(&mut inputs, part.figure, part.weight, property)?;
     }
     if property.uses_gas_law() && delta_n != 0.0 {
         inputs.push((Rc::clone(r.node()), -delta_n * t_k));
@@ -277,15 +277,32 @@ pub(super) fn as_argument(t: &Quantity) -> Rc<Node> {
     Rc::new(Node::new(node.si(), node.dim().clone(), node.kind().clone(), inputs, origin, node.place().cloned()))
 }
 
-pub(super) fn leaf(figure: &Figure, property: Property) -> Result<Rc<Node>, Fault> {
+/// Enters a figure among the inputs of a property, with its weight there.
+pub(super) fn enter(
+    inputs: &mut SmallVec<[(Rc<Node>, f64); 2]>,
+    figure: &Figure,
+    weight: f64,
+    property: Property,
+) -> Result<(), Fault> {
+    match &figure.origin {
+        FigureOrigin::Input(input) => inputs.push((leaf(figure.si, input, property)?, weight)),
+        FigureOrigin::Nodes(nodes) => {
+            inputs.extend(nodes.iter().map(|(node, slope)| (Rc::clone(node), slope * weight)));
+        }
+    }
+    Ok(())
+}
+
+/// A figure of the tables as an input of a property.
+fn leaf(si: f64, input: &Input, property: Property) -> Result<Rc<Node>, Fault> {
     let energy = Dimension::whole([2, 1, -2, 0, 0, 0]);
-    let dim = match (&figure.input.key, property) {
+    let dim = match (&input.key, property) {
         (LeafKey::Datum { field, .. }, _) if *field == gather::ENTROPY => energy.over(&Dimension::base(Base::Kelvin)),
         (_, Property::Cp) => energy.over(&Dimension::base(Base::Kelvin)),
         _ => energy,
     };
     let dim = dim.over(&Dimension::amount(Entity::OPEN));
-    Ok(Rc::clone(Quantity::input(figure.si, dim, Kind::PLAIN, figure.input.clone(), None)?.node()))
+    Ok(Rc::clone(Quantity::input(si, dim, Kind::PLAIN, input.clone(), None)?.node()))
 }
 
 /// R as an input, so that a change of constant set can be traced.

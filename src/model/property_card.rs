@@ -19,7 +19,7 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     let Some(asked) = Property::of(call.card) else { return String::new() };
     let (Some(terms), t_k) = (call.terms(), call.quantity(1).si()) else { return String::new() };
     let Ok(method) = property::method_of(call, cx) else { return String::new() };
-    let Ok(contributions) = gather::contributions(terms, t_k, &method, cx.data()) else { return String::new() };
+    let Ok(contributions) = gather::contributions(terms, t_k, &method, cx) else { return String::new() };
     let kilo = |figure: &Figure| match &figure.printed {
         Some(printed) => printed.to_string(),
         None => format!("{:.3}", figure.si / 1000.0),
@@ -81,7 +81,7 @@ fn sum_of<'a>(
     for contribution in contributions {
         let Some(figure) = pick(contribution) else { continue };
         let (nu, shown) = (contribution.nu, show(figure));
-        let source = figure.input.citation.as_ref().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+        let source = figure.citation().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
         line.push_str(match (line.is_empty(), nu < 0.0) {
             (true, false) => "",
             (true, true) => "-",
@@ -178,6 +178,7 @@ macro_rules! property_card {
             alternatives: SHORTCUTS,
             run,
             check_line: Some(check_line),
+            caution: None,
         };
     };
 }

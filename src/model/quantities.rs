@@ -38,6 +38,7 @@ pub static MEAN: Card = Card {
         Ok(Value::Quantity(Quantity::mean(&pair, cx.place.clone())?))
     },
     check_line: None,
+    caution: None,
 };
 
 pub static TO: Card = Card {
@@ -53,6 +54,7 @@ pub static TO: Card = Card {
     alternatives: &[],
     run: |_, call| Ok(Value::Quantity(in_unit(call)?)),
     check_line: None,
+    caution: None,
 };
 
 pub static VALUE: Card = Card {
@@ -71,6 +73,7 @@ pub static VALUE: Card = Card {
         Ok(Value::Number(value.unit().from_si(value.si())))
     },
     check_line: None,
+    caution: None,
 };
 
 pub static UNCERTAINTY: Card = Card {
@@ -90,6 +93,7 @@ pub static UNCERTAINTY: Card = Card {
         Ok(u.map_or(Value::Nothing, |u| Value::Number(u / value.unit().factor)))
     },
     check_line: None,
+    caution: None,
 };
 
 pub static AGREES: Card = Card {
@@ -114,6 +118,7 @@ pub static AGREES: Card = Card {
     alternatives: &[],
     run: |_, call| Ok(Value::Flag(call.quantity(0).agrees(call.quantity(1), call.number(2))?)),
     check_line: None,
+    caution: None,
 };
 
 pub static ASSUME: Card = Card {
@@ -144,6 +149,7 @@ pub static ASSUME: Card = Card {
     alternatives: &[],
     run: attach,
     check_line: None,
+    caution: None,
 };
 
 /// A temperature on a scale, where the size of a difference is wanted.

@@ -31,7 +31,7 @@ impl Reaction {
         let equation = Equation::parse(text, &|name| Ok(data.find(name)?.species.clone()))?;
         let mut terms = Vec::with_capacity(equation.terms().len());
         for (species, nu) in equation.terms() {
-            terms.push(Term { substance: data.find(&species.id)?, nu: nu.to_f64() });
+            terms.push(Term::of_tables(data.find(&species.id)?, nu.to_f64()));
         }
         let terms = Terms::new(terms, Entity::RXN, equation.to_string());
         Ok(Reaction { equation, terms })
@@ -86,6 +86,7 @@ pub static REACTION: Card = Card {
     alternatives: &[],
     run: |cx, call| Ok(Value::Reaction(Rc::new(Reaction::read(call.text(0), cx.data())?))),
     check_line: None,
+    caution: None,
 };
 
 pub static BALANCE: Card = Card {
@@ -114,4 +115,5 @@ pub static BALANCE: Card = Card {
         Ok(Value::Text(balanced.to_string().into()))
     },
     check_line: None,
+    caution: None,
 };

@@ -55,6 +55,7 @@ pub static READINGS: Card = Card {
     alternatives: &[],
     run: evaluate,
     check_line: Some(check_line),
+    caution: None,
 };
 
 pub static CORRELATION: Card = Card {
@@ -80,6 +81,7 @@ pub static CORRELATION: Card = Card {
         Err(ReadingsError::NoCorrelation { value: certain.map_or_else(String::new, text::shown_plain) }.into())
     },
     check_line: None,
+    caution: None,
 };
 
 /// Why readings cannot be evaluated.

@@ -94,6 +94,7 @@ pub static CORRECTED: Card = Card {
     alternatives: &[],
     run: corrected,
     check_line: None,
+    caution: None,
 };
 
 pub static WIDENED: Card = Card {
@@ -110,6 +111,7 @@ pub static WIDENED: Card = Card {
     alternatives: &[],
     run: widened,
     check_line: None,
+    caution: None,
 };
 
 /// Whether a call widened a value for this assumption about this subject.

@@ -7,7 +7,7 @@ use std::collections::BTreeMap;
 use std::rc::Rc;
 
 use crate::model::card::{Alternative, Cx, Sources, call_of};
-use crate::model::{check_line, conditions, remedy, tolerance};
+use crate::model::{caution, check_line, conditions, remedy, tolerance};
 use crate::quantity::{Quantity, round};
 use crate::record::node::LeafKey;
 use crate::record::register::{Finding, Judgement, Reported, Status, Tested, judge};
@@ -114,7 +114,7 @@ pub fn review(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing]) -> R
         alternatives: alternatives(cx, &at),
         sources: sources.list().to_vec(),
         silent,
-        cautions: Vec::new(),
+        cautions: caution::texts(value),
     }
 }
 

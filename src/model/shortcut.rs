@@ -80,6 +80,7 @@ pub static VALID_TO: Card = Card {
     alternatives: &[],
     run: valid_to,
     check_line: None,
+    caution: None,
 };
 
 pub static COMPARE_SHORTCUTS: Card = Card {
@@ -95,6 +96,7 @@ pub static COMPARE_SHORTCUTS: Card = Card {
     alternatives: &[],
     run: compare,
     check_line: None,
+    caution: None,
 };
 
 /// What the errors of the shortcuts are computed from.

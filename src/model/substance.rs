@@ -32,7 +32,7 @@ pub struct PureSubstance {
 impl PureSubstance {
     pub fn new(substance: Arc<Substance>) -> Self {
         let (per, text) = (substance.species.entity, substance.id().to_owned());
-        PureSubstance { terms: Terms::new(vec![Term { substance, nu: 1.0 }], per, text) }
+        PureSubstance { terms: Terms::new(vec![Term::of_tables(substance, 1.0)], per, text) }
     }
 
     pub fn record(&self) -> &Arc<Substance> {
@@ -66,6 +66,7 @@ pub static SUBSTANCE: Card = Card {
     alternatives: &[],
     run: |cx, call| Ok(Value::Substance(Rc::new(PureSubstance::new(cx.data().find(call.text(0))?)))),
     check_line: None,
+    caution: None,
 };
 
 pub static SUBSTANCES: Card = Card {
@@ -89,6 +90,7 @@ pub static SUBSTANCES: Card = Card {
         Ok(Value::List(found.iter().map(|substance| Value::Text(substance.id().into())).collect()))
     },
     check_line: None,
+    caution: None,
 };
 
 macro_rules! increment_card {
@@ -106,6 +108,7 @@ macro_rules! increment_card {
             alternatives: &[],
             run: increment,
             check_line: Some(check_line),
+            caution: None,
         };
     };
 }
@@ -143,12 +146,26 @@ struct Heated {
     end: f64,
     start: f64,
     cp: (f64, f64),
-    input: Input,
+    difference: Figure,
 }
 
-fn heated(term: &Term, t_k: f64, from_k: f64) -> Result<Heated, Fault> {
+fn heated(term: &Term, t_k: f64, from_k: f64, cx: &Cx) -> Result<Heated, Fault> {
     let record = &term.substance;
     let species = || record.id().to_owned();
+    if let Some(own) = &term.own {
+        let (t_min, t_max) = own.range_k();
+        if let Some(outside) = [t_k, from_k].into_iter().find(|t| !(t_min <= *t && *t <= t_max)) {
+            return Err(GatherError::Range { species: species(), t_k: outside, t_min, t_max }.into());
+        }
+        let (end, start) = (own.at(cx, t_k)?, own.at(cx, from_k)?);
+        return Ok(Heated {
+            nu: term.nu,
+            difference: Figure::combined(&[(&end.increment, 1.0), (&start.increment, -1.0)]),
+            end: end.increment.si,
+            start: start.increment.si,
+            cp: (end.cp.si, start.cp.si),
+        });
+    }
     let function = record.function.as_ref().ok_or_else(|| GatherError::NoFunction { species: species(), t_k })?;
     if let Some(outside) = [t_k, from_k].into_iter().find(|t| !function.covers(*t)) {
         let (t_min, t_max) = (function.t_min, function.t_max);
@@ -166,7 +183,9 @@ fn heated(term: &Term, t_k: f64, from_k: f64) -> Result<Heated, Fault> {
             way: "integrated from the start",
         })
     };
-    Ok(Heated { nu: term.nu, end: end.h, start: start.h, cp: (end.cp, start.cp), input })
+    // What is drawn from the function is the difference; start and end of one function are not two figures.
+    let difference = Figure { si: end.h - start.h, origin: input.into(), printed: None };
+    Ok(Heated { nu: term.nu, end: end.h, start: start.h, cp: (end.cp, start.cp), difference })
 }
 
 /// The two temperatures of a call, in kelvin.
@@ -183,12 +202,10 @@ fn increment(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     let (t_k, from_k) = span(call);
     let (mut si, mut slopes, mut inputs) = (0.0, (0.0, 0.0), SmallVec::new());
     for term in terms.terms() {
-        let heated = heated(term, t_k, from_k)?;
+        let heated = heated(term, t_k, from_k, cx)?;
         si += heated.nu * (heated.end - heated.start);
         slopes = (slopes.0 + heated.nu * heated.cp.0, slopes.1 - heated.nu * heated.cp.1);
-        // What is drawn from the function is the difference; start and end of one function are not two figures.
-        let figure = Figure { si: heated.end - heated.start, input: heated.input, printed: None };
-        inputs.push((property::leaf(&figure, Property::H)?, heated.nu));
+        property::enter(&mut inputs, &heated.difference, heated.nu, Property::H)?;
     }
     let from = match &call.args[2] {
         Value::Quantity(from) => Some(from),
@@ -212,13 +229,13 @@ fn increment(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     Ok(Value::Quantity(Quantity::from_step(si, dim, kind, inputs, step, cx.place.clone())?))
 }
 
-fn check_line(_: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> String {
+fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> String {
     let Some(terms) = call.terms() else { return String::new() };
     let (t_k, from_k) = span(call);
     let mut line = String::new();
     for term in terms.terms() {
-        let Ok(heated) = heated(term, t_k, from_k) else { return String::new() };
-        let source = heated.input.citation.as_ref().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+        let Ok(heated) = heated(term, t_k, from_k, cx) else { return String::new() };
+        let source = heated.difference.citation().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
         let (end, start) = (heated.end / 1000.0, heated.start / 1000.0);
         let sign = match (line.is_empty(), heated.nu < 0.0) {
             (true, false) => "",

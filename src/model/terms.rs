@@ -3,16 +3,28 @@
 //! A reaction is Σ ν X per mole of reaction, a substance is 1 X per mole of X. Everything that is computed from species'
 //! records is computed of [`Terms`], so both answer the same questions with the same code.
 
+use std::rc::Rc;
 use std::sync::Arc;
 
 use crate::data::substance::Substance;
+use crate::model::thermo::Thermo;
 use crate::units::Entity;
 
 /// One species with its stoichiometric number, positive for products.
 #[derive(Clone)]
 pub struct Term {
+    /// The species, with what the shipped tables say of it.
     pub substance: Arc<Substance>,
     pub nu: f64,
+    /// What answers for the species in place of the tables.
+    pub own: Option<Rc<dyn Thermo>>,
+}
+
+impl Term {
+    /// A species that the shipped tables answer for.
+    pub fn of_tables(substance: Arc<Substance>, nu: f64) -> Self {
+        Term { substance, nu, own: None }
+    }
 }
 
 /// The sum, and per mole of what it is.

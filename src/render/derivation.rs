@@ -7,7 +7,7 @@ use crate::model::derivation::{Applied, Derivation, Hidden, InputRow, Line, Made
 use crate::record::fold::Folded;
 use crate::render::headline::Headline;
 use crate::render::html::escaped;
-use crate::render::{Bundle, html as html_parts, latex as latex_parts};
+use crate::render::{Bundle, html as html_parts, latex as latex_parts, text as text_parts};
 
 /// The lines of a step, besides its number and place.
 struct Words {
@@ -143,7 +143,7 @@ pub fn bundle(derivation: &Derivation) -> Bundle {
 
 /// For terminals, and for clients without HTML.
 fn text(derivation: &Derivation) -> String {
-    let mut out = format!("{}\n  inputs\n", title(derivation));
+    let mut out = format!("{}{}\n  inputs\n", title(derivation), text_parts::cautions(&derivation.cautions));
     let numbered = |row: &InputRow| {
         let [name, value, from] = input_words(row);
         [format!("i{}", row.number), name, value, from]
@@ -192,6 +192,7 @@ fn html(derivation: &Derivation) -> String {
     let cell = |text: &str| format!("<td style=\"text-align:left;vertical-align:top\">{}</td>", escaped(text));
     let mut out = String::from("<div class=\"hessbook-derivation\">");
     out.push_str(&format!("<p>derivation of {}</p>", html_parts::headline(&Headline::of(&derivation.value))));
+    out.push_str(&html_parts::cautions(&derivation.cautions));
     out.push_str("<details><summary>Inputs</summary><table>");
     for row in &derivation.inputs {
         let [name, value, from] = input_words(row);
@@ -248,6 +249,7 @@ fn step_html(step: &Step) -> String {
 fn latex(derivation: &Derivation) -> String {
     let text = |text: &str| format!("\\text{{{}}}", latex_parts::escaped(text));
     let mut rows: Vec<String> = Vec::new();
+    rows.extend(derivation.cautions.iter().map(|caution| format!(" & {}", text(&format!("Caution: {caution}")))));
     for row in &derivation.inputs {
         let [name, value, from] = input_words(row);
         let what = [name, value, from].into_iter().filter(|part| !part.is_empty()).collect::<Vec<_>>().join(", ");

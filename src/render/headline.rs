@@ -6,6 +6,7 @@ use std::sync::Arc;
 
 use crate::model::basis;
 use crate::model::card::call_of;
+use crate::model::caution::{self, Caution};
 use crate::model::conditions;
 use crate::model::review;
 use crate::num::math;
@@ -26,6 +27,8 @@ pub struct Headline {
     pub basis: Option<String>,
     /// What an equilibrium constant says besides.
     pub logarithm: Option<Logarithm>,
+    /// Whether it is a figure that can hurt someone.
+    pub cautioned: bool,
 }
 
 /// lg K° with its uncertainty, and the interval of K° of one standard uncertainty to both sides.
@@ -59,7 +62,8 @@ impl Headline {
             }
             (basis, _) => basis,
         };
-        Headline { symbol: conditions::symbol(value), number, unit: shown.unit, caveat, basis, logarithm }
+        let cautioned = !caution::of(value).is_empty();
+        Headline { symbol: conditions::symbol(value), number, unit: shown.unit, caveat, basis, logarithm, cautioned }
     }
 
     /// The unit for readers, empty for a pure number.
@@ -99,6 +103,7 @@ impl Headline {
         }
         remarks.extend(self.caveat.clone());
         remarks.extend(self.basis.clone());
+        remarks.extend(self.cautioned.then(|| Caution::IN_SHORT.to_owned()));
         remarks
     }
 }

@@ -104,9 +104,7 @@ pub fn report(report: &Report) -> String {
     if !facts.is_empty() {
         out.push_str(&format!("<table>{facts}</table>"));
     }
-    for caution in &record.cautions {
-        out.push_str(&format!("<p><b>Caution:</b> {}</p>", escaped(caution)));
-    }
+    out.push_str(&cautions(&record.cautions));
     out.push_str(&format!("<p>Assumptions (tolerance {})</p>", escaped(&text::tolerance(report))));
     out.push_str(&assumptions(&record.assumptions));
     if !record.alternatives.is_empty() {
@@ -128,6 +126,11 @@ pub fn report(report: &Report) -> String {
     }
     out.push_str("</ol></details></div>");
     out
+}
+
+/// Cautions, each in a paragraph of its own.
+pub fn cautions(cautions: &[String]) -> String {
+    cautions.iter().map(|caution| format!("<p><b>Caution:</b> {}</p>", escaped(caution))).collect()
 }
 
 /// Rows of a register as a table, worst first.

@@ -4,9 +4,9 @@
 //! and its number of draws. The surprise: for an equilibrium constant the numbers are those of lg K°, and only the ends
 //! of the interval are given as K°.
 
-use crate::model::conditions;
 use crate::model::expanded::Expanded;
 use crate::model::monte_carlo::{Comparison, Propagation, Summary};
+use crate::model::{caution, conditions};
 use crate::num::math;
 use crate::quantity::{Quantity, round};
 use crate::render::{Bundle, html};
@@ -80,6 +80,7 @@ pub fn expanded(expanded: &Expanded) -> Bundle {
             shape.word()
         ));
     }
+    lines.extend(caution::texts(value).into_iter().map(|caution| format!("caution: {caution}")));
     both(&lines)
 }
 
@@ -138,5 +139,6 @@ pub fn propagation(run: &Propagation) -> Bundle {
     if !run.silent.is_empty() {
         lines.push(format!("held, since no u is stated: {}", run.silent));
     }
+    lines.extend(caution::texts(&run.value).into_iter().map(|caution| format!("caution: {caution}")));
     both(&lines)
 }

@@ -73,5 +73,10 @@ pub fn equation(reaction: &Reaction) -> String {
 /// A report's headline with its label; the register stands in the other forms.
 pub fn report(report: &Report) -> String {
     let label = escaped(&report.record.label);
-    format!("\\textbf{{{label}}}: {}", headline(&report.headline))
+    format!("\\textbf{{{label}}}: {}{}", headline(&report.headline), cautions(&report.record.cautions))
+}
+
+/// Cautions, each in a paragraph of its own.
+pub fn cautions(cautions: &[String]) -> String {
+    cautions.iter().map(|caution| format!("\n\n\\textbf{{Caution:}} {}", escaped(caution))).collect()
 }

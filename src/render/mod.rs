@@ -11,6 +11,7 @@ pub mod headline;
 pub mod html;
 pub mod interval;
 pub mod latex;
+pub mod plot;
 pub mod register;
 pub mod report;
 pub mod text;
@@ -18,6 +19,7 @@ pub mod text;
 use std::collections::BTreeMap;
 
 use crate::model::answer::Answer;
+use crate::model::caution;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::quantity::Quantity;
@@ -29,12 +31,13 @@ pub struct Bundle {
     pub data: BTreeMap<String, serde_json::Value>,
 }
 
-/// A value in one line, in text, HTML and LaTeX.
+/// A value in one line, with the cautions that belong to it, in text, HTML and LaTeX.
 pub fn quantity(value: &Quantity) -> Bundle {
     let headline = Headline::of(value);
-    Bundle::text(headline.line())
-        .with_text("text/html", html::headline(&headline))
-        .with_text("text/latex", latex::headline(&headline))
+    let cautions = caution::texts(value);
+    Bundle::text(format!("{}{}", headline.line(), text::cautions(&cautions)))
+        .with_text("text/html", format!("{}{}", html::headline(&headline), html::cautions(&cautions)))
+        .with_text("text/latex", format!("{}{}", latex::headline(&headline), latex::cautions(&cautions)))
 }
 
 /// A reaction as written, in text, HTML and LaTeX.
@@ -86,5 +89,78 @@ impl Bundle {
 
     pub fn plain(&self) -> &str {
         self.data.get("text/plain").and_then(|text| text.as_str()).unwrap_or("")
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use std::cell::Cell;
+    use std::rc::Rc;
+
+    use smallvec::SmallVec;
+
+    use super::*;
+    use crate::model::card::{Call, Card, Cx, On, References, Value};
+    use crate::model::caution::Caution;
+    use crate::model::derivation::Derivation;
+    use crate::record::node::Step;
+    use crate::render::report::{MIME, Report};
+    use crate::units::{Dimension, Kind, constants};
+
+    /// A figure of 2, made by an invented formula with this caution.
+    fn figure(caution: Option<Caution>) -> Quantity {
+        let card = Box::leak(Box::new(Card {
+            id: "invented.figure",
+            name: "figure",
+            on: On::Nothing,
+            args: &[],
+            gives: "2",
+            doc: "Gives 2.",
+            source: "invented for this test",
+            example: "figure()",
+            claims: &[],
+            alternatives: &[],
+            run: |_, _| Ok(Value::Nothing),
+            check_line: None,
+            caution,
+        }));
+        let step: Rc<dyn Step> = Rc::new(Call { card, args: Vec::new() });
+        Quantity::from_step(2.0, Dimension::none(), Kind::PLAIN, SmallVec::new(), step, None).unwrap()
+    }
+
+    /// Every form in which a value is shown, with what is shown.
+    fn forms(value: &Quantity) -> Vec<(String, String)> {
+        let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
+        let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
+        let report = Report::of(&cx, "label", value, &[]).bundle();
+        let derivation = derivation::bundle(&Derivation::of(&cx, value, 60));
+        let mut forms = Vec::new();
+        for (name, bundle) in [("value", quantity(value)), ("report", report), ("derivation", derivation)] {
+            for (mime, content) in &bundle.data {
+                let shown = if mime == MIME { content["cautions"].to_string() } else { content.to_string() };
+                forms.push((format!("{name} as {mime}"), shown));
+            }
+        }
+        forms
+    }
+
+    #[test]
+    fn each_caution_stands_in_every_form_of_each_value_that_rests_on_its_figure() {
+        for caution in Caution::ALL {
+            let made = figure(Some(caution));
+            let later = made.scaled(3.0, None).unwrap().shifted(1.0, None).unwrap();
+            for value in [&made, &later] {
+                let forms = forms(value);
+                assert_eq!(forms.len(), 3 + 4 + 3, "{forms:?}");
+                for (form, shown) in forms {
+                    assert!(shown.contains(&caution.text()), "{caution:?}: {form}: {shown}");
+                }
+                // In the middle of a text or a list there is room for a few words only.
+                assert!(text::value(value).contains(Caution::IN_SHORT), "{caution:?}");
+            }
+        }
+        for (form, shown) in forms(&figure(None)) {
+            assert!(!shown.contains("safety"), "{form}: {shown}");
+        }
     }
 }

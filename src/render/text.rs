@@ -40,6 +40,11 @@ pub fn report(report: &Report) -> String {
     out
 }
 
+/// Cautions, each on a line of its own below what they belong to.
+pub fn cautions(cautions: &[String]) -> String {
+    cautions.iter().map(|caution| format!("\n  caution: {caution}")).collect()
+}
+
 /// The tolerance with the unit that readers see.
 pub fn tolerance(report: &Report) -> String {
     let number =

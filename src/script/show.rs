@@ -50,6 +50,9 @@ pub fn bundle_of(value: &Dynamic) -> Bundle {
 
 /// A value in one line, as it stands inside an array: texts in quotes.
 pub fn inline(value: &Dynamic) -> String {
+    if let Some(quantity) = value.read_lock::<Quantity>() {
+        return render::text::value(&quantity);
+    }
     if let Some(own) = own(value) {
         return own.plain().to_owned();
     }

@@ -149,6 +149,7 @@ mod planted {
         alternatives: &[Alternative { id: "no-gas", words: "without the gas", value: |_, _, _| None }],
         run: |_, _| Ok(Value::Nothing),
         check_line: None,
+        caution: None,
     };
 
     #[test]

@@ -51,7 +51,7 @@ impl<'a> Case<'a> {
         let property = Property::of(call.card)?;
         let method = property::method_of(call, cx).ok()?;
         let (terms, t_k) = (call.terms()?, call.quantity(1).si());
-        let contributions = gather::contributions(terms, t_k, &method, cx.data()).ok()?;
+        let contributions = gather::contributions(terms, t_k, &method, cx).ok()?;
         let datasets = gather::datasets_for(terms, &method.formation, cx.data()).ok()?;
         Some(Case {
             cx,
@@ -134,7 +134,7 @@ impl<'a> Case<'a> {
 /// Where figures come from.
 pub fn cited<'a>(figures: impl IntoIterator<Item = &'a Figure>) -> Vec<Citation> {
     let mut sources = Vec::new();
-    for citation in figures.into_iter().filter_map(|figure| figure.input.citation.as_ref()) {
+    for citation in figures.into_iter().filter_map(|figure| figure.citation()) {
         if !sources.contains(citation) {
             sources.push(citation.clone());
         }

@@ -332,6 +332,7 @@ pub static EXPLAIN_GAP: Card = Card {
     alternatives: &[],
     run,
     check_line: None,
+    caution: None,
 };
 
 fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {

@@ -149,7 +149,7 @@ fn dataset(case: &Case, out: &mut Vec<Candidate>) {
     for id in gather::covering(case.terms, data).into_iter().filter(|id| !case.datasets.iter().all(|used| used == id)) {
         let name = data.dataset(&id).map_or_else(|| id.to_string(), |dataset| dataset.short.to_string());
         let method = Method { formation: Formation::Of(id.clone()), ..case.method.clone() };
-        let figures = gather::contributions(case.terms, case.t_k, &method, data).unwrap_or_default();
+        let figures = gather::contributions(case.terms, case.t_k, &method, case.cx).unwrap_or_default();
         let sources = cited(figures.iter().map(|contribution| &contribution.formation));
         let words = format!("the formation enthalpies are those of {name}");
         case.push(out, Mistake::Dataset, words, case.number(case.t_k, &method), sources);

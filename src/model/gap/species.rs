@@ -50,8 +50,8 @@ fn phases(case: &Case, at: usize, out: &mut Vec<Candidate>) {
             case.push(out, mistake(&other), format!("{words}{only}"), with, sources);
         }
         if whole_differs {
-            let term = Term { substance: other.clone(), nu: term.nu };
-            let taken = gather::contribution(&term, &case.datasets[at], case.t_k, case.method.heat_capacity, data);
+            let term = Term::of_tables(other.clone(), term.nu);
+            let taken = gather::contribution(&term, &case.datasets[at], case.t_k, case.method.heat_capacity, case.cx);
             let Ok(taken) = taken else { continue };
             let figures = [Some(&taken.formation), taken.increment.as_ref(), taken.entropy.as_ref(), taken.cp.as_ref()];
             let sources = cited(figures.into_iter().flatten());

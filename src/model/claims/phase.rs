@@ -1,12 +1,12 @@
-//! Tests of the assumptions that reaction properties lean on, and what the usual shortcuts would have given.
+//! Whether each species is in the phase that is stable at T and 1 bar.
 //!
-//! Every test computes the alternative with the same code as the value itself. The surprise: whether a phase is stable is
-//! judged by Gibbs energies of the shipped phases of the same composition, not by the range of the record, since a
-//! record may run on far beyond where its phase is the stable one.
+//! The surprise: it is judged by Gibbs energies of the shipped phases of the same composition, not by the range of the
+//! record, since a record may run on far beyond where its phase is the stable one.
 
 use std::rc::Rc;
 use std::sync::Arc;
 
+use super::{Asked, asked, asked_anew};
 use crate::chem::species::State as Aggregate;
 use crate::data::critical::CriticalTemperature;
 use crate::data::dataset::DatasetId;
@@ -14,12 +14,11 @@ use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Call, Cx, Value};
 use crate::model::function;
-use crate::model::gather::{self, HeatCapacity, Method};
+use crate::model::gather;
 use crate::model::property::{self, Property};
 use crate::model::substance::PureSubstance;
 use crate::model::terms::Terms;
 use crate::quantity::Quantity;
-use crate::record::node::Node;
 use crate::record::register::{Finding, Tested};
 use crate::units::constants::STANDARD_PRESSURE;
 
@@ -30,67 +29,6 @@ const RESOLUTION_CONDENSED: f64 = 1.0;
 /// The same for a gas beside a condensed phase, J/mol. Bound: the two functions of one substance miss its vapour pressure by up
 /// to 13 % at 298.15 K (ethanol, against the Antoine equation of Poling, Prausnitz, O'Connell, 5th ed.), RT ln 1.13.
 const RESOLUTION_GAS: f64 = 300.0;
-
-struct Asked<'a> {
-    property: Property,
-    terms: &'a Terms,
-    t_k: f64,
-    method: Method,
-}
-
-fn asked<'a>(cx: &Cx, call: &'a Call) -> Option<Asked<'a>> {
-    let property = Property::of(call.card)?;
-    let method = property::method_of(call, cx).ok()?;
-    Some(Asked { property, terms: call.terms()?, t_k: call.quantity(1).si(), method })
-}
-
-/// The better alternative of a test: the same formula asked in another way, with inputs of its own.
-fn asked_anew(cx: &Cx, call: Call) -> Result<Rc<Node>, Fault> {
-    let property = Property::of(call.card).unwrap_or_else(|| unreachable!("{} is a property's card", call.card.id));
-    let method = property::method_of(&call, cx)?;
-    Ok(Rc::clone(property::quantity(property, &Rc::new(call), &method, cx)?.node()))
-}
-
-/// `constant-heat-capacity`: priced against the integral of Cp. No row where Cp was integrated.
-pub fn constant_heat_capacity(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
-    let Some(asked) = asked(cx, call) else { return Vec::new() };
-    if asked.method.heat_capacity == HeatCapacity::Full || property::is_reference(asked.t_k) {
-        return Vec::new();
-    }
-    let tested = match asked_anew(cx, call.with_option("heat_capacity", "full")) {
-        Ok(value) => {
-            Tested::Better { value, how: format!("the integral over T; Cp was {}", asked.method.heat_capacity.words()) }
-        }
-        Err(fault) => Tested::Missing { what: fault.message().to_owned() },
-    };
-    vec![Finding::known("constant-heat-capacity", asked.terms.text(), value.node(), Some(asked.t_k), tested)]
-}
-
-/// `formation-dataset`: priced against the next dataset that has all species.
-pub fn formation_dataset(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
-    let Some(asked) = asked(cx, call) else { return Vec::new() };
-    let Ok(used) = gather::datasets_for(asked.terms, &asked.method.formation, cx.data()) else { return Vec::new() };
-    let mut names: Vec<String> = Vec::new();
-    for id in &used {
-        let short = cx.data().dataset(id).map_or_else(|| id.to_string(), |dataset| dataset.short.to_string());
-        if !names.contains(&short) {
-            names.push(short);
-        }
-    }
-    let subject = names.join(" and ");
-    let other = gather::covering(asked.terms, cx.data()).into_iter().find(|id| used.iter().any(|taken| taken != id));
-    let tested = match other {
-        None => Tested::Missing { what: "no other shipped dataset has all species of this reaction".to_owned() },
-        Some(id) => {
-            let name = cx.data().dataset(&id).map_or_else(|| id.to_string(), |dataset| dataset.short.to_string());
-            match asked_anew(cx, call.with_option("formation", id.as_str())) {
-                Ok(value) => Tested::Better { value, how: format!("formation enthalpies of {name}") },
-                Err(fault) => Tested::Missing { what: fault.message().to_owned() },
-            }
-        }
-    };
-    vec![Finding::known("formation-dataset", subject, value.node(), None, tested)]
-}
 
 /// `stable-phase`: each species against the other shipped phases of its composition, by Gibbs energy at T and 1 bar; a gas
 /// above its critical temperature has no liquid to be compared with.
@@ -161,15 +99,16 @@ enum Compared {
 }
 
 fn compared(cx: &Cx, substance: &Substance, t_k: f64) -> Compared {
-    let Some(own) = substance.function.as_ref().filter(|function| function.covers(t_k)) else {
-        return Compared::NothingToCompare;
+    let comparable = |substance: &Substance| {
+        substance.function.clone().filter(|function| function.covers(t_k) && function.has_gibbs_energy())
     };
-    let g_own = function::evaluate(own, t_k).g(t_k);
+    let Some(own) = comparable(substance) else { return Compared::NothingToCompare };
+    let g_own = function::evaluate(&own, t_k).g(t_k);
     let mut compared = Compared::NothingToCompare;
     let mut lowest = g_own;
     for other in cx.data().phases_of(substance) {
-        let Some(function) = other.function.as_ref().filter(|function| function.covers(t_k)) else { continue };
-        let g = function::evaluate(function, t_k).g(t_k);
+        let Some(function) = comparable(&other) else { continue };
+        let g = function::evaluate(&function, t_k).g(t_k);
         let gas = other.species.is_gas() || substance.species.is_gas();
         let resolution = if gas { RESOLUTION_GAS } else { RESOLUTION_CONDENSED };
         if g < lowest.min(g_own - resolution) {
@@ -222,59 +161,4 @@ fn in_phase(cx: &Cx, call: &Call, written: &Substance, stable: &Arc<Substance>) 
         }
         _ => Ok(other),
     }
-}
-
-/// `ideal-gas`: untested as long as no second virial coefficients are shipped.
-pub fn ideal_gas(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
-    gas_law(cx, call, value, "ideal-gas", Aggregate::Gas, "no second virial coefficient of")
-}
-
-/// `condensed-volume-neglected`: untested as long as no molar volumes are shipped.
-pub fn condensed_volume(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
-    let mut findings = gas_law(cx, call, value, "condensed-volume-neglected", Aggregate::Liquid, "no molar volume of");
-    findings.extend(gas_law(cx, call, value, "condensed-volume-neglected", Aggregate::Crystal, "no molar volume of"));
-    findings
-}
-
-fn gas_law(cx: &Cx, call: &Call, value: &Quantity, id: &'static str, state: Aggregate, lacking: &str) -> Vec<Finding> {
-    let Some(asked) = asked(cx, call) else { return Vec::new() };
-    let species: Vec<&str> = (asked.terms.terms().iter())
-        .map(|term| &term.substance.species)
-        .filter(|species| species.phase.state == state)
-        .map(|species| &*species.id)
-        .collect();
-    if species.is_empty() {
-        return Vec::new();
-    }
-    let names = species.join(", ");
-    let what = format!("{lacking} {names} is shipped");
-    vec![Finding::known(id, names, value.node(), Some(asked.t_k), Tested::Missing { what })]
-}
-
-/// What ΔCp held at 298.15 K would have given, where it was integrated instead.
-pub fn with_constant_heat_capacity(cx: &Cx, call: &Call, _: &Quantity) -> Option<f64> {
-    shortcut(cx, call, HeatCapacity::Constant)
-}
-
-/// What the value at 298.15 K would have given.
-pub fn without_correction(cx: &Cx, call: &Call, _: &Quantity) -> Option<f64> {
-    shortcut(cx, call, HeatCapacity::Neglected)
-}
-
-fn shortcut(cx: &Cx, call: &Call, heat_capacity: HeatCapacity) -> Option<f64> {
-    let asked = asked(cx, call)?;
-    if property::is_reference(asked.t_k) || asked.method.heat_capacity != HeatCapacity::Full {
-        return None;
-    }
-    // ΔCp itself has no further shortcut than its value at 298.15 K.
-    if asked.property == Property::Cp && heat_capacity == HeatCapacity::Constant {
-        return None;
-    }
-    let t_k = match (asked.property, heat_capacity) {
-        // "No correction" means the figure of the 298.15 K table, whole.
-        (Property::G | Property::A | Property::U | Property::K, HeatCapacity::Neglected) => function::T_REFERENCE,
-        _ => asked.t_k,
-    };
-    let method = Method { heat_capacity, ..asked.method.clone() };
-    property::number(asked.property, asked.terms, t_k, &method, cx).ok()
 }

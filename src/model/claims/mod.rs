@@ -1,0 +1,44 @@
+//! Tests of the assumptions that reaction properties lean on, and what the usual shortcuts would have given.
+//!
+//! One file for each noun that is assumed of. Every test computes the alternative with the same code as the value itself.
+
+mod alternatives;
+mod formation;
+mod heat_capacity;
+mod phase;
+mod volume;
+
+pub use alternatives::{with_constant_heat_capacity, without_correction};
+pub use formation::formation_dataset;
+pub use heat_capacity::constant_heat_capacity;
+pub use phase::stable_phase;
+pub use volume::{condensed_volume, ideal_gas};
+
+use std::rc::Rc;
+
+use crate::fault::Fault;
+use crate::model::card::{Call, Cx};
+use crate::model::gather::Method;
+use crate::model::property::{self, Property};
+use crate::model::terms::Terms;
+use crate::record::node::Node;
+
+struct Asked<'a> {
+    property: Property,
+    terms: &'a Terms,
+    t_k: f64,
+    method: Method,
+}
+
+fn asked<'a>(cx: &Cx, call: &'a Call) -> Option<Asked<'a>> {
+    let property = Property::of(call.card)?;
+    let method = property::method_of(call, cx).ok()?;
+    Some(Asked { property, terms: call.terms()?, t_k: call.quantity(1).si(), method })
+}
+
+/// The better alternative of a test: the same formula asked in another way, with inputs of its own.
+fn asked_anew(cx: &Cx, call: Call) -> Result<Rc<Node>, Fault> {
+    let property = Property::of(call.card).unwrap_or_else(|| unreachable!("{} is a property's card", call.card.id));
+    let method = property::method_of(&call, cx)?;
+    Ok(Rc::clone(property::quantity(property, &Rc::new(call), &method, cx)?.node()))
+}
