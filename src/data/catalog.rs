@@ -19,6 +19,7 @@ use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::{self, Coefficients, Formation};
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
+use super::molecule::Constants;
 use super::substance::Substance;
 use super::tables::Tables;
 use super::transition::Transition;
@@ -37,6 +38,8 @@ pub struct Catalog {
     substances: BTreeMap<Arc<str>, Arc<Substance>>,
     /// Substance id to its transitions, by temperature.
     transitions: BTreeMap<Arc<str>, Vec<Arc<Transition>>>,
+    /// Substance id to the constants of its molecule.
+    molecules: BTreeMap<Arc<str>, Arc<Constants>>,
     lookup: Lookup,
 }
 
@@ -56,7 +59,7 @@ impl Catalog {
 
     /// The tables among some files; a dataset whose file is missing is simply not there.
     pub fn from_files(files: &[Embedded]) -> Result<Catalog, TableFault> {
-        let Tables { datasets, functions, mut formations, coefficients, transitions, critical, names } =
+        let Tables { datasets, functions, mut formations, coefficients, transitions, critical, molecules, names } =
             Tables::read(files)?;
         let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
         for group in coefficients {
@@ -105,7 +108,8 @@ impl Catalog {
             transitions.sort_by(|left, right| left.t_k.total_cmp(&right.t_k));
         }
         let lookup = Lookup::new(&names, substances.values().map(|substance: &Arc<Substance>| &**substance));
-        Ok(Catalog { datasets, substances, transitions: by_substance, lookup })
+        let molecules = molecules.into_iter().map(|one| (id(&one.id), Arc::new(one))).collect();
+        Ok(Catalog { datasets, substances, transitions: by_substance, molecules, lookup })
     }
 
     /// The one substance that a text such as `CO2(g)`, `water(l)` or `C(cr,graphite)` names.
@@ -169,6 +173,16 @@ impl Catalog {
             at += 1;
         }
         None
+    }
+
+    /// The constants of a gas's molecule.
+    pub fn molecule(&self, substance: &Substance) -> Option<&Arc<Constants>> {
+        self.molecules.get(substance.id())
+    }
+
+    /// All molecules on record, by id.
+    pub fn molecules(&self) -> impl Iterator<Item = &Arc<Constants>> {
+        self.molecules.values()
     }
 
     /// Substances whose id or name holds a text, upper and lower case alike: those that start with it first.

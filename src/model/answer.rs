@@ -16,6 +16,8 @@ use crate::model::compare::Comparison;
 use crate::model::derivation::Derivation;
 use crate::model::expanded::Expanded;
 use crate::model::gap::Gap;
+use crate::model::molecule::power_fit::HandedOn;
+use crate::model::molecule::shares::Shares;
 use crate::model::monte_carlo::Propagation;
 use crate::quantity::Quantity;
 use crate::record::node::Step;
@@ -30,6 +32,8 @@ pub enum Answer {
     Derivation(Rc<Derivation>),
     Comparison(Rc<Comparison>),
     Gap(Rc<Gap>),
+    Shares(Rc<Shares>),
+    PowerFit(Rc<HandedOn>),
 }
 
 /// The argument that says how sure an interval is to be.
@@ -69,6 +73,8 @@ impl Answer {
             Answer::Derivation(_) => "a derivation",
             Answer::Comparison(_) => "a comparison",
             Answer::Gap(_) => "an explanation of a gap",
+            Answer::Shares(_) => "a table of contributions",
+            Answer::PowerFit(_) => "a sum of powers",
         }
     }
 
@@ -80,6 +86,8 @@ impl Answer {
             Answer::Derivation(derivation) => derivation.parts(),
             Answer::Comparison(comparison) => comparison.parts(),
             Answer::Gap(gap) => gap.parts(),
+            Answer::Shares(shares) => shares.parts(),
+            Answer::PowerFit(fit) => fit.parts(),
         }
     }
 

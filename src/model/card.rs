@@ -17,6 +17,7 @@ use crate::data::catalog::Catalog;
 use crate::fault::{Explain, Fault, Place};
 use crate::model::answer::Answer;
 use crate::model::caution::Caution;
+use crate::model::molecule::Molecule;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::model::terms::Terms;
@@ -38,6 +39,7 @@ pub enum Value {
     Options(Rc<BTreeMap<String, Value>>),
     Reaction(Rc<Reaction>),
     Substance(Rc<PureSubstance>),
+    Molecule(Rc<Molecule>),
     /// What was asked of an uncertainty.
     Answer(Answer),
     /// Something no formula takes, by its name in words.
@@ -57,6 +59,7 @@ impl Value {
             Value::Options(_) => "a map of options",
             Value::Reaction(_) => "a reaction",
             Value::Substance(_) => "a substance",
+            Value::Molecule(_) => "a molecule",
             Value::Answer(answer) => answer.sort(),
             Value::Other(name) => name,
             Value::Nothing => "nothing",
@@ -71,6 +74,7 @@ pub enum On {
     Quantity,
     Reaction,
     Substance,
+    Molecule,
 }
 
 /// What an argument takes.
@@ -235,6 +239,7 @@ impl Call {
         match self.args.first() {
             Some(Value::Reaction(reaction)) => Some(reaction),
             Some(Value::Substance(substance)) => Some(substance),
+            Some(Value::Molecule(molecule)) => Some(molecule.terms()),
             _ => None,
         }
     }
@@ -290,6 +295,7 @@ impl Step for Call {
                 Value::Number(number) => words.push(number.to_string()),
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
                 Value::Substance(substance) => words.push(substance.text().to_owned()),
+                Value::Molecule(molecule) => words.push(molecule.text().to_owned()),
                 Value::Options(options) => {
                     words.extend(options.iter().filter_map(|(name, value)| match value {
                         Value::Text(word) => Some(format!("{name}: {word}")),
@@ -408,6 +414,7 @@ impl Card {
             On::Quantity => "value.",
             On::Reaction => "reaction.",
             On::Substance => "substance.",
+            On::Molecule => "molecule.",
         };
         format!("{receiver}{}({})", self.name, args.join(", "))
     }

@@ -18,6 +18,7 @@ pub mod gap;
 pub mod gather;
 pub mod linearity;
 pub mod mass;
+pub mod molecule;
 pub mod monte_carlo;
 pub mod property;
 pub mod property_card;
@@ -58,6 +59,21 @@ pub const CARDS: &[&Card] = &[
     &property_card::SUBSTANCE_HEAT_CAPACITY,
     &substance::ENTHALPY_INCREMENT,
     &substance::REACTION_INCREMENT,
+    &molecule::limits::MOLECULE,
+    &molecule::limits::MOLECULE_TABLE,
+    &molecule::limits::TAKEN,
+    &molecule::answers::HEAT_CAPACITY,
+    &molecule::answers::HEAT_CAPACITY_V,
+    &molecule::answers::ENTROPY,
+    &molecule::answers::ENTHALPY_INCREMENT,
+    &molecule::answers::GIBBS_ENERGY,
+    &molecule::shares::CONTRIBUTIONS,
+    &molecule::limits::CLASSICAL_LIMIT,
+    &molecule::limits::EQUIPARTITION_TEMPERATURE,
+    &molecule::limits::ZERO_POINT,
+    &molecule::limits::GROUND_STATE,
+    &molecule::formation::FORMATION_ENTHALPY,
+    &molecule::power_fit::POWER_FIT,
     &remedy::CORRECTED,
     &remedy::WIDENED,
     &shortcut::VALID_TO,

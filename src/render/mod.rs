@@ -11,6 +11,7 @@ pub mod headline;
 pub mod html;
 pub mod interval;
 pub mod latex;
+pub mod molecule;
 pub mod plot;
 pub mod register;
 pub mod report;
@@ -68,6 +69,8 @@ pub fn answer(answer: &Answer) -> Bundle {
         Answer::Derivation(derivation) => derivation::bundle(derivation),
         Answer::Comparison(comparison) => comparison::bundle(comparison),
         Answer::Gap(gap) => gap::bundle(gap),
+        Answer::Shares(shares) => molecule::shares(shares),
+        Answer::PowerFit(fit) => molecule::power_fit(fit),
     }
 }
 

@@ -6,13 +6,19 @@
 //! harmonic vibrations stand in a list of their own, since a sweep over temperatures spends its time there.
 //! Source: any text of statistical mechanics, such as J. E. Mayer, M. G. Mayer (1940), chapters 7 to 9 (from memory).
 
+use std::rc::Rc;
+
 use crate::model::statmech::diatomic::Diatomic;
 use crate::model::statmech::hindered::Torsion;
 use crate::model::statmech::levels::{self, Level};
 use crate::model::statmech::rotation::{Sum, Top};
 use crate::model::statmech::vibration::{self, LowModes};
 use crate::model::statmech::{Change, Share, translation};
+use crate::num::math;
 use crate::units::constants::ConstantSet;
+
+/// Where a heat capacity that is held at its limit starts from true values: what an analyst has from a table.
+const JOINED_AT_K: f64 = 298.15;
 
 /// One independent part of a molecule.
 #[derive(Clone, Debug)]
@@ -20,12 +26,12 @@ pub enum Part {
     Rotation { top: Top, symmetry_number: f64, sum: Sum },
     /// `degeneracy` oscillators of one wavenumber.
     Vibration { theta_k: f64, degeneracy: f64, low: LowModes },
-    Torsion(Torsion),
+    Torsion(Rc<Torsion>),
     /// Vibration and rotation of a diatomic molecule together.
     Diatomic(Diatomic),
     /// Energies over k in kelvin from the lowest, with degeneracies.
     Electronic(Vec<Level>),
-    /// A part taken at its classical limit in Cv and U, and as it is in S: equipartition.
+    /// A part whose Cv is held at its classical limit, joined at 298.15 K to its true U and S: equipartition.
     Equipartition(Box<Part>),
 }
 
@@ -37,7 +43,11 @@ impl Part {
             Part::Torsion(torsion) => torsion.share(t_k),
             Part::Diatomic(diatomic) => diatomic.share(t_k),
             Part::Electronic(levels) => levels::share(levels.iter().copied(), t_k),
-            Part::Equipartition(part) => Share { cv: part.limit(), u: part.limit(), bend: 0.0, ..part.share(t_k) },
+            Part::Equipartition(part) => {
+                let (limit, at_0) = (part.limit(), part.share(JOINED_AT_K));
+                let u = (at_0.u * JOINED_AT_K + limit * (t_k - JOINED_AT_K)) / t_k;
+                Share { cv: limit, u, s: at_0.s + limit * math::ln(t_k / JOINED_AT_K), bend: 0.0 }
+            }
         }
     }
 
@@ -68,7 +78,8 @@ impl Part {
                 levels::changes_of(all.iter().copied().zip(slopes.iter().map(Vec::as_slice)), count, t_k)
             }
             Part::Equipartition(part) => {
-                part.changes(t_k).iter().map(|change| Change { cv: 0.0, u: 0.0, ..*change }).collect()
+                let scaled = |change: &Change| Change { cv: 0.0, u: change.u * JOINED_AT_K / t_k, s: change.s };
+                part.changes(JOINED_AT_K).iter().map(scaled).collect()
             }
         }
     }
