@@ -12,6 +12,7 @@ pub mod lookup;
 pub mod molecule;
 mod names;
 pub mod near;
+pub mod records;
 pub mod substance;
 mod tables;
 pub mod transition;

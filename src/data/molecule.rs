@@ -119,7 +119,7 @@ fn printed(text: &str) -> Option<Printed> {
 }
 
 /// Reads a file of molecular constants.
-pub(super) fn read(file: &Embedded, all: &mut Vec<Constants>) -> Result<(), TableFault> {
+pub(super) fn read(file: &Embedded<'_>, all: &mut Vec<Constants>) -> Result<(), TableFault> {
     let page: Page<'_> = dataset::parse(file)?;
     for record in page.records {
         let (id, citation, check) = (record.id.into(), Citation::new(record.source, record.obtained), record.check.into());

@@ -18,6 +18,8 @@ use crate::fault::{Explain, Fault, Place};
 use crate::model::answer::Answer;
 use crate::model::caution::Caution;
 use crate::model::molecule::Molecule;
+use crate::model::curve::Curve;
+use crate::model::grid::Grid;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::model::terms::Terms;
@@ -40,6 +42,9 @@ pub enum Value {
     Reaction(Rc<Reaction>),
     Substance(Rc<PureSubstance>),
     Molecule(Rc<Molecule>),
+    /// Temperatures at which a formula is asked in one call.
+    Grid(Rc<Grid>),
+    Curve(Rc<Curve>),
     /// What was asked of an uncertainty.
     Answer(Answer),
     /// Something no formula takes, by its name in words.
@@ -60,6 +65,8 @@ impl Value {
             Value::Reaction(_) => "a reaction",
             Value::Substance(_) => "a substance",
             Value::Molecule(_) => "a molecule",
+            Value::Grid(_) => "a grid of temperatures",
+            Value::Curve(_) => "a curve",
             Value::Answer(answer) => answer.sort(),
             Value::Other(name) => name,
             Value::Nothing => "nothing",
@@ -75,6 +82,7 @@ pub enum On {
     Reaction,
     Substance,
     Molecule,
+    Curve,
 }
 
 /// What an argument takes.
@@ -88,6 +96,8 @@ pub enum Takes {
     AnyQuantity,
     /// A temperature point: degC, degF or kelvin.
     Temperature,
+    /// The same, or a grid of them: then the formula is asked at each, and gives a curve.
+    Temperatures,
     Number,
     Text,
     Word(&'static [&'static str]),
@@ -156,6 +166,7 @@ pub struct Card {
 
 /// What formulas look up: substances and constants. Substances are read at their first use, since a start of the program
 /// that asks for none should not wait for them.
+#[derive(Clone)]
 pub struct References {
     catalog: OnceCell<Arc<Catalog>>,
     pub constants: &'static ConstantSet,
@@ -164,6 +175,11 @@ pub struct References {
 impl References {
     pub fn new(constants: &'static ConstantSet) -> Self {
         References { catalog: OnceCell::new(), constants }
+    }
+
+    /// Substances of another catalogue than the shipped one.
+    pub fn of(catalog: Arc<Catalog>, constants: &'static ConstantSet) -> Self {
+        References { catalog: OnceCell::from(catalog), constants }
     }
 
     pub fn catalog(&self) -> &Catalog {
@@ -267,6 +283,24 @@ impl Call {
         }
     }
 
+    /// A quantity given in the option map.
+    pub fn option_quantity(&self, name: &str) -> Option<&Quantity> {
+        let Some(Value::Options(options)) = self.args.last() else { return None };
+        match options.get(name) {
+            Some(Value::Quantity(value)) => Some(value),
+            _ => None,
+        }
+    }
+
+    /// The same call without one of its options.
+    #[must_use]
+    pub fn without_option(mut self, name: &str) -> Call {
+        if let Some(Value::Options(options)) = self.args.last_mut() {
+            Rc::make_mut(options).remove(name);
+        }
+        self
+    }
+
     /// The same call with one option set to another word.
     #[must_use]
     pub fn with_option(&self, name: &str, word: &str) -> Call {
@@ -296,10 +330,13 @@ impl Step for Call {
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
                 Value::Substance(substance) => words.push(substance.text().to_owned()),
                 Value::Molecule(molecule) => words.push(molecule.text().to_owned()),
+                Value::Grid(grid) => words.push(grid.words()),
+                Value::Curve(curve) => words.push(curve.words()),
                 Value::Options(options) => {
                     words.extend(options.iter().filter_map(|(name, value)| match value {
                         Value::Text(word) => Some(format!("{name}: {word}")),
                         Value::Number(number) => Some(format!("{name}: {number}")),
+                        Value::Quantity(value) => Some(format!("{name}: {}", text::shown(value))),
                         Value::List(list) => Some(format!("{name}: {} values", list.len())),
                         _ => None,
                     }));
@@ -415,6 +452,7 @@ impl Card {
             On::Reaction => "reaction.",
             On::Substance => "substance.",
             On::Molecule => "molecule.",
+            On::Curve => "curve.",
         };
         format!("{receiver}{}({})", self.name, args.join(", "))
     }
@@ -445,7 +483,13 @@ pub fn call(cx: &Cx, card: &'static Card, given: Vec<Value>) -> Result<Value, Fa
         };
         args.push(checked(cx, card, arg, value)?);
     }
-    (card.run)(cx, &Rc::new(Call { card, args }))
+    let at_a_grid = card
+        .args
+        .iter()
+        .zip(&args[receivers..])
+        .any(|pair| matches!(pair, (Arg { takes: Takes::Temperatures, .. }, Value::Grid(_))));
+    let call = Rc::new(Call { card, args });
+    if at_a_grid { Ok(Value::Curve(Rc::new(Curve::of_call(cx, call)?))) } else { (card.run)(cx, &call) }
 }
 
 fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Result<Value, Fault> {
@@ -466,7 +510,8 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
             Value::Quantity(quantity)
         }
         (Takes::AnyQuantity, value) => Value::Quantity(as_quantity(cx, value, |v| refused("a quantity", v))?),
-        (Takes::Temperature, value) => {
+        (Takes::Temperatures, Value::Grid(grid)) => Value::Grid(grid),
+        (Takes::Temperature | Takes::Temperatures, value) => {
             let wanted = "a temperature, as in `q(\"450 degC\")`";
             let quantity = as_quantity(cx, value, |v| refused(wanted, v))?;
             Value::Quantity(as_point(card, arg, quantity)?)
@@ -533,7 +578,7 @@ fn as_quantity(cx: &Cx, value: Value, refused: impl Fn(&Value) -> Fault) -> Resu
     }
 }
 
-fn as_point(card: &'static Card, arg: &'static Arg, value: Quantity) -> Result<Quantity, Fault> {
+pub(super) fn as_point(card: &'static Card, arg: &'static Arg, value: Quantity) -> Result<Quantity, Fault> {
     if !value.kind().what.is_temperature() {
         let given = match value.dim().is_none() {
             true => "a pure number".to_owned(),

@@ -17,52 +17,17 @@ use crate::data::function::Function;
 use crate::data::substance::Substance;
 use crate::fault::{Explain, Fault};
 use crate::model::card::Cx;
-use crate::model::function::{self, T_REFERENCE};
+use crate::model::first_order;
+use crate::model::function::{self, Functions, T_REFERENCE};
+pub use crate::model::heat_capacity::HeatCapacity;
+use crate::model::path::Route;
+use crate::model::tabulated;
 use crate::model::terms::{Term, Terms};
 use crate::model::thermo::{AtT, Thermo};
 use crate::num::math;
 use crate::record::evaluation::Evaluation;
 use crate::record::node::{Input, LeafKey, Node};
 use crate::source::Citation;
-
-/// How heat capacities are taken between 298.15 K and T.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum HeatCapacity {
-    /// The integral of the function.
-    Full,
-    /// Its value at 298.15 K throughout.
-    Constant,
-    /// Its value half-way between 298.15 K and T throughout.
-    Midpoint,
-    /// The mean of its values at both ends throughout.
-    Mean,
-    /// None: the value at 298.15 K stands for the value at T.
-    Neglected,
-}
-
-impl HeatCapacity {
-    pub const WORDS: &'static [&'static str] = &["full", "constant", "midpoint", "mean"];
-
-    /// How Cp was taken, for the register.
-    pub fn words(self) -> &'static str {
-        match self {
-            HeatCapacity::Full => "integrated",
-            HeatCapacity::Constant => "held at its value at 298.15 K",
-            HeatCapacity::Midpoint => "held at its value half-way",
-            HeatCapacity::Mean => "held at the mean of both ends",
-            HeatCapacity::Neglected => "neglected",
-        }
-    }
-
-    pub fn from_word(word: &str) -> HeatCapacity {
-        match word {
-            "constant" => HeatCapacity::Constant,
-            "midpoint" => HeatCapacity::Midpoint,
-            "mean" => HeatCapacity::Mean,
-            _ => HeatCapacity::Full,
-        }
-    }
-}
 
 /// Which formation enthalpies are used.
 #[derive(Clone, Debug, PartialEq)]
@@ -135,8 +100,14 @@ pub struct Slopes {
 pub enum GatherError {
     #[error("{t_k} K is outside the range of the data for {species}, {t_min} K to {t_max} K")]
     Range { species: String, t_k: f64, t_min: f64, t_max: f64 },
-    #[error("no heat capacity of {species} is at hand, so nothing can be said of it at {t_k} K")]
+    #[error(
+        "{phase} ends at {t_end} K on record, and the change to {gas} is not inserted on the way to {t_k} K: where it happens depends on the pressure"
+    )]
+    GasNotInserted { phase: String, gas: String, t_k: f64, t_end: f64 },
+    #[error("no heat capacity of {species} is at hand, so nothing can be said at {t_k} K")]
     NoFunction { species: String, t_k: f64 },
+    #[error("the heat capacity of {species} is on record at 298.15 K only, so it cannot be integrated to {t_k} K")]
+    ConstantOnly { species: String, t_k: f64 },
     #[error("no one dataset has the formation enthalpies of all species: {missing}")]
     NotCovered { missing: String },
     #[error("the dataset {dataset} has no formation enthalpy of {species}")]
@@ -151,7 +122,9 @@ impl Explain for GatherError {
     fn code(&self) -> &'static str {
         match self {
             GatherError::Range { .. } => "temperature-out-of-range",
+            GatherError::GasNotInserted { .. } => "gas-not-inserted",
             GatherError::NoFunction { .. } => "heat-capacity-missing",
+            GatherError::ConstantOnly { .. } => "heat-capacity-at-298-only",
             GatherError::NotCovered { .. } => "formation-not-covered",
             GatherError::NotInDataset { .. } => "formation-missing",
             GatherError::UnknownDataset { .. } => "dataset-unknown",
@@ -164,7 +137,14 @@ impl Explain for GatherError {
             GatherError::Range { species, t_min, t_max, .. } => format!(
                 "choose a temperature from {t_min} K to {t_max} K, or a phase of the substance that exists at this one, instead of {species}"
             ),
+            GatherError::GasNotInserted { gas, t_end, .. } => {
+                format!("write {gas} where the gas is meant, or choose a temperature up to {t_end} K")
+            }
             GatherError::NoFunction { .. } => "ask for 298.15 K, where the tables give it".to_owned(),
+            GatherError::ConstantOnly { .. } => {
+                "add `#{ heat_capacity: \"constant\" }` to hold it there for all species; the register then says what that rests on"
+                    .to_owned()
+            }
             GatherError::NotCovered { .. } => {
                 "mixing datasets is done on demand only: add `#{ formation: \"mixed\" }`, and the register prices it"
                     .to_owned()
@@ -337,10 +317,23 @@ pub const ENTROPY: &str = "entropy";
 pub fn contributions(reaction: &Terms, t_k: f64, method: &Method, cx: &Cx) -> Result<Vec<Contribution>, Fault> {
     let datasets = datasets_for(reaction, &method.formation, cx.data())?;
     let mut all = Vec::with_capacity(reaction.terms().len());
-    for (term, dataset) in reaction.terms().iter().zip(&datasets) {
+    tabulated::refuse(reaction, t_k, method.heat_capacity)?;
+    for (at, (term, dataset)) in reaction.terms().iter().zip(&datasets).enumerate() {
+        refuse_two_in_one(at, reaction, t_k, cx.data())?;
         all.push(contribution(term, dataset, t_k, method.heat_capacity, cx)?);
     }
     Ok(all)
+}
+
+/// Two phases that the equation tells apart stay two: a term whose route would pass into another one is meant as written.
+fn refuse_two_in_one(at: usize, terms: &Terms, t_k: f64, data: &Catalog) -> Result<(), GatherError> {
+    let term = &terms.terms()[at];
+    let (None, Some(function)) = (&term.own, &term.substance.function) else { return Ok(()) };
+    if function.covers(t_k) || !Route::to(&term.substance, t_k, data)?.meets_another_term(at, terms) {
+        return Ok(());
+    }
+    let (t_min, t_max) = (function.t_min, function.t_max);
+    Err(GatherError::Range { species: term.substance.id().to_owned(), t_k, t_min, t_max })
 }
 
 /// What one term contributes; its formation enthalpy must be in `dataset` ([`formation_of`]).
@@ -354,29 +347,20 @@ pub(crate) fn contribution(
     mode: HeatCapacity,
     cx: &Cx,
 ) -> Result<Contribution, Fault> {
+    if let HeatCapacity::FirstOrder { about_k } = mode {
+        return first_order::contribution(term, dataset, t_k, about_k, cx);
+    }
     let (substance, data) = (&term.substance, cx.data());
-    let species = || substance.species.id.to_string();
     let formation =
         term_formation(term, dataset, data).unwrap_or_else(|| unreachable!("the dataset was found to have it"));
     if let Some(own) = &term.own {
         return of_own(own.as_ref(), term, formation, t_k, mode, cx);
     }
     let Some(function) = &substance.function else {
-        if t_k != T_REFERENCE {
-            return Err(GatherError::NoFunction { species: species(), t_k }.into());
-        }
-        return Ok(Contribution {
-            nu: term.nu,
-            formation,
-            increment: None,
-            entropy: tabulated_entropy(substance),
-            cp: None,
-            slopes: Slopes::default(),
-        });
+        return tabulated::contribution(term, formation, t_k, mode);
     };
     if !function.covers(t_k) {
-        let (t_min, t_max) = (function.t_min, function.t_max);
-        return Err(GatherError::Range { species: species(), t_k, t_min, t_max }.into());
+        return Route::to(substance, t_k, data)?.contribution(term.nu, formation, mode);
     }
     let at_t = function::evaluate(function, t_k);
     let figure = |taken: &Drawn, field: &'static str, digit: f64| Figure {
@@ -440,13 +424,16 @@ fn of_own(
         entropy: at.entropy,
         cp: Some(at.cp),
     };
-    if mode == HeatCapacity::Full {
+    // It is one phase, so there is no change of phase to miss.
+    if matches!(mode, HeatCapacity::Full | HeatCapacity::Missed) {
         return Ok(whole(own.at(cx, t_k)?));
     }
     let at_0 = own.at(cx, T_REFERENCE)?;
     let (span, ln_ratio) = (t_k - T_REFERENCE, math::ln(t_k / T_REFERENCE));
     let (cp, cp_slope) = match mode {
-        HeatCapacity::Full => unreachable!("it was answered above"),
+        HeatCapacity::Full | HeatCapacity::Missed | HeatCapacity::FirstOrder { .. } => {
+            unreachable!("it was answered above")
+        }
         HeatCapacity::Constant => (at_0.cp.clone(), 0.0),
         HeatCapacity::Midpoint => {
             let middle = own.at(cx, 0.5 * (t_k + T_REFERENCE))?;
@@ -474,26 +461,52 @@ fn of_own(
 }
 
 /// A figure drawn from a function: at which temperature, and in which way where there are several.
-struct Drawn {
-    si: f64,
-    t_k: f64,
-    way: &'static str,
+pub(super) struct Drawn {
+    pub si: f64,
+    pub t_k: f64,
+    pub way: &'static str,
 }
 
-struct Taken {
-    increment: Drawn,
-    entropy: Drawn,
-    cp: Drawn,
-    slopes: Slopes,
+/// Figures of one species at T as a method takes the heat capacity.
+pub(super) struct Taken {
+    pub increment: Drawn,
+    pub entropy: Drawn,
+    pub cp: Drawn,
+    pub slopes: Slopes,
 }
 
-const INTEGRATED: &str = "integrated from 298.15 K";
+pub(super) const INTEGRATED: &str = "integrated from 298.15 K";
+pub(super) const AT_REFERENCE: &str = "Cp held at its value at 298.15 K";
+pub(super) const HALF_WAY: &str = "Cp held at its value half-way";
+pub(super) const BOTH_ENDS: &str = "Cp held at the mean of both ends";
+pub(super) const MEAN_OF_BOTH: &str = "mean of it and the one at 298.15 K";
+
+/// With Cp held at one value, whose own slope with T is `cp_slope`.
+pub(super) fn flat(at_0: Functions, t_k: f64, cp: Drawn, cp_slope: f64, way: &'static str) -> Taken {
+    let (span, ln_ratio) = (t_k - T_REFERENCE, math::ln(t_k / T_REFERENCE));
+    Taken {
+        increment: Drawn { si: cp.si * span, t_k, way },
+        entropy: Drawn { si: at_0.s + cp.si * ln_ratio, t_k, way },
+        slopes: Slopes { increment: cp.si + cp_slope * span, entropy: cp.si / t_k + cp_slope * ln_ratio, cp: cp_slope },
+        cp,
+    }
+}
+
+/// With the values at 298.15 K.
+pub(super) fn neglected(at_0: Functions, t_k: f64) -> Taken {
+    Taken {
+        increment: Drawn { si: 0.0, t_k, way: "neglected" },
+        entropy: Drawn { si: at_0.s, t_k: T_REFERENCE, way: "" },
+        cp: Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" },
+        slopes: Slopes::default(),
+    }
+}
 
 /// Increment and entropy between 298.15 K and T, as the method takes the heat capacity.
 ///
 /// A phase that does not reach down to 298.15 K has no heat capacity there, and is always integrated: its enthalpy scale
 /// continues that of the phase it forms from.
-fn between(function: &Function, h_298: f64, t_k: f64, at_t: function::Functions, mode: HeatCapacity) -> Taken {
+fn between(function: &Function, h_298: f64, t_k: f64, at_t: Functions, mode: HeatCapacity) -> Taken {
     let slope = function::cp_slope(function, t_k);
     let integrated = |h_298: f64| Taken {
         increment: Drawn { si: at_t.h - h_298, t_k, way: INTEGRATED },
@@ -505,51 +518,25 @@ fn between(function: &Function, h_298: f64, t_k: f64, at_t: function::Functions,
         return integrated(h_298);
     }
     let at_0 = function::evaluate(function, T_REFERENCE);
-    let (span, ln_ratio) = (t_k - T_REFERENCE, math::ln(t_k / T_REFERENCE));
-    let flat = |cp: Drawn, cp_slope: f64, way: &'static str| Taken {
-        increment: Drawn { si: cp.si * span, t_k, way },
-        entropy: Drawn { si: at_0.s + cp.si * ln_ratio, t_k, way },
-        slopes: Slopes { increment: cp.si + cp_slope * span, entropy: cp.si / t_k + cp_slope * ln_ratio, cp: cp_slope },
-        cp,
-    };
     match mode {
-        HeatCapacity::Full => integrated(at_0.h),
+        // Within one record there is no change of phase to miss.
+        HeatCapacity::Full | HeatCapacity::Missed => integrated(at_0.h),
+        HeatCapacity::FirstOrder { .. } => unreachable!("it is a sum of two full integrals"),
         HeatCapacity::Constant => {
             let cp = Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" };
-            flat(cp, 0.0, "Cp held at its value at 298.15 K")
+            flat(at_0, t_k, cp, 0.0, AT_REFERENCE)
         }
         HeatCapacity::Midpoint => {
             let middle = 0.5 * (t_k + T_REFERENCE);
             let cp = Drawn { si: function::evaluate(function, middle).cp, t_k: middle, way: "" };
-            flat(cp, 0.5 * function::cp_slope(function, middle), "Cp held at its value half-way")
+            flat(at_0, t_k, cp, 0.5 * function::cp_slope(function, middle), HALF_WAY)
         }
         HeatCapacity::Mean => {
-            let cp = Drawn { si: 0.5 * (at_0.cp + at_t.cp), t_k, way: "mean of it and the one at 298.15 K" };
-            flat(cp, 0.5 * slope, "Cp held at the mean of both ends")
+            let cp = Drawn { si: 0.5 * (at_0.cp + at_t.cp), t_k, way: MEAN_OF_BOTH };
+            flat(at_0, t_k, cp, 0.5 * slope, BOTH_ENDS)
         }
-        HeatCapacity::Neglected => Taken {
-            increment: Drawn { si: 0.0, t_k, way: "neglected" },
-            entropy: Drawn { si: at_0.s, t_k: T_REFERENCE, way: "" },
-            cp: Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" },
-            slopes: Slopes::default(),
-        },
+        HeatCapacity::Neglected => neglected(at_0, t_k),
     }
-}
-
-/// The entropy at 298.15 K from a table, for species without a function, such as ions in solution.
-fn tabulated_entropy(substance: &Substance) -> Option<Figure> {
-    let record = substance.formations.iter().find(|record| record.s.is_some())?;
-    let datum = record.s.as_ref()?;
-    let digit = if datum.is_convention() { None } else { Some(datum.last_place()) };
-    let key = LeafKey::Datum {
-        dataset: record.dataset.shared(),
-        record: substance.species.id.clone(),
-        field: ENTROPY,
-        t_bits: 0,
-        way: "",
-    };
-    let input = Input { u: datum.u, digit, citation: Some(record.citation.clone()), ..Input::of(key) };
-    Some(Figure { si: datum.value, origin: input.into(), printed: Some(datum.printed.clone()) })
 }
 
 #[cfg(test)]

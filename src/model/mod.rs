@@ -11,15 +11,22 @@ pub mod check_line;
 pub mod claims;
 pub mod compare;
 pub mod conditions;
+pub mod curve;
+pub mod curve_card;
+pub mod cycle;
 pub mod derivation;
 pub mod expanded;
+pub mod first_order;
 pub mod function;
 pub mod gap;
 pub mod gather;
+pub mod grid;
+pub mod heat_capacity;
 pub mod linearity;
 pub mod mass;
 pub mod molecule;
 pub mod monte_carlo;
+pub mod path;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
@@ -32,6 +39,7 @@ pub mod shortcut;
 pub mod statmech;
 pub mod substance;
 pub mod symbols;
+pub mod tabulated;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
@@ -51,6 +59,7 @@ pub const CARDS: &[&Card] = &[
     &property_card::ENTROPY,
     &property_card::HEAT_CAPACITY,
     &property_card::EQUILIBRIUM_CONSTANT,
+    &cycle::CYCLE,
     &property_card::SUBSTANCE_ENTHALPY,
     &property_card::SUBSTANCE_INTERNAL_ENERGY,
     &property_card::SUBSTANCE_GIBBS_ENERGY,
@@ -78,6 +87,17 @@ pub const CARDS: &[&Card] = &[
     &remedy::WIDENED,
     &shortcut::VALID_TO,
     &shortcut::COMPARE_SHORTCUTS,
+    &grid::GRID,
+    &grid::GRID_OF,
+    &curve_card::X,
+    &curve_card::Y,
+    &curve_card::AT,
+    &curve_card::TO,
+    &curve_card::VALUES,
+    &curve_card::UNCERTAINTIES,
+    &curve_card::MIN,
+    &curve_card::MAX,
+    &curve_card::CROSSINGS,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,

@@ -4,9 +4,11 @@ use std::rc::Rc;
 
 use crate::fault::Fault;
 use crate::model::card::{Alternative, Arg, Call, Card, Claim, Cx, Default, On, Sources, Takes, Value};
+use crate::model::check_line;
 use crate::model::claims;
 use crate::model::gather::{self, Contribution, Figure, HeatCapacity};
 use crate::model::property::{self, Property};
+use crate::model::shortcut::ABOUT;
 use crate::quantity::Quantity;
 
 fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
@@ -20,16 +22,13 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     let (Some(terms), t_k) = (call.terms(), call.quantity(1).si()) else { return String::new() };
     let Ok(method) = property::method_of(call, cx) else { return String::new() };
     let Ok(contributions) = gather::contributions(terms, t_k, &method, cx) else { return String::new() };
-    let kilo = |figure: &Figure| match &figure.printed {
-        Some(printed) => printed.to_string(),
-        None => format!("{:.3}", figure.si / 1000.0),
-    };
-    let plain =
-        |figure: &Figure| figure.printed.as_ref().map_or_else(|| format!("{:.3}", figure.si), ToString::to_string);
+    let plain = |si: f64| format!("{si:.3}");
     let enthalpy = |sources: &mut Sources| {
-        let formation = sum_of(&contributions, sources, |c| Some(&c.formation), kilo);
-        let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), kilo);
-        if increments.is_empty() { formation } else { format!("({formation}) + ({increments})") }
+        let formation = sum_of(&contributions, sources, |c| Some(&c.formation), check_line::kilo);
+        let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), check_line::kilo);
+        let whole =
+            |sum: String| if sum.starts_with('(') && contributions.len() == 1 { sum } else { format!("({sum})") };
+        if increments.is_empty() { formation } else { format!("({formation}) + {}", whole(increments)) }
     };
     let entropies = |sources: &mut Sources| sum_of(&contributions, sources, |c| c.entropy.as_ref(), plain);
     let result = format!("{:.3} kJ/mol", value.si() / 1000.0);
@@ -75,13 +74,12 @@ fn sum_of<'a>(
     contributions: &'a [Contribution],
     sources: &mut Sources,
     pick: impl Fn(&'a Contribution) -> Option<&'a Figure>,
-    show: impl Fn(&Figure) -> String,
+    show: impl Fn(f64) -> String,
 ) -> String {
     let mut line = String::new();
     for contribution in contributions {
         let Some(figure) = pick(contribution) else { continue };
-        let (nu, shown) = (contribution.nu, show(figure));
-        let source = figure.citation().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+        let (nu, shown) = (contribution.nu, check_line::figures_of(figure, sources, &show));
         line.push_str(match (line.is_empty(), nu < 0.0) {
             (true, false) => "",
             (true, true) => "-",
@@ -91,7 +89,7 @@ fn sum_of<'a>(
         if nu.abs() != 1.0 {
             line.push_str(&format!("{} × ", nu.abs()));
         }
-        line.push_str(&if shown.starts_with('-') { format!("({shown}){source}") } else { format!("{shown}{source}") });
+        line.push_str(&shown);
     }
     line
 }
@@ -103,6 +101,7 @@ const OPTIONS: &[Arg] = &[
         default: Default::Absent,
         doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
     },
+    ABOUT,
     Arg {
         name: "formation",
         takes: Takes::Text,
@@ -111,17 +110,24 @@ const OPTIONS: &[Arg] = &[
     },
 ];
 
-const HEAT_CAPACITY_ONLY: &[Arg] = &[Arg {
-    name: "heat_capacity",
-    takes: Takes::Word(HeatCapacity::WORDS),
-    default: Default::Absent,
-    doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
-}];
+const HEAT_CAPACITY_ONLY: &[Arg] = &[
+    Arg {
+        name: "heat_capacity",
+        takes: Takes::Word(HeatCapacity::WORDS),
+        default: Default::Absent,
+        doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
+    },
+    ABOUT,
+];
 
-const TEMPERATURE: Arg =
-    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "temperature: degC, degF or kelvin" };
+const TEMPERATURE: Arg = Arg {
+    name: "T",
+    takes: Takes::Temperatures,
+    default: Default::Required,
+    doc: "temperature: degC, degF or kelvin; with a grid of temperatures the answer is a curve",
+};
 
-const ARGS: &[Arg] = &[
+pub(super) const ARGS: &[Arg] = &[
     TEMPERATURE,
     Arg {
         name: "options",
@@ -147,10 +153,14 @@ const FORMATION_DATASET: Claim = Claim { id: "formation-dataset", test: claims::
 const IDEAL_GAS: Claim = Claim { id: "ideal-gas", test: claims::ideal_gas };
 const CONDENSED_VOLUME: Claim = Claim { id: "condensed-volume-neglected", test: claims::condensed_volume };
 
-const ENERGY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET];
+const AQUEOUS: Claim = Claim { id: "aqueous-heat-capacity", test: claims::aqueous_heat_capacity };
+const SATURATED_VAPOUR: Claim = Claim { id: "saturated-vapour-ideal", test: claims::vapour_of_records };
+
+const ENTHALPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET, SATURATED_VAPOUR];
+const ENERGY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET];
 const GAS_LAW_CLAIMS: &[Claim] =
-    &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET, IDEAL_GAS, CONDENSED_VOLUME];
-const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE];
+    &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET, IDEAL_GAS, CONDENSED_VOLUME];
+const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE];
 
 const SHORTCUTS: &[Alternative] = &[
     Alternative {
@@ -158,7 +168,33 @@ const SHORTCUTS: &[Alternative] = &[
         words: "with ΔCp held at its value at 298.15 K",
         value: claims::with_constant_heat_capacity,
     },
+    Alternative {
+        id: "midpoint",
+        words: "with ΔCp held at its value half-way",
+        value: claims::with_midpoint_heat_capacity,
+    },
+    Alternative {
+        id: "mean", words: "with ΔCp held at the mean of both ends", value: claims::with_mean_heat_capacity
+    },
     Alternative { id: "no-correction", words: "with the value at 298.15 K", value: claims::without_correction },
+    Alternative {
+        id: "missed-phase-change",
+        words: "with the changes of phase left out, Cp of the phase as written held on",
+        value: claims::with_missed_phase_change,
+    },
+    Alternative {
+        id: "internal-energy-for-enthalpy",
+        words: "with ΔrU in place of ΔrH",
+        value: claims::with_internal_energy,
+    },
+    Alternative {
+        id: "enthalpy-for-internal-energy", words: "with ΔrH in place of ΔrU", value: claims::with_enthalpy
+    },
+    Alternative {
+        id: "standard-pressure",
+        words: "with gases counted from 1 atm, as in tables before 1982",
+        value: claims::with_atmosphere,
+    },
 ];
 
 const SOURCE: &str = "definitions of the state functions; IUPAC Green Book, 3rd ed., section 2.11 (from memory)";
@@ -200,7 +236,7 @@ reaction_card!(
     "reaction.enthalpy",
     "enthalpy",
     ARGS,
-    ENERGY_CLAIMS,
+    ENTHALPY_CLAIMS,
     "ΔrH° per mole of reaction as written",
     "Reaction enthalpy at T. ΔrH°(T) = Σ ν [ΔfH°(298.15 K) + H(T) - H(298.15 K)], each species pure, in its standard \
      state, p° = 1 bar; formation enthalpies from one dataset."

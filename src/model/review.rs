@@ -58,6 +58,8 @@ pub struct Row {
     pub note: String,
     /// What was decided about it.
     pub dealt: Option<String>,
+    /// Whether it needs nothing more: it holds, was justified, or its price is in u. What is untested is open.
+    pub answered: bool,
 }
 
 /// A shortcut not taken.
@@ -106,7 +108,7 @@ pub fn review(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing]) -> R
     }
     Review {
         about: conditions::about(value),
-        conditions: conditions::line(value),
+        conditions: conditions::line(cx, value),
         check_line,
         tolerance: at.in_unit(at.tolerance),
         precision: at.half_digit,
@@ -213,7 +215,10 @@ fn row(at: &At, group: &[Finding], judgement: Judgement, dealings: &[&Dealing]) 
         Decided::Tolerated { written, .. } => format!("tolerated up to {written}"),
     };
     let mut dealt: Vec<String> = dealings.iter().map(words).collect();
-    dealt.extend(widened_by(at, group));
+    let widened = widened_by(at, group);
+    let justified = dealings.iter().any(|dealing| matches!(dealing.decided, Decided::Justified { .. }));
+    let answered = status == Status::Holds || justified || widened.is_some();
+    dealt.extend(widened);
     let places = listed_once(group.iter().filter_map(|finding| finding.at.place().map(ToString::to_string)));
     Row {
         id: group[0].id.to_string(),
@@ -225,6 +230,7 @@ fn row(at: &At, group: &[Finding], judgement: Judgement, dealings: &[&Dealing]) 
         first_order,
         note: listed_once(group.iter().map(note)),
         dealt: (!dealt.is_empty()).then(|| dealt.join("; ")),
+        answered,
     }
 }
 
@@ -343,6 +349,7 @@ pub fn silent_inputs(value: &Quantity) -> Vec<(String, Vec<String>)> {
 }
 
 fn plural(field: &str) -> String {
+    // "transition enthalpies", "heat capacities", "typed values".
     match field.strip_suffix('y') {
         Some(stem) => format!("{stem}ies"),
         None => format!("{field}s"),

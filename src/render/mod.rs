@@ -5,6 +5,8 @@
 
 pub mod budget;
 pub mod comparison;
+pub mod curve;
+pub mod cycle;
 pub mod derivation;
 pub mod gap;
 pub mod headline;
@@ -15,6 +17,7 @@ pub mod molecule;
 pub mod plot;
 pub mod register;
 pub mod report;
+pub mod shortcut;
 pub mod text;
 
 use std::collections::BTreeMap;
@@ -68,9 +71,12 @@ pub fn answer(answer: &Answer) -> Bundle {
         Answer::Propagation(propagation) => interval::propagation(propagation),
         Answer::Derivation(derivation) => derivation::bundle(derivation),
         Answer::Comparison(comparison) => comparison::bundle(comparison),
+        Answer::Cycle(cycle) => cycle::bundle(cycle),
         Answer::Gap(gap) => gap::bundle(gap),
         Answer::Shares(shares) => molecule::shares(shares),
         Answer::PowerFit(fit) => molecule::power_fit(fit),
+        Answer::Validity(validity) => shortcut::validity(validity),
+        Answer::SideBySide(ways) => shortcut::side_by_side(ways),
     }
 }
 

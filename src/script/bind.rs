@@ -16,6 +16,8 @@ use crate::model::CARDS;
 use crate::model::answer::Answer;
 use crate::model::card::{self, Card, Cx, On, Value};
 use crate::model::molecule::Molecule;
+use crate::model::curve::Curve;
+use crate::model::grid::Grid;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::quantity::{Quantity, text};
@@ -82,6 +84,7 @@ fn receiver(on: On) -> Option<TypeId> {
         On::Reaction => Some(TypeId::of::<Rc<Reaction>>()),
         On::Substance => Some(TypeId::of::<Rc<PureSubstance>>()),
         On::Molecule => Some(TypeId::of::<Rc<Molecule>>()),
+        On::Curve => Some(TypeId::of::<Rc<Curve>>()),
     }
 }
 
@@ -98,6 +101,12 @@ pub fn to_value(value: &Dynamic) -> Value {
     }
     if let Some(molecule) = value.read_lock::<Rc<Molecule>>() {
         return Value::Molecule(Rc::clone(&molecule));
+    }
+    if let Some(grid) = value.read_lock::<Rc<Grid>>() {
+        return Value::Grid(Rc::clone(&grid));
+    }
+    if let Some(curve) = value.read_lock::<Rc<Curve>>() {
+        return Value::Curve(Rc::clone(&curve));
     }
     if let Some(answer) = value.read_lock::<Answer>() {
         return Value::Answer(answer.clone());
@@ -138,6 +147,8 @@ fn from_value(value: Value) -> Dynamic {
         Value::Reaction(reaction) => Dynamic::from(reaction),
         Value::Substance(substance) => Dynamic::from(substance),
         Value::Molecule(molecule) => Dynamic::from(molecule),
+        Value::Grid(grid) => Dynamic::from(grid),
+        Value::Curve(curve) => Dynamic::from(curve),
         Value::Answer(answer) => Dynamic::from(answer),
         Value::Nothing => Dynamic::UNIT,
     }

@@ -358,3 +358,115 @@ answer_card!(
     "G°(T) - H°(298.15 K) per mole of the gas",
     "Gibbs energy counted from the enthalpy of the gas itself at 298.15 K: H(T) - H(298.15 K) - T S°(T), p° = 1 bar."
 );
+
+#[cfg(test)]
+mod tests {
+    use std::cell::Cell;
+    use std::collections::BTreeMap;
+
+    use super::*;
+    use crate::model::card::{self, References};
+    use crate::model::molecule::{read, shipped};
+    use crate::units::constants;
+
+    fn with_cx<T>(work: impl FnOnce(&Cx) -> T) -> T {
+        let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
+        work(&Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None })
+    }
+
+    fn ask(cx: &Cx, molecule: &Rc<Molecule>, card: &'static Card, t: &str) -> Quantity {
+        match card::call(cx, card, vec![Value::Molecule(Rc::clone(molecule)), Value::Text(t.into())]).unwrap() {
+            Value::Quantity(value) => value,
+            other => panic!("{} gives {}", card.id, other.sort()),
+        }
+    }
+
+    /// An invented molecule of every sort of part, with one figure moved by a relative step.
+    fn invented(cx: &Cx, moved: usize, step: f64) -> Rc<Molecule> {
+        let figures = [2.0, 0.4, 0.3, 1500.0, 300.0, 80.0, 9.0, 700.0, 900.0, 0.97];
+        let at = |nth: usize| figures[nth] * if nth == moved { 1.0 + step } else { 1.0 };
+        let per_cm = |nth: usize| Value::Text(format!("{:.17e}(1) cm^-1", at(nth)).into());
+        let list = |all: &[usize]| Value::List(all.iter().map(|nth| per_cm(*nth)).collect());
+        let options = |all: Vec<(&str, Value)>| {
+            Value::Options(Rc::new(all.into_iter().map(|(k, v)| (k.to_owned(), v)).collect::<BTreeMap<_, _>>()))
+        };
+        let torsion = options(vec![
+            ("rotational_constant", per_cm(6)),
+            ("barrier", per_cm(7)),
+            ("symmetry_number", Value::Number(3.0)),
+        ]);
+        let level = |value: Value, g: f64| Value::List(vec![value, Value::Number(g)]);
+        let map = options(vec![
+            ("formula", Value::Text("XeF3".into())),
+            ("symmetry_number", Value::Number(2.0)),
+            ("rotational_constants", list(&[0, 1, 2])),
+            ("vibrations", Value::List(vec![per_cm(3), level(per_cm(4), 3.0), per_cm(5)])),
+            ("torsions", Value::List(vec![torsion])),
+            ("electronic_levels", Value::List(vec![level(Value::Text("0 cm^-1".into()), 2.0), level(per_cm(8), 4.0)])),
+            ("scale", Value::Number(at(9))),
+        ]);
+        let Value::Options(map) = map else { unreachable!() };
+        Rc::new(read::molecule(cx, &map).unwrap())
+    }
+
+    #[test]
+    fn answers_of_one_molecule_are_consistent() {
+        with_cx(|cx| {
+            let molecule = invented(cx, usize::MAX, 0.0);
+            let at = |card: &'static Card, t: &str| ask(cx, &molecule, card, t).si();
+            let r = constants::current().molar_gas.value;
+            let close = |a: f64, b: f64, allowed: f64| assert!((a - b).abs() < allowed, "{a} {b}");
+            // Bound: rounding of values near 1e2 and 1e4.
+            close(at(&HEAT_CAPACITY, "500 K") - at(&HEAT_CAPACITY_V, "500 K"), r, 1e-12);
+            close(
+                at(&GIBBS_ENERGY, "500 K"),
+                at(&ENTHALPY_INCREMENT, "500 K") - 500.0 * at(&ENTROPY, "500 K"),
+                1e-8,
+            );
+            close(at(&ENTHALPY_INCREMENT, "298.15 K"), 0.0, 1e-9);
+            // Bound: central differences over 2 × 0.5 K, h²/6 of a third derivative.
+            let slope = |card| at(card, "500.5 K") - at(card, "499.5 K");
+            close(slope(&ENTHALPY_INCREMENT), at(&HEAT_CAPACITY, "500 K"), 1e-4);
+            close(500.0 * slope(&ENTROPY), at(&HEAT_CAPACITY, "500 K"), 1e-3);
+            for card in [&HEAT_CAPACITY, &ENTROPY, &ENTHALPY_INCREMENT, &GIBBS_ENERGY] {
+                let value = ask(cx, &molecule, card, "500.00(1) K");
+                let of_t = value.sensitivities().into_iter().find(|s| s.leaf.si() == 500.0).unwrap();
+                close(of_t.derivative, slope(card), 1e-4 * (1.0 + slope(card).abs()));
+            }
+        });
+    }
+
+    #[test]
+    fn u_of_each_input_reaches_each_answer_as_differences_say() {
+        with_cx(|cx| {
+            let base = invented(cx, usize::MAX, 0.0);
+            for card in [&HEAT_CAPACITY, &ENTROPY, &ENTHALPY_INCREMENT, &GIBBS_ENERGY] {
+                let value = ask(cx, &base, card, "450 K");
+                for nth in 0..9 {
+                    let h = 1e-4;
+                    let moved = |step: f64| ask(cx, &invented(cx, nth, step), card, "450 K").si();
+                    let difference = (moved(h) - moved(-h)) / (2.0 * h);
+                    // The input is found by its value: cm⁻¹ to m⁻¹ is a factor of 100.
+                    let figure = [2.0, 0.4, 0.3, 1500.0, 300.0, 80.0, 9.0, 700.0, 900.0][nth] * 100.0;
+                    let found = value.sensitivities().into_iter().find(|s| (s.leaf.si() / figure - 1.0).abs() < 1e-12);
+                    let got = found.map_or(0.0, |s| s.derivative * figure);
+                    // Bound: a relative step of 1e-4 leaves 1e-8 of a third derivative of up to 1e4 J/mol.
+                    assert!((got - difference).abs() < 2e-4, "{} by {nth}: {got} {difference}", card.id);
+                }
+            }
+        });
+    }
+
+    #[test]
+    fn a_molecule_of_the_tables_has_the_entropy_of_argon_and_the_limits_of_carbon_dioxide() {
+        with_cx(|cx| {
+            let argon = Rc::new(shipped::molecule(cx, "Ar").unwrap());
+            // CODATA Key Values for Thermodynamics (1989), table at the CODATA site: 154.846 ± 0.003 J/(mol K).
+            assert!((ask(cx, &argon, &ENTROPY, "298.15 K").si() - 154.846).abs() < 0.003);
+            let r = constants::current().molar_gas.value;
+            let oxide = shipped::molecule(cx, "CO2").unwrap();
+            assert_eq!(oxide.gas().classical_limit(), 7.5);
+            assert!(oxide.gas().functions(2.0, constants::current()).cp < 3.5 * r + 1e-6, "vibrations are frozen");
+        });
+    }
+}

@@ -155,3 +155,40 @@ fn isotopologue_mass(record: &Constants, printed: &Printed) -> Result<Parameter,
 pub fn published(molecule: &Rc<Molecule>) -> Option<&crate::data::function::Function> {
     molecule.definition().substance.function.as_deref()
 }
+
+#[cfg(test)]
+mod tests {
+    use std::cell::Cell;
+
+    use super::*;
+    use crate::model::card::References;
+    use crate::units::constants;
+
+    #[test]
+    fn every_record_makes_a_molecule_with_all_its_modes() {
+        let (references, ordinal) = (References::new(constants::current()), Cell::new(0));
+        let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
+        let mut seen = 0;
+        for record in cx.data().molecules() {
+            let molecule = molecule(&cx, &record.id).unwrap_or_else(|fault| panic!("{}: {fault}", record.id));
+            let definition = molecule.definition();
+            let atoms = definition.substance.species.composition.iter().map(|(_, n)| n.to_f64()).sum::<f64>();
+            let modes = match &definition.motion {
+                Motion::Atom => 0.0,
+                Motion::Diatomic { .. } => 1.0,
+                Motion::Polyatomic { vibrations, torsions, .. } => {
+                    vibrations.iter().map(|(_, g)| g).sum::<f64>() + torsions.len() as f64
+                }
+            };
+            let rotations = match &definition.motion {
+                Motion::Atom => 0.0,
+                Motion::Polyatomic { top, .. } if top.len() == 3 => 3.0,
+                _ => 2.0,
+            };
+            assert_eq!(modes + rotations + 3.0, 3.0 * atoms, "{}", record.id);
+            assert_eq!(definition.electronic[0].0.value, 0.0, "{}", record.id);
+            seen += 1;
+        }
+        assert_eq!(seen, 63);
+    }
+}
