@@ -122,7 +122,8 @@ fn printed(text: &str) -> Option<Printed> {
 pub(super) fn read(file: &Embedded<'_>, all: &mut Vec<Constants>) -> Result<(), TableFault> {
     let page: Page<'_> = dataset::parse(file)?;
     for record in page.records {
-        let (id, citation, check) = (record.id.into(), Citation::new(record.source, record.obtained), record.check.into());
+        let (id, citation, check) =
+            (record.id.into(), Citation::new(record.source, record.obtained), record.check.into());
         let unreadable = || TableFault::Figure {
             path: file.path.to_owned(),
             record: record.id.to_owned(),

@@ -33,8 +33,8 @@ pub fn line(cx: &Cx, value: &Quantity) -> String {
             parts.push("each solute in its ideal solution of 1 mol/kg".to_owned());
         }
     }
-    let per_substance =
-        call_of(value.node()).is_some_and(|call| matches!(call.args.first(), Some(Value::Substance(_) | Value::Molecule(_))));
+    let per_substance = call_of(value.node())
+        .is_some_and(|call| matches!(call.args.first(), Some(Value::Substance(_) | Value::Molecule(_))));
     if let (Some(zero), true) = (&state.zero, per_substance) {
         parts.push(format!("counted from {zero}"));
     }
@@ -113,7 +113,9 @@ pub fn symbol(value: &Quantity) -> String {
         );
         let of = if what == What::G { "G°" } else { "H" };
         let from = if what == What::G { "H°" } else { "H" };
-        return t_k.map_or_else(String::new, |t_k| format!("{r}{of}({} K) - {r}{from}({} K)", rounded(t_k), rounded(*from_k)));
+        return t_k.map_or_else(String::new, |t_k| {
+            format!("{r}{of}({} K) - {r}{from}({} K)", rounded(t_k), rounded(*from_k))
+        });
     }
     match &call.args[..] {
         [Value::Reaction(_), ..] if what == What::K => what.symbol().to_owned(),

@@ -3,6 +3,7 @@
 //! [`CARDS`] is the one list of what the program can compute. Script binding, help, catalogue and checks read it.
 
 pub mod answer;
+pub mod argument;
 pub mod basis;
 pub mod budget;
 pub mod card;

@@ -136,23 +136,25 @@ pub static REACTION: Card = Card {
     id: "reaction.read",
     name: "reaction",
     on: On::Nothing,
-    args: &[Arg {
-        name: "equation",
-        takes: Takes::Text,
-        default: Default::Required,
-        doc: "a balanced equation with phases, `CO(g) + H2O(g) -> CO2(g) + H2(g)`; coefficients are integers, decimals or fractions",
-    },
-    Arg {
-        name: "options",
-        takes: Takes::Options(&[Arg {
-            name: "own",
-            takes: Takes::Any,
-            default: Default::Absent,
-            doc: "substances of one's own in place of records, by their names in the equation: #{ \"CO2(g)\": molecule(\"CO2\") }",
-        }]),
-        default: Default::NoOptions,
-        doc: "what stands for some of the names",
-    }],
+    args: &[
+        Arg {
+            name: "equation",
+            takes: Takes::Text,
+            default: Default::Required,
+            doc: "a balanced equation with phases, `CO(g) + H2O(g) -> CO2(g) + H2(g)`; coefficients are integers, decimals or fractions",
+        },
+        Arg {
+            name: "options",
+            takes: Takes::Options(&[Arg {
+                name: "own",
+                takes: Takes::Any,
+                default: Default::Absent,
+                doc: "substances of one's own in place of records, by their names in the equation: #{ \"CO2(g)\": molecule(\"CO2\") }",
+            }]),
+            default: Default::NoOptions,
+            doc: "what stands for some of the names",
+        },
+    ],
     gives: "a reaction",
     doc: "Reads a reaction. Each species names its phase: (g), (l), (cr), (aq), or a crystal form as in C(cr,graphite). \
           Elements and charge must balance.",

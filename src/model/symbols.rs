@@ -123,7 +123,9 @@ static MOLECULE_CP: Formula = Formula {
 static MOLECULE_CV: Formula =
     Formula { text: "Cv(T) = R Σ Cv/R", latex: r"C_V(T)=R\sum C_V/R", symbols: &[SHARES, GAS_CONSTANT, TEMPERATURE] };
 static MOLECULE_S: Formula =
-    Formula { text: "S°(T) = R Σ S/R", latex: r"S^\circ(T)=R\sum S/R", symbols: &[SHARES, GAS_CONSTANT, TEMPERATURE] };
+    Formula {
+        text: "S°(T) = R Σ S/R", latex: r"S^\circ(T)=R\sum S/R", symbols: &[SHARES, GAS_CONSTANT, TEMPERATURE]
+    };
 static MOLECULE_H: Formula = Formula {
     text: "H(T) - H(T0) = R T (1 + Σ U/RT) - R T0 (1 + Σ U/RT0)",
     latex: r"H(T)-H(T_0)=RT\,(1+\sum U/RT)-RT_0\,(1+\sum U/RT_0)",

@@ -52,7 +52,14 @@ fn rows(shares: &Shares) -> Vec<[String; 6]> {
         rows.push([row.name.clone(), number(row.cp), limit, of_limit, share, number(row.s)]);
     }
     let of_limit = percent(shares.cp() / shares.limit());
-    let total = ["together".to_owned(), number(shares.cp()), number(shares.limit()), of_limit, percent(1.0), number(shares.s())];
+    let total = [
+        "together".to_owned(),
+        number(shares.cp()),
+        number(shares.limit()),
+        of_limit,
+        percent(1.0),
+        number(shares.s()),
+    ];
     rows.push(total);
     rows
 }

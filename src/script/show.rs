@@ -11,9 +11,9 @@ use rhai::{Array, Blob, Dynamic, Engine, FnPtr, ImmutableString, Map};
 
 use crate::fault::Fault;
 use crate::model::answer::Answer;
-use crate::model::molecule::Molecule;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
+use crate::model::molecule::Molecule;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::quantity::Quantity;

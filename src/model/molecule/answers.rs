@@ -90,7 +90,13 @@ pub struct Answered {
 ///
 /// # Errors
 /// A temperature is outside [`RANGE_K`].
-pub fn answered(molecule: &Molecule, asked: Asked, t_k: f64, from_k: f64, set: &ConstantSet) -> Result<Answered, Fault> {
+pub fn answered(
+    molecule: &Molecule,
+    asked: Asked,
+    t_k: f64,
+    from_k: f64,
+    set: &ConstantSet,
+) -> Result<Answered, Fault> {
     within(molecule, t_k)?;
     within(molecule, from_k)?;
     let r = set.molar_gas.value;
@@ -202,15 +208,15 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     let Some(asked) = Asked::of(call.card) else { return String::new() };
     let (molecule, t_k, from_k) = (molecule_of(call), call.quantity(1).si(), start_k(call));
     let (set, r) = (cx.constants(), cx.constants().molar_gas.value);
-    let of = |share: &dyn Fn(f64) -> Share| {
-        r * asked.combined(as_change(share(t_k)), as_change(share(from_k)), t_k, from_k)
-    };
+    let of =
+        |share: &dyn Fn(f64) -> Share| r * asked.combined(as_change(share(t_k)), as_change(share(from_k)), t_k, from_k);
     let pv = if asked == Asked::Cv { 0.0 } else { 1.0 };
     let moved = |t: f64| {
         let own = translation::share(molecule.gas().molar_mass_kg_mol, t, set);
         Share { cv: own.cv + pv, u: own.u + 1.0, ..own }
     };
-    let mut tag = |citation: Option<&Citation>| citation.map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+    let mut tag =
+        |citation: Option<&Citation>| citation.map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
     // The mass enters S alone.
     let of_mass = if matches!(asked, Asked::S | Asked::G) { molecule.definition().mass.citation() } else { None };
     let mut figures = vec![(of(&moved), tag(of_mass))];
@@ -418,11 +424,7 @@ mod tests {
             let close = |a: f64, b: f64, allowed: f64| assert!((a - b).abs() < allowed, "{a} {b}");
             // Bound: rounding of values near 1e2 and 1e4.
             close(at(&HEAT_CAPACITY, "500 K") - at(&HEAT_CAPACITY_V, "500 K"), r, 1e-12);
-            close(
-                at(&GIBBS_ENERGY, "500 K"),
-                at(&ENTHALPY_INCREMENT, "500 K") - 500.0 * at(&ENTROPY, "500 K"),
-                1e-8,
-            );
+            close(at(&GIBBS_ENERGY, "500 K"), at(&ENTHALPY_INCREMENT, "500 K") - 500.0 * at(&ENTROPY, "500 K"), 1e-8);
             close(at(&ENTHALPY_INCREMENT, "298.15 K"), 0.0, 1e-9);
             // Bound: central differences over 2 × 0.5 K, h²/6 of a third derivative.
             let slope = |card| at(card, "500.5 K") - at(card, "499.5 K");

@@ -38,7 +38,10 @@ pub struct Definition {
 pub enum Motion {
     Atom,
     /// ωe, ωexe, Be, αe, and De where it is given.
-    Diatomic { constants: Vec<Parameter>, spins: Spins },
+    Diatomic {
+        constants: Vec<Parameter>,
+        spins: Spins,
+    },
     Polyatomic {
         /// One constant of a linear molecule, else three.
         top: Vec<Parameter>,

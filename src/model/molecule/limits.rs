@@ -149,7 +149,8 @@ pub static CLASSICAL_LIMIT: Card = Card {
 };
 
 fn limit_has_no_temperature(_: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
-    let what = "a limit belongs to no temperature; `m.equipartition_temperature(\"1 %\")` says where it is reached".to_owned();
+    let what =
+        "a limit belongs to no temperature; `m.equipartition_temperature(\"1 %\")` says where it is reached".to_owned();
     let molecule = molecule_of(call);
     vec![Finding::known("equipartition", molecule.text(), value.node(), None, Tested::Missing { what })]
 }

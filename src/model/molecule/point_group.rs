@@ -35,9 +35,17 @@ mod tests {
 
     #[test]
     fn groups_have_their_numbers() {
-        for (symbol, sigma) in
-            [("C1", 1.0), ("C2v", 2.0), ("C3v", 3.0), ("D3d", 6.0), ("D6h", 12.0), ("S4", 2.0), ("Td", 12.0), ("Dinfh", 2.0), ("C10v", 10.0)]
-        {
+        for (symbol, sigma) in [
+            ("C1", 1.0),
+            ("C2v", 2.0),
+            ("C3v", 3.0),
+            ("D3d", 6.0),
+            ("D6h", 12.0),
+            ("S4", 2.0),
+            ("Td", 12.0),
+            ("Dinfh", 2.0),
+            ("C10v", 10.0),
+        ] {
             assert_eq!(symmetry_number(symbol), Some(sigma), "{symbol}");
         }
         for symbol in ["", "C", "Q3", "C2x", "D0h", "S3", "c2v", "2C"] {

@@ -252,9 +252,13 @@ impl<'a> Reader<'a> {
             };
             if !quantity.dim().is_none() {
                 let given = reader_text(&quantity.unit());
-                return Err(
-                    MoleculeError::Dimension { key: key.to_owned(), given, wanted: "a pure number", example: "`0.967`" }.into()
-                );
+                return Err(MoleculeError::Dimension {
+                    key: key.to_owned(),
+                    given,
+                    wanted: "a pure number",
+                    example: "`0.967`",
+                }
+                .into());
             }
             if quantity.si() <= 0.0 {
                 let value = text::shown_plain(&quantity);
@@ -298,7 +302,9 @@ impl<'a> Reader<'a> {
         if let Some(substance) = recorded {
             let species = &substance.species;
             match &parsed {
-                Some(formula) if *formula.composition() != species.composition || formula.charge() != species.charge => {
+                Some(formula)
+                    if *formula.composition() != species.composition || formula.charge() != species.charge =>
+                {
                     if name.is_some() {
                         let (recorded, given) = (species.composition.to_string(), formula.composition().to_string());
                         return Err(MoleculeError::Formula { name: called, recorded, given }.into());
@@ -323,7 +329,13 @@ impl<'a> Reader<'a> {
         if quantity.dim().without_basis() != wanted {
             let given = reader_text(&quantity.unit());
             let key = "molar_mass".to_owned();
-            return Err(MoleculeError::Dimension { key, given, wanted: "a mass per mole", example: "`\"44.01 g/mol\"`" }.into());
+            return Err(MoleculeError::Dimension {
+                key,
+                given,
+                wanted: "a mass per mole",
+                example: "`\"44.01 g/mol\"`",
+            }
+            .into());
         }
         if quantity.si() <= 0.0 {
             let value = text::shown_plain(&quantity);
@@ -349,7 +361,9 @@ impl<'a> Reader<'a> {
         let vibrations = self.degenerate("vibrations", Sign::Mode)?;
         let torsions = match self.map.get("torsions") {
             None => Vec::new(),
-            Some(value) => self.list("torsions", value)?.iter().map(|item| self.torsion(item)).collect::<Result<_, _>>()?,
+            Some(value) => {
+                self.list("torsions", value)?.iter().map(|item| self.torsion(item)).collect::<Result<_, _>>()?
+            }
         };
         let (shape, wanted) = match top.len() {
             0 => ("an atom", 0),
@@ -369,7 +383,8 @@ impl<'a> Reader<'a> {
             return Err(MoleculeError::ModeCount { formula, atoms, shape, wanted: 3 * atoms - 6, given: 1 }.into());
         }
         let needed = |key: &'static str, sign| -> Result<Parameter, Fault> {
-            let example = "we: \"2169.814 cm^-1\", wexe: \"13.288 cm^-1\", Be: \"1.931281 cm^-1\", alpha_e: \"0.017504 cm^-1\"";
+            let example =
+                "we: \"2169.814 cm^-1\", wexe: \"13.288 cm^-1\", Be: \"1.931281 cm^-1\", alpha_e: \"0.017504 cm^-1\"";
             let value = self.map.get(key).ok_or(MoleculeError::Missing { key, example })?;
             self.theta(key, value, sign)
         };
@@ -401,7 +416,11 @@ impl<'a> Reader<'a> {
 
     fn torsion(&self, value: &Value) -> Result<GivenTorsion, Fault> {
         let Value::Options(map) = value else {
-            return Err(Reader::sort("torsions", "a list of maps, each with `rotational_constant` and `barrier`", value));
+            return Err(Reader::sort(
+                "torsions",
+                "a list of maps, each with `rotational_constant` and `barrier`",
+                value,
+            ));
         };
         if let Some(key) = map.keys().find(|key| !TORSION_KEYS.contains(&key.as_str())) {
             return Err(MoleculeError::Key { key: format!("torsions: {key}"), known: listed(TORSION_KEYS) }.into());
@@ -477,7 +496,13 @@ impl<'a> Reader<'a> {
         let wanted = unit_parse::unit("J/mol")?.dim.without_basis();
         if value.dim().without_basis() != wanted || *value.dim() == wanted {
             let (key, given) = ("formation_enthalpy".to_owned(), reader_text(&value.unit()));
-            return Err(MoleculeError::Dimension { key, given, wanted: "an energy per mole", example: "`\"-393.5 kJ/mol\"`" }.into());
+            return Err(MoleculeError::Dimension {
+                key,
+                given,
+                wanted: "an energy per mole",
+                example: "`\"-393.5 kJ/mol\"`",
+            }
+            .into());
         }
         let said = match self.map.get("formation_temperature") {
             None => None,

@@ -113,7 +113,8 @@ impl Shares {
             ];
             options(entries)
         };
-        let curve = |row: &Row| options([("name", Value::Text(row.name.as_str().into())), ("values", list(&row.curve))]);
+        let curve =
+            |row: &Row| options([("name", Value::Text(row.name.as_str().into())), ("values", list(&row.curve))]);
         vec![
             ("rows", Value::List(self.rows.iter().map(entry).collect())),
             ("T", number(self.t_k)),

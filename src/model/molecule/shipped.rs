@@ -60,8 +60,10 @@ fn definition(cx: &Cx, substance: Arc<Substance>, record: &Constants) -> Result<
         Shape::Diatomic { we, wexe, be, alpha_e, spin_weights, isotopologue_mass, .. } => {
             heavy = Some(isotopologue_mass);
             let named = [(we, "ωe"), (wexe, "ωexe"), (be, "Be"), (alpha_e, "αe")];
-            let constants =
-                named.into_iter().map(|(one, way)| leaf(one, "spectroscopic constant", way)).collect::<Result<_, _>>()?;
+            let constants = named
+                .into_iter()
+                .map(|(one, way)| leaf(one, "spectroscopic constant", way))
+                .collect::<Result<_, _>>()?;
             let spins = match (spin_weights, record.symmetry_number) {
                 (Some([even, odd]), _) => Spins::Equilibrium { even: f64::from(*even), odd: f64::from(*odd) },
                 (None, 2) => Spins::Like,

@@ -70,9 +70,14 @@ fn csv(text: &str) -> Result<BTreeMap<String, Value>, MoleculeError> {
             return Err(wrong("has no value"));
         }
         let figure = || {
-            if unit.is_empty() { Err(wrong("names no unit")) } else { Ok(Value::Text(format!("{value} {unit}").into())) }
+            if unit.is_empty() {
+                Err(wrong("names no unit"))
+            } else {
+                Ok(Value::Text(format!("{value} {unit}").into()))
+            }
         };
-        let number = |text: &str| text.parse().map(Value::Number).map_err(|_| wrong("has no number where one is wanted"));
+        let number =
+            |text: &str| text.parse().map(Value::Number).map_err(|_| wrong("has no number where one is wanted"));
         let mut once = |key: &str, value: Value| match map.insert(key.to_owned(), value) {
             Some(_) => Err(wrong("says again what a line above has said")),
             None => Ok(()),

@@ -81,11 +81,8 @@ impl Diatomic {
     pub fn new(constants: Constants, spins: Spins) -> Diatomic {
         let lowest = constants.term(0, 0);
         // The Morse oscillator's depth; without anharmonicity there is none, and the reach of the sum ends it.
-        let depth = if constants.wexe > 0.0 {
-            0.25 * constants.we * constants.we / constants.wexe
-        } else {
-            f64::INFINITY
-        };
+        let depth =
+            if constants.wexe > 0.0 { 0.25 * constants.we * constants.we / constants.wexe } else { f64::INFINITY };
         let highest = (depth - lowest).min(REACH * HOTTEST_K);
         let mut levels = Vec::new();
         let mut last_v = f64::NEG_INFINITY;

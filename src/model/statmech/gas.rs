@@ -23,9 +23,17 @@ const JOINED_AT_K: f64 = 298.15;
 /// One independent part of a molecule.
 #[derive(Clone, Debug)]
 pub enum Part {
-    Rotation { top: Top, symmetry_number: f64, sum: Sum },
+    Rotation {
+        top: Top,
+        symmetry_number: f64,
+        sum: Sum,
+    },
     /// `degeneracy` oscillators of one wavenumber.
-    Vibration { theta_k: f64, degeneracy: f64, low: LowModes },
+    Vibration {
+        theta_k: f64,
+        degeneracy: f64,
+        low: LowModes,
+    },
     Torsion(Rc<Torsion>),
     /// Vibration and rotation of a diatomic molecule together.
     Diatomic(Diatomic),
@@ -123,7 +131,12 @@ impl Gas {
     /// Cp, H and S at `t_k`.
     pub fn functions(&self, t_k: f64, constants: &ConstantSet) -> Functions {
         let (share, r) = (self.share(t_k, constants), constants.molar_gas.value);
-        Functions { cp: r * (share.cv + 1.0), h: r * t_k * (share.u + 1.0), s: r * share.s, cp_slope: r * share.bend / t_k }
+        Functions {
+            cp: r * (share.cv + 1.0),
+            h: r * t_k * (share.u + 1.0),
+            s: r * share.s,
+            cp_slope: r * share.bend / t_k,
+        }
     }
 
     /// Cp/R at `t_k`.

@@ -102,7 +102,8 @@ impl Potential {
     /// Energies with derivatives, in kelvin from the zero of V, not sorted.
     fn solved(&self) -> Vec<(f64, Vec<f64>)> {
         let period = self.period();
-        let solved = if period == 0 { 0 } else { math::sqrt(4.0 * self.span() / self.f_k) as usize + MARGIN + self.orders() };
+        let solved =
+            if period == 0 { 0 } else { math::sqrt(4.0 * self.span() / self.f_k) as usize + MARGIN + self.orders() };
         let solved = solved.min(MOST_WAVES);
         let mut all = Vec::new();
         if period > 0 {
@@ -147,11 +148,8 @@ impl Potential {
 
     /// Eigenvalues and derivatives within one block of waves m ≥ 0, cosines before sines.
     fn block(&self, waves: &[i64]) -> Vec<(f64, Vec<f64>)> {
-        let basis: Vec<(i64, bool)> = waves
-            .iter()
-            .map(|m| (*m, false))
-            .chain(waves.iter().filter(|m| **m > 0).map(|m| (*m, true)))
-            .collect();
+        let basis: Vec<(i64, bool)> =
+            waves.iter().map(|m| (*m, false)).chain(waves.iter().filter(|m| **m > 0).map(|m| (*m, true))).collect();
         let n = basis.len();
         let mut h = DMatrix::zeros(n, n);
         for (row, &left) in basis.iter().enumerate() {
@@ -362,7 +360,8 @@ mod tests {
         // a of even order, and the E pairs of characteristic exponent 2m/3. So the A states are tested on the tables of
         // a₂ₙ, b₂ₙ. Source: scipy.special.mathieu_a and mathieu_b (SciPy 1.17.1), run once for q = V₃/(9F) of each row.
         for (f, v3, published) in MATHIEU {
-            let mut all = Potential::barrier(*f, 3, *v3).block(&[0, 3, 6, 9, 12, 15, 18, 21, 24, 27, 30, 33, 36, 39, 42, 45, 48]);
+            let mut all =
+                Potential::barrier(*f, 3, *v3).block(&[0, 3, 6, 9, 12, 15, 18, 21, 24, 27, 30, 33, 36, 39, 42, 45, 48]);
             all.sort_by(|a, b| a.0.total_cmp(&b.0));
             for (got, want) in all.iter().map(|(e, _)| e).zip(*published) {
                 assert!((got - want).abs() < 1e-8 * want.abs().max(1.0), "F = {f}, V3 = {v3}: {got} {want}");

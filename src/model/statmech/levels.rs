@@ -111,11 +111,8 @@ mod tests {
         let [change] = changes(levels(theta).map(|level| (level, [level.e_k / theta])), t_k);
         let (up, down) = (share(levels(theta * (1.0 + h)), t_k), share(levels(theta * (1.0 - h)), t_k));
         let slope = |f: fn(&Share) -> f64| (f(&up) - f(&down)) / (2.0 * h * theta);
-        for (got, difference) in [
-            (change.cv, slope(|s| s.cv)),
-            (change.u, slope(|s| s.u)),
-            (change.s, slope(|s| s.s)),
-        ] {
+        for (got, difference) in [(change.cv, slope(|s| s.cv)), (change.u, slope(|s| s.u)), (change.s, slope(|s| s.s))]
+        {
             assert!((got / difference - 1.0).abs() < 1e-6, "{got} {difference}");
         }
         let (up, down) = (share(levels(theta), t_k * (1.0 + h)), share(levels(theta), t_k * (1.0 - h)));

@@ -59,11 +59,9 @@ pub fn fit(powers: &[i32], t_min_k: f64, t_max_k: f64, cps: impl Fn(&[f64]) -> V
         return None;
     }
     let scaled = r.solve_upper_triangular(&right)?;
-    let coefficients: Vec<f64> =
-        (0..n).map(|k| scaled[k] / lengths[k] * power(middle, -powers[k])).collect();
+    let coefficients: Vec<f64> = (0..n).map(|k| scaled[k] / lengths[k] * power(middle, -powers[k])).collect();
     let steps = CHECKS * count;
-    let grid: Vec<f64> =
-        (0..=steps).map(|nth| t_min_k + (t_max_k - t_min_k) * nth as f64 / steps as f64).collect();
+    let grid: Vec<f64> = (0..=steps).map(|nth| t_min_k + (t_max_k - t_min_k) * nth as f64 / steps as f64).collect();
     let mut fit = PowerFit { powers: powers.to_vec(), coefficients, t_min_k, t_max_k, worst: 0.0, worst_at_k: t_min_k };
     for (t, cp) in grid.iter().zip(cps(&grid)) {
         let off = fit.cp(*t) - cp;

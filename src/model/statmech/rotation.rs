@@ -68,9 +68,7 @@ impl Top {
     /// The share of rotation at `t_k`.
     pub fn share(&self, symmetry_number: f64, sum: Sum, t_k: f64) -> Share {
         let mut share = match (self, sum) {
-            (Top::Linear { b_k }, Sum::Classical) => {
-                Share { cv: 1.0, u: 1.0, s: 1.0 + math::ln(t_k / b_k), bend: 0.0 }
-            }
+            (Top::Linear { b_k }, Sum::Classical) => Share { cv: 1.0, u: 1.0, s: 1.0 + math::ln(t_k / b_k), bend: 0.0 },
             (Top::Linear { b_k }, Sum::Levels) if t_k > HOT_LINEAR * b_k => linear_expansion(b_k / t_k),
             (Top::Linear { b_k }, Sum::Levels) => levels::share(linear_levels(*b_k, t_k), t_k),
             (Top::Nonlinear { abc_k: [a, b, c] }, Sum::Classical) => {
@@ -102,9 +100,7 @@ impl Top {
                 let slopes = linear_levels(*b_k, t_k).map(|level| (level, [level.e_k / b_k]));
                 levels::changes(slopes, t_k).to_vec()
             }
-            Top::Nonlinear { abc_k } => {
-                abc_k.iter().map(|theta| Change { cv: 0.0, u: 0.0, s: -0.5 / theta }).collect()
-            }
+            Top::Nonlinear { abc_k } => abc_k.iter().map(|theta| Change { cv: 0.0, u: 0.0, s: -0.5 / theta }).collect(),
         }
     }
 }
@@ -222,7 +218,10 @@ mod tests {
             let (sum, classical) = (top.share(2.0, Sum::Levels, t_k), top.share(2.0, Sum::Classical, t_k));
             let expanded = top.share(2.0, Sum::Levels, 1.01 * HOT * top.largest_k());
             // Bound: the second term of the expansion, at most 2e-5 in ln q and a few times that in its derivatives.
-            assert!((sum.cv - classical.cv).abs() < 1e-4 && (sum.s - classical.s).abs() < 1e-4, "{sum:?} {classical:?}");
+            assert!(
+                (sum.cv - classical.cv).abs() < 1e-4 && (sum.s - classical.s).abs() < 1e-4,
+                "{sum:?} {classical:?}"
+            );
             assert!((sum.u * 0.99 - expanded.u * 1.01 + 1.5 * 0.02).abs() < 1e-4, "{sum:?} {expanded:?}");
             assert!(top.share(2.0, Sum::Levels, 0.02 * top.largest_k()).cv < 1e-3);
         }

@@ -149,7 +149,9 @@ mod tests {
     #[test]
     fn derivatives_agree_with_differences_for_each_treatment() {
         let (theta, t, h) = (120.0, 298.15, 1e-3);
-        for low in [LowModes::Harmonic, BLENDED, LowModes::Raised { cut_off_k: 100.0 }, LowModes::Raised { cut_off_k: 150.0 }] {
+        for low in
+            [LowModes::Harmonic, BLENDED, LowModes::Raised { cut_off_k: 100.0 }, LowModes::Raised { cut_off_k: 150.0 }]
+        {
             let (up, down) = (share(theta + h, low, t), share(theta - h, low, t));
             let got = change(theta, low, t);
             // Bound: a central difference of smooth functions over 1e-3 K, and rounding of 1e-16/1e-3.
