@@ -102,10 +102,15 @@ const UNEXPLAINED: [(&str, f64, &str); 16] = [
     ("SF6(g)", 1000.0, OTHER_CONSTANTS),
     ("SF6(g)", 1500.0, OTHER_CONSTANTS),
     ("Br2(g)", 1500.0, OTHER_CONSTANTS),
-    ("I2(g)", 1500.0, "the excited states known from memory bring a third of it; levels near dissociation were not tried"),
+    (
+        "I2(g)",
+        1500.0,
+        "the excited states known from memory bring a third of it; levels near dissociation were not tried",
+    ),
     ("NH3(g)", 1500.0, "levels of the inversion above 3 quanta are not known here"),
 ];
-const BROMINE: &str = "two levels make the sum, and no third one lies below 60000 cm^-1, so the published function is not theirs";
+const BROMINE: &str =
+    "two levels make the sum, and no third one lies below 60000 cm^-1, so the published function is not theirs";
 const METHANE: &str = "centres of the first polyads, with stretching, bring a third of it";
 const OTHER_CONSTANTS: &str = "the published function rests on other constants, which were not at hand";
 
@@ -142,7 +147,9 @@ fn the_sums_give_the_published_functions_or_what_is_missing_is_named() {
                 let tried = why.map_or_else(String::new, |why| format!("; tried: {why}"));
                 println!("        unexplained: {known}{tried}");
             }
-            (true, Some(_)) => wrong.push(format!("{id} at {t_k} K is explained after all: {}", why.unwrap_or_default())),
+            (true, Some(_)) => {
+                wrong.push(format!("{id} at {t_k} K is explained after all: {}", why.unwrap_or_default()))
+            }
             (false, None) => wrong.push(format!(
                 "{id} at {t_k} K misses by {:+.2} % in Cp and {:+.3} in S, unexplained ({}); {}",
                 100.0 * row.off_cp(),

@@ -162,7 +162,14 @@ const LEVELS: &[Levels] = &[
         distortion: &[1.1e-4, 0.0, 0.0],
     },
     // Vibration of ammonia is its inversion, below; here is its stretching alone.
-    Levels { id: "NH3(g)", modes: &[], x: &[], alpha: &[], abc: &[9.9443, 9.9443, 6.196], distortion: &[8.5e-4, -1.57e-3, 1.0e-3] },
+    Levels {
+        id: "NH3(g)",
+        modes: &[],
+        x: &[],
+        alpha: &[],
+        abc: &[9.9443, 9.9443, 6.196],
+        distortion: &[8.5e-4, -1.57e-3, 1.0e-3],
+    },
 ];
 
 /// Excited electronic states that the records leave out: energy in cm⁻¹, degeneracy, and the degeneracy of what is below.
