@@ -172,8 +172,11 @@ const LEVELS: &[Levels] = &[
     },
 ];
 
-/// Excited electronic states that the records leave out: energy in cm⁻¹, degeneracy, and the degeneracy of what is below.
-const EXCITED: &[(&str, &[(f64, f64)], f64)] = &[
+/// A gas, its states as energies in cm⁻¹ with degeneracies, and the degeneracy of what is below them.
+type States = (&'static str, &'static [(f64, f64)], f64);
+
+/// Excited electronic states that the records leave out.
+const EXCITED: &[States] = &[
     ("S2(g)", &[(4395.0, 2.0)], 3.0),
     ("SO(g)", &[(5873.0, 2.0)], 3.0),
     ("CN(g)", &[(9115.0, 4.0)], 2.0),
