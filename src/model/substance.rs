@@ -55,7 +55,7 @@ impl PureSubstance {
     /// The same with other figures.
     pub(super) fn answered_by(term: Term) -> Self {
         let (per, text) = (term.substance.species.entity, term.substance.id().to_owned());
-        PureSubstance { terms: Terms::new(vec![term], per, text) }
+        PureSubstance { terms: Terms::new(vec![term], per, text), onward: Vec::new() }
     }
 
     pub fn record(&self) -> &Arc<Substance> {
