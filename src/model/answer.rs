@@ -17,6 +17,7 @@ use crate::model::derivation::Derivation;
 use crate::model::expanded::Expanded;
 use crate::model::gap::Gap;
 use crate::model::monte_carlo::Propagation;
+use crate::model::plant::balance::HeatBalance;
 use crate::quantity::Quantity;
 use crate::record::node::Step;
 use crate::units::{Base, Dimension, Kind, Unit, What, unit_for};
@@ -30,6 +31,7 @@ pub enum Answer {
     Derivation(Rc<Derivation>),
     Comparison(Rc<Comparison>),
     Gap(Rc<Gap>),
+    HeatBalance(Rc<HeatBalance>),
 }
 
 /// The argument that says how sure an interval is to be.
@@ -69,6 +71,7 @@ impl Answer {
             Answer::Derivation(_) => "a derivation",
             Answer::Comparison(_) => "a comparison",
             Answer::Gap(_) => "an explanation of a gap",
+            Answer::HeatBalance(_) => "a heat balance",
         }
     }
 
@@ -80,6 +83,7 @@ impl Answer {
             Answer::Derivation(derivation) => derivation.parts(),
             Answer::Comparison(comparison) => comparison.parts(),
             Answer::Gap(gap) => gap.parts(),
+            Answer::HeatBalance(balance) => balance.parts(),
         }
     }
 

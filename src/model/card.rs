@@ -17,6 +17,7 @@ use crate::data::catalog::Catalog;
 use crate::fault::{Explain, Fault, Place};
 use crate::model::answer::Answer;
 use crate::model::caution::Caution;
+use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::model::terms::Terms;
@@ -38,6 +39,7 @@ pub enum Value {
     Options(Rc<BTreeMap<String, Value>>),
     Reaction(Rc<Reaction>),
     Substance(Rc<PureSubstance>),
+    Stream(Rc<Stream>),
     /// What was asked of an uncertainty.
     Answer(Answer),
     /// Something no formula takes, by its name in words.
@@ -57,6 +59,7 @@ impl Value {
             Value::Options(_) => "a map of options",
             Value::Reaction(_) => "a reaction",
             Value::Substance(_) => "a substance",
+            Value::Stream(_) => "a stream",
             Value::Answer(answer) => answer.sort(),
             Value::Other(name) => name,
             Value::Nothing => "nothing",
@@ -89,6 +92,10 @@ pub enum Takes {
     Word(&'static [&'static str]),
     Quantities,
     Reaction,
+    /// A list of streams, or one alone.
+    Streams,
+    /// A list of maps, each with these entries.
+    Maps(&'static [Arg]),
     Options(&'static [Arg]),
     /// Whatever it is; the formula looks for itself.
     Any,
@@ -290,6 +297,7 @@ impl Step for Call {
                 Value::Number(number) => words.push(number.to_string()),
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
                 Value::Substance(substance) => words.push(substance.text().to_owned()),
+                Value::Stream(stream) => words.push(stream.name.to_string()),
                 Value::Options(options) => {
                     words.extend(options.iter().filter_map(|(name, value)| match value {
                         Value::Text(word) => Some(format!("{name}: {word}")),
@@ -314,6 +322,7 @@ impl Step for Call {
             match value {
                 Value::Quantity(value) => nodes.push(Rc::clone(value.node())),
                 Value::List(list) => list.iter().for_each(|item| collect(item, nodes)),
+                Value::Stream(stream) => nodes.extend(stream.nodes()),
                 Value::Options(options) => options.values().for_each(|item| collect(item, nodes)),
                 _ => {}
             }
@@ -352,6 +361,8 @@ pub enum ArgumentError {
     Count { function: &'static str, given: usize, least: usize, most: usize, usage: String },
     #[error("`{function}` knows no option `{option}`")]
     Option { function: &'static str, option: String, known: String },
+    #[error("`{function}` was not given `{option}`")]
+    OptionMissing { function: &'static str, option: &'static str, doc: &'static str },
     #[error("`{word}` is no choice for `{argument}` of `{function}`")]
     Word { function: &'static str, argument: &'static str, word: String, choices: String },
     #[error("a difference of {difference_k} K was given to `{function}` where a temperature is wanted")]
@@ -370,6 +381,7 @@ impl Explain for ArgumentError {
             ArgumentError::Sort { .. } => "argument-sort",
             ArgumentError::Count { .. } => "formula-argument-count",
             ArgumentError::Option { .. } => "option-unknown",
+            ArgumentError::OptionMissing { .. } => "option-missing",
             ArgumentError::Word { .. } => "word-unknown",
             ArgumentError::Difference { .. } => "difference-for-point",
             ArgumentError::NotPositive { .. } => "temperature-not-positive",
@@ -381,6 +393,7 @@ impl Explain for ArgumentError {
             ArgumentError::Sort { wanted, .. } => format!("give {wanted}"),
             ArgumentError::Count { usage, .. } => format!("use it as in `{usage}`"),
             ArgumentError::Option { known, .. } => format!("its options are {known}"),
+            ArgumentError::OptionMissing { option, doc, .. } => format!("add `{option}:`, {doc}"),
             ArgumentError::Word { choices, .. } => format!("choose one of {choices}"),
             ArgumentError::Difference { .. } => "give the temperature itself, as in `q(\"450 degC\")`".to_owned(),
             ArgumentError::NotPositive { .. } => "check the sign and the scale of the temperature".to_owned(),
@@ -489,17 +502,18 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
             }
             Value::List(quantities)
         }
-        (Takes::Options(known), Value::Options(options)) => {
-            let mut checked_options = BTreeMap::new();
-            for (name, value) in options.iter() {
-                let Some(option) = known.iter().find(|option| option.name == name) else {
-                    let known = listed(known.iter().map(|option| option.name));
-                    return Err(ArgumentError::Option { function: card.name, option: name.clone(), known }.into());
-                };
-                checked_options.insert(name.clone(), checked(cx, card, option, value.clone())?);
-            }
-            Value::Options(Rc::new(checked_options))
+        (Takes::Streams, Value::Stream(stream)) => Value::List(vec![Value::Stream(stream)]),
+        (Takes::Streams, Value::List(list)) if list.iter().all(|item| matches!(item, Value::Stream(_))) => {
+            Value::List(list)
         }
+        (Takes::Maps(known), Value::List(list)) => {
+            let one = |item: Value| match item {
+                Value::Options(map) => checked_map(cx, card, known, &map),
+                other => Err(refused("a list of maps", &other)),
+            };
+            Value::List(list.into_iter().map(one).collect::<Result<_, Fault>>()?)
+        }
+        (Takes::Options(known), Value::Options(options)) => checked_map(cx, card, known, &options)?,
         (takes, value) => {
             let wanted = match takes {
                 Takes::Number => "a number",
@@ -510,11 +524,36 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
                 }
                 Takes::Quantities => "a list of quantities",
                 Takes::Options(_) => "a map of options, as in `#{ heat_capacity: \"constant\" }`",
+                Takes::Streams => "a list of streams, as in `[stream(\"feed\", T, amounts)]`",
+                Takes::Maps(_) => "a list of maps",
                 _ => "a quantity",
             };
             return Err(refused(wanted, &value));
         }
     })
+}
+
+/// A map with its entries checked: each known, and those that are required there.
+fn checked_map(
+    cx: &Cx,
+    card: &'static Card,
+    known: &'static [Arg],
+    given: &BTreeMap<String, Value>,
+) -> Result<Value, Fault> {
+    let mut checked_options = BTreeMap::new();
+    for (name, value) in given {
+        let Some(option) = known.iter().find(|option| option.name == name) else {
+            let known = listed(known.iter().map(|option| option.name));
+            return Err(ArgumentError::Option { function: card.name, option: name.clone(), known }.into());
+        };
+        checked_options.insert(name.clone(), checked(cx, card, option, value.clone())?);
+    }
+    let required = known.iter().filter(|option| matches!(option.default, Default::Required));
+    if let Some(missing) = required.into_iter().find(|option| !given.contains_key(option.name)) {
+        let (function, doc) = (card.name, missing.doc);
+        return Err(ArgumentError::OptionMissing { function, option: missing.name, doc }.into());
+    }
+    Ok(Value::Options(Rc::new(checked_options)))
 }
 
 /// A quantity, or text that reads as one.

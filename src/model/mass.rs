@@ -66,7 +66,7 @@ impl Explain for MassError {
 ///
 /// # Errors
 /// Its composition is not known, or an element has no standard atomic weight.
-fn molar_mass(cx: &Cx, entity: Entity, step: Rc<dyn Step>) -> Result<Quantity, Fault> {
+pub(super) fn molar_mass(cx: &Cx, entity: Entity, step: Rc<dyn Step>) -> Result<Quantity, Fault> {
     let composition = composition_of(cx, entity)?;
     let terms = composition.molar_mass_terms().map_err(Fault::from)?;
     let (mut si, mut inputs) = (0.0, SmallVec::new());

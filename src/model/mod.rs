@@ -19,6 +19,7 @@ pub mod gather;
 pub mod linearity;
 pub mod mass;
 pub mod monte_carlo;
+pub mod plant;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
@@ -61,6 +62,11 @@ pub const CARDS: &[&Card] = &[
     &remedy::WIDENED,
     &shortcut::VALID_TO,
     &shortcut::COMPARE_SHORTCUTS,
+    &plant::stream::STREAM,
+    &plant::balance::HEAT_BALANCE,
+    &plant::adiabatic::ADIABATIC_TEMPERATURE,
+    &plant::rise::TEMPERATURE_RISE,
+    &plant::rise::RISE_OF_FIGURES,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,

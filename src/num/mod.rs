@@ -4,4 +4,5 @@ pub mod cholesky;
 pub mod math;
 pub mod random;
 pub mod rational;
+pub mod root;
 pub mod student;

@@ -3,6 +3,7 @@
 //! A [`Bundle`] holds one output in several forms. A report's forms are all made from one [`report::Report`], so that
 //! text, HTML, LaTeX and the machine record cannot disagree.
 
+pub mod balance;
 pub mod budget;
 pub mod comparison;
 pub mod derivation;
@@ -67,6 +68,7 @@ pub fn answer(answer: &Answer) -> Bundle {
         Answer::Derivation(derivation) => derivation::bundle(derivation),
         Answer::Comparison(comparison) => comparison::bundle(comparison),
         Answer::Gap(gap) => gap::bundle(gap),
+        Answer::HeatBalance(balance) => balance::bundle(balance),
     }
 }
 

@@ -15,6 +15,7 @@ use crate::fault::{Fault, Place};
 use crate::model::CARDS;
 use crate::model::answer::Answer;
 use crate::model::card::{self, Card, Cx, On, Value};
+use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::quantity::{Quantity, text};
@@ -30,6 +31,7 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
     engine.register_type_with_name::<Quantity>("quantity");
     engine.register_type_with_name::<Rc<Reaction>>("reaction");
     engine.register_type_with_name::<Rc<PureSubstance>>("substance");
+    engine.register_type_with_name::<Rc<Stream>>("stream");
     for name in ["to_string", "to_debug"] {
         engine.register_fn(name, |reaction: &mut Rc<Reaction>| reaction.text().to_owned());
         engine.register_fn(name, |substance: &mut Rc<PureSubstance>| substance.text().to_owned());
@@ -92,6 +94,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
         return Value::Substance(Rc::clone(&substance));
     }
+    if let Some(stream) = value.read_lock::<Rc<Stream>>() {
+        return Value::Stream(Rc::clone(&stream));
+    }
     if let Some(answer) = value.read_lock::<Answer>() {
         return Value::Answer(answer.clone());
     }
@@ -130,6 +135,7 @@ fn from_value(value: Value) -> Dynamic {
         ),
         Value::Reaction(reaction) => Dynamic::from(reaction),
         Value::Substance(substance) => Dynamic::from(substance),
+        Value::Stream(stream) => Dynamic::from(stream),
         Value::Answer(answer) => Dynamic::from(answer),
         Value::Nothing => Dynamic::UNIT,
     }

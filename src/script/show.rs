@@ -11,6 +11,7 @@ use rhai::{Array, Blob, Dynamic, Engine, FnPtr, ImmutableString, Map};
 
 use crate::fault::Fault;
 use crate::model::answer::Answer;
+use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::quantity::Quantity;
@@ -39,6 +40,9 @@ fn own(value: &Dynamic) -> Option<Bundle> {
     }
     if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
         return Some(render::substance(&substance));
+    }
+    if let Some(stream) = value.read_lock::<Rc<Stream>>() {
+        return Some(render::balance::stream(&stream));
     }
     value.read_lock::<Fault>().map(|fault| Bundle::text(fault.to_string()))
 }

@@ -12,6 +12,7 @@ pub use alternatives::{with_constant_heat_capacity, without_correction};
 pub use formation::formation_dataset;
 pub use heat_capacity::constant_heat_capacity;
 pub use phase::stable_phase;
+pub(in crate::model) use phase::{RESOLUTION_CONDENSED, RESOLUTION_GAS};
 pub use volume::{condensed_volume, ideal_gas};
 
 use std::rc::Rc;
