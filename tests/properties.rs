@@ -4,6 +4,8 @@
 //! here by another road: quadrature against closed forms, differences against partials, counts of atoms by hand.
 
 mod asking;
+#[path = "properties/curves.rs"]
+mod curves;
 #[path = "properties/functions.rs"]
 mod functions;
 #[path = "properties/prices.rs"]

@@ -7,15 +7,17 @@ use std::sync::Arc;
 
 use serde::Deserialize;
 
+use crate::num::powers::Power;
 use crate::source::{Citation, Embedded};
 
 use super::dataset::{self, Dataset, DatasetId, Heading, TableFault};
 
 /// One temperature range of a function. Neighbours share their end, where both hold.
 ///
-/// Cp/R = a1 T^-2 + a2 T^-1 + a3 + a4 T + a5 T^2 + a6 T^3 + a7 T^4; b1 and b2 are the constants of integration of
-/// H/R and S/R.
-#[derive(Clone, Copy, Debug, PartialEq)]
+/// Cp/R = a1 T^-2 + a2 T^-1 + a3 + a4 T + a5 T^2 + a6 T^3 + a7 T^4 + Σ c T^n; b1 and b2 are the constants of
+/// integration of H/R and S/R. Every published form is such a sum (`form.rs`); most have no further powers, and the seven
+/// have places of their own since they are what nearly all evaluations run over.
+#[derive(Clone, Debug, PartialEq)]
 pub struct Interval {
     /// K
     pub t_min: f64,
@@ -25,6 +27,8 @@ pub struct Interval {
     pub a: [f64; 7],
     /// b1 in K, b2 a pure number.
     pub b: [f64; 2],
+    /// Powers of T, in kelvin, that have no place among the seven; never one that has.
+    pub more: Box<[Power]>,
 }
 
 /// The function of one phase.
@@ -39,7 +43,8 @@ pub struct Function {
     pub cas: Option<Arc<str>>,
     /// In order of temperature; never empty.
     pub intervals: Box<[Interval]>,
-    /// The gas constant with which the source multiplies Cp/R, H/R and S/R, in J/(mol K).
+    /// What the sums are multiplied by, in J/(mol K): the gas constant of a source that gives Cp/R, the size of its unit
+    /// where a source gives Cp.
     pub r_of_source: f64,
     /// Lower end of the first interval, K.
     pub t_min: f64,
@@ -47,6 +52,8 @@ pub struct Function {
     pub t_max: f64,
     /// Formation enthalpy at 298.15 K on which the enthalpy scale of this function rests, J/mol.
     pub dhf_298: f64,
+    /// Which constants of integration the source gives: without them only differences of H and of S have a meaning.
+    pub zero: Zero,
     /// H(298.15 K) - H(0 K), J/mol.
     pub h298_minus_h0: Option<f64>,
     /// What is known against this record, in words.
@@ -60,7 +67,21 @@ pub struct Function {
     pub citation: Citation,
 }
 
+/// Which scales of a function have their zero.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Zero {
+    /// H is counted from the elements at 298.15 K.
+    pub enthalpy: bool,
+    /// S is the third-law entropy.
+    pub entropy: bool,
+}
+
 impl Function {
+    /// Whether the Gibbs energy can be compared with that of another phase.
+    pub fn has_gibbs_energy(&self) -> bool {
+        self.zero.enthalpy && self.zero.entropy
+    }
+
     /// Whether a temperature lies within the function's range, ends included.
     pub fn covers(&self, t_k: f64) -> bool {
         self.t_min <= t_k && t_k <= self.t_max
@@ -119,7 +140,13 @@ pub(super) fn read(
         let intervals: Box<[Interval]> = record
             .intervals
             .iter()
-            .map(|range| Interval { t_min: range.t[0], t_max: range.t[1], a: range.a, b: range.b })
+            .map(|range| Interval {
+                t_min: range.t[0],
+                t_max: range.t[1],
+                a: range.a,
+                b: range.b,
+                more: Box::default(),
+            })
             .collect();
         let (Some(first), Some(last)) = (intervals.first(), intervals.last()) else {
             let why = format!("{} has no interval", record.id);
@@ -137,6 +164,7 @@ pub(super) fn read(
             t_max: last.t_max,
             intervals,
             dhf_298: record.dhf_298,
+            zero: Zero { enthalpy: true, entropy: true },
             h298_minus_h0: record.h298_minus_h0,
             warnings: record.warnings.into_iter().map(Arc::from).collect(),
             is_reference_element: record.reference_element,

@@ -5,6 +5,7 @@
 pub mod catalog;
 pub mod critical;
 pub mod dataset;
+pub mod form;
 pub mod formation;
 pub mod function;
 pub mod lookup;

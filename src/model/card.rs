@@ -17,6 +17,8 @@ use crate::data::catalog::Catalog;
 use crate::fault::{Explain, Fault, Place};
 use crate::model::answer::Answer;
 use crate::model::caution::Caution;
+use crate::model::curve::Curve;
+use crate::model::grid::Grid;
 use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
@@ -40,6 +42,9 @@ pub enum Value {
     Reaction(Rc<Reaction>),
     Substance(Rc<PureSubstance>),
     Stream(Rc<Stream>),
+    /// Temperatures at which a formula is asked in one call.
+    Grid(Rc<Grid>),
+    Curve(Rc<Curve>),
     /// What was asked of an uncertainty.
     Answer(Answer),
     /// Something no formula takes, by its name in words.
@@ -60,6 +65,8 @@ impl Value {
             Value::Reaction(_) => "a reaction",
             Value::Substance(_) => "a substance",
             Value::Stream(_) => "a stream",
+            Value::Grid(_) => "a grid of temperatures",
+            Value::Curve(_) => "a curve",
             Value::Answer(answer) => answer.sort(),
             Value::Other(name) => name,
             Value::Nothing => "nothing",
@@ -74,6 +81,7 @@ pub enum On {
     Quantity,
     Reaction,
     Substance,
+    Curve,
 }
 
 /// What an argument takes.
@@ -87,6 +95,8 @@ pub enum Takes {
     AnyQuantity,
     /// A temperature point: degC, degF or kelvin.
     Temperature,
+    /// The same, or a grid of them: then the formula is asked at each, and gives a curve.
+    Temperatures,
     Number,
     Text,
     Word(&'static [&'static str]),
@@ -159,6 +169,7 @@ pub struct Card {
 
 /// What formulas look up: substances and constants. Substances are read at their first use, since a start of the program
 /// that asks for none should not wait for them.
+#[derive(Clone)]
 pub struct References {
     catalog: OnceCell<Arc<Catalog>>,
     pub constants: &'static ConstantSet,
@@ -298,6 +309,8 @@ impl Step for Call {
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
                 Value::Substance(substance) => words.push(substance.text().to_owned()),
                 Value::Stream(stream) => words.push(stream.name.to_string()),
+                Value::Grid(grid) => words.push(grid.words()),
+                Value::Curve(curve) => words.push(curve.words()),
                 Value::Options(options) => {
                     words.extend(options.iter().filter_map(|(name, value)| match value {
                         Value::Text(word) => Some(format!("{name}: {word}")),
@@ -421,6 +434,7 @@ impl Card {
             On::Quantity => "value.",
             On::Reaction => "reaction.",
             On::Substance => "substance.",
+            On::Curve => "curve.",
         };
         format!("{receiver}{}({})", self.name, args.join(", "))
     }
@@ -451,7 +465,13 @@ pub fn call(cx: &Cx, card: &'static Card, given: Vec<Value>) -> Result<Value, Fa
         };
         args.push(checked(cx, card, arg, value)?);
     }
-    (card.run)(cx, &Rc::new(Call { card, args }))
+    let at_a_grid = card
+        .args
+        .iter()
+        .zip(&args[receivers..])
+        .any(|pair| matches!(pair, (Arg { takes: Takes::Temperatures, .. }, Value::Grid(_))));
+    let call = Rc::new(Call { card, args });
+    if at_a_grid { Ok(Value::Curve(Rc::new(Curve::of_call(cx, call)?))) } else { (card.run)(cx, &call) }
 }
 
 fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Result<Value, Fault> {
@@ -472,7 +492,8 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
             Value::Quantity(quantity)
         }
         (Takes::AnyQuantity, value) => Value::Quantity(as_quantity(cx, value, |v| refused("a quantity", v))?),
-        (Takes::Temperature, value) => {
+        (Takes::Temperatures, Value::Grid(grid)) => Value::Grid(grid),
+        (Takes::Temperature | Takes::Temperatures, value) => {
             let wanted = "a temperature, as in `q(\"450 degC\")`";
             let quantity = as_quantity(cx, value, |v| refused(wanted, v))?;
             Value::Quantity(as_point(card, arg, quantity)?)
@@ -565,7 +586,7 @@ fn as_quantity(cx: &Cx, value: Value, refused: impl Fn(&Value) -> Fault) -> Resu
     }
 }
 
-fn as_point(card: &'static Card, arg: &'static Arg, value: Quantity) -> Result<Quantity, Fault> {
+pub(super) fn as_point(card: &'static Card, arg: &'static Arg, value: Quantity) -> Result<Quantity, Fault> {
     if !value.kind().what.is_temperature() {
         let given = match value.dim().is_none() {
             true => "a pure number".to_owned(),

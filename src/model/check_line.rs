@@ -3,8 +3,10 @@
 use std::rc::Rc;
 
 use crate::model::card::{Cx, Sources, call_of};
+use crate::model::gather::{Figure, FigureOrigin};
 use crate::quantity::{Quantity, round};
 use crate::record::node::{Node, Operator, Origin};
+use crate::source::Citation;
 
 /// The figures a value was computed from: by its formula's own line, or, for arithmetic and for formulas that hand a value
 /// on, the line of each formula that went in, and then the step itself.
@@ -83,4 +85,29 @@ pub(super) fn own_line(cx: &Cx, node: &Rc<Node>, sources: &mut Sources) -> Optio
     let call = call_of(node)?;
     let line = call.card.check_line?;
     Some(line(cx, call, &Quantity::of_node(Rc::clone(node)), sources))
+}
+
+/// Joules as a check line has them.
+pub(super) fn kilo(si: f64) -> String {
+    format!("{:.3}", si / 1000.0)
+}
+
+/// `(-110.53)[1]`, or of a figure that is a sum of inputs, as over changes of phase, `(25.408[2] + 0.900[3] + 4.086[4])`.
+pub(super) fn figures_of(figure: &Figure, sources: &mut Sources, show: &impl Fn(f64) -> String) -> String {
+    let mut cited = |shown: String, citation: Option<&Citation>| {
+        let source = citation.map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+        if shown.starts_with('-') { format!("({shown}){source}") } else { format!("{shown}{source}") }
+    };
+    if let FigureOrigin::Nodes(nodes) = &figure.origin {
+        let inputs =
+            nodes.iter().map(|(node, slope)| node.input().filter(|_| *slope == 1.0).map(|input| (node, input)));
+        let inputs: Option<Vec<_>> = inputs.collect();
+        if let Some(inputs) = inputs.filter(|inputs| !inputs.is_empty()) {
+            let parts = inputs.iter().map(|(node, input)| cited(show(node.si()), input.citation.as_ref()));
+            let sum = parts.collect::<Vec<_>>().join(" + ");
+            return if inputs.len() == 1 { sum } else { format!("({sum})") };
+        }
+    }
+    let written = figure.printed.as_ref().map_or_else(|| show(figure.si), ToString::to_string);
+    cited(written, figure.citation())
 }

@@ -1,7 +1,8 @@
 //! The conditions a value holds under, in one line, and the symbol it is written with.
 
 use crate::chem::species::State as Aggregate;
-use crate::model::card::{Call, Value, call_of};
+use crate::model::card::{Call, Cx, Value, call_of};
+use crate::model::path;
 use crate::model::plant::words;
 use crate::model::terms::Terms;
 use crate::quantity::Quantity;
@@ -9,8 +10,9 @@ use crate::quantity::round;
 use crate::record::node;
 use crate::units::{What, Zero};
 
-/// `723.15 K, 1 bar, each species pure, in its standard state, gases ideal`; empty for plain values.
-pub fn line(value: &Quantity) -> String {
+/// `723.15 K, 1 bar, each species pure, in its standard state, gases ideal`, with the phases that changed on the way; empty
+/// for plain values.
+pub fn line(cx: &Cx, value: &Quantity) -> String {
     if let Some(words) = call_of(value.node()).and_then(words::conditions) {
         return words;
     }
@@ -40,7 +42,28 @@ pub fn line(value: &Quantity) -> String {
     if let (Some(zero), true) = (&state.zero, per_substance) {
         parts.push(format!("counted from {zero}"));
     }
-    parts.join(", ")
+    let line = parts.join(", ");
+    std::iter::once(line).chain(changed_phases(cx, value)).collect::<Vec<_>>().join("; ")
+}
+
+/// `Fe(cr,alpha) is Fe(cr,gamma), changed at 1184 K`, of every step that inserted a change of phase, each once.
+fn changed_phases(cx: &Cx, value: &Quantity) -> Vec<String> {
+    let mut all: Vec<String> = Vec::new();
+    for node in node::history(value.node()) {
+        let Some(call) = call_of(&node) else { continue };
+        let Some(terms) = call.terms() else { continue };
+        let temperatures = call.args.iter().filter_map(|arg| match arg {
+            Value::Quantity(t) if t.kind().what.is_temperature() => Some(t.si()),
+            _ => None,
+        });
+        let routes = temperatures.flat_map(|t_k| path::crossings(terms, t_k, cx.data()));
+        for words in routes.filter_map(|(_, route)| route.words()) {
+            if !all.contains(&words) {
+                all.push(words);
+            }
+        }
+    }
+    all
 }
 
 /// Whether a call's species are gases, pure phases of any sort, and solutes.

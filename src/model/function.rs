@@ -1,18 +1,22 @@
-//! Heat capacity, enthalpy and entropy from the nine-constant functions, in closed form.
+//! Heat capacity, enthalpy and entropy from sums of powers of T, in closed form.
+//!
+//! The seven powers of the nine-constant form, which nearly every record has and no more:
 //!
 //! Cp/R = a₁T⁻² + a₂T⁻¹ + a₃ + a₄T + a₅T² + a₆T³ + a₇T⁴
 //! H/R  = −a₁T⁻¹ + a₂ ln T + a₃T + a₄T²/2 + a₅T³/3 + a₆T⁴/4 + a₇T⁵/5 + b₁     (zero: elements at 298.15 K)
 //! S/R  = −a₁T⁻²/2 − a₂T⁻¹ + a₃ ln T + a₄T + a₅T²/2 + a₆T³/3 + a₇T⁴/4 + b₂
 //!
+//! and any further power c Tⁿ of another published form, by its integrals (`num::powers`).
+//!
 //! | symbol | unit        | meaning                                                    |
 //! |--------|-------------|------------------------------------------------------------|
 //! | T      | K           | temperature, within the function's range                   |
-//! | R      | J/(mol K)   | the gas constant that the source used, 8.314510            |
+//! | R      | J/(mol K)   | the gas constant of the source, or the unit of its Cp      |
 //! | Cp, S  | J/(mol K)   | standard molar heat capacity and entropy, p° = 1 bar       |
 //! | H      | J/mol       | standard enthalpy, equal to ΔfH° at 298.15 K               |
 //!
-//! The surprise: R is the source's own, not today's, since the constants were fitted with it.
-//! Source: NASA/TP-2002-211556, equations (1) to (3).
+//! The surprise: R is the source's own (8.314510 in the report), not today's, since the constants were fitted with it.
+//! Source: NASA/TP-2002-211556, equations (1) to (3); the integrals of a power are elementary.
 
 use crate::data::function::{Function, Interval};
 use crate::num::math;
@@ -40,13 +44,18 @@ pub fn evaluate(function: &Function, t_k: f64) -> Functions {
     let interval = interval_at(&function.intervals, t_k);
     let (a, b) = (&interval.a, &interval.b);
     let (t, inverse, ln_t) = (t_k, 1.0 / t_k, math::ln(t_k));
-    let cp = a[0] * inverse * inverse + a[1] * inverse + horner(t, [a[2], a[3], a[4], a[5], a[6]]);
-    let h =
+    let mut cp = a[0] * inverse * inverse + a[1] * inverse + horner(t, [a[2], a[3], a[4], a[5], a[6]]);
+    let mut h =
         -a[0] * inverse + a[1] * ln_t + t * horner(t, [a[2], a[3] / 2.0, a[4] / 3.0, a[5] / 4.0, a[6] / 5.0]) + b[0];
-    let s = -a[0] / 2.0 * inverse * inverse - a[1] * inverse
+    let mut s = -a[0] / 2.0 * inverse * inverse - a[1] * inverse
         + a[2] * ln_t
         + t * horner(t, [a[3], a[4] / 2.0, a[5] / 3.0, a[6] / 4.0, 0.0])
         + b[1];
+    for power in &interval.more {
+        cp += power.value(t);
+        h += power.integral(t);
+        s += power.integral_over_x(t);
+    }
     let r = function.r_of_source;
     Functions { cp: r * cp, h: r * h, s: r * s }
 }
@@ -59,12 +68,70 @@ fn interval_at(intervals: &[Interval], t_k: f64) -> &Interval {
 
 /// dCp/dT at `t_k`, in J/(mol K²); the same range as [`evaluate`].
 pub fn cp_slope(function: &Function, t_k: f64) -> f64 {
-    let a = &interval_at(&function.intervals, t_k).a;
+    let interval = interval_at(&function.intervals, t_k);
+    let a = &interval.a;
     let inverse = 1.0 / t_k;
     let negative = -(2.0 * a[0] * inverse + a[1]) * inverse * inverse;
-    function.r_of_source * (negative + horner(t_k, [a[3], 2.0 * a[4], 3.0 * a[5], 4.0 * a[6], 0.0]))
+    let mut slope = negative + horner(t_k, [a[3], 2.0 * a[4], 3.0 * a[5], 4.0 * a[6], 0.0]);
+    for power in &interval.more {
+        slope += power.slope(t_k);
+    }
+    function.r_of_source * slope
 }
 
 fn horner(t: f64, c: [f64; 5]) -> f64 {
     c[0] + t * (c[1] + t * (c[2] + t * (c[3] + t * c[4])))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::data::dataset::DatasetId;
+    use crate::data::form;
+    use crate::data::function::Zero;
+    use crate::num::powers::Power;
+    use crate::source::Citation;
+
+    /// The sum of powers as it stands in a file, with nothing taken out of the general list.
+    fn of(interval: Interval) -> Function {
+        Function {
+            dataset: DatasetId::new("invented"),
+            id: "X(cr)".into(),
+            name: "invented".into(),
+            formula: "X".into(),
+            cas: None,
+            t_min: interval.t_min,
+            t_max: interval.t_max,
+            intervals: [interval].into(),
+            r_of_source: 8.314_51,
+            dhf_298: 0.0,
+            zero: Zero { enthalpy: true, entropy: true },
+            h298_minus_h0: None,
+            warnings: Box::default(),
+            is_reference_element: false,
+            original_references: "".into(),
+            p_standard_pa: 1e5,
+            citation: Citation::new("invented for this test", ""),
+        }
+    }
+
+    #[test]
+    fn further_powers_are_added_as_the_seven_are() {
+        // The same invented sum twice: with the powers -0.5 and 6 in the list, and the seven by their own places.
+        let all = [(-2.0, 1e4), (-1.0, 50.0), (0.0, 3.0), (1.0, 1e-3), (4.0, 1e-13), (-0.5, 20.0), (6.0, 1e-19)];
+        let powers = all.map(|(exponent, factor)| Power { exponent, factor });
+        let function = of(form::of_powers((200.0, 1500.0), powers, 1.0));
+        for t_k in [200.0, 298.15, 777.7, 1500.0] {
+            let at = evaluate(&function, t_k);
+            let (h, s) = function.intervals[0].h_and_s(t_k);
+            let cp: f64 = powers.iter().map(|power| power.value(t_k)).sum();
+            let slope: f64 = powers.iter().map(|power| power.slope(t_k)).sum();
+            // Bound: the two add in another order.
+            let close = |got: f64, want: f64| assert!((got - want).abs() <= 1e-13 * want.abs(), "{got} {want}");
+            close(at.cp, 8.314_51 * cp);
+            close(at.h, 8.314_51 * h);
+            close(at.s, 8.314_51 * s);
+            close(cp_slope(&function, t_k), 8.314_51 * slope);
+        }
+    }
 }

@@ -17,7 +17,8 @@ use crate::data::function::Function;
 use crate::data::substance::Substance;
 use crate::fault::{Explain, Fault};
 use crate::model::card::Cx;
-use crate::model::function::{self, T_REFERENCE};
+use crate::model::function::{self, Functions, T_REFERENCE};
+use crate::model::path::Route;
 use crate::model::terms::{Term, Terms};
 use crate::model::thermo::{AtT, Thermo};
 use crate::num::math;
@@ -38,6 +39,9 @@ pub enum HeatCapacity {
     Mean,
     /// None: the value at 298.15 K stands for the value at T.
     Neglected,
+    /// The integral of the function of the phase as written, its value held beyond the end of its record: changes of phase on
+    /// the way are left out.
+    Missed,
 }
 
 impl HeatCapacity {
@@ -51,6 +55,7 @@ impl HeatCapacity {
             HeatCapacity::Midpoint => "held at its value half-way",
             HeatCapacity::Mean => "held at the mean of both ends",
             HeatCapacity::Neglected => "neglected",
+            HeatCapacity::Missed => "that of the phase as written",
         }
     }
 
@@ -135,6 +140,10 @@ pub struct Slopes {
 pub enum GatherError {
     #[error("{t_k} K is outside the range of the data for {species}, {t_min} K to {t_max} K")]
     Range { species: String, t_k: f64, t_min: f64, t_max: f64 },
+    #[error(
+        "{phase} ends at {t_end} K on record, and the change to {gas} is not inserted on the way to {t_k} K: where it happens depends on the pressure"
+    )]
+    GasNotInserted { phase: String, gas: String, t_k: f64, t_end: f64 },
     #[error("no heat capacity of {species} is at hand, so nothing can be said of it at {t_k} K")]
     NoFunction { species: String, t_k: f64 },
     #[error("no one dataset has the formation enthalpies of all species: {missing}")]
@@ -151,6 +160,7 @@ impl Explain for GatherError {
     fn code(&self) -> &'static str {
         match self {
             GatherError::Range { .. } => "temperature-out-of-range",
+            GatherError::GasNotInserted { .. } => "gas-not-inserted",
             GatherError::NoFunction { .. } => "heat-capacity-missing",
             GatherError::NotCovered { .. } => "formation-not-covered",
             GatherError::NotInDataset { .. } => "formation-missing",
@@ -164,6 +174,9 @@ impl Explain for GatherError {
             GatherError::Range { species, t_min, t_max, .. } => format!(
                 "choose a temperature from {t_min} K to {t_max} K, or a phase of the substance that exists at this one, instead of {species}"
             ),
+            GatherError::GasNotInserted { gas, t_end, .. } => {
+                format!("write {gas} where the gas is meant, or choose a temperature up to {t_end} K")
+            }
             GatherError::NoFunction { .. } => "ask for 298.15 K, where the tables give it".to_owned(),
             GatherError::NotCovered { .. } => {
                 "mixing datasets is done on demand only: add `#{ formation: \"mixed\" }`, and the register prices it"
@@ -317,7 +330,7 @@ fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<
         let input = Input { u: Some(0.0), citation: Some(citation), ..Input::of(key) };
         return Some(Figure { si: 0.0, origin: input.into(), printed: Some("0".into()) });
     }
-    if function.dataset != *dataset {
+    if function.dataset != *dataset || !function.zero.enthalpy {
         return None;
     }
     // The report prints formation enthalpies in J/mol to three decimals; that is not what they are good for.
@@ -337,10 +350,22 @@ pub const ENTROPY: &str = "entropy";
 pub fn contributions(reaction: &Terms, t_k: f64, method: &Method, cx: &Cx) -> Result<Vec<Contribution>, Fault> {
     let datasets = datasets_for(reaction, &method.formation, cx.data())?;
     let mut all = Vec::with_capacity(reaction.terms().len());
-    for (term, dataset) in reaction.terms().iter().zip(&datasets) {
+    for (at, (term, dataset)) in reaction.terms().iter().zip(&datasets).enumerate() {
+        refuse_two_in_one(at, reaction, t_k, cx.data())?;
         all.push(contribution(term, dataset, t_k, method.heat_capacity, cx)?);
     }
     Ok(all)
+}
+
+/// Two phases that the equation tells apart stay two: a term whose route would pass into another one is meant as written.
+fn refuse_two_in_one(at: usize, terms: &Terms, t_k: f64, data: &Catalog) -> Result<(), GatherError> {
+    let term = &terms.terms()[at];
+    let (None, Some(function)) = (&term.own, &term.substance.function) else { return Ok(()) };
+    if function.covers(t_k) || !Route::to(&term.substance, t_k, data)?.meets_another_term(at, terms) {
+        return Ok(());
+    }
+    let (t_min, t_max) = (function.t_min, function.t_max);
+    Err(GatherError::Range { species: term.substance.id().to_owned(), t_k, t_min, t_max })
 }
 
 /// What one term contributes; its formation enthalpy must be in `dataset` ([`formation_of`]).
@@ -375,8 +400,7 @@ pub(crate) fn contribution(
         });
     };
     if !function.covers(t_k) {
-        let (t_min, t_max) = (function.t_min, function.t_max);
-        return Err(GatherError::Range { species: species(), t_k, t_min, t_max }.into());
+        return Route::to(substance, t_k, data)?.contribution(term.nu, formation, mode);
     }
     let at_t = function::evaluate(function, t_k);
     let figure = |taken: &Drawn, field: &'static str, digit: f64| Figure {
@@ -410,7 +434,7 @@ pub(crate) fn contribution(
         nu: term.nu,
         formation,
         increment,
-        entropy: Some(figure(&taken.entropy, ENTROPY, 0.001)),
+        entropy: function.zero.entropy.then(|| figure(&taken.entropy, ENTROPY, 0.001)),
         cp: Some(figure(&taken.cp, HEAT_CAPACITY, 0.001)),
         slopes: taken.slopes,
     })
@@ -440,13 +464,14 @@ fn of_own(
         entropy: at.entropy,
         cp: Some(at.cp),
     };
-    if mode == HeatCapacity::Full {
+    // It is one phase, so there is no change of phase to miss.
+    if matches!(mode, HeatCapacity::Full | HeatCapacity::Missed) {
         return Ok(whole(own.at(cx, t_k)?));
     }
     let at_0 = own.at(cx, T_REFERENCE)?;
     let (span, ln_ratio) = (t_k - T_REFERENCE, math::ln(t_k / T_REFERENCE));
     let (cp, cp_slope) = match mode {
-        HeatCapacity::Full => unreachable!("it was answered above"),
+        HeatCapacity::Full | HeatCapacity::Missed => unreachable!("it was answered above"),
         HeatCapacity::Constant => (at_0.cp.clone(), 0.0),
         HeatCapacity::Midpoint => {
             let middle = own.at(cx, 0.5 * (t_k + T_REFERENCE))?;
@@ -474,26 +499,52 @@ fn of_own(
 }
 
 /// A figure drawn from a function: at which temperature, and in which way where there are several.
-struct Drawn {
-    si: f64,
-    t_k: f64,
-    way: &'static str,
+pub(super) struct Drawn {
+    pub si: f64,
+    pub t_k: f64,
+    pub way: &'static str,
 }
 
-struct Taken {
-    increment: Drawn,
-    entropy: Drawn,
-    cp: Drawn,
-    slopes: Slopes,
+/// Figures of one species at T as a method takes the heat capacity.
+pub(super) struct Taken {
+    pub increment: Drawn,
+    pub entropy: Drawn,
+    pub cp: Drawn,
+    pub slopes: Slopes,
 }
 
-const INTEGRATED: &str = "integrated from 298.15 K";
+pub(super) const INTEGRATED: &str = "integrated from 298.15 K";
+pub(super) const AT_REFERENCE: &str = "Cp held at its value at 298.15 K";
+pub(super) const HALF_WAY: &str = "Cp held at its value half-way";
+pub(super) const BOTH_ENDS: &str = "Cp held at the mean of both ends";
+pub(super) const MEAN_OF_BOTH: &str = "mean of it and the one at 298.15 K";
+
+/// With Cp held at one value, whose own slope with T is `cp_slope`.
+pub(super) fn flat(at_0: Functions, t_k: f64, cp: Drawn, cp_slope: f64, way: &'static str) -> Taken {
+    let (span, ln_ratio) = (t_k - T_REFERENCE, math::ln(t_k / T_REFERENCE));
+    Taken {
+        increment: Drawn { si: cp.si * span, t_k, way },
+        entropy: Drawn { si: at_0.s + cp.si * ln_ratio, t_k, way },
+        slopes: Slopes { increment: cp.si + cp_slope * span, entropy: cp.si / t_k + cp_slope * ln_ratio, cp: cp_slope },
+        cp,
+    }
+}
+
+/// With the values at 298.15 K.
+pub(super) fn neglected(at_0: Functions, t_k: f64) -> Taken {
+    Taken {
+        increment: Drawn { si: 0.0, t_k, way: "neglected" },
+        entropy: Drawn { si: at_0.s, t_k: T_REFERENCE, way: "" },
+        cp: Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" },
+        slopes: Slopes::default(),
+    }
+}
 
 /// Increment and entropy between 298.15 K and T, as the method takes the heat capacity.
 ///
 /// A phase that does not reach down to 298.15 K has no heat capacity there, and is always integrated: its enthalpy scale
 /// continues that of the phase it forms from.
-fn between(function: &Function, h_298: f64, t_k: f64, at_t: function::Functions, mode: HeatCapacity) -> Taken {
+fn between(function: &Function, h_298: f64, t_k: f64, at_t: Functions, mode: HeatCapacity) -> Taken {
     let slope = function::cp_slope(function, t_k);
     let integrated = |h_298: f64| Taken {
         increment: Drawn { si: at_t.h - h_298, t_k, way: INTEGRATED },
@@ -505,34 +556,23 @@ fn between(function: &Function, h_298: f64, t_k: f64, at_t: function::Functions,
         return integrated(h_298);
     }
     let at_0 = function::evaluate(function, T_REFERENCE);
-    let (span, ln_ratio) = (t_k - T_REFERENCE, math::ln(t_k / T_REFERENCE));
-    let flat = |cp: Drawn, cp_slope: f64, way: &'static str| Taken {
-        increment: Drawn { si: cp.si * span, t_k, way },
-        entropy: Drawn { si: at_0.s + cp.si * ln_ratio, t_k, way },
-        slopes: Slopes { increment: cp.si + cp_slope * span, entropy: cp.si / t_k + cp_slope * ln_ratio, cp: cp_slope },
-        cp,
-    };
     match mode {
-        HeatCapacity::Full => integrated(at_0.h),
+        // Within one record there is no change of phase to miss.
+        HeatCapacity::Full | HeatCapacity::Missed => integrated(at_0.h),
         HeatCapacity::Constant => {
             let cp = Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" };
-            flat(cp, 0.0, "Cp held at its value at 298.15 K")
+            flat(at_0, t_k, cp, 0.0, AT_REFERENCE)
         }
         HeatCapacity::Midpoint => {
             let middle = 0.5 * (t_k + T_REFERENCE);
             let cp = Drawn { si: function::evaluate(function, middle).cp, t_k: middle, way: "" };
-            flat(cp, 0.5 * function::cp_slope(function, middle), "Cp held at its value half-way")
+            flat(at_0, t_k, cp, 0.5 * function::cp_slope(function, middle), HALF_WAY)
         }
         HeatCapacity::Mean => {
-            let cp = Drawn { si: 0.5 * (at_0.cp + at_t.cp), t_k, way: "mean of it and the one at 298.15 K" };
-            flat(cp, 0.5 * slope, "Cp held at the mean of both ends")
+            let cp = Drawn { si: 0.5 * (at_0.cp + at_t.cp), t_k, way: MEAN_OF_BOTH };
+            flat(at_0, t_k, cp, 0.5 * slope, BOTH_ENDS)
         }
-        HeatCapacity::Neglected => Taken {
-            increment: Drawn { si: 0.0, t_k, way: "neglected" },
-            entropy: Drawn { si: at_0.s, t_k: T_REFERENCE, way: "" },
-            cp: Drawn { si: at_0.cp, t_k: T_REFERENCE, way: "" },
-            slopes: Slopes::default(),
-        },
+        HeatCapacity::Neglected => neglected(at_0, t_k),
     }
 }
 

@@ -11,14 +11,18 @@ pub mod check_line;
 pub mod claims;
 pub mod compare;
 pub mod conditions;
+pub mod curve;
+pub mod curve_card;
 pub mod derivation;
 pub mod expanded;
 pub mod function;
 pub mod gap;
 pub mod gather;
+pub mod grid;
 pub mod linearity;
 pub mod mass;
 pub mod monte_carlo;
+pub mod path;
 pub mod plant;
 pub mod property;
 pub mod property_card;
@@ -67,6 +71,17 @@ pub const CARDS: &[&Card] = &[
     &plant::adiabatic::ADIABATIC_TEMPERATURE,
     &plant::rise::TEMPERATURE_RISE,
     &plant::rise::RISE_OF_FIGURES,
+    &grid::GRID,
+    &grid::GRID_OF,
+    &curve_card::X,
+    &curve_card::Y,
+    &curve_card::AT,
+    &curve_card::TO,
+    &curve_card::VALUES,
+    &curve_card::UNCERTAINTIES,
+    &curve_card::MIN,
+    &curve_card::MAX,
+    &curve_card::CROSSINGS,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,

@@ -4,6 +4,7 @@ use std::rc::Rc;
 
 use crate::fault::Fault;
 use crate::model::card::{Alternative, Arg, Call, Card, Claim, Cx, Default, On, Sources, Takes, Value};
+use crate::model::check_line;
 use crate::model::claims;
 use crate::model::gather::{self, Contribution, Figure, HeatCapacity};
 use crate::model::property::{self, Property};
@@ -20,16 +21,13 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     let (Some(terms), t_k) = (call.terms(), call.quantity(1).si()) else { return String::new() };
     let Ok(method) = property::method_of(call, cx) else { return String::new() };
     let Ok(contributions) = gather::contributions(terms, t_k, &method, cx) else { return String::new() };
-    let kilo = |figure: &Figure| match &figure.printed {
-        Some(printed) => printed.to_string(),
-        None => format!("{:.3}", figure.si / 1000.0),
-    };
-    let plain =
-        |figure: &Figure| figure.printed.as_ref().map_or_else(|| format!("{:.3}", figure.si), ToString::to_string);
+    let plain = |si: f64| format!("{si:.3}");
     let enthalpy = |sources: &mut Sources| {
-        let formation = sum_of(&contributions, sources, |c| Some(&c.formation), kilo);
-        let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), kilo);
-        if increments.is_empty() { formation } else { format!("({formation}) + ({increments})") }
+        let formation = sum_of(&contributions, sources, |c| Some(&c.formation), check_line::kilo);
+        let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), check_line::kilo);
+        let whole =
+            |sum: String| if sum.starts_with('(') && contributions.len() == 1 { sum } else { format!("({sum})") };
+        if increments.is_empty() { formation } else { format!("({formation}) + {}", whole(increments)) }
     };
     let entropies = |sources: &mut Sources| sum_of(&contributions, sources, |c| c.entropy.as_ref(), plain);
     let result = format!("{:.3} kJ/mol", value.si() / 1000.0);
@@ -75,13 +73,12 @@ fn sum_of<'a>(
     contributions: &'a [Contribution],
     sources: &mut Sources,
     pick: impl Fn(&'a Contribution) -> Option<&'a Figure>,
-    show: impl Fn(&Figure) -> String,
+    show: impl Fn(f64) -> String,
 ) -> String {
     let mut line = String::new();
     for contribution in contributions {
         let Some(figure) = pick(contribution) else { continue };
-        let (nu, shown) = (contribution.nu, show(figure));
-        let source = figure.citation().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+        let (nu, shown) = (contribution.nu, check_line::figures_of(figure, sources, &show));
         line.push_str(match (line.is_empty(), nu < 0.0) {
             (true, false) => "",
             (true, true) => "-",
@@ -91,7 +88,7 @@ fn sum_of<'a>(
         if nu.abs() != 1.0 {
             line.push_str(&format!("{} × ", nu.abs()));
         }
-        line.push_str(&if shown.starts_with('-') { format!("({shown}){source}") } else { format!("{shown}{source}") });
+        line.push_str(&shown);
     }
     line
 }
@@ -118,8 +115,12 @@ const HEAT_CAPACITY_ONLY: &[Arg] = &[Arg {
     doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
 }];
 
-const TEMPERATURE: Arg =
-    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "temperature: degC, degF or kelvin" };
+const TEMPERATURE: Arg = Arg {
+    name: "T",
+    takes: Takes::Temperatures,
+    default: Default::Required,
+    doc: "temperature: degC, degF or kelvin; with a grid of temperatures the answer is a curve",
+};
 
 const ARGS: &[Arg] = &[
     TEMPERATURE,
@@ -159,6 +160,11 @@ const SHORTCUTS: &[Alternative] = &[
         value: claims::with_constant_heat_capacity,
     },
     Alternative { id: "no-correction", words: "with the value at 298.15 K", value: claims::without_correction },
+    Alternative {
+        id: "missed-phase-change",
+        words: "with the changes of phase left out, Cp of the phase as written held on",
+        value: claims::with_missed_phase_change,
+    },
 ];
 
 const SOURCE: &str = "definitions of the state functions; IUPAC Green Book, 3rd ed., section 2.11 (from memory)";

@@ -106,7 +106,7 @@ pub fn review(cx: &Cx, label: &str, value: &Quantity, dealings: &[Dealing]) -> R
     }
     Review {
         about: conditions::about(value),
-        conditions: conditions::line(value),
+        conditions: conditions::line(cx, value),
         check_line,
         tolerance: at.in_unit(at.tolerance),
         precision: at.half_digit,
@@ -343,6 +343,7 @@ pub fn silent_inputs(value: &Quantity) -> Vec<(String, Vec<String>)> {
 }
 
 fn plural(field: &str) -> String {
+    // "transition enthalpies", "heat capacities", "typed values".
     match field.strip_suffix('y') {
         Some(stem) => format!("{stem}ies"),
         None => format!("{field}s"),

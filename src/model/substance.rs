@@ -1,6 +1,7 @@
 //! A pure substance in one phase, asked for its properties per mole of it.
 //!
-//! H(T) − H(T₁) = ∫Cp dT, from the function's closed form       (zero: the substance itself at T₁)
+//! H(T) − H(T₁) = ∫Cp dT, from the function's closed form, + ΣΔtrsH of the changes of phase between
+//! (zero: the substance itself at T₁)
 //!
 //! Its enthalpy is counted from the elements at 298.15 K; an increment is counted from the substance itself. The two have
 //! different zeros and are kept apart.
@@ -15,8 +16,10 @@ use smallvec::SmallVec;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Sources, Takes, Value};
+use crate::model::check_line;
 use crate::model::function::{self, T_REFERENCE};
-use crate::model::gather::{self, Figure, GatherError};
+use crate::model::gather::{self, Figure, FigureOrigin, GatherError};
+use crate::model::path::{FROM_START, Leg, Route};
 use crate::model::property::{self, Property};
 use crate::model::terms::{Term, Terms};
 use crate::quantity::Quantity;
@@ -114,7 +117,12 @@ macro_rules! increment_card {
 }
 
 const INCREMENT_ARGS: &[Arg] = &[
-    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "end temperature" },
+    Arg {
+        name: "T",
+        takes: Takes::Temperatures,
+        default: Default::Required,
+        doc: "end temperature; with a grid of them the answer is a curve",
+    },
     Arg {
         name: "from",
         takes: Takes::Temperature,
@@ -128,7 +136,8 @@ increment_card!(
     "substance.enthalpy-increment",
     On::Substance,
     "H(T) - H(from) per mole of the substance, zero: the substance itself at the start",
-    "Enthalpy taken up on heating within one phase, from the function's closed-form integral of Cp.",
+    "Enthalpy taken up on heating, from the function's closed-form integral of Cp; recorded changes between condensed phases \
+     on the way are included.",
     "substance(\"CO2(g)\")"
 );
 increment_card!(
@@ -167,9 +176,13 @@ fn heated(term: &Term, t_k: f64, from_k: f64, cx: &Cx) -> Result<Heated, Fault> 
         });
     }
     let function = record.function.as_ref().ok_or_else(|| GatherError::NoFunction { species: species(), t_k })?;
-    if let Some(outside) = [t_k, from_k].into_iter().find(|t| !function.covers(*t)) {
+    let (lower, upper) = (t_k.min(from_k), t_k.max(from_k));
+    if !(function.covers(lower) && function.covers(upper)) {
         let (t_min, t_max) = (function.t_min, function.t_max);
-        return Err(GatherError::Range { species: species(), t_k: outside, t_min, t_max }.into());
+        if lower < t_min {
+            return Err(GatherError::Range { species: species(), t_k: lower, t_min, t_max }.into());
+        }
+        return over_changes(term, &Route::to(record, upper, cx.data())?, t_k, from_k);
     }
     let (end, start) = (function::evaluate(function, t_k), function::evaluate(function, from_k));
     let input = Input {
@@ -180,12 +193,21 @@ fn heated(term: &Term, t_k: f64, from_k: f64, cx: &Cx) -> Result<Heated, Fault> 
             record: record.species.id.clone(),
             field: gather::HEAT_CAPACITY,
             t_bits: t_k.to_bits(),
-            way: "integrated from the start",
+            way: FROM_START,
         })
     };
     // What is drawn from the function is the difference; start and end of one function are not two figures.
     let difference = Figure { si: end.h - start.h, origin: input.into(), printed: None };
     Ok(Heated { nu: term.nu, end: end.h, start: start.h, cp: (end.cp, start.cp), difference })
+}
+
+/// The same over changes of phase on the way; cooling is heating the other way round.
+fn over_changes(term: &Term, route: &Route, t_k: f64, from_k: f64) -> Result<Heated, Fault> {
+    let legs = route.legs_from(t_k.min(from_k));
+    let difference = Figure::sum_of_nodes(legs.iter().map(Leg::node).collect::<Result<Vec<_>, Fault>>()?);
+    let way = if t_k < from_k { -1.0 } else { 1.0 };
+    let cp = |t_k: f64| way * route.phase_at(t_k).at(t_k).cp;
+    Ok(Heated { nu: way * term.nu, end: difference.si, start: 0.0, cp: (cp(t_k), cp(from_k)), difference })
 }
 
 /// The two temperatures of a call, in kelvin.
@@ -235,8 +257,16 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     let mut line = String::new();
     for term in terms.terms() {
         let Ok(heated) = heated(term, t_k, from_k, cx) else { return String::new() };
-        let source = heated.difference.citation().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
         let (end, start) = (heated.end / 1000.0, heated.start / 1000.0);
+        let figures = match &heated.difference.origin {
+            FigureOrigin::Nodes(_) if term.own.is_none() => {
+                check_line::figures_of(&heated.difference, sources, &check_line::kilo)
+            }
+            _ => {
+                let source = heated.difference.citation().map(|c| format!("[{}]", sources.number(c)));
+                format!("({end:.3} - ({start:.3})){}", source.unwrap_or_default())
+            }
+        };
         let sign = match (line.is_empty(), heated.nu < 0.0) {
             (true, false) => "",
             (true, true) => "-",
@@ -244,7 +274,7 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
             (false, true) => " - ",
         };
         let nu = if heated.nu.abs() == 1.0 { String::new() } else { format!("{} × ", heated.nu.abs()) };
-        line.push_str(&format!("{sign}{nu}({end:.3} - ({start:.3})){source}"));
+        line.push_str(&format!("{sign}{nu}{figures}"));
     }
     format!("{line} = {:.3} kJ/mol", value.si() / 1000.0)
 }

@@ -46,6 +46,12 @@ impl Figure {
         Figure { si, origin: FigureOrigin::Nodes(nodes.into_iter().collect()), printed: None }
     }
 
+    /// The sum of some nodes.
+    pub(super) fn sum_of_nodes(nodes: impl IntoIterator<Item = Rc<Node>>) -> Figure {
+        let nodes: SmallVec<[(Rc<Node>, f64); 2]> = nodes.into_iter().map(|node| (node, 1.0)).collect();
+        Figure::of_nodes(nodes.iter().map(|(node, _)| node.si()).sum(), nodes)
+    }
+
     /// A weighted sum of figures that are made of nodes.
     pub(super) fn combined(parts: &[(&Figure, f64)]) -> Figure {
         let mut nodes: SmallVec<[(Rc<Node>, f64); 2]> = SmallVec::new();

@@ -2,6 +2,7 @@
 
 pub mod cholesky;
 pub mod math;
+pub mod powers;
 pub mod random;
 pub mod rational;
 pub mod root;

@@ -6,12 +6,14 @@
 pub mod balance;
 pub mod budget;
 pub mod comparison;
+pub mod curve;
 pub mod derivation;
 pub mod gap;
 pub mod headline;
 pub mod html;
 pub mod interval;
 pub mod latex;
+pub mod plot;
 pub mod register;
 pub mod report;
 pub mod text;

@@ -15,6 +15,8 @@ use crate::fault::{Fault, Place};
 use crate::model::CARDS;
 use crate::model::answer::Answer;
 use crate::model::card::{self, Card, Cx, On, Value};
+use crate::model::curve::Curve;
+use crate::model::grid::Grid;
 use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
@@ -80,6 +82,7 @@ fn receiver(on: On) -> Option<TypeId> {
         On::Quantity => Some(TypeId::of::<Quantity>()),
         On::Reaction => Some(TypeId::of::<Rc<Reaction>>()),
         On::Substance => Some(TypeId::of::<Rc<PureSubstance>>()),
+        On::Curve => Some(TypeId::of::<Rc<Curve>>()),
     }
 }
 
@@ -96,6 +99,12 @@ pub fn to_value(value: &Dynamic) -> Value {
     }
     if let Some(stream) = value.read_lock::<Rc<Stream>>() {
         return Value::Stream(Rc::clone(&stream));
+    }
+    if let Some(grid) = value.read_lock::<Rc<Grid>>() {
+        return Value::Grid(Rc::clone(&grid));
+    }
+    if let Some(curve) = value.read_lock::<Rc<Curve>>() {
+        return Value::Curve(Rc::clone(&curve));
     }
     if let Some(answer) = value.read_lock::<Answer>() {
         return Value::Answer(answer.clone());
@@ -136,6 +145,8 @@ fn from_value(value: Value) -> Dynamic {
         Value::Reaction(reaction) => Dynamic::from(reaction),
         Value::Substance(substance) => Dynamic::from(substance),
         Value::Stream(stream) => Dynamic::from(stream),
+        Value::Grid(grid) => Dynamic::from(grid),
+        Value::Curve(curve) => Dynamic::from(curve),
         Value::Answer(answer) => Dynamic::from(answer),
         Value::Nothing => Dynamic::UNIT,
     }

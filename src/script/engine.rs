@@ -13,7 +13,7 @@ use crate::script::fault::translate_syntax;
 use crate::script::prepare::{Prepared, prepare};
 use crate::script::script_error::CALL_LEVELS;
 use crate::script::state::{Halt, Shared};
-use crate::script::{bind, compare, fault, guards, numbers, operators, show, verbs};
+use crate::script::{bind, compare, curves, fault, guards, numbers, operators, show, verbs};
 
 /// Nesting of expressions; the engine's default refuses a sum of sixty terms inside a function.
 const EXPRESSION_DEPTH: usize = 512;
@@ -84,6 +84,7 @@ fn register_language(engine: &mut Engine, shared: &Shared) {
 fn register_library(engine: &mut Engine, shared: &Shared) {
     bind::register(engine, shared);
     operators::register(engine, shared);
+    curves::register(engine, shared);
     verbs::register(engine, shared);
 }
 

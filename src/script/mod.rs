@@ -5,6 +5,7 @@
 
 pub mod bind;
 pub mod compare;
+pub mod curves;
 pub mod engine;
 pub mod fault;
 pub mod guards;

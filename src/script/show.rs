@@ -11,6 +11,8 @@ use rhai::{Array, Blob, Dynamic, Engine, FnPtr, ImmutableString, Map};
 
 use crate::fault::Fault;
 use crate::model::answer::Answer;
+use crate::model::curve::Curve;
+use crate::model::grid::Grid;
 use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
@@ -31,6 +33,12 @@ fn own(value: &Dynamic) -> Option<Bundle> {
     }
     if let Some(answer) = value.read_lock::<Answer>() {
         return Some(render::answer(&answer));
+    }
+    if let Some(curve) = value.read_lock::<Rc<Curve>>() {
+        return Some(render::curve::bundle(&curve));
+    }
+    if let Some(grid) = value.read_lock::<Rc<Grid>>() {
+        return Some(Bundle::text(grid.words()));
     }
     if let Some(display) = value.read_lock::<Display>() {
         return Some((*display.0).clone());

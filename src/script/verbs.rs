@@ -91,6 +91,8 @@ enum VerbError {
     Requirement { text: String },
     #[error("`report` wants a quantity, not {given}")]
     NotAQuantity { given: String },
+    #[error("`report` takes one value, and a curve over {extent} is many")]
+    Curve { extent: String },
     #[error("the parameter `{name}` is declared twice")]
     ParameterTwice { name: String },
     #[error("the parameter `{name}` was set to a value in {given} and is declared in {declared}")]
@@ -116,6 +118,7 @@ impl Explain for VerbError {
             VerbError::NoReason { .. } => "reason-missing",
             VerbError::Requirement { .. } => "requirement-failed",
             VerbError::NotAQuantity { .. } => "report-not-a-quantity",
+            VerbError::Curve { .. } => "report-of-a-curve",
             VerbError::ParameterTwice { .. } => "parameter-twice",
             VerbError::ParameterUnit { .. } => "parameter-unit",
             VerbError::ParameterNumber { .. } => "parameter-not-a-number",
@@ -146,6 +149,11 @@ impl Explain for VerbError {
             VerbError::NoReason { .. } => "say in words why the value may stay as it is".to_owned(),
             VerbError::Requirement { .. } => "the notebook asks for this on purpose; see the text".to_owned(),
             VerbError::NotAQuantity { .. } => "give the number a unit, as in `q(\"1.5 kJ/mol\")`".to_owned(),
+            VerbError::Curve { .. } => {
+                "report the value that is used, as in `report(label, curve.at(\"450 degC\"))`: its assumptions are tested \
+                 at its temperature; `display(curve)` shows the whole"
+                    .to_owned()
+            }
             VerbError::ParameterTwice { .. } => "declare it in one place and use the variable elsewhere".to_owned(),
             VerbError::ParameterUnit { declared, .. } => {
                 format!("set it in a unit of the same dimension, such as {declared}")
@@ -276,6 +284,7 @@ impl Verbs {
     fn report(&self, cx: &Cx, label: &str, value: &Dynamic) -> Result<(), Fault> {
         let value = match to_value(value) {
             Value::Quantity(value) => value,
+            Value::Curve(curve) => return Err(VerbError::Curve { extent: curve.grid().words() }.into()),
             other => return Err(VerbError::NotAQuantity { given: other.sort().to_owned() }.into()),
         };
         if label.trim().is_empty() {

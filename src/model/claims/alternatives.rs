@@ -4,6 +4,7 @@ use super::asked;
 use crate::model::card::{Call, Cx};
 use crate::model::function;
 use crate::model::gather::{HeatCapacity, Method};
+use crate::model::path;
 use crate::model::property::{self, Property};
 use crate::quantity::Quantity;
 
@@ -15,6 +16,13 @@ pub fn with_constant_heat_capacity(cx: &Cx, call: &Call, _: &Quantity) -> Option
 /// What the value at 298.15 K would have given.
 pub fn without_correction(cx: &Cx, call: &Call, _: &Quantity) -> Option<f64> {
     shortcut(cx, call, HeatCapacity::Neglected)
+}
+
+/// What leaving the changes of phase out would have given, where any were inserted.
+pub fn with_missed_phase_change(cx: &Cx, call: &Call, _: &Quantity) -> Option<f64> {
+    let asked = asked(cx, call)?;
+    let crosses = !path::crossings(asked.terms, asked.t_k, cx.data()).is_empty();
+    if crosses { shortcut(cx, call, HeatCapacity::Missed) } else { None }
 }
 
 fn shortcut(cx: &Cx, call: &Call, heat_capacity: HeatCapacity) -> Option<f64> {

@@ -8,7 +8,7 @@ mod heat_capacity;
 mod phase;
 mod volume;
 
-pub use alternatives::{with_constant_heat_capacity, without_correction};
+pub use alternatives::{with_constant_heat_capacity, with_missed_phase_change, without_correction};
 pub use formation::formation_dataset;
 pub use heat_capacity::constant_heat_capacity;
 pub use phase::stable_phase;

@@ -15,6 +15,7 @@ use crate::fault::Fault;
 use crate::model::card::{Call, Cx, Value};
 use crate::model::function;
 use crate::model::gather;
+use crate::model::path;
 use crate::model::property::{self, Property};
 use crate::model::substance::PureSubstance;
 use crate::model::terms::Terms;
@@ -31,54 +32,65 @@ pub(in crate::model) const RESOLUTION_CONDENSED: f64 = 1.0;
 pub(in crate::model) const RESOLUTION_GAS: f64 = 300.0;
 
 /// `stable-phase`: each species against the other shipped phases of its composition, by Gibbs energy at T and 1 bar; a gas
-/// above its critical temperature has no liquid to be compared with.
+/// above its critical temperature has no liquid to be compared with. Where changes of phase were inserted on the way to T,
+/// they are named, and the phase that stands at T is the one compared.
 pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
     let Some(asked) = asked(cx, call) else { return Vec::new() };
-    let (mut stable, mut supercritical, mut alone, mut findings) = (Vec::new(), Vec::new(), Vec::new(), Vec::new());
-    let mut sources = Vec::new();
+    let (mut settled, mut stable, mut alone): (Vec<&str>, Vec<&str>, Vec<&str>) = Default::default();
+    let (mut how, mut what, mut supercritical): (Vec<String>, Vec<String>, Vec<String>) = Default::default();
+    let (mut sources, mut findings) = (Vec::new(), Vec::new());
+    let crossings = path::crossings(asked.terms, asked.t_k, cx.data());
     let at_t = |subject: String, tested| Finding::known("stable-phase", subject, value.node(), Some(asked.t_k), tested);
-    for term in asked.terms.terms() {
-        let species = &term.substance.species;
-        // A solute has no phase of its own to compare, and a change of phase is about the change.
-        if species.phase.state == Aggregate::Aqueous || is_change_of_phase(asked.terms) {
+    for (at, term) in asked.terms.terms().iter().enumerate() {
+        let id = &*term.substance.species.id;
+        let route = crossings.iter().find(|(of, _)| *of == at).map(|(_, route)| route);
+        let passed = route.map(|route| format!("{id}: {}, inserted", route.change_words()));
+        // A solute has no phase of its own to compare.
+        if term.substance.species.phase.state == Aggregate::Aqueous {
             continue;
         }
-        match compared(cx, &term.substance, asked.t_k) {
-            Compared::NothingToCompare => alone.push(&*species.id),
+        // A change of phase is about the change, so what was inserted is all there is to say.
+        if is_change_of_phase(asked.terms) {
+            settled.extend(passed.is_some().then_some(id));
+            how.extend(passed);
+            continue;
+        }
+        let there = route.map_or(&term.substance, |route| &route.last().substance);
+        match compared(cx, there, asked.t_k) {
+            Compared::NothingToCompare => {
+                alone.push(id);
+                what.extend(passed);
+                continue;
+            }
+            Compared::Unstable(other) => {
+                let tested = unstable(cx, call, &asked, (&term.substance, there), &other, passed);
+                findings.push(at_t(id.to_owned(), tested));
+                continue;
+            }
             Compared::Supercritical(critical) => {
-                supercritical.push(format!("{} ({} K)", species.id, critical.t_k));
+                supercritical.push(format!("{id} ({} K)", critical.t_k));
                 sources.push(critical.citation.clone());
             }
-            Compared::Stable => stable.push(&*species.id),
-            Compared::Unstable(other) => {
-                let tested = unstable(cx, call, &asked, &term.substance, &other);
-                findings.push(at_t(species.id.to_string(), tested));
-            }
+            Compared::Stable => stable.push(there.id()),
         }
+        settled.push(id);
+        how.extend(passed);
     }
-    let tested: Vec<&str> = (asked.terms.terms().iter())
-        .map(|term| &*term.substance.species.id)
-        .filter(|id| stable.contains(id) || supercritical.iter().any(|gas| gas.starts_with(id)))
-        .collect();
-    if !tested.is_empty() {
-        let mut how = Vec::new();
+    if !settled.is_empty() {
         if !stable.is_empty() {
-            how.push(format!(
-                "{}: lowest Gibbs energy of the shipped phases at {} K and 1 bar",
-                stable.join(", "),
-                asked.t_k
-            ));
+            let names = stable.join(", ");
+            how.push(format!("{names}: lowest Gibbs energy of the shipped phases at {} K and 1 bar", asked.t_k));
         }
         if !supercritical.is_empty() {
             how.push(format!("{}: above the critical temperature, so no liquid", supercritical.join(", ")));
         }
-        let finding = at_t(tested.join(", "), Tested::True { how: how.join("; ") });
+        let finding = at_t(settled.join(", "), Tested::True { how: how.join("; ") });
         findings.push(Finding { sources, ..finding });
     }
     if !alone.is_empty() {
         let names = alone.join(", ");
-        let what = format!("no other phase of {names} with a function that reaches {} K is shipped", asked.t_k);
-        findings.push(at_t(names, Tested::Missing { what }));
+        what.push(format!("no other phase of {names} with a function that reaches {} K is shipped", asked.t_k));
+        findings.push(at_t(names, Tested::Missing { what: what.join("; ") }));
     }
     findings
 }
@@ -99,15 +111,16 @@ enum Compared {
 }
 
 fn compared(cx: &Cx, substance: &Substance, t_k: f64) -> Compared {
-    let Some(own) = substance.function.as_ref().filter(|function| function.covers(t_k)) else {
-        return Compared::NothingToCompare;
+    let comparable = |substance: &Substance| {
+        substance.function.clone().filter(|function| function.covers(t_k) && function.has_gibbs_energy())
     };
-    let g_own = function::evaluate(own, t_k).g(t_k);
+    let Some(own) = comparable(substance) else { return Compared::NothingToCompare };
+    let g_own = function::evaluate(&own, t_k).g(t_k);
     let mut compared = Compared::NothingToCompare;
     let mut lowest = g_own;
     for other in cx.data().phases_of(substance) {
-        let Some(function) = other.function.as_ref().filter(|function| function.covers(t_k)) else { continue };
-        let g = function::evaluate(function, t_k).g(t_k);
+        let Some(function) = comparable(&other) else { continue };
+        let g = function::evaluate(&function, t_k).g(t_k);
         let gas = other.species.is_gas() || substance.species.is_gas();
         let resolution = if gas { RESOLUTION_GAS } else { RESOLUTION_CONDENSED };
         if g < lowest.min(g_own - resolution) {
@@ -125,15 +138,23 @@ fn compared(cx: &Cx, substance: &Substance, t_k: f64) -> Compared {
     }
 }
 
-/// The same property with the stable phase in place of the one written.
-fn unstable(cx: &Cx, call: &Call, asked: &Asked, written: &Substance, stable: &Arc<Substance>) -> Tested {
+/// The same property with the stable phase in place of the one written, which at T may have become another one.
+fn unstable(
+    cx: &Cx,
+    call: &Call,
+    asked: &Asked,
+    (written, there): (&Substance, &Substance),
+    stable: &Arc<Substance>,
+    passed: Option<String>,
+) -> Tested {
     let t_k = asked.t_k;
     let g = |substance: &Substance| substance.function.as_ref().map_or(f64::NAN, |f| function::evaluate(f, t_k).g(t_k));
-    let lower = (g(written) - g(stable)) / 1000.0;
+    let lower = (g(there) - g(stable)) / 1000.0;
     let conventional =
         if written.species.is_gas() { ", or justify it where a gas at 1 bar is meant by convention" } else { "" };
+    let passed = passed.map_or_else(String::new, |passed| format!("{passed}; "));
     let why = format!(
-        "at {t_k} K and {} bar {} has the lower Gibbs energy, by {lower:.1} kJ/mol; write that phase if it is meant{conventional}",
+        "{passed}at {t_k} K and {} bar {} has the lower Gibbs energy, by {lower:.1} kJ/mol; write that phase if it is meant{conventional}",
         STANDARD_PRESSURE.value / 1e5,
         stable.species.id
     );
