@@ -98,6 +98,8 @@ pub enum Takes {
     /// The same, or a grid of them: then the formula is asked at each, and gives a curve.
     Temperatures,
     Number,
+    /// A bare number, or a quantity or text that is a pure number, such as "35 %".
+    Fraction,
     Text,
     Word(&'static [&'static str]),
     Quantities,
@@ -500,6 +502,8 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
         }
         (Takes::Number, Value::Number(number)) => Value::Number(number),
         (Takes::Number, Value::Quantity(value)) if value.dim().is_none() => Value::Number(value.si()),
+        (Takes::Fraction, Value::Number(number)) => Value::Number(number),
+        (Takes::Fraction, value) => Value::Quantity(as_quantity(cx, value, |v| refused("a fraction", v))?),
         (Takes::Reaction, Value::Reaction(reaction)) => Value::Reaction(reaction),
         (Takes::Text, Value::Text(text)) => Value::Text(text),
         (Takes::Word(words), Value::Text(word)) => {

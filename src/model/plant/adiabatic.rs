@@ -17,6 +17,7 @@ use crate::fault::Fault;
 use crate::model::card::{Arg, Call, Card, Claim, Cx, Default, On, Sources, Takes, Value};
 use crate::model::caution::Caution;
 use crate::model::gather::Method;
+use crate::model::path::Route;
 use crate::model::plant::balance::energy;
 use crate::model::plant::claims;
 use crate::model::plant::contents::{self, Contents, FEEDS, FORMATION, PRESSURE, REACTIONS};
@@ -110,13 +111,13 @@ pub fn heat_loss<'a>(call: &'a Call, contents: &Contents) -> Result<Option<&'a Q
 ///
 /// # Errors
 /// A species has no heat capacity.
-pub fn common_range(portions: &[Portion]) -> Result<[(f64, String); 2], PlantError> {
+pub fn common_range(cx: &Cx, portions: &[Portion]) -> Result<[(f64, String); 2], PlantError> {
     let (mut low, mut high) = ((0.0_f64, String::new()), (f64::INFINITY, String::new()));
     for portion in portions {
         let species = portion.id().to_owned();
         let (t_min, t_max) = match (&portion.term.own, &portion.term.substance.function) {
             (Some(own), _) => own.range_k(),
-            (None, Some(function)) => (function.t_min, function.t_max),
+            (None, Some(function)) => (function.t_min, reach(cx, portion, function.t_max)),
             (None, None) => return Err(PlantError::NoCapacity { species }),
         };
         if t_min > low.0 {
@@ -127,6 +128,19 @@ pub fn common_range(portions: &[Portion]) -> Result<[(f64, String); 2], PlantErr
         }
     }
     Ok([low, high])
+}
+
+/// The highest temperature that a substance's data reach, through recorded changes of phase.
+fn reach(cx: &Cx, portion: &Portion, t_max: f64) -> f64 {
+    let mut high = t_max;
+    while let Ok(route) = Route::to(&portion.term.substance, high + 1e-3, cx.data()) {
+        let further = route.last().function.t_max;
+        if further <= high {
+            break;
+        }
+        high = further;
+    }
+    high
 }
 
 /// Σ n h of the feeds, J or W.
@@ -146,11 +160,12 @@ pub fn fed(cx: &Cx, contents: &Contents, energy: Energy, method: &Method) -> Res
 /// # Errors
 /// It does not within the common range of the portions, or within a phase change.
 pub fn closing(
+    cx: &Cx,
     portions: &[Portion],
     target: f64,
     mut after: impl FnMut(f64) -> Result<Sum, Fault>,
 ) -> Result<f64, Fault> {
-    let [(low, low_of), (high, high_of)] = common_range(portions)?;
+    let [(low, low_of), (high, high_of)] = common_range(cx, portions)?;
     let found = root::bracketed(|t_k| Ok::<f64, Fault>(after(t_k)?.si - target), low, high, 0.0)?;
     match found {
         Ok(root) => {
@@ -182,7 +197,7 @@ pub fn temperature(
     let energy = energy_of(call, contents)?;
     let target = fed(cx, contents, energy, method)? - loss.map_or(0.0, Quantity::si);
     let after = |t_k| tally::sum(&contents.after, t_k, energy, method, cx);
-    let t_k = closing(&contents.after, target, after)?;
+    let t_k = closing(cx, &contents.after, target, after)?;
     let mut tally = Tally::new(energy, method, cx);
     let at_end = tally.add(1.0, &contents.after, t_k, None)?;
     for feed in &contents.feeds {

@@ -109,7 +109,7 @@ fn at_equilibrium(cx: &Cx, asked: &mut Asked, complete: &[usize], value: &Quanti
         id if id == ADIABATIC_TEMPERATURE.id => {
             let energy = adiabatic::energy_of(&asked.call, contents)?;
             let target = adiabatic::fed(cx, contents, energy, &contents.method)?;
-            adiabatic::closing(&contents.after, target, |t_k| {
+            adiabatic::closing(cx, &contents.after, target, |t_k| {
                 let n = settled(t_k)?;
                 sum_of(cx, contents, &contents.after, &n, t_k, energy)
             })?

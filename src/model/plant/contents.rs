@@ -17,9 +17,9 @@ use crate::model::plant::error::PlantError;
 use crate::model::plant::stream::{self, Portion, Stream};
 use crate::model::reaction::Reaction;
 use crate::model::terms::{Term, Terms};
-use crate::quantity::Quantity;
+use crate::quantity::{Quantity, text};
 use crate::units::constants::STANDARD_PRESSURE;
-use crate::units::{Base, Entity, Of};
+use crate::units::{Entity, Of};
 
 /// Relative imbalance of an element that typed amounts may have: rounding of sums of figures with ten digits.
 const CLOSURE: f64 = 1e-9;
@@ -58,7 +58,7 @@ const PROGRESS: &[Arg] = &[
     },
     Arg {
         name: "conversion",
-        takes: Takes::Any,
+        takes: Takes::Fraction,
         default: Default::Absent,
         doc: "fraction of what is fed of the species named by `of` that this reaction uses up",
     },
@@ -163,7 +163,7 @@ impl Contents {
         let method = resolved(&all, &Method::from_words(None, word, cx.data())?, cx)?;
         let p_pa = match quantity(call, "pressure") {
             Some(p) if p.si() > 0.0 => p.si(),
-            Some(p) => return Err(PlantError::Pressure { given: crate::quantity::text::shown_plain(p) }.into()),
+            Some(p) => return Err(PlantError::Pressure { given: text::shown_plain(p) }.into()),
             None => STANDARD_PRESSURE.value,
         };
         Ok(Contents { feeds, fed, progress, after, per_time, method, p_pa })
@@ -218,23 +218,16 @@ fn progressed(
     fed: &[Portion],
     per_time: bool,
 ) -> Result<Progress, Fault> {
-    let text = reaction.text().to_owned();
+    let equation = reaction.text().to_owned();
     let given = |name: &str| map.get(name).filter(|value| !matches!(value, Value::Nothing));
     let (extent, complete) = match (given("extent"), given("conversion")) {
-        (Some(_), Some(_)) => return Err(PlantError::ExtentAndConversion { reaction: text }.into()),
+        (Some(_), Some(_)) => return Err(PlantError::ExtentAndConversion { reaction: equation }.into()),
         (Some(Value::Quantity(extent)), None) => {
             let own = matches!(extent.dim().entities(), [(Of::Amount, entity, 2)] if entity.is_open() || *entity == Entity::RXN);
-            let is_amount = own
-                && extent.dim().without_basis()
-                    == (if per_time {
-                        crate::units::Dimension::none().over(&crate::units::Dimension::base(Base::Second))
-                    } else {
-                        crate::units::Dimension::none()
-                    });
-            if !is_amount {
+            if !own || stream::sort_of(extent) != Some((false, per_time)) {
                 let given = extent.unit().text.to_string();
                 let given = if given.is_empty() { "a pure number".to_owned() } else { given };
-                return Err(PlantError::Extent { reaction: text, given, feeds: sort(per_time) }.into());
+                return Err(PlantError::Extent { reaction: equation, given, feeds: sort(per_time) }.into());
             }
             (Amount::scaled_value(extent, 1.0), false)
         }
@@ -256,7 +249,7 @@ fn converted(
     of: Option<&Value>,
     fed: &[Portion],
 ) -> Result<Amount, PlantError> {
-    let text = || reaction.text().to_owned();
+    let equation = || reaction.text().to_owned();
     let known = || {
         let known = reactants(reaction, fed);
         if known.is_empty() { String::new() } else { listed(known.iter().map(String::as_str)) }
@@ -265,20 +258,20 @@ fn converted(
     let (fraction, value) = match conversion {
         Value::Number(fraction) => (*fraction, None),
         Value::Quantity(value) if value.dim().is_basis_only() => (value.si(), Some(value)),
-        Value::Quantity(value) => return Err(range(crate::quantity::text::shown_plain(value))),
-        other => return Err(range(other.sort().to_owned())),
+        Value::Quantity(value) => return Err(range(text::shown_plain(value))),
+        other => unreachable!("a fraction was checked to be one, not {}", other.sort()),
     };
     if !(0.0..=1.0).contains(&fraction) {
         return Err(range(fraction.to_string()));
     }
     let Some(Value::Text(species)) = of else {
-        return Err(PlantError::ConversionOfNothing { reaction: text(), known: known() });
+        return Err(PlantError::ConversionOfNothing { reaction: equation(), known: known() });
     };
     // With phase as the equation has it, or as any name of the same species.
     let term = reaction.terms().iter().find(|term| term.nu < 0.0 && term.substance.id() == &**species);
     let fed_species = term.and_then(|term| Some((term, fed_of(fed, term.substance.id())?)));
     let Some((term, portion)) = fed_species else {
-        return Err(PlantError::ConversionOf { species: species.to_string(), reaction: text(), known: known() });
+        return Err(PlantError::ConversionOf { species: species.to_string(), reaction: equation(), known: known() });
     };
     let per_fed = portion.amount.times(1.0 / term.nu.abs());
     Ok(value.map_or_else(|| per_fed.times(fraction), |value| per_fed.times_value(value)))

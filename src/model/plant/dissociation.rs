@@ -122,7 +122,7 @@ impl Prepared {
 
     /// The lowest temperature at which one of them takes its share, with its text.
     fn limit(&self, cx: &Cx, contents: &Contents, held: &impl Fn(f64) -> Held) -> Result<Option<(f64, &str)>, Fault> {
-        let [(low, _), (high, _)] = adiabatic::common_range(&self.portions)?;
+        let [(low, _), (high, _)] = adiabatic::common_range(cx, &self.portions)?;
         let mut lowest: Option<(f64, &str)> = None;
         for (text, nu, _) in self.changes.iter().filter(|(_, _, first)| *first) {
             let over = |t_k: f64| Ok::<f64, Fault>(self.share(cx, contents, nu, t_k, held(t_k))? - SHARE);
@@ -148,7 +148,7 @@ impl Prepared {
         let target = adiabatic::fed(cx, contents, energy, &contents.method)?;
         let changes: Vec<Vec<f64>> = self.changes.iter().map(|(_, nu, _)| nu.clone()).collect();
         let at = |t_k: f64| settled(cx, contents, &self.portions, &changes, t_k, held(t_k));
-        let t_k = adiabatic::closing(&self.portions, target, |t_k| {
+        let t_k = adiabatic::closing(cx, &self.portions, target, |t_k| {
             sum_of(cx, contents, &self.portions, &at(t_k)?, t_k, energy)
         })?;
         // Derivatives at the composition found; how the composition itself answers is in the slope along T alone.

@@ -20,7 +20,7 @@ pub enum PlantError {
     #[error("`{first}` is given as a flow and `{second}` as an amount")]
     FlowAndAmount { first: String, second: String },
     #[error("the fractions of the stream `{stream}` add up to {sum}, not to 1")]
-    Fractions { stream: String, sum: f64 },
+    Fractions { stream: String, sum: String },
     #[error("the stream `{stream}` has nothing in it")]
     Empty { stream: String },
     #[error("`{function}` wants feeds, and none are given")]
@@ -53,7 +53,7 @@ pub enum PlantError {
     BeyondData { side: &'static str, t_k: f64, species: String },
     #[error("no heat capacity of {species} is at hand, so the temperature of the contents cannot be found")]
     NoCapacity { species: String },
-    #[error("the balance closes within a change of phase at {t_k} K, with part of the contents on either side")]
+    #[error("the balance closes within a change of phase at {t_k:.2} K, with part of the contents on either side")]
     WithinTransition { t_k: f64 },
     #[error(
         "the contents of a batch start at one temperature, and `{first}` is at {first_k} K and `{second}` at {second_k} K"

@@ -161,6 +161,7 @@ fn by_fractions(cx: &Cx, name: &str, total: &Value, fractions: &BTreeMap<String,
     }
     // Fractions are typed with a few digits, and half a unit in the last of four of a dozen species is 1e-3.
     if (sum - 1.0).abs() > 1e-3 {
+        let sum = round::shortest(round::significant(sum, 6).parse().unwrap_or(sum));
         return Err(PlantError::Fractions { stream: name.to_owned(), sum }.into());
     }
     Ok((portions, per_time))
