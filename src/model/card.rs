@@ -11,11 +11,10 @@ use std::fmt;
 use std::rc::Rc;
 use std::sync::Arc;
 
-use thiserror::Error;
-
 use crate::data::catalog::Catalog;
-use crate::fault::{Explain, Fault, Place};
+use crate::fault::{Fault, Place};
 use crate::model::answer::Answer;
+use crate::model::argument::ArgumentError;
 use crate::model::caution::Caution;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
@@ -182,6 +181,11 @@ impl References {
         References { catalog: OnceCell::new(), constants }
     }
 
+    /// Substances of another catalogue than the shipped one.
+    pub fn of(catalog: Arc<Catalog>, constants: &'static ConstantSet) -> Self {
+        References { catalog: OnceCell::from(catalog), constants }
+    }
+
     pub fn catalog(&self) -> &Catalog {
         self.catalog.get_or_init(Catalog::shipped)
     }
@@ -282,6 +286,24 @@ impl Call {
         }
     }
 
+    /// A quantity given in the option map.
+    pub fn option_quantity(&self, name: &str) -> Option<&Quantity> {
+        let Some(Value::Options(options)) = self.args.last() else { return None };
+        match options.get(name) {
+            Some(Value::Quantity(value)) => Some(value),
+            _ => None,
+        }
+    }
+
+    /// The same call without one of its options.
+    #[must_use]
+    pub fn without_option(mut self, name: &str) -> Call {
+        if let Some(Value::Options(options)) = self.args.last_mut() {
+            Rc::make_mut(options).remove(name);
+        }
+        self
+    }
+
     /// The same call with one option set to another word.
     #[must_use]
     pub fn with_option(&self, name: &str, word: &str) -> Call {
@@ -317,6 +339,7 @@ impl Step for Call {
                     words.extend(options.iter().filter_map(|(name, value)| match value {
                         Value::Text(word) => Some(format!("{name}: {word}")),
                         Value::Number(number) => Some(format!("{name}: {number}")),
+                        Value::Quantity(value) => Some(format!("{name}: {}", text::shown(value))),
                         Value::List(list) => Some(format!("{name}: {} values", list.len())),
                         _ => None,
                     }));
@@ -365,55 +388,6 @@ impl Step for Call {
 /// The call a node was made by, if a formula made it.
 pub fn call_of(node: &Node) -> Option<&Call> {
     node.step().and_then(|step| step.as_any().downcast_ref::<Call>())
-}
-
-/// An argument that does not suit its formula.
-#[derive(Clone, Debug, PartialEq, Error)]
-pub enum ArgumentError {
-    #[error("`{function}` wants {wanted} for `{argument}`, not {given}")]
-    Sort { function: &'static str, argument: &'static str, wanted: String, given: String },
-    #[error("`{function}` was given {given} arguments and takes {}", counts(*least, *most))]
-    Count { function: &'static str, given: usize, least: usize, most: usize, usage: String },
-    #[error("`{function}` knows no option `{option}`")]
-    Option { function: &'static str, option: String, known: String },
-    #[error("`{function}` was not given `{option}`")]
-    OptionMissing { function: &'static str, option: &'static str, doc: &'static str },
-    #[error("`{word}` is no choice for `{argument}` of `{function}`")]
-    Word { function: &'static str, argument: &'static str, word: String, choices: String },
-    #[error("a difference of {difference_k} K was given to `{function}` where a temperature is wanted")]
-    Difference { function: &'static str, difference_k: f64 },
-    #[error("{t_k} K is not a temperature above absolute zero, as `{function}` wants")]
-    NotPositive { function: &'static str, t_k: f64 },
-}
-
-fn counts(least: usize, most: usize) -> String {
-    if least == most { least.to_string() } else { format!("{least} to {most}") }
-}
-
-impl Explain for ArgumentError {
-    fn code(&self) -> &'static str {
-        match self {
-            ArgumentError::Sort { .. } => "argument-sort",
-            ArgumentError::Count { .. } => "formula-argument-count",
-            ArgumentError::Option { .. } => "option-unknown",
-            ArgumentError::OptionMissing { .. } => "option-missing",
-            ArgumentError::Word { .. } => "word-unknown",
-            ArgumentError::Difference { .. } => "difference-for-point",
-            ArgumentError::NotPositive { .. } => "temperature-not-positive",
-        }
-    }
-
-    fn hint(&self) -> String {
-        match self {
-            ArgumentError::Sort { wanted, .. } => format!("give {wanted}"),
-            ArgumentError::Count { usage, .. } => format!("use it as in `{usage}`"),
-            ArgumentError::Option { known, .. } => format!("its options are {known}"),
-            ArgumentError::OptionMissing { option, doc, .. } => format!("add `{option}:`, {doc}"),
-            ArgumentError::Word { choices, .. } => format!("choose one of {choices}"),
-            ArgumentError::Difference { .. } => "give the temperature itself, as in `q(\"450 degC\")`".to_owned(),
-            ArgumentError::NotPositive { .. } => "check the sign and the scale of the temperature".to_owned(),
-        }
-    }
 }
 
 impl fmt::Debug for Card {

@@ -7,6 +7,7 @@ pub mod balance;
 pub mod budget;
 pub mod comparison;
 pub mod curve;
+pub mod cycle;
 pub mod derivation;
 pub mod gap;
 pub mod headline;
@@ -16,6 +17,7 @@ pub mod latex;
 pub mod plot;
 pub mod register;
 pub mod report;
+pub mod shortcut;
 pub mod text;
 
 use std::collections::BTreeMap;
@@ -69,8 +71,11 @@ pub fn answer(answer: &Answer) -> Bundle {
         Answer::Propagation(propagation) => interval::propagation(propagation),
         Answer::Derivation(derivation) => derivation::bundle(derivation),
         Answer::Comparison(comparison) => comparison::bundle(comparison),
+        Answer::Cycle(cycle) => cycle::bundle(cycle),
         Answer::Gap(gap) => gap::bundle(gap),
         Answer::HeatBalance(balance) => balance::bundle(balance),
+        Answer::Validity(validity) => shortcut::validity(validity),
+        Answer::SideBySide(ways) => shortcut::side_by_side(ways),
     }
 }
 
