@@ -293,7 +293,7 @@ fn shared_reactants(progress: &[Progress]) -> Result<(), PlantError> {
     let complete: Vec<&Progress> = progress.iter().filter(|one| one.complete).collect();
     let uses = |one: &Progress, id: &str| one.reaction.terms().iter().any(|t| t.nu < 0.0 && t.substance.id() == id);
     for (nth, one) in complete.iter().enumerate() {
-        for other in &progress[..] {
+        for other in progress {
             let earlier = complete[..nth].iter().any(|before| std::ptr::eq(*before, other)) || !other.complete;
             let mut shared = one.reaction.terms().iter().filter(|term| uses(one, term.substance.id()));
             if let Some(term) = shared.find(|term| earlier && uses(other, term.substance.id())) {

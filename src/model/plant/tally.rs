@@ -18,6 +18,9 @@ use crate::quantity::Quantity;
 use crate::record::node::Node;
 use crate::units::Entity;
 
+/// Inputs of a node, each with its derivative.
+pub type Inputs = SmallVec<[(Rc<Node>, f64); 2]>;
+
 /// What the balance is drawn up in.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Energy {
@@ -141,7 +144,7 @@ impl<'a> Tally<'a> {
             let (_, cp) = molar(one, &portion.term, self.energy, self.r.si() * t_k, self.r.si());
             self.weights.add_all(&portion.amount.of, by_capacity * cp);
             if let Some(figure) = &one.cp {
-                let mut nodes: SmallVec<[(Rc<Node>, f64); 2]> = SmallVec::new();
+                let mut nodes = Inputs::new();
                 property::enter(&mut nodes, figure, by_capacity * n, Property::Cp)?;
                 nodes.iter().for_each(|(node, weight)| self.weights.add(node, *weight));
             }
@@ -163,7 +166,7 @@ impl<'a> Tally<'a> {
     ///
     /// # Errors
     /// A figure is not finite.
-    pub fn inputs(&self, factor: f64) -> Result<SmallVec<[(Rc<Node>, f64); 2]>, Fault> {
+    pub fn inputs(&self, factor: f64) -> Result<Inputs, Fault> {
         let mut inputs = SmallVec::new();
         for (_, figure, weight) in &self.formations {
             if *weight != 0.0 {
