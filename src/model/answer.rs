@@ -17,6 +17,8 @@ use crate::model::cycle::Cycle;
 use crate::model::derivation::Derivation;
 use crate::model::expanded::Expanded;
 use crate::model::gap::Gap;
+use crate::model::molecule::power_fit::HandedOn;
+use crate::model::molecule::shares::Shares;
 use crate::model::monte_carlo::Propagation;
 use crate::model::plant::balance::HeatBalance;
 use crate::model::shortcut::{SideBySide, Validity};
@@ -35,6 +37,8 @@ pub enum Answer {
     Cycle(Rc<Cycle>),
     Gap(Rc<Gap>),
     HeatBalance(Rc<HeatBalance>),
+    Shares(Rc<Shares>),
+    PowerFit(Rc<HandedOn>),
     Validity(Rc<Validity>),
     SideBySide(Rc<SideBySide>),
 }
@@ -78,6 +82,8 @@ impl Answer {
             Answer::Cycle(_) => "a cycle",
             Answer::Gap(_) => "an explanation of a gap",
             Answer::HeatBalance(_) => "a heat balance",
+            Answer::Shares(_) => "a table of contributions",
+            Answer::PowerFit(_) => "a sum of powers",
             Answer::Validity(_) => "the range of a shortcut",
             Answer::SideBySide(_) => "shortcuts side by side",
         }
@@ -93,6 +99,8 @@ impl Answer {
             Answer::Cycle(cycle) => cycle.parts(),
             Answer::Gap(gap) => gap.parts(),
             Answer::HeatBalance(balance) => balance.parts(),
+            Answer::Shares(shares) => shares.parts(),
+            Answer::PowerFit(fit) => fit.parts(),
             Answer::Validity(validity) => validity.parts(),
             Answer::SideBySide(ways) => ways.parts(),
         }

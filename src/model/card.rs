@@ -18,6 +18,7 @@ use crate::model::argument::ArgumentError;
 use crate::model::caution::Caution;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
+use crate::model::molecule::Molecule;
 use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
@@ -41,6 +42,7 @@ pub enum Value {
     Reaction(Rc<Reaction>),
     Substance(Rc<PureSubstance>),
     Stream(Rc<Stream>),
+    Molecule(Rc<Molecule>),
     /// Temperatures at which a formula is asked in one call.
     Grid(Rc<Grid>),
     Curve(Rc<Curve>),
@@ -64,6 +66,7 @@ impl Value {
             Value::Reaction(_) => "a reaction",
             Value::Substance(_) => "a substance",
             Value::Stream(_) => "a stream",
+            Value::Molecule(_) => "a molecule",
             Value::Grid(_) => "a grid of temperatures",
             Value::Curve(_) => "a curve",
             Value::Answer(answer) => answer.sort(),
@@ -80,6 +83,7 @@ pub enum On {
     Quantity,
     Reaction,
     Substance,
+    Molecule,
     Curve,
 }
 
@@ -259,6 +263,7 @@ impl Call {
         match self.args.first() {
             Some(Value::Reaction(reaction)) => Some(reaction),
             Some(Value::Substance(substance)) => Some(substance),
+            Some(Value::Molecule(molecule)) => Some(molecule.terms()),
             _ => None,
         }
     }
@@ -333,6 +338,7 @@ impl Step for Call {
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
                 Value::Substance(substance) => words.push(substance.text().to_owned()),
                 Value::Stream(stream) => words.push(stream.name.to_string()),
+                Value::Molecule(molecule) => words.push(molecule.text().to_owned()),
                 Value::Grid(grid) => words.push(grid.words()),
                 Value::Curve(curve) => words.push(curve.words()),
                 Value::Options(options) => {
@@ -410,6 +416,7 @@ impl Card {
             On::Quantity => "value.",
             On::Reaction => "reaction.",
             On::Substance => "substance.",
+            On::Molecule => "molecule.",
             On::Curve => "curve.",
         };
         format!("{receiver}{}({})", self.name, args.join(", "))
