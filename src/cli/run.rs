@@ -2,7 +2,7 @@
 
 use std::collections::BTreeMap;
 use std::io::{self, IsTerminal, Write};
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
@@ -93,6 +93,7 @@ fn executed(args: &Run, stop: Arc<AtomicBool>) -> Result<RunStatus, Fault> {
     }
     let mut session = Session::new(stop);
     session.set_parameters(settings);
+    session.set_folder(args.file.parent().unwrap_or(Path::new("")));
     let name = args.file.display().to_string();
     let mut progress = Progress { format: args.format, terminal: std::io::stderr().is_terminal() };
     let record = run(&name, &mut source, &mut session, &mut progress);

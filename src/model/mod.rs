@@ -34,6 +34,8 @@ pub mod review;
 pub mod shortcut;
 pub mod substance;
 pub mod symbols;
+pub mod table;
+pub mod table_card;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
@@ -76,6 +78,9 @@ pub const CARDS: &[&Card] = &[
     &curve_card::MIN,
     &curve_card::MAX,
     &curve_card::CROSSINGS,
+    &table_card::COLUMNS,
+    &table_card::COLUMN,
+    &table_card::CURVE,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,

@@ -4,7 +4,9 @@
 //! text, HTML, LaTeX and the machine record cannot disagree.
 
 pub mod budget;
+pub mod cells;
 pub mod comparison;
+pub mod csv;
 pub mod curve;
 pub mod derivation;
 pub mod gap;
@@ -15,6 +17,7 @@ pub mod latex;
 pub mod plot;
 pub mod register;
 pub mod report;
+pub mod table;
 pub mod text;
 
 use std::collections::BTreeMap;

@@ -19,6 +19,7 @@ use crate::model::curve::Curve;
 use crate::model::grid::Grid;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
+use crate::model::table::Table;
 use crate::quantity::{Quantity, text};
 use crate::script::fault::raise;
 use crate::script::state::{Shared, place_of};
@@ -81,6 +82,7 @@ fn receiver(on: On) -> Option<TypeId> {
         On::Reaction => Some(TypeId::of::<Rc<Reaction>>()),
         On::Substance => Some(TypeId::of::<Rc<PureSubstance>>()),
         On::Curve => Some(TypeId::of::<Rc<Curve>>()),
+        On::Table => Some(TypeId::of::<Rc<Table>>()),
     }
 }
 
@@ -100,6 +102,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     }
     if let Some(curve) = value.read_lock::<Rc<Curve>>() {
         return Value::Curve(Rc::clone(&curve));
+    }
+    if let Some(table) = value.read_lock::<Rc<Table>>() {
+        return Value::Table(Rc::clone(&table));
     }
     if let Some(answer) = value.read_lock::<Answer>() {
         return Value::Answer(answer.clone());
@@ -141,6 +146,7 @@ fn from_value(value: Value) -> Dynamic {
         Value::Substance(substance) => Dynamic::from(substance),
         Value::Grid(grid) => Dynamic::from(grid),
         Value::Curve(curve) => Dynamic::from(curve),
+        Value::Table(table) => Dynamic::from(table),
         Value::Answer(answer) => Dynamic::from(answer),
         Value::Nothing => Dynamic::UNIT,
     }

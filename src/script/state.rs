@@ -18,6 +18,7 @@ use crate::model::card::References;
 use crate::model::review::Dealing;
 use crate::quantity::Quantity;
 use crate::render::Bundle;
+use crate::script::files::Folder;
 use crate::script::host::{Host, HostSlot};
 use crate::script::prepare::Shifts;
 use crate::script::words::Library;
@@ -121,6 +122,8 @@ impl Explain for Halt {
 pub struct Shared {
     state: Rc<RefCell<State>>,
     pub host: HostSlot,
+    /// Where files are read and written.
+    pub folder: Folder,
     stop: Arc<AtomicBool>,
     references: Rc<References>,
     /// Values of parameters that were set from outside, by name.
@@ -144,6 +147,7 @@ impl Shared {
         Shared {
             state: Rc::default(),
             host: HostSlot::default(),
+            folder: Folder::default(),
             stop,
             references: Rc::new(References::new(constants::current())),
             settings: Rc::default(),
@@ -243,6 +247,7 @@ impl Shared {
     /// Counts memory from here: the start of a cell, which nobody has told to end yet.
     pub fn start_cell(&self) {
         self.halt.set(None);
+        self.folder.start_cell();
         self.ceiling.set(memory::held().saturating_add_unsigned(self.limit.get()));
     }
 

@@ -8,6 +8,7 @@ pub mod closures;
 pub mod outcome;
 
 use std::collections::{BTreeMap, BTreeSet};
+use std::path::Path;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
 
@@ -70,6 +71,11 @@ impl Session {
     /// Sets what a cell may take beyond what the session holds when it starts; 1 GiB at first.
     pub fn set_memory_limit(&mut self, bytes: usize) {
         self.shared.set_memory_limit(bytes);
+    }
+
+    /// Sets the folder in which cells read and write files: that of the notebook. Without it the current one.
+    pub fn set_folder(&mut self, folder: &Path) {
+        self.shared.folder.set(folder);
     }
 
     /// Runs one cell. `cell` names it in places and faults: `cell-3`, or the file name of a script. A cell that fails
