@@ -16,7 +16,7 @@ fn main() -> io::Result<()> {
     let mut paths = Vec::new();
     collect(&root, "stdlib", &mut paths)?;
     paths.sort();
-    let mut list = String::from("pub const STDLIB: &[Embedded] = &[\n");
+    let mut list = String::from("pub const STDLIB: &[Embedded<'static>] = &[\n");
     for path in paths {
         println!("cargo::rerun-if-changed={path}");
         let digest = Sha256::digest(fs::read(root.join(&path))?);

@@ -30,21 +30,21 @@ impl std::fmt::Display for Citation {
     }
 }
 
-/// A file of the distribution, built into the program.
+/// A file of the distribution, built into the program; or a text that stands for one, such as the tables of a seal.
 #[derive(Clone, Copy, Debug)]
-pub struct Embedded {
+pub struct Embedded<'a> {
     /// Path below the project's root, for messages and seals.
-    pub path: &'static str,
-    pub bytes: &'static [u8],
-    /// SHA-256 of the bytes in lower-case hexadecimal, taken when the program was built.
-    pub sha256: &'static str,
+    pub path: &'a str,
+    pub bytes: &'a [u8],
+    /// SHA-256 of the bytes in lower-case hexadecimal; that of a file built in was taken when the program was built.
+    pub sha256: &'a str,
 }
 
 // `STDLIB`: every file of stdlib/, by path; written by build.rs.
 include!(concat!(env!("OUT_DIR"), "/stdlib.rs"));
 
 /// The file of that path. In a constant, a path that is not in `stdlib/` is a build error.
-pub const fn embedded(path: &str) -> Embedded {
+pub const fn embedded(path: &str) -> Embedded<'static> {
     let mut at = 0;
     while at < STDLIB.len() {
         if equal(STDLIB[at].path.as_bytes(), path.as_bytes()) {

@@ -71,7 +71,7 @@ fn each_table_has_its_records_and_the_catalogue_has_them_all() {
     }
     let catalog = Catalog::shipped();
     let entered: BTreeMap<&str, usize> =
-        catalog.datasets().iter().flat_map(|d| &d.tables).map(|table| (table.path, table.records)).collect();
+        catalog.datasets().iter().flat_map(|d| &d.tables).map(|table| (&*table.path, table.records)).collect();
     assert_eq!(entered, TABLES.into_iter().collect());
     assert_eq!(functions().len(), 347);
     let table_rows = |id: &str| {

@@ -13,7 +13,7 @@ use serde::Deserialize;
 use crate::source::{Citation, Embedded, embedded};
 
 /// The file that the weights are read from.
-pub static ATOMIC_WEIGHTS: Embedded = embedded("stdlib/data/atomic_weights.json");
+pub static ATOMIC_WEIGHTS: Embedded<'static> = embedded("stdlib/data/atomic_weights.json");
 
 const SYMBOLS: [&str; 118] = [
     "H", "He", "Li", "Be", "B", "C", "N", "O", "F", "Ne", "Na", "Mg", "Al", "Si", "P", "S", "Cl", "Ar", "K", "Ca",

@@ -1,7 +1,6 @@
 //! `hessbook run`: a notebook or script from the command line.
 
-use std::collections::BTreeMap;
-use std::io::{self, IsTerminal, Write};
+use std::io::IsTerminal;
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 use std::sync::Arc;
@@ -17,7 +16,7 @@ use crate::render::report::{self, Record};
 use crate::render::{Bundle, text};
 use crate::session::{Session, on_big_stack};
 
-use super::Done;
+use super::{Done, err, out, setting, settings, stopped_by_interrupt};
 
 /// Run a notebook or script and print its reported results.
 ///
@@ -46,19 +45,9 @@ enum Format {
     Json,
 }
 
-fn setting(text: &str) -> Result<(String, String), String> {
-    match text.split_once('=') {
-        Some((name, value)) if !name.trim().is_empty() => Ok((name.trim().to_owned(), value.to_owned())),
-        _ => Err("write it as name=text, as in outlet=\"450 degC\"".to_owned()),
-    }
-}
-
 impl Run {
     pub(super) fn run(self) -> Done {
-        let stop = Arc::new(AtomicBool::new(false));
-        if let Err(error) = signal_hook::flag::register(signal_hook::consts::SIGINT, Arc::clone(&stop)) {
-            err(&format!("hessbook: Ctrl-C cannot be listened for: {error}\n"));
-        }
+        let stop = stopped_by_interrupt();
         Ok(match on_big_stack(move || executed(&self, stop))? {
             RunStatus::Ok => ExitCode::SUCCESS,
             RunStatus::Fault => ExitCode::from(1),
@@ -85,12 +74,7 @@ fn executed(args: &Run, stop: Arc<AtomicBool>) -> Result<RunStatus, Fault> {
             "make the folder first, or choose another file",
         ));
     }
-    let mut settings: BTreeMap<String, String> = BTreeMap::new();
-    for (name, value) in &args.set {
-        if settings.insert(name.clone(), value.clone()).is_some() {
-            return Err(Fault::new("parameter-set-twice", format!("`{name}` is set twice"), "set each parameter once"));
-        }
-    }
+    let settings = settings(&args.set)?;
     let mut session = Session::new(stop);
     session.set_parameters(settings);
     session.set_folder(args.file.parent().unwrap_or(Path::new("")));
@@ -112,15 +96,6 @@ fn executed(args: &Run, stop: Arc<AtomicBool>) -> Result<RunStatus, Fault> {
 struct Progress {
     format: Format,
     terminal: bool,
-}
-
-/// Writes to standard output. A reader that went away (`| head`) ends the output, not the run.
-fn out(text: &str) {
-    let _ = io::stdout().lock().write_all(text.as_bytes());
-}
-
-fn err(text: &str) {
-    let _ = io::stderr().lock().write_all(text.as_bytes());
 }
 
 impl Progress {

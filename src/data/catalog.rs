@@ -1,10 +1,11 @@
 //! All substances on record, found by name.
 //!
 //! [`Catalog`] is plain data, shared by all sessions and built once per process. It merges the records of the datasets
-//! by substance: two ids that name one substance are one entry, by the table of names.
+//! by substance: two ids that name one substance are one entry, by the table of names. A [watched](Catalog::watched) one
+//! remembers what it was asked for, so that a seal can keep the records that a notebook used.
 
-use std::collections::BTreeMap;
-use std::sync::{Arc, LazyLock};
+use std::collections::{BTreeMap, BTreeSet};
+use std::sync::{Arc, LazyLock, Mutex, PoisonError};
 
 use crate::chem::formula::Formula;
 use crate::chem::species::{Species, SpeciesName, State};
@@ -33,6 +34,13 @@ static SHIPPED: LazyLock<Arc<Catalog>> = LazyLock::new(|| {
 /// The records of a set of tables.
 #[derive(Debug)]
 pub struct Catalog {
+    contents: Arc<Contents>,
+    /// Entities that were asked for, where someone wants to know.
+    asked: Option<Mutex<BTreeSet<Arc<str>>>>,
+}
+
+#[derive(Debug)]
+struct Contents {
     datasets: Vec<Dataset>,
     substances: BTreeMap<Arc<str>, Arc<Substance>>,
     /// Substance id to its transitions, by temperature.
@@ -55,7 +63,7 @@ impl Catalog {
     }
 
     /// The tables among some files; a dataset whose file is missing is simply not there.
-    pub fn from_files(files: &[Embedded]) -> Result<Catalog, TableFault> {
+    pub fn from_files(files: &[Embedded<'_>]) -> Result<Catalog, TableFault> {
         let Tables { datasets, functions, mut formations, coefficients, transitions, critical, names } =
             Tables::read(files)?;
         let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
@@ -105,16 +113,41 @@ impl Catalog {
             transitions.sort_by(|left, right| left.t_k.total_cmp(&right.t_k));
         }
         let lookup = Lookup::new(&names, substances.values().map(|substance: &Arc<Substance>| &**substance));
-        Ok(Catalog { datasets, substances, transitions: by_substance, lookup })
+        let contents = Contents { datasets, substances, transitions: by_substance, lookup };
+        Ok(Catalog { contents: Arc::new(contents), asked: None })
+    }
+
+    /// The same catalogue, which remembers what it is asked for.
+    #[must_use]
+    pub fn watched(&self) -> Catalog {
+        Catalog { contents: Arc::clone(&self.contents), asked: Some(Mutex::default()) }
+    }
+
+    /// The entities a watched catalogue was asked for.
+    pub fn asked(&self) -> BTreeSet<Arc<str>> {
+        let asked = self.asked.as_ref().map(|asked| asked.lock().unwrap_or_else(PoisonError::into_inner).clone());
+        asked.unwrap_or_default()
+    }
+
+    fn note(&self, substance: &Substance) {
+        if let Some(asked) = &self.asked {
+            let entity = substance.species.entity.name();
+            let mut asked = asked.lock().unwrap_or_else(PoisonError::into_inner);
+            if !asked.contains(entity) {
+                asked.insert(entity.into());
+            }
+        }
     }
 
     /// The one substance that a text such as `CO2(g)`, `water(l)` or `C(cr,graphite)` names.
     pub fn find(&self, text: &str) -> Result<Arc<Substance>, NameFault> {
-        if let Some(substance) = self.substances.get(text) {
-            return Ok(substance.clone());
-        }
-        let id = self.lookup.find(text)?;
-        Ok(self.substances[id].clone())
+        let contents = &self.contents;
+        let found = match contents.substances.get(text) {
+            Some(substance) => substance,
+            None => &contents.substances[contents.lookup.find(text)?],
+        };
+        self.note(found);
+        Ok(found.clone())
     }
 
     /// The species that a text names, for an equation: of a substance on record, or from its formula alone.
@@ -137,7 +170,7 @@ impl Catalog {
         if dissolved(&substance.species) {
             return Vec::new();
         }
-        let others = self.substances.values().filter(|other| {
+        let others = self.contents.substances.values().filter(|other| {
             other.species.entity == substance.species.entity
                 && other.id() != substance.id()
                 && !dissolved(&other.species)
@@ -147,7 +180,7 @@ impl Catalog {
 
     /// The transitions that a phase takes part in, by temperature; those within its function have it at both ends.
     pub fn transitions_of(&self, substance: &Substance) -> &[Arc<Transition>] {
-        self.transitions.get(substance.id()).map_or(&[], Vec::as_slice)
+        self.contents.transitions.get(substance.id()).map_or(&[], Vec::as_slice)
     }
 
     /// The phase whose function covers 298.15 K and whose enthalpy scale the function of `substance` continues:
@@ -162,7 +195,7 @@ impl Catalog {
             for transition in self.transitions_of(&phase) {
                 for id in [&transition.from, &transition.to] {
                     if !seen.iter().any(|known| known.id() == &**id) {
-                        seen.extend(self.substances.get(id).cloned());
+                        seen.extend(self.contents.substances.get(id).cloned());
                     }
                 }
             }
@@ -175,7 +208,7 @@ impl Catalog {
     pub fn search(&self, text: &str) -> Vec<Arc<Substance>> {
         let wanted = text.to_lowercase();
         let mut found: Vec<(bool, &Arc<Substance>)> = Vec::new();
-        for substance in self.substances.values() {
+        for substance in self.contents.substances.values() {
             let id = substance.id().to_lowercase();
             let name = substance.name.as_deref().unwrap_or_default().to_lowercase();
             if id.contains(&wanted) || name.contains(&wanted) {
@@ -188,16 +221,16 @@ impl Catalog {
 
     /// All substances, by id.
     pub fn substances(&self) -> impl Iterator<Item = &Arc<Substance>> {
-        self.substances.values()
+        self.contents.substances.values()
     }
 
     /// In order of precedence of their formation enthalpies.
     pub fn datasets(&self) -> &[Dataset] {
-        &self.datasets
+        &self.contents.datasets
     }
 
     pub fn dataset(&self, id: &DatasetId) -> Option<&Dataset> {
-        self.datasets.iter().find(|dataset| dataset.id == *id)
+        self.contents.datasets.iter().find(|dataset| dataset.id == *id)
     }
 }
 
@@ -208,7 +241,7 @@ fn correlate(
     id: impl Fn(&Arc<str>) -> Arc<str>,
 ) -> Result<(), TableFault> {
     let Coefficients { dataset, path, records, r } = group;
-    let unusable = |why: String| TableFault::Correlation { path: path.to_owned(), why };
+    let unusable = |why: String| TableFault::Correlation { path: path.clone(), why };
     let is_of = |formation: &Formation, record: &Arc<str>| formation.dataset == dataset && formation.id == *record;
     if let Some(unknown) = records.iter().find(|record| !formations.iter().any(|one| is_of(one, record))) {
         return Err(unusable(format!("it has no record {unknown}")));

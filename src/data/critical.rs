@@ -40,7 +40,7 @@ struct Record<'a> {
 }
 
 /// Reads a file of critical temperatures.
-pub(super) fn read(file: &Embedded, all: &mut Vec<CriticalTemperature>) -> Result<(), TableFault> {
+pub(super) fn read(file: &Embedded<'_>, all: &mut Vec<CriticalTemperature>) -> Result<(), TableFault> {
     let page: Page<'_> = dataset::parse(file)?;
     for record in page.records {
         let unreadable =

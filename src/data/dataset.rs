@@ -60,9 +60,9 @@ pub struct Dataset {
 #[derive(Clone, Debug)]
 pub struct Table {
     pub title: Arc<str>,
-    pub path: &'static str,
+    pub path: Arc<str>,
     /// SHA-256 of the file, in hexadecimal.
-    pub sha256: &'static str,
+    pub sha256: Arc<str>,
     pub records: usize,
 }
 
@@ -83,10 +83,10 @@ pub(super) fn enter(
     datasets: &mut Vec<Dataset>,
     heading: &Heading<'_>,
     title: &str,
-    file: &Embedded,
+    file: &Embedded<'_>,
     records: usize,
 ) -> DatasetId {
-    let table = Table { title: title.into(), path: file.path, sha256: file.sha256, records };
+    let table = Table { title: title.into(), path: file.path.into(), sha256: file.sha256.into(), records };
     match datasets.iter_mut().find(|dataset| dataset.id.as_str() == heading.id) {
         Some(dataset) => {
             dataset.divisor = dataset.divisor.or(heading.divisor);
@@ -279,7 +279,7 @@ impl Explain for TableFault {
 }
 
 /// Reads a whole file as the type that its schema promises.
-pub(super) fn parse<'a, T: Deserialize<'a>>(file: &'a Embedded) -> Result<T, TableFault> {
+pub(super) fn parse<'a, T: Deserialize<'a>>(file: &Embedded<'a>) -> Result<T, TableFault> {
     serde_json::from_slice(file.bytes)
         .map_err(|error| TableFault::Unreadable { path: file.path.to_owned(), why: error.to_string() })
 }

@@ -98,7 +98,7 @@ pub const FIELD: &str = "formation enthalpy";
 #[derive(Debug)]
 pub(super) struct Coefficients {
     pub dataset: DatasetId,
-    pub path: &'static str,
+    pub path: String,
     /// Ids of records, as the table has them.
     pub records: Vec<Arc<str>>,
     /// Row by row.
@@ -149,7 +149,7 @@ struct Record<'a> {
 
 /// Reads a file of formation properties into `formations` and `coefficients`, and its description into `datasets`.
 pub(super) fn read(
-    file: &Embedded,
+    file: &Embedded<'_>,
     datasets: &mut Vec<Dataset>,
     formations: &mut Vec<Formation>,
     coefficients: &mut Vec<Coefficients>,
@@ -158,7 +158,7 @@ pub(super) fn read(
     let dataset = dataset::enter(datasets, &page.dataset, page.title, file, page.records.len());
     coefficients.extend(page.dhf_298_correlations.into_iter().map(|group| Coefficients {
         dataset: dataset.clone(),
-        path: file.path,
+        path: file.path.to_owned(),
         records: group.records.into_iter().map(Arc::from).collect(),
         r: group.r.concat(),
     }));

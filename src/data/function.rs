@@ -88,7 +88,7 @@ impl Function {
     }
 }
 
-pub(super) const SCHEMA: &str = "hessbook-functions/1";
+pub const SCHEMA: &str = "hessbook-functions/1";
 
 #[derive(Deserialize)]
 struct Page<'a> {
@@ -128,7 +128,7 @@ struct Range {
 
 /// Reads a file of functions into `functions` and its description into `datasets`.
 pub(super) fn read(
-    file: &Embedded,
+    file: &Embedded<'_>,
     datasets: &mut Vec<Dataset>,
     functions: &mut Vec<Function>,
 ) -> Result<(), TableFault> {

@@ -62,7 +62,7 @@ struct Form<'a> {
 }
 
 /// Adds a file of names.
-pub(super) fn read(file: &Embedded, names: &mut Names) -> Result<(), TableFault> {
+pub(super) fn read(file: &Embedded<'_>, names: &mut Names) -> Result<(), TableFault> {
     let page: Page<'_> = dataset::parse(file)?;
     names.same.extend(page.same.iter().map(|same| (same.id.into(), same.is.into())));
     names.entities.extend(page.entities.into_iter().map(|record| EntityNames {

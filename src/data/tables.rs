@@ -26,7 +26,7 @@ pub(super) struct Tables {
 }
 
 impl Tables {
-    pub fn read(files: &[Embedded]) -> Result<Tables, TableFault> {
+    pub fn read(files: &[Embedded<'_>]) -> Result<Tables, TableFault> {
         let mut tables = Tables::default();
         for file in files {
             match schema(file.bytes) {
@@ -46,7 +46,7 @@ impl Tables {
 }
 
 /// The schema that a file names as its first member.
-fn schema(bytes: &[u8]) -> Option<&str> {
+pub(super) fn schema(bytes: &[u8]) -> Option<&str> {
     // The cut may fall into a character; what is looked for stands before it.
     let head = bytes.get(..bytes.len().min(128))?.utf8_chunks().next()?.valid();
     let rest = head.trim_start().strip_prefix('{')?.trim_start().strip_prefix("\"schema\"")?;

@@ -78,7 +78,7 @@ struct Record<'a> {
 
 /// Reads a file of transitions into `transitions` and its description into `datasets`.
 pub(super) fn read(
-    file: &Embedded,
+    file: &Embedded<'_>,
     datasets: &mut Vec<Dataset>,
     transitions: &mut Vec<Transition>,
 ) -> Result<(), TableFault> {

@@ -13,10 +13,12 @@ use crate::fault::{Explain, Fault};
 use crate::model::budget::Budget;
 use crate::model::card::{Arg, Call, Default, Takes, Value, listed};
 use crate::model::compare::Comparison;
+use crate::model::cycle::Cycle;
 use crate::model::derivation::Derivation;
 use crate::model::expanded::Expanded;
 use crate::model::gap::Gap;
 use crate::model::monte_carlo::Propagation;
+use crate::model::shortcut::{SideBySide, Validity};
 use crate::quantity::Quantity;
 use crate::record::node::Step;
 use crate::units::{Base, Dimension, Kind, Unit, What, unit_for};
@@ -29,7 +31,10 @@ pub enum Answer {
     Propagation(Rc<Propagation>),
     Derivation(Rc<Derivation>),
     Comparison(Rc<Comparison>),
+    Cycle(Rc<Cycle>),
     Gap(Rc<Gap>),
+    Validity(Rc<Validity>),
+    SideBySide(Rc<SideBySide>),
 }
 
 /// The argument that says how sure an interval is to be.
@@ -68,7 +73,10 @@ impl Answer {
             Answer::Propagation(_) => "a Monte Carlo run",
             Answer::Derivation(_) => "a derivation",
             Answer::Comparison(_) => "a comparison",
+            Answer::Cycle(_) => "a cycle",
             Answer::Gap(_) => "an explanation of a gap",
+            Answer::Validity(_) => "the range of a shortcut",
+            Answer::SideBySide(_) => "shortcuts side by side",
         }
     }
 
@@ -79,7 +87,10 @@ impl Answer {
             Answer::Propagation(propagation) => propagation.parts(),
             Answer::Derivation(derivation) => derivation.parts(),
             Answer::Comparison(comparison) => comparison.parts(),
+            Answer::Cycle(cycle) => cycle.parts(),
             Answer::Gap(gap) => gap.parts(),
+            Answer::Validity(validity) => validity.parts(),
+            Answer::SideBySide(ways) => ways.parts(),
         }
     }
 

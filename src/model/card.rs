@@ -178,6 +178,11 @@ impl References {
         References { catalog: OnceCell::new(), constants }
     }
 
+    /// Substances of another catalogue than the shipped one.
+    pub fn of(catalog: Arc<Catalog>, constants: &'static ConstantSet) -> Self {
+        References { catalog: OnceCell::from(catalog), constants }
+    }
+
     pub fn catalog(&self) -> &Catalog {
         self.catalog.get_or_init(Catalog::shipped)
     }
@@ -278,6 +283,24 @@ impl Call {
         }
     }
 
+    /// A quantity given in the option map.
+    pub fn option_quantity(&self, name: &str) -> Option<&Quantity> {
+        let Some(Value::Options(options)) = self.args.last() else { return None };
+        match options.get(name) {
+            Some(Value::Quantity(value)) => Some(value),
+            _ => None,
+        }
+    }
+
+    /// The same call without one of its options.
+    #[must_use]
+    pub fn without_option(mut self, name: &str) -> Call {
+        if let Some(Value::Options(options)) = self.args.last_mut() {
+            Rc::make_mut(options).remove(name);
+        }
+        self
+    }
+
     /// The same call with one option set to another word.
     #[must_use]
     pub fn with_option(&self, name: &str, word: &str) -> Call {
@@ -313,6 +336,7 @@ impl Step for Call {
                     words.extend(options.iter().filter_map(|(name, value)| match value {
                         Value::Text(word) => Some(format!("{name}: {word}")),
                         Value::Number(number) => Some(format!("{name}: {number}")),
+                        Value::Quantity(value) => Some(format!("{name}: {}", text::shown(value))),
                         Value::List(list) => Some(format!("{name}: {} values", list.len())),
                         _ => None,
                     }));

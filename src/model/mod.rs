@@ -13,12 +13,15 @@ pub mod compare;
 pub mod conditions;
 pub mod curve;
 pub mod curve_card;
+pub mod cycle;
 pub mod derivation;
 pub mod expanded;
+pub mod first_order;
 pub mod function;
 pub mod gap;
 pub mod gather;
 pub mod grid;
+pub mod heat_capacity;
 pub mod linearity;
 pub mod mass;
 pub mod monte_carlo;
@@ -36,6 +39,7 @@ pub mod substance;
 pub mod symbols;
 pub mod table;
 pub mod table_card;
+pub mod tabulated;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
@@ -55,6 +59,7 @@ pub const CARDS: &[&Card] = &[
     &property_card::ENTROPY,
     &property_card::HEAT_CAPACITY,
     &property_card::EQUILIBRIUM_CONSTANT,
+    &cycle::CYCLE,
     &property_card::SUBSTANCE_ENTHALPY,
     &property_card::SUBSTANCE_INTERNAL_ENERGY,
     &property_card::SUBSTANCE_GIBBS_ENERGY,

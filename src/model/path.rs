@@ -50,7 +50,8 @@ pub struct Phase {
 }
 
 impl Phase {
-    fn of(substance: &Arc<Substance>) -> Option<Phase> {
+    /// `None` where it has no function.
+    pub fn of(substance: &Arc<Substance>) -> Option<Phase> {
         Some(Phase { substance: Arc::clone(substance), function: Arc::clone(substance.function.as_ref()?) })
     }
 
@@ -218,6 +219,7 @@ impl Route {
         let (taken, cp_of) = match mode {
             HeatCapacity::Full => return self.integrated(nu, formation),
             HeatCapacity::Missed => return self.missed(nu, formation),
+            HeatCapacity::FirstOrder { .. } => unreachable!("it is a sum of two full integrals"),
             HeatCapacity::Neglected => (gather::neglected(at_0, t_k), first),
             HeatCapacity::Constant => (flat(at_0, t_k, cp_at(first, T_REFERENCE), 0.0, gather::AT_REFERENCE), first),
             HeatCapacity::Midpoint => {
@@ -297,6 +299,17 @@ fn assembled(
     Contribution { nu, formation, increment, entropy, cp: Some(cp), slopes }
 }
 
+/// The highest temperature that routes from a phase lead to.
+pub(super) fn reach_k(written: &Arc<Substance>, data: &Catalog) -> Option<f64> {
+    let mut last = Phase::of(written)?;
+    if last.function.covers(T_REFERENCE) {
+        while let Some((_, next)) = onward(&last, data) {
+            last = next;
+        }
+    }
+    Some(last.function.t_max)
+}
+
 /// The transition recorded where a phase ends on heating, and the condensed phase it leads to.
 fn onward(phase: &Phase, data: &Catalog) -> Option<(Arc<Transition>, Phase)> {
     let id = phase.substance.id();
@@ -306,6 +319,17 @@ fn onward(phase: &Phase, data: &Catalog) -> Option<(Arc<Transition>, Phase)> {
         let holds = |phase: &Phase| phase.function.covers(transition.t_k);
         (!next.substance.species.is_gas() && holds(phase) && holds(&next)).then(|| (Arc::clone(transition), next))
     })
+}
+
+/// The transitions that lead from one phase up to another, in order; `None` where they do not.
+pub fn chain(from: &Arc<Substance>, to: &Substance, data: &Catalog) -> Option<Vec<Arc<Transition>>> {
+    let (mut phase, mut transitions) = (Phase::of(from)?, Vec::new());
+    while phase.substance.id() != to.id() {
+        let (transition, next) = onward(&phase, data)?;
+        transitions.push(transition);
+        phase = next;
+    }
+    Some(transitions)
 }
 
 /// The refusal where the condensed phases end and the gas goes on.
@@ -330,7 +354,7 @@ pub fn crossings(terms: &Terms, t_k: f64, data: &Catalog) -> Vec<(usize, Route)>
 
 /// What a figure is per mole.
 #[derive(Clone, Copy, PartialEq)]
-enum Sort {
+pub(super) enum Sort {
     Energy,
     PerKelvin,
 }
@@ -340,6 +364,27 @@ impl Sort {
     fn digit(self) -> f64 {
         if self == Sort::Energy { 1.0 } else { 0.001 }
     }
+}
+
+/// What one phase takes up between two temperatures, as an input.
+///
+/// # Errors
+/// The figure is not finite.
+pub fn heated(phase: &Phase, from_k: f64, to_k: f64) -> Result<Rc<Node>, Fault> {
+    let way = if from_k == T_REFERENCE { INTEGRATED } else { FROM_TRANSITION };
+    Leg::Heating { phase, from_k, to_k, way }.node()
+}
+
+/// The enthalpy of a change from one phase of a transition to the other, as their two functions have it: what belongs to a
+/// phase whose function continues the enthalpy scale of another. The recorded figure is this one, rounded.
+///
+/// # Errors
+/// The figure is not finite.
+pub fn by_functions(transition: &Transition, from: &Phase, to: &Phase) -> Result<Rc<Node>, Fault> {
+    let (dataset, record, t_bits) = (transition.dataset.shared(), transition.id.clone(), transition.t_k.to_bits());
+    let way = "difference of the two functions";
+    let key = LeafKey::Datum { dataset, record, field: TRANSITION_ENTHALPY, t_bits, way };
+    leaf(to.at(transition.t_k).h - from.at(transition.t_k).h, key, &transition.citation, Sort::Energy)
 }
 
 /// A figure drawn from a phase's function.
@@ -361,7 +406,11 @@ fn changed(transition: &Transition, sort: Sort) -> Result<Rc<Node>, Fault> {
 }
 
 fn leaf(si: f64, key: LeafKey, citation: &Citation, sort: Sort) -> Result<Rc<Node>, Fault> {
-    let input = Input { digit: Some(sort.digit()), citation: Some(citation.clone()), ..Input::of(key) };
+    input_node(si, Input { digit: Some(sort.digit()), citation: Some(citation.clone()), ..Input::of(key) }, sort)
+}
+
+/// A figure per mole of its species as an input.
+pub(super) fn input_node(si: f64, input: Input, sort: Sort) -> Result<Rc<Node>, Fault> {
     let energy = Dimension::whole([2, 1, -2, 0, 0, 0]);
     let dim = if sort == Sort::Energy { energy } else { energy.over(&Dimension::base(Base::Kelvin)) };
     let dim = dim.over(&Dimension::amount(Entity::OPEN));

@@ -24,7 +24,8 @@ use thiserror::Error;
 use crate::fault::{Explain, Fault};
 use crate::model::card::{Call, Card, Cx};
 use crate::model::function::T_REFERENCE;
-use crate::model::gather::{self, Contribution, Figure, FigureOrigin, Method};
+use crate::model::gather::{self, Contribution, Figure, FigureOrigin, HeatCapacity, Method};
+use crate::model::shortcut::ShortcutError;
 use crate::model::terms::Terms;
 use crate::num::math;
 use crate::quantity::Quantity;
@@ -205,7 +206,17 @@ fn kind(property: Property, terms: &Terms, t_k: f64) -> Kind {
 /// The formation dataset is unknown.
 pub fn method_of(call: &Call, cx: &Cx) -> Result<Method, Fault> {
     let word = |name| call.option(name).map(|word| &**word);
-    Ok(Method::from_words(word("heat_capacity"), word("formation"), cx.data())?)
+    let mut method = Method::from_words(word("heat_capacity"), word("formation"), cx.data())?;
+    match (word("heat_capacity"), call.option_quantity("about")) {
+        (Some("taylor"), Some(about)) => method.heat_capacity = HeatCapacity::FirstOrder { about_k: about.si() },
+        (Some("taylor"), None) => return Err(ShortcutError::StartMissing.into()),
+        (_, Some(_)) => {
+            let shortcut = "the heat capacity asked for".to_owned();
+            return Err(ShortcutError::StartUnused { shortcut }.into());
+        }
+        (_, None) => {}
+    }
+    Ok(method)
 }
 
 /// A property by another method, as a bare number in SI units: what tests and alternatives compare with.
@@ -333,7 +344,6 @@ mod tests {
 
     use super::*;
     use crate::model::card::{self, References, Value};
-    use crate::model::gather::HeatCapacity;
     use crate::model::property_card::*;
     use crate::model::reaction::REACTION;
     use crate::units::constants;
@@ -390,7 +400,11 @@ mod tests {
             for (equation, mode) in
                 [SHIFT, REFORMING].into_iter().flat_map(|e| HeatCapacity::WORDS.iter().map(move |m| (e, m)))
             {
-                let at = |t: &str| ask(card, equation, t, &[("heat_capacity", mode)]).unwrap();
+                let options: &[(&str, &str)] = match *mode {
+                    "taylor" => &[("heat_capacity", "taylor"), ("about", "450 K")],
+                    _ => &[("heat_capacity", mode)],
+                };
+                let at = |t: &str| ask(card, equation, t, options).unwrap();
                 let difference = (at("600.01 K").si() - at("599.99 K").si()) / 0.02;
                 let with_u = at("600.00(1) K");
                 let of_t = with_u

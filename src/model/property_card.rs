@@ -8,6 +8,7 @@ use crate::model::check_line;
 use crate::model::claims;
 use crate::model::gather::{self, Contribution, Figure, HeatCapacity};
 use crate::model::property::{self, Property};
+use crate::model::shortcut::ABOUT;
 use crate::quantity::Quantity;
 
 fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
@@ -100,6 +101,7 @@ const OPTIONS: &[Arg] = &[
         default: Default::Absent,
         doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
     },
+    ABOUT,
     Arg {
         name: "formation",
         takes: Takes::Text,
@@ -108,12 +110,15 @@ const OPTIONS: &[Arg] = &[
     },
 ];
 
-const HEAT_CAPACITY_ONLY: &[Arg] = &[Arg {
-    name: "heat_capacity",
-    takes: Takes::Word(HeatCapacity::WORDS),
-    default: Default::Absent,
-    doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
-}];
+const HEAT_CAPACITY_ONLY: &[Arg] = &[
+    Arg {
+        name: "heat_capacity",
+        takes: Takes::Word(HeatCapacity::WORDS),
+        default: Default::Absent,
+        doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
+    },
+    ABOUT,
+];
 
 const TEMPERATURE: Arg = Arg {
     name: "T",
@@ -122,7 +127,7 @@ const TEMPERATURE: Arg = Arg {
     doc: "temperature: degC, degF or kelvin; with a grid of temperatures the answer is a curve",
 };
 
-const ARGS: &[Arg] = &[
+pub(super) const ARGS: &[Arg] = &[
     TEMPERATURE,
     Arg {
         name: "options",
@@ -148,10 +153,14 @@ const FORMATION_DATASET: Claim = Claim { id: "formation-dataset", test: claims::
 const IDEAL_GAS: Claim = Claim { id: "ideal-gas", test: claims::ideal_gas };
 const CONDENSED_VOLUME: Claim = Claim { id: "condensed-volume-neglected", test: claims::condensed_volume };
 
-const ENERGY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET];
+const AQUEOUS: Claim = Claim { id: "aqueous-heat-capacity", test: claims::aqueous_heat_capacity };
+const SATURATED_VAPOUR: Claim = Claim { id: "saturated-vapour-ideal", test: claims::vapour_of_records };
+
+const ENTHALPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET, SATURATED_VAPOUR];
+const ENERGY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET];
 const GAS_LAW_CLAIMS: &[Claim] =
-    &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET, IDEAL_GAS, CONDENSED_VOLUME];
-const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE];
+    &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET, IDEAL_GAS, CONDENSED_VOLUME];
+const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE];
 
 const SHORTCUTS: &[Alternative] = &[
     Alternative {
@@ -159,11 +168,32 @@ const SHORTCUTS: &[Alternative] = &[
         words: "with ΔCp held at its value at 298.15 K",
         value: claims::with_constant_heat_capacity,
     },
+    Alternative {
+        id: "midpoint",
+        words: "with ΔCp held at its value half-way",
+        value: claims::with_midpoint_heat_capacity,
+    },
+    Alternative {
+        id: "mean", words: "with ΔCp held at the mean of both ends", value: claims::with_mean_heat_capacity
+    },
     Alternative { id: "no-correction", words: "with the value at 298.15 K", value: claims::without_correction },
     Alternative {
         id: "missed-phase-change",
         words: "with the changes of phase left out, Cp of the phase as written held on",
         value: claims::with_missed_phase_change,
+    },
+    Alternative {
+        id: "internal-energy-for-enthalpy",
+        words: "with ΔrU in place of ΔrH",
+        value: claims::with_internal_energy,
+    },
+    Alternative {
+        id: "enthalpy-for-internal-energy", words: "with ΔrH in place of ΔrU", value: claims::with_enthalpy
+    },
+    Alternative {
+        id: "standard-pressure",
+        words: "with gases counted from 1 atm, as in tables before 1982",
+        value: claims::with_atmosphere,
     },
 ];
 
@@ -206,7 +236,7 @@ reaction_card!(
     "reaction.enthalpy",
     "enthalpy",
     ARGS,
-    ENERGY_CLAIMS,
+    ENTHALPY_CLAIMS,
     "ΔrH° per mole of reaction as written",
     "Reaction enthalpy at T. ΔrH°(T) = Σ ν [ΔfH°(298.15 K) + H(T) - H(298.15 K)], each species pure, in its standard \
      state, p° = 1 bar; formation enthalpies from one dataset."

@@ -58,6 +58,8 @@ pub struct Row {
     pub note: String,
     /// What was decided about it.
     pub dealt: Option<String>,
+    /// Whether it needs nothing more: it holds, was justified, or its price is in u. What is untested is open.
+    pub answered: bool,
 }
 
 /// A shortcut not taken.
@@ -213,7 +215,10 @@ fn row(at: &At, group: &[Finding], judgement: Judgement, dealings: &[&Dealing]) 
         Decided::Tolerated { written, .. } => format!("tolerated up to {written}"),
     };
     let mut dealt: Vec<String> = dealings.iter().map(words).collect();
-    dealt.extend(widened_by(at, group));
+    let widened = widened_by(at, group);
+    let justified = dealings.iter().any(|dealing| matches!(dealing.decided, Decided::Justified { .. }));
+    let answered = status == Status::Holds || justified || widened.is_some();
+    dealt.extend(widened);
     let places = listed_once(group.iter().filter_map(|finding| finding.at.place().map(ToString::to_string)));
     Row {
         id: group[0].id.to_string(),
@@ -225,6 +230,7 @@ fn row(at: &At, group: &[Finding], judgement: Judgement, dealings: &[&Dealing]) 
         first_order,
         note: listed_once(group.iter().map(note)),
         dealt: (!dealt.is_empty()).then(|| dealt.join("; ")),
+        answered,
     }
 }
 

@@ -160,6 +160,27 @@ impl NotebookFile {
             .collect()
     }
 
+    /// What a tool keeps in the notebook's metadata under a name of its own.
+    pub fn metadata(&self, name: &str) -> Option<&Value> {
+        self.tree.get("metadata")?.get(name)
+    }
+
+    /// Puts something into the notebook's metadata.
+    pub fn set_metadata(&mut self, name: &str, value: Value) {
+        let metadata = self.tree.entry("metadata").or_insert_with(|| json!({}));
+        if let Value::Object(metadata) = metadata {
+            metadata.insert(name.to_owned(), value);
+        } else {
+            *metadata = json!({ name: value });
+        }
+    }
+
+    /// What stands in the outputs under a MIME type, in order.
+    pub fn recorded(&self, mime: &str) -> Vec<&Value> {
+        let outputs = self.cells().iter().filter_map(|cell| cell.get("outputs")?.as_array()).flatten();
+        outputs.filter_map(|output| output.get("data")?.get(mime)).collect()
+    }
+
     /// Puts what a cell gave in place of its recorded outputs.
     pub fn set_outputs(&mut self, cell: &CodeCell, count: Option<u32>, outputs: &[Output]) {
         let Some(Value::Array(cells)) = self.tree.get_mut("cells") else { return };

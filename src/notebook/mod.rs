@@ -1,4 +1,15 @@
-//! Notebook files: read leniently, run in order, written strictly.
+//! Notebook files: read leniently, run in order, written strictly; sealed, and audited.
 
+pub mod audit;
+pub mod audit_text;
+pub mod causes;
+pub mod comparison;
 pub mod file;
+pub mod holdings;
+pub mod parting;
 pub mod run;
+pub mod seal;
+pub mod sealing;
+pub mod skeleton;
+pub mod trial;
+pub mod verdict;

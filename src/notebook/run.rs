@@ -5,7 +5,7 @@
 
 use std::path::Path;
 
-use serde::Serialize;
+use serde::{Deserialize, Serialize};
 
 use crate::fault::Fault;
 use crate::notebook::file::{CodeCell, FileError, NotebookFile, Output};
@@ -41,7 +41,7 @@ pub struct ParameterRecord {
 }
 
 /// A fault with its place.
-#[derive(Debug, Serialize)]
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
 pub struct FaultRecord {
     pub cell: String,
     pub line: u32,

@@ -8,6 +8,7 @@ pub mod cells;
 pub mod comparison;
 pub mod csv;
 pub mod curve;
+pub mod cycle;
 pub mod derivation;
 pub mod gap;
 pub mod headline;
@@ -17,6 +18,7 @@ pub mod latex;
 pub mod plot;
 pub mod register;
 pub mod report;
+pub mod shortcut;
 pub mod table;
 pub mod text;
 
@@ -71,7 +73,10 @@ pub fn answer(answer: &Answer) -> Bundle {
         Answer::Propagation(propagation) => interval::propagation(propagation),
         Answer::Derivation(derivation) => derivation::bundle(derivation),
         Answer::Comparison(comparison) => comparison::bundle(comparison),
+        Answer::Cycle(cycle) => cycle::bundle(cycle),
         Answer::Gap(gap) => gap::bundle(gap),
+        Answer::Validity(validity) => shortcut::validity(validity),
+        Answer::SideBySide(ways) => shortcut::side_by_side(ways),
     }
 }
 

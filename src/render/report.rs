@@ -89,6 +89,8 @@ pub struct Alternative {
 pub struct Report {
     pub headline: Headline,
     pub record: Record,
+    /// For each row of the register whether it needs nothing more from the analyst.
+    pub answered: Vec<bool>,
 }
 
 impl Report {
@@ -97,7 +99,8 @@ impl Report {
         let review = review::review(cx, label, value, dealings);
         let headline = Headline::of(value);
         let record = record(label, value, &headline, &review);
-        Report { headline, record }
+        let answered = review.rows.iter().map(|row| row.answered).collect();
+        Report { headline, record, answered }
     }
 
     /// The record, and the same in text, HTML and LaTeX.

@@ -23,7 +23,6 @@ use crate::script::host::{Host, HostSlot};
 use crate::script::prepare::Shifts;
 use crate::script::words::Library;
 use crate::script::{engine, memory};
-use crate::units::constants;
 
 /// The part of a session that functions of the host change. Committed with a cell that succeeds, else put back.
 #[derive(Clone, Debug, Default)]
@@ -143,13 +142,13 @@ pub struct Shared {
 
 impl Shared {
     /// `stop` ends the running cell when it becomes true; `limit` is the memory a cell may take, in bytes.
-    pub fn new(stop: Arc<AtomicBool>, limit: usize) -> Self {
+    pub fn new(stop: Arc<AtomicBool>, limit: usize, references: References) -> Self {
         Shared {
             state: Rc::default(),
             host: HostSlot::default(),
             folder: Folder::default(),
             stop,
-            references: Rc::new(References::new(constants::current())),
+            references: Rc::new(references),
             settings: Rc::default(),
             shifts: Rc::default(),
             source: Rc::new(RefCell::new("".into())),
@@ -313,6 +312,7 @@ mod tests {
 
     use super::*;
     use crate::script::fault::raise;
+    use crate::units::constants;
 
     #[derive(Default)]
     struct Shows(Vec<String>);
@@ -329,7 +329,7 @@ mod tests {
 
     #[test]
     fn a_native_function_reaches_place_state_and_host() {
-        let shared = Shared::new(Arc::default(), 1 << 30);
+        let shared = Shared::new(Arc::default(), 1 << 30, References::new(constants::current()));
         let mut engine = engine::build(&shared);
         let inside = shared.clone();
         engine.register_fn("number_here", move |context: NativeCallContext<'_>| {
@@ -352,7 +352,7 @@ mod tests {
 
     #[test]
     fn a_native_fault_knows_where_it_was_raised_even_when_caught() {
-        let shared = Shared::new(Arc::default(), 1 << 30);
+        let shared = Shared::new(Arc::default(), 1 << 30, References::new(constants::current()));
         let mut engine = engine::build(&shared);
         engine.register_fn("refuse", |context: NativeCallContext<'_>| -> Result<Dynamic, Box<rhai::EvalAltResult>> {
             Err(raise(fault_at(&context, Fault::new("some-code", "no", "go on"))))

@@ -15,12 +15,15 @@ use std::sync::atomic::AtomicBool;
 use rhai::{Dynamic, Engine, FnPtr, Module, Scope};
 
 use crate::fault::Fault;
+use crate::model::card::References;
+use crate::model::review::Dealing;
 use crate::render::Bundle;
 use crate::render::report::Report;
 use crate::script::literals::Literals;
-use crate::script::state::{Parameter, Shared};
+use crate::script::state::{Parameter, Reported, Shared};
 use crate::script::token::{Ending, tokens};
 use crate::script::{engine, verbs, words};
+use crate::units::constants;
 use closures::SharedValues;
 use outcome::{Completeness, Host, Outcome};
 
@@ -56,7 +59,12 @@ pub struct Session {
 impl Session {
     /// `stop` ends the running cell when it becomes true; whoever sets it clears it.
     pub fn new(stop: Arc<AtomicBool>) -> Self {
-        let shared = Shared::new(stop, MEMORY_LIMIT);
+        Session::with(stop, References::new(constants::current()))
+    }
+
+    /// A session whose formulas look up substances and constants there: other records, or another constant set.
+    pub fn with(stop: Arc<AtomicBool>, references: References) -> Self {
+        let shared = Shared::new(stop, MEMORY_LIMIT, references);
         let engine = engine::build(&shared);
         Session {
             engine,
@@ -125,6 +133,21 @@ impl Session {
     /// Every reported result, its assumptions tested, with the decisions in force.
     pub fn reports(&self) -> Vec<Report> {
         verbs::reports(&self.shared)
+    }
+
+    /// The reported values themselves, with their history, in the order of [`Session::reports`].
+    pub fn reported(&self) -> Vec<Reported> {
+        self.shared.state().reports.clone()
+    }
+
+    /// What was decided about assumptions, in order.
+    pub fn dealings(&self) -> Vec<Dealing> {
+        self.shared.state().dealings.clone()
+    }
+
+    /// What formulas look up.
+    pub fn references(&self) -> &References {
+        self.shared.references()
     }
 
     /// Whether the text is a whole cell, for front ends that ask before running it.

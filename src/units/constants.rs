@@ -3,6 +3,8 @@
 //! Main type: [`ConstantSet`], from [`set`]. The surprise: 2018 and 2022 agree in everything the SI defines (R, F, N_A
 //! and the like are exact); only the hartree and the atomic mass constant move.
 
+use std::sync::{Mutex, PoisonError};
+
 use crate::source::Citation;
 
 /// The year of the set that new notebooks use.
@@ -78,6 +80,55 @@ impl ConstantSet {
             &self.atomic_mass,
         ]
     }
+
+    fn all_mut(&mut self) -> [&mut Constant; 11] {
+        [
+            &mut self.molar_gas,
+            &mut self.avogadro,
+            &mut self.boltzmann,
+            &mut self.planck,
+            &mut self.elementary_charge,
+            &mut self.faraday,
+            &mut self.speed_of_light,
+            &mut self.wavenumber_energy,
+            &mut self.second_radiation,
+            &mut self.hartree,
+            &mut self.atomic_mass,
+        ]
+    }
+
+    /// This set with other figures for some of its constants, each by its name with its u. Sets live as long as the
+    /// program; equal ones are one.
+    pub fn with(&self, figures: &[(&str, f64, f64)]) -> &'static ConstantSet {
+        let mut made = *self;
+        for constant in made.all_mut() {
+            if let Some((_, value, u)) = figures.iter().find(|(name, ..)| *name == constant.name) {
+                (constant.value, constant.u) = (*value, *u);
+            }
+        }
+        kept(made)
+    }
+
+    /// This set under another year, for a year that the program has no set of.
+    pub fn of_year(&self, year: u16) -> &'static ConstantSet {
+        kept(ConstantSet { year, ..*self })
+    }
+}
+
+static MADE: Mutex<Vec<&'static ConstantSet>> = Mutex::new(Vec::new());
+
+/// A set for the life of the program; the program's own where it is one of these.
+fn kept(made: ConstantSet) -> &'static ConstantSet {
+    if let Some(own) = SETS.iter().find(|own| **own == made) {
+        return own;
+    }
+    let mut others = MADE.lock().unwrap_or_else(PoisonError::into_inner);
+    if let Some(known) = others.iter().find(|known| ***known == made) {
+        return known;
+    }
+    let made: &'static ConstantSet = Box::leak(Box::new(made));
+    others.push(made);
+    made
 }
 
 /// The set of that CODATA year, if the program has it.
@@ -198,6 +249,17 @@ mod tests {
                 assert!((listed / product - 1.0).abs() <= ROUNDING, "{} {name}: {listed} against {product}", set.year);
             }
         }
+    }
+
+    #[test]
+    fn a_set_with_the_figures_of_another_is_that_one() {
+        let [older, newer] = [set(2018).unwrap(), set(2022).unwrap()];
+        let figures: Vec<(&str, f64, f64)> = newer.all().iter().map(|c| (c.name, c.value, c.u)).collect();
+        assert!(std::ptr::eq(newer.with(&figures), newer));
+        let altered = newer.with(&[("molar gas constant", 8.314, 0.0)]);
+        assert_eq!((altered.molar_gas.value, altered.hartree), (8.314, newer.hartree));
+        assert!(std::ptr::eq(altered, newer.with(&[("molar gas constant", 8.314, 0.0)])));
+        assert_ne!(older.of_year(1986).year, older.year);
     }
 
     #[test]

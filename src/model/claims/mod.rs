@@ -6,12 +6,17 @@ mod alternatives;
 mod formation;
 mod heat_capacity;
 mod phase;
+mod vaporisation;
 mod volume;
 
-pub use alternatives::{with_constant_heat_capacity, with_missed_phase_change, without_correction};
+pub use alternatives::{
+    with_atmosphere, with_constant_heat_capacity, with_enthalpy, with_internal_energy, with_mean_heat_capacity,
+    with_midpoint_heat_capacity, with_missed_phase_change, without_correction,
+};
 pub use formation::formation_dataset;
-pub use heat_capacity::constant_heat_capacity;
+pub use heat_capacity::{aqueous_heat_capacity, constant_heat_capacity};
 pub use phase::stable_phase;
+pub use vaporisation::vapour_of_records;
 pub use volume::{condensed_volume, ideal_gas};
 
 use std::rc::Rc;

@@ -115,7 +115,7 @@ fn draw(picture: &Picture, out: &mut String) -> Result<(), Failed> {
         .y_labels(8)
         .axis_desc_style(("sans-serif", 17))
         .label_style(("sans-serif", 15))
-        .light_line_style(WHITE)
+        .max_light_lines(1)
         .bold_line_style(GRID)
         .draw()?;
     for (curve, (colour, dash)) in picture.curves.iter().zip(STROKES.iter().cycle()) {

@@ -1,0 +1,400 @@
+//! Audits one notebook: runs it with the sealed records and with today's, and says of each value what became of it and why.
+//!
+//! [`audit_one`] gives a [`NotebookAudit`]. The surprise: where nothing of what a notebook used was revised, the two runs are
+//! one, and it is made once.
+
+use std::collections::BTreeMap;
+use std::path::Path;
+use std::sync::Arc;
+use std::sync::atomic::AtomicBool;
+
+use serde::Deserialize;
+
+use crate::fault::Fault;
+use crate::notebook::causes::{Exchanged, Grounds, exchanged};
+use crate::notebook::comparison::{Compared, compare};
+use crate::notebook::file::NotebookFile;
+use crate::notebook::holdings::{Holdings, constants_of, records_of};
+use crate::notebook::run::{FaultRecord, Source};
+use crate::notebook::seal::{CellDigest, Seal, SealedValue};
+use crate::notebook::sealing::{cell_digests, engine_now, read_seal};
+use crate::notebook::trial::{Trial, Unwatched, trial};
+use crate::notebook::verdict::{
+    Against, AuditFault, AuditStatus, Difference, Figure, Justification, NotebookAudit, Outcome, SealFacts, Signed,
+    ValueAudit, Verdict,
+};
+use crate::render::report::{MIME, Record};
+use crate::session::on_big_stack;
+
+/// What an audit is made with.
+#[derive(Clone, Debug)]
+pub struct AuditOptions {
+    /// Today's records and constants.
+    pub today: Holdings,
+    /// Whether moves under today's data count for the status.
+    pub strict_data: bool,
+    /// Ends a run from outside.
+    pub stop: Arc<AtomicBool>,
+}
+
+impl Default for AuditOptions {
+    fn default() -> Self {
+        AuditOptions { today: Holdings::shipped(), strict_data: false, stop: Arc::default() }
+    }
+}
+
+/// Audits a notebook file. Whatever is wrong with it becomes part of the outcome.
+pub fn audit_one(path: &Path, options: &AuditOptions) -> NotebookAudit {
+    on_big_stack(|| audited(path, options))
+}
+
+fn audited(path: &Path, options: &AuditOptions) -> NotebookAudit {
+    let file = path.display().to_string();
+    let notebook = match NotebookFile::read(path) {
+        Ok(notebook) => notebook,
+        Err(error) => return could_not_run(&file, Against::Nothing, "the file", &error.into()),
+    };
+    let audit = match read_seal(&file, &notebook) {
+        Err(error) => return could_not_run(&file, Against::Seal, "the file", &error.into()),
+        Ok(Some(seal)) => of_sealed(&file, &notebook, &seal, options),
+        Ok(None) => of_unsealed(&file, &notebook, options),
+    };
+    audit.unwrap_or_else(|fault| could_not_run(&file, Against::Seal, "the records", &fault))
+}
+
+fn empty(file: &str, against: Against) -> NotebookAudit {
+    NotebookAudit {
+        file: file.to_owned(),
+        against,
+        status: AuditStatus::Same,
+        seal: None,
+        environment: Vec::new(),
+        values: Vec::new(),
+        justifications: Vec::new(),
+        untested: Vec::new(),
+        not_compared: Vec::new(),
+        faults: Vec::new(),
+        from_sources: None,
+    }
+}
+
+fn could_not_run(file: &str, against: Against, under: &str, fault: &Fault) -> NotebookAudit {
+    let faults = vec![AuditFault { under: under.to_owned(), fault: FaultRecord::of(fault, file) }];
+    NotebookAudit { status: AuditStatus::CouldNotRun, faults, ..empty(file, against) }
+}
+
+/// The run of a notebook on some records, with the settings that were sealed.
+pub struct Runner<'a> {
+    pub file: &'a str,
+    pub notebook: &'a NotebookFile,
+    pub settings: BTreeMap<String, String>,
+    pub stop: &'a Arc<AtomicBool>,
+}
+
+impl Runner<'_> {
+    pub fn run(&self, holdings: &Holdings) -> Result<Trial, Fault> {
+        let mut source = Source::Notebook(self.notebook.clone());
+        trial(self.file, &mut source, &self.settings, holdings, self.stop, &mut Unwatched)
+    }
+}
+
+fn of_sealed(file: &str, notebook: &NotebookFile, seal: &Seal, options: &AuditOptions) -> Result<NotebookAudit, Fault> {
+    let set = seal.parameters.iter().filter_map(|one| Some((one.name.clone(), one.set.clone()?)));
+    let runner = Runner { file, notebook, settings: set.collect(), stop: &options.stop };
+    let then = sealed_holdings(seal, &options.today);
+    let grounds = Grounds::of(notebook, seal, &runner, &then, &options.today);
+    let under_sealed = runner.run(&then.holdings)?;
+    let today = (!then.is_today).then(|| runner.run(&options.today)).transpose()?;
+    let under_today = today.as_ref().unwrap_or(&under_sealed);
+    let shares = match &today {
+        Some(today) if differ(&under_sealed, today) => exchanged(&runner, &then.holdings, &options.today, seal)?,
+        _ => Vec::new(),
+    };
+
+    let mut values = Vec::new();
+    for sealed in &seal.values {
+        values.push(value_audit(sealed, &under_sealed, under_today, &grounds, &shares, then.is_today));
+    }
+    for tried in &under_sealed.reports {
+        let record = &tried.report.record;
+        if !seal.values.iter().any(|sealed| sealed.record.label == record.label) {
+            values.push(new_value(record, under_today.of_label(&record.label).map(|now| &now.report.record)));
+        }
+    }
+    let mut faults: Vec<AuditFault> = Vec::new();
+    for (under, trial) in [("sealed data", Some(&under_sealed)), ("today's data", today.as_ref())] {
+        let of = trial.into_iter().flat_map(|trial| &trial.faults);
+        faults.extend(of.map(|fault| AuditFault { under: under.to_owned(), fault: fault.clone() }));
+    }
+    let facts = SealFacts {
+        sealed: seal.sealed.clone(),
+        author: seal.author.clone(),
+        draft: seal.draft,
+        whole: grounds.whole,
+        signed: Signed::Not,
+    };
+    let mut audit = NotebookAudit {
+        seal: Some(facts),
+        environment: environment(notebook, seal, &options.today),
+        justifications: justifications(seal, &under_sealed, under_today),
+        untested: untested(seal),
+        not_compared: not_compared(notebook),
+        values,
+        faults,
+        ..empty(file, Against::Seal)
+    };
+    audit.status = status(&audit, options.strict_data);
+    Ok(audit)
+}
+
+/// The records and constants of a seal.
+pub(super) struct Then {
+    pub holdings: Holdings,
+    /// Nothing of it was revised since.
+    pub is_today: bool,
+}
+
+fn sealed_holdings(seal: &Seal, today: &Holdings) -> Then {
+    let (records, entities) = records_of(seal);
+    let constants = constants_of(&seal.constants);
+    let same_text = |a: &crate::data::records::Records, b: &crate::data::records::Records| {
+        let texts = |records: &crate::data::records::Records| -> BTreeMap<_, _> {
+            records.all().into_iter().map(|(key, record)| (key, record.content)).collect()
+        };
+        texts(a) == texts(b)
+    };
+    if same_text(&records, &today.records.about(&entities)) {
+        let holdings = today.with_constants(constants);
+        return Then { is_today: std::ptr::eq(constants, today.constants), holdings };
+    }
+    let holdings = Holdings::of(today.records.with_sealed(&records, &entities)).with_constants(constants);
+    Then { holdings, is_today: false }
+}
+
+/// Whether two runs part in any figure, row or fault.
+fn differ(one: &Trial, other: &Trial) -> bool {
+    let records = |trial: &Trial| trial.reports.iter().map(|tried| tried.report.record.clone()).collect::<Vec<_>>();
+    records(one) != records(other) || one.faults != other.faults
+}
+
+fn value_audit(
+    sealed: &SealedValue,
+    under_sealed: &Trial,
+    under_today: &Trial,
+    grounds: &Grounds,
+    shares: &[Exchanged],
+    is_today: bool,
+) -> ValueAudit {
+    let record = &sealed.record;
+    let outcome = |trial: &Trial, shares: &[Exchanged]| match trial.of_label(&record.label) {
+        None => Outcome {
+            verdict: if trial.faults.is_empty() { Verdict::Missing } else { Verdict::CouldNotRun },
+            figure: None,
+            moved: None,
+            notes: Vec::new(),
+        },
+        Some(tried) => {
+            let with_sealed_data = under_sealed.of_label(&record.label);
+            let compared = Compared { sealed, now: tried, with_sealed_data };
+            compare(&compared, grounds, shares)
+        }
+    };
+    let under_sealed_data = outcome(under_sealed, &[]);
+    let today = if is_today { under_sealed_data.clone() } else { outcome(under_today, shares) };
+    ValueAudit {
+        label: record.label.clone(),
+        unit: record.unit.clone(),
+        sealed: Some(figure(record)),
+        under_sealed: under_sealed_data,
+        under_today: today,
+    }
+}
+
+/// The figures of a record.
+pub(super) fn figure(record: &Record) -> Figure {
+    Figure { value: record.value.clone(), u: record.u.clone(), unit: record.unit.clone(), shown: record.shown.clone() }
+}
+
+fn new_value(record: &Record, today: Option<&Record>) -> ValueAudit {
+    let outcome = |record: &Record| Outcome {
+        verdict: Verdict::New,
+        figure: Some(figure(record)),
+        moved: None,
+        notes: Vec::new(),
+    };
+    ValueAudit {
+        label: record.label.clone(),
+        unit: record.unit.clone(),
+        sealed: None,
+        under_sealed: outcome(record),
+        under_today: today.map_or_else(|| outcome(record), outcome),
+    }
+}
+
+fn status(audit: &NotebookAudit, strict_data: bool) -> AuditStatus {
+    let mut verdicts: Vec<Verdict> = audit.values.iter().map(|value| value.under_sealed.verdict).collect();
+    if strict_data {
+        verdicts.extend(audit.values.iter().map(|value| value.under_today.verdict));
+    }
+    let faults = |fault: &AuditFault| fault.under != "today's data" || strict_data;
+    let doubtful = audit.seal.as_ref().is_some_and(|seal| !seal.whole || matches!(seal.signed, Signed::Invalid { .. }));
+    if verdicts.contains(&Verdict::CouldNotRun) || audit.faults.iter().any(faults) {
+        AuditStatus::CouldNotRun
+    } else if doubtful || !verdicts.into_iter().all(Verdict::is_same) {
+        AuditStatus::Differs
+    } else {
+        AuditStatus::Same
+    }
+}
+
+/// What differs about the surroundings.
+fn environment(notebook: &NotebookFile, seal: &Seal, today: &Holdings) -> Vec<Difference> {
+    let mut found = Vec::new();
+    let mut differs = |what: &str, sealed: &str, now: &str| {
+        if sealed != now {
+            found.push(Difference { what: what.to_owned(), sealed: sealed.to_owned(), now: now.to_owned() });
+        }
+    };
+    let now = engine_now();
+    differs("program", &seal.engine.version, &now.version);
+    differs("shipped tables and procedures", &seal.engine.stdlib, &now.stdlib);
+    differs("constant set", &seal.constants.year, &today.constants.year.to_string());
+    for sides in cells_side_by_side(notebook, seal) {
+        let word = |digest: Option<String>| digest.unwrap_or_else(|| "not there".to_owned());
+        differs(&sides.cell, &word(sides.then), &word(sides.now));
+    }
+    found
+}
+
+/// The digests of one code cell in the seal and now.
+pub(super) struct Sides {
+    pub cell: String,
+    pub then: Option<String>,
+    pub now: Option<String>,
+}
+
+/// Each code cell of the seal and of the notebook.
+pub(super) fn cells_side_by_side(notebook: &NotebookFile, seal: &Seal) -> Vec<Sides> {
+    let digests = cell_digests(notebook);
+    let of =
+        |cells: &[CellDigest], name: &str| cells.iter().find(|cell| cell.name == name).map(|cell| cell.sha256.clone());
+    let mut listed: Vec<Sides> = Vec::new();
+    for name in seal.cells.iter().chain(&digests).map(|cell| cell.name.as_str()) {
+        if !listed.iter().any(|known| known.cell == name) {
+            listed.push(Sides { cell: name.to_owned(), then: of(&seal.cells, name), now: of(&digests, name) });
+        }
+    }
+    listed
+}
+
+fn justifications(seal: &Seal, under_sealed: &Trial, under_today: &Trial) -> Vec<Justification> {
+    let mut listed = Vec::new();
+    for value in &seal.values {
+        let record = &value.record;
+        for decision in value.decisions.iter().filter(|decision| decision.reason.is_some()) {
+            let row = |record: &Record| {
+                let of =
+                    |row: &&crate::render::report::Assumption| row.id == decision.id && row.subject == decision.subject;
+                record.assumptions.iter().find(of).and_then(|row| row.price.clone())
+            };
+            let price_in = |trial: &Trial| trial.of_label(&record.label).and_then(|now| row(&now.report.record));
+            let price = row(record);
+            let (price_sealed_data, price_today) = (price_in(under_sealed), price_in(under_today));
+            let lapses = |now: &Option<String>| lapsed(record, price.as_deref(), now.as_deref());
+            listed.push(Justification {
+                label: record.label.clone(),
+                id: decision.id.clone(),
+                subject: decision.subject.clone(),
+                reason: decision.reason.clone().unwrap_or_default(),
+                lapsed: lapses(&price_sealed_data) || lapses(&price_today),
+                price,
+                price_sealed_data,
+                price_today,
+            });
+        }
+    }
+    listed
+}
+
+/// Whether a price is beyond what was signed for: the price at signing plus the tolerance.
+pub(super) fn lapsed(sealed: &Record, signed: Option<&str>, now: Option<&str>) -> bool {
+    let number = |text: &str| text.parse::<f64>().ok().map(f64::abs);
+    let Some(now) = now.and_then(number) else { return false };
+    let tolerance = number(&sealed.tolerance).unwrap_or(0.0);
+    now > signed.and_then(number).unwrap_or(0.0) + tolerance
+}
+
+fn untested(seal: &Seal) -> Vec<String> {
+    let mut rows: Vec<String> = Vec::new();
+    for row in &seal.open {
+        let words = format!("{} {} ({})", row.status, row.id, row.subject);
+        if !rows.contains(&words) {
+            rows.push(words);
+        }
+    }
+    rows
+}
+
+fn not_compared(notebook: &NotebookFile) -> Vec<String> {
+    let mut list = vec!["texts between the cells, printed text and pictures".to_owned()];
+    let empty = notebook.code_cells().iter().filter(|cell| cell.source.trim().is_empty()).count();
+    if empty > 0 {
+        list.push(format!("{empty} empty code cells"));
+    }
+    list
+}
+
+/// A notebook without seal, against the results that stand in it.
+fn of_unsealed(file: &str, notebook: &NotebookFile, options: &AuditOptions) -> Result<NotebookAudit, Fault> {
+    let recorded: Vec<Record> =
+        notebook.recorded(MIME).into_iter().filter_map(|tree| Record::deserialize(tree).ok()).collect();
+    if recorded.is_empty() {
+        let said = "it has no seal and no recorded result, so nothing can be compared; seal it with `hessbook seal`";
+        return Ok(NotebookAudit {
+            status: AuditStatus::NothingToCompare,
+            not_compared: vec![said.to_owned()],
+            ..empty(file, Against::Nothing)
+        });
+    }
+    let runner = Runner { file, notebook, settings: BTreeMap::new(), stop: &options.stop };
+    let now = runner.run(&options.today)?;
+    let mut values = Vec::new();
+    for record in &recorded {
+        let outcome = match now.of_label(&record.label) {
+            None => Outcome {
+                verdict: if now.faults.is_empty() { Verdict::Missing } else { Verdict::CouldNotRun },
+                figure: None,
+                moved: None,
+                notes: Vec::new(),
+            },
+            Some(tried) => crate::notebook::comparison::against_record(record, tried),
+        };
+        values.push(ValueAudit {
+            label: record.label.clone(),
+            unit: record.unit.clone(),
+            sealed: Some(figure(record)),
+            under_sealed: outcome.clone(),
+            under_today: outcome,
+        });
+    }
+    for tried in &now.reports {
+        let record = &tried.report.record;
+        if !recorded.iter().any(|known| known.label == record.label) {
+            values.push(new_value(record, None));
+        }
+    }
+    let mut list = vec![
+        "it has no seal: causes of moves cannot be told, and nothing says what its cells and records were".to_owned(),
+    ];
+    list.extend(not_compared(notebook));
+    let faults = now.faults.iter();
+    let mut audit = NotebookAudit {
+        values,
+        not_compared: list,
+        faults: faults.map(|fault| AuditFault { under: "sealed data".to_owned(), fault: fault.clone() }).collect(),
+        ..empty(file, Against::RecordedOutputs)
+    };
+    audit.faults.iter_mut().for_each(|fault| fault.under = "today's data, since none are sealed".to_owned());
+    audit.status = status(&audit, options.strict_data);
+    Ok(audit)
+}

@@ -1,0 +1,126 @@
+//! An audit as text: what differs first and at length, what is the same counted.
+
+use std::fmt::Write as _;
+
+use crate::notebook::verdict::{Against, Move, NotebookAudit, Outcome, SealFacts, Signed, ValueAudit, Verdict};
+
+/// One notebook.
+pub fn notebook(audit: &NotebookAudit) -> String {
+    let mut text = format!("{}: {}\n", audit.file, audit.status.word());
+    match (&audit.seal, audit.against) {
+        (Some(seal), _) => line(&mut text, &seal_words(seal)),
+        (None, Against::RecordedOutputs) => line(&mut text, "not sealed: compared with the results recorded in it"),
+        (None, _) => {}
+    }
+    for row in &audit.untested {
+        line(&mut text, row);
+    }
+    for difference in &audit.environment {
+        let short = |digest: &str| if digest.len() == 64 { digest[..12].to_owned() } else { digest.to_owned() };
+        line(
+            &mut text,
+            &format!("{}: {} then, {} now", difference.what, short(&difference.sealed), short(&difference.now)),
+        );
+    }
+    for fault in &audit.faults {
+        line(&mut text, &format!("under {}: {}: {}", fault.under, fault.fault.cell, fault.fault.message));
+        line(&mut text, &format!("  try: {}", fault.fault.hint));
+    }
+    if !audit.values.is_empty() {
+        if audit.against == Against::Seal {
+            line(&mut text, &counts("under the sealed data", audit.values.iter().map(|one| one.under_sealed.verdict)));
+            line(&mut text, &counts("under today's data", audit.values.iter().map(|one| one.under_today.verdict)));
+        } else {
+            line(&mut text, &counts("compared", audit.values.iter().map(|one| one.under_today.verdict)));
+        }
+    }
+    for value in &audit.values {
+        text.push_str(&changed(value, audit.against));
+    }
+    for one in audit.justifications.iter().filter(|one| one.lapsed) {
+        line(&mut text, &format!("lapsed: {} of {} was justified by \"{}\"", one.id, one.label, one.reason));
+    }
+    for what in &audit.not_compared {
+        line(&mut text, &format!("not compared: {what}"));
+    }
+    text
+}
+
+fn line(text: &mut String, words: &str) {
+    let _ = writeln!(text, "  {words}"); // Writing to a text cannot fail.
+}
+
+fn seal_words(seal: &SealFacts) -> String {
+    let author = seal.author.as_ref().map_or_else(String::new, |author| format!(" by {author}"));
+    let draft = if seal.draft { ", as a draft" } else { "" };
+    let whole = if seal.whole { "" } else { "; THE SEAL WAS ALTERED: its content is not what its digest says" };
+    let signed = match &seal.signed {
+        Signed::Not => "; not signed".to_owned(),
+        Signed::Valid { key, trusted: Some(name) } => format!("; signed with the trusted key {name} ({key})"),
+        Signed::Valid { key, trusted: None } => format!("; signed with the key {key}, which is not among the trusted"),
+        Signed::Invalid { key, why } => format!("; THE SIGNATURE with the key {key} DOES NOT HOLD: {why}"),
+    };
+    format!("sealed {}{author}{draft}{signed}{whole}", seal.sealed)
+}
+
+/// `under the sealed data: 9 identical, 1 moved`
+fn counts(under: &str, verdicts: impl Iterator<Item = Verdict>) -> String {
+    let verdicts: Vec<Verdict> = verdicts.collect();
+    let count = |verdict: Verdict| verdicts.iter().filter(|one| **one == verdict).count();
+    let parts: Vec<String> = (Verdict::ALL.into_iter())
+        .filter(|verdict| count(*verdict) > 0)
+        .map(|verdict| format!("{} {}", count(verdict), verdict.word()))
+        .collect();
+    format!("{under}: {}", parts.join(", "))
+}
+
+/// A value that is not identical under both data; empty for one that is.
+fn changed(value: &ValueAudit, against: Against) -> String {
+    let mut text = String::new();
+    let same = value.under_sealed == value.under_today;
+    let outcomes: &[(&str, &Outcome)] = match (against, same) {
+        (Against::Seal, true) => &[("under both data", &value.under_sealed)],
+        (Against::Seal, false) => {
+            &[("under the sealed data", &value.under_sealed), ("under today's data", &value.under_today)]
+        }
+        _ => &[("now", &value.under_today)],
+    };
+    for (under, outcome) in outcomes.iter().filter(|(_, outcome)| outcome.verdict != Verdict::Identical) {
+        if text.is_empty() {
+            line(&mut text, &value.label);
+            if let Some(sealed) = &value.sealed {
+                line(&mut text, &format!("    was   {}", sealed.shown));
+            }
+        }
+        line(&mut text, &format!("  {under}: {}", outcome.verdict.word()));
+        if let Some(figure) = outcome.figure.as_ref().filter(|_| outcome.verdict != Verdict::Missing) {
+            line(&mut text, &format!("    is    {}", figure.shown));
+        }
+        if let Some(moved) = &outcome.moved {
+            text.push_str(&move_lines(moved));
+        }
+        for note in &outcome.notes {
+            line(&mut text, &format!("    note  {note}"));
+        }
+    }
+    text
+}
+
+fn move_lines(moved: &Move) -> String {
+    let mut text = String::new();
+    line(&mut text, &format!("    move  {}", moved.shown));
+    for cause in &moved.causes {
+        let share = cause.shown.clone().unwrap_or_else(|| "?".to_owned());
+        line(&mut text, &format!("          {share}  {}: {}", cause.kind.word(), cause.what));
+    }
+    if !moved.causes.is_empty() && moved.remainder != "0" {
+        line(&mut text, &format!("          {}  remainder, not told apart", moved.remainder_shown));
+    }
+    if let Some(u) = &moved.u_of_changed {
+        line(&mut text, &format!("          the revised inputs stated u = {u}"));
+    }
+    if let Some(parts_at) = &moved.parts_at {
+        line(&mut text, &format!("    at    {parts_at}"));
+    }
+    text
+}
