@@ -22,7 +22,7 @@ impl Host for Silent {
 fn cells(folder: &Path, cells: &[&str]) -> Result<String, Fault> {
     on_big_stack(|| {
         let mut session = Session::new(Arc::default());
-        session.set_folder(folder);
+        session.set_folder(folder.to_path_buf());
         let mut shown = String::new();
         for (nth, cell) in cells.iter().enumerate() {
             let outcome = session.run_cell(&format!("cell-{}", nth + 1), cell, &mut Silent);
@@ -91,7 +91,7 @@ fn a_failed_cell_writes_nothing_and_a_cell_reads_what_it_wrote() {
 }
 
 #[test]
-fn files_lie_in_the_folder_of_the_notebook() {
+fn files_are_written_in_the_folder_of_the_notebook() {
     let folder = tempfile::tempdir().unwrap();
     let inside = folder.path().join("inside");
     std::fs::create_dir(&inside).unwrap();
@@ -99,12 +99,11 @@ fn files_lie_in_the_folder_of_the_notebook() {
     std::fs::write(inside.join("binary.csv"), [0xff, 0xfe, 0x00]).unwrap();
     let absolute = folder.path().join("out.csv").display().to_string();
     for name in ["../out.csv", &absolute, "", "a/../../out.csv"] {
-        assert_eq!(code(&inside, &format!("read_csv(\"{name}\")")), "file-outside-folder", "{name}");
         let writing = format!("{SHIFT} r.enthalpy(T).write_csv(\"{name}\")");
         assert_eq!(code(&inside, &writing), "file-outside-folder", "{name}");
     }
     assert_eq!(code(&inside, "read_csv(\"none.csv\")"), "file-missing");
-    assert_eq!(code(&inside, "read_csv(\"binary.csv\")"), "file-unreadable");
+    assert_eq!(code(&inside, "read_csv(\"binary.csv\")"), "file-not-text");
     let writing = |name: &str| code(&inside, &format!("{SHIFT} r.enthalpy(T).write_csv(\"{name}\")"));
     assert_eq!(writing("notes.txt"), "file-extension");
     assert_eq!(writing("nowhere/x.csv"), "file-unwritable");
@@ -112,7 +111,6 @@ fn files_lie_in_the_folder_of_the_notebook() {
     {
         std::os::unix::fs::symlink(folder.path().join("out.csv"), inside.join("link.csv")).unwrap();
         std::os::unix::fs::symlink(folder.path(), inside.join("up")).unwrap();
-        assert_eq!(code(&inside, "read_csv(\"link.csv\")"), "file-outside-folder");
         assert_eq!(writing("up/x.csv"), "file-outside-folder");
         // A link in the place of the file is replaced, and what it leads to stays as it is.
         cells(&inside, &[SHIFT, "r.enthalpy(T).write_csv(\"link.csv\");"]).unwrap();

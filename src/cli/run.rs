@@ -1,7 +1,7 @@
 //! `hessbook run`: a notebook or script from the command line.
 
 use std::io::IsTerminal;
-use std::path::{Path, PathBuf};
+use std::path::PathBuf;
 use std::process::ExitCode;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
@@ -77,7 +77,6 @@ fn executed(args: &Run, stop: Arc<AtomicBool>) -> Result<RunStatus, Fault> {
     let settings = settings(&args.set)?;
     let mut session = Session::new(stop);
     session.set_parameters(settings);
-    session.set_folder(args.file.parent().unwrap_or(Path::new("")));
     let name = args.file.display().to_string();
     let mut progress = Progress { format: args.format, terminal: std::io::stderr().is_terminal() };
     let record = run(&name, &mut source, &mut session, &mut progress);

@@ -9,6 +9,7 @@ pub mod comparison;
 pub mod csv;
 pub mod curve;
 pub mod cycle;
+pub mod dataset;
 pub mod derivation;
 pub mod gap;
 pub mod headline;

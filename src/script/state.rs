@@ -7,20 +7,23 @@
 use std::cell::{Cell, OnceCell, Ref, RefCell, RefMut};
 use std::collections::{BTreeMap, BTreeSet};
 use std::fmt;
+use std::path::PathBuf;
 use std::rc::Rc;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
 
 use rhai::{NativeCallContext, Position};
 
+use crate::data::catalog::Catalog;
+use crate::data::own::Own;
 use crate::fault::{Explain, Fault, Place};
 use crate::model::card::References;
 use crate::model::review::Dealing;
 use crate::quantity::Quantity;
 use crate::render::Bundle;
-use crate::script::files::Folder;
 use crate::script::host::{Host, HostSlot};
 use crate::script::prepare::Shifts;
+use crate::script::tables::Writes;
 use crate::script::words::Library;
 use crate::script::{engine, memory};
 
@@ -38,6 +41,21 @@ pub struct State {
     pub dealings: Vec<Dealing>,
     /// Declared inputs, in order.
     pub parameters: Vec<Parameter>,
+    /// Datasets read beside the notebook, in the order in which they lie over each other.
+    pub loaded: Vec<Loaded>,
+    /// What formulas look up once datasets were loaded: shared, and never changed inside.
+    overlay: Option<Rc<References>>,
+}
+
+/// A dataset read beside the notebook.
+#[derive(Clone, Debug)]
+pub struct Loaded {
+    pub cell: Rc<str>,
+    /// As the cell named it.
+    pub file: String,
+    pub own: Rc<Own>,
+    /// The file as it was read, for a seal.
+    pub bytes: Rc<[u8]>,
 }
 
 /// A reported result.
@@ -66,6 +84,11 @@ impl State {
         self.reports.retain(|one| &*one.cell != cell);
         self.parameters.retain(|one| &*one.cell != cell);
         self.dealings.retain(|one| one.cell != cell);
+        let before = self.loaded.len();
+        self.loaded.retain(|one| &*one.cell != cell);
+        if self.loaded.len() != before {
+            self.overlay = None; // Laid anew by `Shared::enter`.
+        }
     }
 
     /// The next number, from 1.
@@ -121,10 +144,11 @@ impl Explain for Halt {
 pub struct Shared {
     state: Rc<RefCell<State>>,
     pub host: HostSlot,
-    /// Where files are read and written.
-    pub folder: Folder,
+    /// What the running cell will have written.
+    pub writes: Writes,
     stop: Arc<AtomicBool>,
     references: Rc<References>,
+    folder: Rc<RefCell<PathBuf>>,
     /// Values of parameters that were set from outside, by name.
     settings: Rc<RefCell<BTreeMap<String, String>>>,
     shifts: Rc<RefCell<Shifts>>,
@@ -146,9 +170,10 @@ impl Shared {
         Shared {
             state: Rc::default(),
             host: HostSlot::default(),
-            folder: Folder::default(),
+            writes: Writes::default(),
             stop,
             references: Rc::new(references),
+            folder: Rc::default(),
             settings: Rc::default(),
             shifts: Rc::default(),
             source: Rc::new(RefCell::new("".into())),
@@ -161,8 +186,44 @@ impl Shared {
     }
 
     /// What formulas look up.
-    pub fn references(&self) -> &References {
-        &self.references
+    pub fn references(&self) -> Rc<References> {
+        self.state.borrow().overlay.clone().unwrap_or_else(|| Rc::clone(&self.references))
+    }
+
+    /// The state as a cell finds it.
+    pub fn enter(&self, cell: &str) {
+        self.state_mut().enter(cell);
+        let loaded = self.state().loaded.clone();
+        if loaded.is_empty() || self.state().overlay.is_some() {
+            return;
+        }
+        let mut catalog: Option<Catalog> = None;
+        for one in &loaded {
+            let base = catalog.as_ref().unwrap_or_else(|| self.references.catalog());
+            // It was laid over a larger catalogue before, which held all that this one holds.
+            if let Ok((next, _)) = base.overlaid(&one.own) {
+                catalog = Some(next);
+            }
+        }
+        let references = catalog.map(|catalog| References::of(Arc::new(catalog), self.references.constants));
+        self.state_mut().overlay = references.map(Rc::new);
+    }
+
+    /// Lays a dataset over what formulas look up; `catalog` is what that gives.
+    pub fn lay_over(&self, loaded: Loaded, catalog: Catalog) {
+        let references = References::of(Arc::new(catalog), self.references.constants);
+        let mut state = self.state_mut();
+        state.loaded.push(loaded);
+        state.overlay = Some(Rc::new(references));
+    }
+
+    /// The folder of the notebook, from which the names of files count.
+    pub fn folder(&self) -> PathBuf {
+        self.folder.borrow().clone()
+    }
+
+    pub fn set_folder(&self, folder: PathBuf) {
+        self.folder.replace(folder);
     }
 
     /// What a parameter was set to from outside.
@@ -246,7 +307,7 @@ impl Shared {
     /// Counts memory from here: the start of a cell, which nobody has told to end yet.
     pub fn start_cell(&self) {
         self.halt.set(None);
-        self.folder.start_cell();
+        self.writes.forget();
         self.ceiling.set(memory::held().saturating_add_unsigned(self.limit.get()));
     }
 

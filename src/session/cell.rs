@@ -70,7 +70,7 @@ impl Session {
             known.entry(name).or_default().insert(count);
         }
         self.shared.set_defined(known);
-        self.shared.state_mut().enter(cell);
+        self.shared.enter(cell);
         self.shared.start_cell();
 
         let engine = &self.engine;
@@ -99,7 +99,7 @@ impl Session {
         };
         let result = match result {
             Ok(shown) if keep == Keep::Everything => {
-                let written = self.shared.folder.commit().map(|()| shown);
+                let written = self.shared.writes.commit().map(|()| shown);
                 written.map_err(|error| Fault::from(error).at(Some(Place { cell: cell.into(), line: 0, column: 0 })))
             }
             other => other,

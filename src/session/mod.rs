@@ -8,7 +8,8 @@ pub mod closures;
 pub mod outcome;
 
 use std::collections::{BTreeMap, BTreeSet};
-use std::path::Path;
+use std::path::PathBuf;
+use std::rc::Rc;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
 
@@ -20,7 +21,7 @@ use crate::model::review::Dealing;
 use crate::render::Bundle;
 use crate::render::report::Report;
 use crate::script::literals::Literals;
-use crate::script::state::{Parameter, Reported, Shared};
+use crate::script::state::{Loaded, Parameter, Reported, Shared};
 use crate::script::token::{Ending, tokens};
 use crate::script::{engine, verbs, words};
 use crate::units::constants;
@@ -81,11 +82,6 @@ impl Session {
         self.shared.set_memory_limit(bytes);
     }
 
-    /// Sets the folder in which cells read and write files: that of the notebook. Without it the current one.
-    pub fn set_folder(&mut self, folder: &Path) {
-        self.shared.folder.set(folder);
-    }
-
     /// Runs one cell. `cell` names it in places and faults: `cell-3`, or the file name of a script. A cell that fails
     /// leaves the session as it was; what it wrote and showed before has reached the host.
     pub fn run_cell(&mut self, cell: &str, code: &str, host: &mut dyn Host) -> Outcome {
@@ -106,6 +102,16 @@ impl Session {
         }
         let shown = self.run("expression", code, &mut Silent, cell::Keep::Nothing)?;
         Ok(shown.unwrap_or_else(|| Bundle::text("")))
+    }
+
+    /// Sets the folder in which a notebook's files are looked for; the process's own at first.
+    pub fn set_folder(&mut self, folder: PathBuf) {
+        self.shared.set_folder(folder);
+    }
+
+    /// Datasets that cells have loaded, in the order in which they lie over each other.
+    pub fn loaded(&self) -> Vec<Loaded> {
+        self.shared.state().loaded.clone()
     }
 
     /// Sets declared parameters from outside, before the first cell runs.
@@ -146,7 +152,7 @@ impl Session {
     }
 
     /// What formulas look up.
-    pub fn references(&self) -> &References {
+    pub fn references(&self) -> Rc<References> {
         self.shared.references()
     }
 
