@@ -65,7 +65,7 @@ pub enum TableError {
     #[error("{file}, line {line}: column {nth}, `{head}`, has no unit")]
     UnitMissing { file: String, line: u64, nth: usize, head: String },
     #[error("{file}, line {line}: column {nth}, `{head}`: {why}")]
-    Unit { file: String, line: u64, nth: usize, head: String, why: UnitError },
+    Unit { file: String, line: u64, nth: usize, head: String, why: Box<UnitError> },
     #[error("{file}, line {line}: two columns are called `{name}`")]
     Twice { file: String, line: u64, name: String },
     #[error("{file}, line {line}: `u({name})` is the uncertainty of a column that is not there")]
@@ -305,8 +305,13 @@ fn heads_of(file: &str, line: u64, record: &csv::StringRecord) -> Result<Vec<Hea
         let Some(unit) = unit.filter(|unit| !unit.is_empty() && !name.is_empty()) else {
             return Err(TableError::UnitMissing { file: file(), line, nth, head: head() });
         };
-        let unit =
-            unit_parse::unit(unit).map_err(|why| TableError::Unit { file: file(), line, nth, head: head(), why })?;
+        let unit = unit_parse::unit(unit).map_err(|why| TableError::Unit {
+            file: file(),
+            line,
+            nth,
+            head: head(),
+            why: Box::new(why),
+        })?;
         if heads.iter().any(|known| known.name == name) {
             return Err(TableError::Twice { file: file(), line, name: name.to_owned() });
         }

@@ -4,6 +4,7 @@
 //! surprise: how the rows are correlated is lost in a file, and the file says so.
 
 use std::rc::Rc;
+use std::sync::Arc;
 
 use crate::fault::Fault;
 use crate::model::card::Cx;
@@ -18,6 +19,9 @@ use crate::units::Unit;
 /// Rows between two looks whether the work must end.
 const PATIENCE: usize = 1024;
 
+/// Of each row, in SI units, where it is stated.
+type Uncertainties = Rc<[Option<f64>]>;
+
 /// Curves over one grid, each with the name of its column.
 ///
 /// # Errors
@@ -27,7 +31,7 @@ pub fn curves(cx: &Cx, named: &[(String, Rc<Curve>)]) -> Result<String, Fault> {
     let grid = first.grid();
     let mut heads = vec![divided("T", &grid.unit().text)];
     let (mut remarks, mut sources): (Vec<String>, Vec<String>) = Default::default();
-    let mut columns: Vec<(&Curve, std::sync::Arc<Unit>, Option<Rc<[Option<f64>]>>)> = Vec::new();
+    let mut columns: Vec<(&Curve, Arc<Unit>, Option<Uncertainties>)> = Vec::new();
     for (name, curve) in named {
         let unit = curve.unit();
         heads.push(divided(name, &unit.text));
