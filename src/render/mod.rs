@@ -5,7 +5,9 @@
 
 pub mod balance;
 pub mod budget;
+pub mod cells;
 pub mod comparison;
+pub mod csv;
 pub mod curve;
 pub mod cycle;
 pub mod dataset;
@@ -20,6 +22,7 @@ pub mod plot;
 pub mod register;
 pub mod report;
 pub mod shortcut;
+pub mod table;
 pub mod text;
 
 use std::collections::BTreeMap;
