@@ -24,6 +24,7 @@ pub use formation::formation_dataset;
 pub use heat_capacity::{aqueous_heat_capacity, constant_heat_capacity};
 pub use independence::worst_correlation;
 pub use phase::stable_phase;
+pub(in crate::model) use phase::{RESOLUTION_CONDENSED, RESOLUTION_GAS};
 pub use vaporisation::vapour_of_records;
 pub use volume::{condensed_volume, ideal_gas};
 
