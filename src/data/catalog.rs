@@ -15,11 +15,11 @@ use crate::record::node::LeafKey;
 use crate::source::{Embedded, STDLIB};
 use crate::units::dimension::Entity;
 
-use super::critical::CriticalTemperature;
 use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::{self, Coefficients, Formation};
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
+use super::pressure::Constants;
 use super::substance::Substance;
 use super::tables::Tables;
 use super::transition::Transition;
@@ -53,7 +53,7 @@ struct Contents {
 struct Gathered {
     function: Option<Arc<Function>>,
     formations: Vec<Arc<Formation>>,
-    critical: Option<Arc<CriticalTemperature>>,
+    pressure: Constants,
 }
 
 impl Catalog {
@@ -64,7 +64,7 @@ impl Catalog {
 
     /// The tables among some files; a dataset whose file is missing is simply not there.
     pub fn from_files(files: &[Embedded<'_>]) -> Result<Catalog, TableFault> {
-        let Tables { datasets, functions, mut formations, coefficients, transitions, critical, names } =
+        let Tables { datasets, functions, mut formations, coefficients, transitions, pressure, names } =
             Tables::read(files)?;
         let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
         for group in coefficients {
@@ -79,10 +79,25 @@ impl Catalog {
             let entry = gathered.entry(id(&formation.id)).or_default();
             entry.formations.push(Arc::new(formation));
         }
-        for critical in critical {
-            // A figure for a substance without other records has nothing to stand beside.
+        // A figure for a substance without other records has nothing to stand beside.
+        for critical in pressure.critical {
             if let Some(entry) = gathered.get_mut(&id(&critical.id)) {
-                entry.critical = Some(Arc::new(critical));
+                entry.pressure.critical = Some(Arc::new(critical));
+            }
+        }
+        for virial in pressure.virial {
+            if let Some(entry) = gathered.get_mut(&id(&virial.id)) {
+                entry.pressure.virial = Some(Arc::new(virial));
+            }
+        }
+        for volume in pressure.volume {
+            if let Some(entry) = gathered.get_mut(&id(&volume.id)) {
+                entry.pressure.volume = Some(Arc::new(volume));
+            }
+        }
+        for vapour in pressure.vapour {
+            if let Some(entry) = gathered.get_mut(&id(&vapour.id)) {
+                entry.pressure.vapour = Some(Arc::new(vapour));
             }
         }
         let listed: BTreeMap<&str, &Arc<str>> =
@@ -287,6 +302,6 @@ fn substance(id: &Arc<str>, found: Gathered, listed: &BTreeMap<&str, &Arc<str>>)
         cas: cas.or_else(|| formations().find_map(|f| f.cas.clone())),
         formations: found.formations,
         function: found.function,
-        critical_temperature: found.critical,
+        pressure: found.pressure,
     })
 }

@@ -11,6 +11,7 @@ pub mod function;
 pub mod lookup;
 mod names;
 pub mod near;
+pub mod pressure;
 pub mod records;
 pub mod substance;
 mod tables;

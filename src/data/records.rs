@@ -16,7 +16,7 @@ use crate::source::{Embedded, STDLIB};
 
 use super::catalog::Catalog;
 use super::dataset::TableFault;
-use super::{critical, formation, function, names, tables, transition};
+use super::{formation, function, names, pressure, tables, transition};
 
 /// What of a table's head decides figures; the rest is for people who open the file.
 const HEAD: [&str; 7] =
@@ -24,8 +24,17 @@ const HEAD: [&str; 7] =
 const PRESSURE: &str = "p_standard_pa";
 
 /// The lists of a table that hold records, and the member that tells the records of a list apart.
-const LISTS: [(&str, &str); 5] =
-    [("records", "id"), ("same", "id"), ("entities", "entity"), ("forms", "name"), (GROUPS, "records")];
+const LISTS: [(&str, &str); 9] = [
+    ("records", "id"),
+    ("same", "id"),
+    ("entities", "entity"),
+    ("forms", "name"),
+    (GROUPS, "records"),
+    (pressure::LISTS[0], "id"),
+    (pressure::LISTS[1], "id"),
+    (pressure::LISTS[2], "id"),
+    (pressure::LISTS[3], "id"),
+];
 /// Correlation coefficients of several records: a record of their own.
 const GROUPS: &str = "dhf_298_correlations";
 
@@ -319,12 +328,17 @@ impl RecordTable {
                 let _ = write!(text, "{}:{value},", json!(name));
             }
         }
-        let lists = if *self.schema == *names::SCHEMA { &LISTS[1..4] } else { &LISTS[..1] };
+        // The lists that every table of its schema has, empty or not.
+        let lists = match &*self.schema {
+            names::SCHEMA => &LISTS[1..4],
+            pressure::SCHEMA => &LISTS[..0],
+            _ => &LISTS[..1],
+        };
         let mut parts = Vec::new();
         for (list, _) in lists.iter().chain(&LISTS[4..]) {
             let records: Vec<&str> =
                 self.records.iter().filter(|record| *record.list == **list).map(|record| &*record.content).collect();
-            if *list != GROUPS || !records.is_empty() {
+            if lists.iter().any(|(whole, _)| whole == list) || !records.is_empty() {
                 parts.push(format!("{}:[{}]", json!(list), records.join(",")));
             }
         }
@@ -335,16 +349,20 @@ impl RecordTable {
 }
 
 fn is_known(schema: &str) -> bool {
-    [formation::SCHEMA, function::SCHEMA, transition::SCHEMA, critical::SCHEMA, names::SCHEMA].contains(&schema)
+    [formation::SCHEMA, function::SCHEMA, transition::SCHEMA, pressure::SCHEMA, names::SCHEMA].contains(&schema)
 }
 
 impl std::fmt::Display for RecordKey {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         let what = match &*self.schema {
+            pressure::SCHEMA if *self.list == *pressure::LISTS[0] => "critical constants",
+            pressure::SCHEMA if *self.list == *pressure::LISTS[1] => "second virial coefficient",
+            pressure::SCHEMA if *self.list == *pressure::LISTS[2] => "molar volume",
+            pressure::SCHEMA if *self.list == *pressure::LISTS[3] => "vapour pressure",
             formation::SCHEMA => "formation properties",
             function::SCHEMA => "heat capacity function",
             transition::SCHEMA => "transition",
-            critical::SCHEMA => "critical temperature",
+            pressure::SCHEMA => "constants for pressure",
             _ => "names",
         };
         match (&*self.id, &*self.dataset) {
@@ -378,7 +396,9 @@ mod tests {
             "formation properties of H2O(l) in codata-1989",
             "formation properties of H2O(g) in atct-1.112",
             "heat capacity function of H2O(cr,ice-ih) in nasa-tp-2002-211556",
-            "critical temperature of H2O(g)",
+            "critical constants of H2O(g)",
+            "second virial coefficient of H2O(g)",
+            "molar volume of H2O(l)",
             "names of H2O",
         ] {
             assert!(ids.contains(expected), "{expected} is missing of {ids:#?}");

@@ -5,13 +5,12 @@
 
 use crate::source::Embedded;
 
-use super::critical::CriticalTemperature;
 use super::dataset::{Dataset, TableFault};
 use super::formation::{Coefficients, Formation};
 use super::function::Function;
 use super::names::Names;
 use super::transition::Transition;
-use super::{critical, formation, function, names, transition};
+use super::{formation, function, names, pressure, transition};
 
 #[derive(Debug, Default)]
 pub(super) struct Tables {
@@ -21,7 +20,7 @@ pub(super) struct Tables {
     pub formations: Vec<Formation>,
     pub coefficients: Vec<Coefficients>,
     pub transitions: Vec<Transition>,
-    pub critical: Vec<CriticalTemperature>,
+    pub pressure: pressure::Read,
     pub names: Names,
 }
 
@@ -35,7 +34,7 @@ impl Tables {
                     formation::read(file, &mut tables.datasets, &mut tables.formations, &mut tables.coefficients)?;
                 }
                 Some(transition::SCHEMA) => transition::read(file, &mut tables.datasets, &mut tables.transitions)?,
-                Some(critical::SCHEMA) => critical::read(file, &mut tables.critical)?,
+                Some(pressure::SCHEMA) => pressure::read(file, &mut tables.pressure)?,
                 Some(names::SCHEMA) => names::read(file, &mut tables.names)?,
                 _ => {}
             }

@@ -3,6 +3,7 @@
 //! [`CARDS`] is the one list of what the program can compute. Script binding, help, catalogue and checks read it.
 
 pub mod answer;
+pub mod argument;
 pub mod basis;
 pub mod budget;
 pub mod card;
@@ -20,12 +21,14 @@ pub mod first_order;
 pub mod function;
 pub mod gap;
 pub mod gather;
+pub mod given;
 pub mod grid;
 pub mod heat_capacity;
 pub mod linearity;
 pub mod mass;
 pub mod monte_carlo;
 pub mod path;
+pub mod pressure;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
@@ -41,6 +44,8 @@ pub mod tabulated;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
+pub mod vapour;
+pub mod virial;
 
 use card::Card;
 
@@ -64,6 +69,9 @@ pub const CARDS: &[&Card] = &[
     &property_card::SUBSTANCE_HELMHOLTZ_ENERGY,
     &property_card::SUBSTANCE_ENTROPY,
     &property_card::SUBSTANCE_HEAT_CAPACITY,
+    &vapour::VAPOUR_PRESSURE,
+    &vapour::BOILING_POINT,
+    &vapour::VAPORISATION_ENTHALPY,
     &substance::ENTHALPY_INCREMENT,
     &substance::REACTION_INCREMENT,
     &remedy::CORRECTED,

@@ -6,8 +6,8 @@ mod alternatives;
 mod formation;
 mod heat_capacity;
 mod phase;
-mod vaporisation;
-mod volume;
+mod pressure;
+mod saturation;
 
 pub use alternatives::{
     with_atmosphere, with_constant_heat_capacity, with_enthalpy, with_internal_energy, with_mean_heat_capacity,
@@ -16,8 +16,10 @@ pub use alternatives::{
 pub use formation::formation_dataset;
 pub use heat_capacity::{aqueous_heat_capacity, constant_heat_capacity};
 pub use phase::stable_phase;
-pub use vaporisation::vapour_of_records;
-pub use volume::{condensed_volume, ideal_gas};
+pub use pressure::{
+    condensed_volume, constant_expansivity, ideal_gas, pressure_neglected, second_virial, standard_pressure, unmixed,
+};
+pub use saturation::{saturated_leg, saturated_vapour, saturated_virial};
 
 use std::rc::Rc;
 
