@@ -366,7 +366,9 @@ mod tests {
     const R: f64 = 8.314_462_618_153_24;
     const ALL: [Property; 6] = [Property::G, Property::H, Property::S, Property::U, Property::A, Property::Cp];
 
-    fn matters() -> Vec<(&'static str, Box<dyn Fn(f64) -> Matter>)> {
+    type AtT = Box<dyn Fn(f64) -> Matter>;
+
+    fn matters() -> Vec<(&'static str, AtT)> {
         let data = Catalog::shipped();
         let virial = |id: &str| {
             let constants = data.find(id).unwrap().pressure.clone();

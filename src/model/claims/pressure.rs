@@ -36,7 +36,7 @@ fn at_pressures(cx: &Cx, call: &Call, asked: &Asked) -> Option<Vec<AtPressure>> 
 }
 
 /// Terms of one sort, each with its place among all.
-fn of<'a>(terms: &'a Terms, suits: impl Fn(&Species) -> bool) -> Vec<(usize, &'a Arc<Substance>, f64)> {
+fn of(terms: &Terms, suits: impl Fn(&Species) -> bool) -> Vec<(usize, &Arc<Substance>, f64)> {
     let all = terms.terms().iter().enumerate();
     all.filter(|(_, term)| suits(&term.substance.species)).map(|(at, term)| (at, &term.substance, term.nu)).collect()
 }
