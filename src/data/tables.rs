@@ -8,9 +8,10 @@ use crate::source::Embedded;
 use super::dataset::{Dataset, TableFault};
 use super::formation::{Coefficients, Formation};
 use super::function::Function;
+use super::molecule::Constants;
 use super::names::Names;
 use super::transition::Transition;
-use super::{formation, function, names, pressure, transition};
+use super::{formation, function, molecule, names, pressure, transition};
 
 #[derive(Debug, Default)]
 pub(super) struct Tables {
@@ -21,6 +22,7 @@ pub(super) struct Tables {
     pub coefficients: Vec<Coefficients>,
     pub transitions: Vec<Transition>,
     pub pressure: pressure::Read,
+    pub molecules: Vec<Constants>,
     pub names: Names,
 }
 
@@ -35,6 +37,7 @@ impl Tables {
                 }
                 Some(transition::SCHEMA) => transition::read(file, &mut tables.datasets, &mut tables.transitions)?,
                 Some(pressure::SCHEMA) => pressure::read(file, &mut tables.pressure)?,
+                Some(molecule::SCHEMA) => molecule::read(file, &mut tables.molecules)?,
                 Some(names::SCHEMA) => names::read(file, &mut tables.names)?,
                 _ => {}
             }

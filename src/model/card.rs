@@ -18,6 +18,7 @@ use crate::model::argument::{ArgumentError, checked};
 use crate::model::caution::Caution;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
+use crate::model::molecule::Molecule;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::model::terms::Terms;
@@ -38,6 +39,7 @@ pub enum Value {
     Options(Rc<BTreeMap<String, Value>>),
     Reaction(Rc<Reaction>),
     Substance(Rc<PureSubstance>),
+    Molecule(Rc<Molecule>),
     /// Temperatures at which a formula is asked in one call.
     Grid(Rc<Grid>),
     Curve(Rc<Curve>),
@@ -60,6 +62,7 @@ impl Value {
             Value::Options(_) => "a map of options",
             Value::Reaction(_) => "a reaction",
             Value::Substance(_) => "a substance",
+            Value::Molecule(_) => "a molecule",
             Value::Grid(_) => "a grid of temperatures",
             Value::Curve(_) => "a curve",
             Value::Answer(answer) => answer.sort(),
@@ -76,6 +79,7 @@ pub enum On {
     Quantity,
     Reaction,
     Substance,
+    Molecule,
     Curve,
 }
 
@@ -255,6 +259,7 @@ impl Call {
         match self.args.first() {
             Some(Value::Reaction(reaction)) => Some(reaction),
             Some(Value::Substance(substance)) => Some(substance),
+            Some(Value::Molecule(molecule)) => Some(molecule.terms()),
             _ => None,
         }
     }
@@ -354,6 +359,7 @@ impl Step for Call {
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
                 Value::Substance(substance) => words.push(substance.text().to_owned()),
                 Value::Options(options) => words.extend(in_words(options)),
+                Value::Molecule(molecule) => words.push(molecule.text().to_owned()),
                 Value::Grid(grid) => words.push(grid.words()),
                 Value::Curve(curve) => words.push(curve.words()),
                 Value::List(list) => words.push(format!("{} values", list.len())),
@@ -421,6 +427,7 @@ impl Card {
             On::Quantity => "value.",
             On::Reaction => "reaction.",
             On::Substance => "substance.",
+            On::Molecule => "molecule.",
             On::Curve => "curve.",
         };
         format!("{receiver}{}({})", self.name, args.join(", "))

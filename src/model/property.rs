@@ -301,7 +301,7 @@ pub fn value(
     }
     inputs.extend(evaluated.nodes);
     if evaluated.by_r != 0.0 {
-        inputs.push((r, evaluated.by_r));
+        inputs.push((Rc::clone(r.node()), evaluated.by_r));
     }
     inputs.push((as_argument(t), evaluated.slope));
     let step = Rc::clone(call);
@@ -356,12 +356,13 @@ fn leaf(si: f64, input: &Input, property: Property) -> Result<Rc<Node>, Fault> {
 }
 
 /// R as an input, so that a change of constant set can be traced.
-pub(super) fn gas_constant(constants: &ConstantSet) -> Rc<Node> {
+pub(super) fn gas_constant(constants: &ConstantSet) -> Quantity {
     let r = &constants.molar_gas;
     let dim = Dimension::whole([2, 1, -2, 0, -1, 0]).over(&Dimension::amount(Entity::OPEN));
     let key = LeafKey::Constant { year: constants.year, name: r.name };
     let input = Input { u: Some(r.u), citation: Some(r.citation()), ..Input::of(key) };
-    Rc::new(Node::new(r.value, dim, Kind::PLAIN, SmallVec::new(), Origin::Input(Box::new(input)), None))
+    let origin = Origin::Input(Box::new(input));
+    Quantity::of_node(Rc::new(Node::new(r.value, dim, Kind::PLAIN, SmallVec::new(), origin, None)))
 }
 
 /// Whether a property at this temperature is the tabulated one, so that no correction is made.

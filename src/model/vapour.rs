@@ -380,7 +380,7 @@ pub fn vaporisation(cx: &Cx, call: &Rc<Call>, ideal: bool) -> Result<Quantity, F
         (leaf(&made.substance, &made.record, t_k, p, false)?, t_k * p1 * dv_p),
         (leaf(&made.substance, &made.record, t_k, p1, true)?, t_k * dv),
         (property::as_argument(t), by_t),
-        (property::gas_constant(cx.constants()), t_k * p1 * t_k / p),
+        (Rc::clone(property::gas_constant(cx.constants()).node()), t_k * p1 * t_k / p),
     ];
     if let Some(b) = made.gas.as_ref().and_then(|at| at.constants[0].clone()) {
         inputs.push((b, t_k * p1));
