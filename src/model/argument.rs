@@ -22,6 +22,8 @@ pub enum ArgumentError {
     Count { function: &'static str, given: usize, least: usize, most: usize, usage: String },
     #[error("`{function}` knows no option `{option}`")]
     Option { function: &'static str, option: String, known: String },
+    #[error("`{function}` was not given `{option}`")]
+    OptionMissing { function: &'static str, option: &'static str, doc: &'static str },
     #[error("`{word}` is no choice for `{argument}` of `{function}`")]
     Word { function: &'static str, argument: &'static str, word: String, choices: String },
     #[error("a difference of {difference_k} K was given to `{function}` where a temperature is wanted")]
@@ -40,6 +42,7 @@ impl Explain for ArgumentError {
             ArgumentError::Sort { .. } => "argument-sort",
             ArgumentError::Count { .. } => "formula-argument-count",
             ArgumentError::Option { .. } => "option-unknown",
+            ArgumentError::OptionMissing { .. } => "option-missing",
             ArgumentError::Word { .. } => "word-unknown",
             ArgumentError::Difference { .. } => "difference-for-point",
             ArgumentError::NotPositive { .. } => "temperature-not-positive",
@@ -51,6 +54,7 @@ impl Explain for ArgumentError {
             ArgumentError::Sort { wanted, .. } => format!("give {wanted}"),
             ArgumentError::Count { usage, .. } => format!("use it as in `{usage}`"),
             ArgumentError::Option { known, .. } => format!("its options are {known}"),
+            ArgumentError::OptionMissing { option, doc, .. } => format!("add `{option}:`, {doc}"),
             ArgumentError::Word { choices, .. } => format!("choose one of {choices}"),
             ArgumentError::Difference { .. } => "give the temperature itself, as in `q(\"450 degC\")`".to_owned(),
             ArgumentError::NotPositive { .. } => "check the sign and the scale of the temperature".to_owned(),
@@ -84,6 +88,8 @@ pub(super) fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Va
         }
         (Takes::Number, Value::Number(number)) => Value::Number(number),
         (Takes::Number, Value::Quantity(value)) if value.dim().is_none() => Value::Number(value.si()),
+        (Takes::Fraction, Value::Number(number)) => Value::Number(number),
+        (Takes::Fraction, value) => Value::Quantity(as_quantity(cx, value, |v| refused("a fraction", v))?),
         (Takes::Reaction, Value::Reaction(reaction)) => Value::Reaction(reaction),
         (Takes::Text, Value::Text(text)) => Value::Text(text),
         (Takes::Word(words), Value::Text(word)) => {
@@ -107,17 +113,18 @@ pub(super) fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Va
             }
             Value::List(quantities)
         }
-        (Takes::Options(known), Value::Options(options)) => {
-            let mut checked_options = BTreeMap::new();
-            for (name, value) in options.iter() {
-                let Some(option) = known.iter().find(|option| option.name == name) else {
-                    let known = listed(known.iter().map(|option| option.name));
-                    return Err(ArgumentError::Option { function: card.name, option: name.clone(), known }.into());
-                };
-                checked_options.insert(name.clone(), checked(cx, card, option, value.clone())?);
-            }
-            Value::Options(Rc::new(checked_options))
+        (Takes::Streams, Value::Stream(stream)) => Value::List(vec![Value::Stream(stream)]),
+        (Takes::Streams, Value::List(list)) if list.iter().all(|item| matches!(item, Value::Stream(_))) => {
+            Value::List(list)
         }
+        (Takes::Maps(known), Value::List(list)) => {
+            let one = |item: Value| match item {
+                Value::Options(map) => checked_map(cx, card, known, &map),
+                other => Err(refused("a list of maps", &other)),
+            };
+            Value::List(list.into_iter().map(one).collect::<Result<_, Fault>>()?)
+        }
+        (Takes::Options(known), Value::Options(options)) => checked_map(cx, card, known, &options)?,
         (Takes::Named { unit }, Value::Options(given)) => {
             let wanted = unit_parse::unit(unit)?;
             let mut named = BTreeMap::new();
@@ -157,11 +164,36 @@ pub(super) fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Va
                     "maps of quantities by name, as in `#{ \"methanol(g)\": #{ B: \"-900 cm3/mol\" } }`"
                 }
                 Takes::Options(_) => "a map of options, as in `#{ heat_capacity: \"constant\" }`",
+                Takes::Streams => "a list of streams, as in `[stream(\"feed\", T, amounts)]`",
+                Takes::Maps(_) => "a list of maps",
                 _ => "a quantity",
             };
             return Err(refused(wanted, &value));
         }
     })
+}
+
+/// A map with its entries checked: each known, and those that are required there.
+fn checked_map(
+    cx: &Cx,
+    card: &'static Card,
+    known: &'static [Arg],
+    given: &BTreeMap<String, Value>,
+) -> Result<Value, Fault> {
+    let mut checked_options = BTreeMap::new();
+    for (name, value) in given {
+        let Some(option) = known.iter().find(|option| option.name == name) else {
+            let known = listed(known.iter().map(|option| option.name));
+            return Err(ArgumentError::Option { function: card.name, option: name.clone(), known }.into());
+        };
+        checked_options.insert(name.clone(), checked(cx, card, option, value.clone())?);
+    }
+    let required = known.iter().filter(|option| matches!(option.default, Default::Required));
+    if let Some(missing) = required.into_iter().find(|option| !given.contains_key(option.name)) {
+        let (function, doc) = (card.name, missing.doc);
+        return Err(ArgumentError::OptionMissing { function, option: missing.name, doc }.into());
+    }
+    Ok(Value::Options(Rc::new(checked_options)))
 }
 
 /// A quantity, or text that reads as one.

@@ -19,8 +19,10 @@ use crate::model::caution::Caution;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
+use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
+use crate::model::table::Table;
 use crate::model::terms::Terms;
 use crate::quantity::{Quantity, text};
 use crate::record::node::{Node, Step};
@@ -39,10 +41,13 @@ pub enum Value {
     Options(Rc<BTreeMap<String, Value>>),
     Reaction(Rc<Reaction>),
     Substance(Rc<PureSubstance>),
+    Stream(Rc<Stream>),
     Molecule(Rc<Molecule>),
     /// Temperatures at which a formula is asked in one call.
     Grid(Rc<Grid>),
     Curve(Rc<Curve>),
+    /// Figures with units that were read from a file.
+    Table(Rc<Table>),
     /// What was asked of an uncertainty.
     Answer(Answer),
     /// Something no formula takes, by its name in words.
@@ -62,9 +67,11 @@ impl Value {
             Value::Options(_) => "a map of options",
             Value::Reaction(_) => "a reaction",
             Value::Substance(_) => "a substance",
+            Value::Stream(_) => "a stream",
             Value::Molecule(_) => "a molecule",
             Value::Grid(_) => "a grid of temperatures",
             Value::Curve(_) => "a curve",
+            Value::Table(_) => "a table",
             Value::Answer(answer) => answer.sort(),
             Value::Other(name) => name,
             Value::Nothing => "nothing",
@@ -81,6 +88,7 @@ pub enum On {
     Substance,
     Molecule,
     Curve,
+    Table,
 }
 
 /// What an argument takes.
@@ -97,10 +105,16 @@ pub enum Takes {
     /// The same, or a grid of them: then the formula is asked at each, and gives a curve.
     Temperatures,
     Number,
+    /// A bare number, or a quantity or text that is a pure number, such as "35 %".
+    Fraction,
     Text,
     Word(&'static [&'static str]),
     Quantities,
     Reaction,
+    /// A list of streams, or one alone.
+    Streams,
+    /// A list of maps, each with these entries.
+    Maps(&'static [Arg]),
     Options(&'static [Arg]),
     /// A map from names to quantities of this unit's dimension.
     Named {
@@ -359,9 +373,11 @@ impl Step for Call {
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
                 Value::Substance(substance) => words.push(substance.text().to_owned()),
                 Value::Options(options) => words.extend(in_words(options)),
+                Value::Stream(stream) => words.push(stream.name.to_string()),
                 Value::Molecule(molecule) => words.push(molecule.text().to_owned()),
                 Value::Grid(grid) => words.push(grid.words()),
                 Value::Curve(curve) => words.push(curve.words()),
+                Value::Table(table) => words.push(table.name.to_string()),
                 Value::List(list) => words.push(format!("{} values", list.len())),
                 Value::Flag(_) | Value::Answer(_) | Value::Other(_) | Value::Nothing => {}
             }
@@ -378,6 +394,7 @@ impl Step for Call {
             match value {
                 Value::Quantity(value) => nodes.push(Rc::clone(value.node())),
                 Value::List(list) => list.iter().for_each(|item| collect(item, nodes)),
+                Value::Stream(stream) => nodes.extend(stream.nodes()),
                 Value::Options(options) => options.values().for_each(|item| collect(item, nodes)),
                 _ => {}
             }
@@ -429,6 +446,7 @@ impl Card {
             On::Substance => "substance.",
             On::Molecule => "molecule.",
             On::Curve => "curve.",
+            On::Table => "table.",
         };
         format!("{receiver}{}({})", self.name, args.join(", "))
     }
