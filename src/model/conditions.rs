@@ -48,6 +48,13 @@ pub fn line(cx: &Cx, value: &Quantity) -> String {
     if !state.standard {
         parts.extend(call_of(value.node()).and_then(|call| under_pressure(cx, call)));
     }
+    for node in node::history(value.node()) {
+        for condition in call_of(&node).and_then(Call::terms).map(Terms::conditions).unwrap_or_default() {
+            if !parts.contains(&condition) {
+                parts.push(condition);
+            }
+        }
+    }
     let per_substance = call_of(value.node())
         .is_some_and(|call| matches!(call.args.first(), Some(Value::Substance(_) | Value::Molecule(_))));
     if let (Some(zero), true) = (&state.zero, per_substance) {

@@ -215,7 +215,7 @@ pub(super) fn dimension(property: Property, per: Entity) -> Dimension {
 fn kind(property: Property, terms: &Terms, t_k: f64, given: Option<&Given>) -> Kind {
     let zero = property.uses_formation().then_some(Zero::Elements298);
     let p_pa = given.map_or(Some(STANDARD_PRESSURE.value), Given::common);
-    let (standard, reaction) = (given.is_none(), terms.is_reaction());
+    let (standard, reaction) = (given.is_none() && terms.conditions().is_empty(), terms.is_reaction());
     Kind::in_state(property.what(), State { zero, t_k: Some(t_k), p_pa, standard, reaction })
 }
 

@@ -189,6 +189,9 @@ const SATURATED: Claim = Claim { id: "saturated-vapour-ideal", test: claims::sat
 const UNMIXED: Claim = Claim { id: "unmixed", test: claims::unmixed };
 
 const AQUEOUS: Claim = Claim { id: "aqueous-heat-capacity", test: claims::aqueous_heat_capacity };
+const MONOMER_VAPOUR: Claim = Claim { id: "monomer-vapour", test: claims::monomer_vapour };
+const NO_DECOMPOSITION: Claim = Claim { id: "no-decomposition", test: claims::no_decomposition };
+const FIT_QUALITY: Claim = Claim { id: "fit-quality", test: claims::fit_quality };
 
 const ENTHALPY_CLAIMS: &[Claim] = &[
     CONSTANT_HEAT_CAPACITY,
@@ -202,6 +205,9 @@ const ENTHALPY_CLAIMS: &[Claim] = &[
     STANDARD,
     UNMIXED,
     SATURATED,
+    MONOMER_VAPOUR,
+    NO_DECOMPOSITION,
+    FIT_QUALITY,
 ];
 const ENERGY_CLAIMS: &[Claim] = &[
     CONSTANT_HEAT_CAPACITY,
@@ -214,6 +220,9 @@ const ENERGY_CLAIMS: &[Claim] = &[
     EXPANSIVITY,
     STANDARD,
     UNMIXED,
+    MONOMER_VAPOUR,
+    NO_DECOMPOSITION,
+    FIT_QUALITY,
 ];
 const GAS_LAW_CLAIMS: &[Claim] = &[
     CONSTANT_HEAT_CAPACITY,
@@ -226,6 +235,9 @@ const GAS_LAW_CLAIMS: &[Claim] = &[
     EXPANSIVITY,
     STANDARD,
     UNMIXED,
+    MONOMER_VAPOUR,
+    NO_DECOMPOSITION,
+    FIT_QUALITY,
 ];
 const ENTROPY_CLAIMS: &[Claim] = &[
     CONSTANT_HEAT_CAPACITY,
@@ -237,6 +249,9 @@ const ENTROPY_CLAIMS: &[Claim] = &[
     EXPANSIVITY,
     STANDARD,
     UNMIXED,
+    MONOMER_VAPOUR,
+    NO_DECOMPOSITION,
+    FIT_QUALITY,
 ];
 
 const SHORTCUTS: &[Alternative] = &[
