@@ -7,6 +7,7 @@
 use std::collections::{BTreeMap, BTreeSet};
 use std::sync::{Arc, LazyLock, Mutex, PoisonError};
 
+use crate::chem::element::{AtomicWeight, Element};
 use crate::chem::formula::Formula;
 use crate::chem::species::{Species, SpeciesName, State};
 use crate::fault::Fault;
@@ -20,6 +21,7 @@ use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::{self, Coefficients, Formation};
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
+use super::records::element_entity;
 use super::substance::Substance;
 use super::tables::Tables;
 use super::transition::Transition;
@@ -36,7 +38,7 @@ static SHIPPED: LazyLock<Arc<Catalog>> = LazyLock::new(|| {
 pub struct Catalog {
     contents: Arc<Contents>,
     /// Entities that were asked for, where someone wants to know.
-    asked: Option<Mutex<BTreeSet<Arc<str>>>>,
+    asked: Option<Arc<Mutex<BTreeSet<Arc<str>>>>>,
 }
 
 #[derive(Debug)]
@@ -46,6 +48,7 @@ struct Contents {
     /// Substance id to its transitions, by temperature.
     transitions: BTreeMap<Arc<str>, Vec<Arc<Transition>>>,
     lookup: Lookup,
+    weights: BTreeMap<Element, AtomicWeight>,
 }
 
 /// What is being gathered on one substance.
@@ -64,7 +67,7 @@ impl Catalog {
 
     /// The tables among some files; a dataset whose file is missing is simply not there.
     pub fn from_files(files: &[Embedded<'_>]) -> Result<Catalog, TableFault> {
-        let Tables { datasets, functions, mut formations, coefficients, transitions, critical, names } =
+        let Tables { datasets, functions, mut formations, coefficients, transitions, critical, names, weights } =
             Tables::read(files)?;
         let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
         for group in coefficients {
@@ -113,14 +116,14 @@ impl Catalog {
             transitions.sort_by(|left, right| left.t_k.total_cmp(&right.t_k));
         }
         let lookup = Lookup::new(&names, substances.values().map(|substance: &Arc<Substance>| &**substance));
-        let contents = Contents { datasets, substances, transitions: by_substance, lookup };
+        let contents = Contents { datasets, substances, transitions: by_substance, lookup, weights };
         Ok(Catalog { contents: Arc::new(contents), asked: None })
     }
 
     /// The same catalogue, which remembers what it is asked for.
     #[must_use]
     pub fn watched(&self) -> Catalog {
-        Catalog { contents: Arc::clone(&self.contents), asked: Some(Mutex::default()) }
+        Catalog { contents: Arc::clone(&self.contents), asked: Some(Arc::default()) }
     }
 
     /// The entities a watched catalogue was asked for.
@@ -129,9 +132,15 @@ impl Catalog {
         asked.unwrap_or_default()
     }
 
-    fn note(&self, substance: &Substance) {
+    /// The standard atomic weight of an element, where it has one on record.
+    pub fn atomic_weight(&self, element: Element) -> Option<&AtomicWeight> {
+        self.note(&element_entity(element.symbol()));
+        self.contents.weights.get(&element)
+    }
+
+    /// Remembers that an entity was asked for.
+    fn note(&self, entity: &str) {
         if let Some(asked) = &self.asked {
-            let entity = substance.species.entity.name();
             let mut asked = asked.lock().unwrap_or_else(PoisonError::into_inner);
             if !asked.contains(entity) {
                 asked.insert(entity.into());
@@ -146,7 +155,7 @@ impl Catalog {
             Some(substance) => substance,
             None => &contents.substances[contents.lookup.find(text)?],
         };
-        self.note(found);
+        self.note(found.species.entity.name());
         Ok(found.clone())
     }
 

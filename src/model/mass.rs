@@ -17,7 +17,6 @@ use smallvec::SmallVec;
 use thiserror::Error;
 
 use crate::chem::composition::Composition;
-use crate::chem::element;
 use crate::chem::formula::Formula;
 use crate::fault::{Explain, Fault};
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
@@ -71,7 +70,7 @@ fn molar_mass(cx: &Cx, entity: Entity, step: Rc<dyn Step>) -> Result<Quantity, F
     let terms = composition.molar_mass_terms().map_err(Fault::from)?;
     let (mut si, mut inputs) = (0.0, SmallVec::new());
     for (element, count) in terms {
-        let weight = element::atomic_weight(element).ok_or_else(|| MassError::NoWeight {
+        let weight = cx.data().atomic_weight(element).ok_or_else(|| MassError::NoWeight {
             entity: entity.name().to_owned(),
             element: element.symbol().to_owned(),
         })?;
