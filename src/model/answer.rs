@@ -13,6 +13,7 @@ use crate::fault::{Explain, Fault};
 use crate::model::budget::Budget;
 use crate::model::card::{Arg, Call, Default, Takes, Value, listed};
 use crate::model::compare::Comparison;
+use crate::model::cycle::Cycle;
 use crate::model::derivation::Derivation;
 use crate::model::expanded::Expanded;
 use crate::model::gap::Gap;
@@ -30,6 +31,7 @@ pub enum Answer {
     Propagation(Rc<Propagation>),
     Derivation(Rc<Derivation>),
     Comparison(Rc<Comparison>),
+    Cycle(Rc<Cycle>),
     Gap(Rc<Gap>),
     Validity(Rc<Validity>),
     SideBySide(Rc<SideBySide>),
@@ -71,6 +73,7 @@ impl Answer {
             Answer::Propagation(_) => "a Monte Carlo run",
             Answer::Derivation(_) => "a derivation",
             Answer::Comparison(_) => "a comparison",
+            Answer::Cycle(_) => "a cycle",
             Answer::Gap(_) => "an explanation of a gap",
             Answer::Validity(_) => "the range of a shortcut",
             Answer::SideBySide(_) => "shortcuts side by side",
@@ -84,6 +87,7 @@ impl Answer {
             Answer::Propagation(propagation) => propagation.parts(),
             Answer::Derivation(derivation) => derivation.parts(),
             Answer::Comparison(comparison) => comparison.parts(),
+            Answer::Cycle(cycle) => cycle.parts(),
             Answer::Gap(gap) => gap.parts(),
             Answer::Validity(validity) => validity.parts(),
             Answer::SideBySide(ways) => ways.parts(),

@@ -115,6 +115,8 @@ pub fn symbol(value: &Quantity) -> String {
     }
     match &call.args[..] {
         [Value::Reaction(_), ..] if what == What::K => what.symbol().to_owned(),
+        // A leg of a cycle is no property of the reaction.
+        [Value::Reaction(_), ..] if what == What::Plain => String::new(),
         [Value::Reaction(_), ..] => {
             let standard = value.kind().state().is_some_and(|state| state.standard);
             format!("Δr{}{}", what.symbol(), if standard { "°" } else { "" })

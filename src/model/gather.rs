@@ -21,6 +21,7 @@ use crate::model::first_order;
 use crate::model::function::{self, Functions, T_REFERENCE};
 pub use crate::model::heat_capacity::HeatCapacity;
 use crate::model::path::Route;
+use crate::model::tabulated;
 use crate::model::terms::{Term, Terms};
 use crate::model::thermo::{AtT, Thermo};
 use crate::num::math;
@@ -103,8 +104,10 @@ pub enum GatherError {
         "{phase} ends at {t_end} K on record, and the change to {gas} is not inserted on the way to {t_k} K: where it happens depends on the pressure"
     )]
     GasNotInserted { phase: String, gas: String, t_k: f64, t_end: f64 },
-    #[error("no heat capacity of {species} is at hand, so nothing can be said of it at {t_k} K")]
+    #[error("no heat capacity of {species} is at hand, so nothing can be said at {t_k} K")]
     NoFunction { species: String, t_k: f64 },
+    #[error("the heat capacity of {species} is on record at 298.15 K only, so it cannot be integrated to {t_k} K")]
+    ConstantOnly { species: String, t_k: f64 },
     #[error("no one dataset has the formation enthalpies of all species: {missing}")]
     NotCovered { missing: String },
     #[error("the dataset {dataset} has no formation enthalpy of {species}")]
@@ -121,6 +124,7 @@ impl Explain for GatherError {
             GatherError::Range { .. } => "temperature-out-of-range",
             GatherError::GasNotInserted { .. } => "gas-not-inserted",
             GatherError::NoFunction { .. } => "heat-capacity-missing",
+            GatherError::ConstantOnly { .. } => "heat-capacity-at-298-only",
             GatherError::NotCovered { .. } => "formation-not-covered",
             GatherError::NotInDataset { .. } => "formation-missing",
             GatherError::UnknownDataset { .. } => "dataset-unknown",
@@ -137,6 +141,10 @@ impl Explain for GatherError {
                 format!("write {gas} where the gas is meant, or choose a temperature up to {t_end} K")
             }
             GatherError::NoFunction { .. } => "ask for 298.15 K, where the tables give it".to_owned(),
+            GatherError::ConstantOnly { .. } => {
+                "add `#{ heat_capacity: \"constant\" }` to hold it there for all species; the register then says what that rests on"
+                    .to_owned()
+            }
             GatherError::NotCovered { .. } => {
                 "mixing datasets is done on demand only: add `#{ formation: \"mixed\" }`, and the register prices it"
                     .to_owned()
@@ -309,6 +317,7 @@ pub const ENTROPY: &str = "entropy";
 pub fn contributions(reaction: &Terms, t_k: f64, method: &Method, cx: &Cx) -> Result<Vec<Contribution>, Fault> {
     let datasets = datasets_for(reaction, &method.formation, cx.data())?;
     let mut all = Vec::with_capacity(reaction.terms().len());
+    tabulated::refuse(reaction, t_k, method.heat_capacity)?;
     for (at, (term, dataset)) in reaction.terms().iter().zip(&datasets).enumerate() {
         refuse_two_in_one(at, reaction, t_k, cx.data())?;
         all.push(contribution(term, dataset, t_k, method.heat_capacity, cx)?);
@@ -342,24 +351,13 @@ pub(crate) fn contribution(
         return first_order::contribution(term, dataset, t_k, about_k, cx);
     }
     let (substance, data) = (&term.substance, cx.data());
-    let species = || substance.species.id.to_string();
     let formation =
         term_formation(term, dataset, data).unwrap_or_else(|| unreachable!("the dataset was found to have it"));
     if let Some(own) = &term.own {
         return of_own(own.as_ref(), term, formation, t_k, mode, cx);
     }
     let Some(function) = &substance.function else {
-        if t_k != T_REFERENCE {
-            return Err(GatherError::NoFunction { species: species(), t_k }.into());
-        }
-        return Ok(Contribution {
-            nu: term.nu,
-            formation,
-            increment: None,
-            entropy: tabulated_entropy(substance),
-            cp: None,
-            slopes: Slopes::default(),
-        });
+        return tabulated::contribution(term, formation, t_k, mode);
     };
     if !function.covers(t_k) {
         return Route::to(substance, t_k, data)?.contribution(term.nu, formation, mode);
@@ -539,22 +537,6 @@ fn between(function: &Function, h_298: f64, t_k: f64, at_t: Functions, mode: Hea
         }
         HeatCapacity::Neglected => neglected(at_0, t_k),
     }
-}
-
-/// The entropy at 298.15 K from a table, for species without a function, such as ions in solution.
-fn tabulated_entropy(substance: &Substance) -> Option<Figure> {
-    let record = substance.formations.iter().find(|record| record.s.is_some())?;
-    let datum = record.s.as_ref()?;
-    let digit = if datum.is_convention() { None } else { Some(datum.last_place()) };
-    let key = LeafKey::Datum {
-        dataset: record.dataset.shared(),
-        record: substance.species.id.clone(),
-        field: ENTROPY,
-        t_bits: 0,
-        way: "",
-    };
-    let input = Input { u: datum.u, digit, citation: Some(record.citation.clone()), ..Input::of(key) };
-    Some(Figure { si: datum.value, origin: input.into(), printed: Some(datum.printed.clone()) })
 }
 
 #[cfg(test)]

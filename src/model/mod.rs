@@ -13,6 +13,7 @@ pub mod compare;
 pub mod conditions;
 pub mod curve;
 pub mod curve_card;
+pub mod cycle;
 pub mod derivation;
 pub mod expanded;
 pub mod first_order;
@@ -36,6 +37,7 @@ pub mod review;
 pub mod shortcut;
 pub mod substance;
 pub mod symbols;
+pub mod tabulated;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
@@ -55,6 +57,7 @@ pub const CARDS: &[&Card] = &[
     &property_card::ENTROPY,
     &property_card::HEAT_CAPACITY,
     &property_card::EQUILIBRIUM_CONSTANT,
+    &cycle::CYCLE,
     &property_card::SUBSTANCE_ENTHALPY,
     &property_card::SUBSTANCE_INTERNAL_ENERGY,
     &property_card::SUBSTANCE_GIBBS_ENERGY,

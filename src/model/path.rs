@@ -50,7 +50,8 @@ pub struct Phase {
 }
 
 impl Phase {
-    fn of(substance: &Arc<Substance>) -> Option<Phase> {
+    /// `None` where it has no function.
+    pub fn of(substance: &Arc<Substance>) -> Option<Phase> {
         Some(Phase { substance: Arc::clone(substance), function: Arc::clone(substance.function.as_ref()?) })
     }
 
@@ -320,6 +321,17 @@ fn onward(phase: &Phase, data: &Catalog) -> Option<(Arc<Transition>, Phase)> {
     })
 }
 
+/// The transitions that lead from one phase up to another, in order; `None` where they do not.
+pub fn chain(from: &Arc<Substance>, to: &Substance, data: &Catalog) -> Option<Vec<Arc<Transition>>> {
+    let (mut phase, mut transitions) = (Phase::of(from)?, Vec::new());
+    while phase.substance.id() != to.id() {
+        let (transition, next) = onward(&phase, data)?;
+        transitions.push(transition);
+        phase = next;
+    }
+    Some(transitions)
+}
+
 /// The refusal where the condensed phases end and the gas goes on.
 fn gas_instead(written: &Substance, last: &Phase, t_k: f64, data: &Catalog) -> Option<GatherError> {
     let phases = data.phases_of(written);
@@ -342,7 +354,7 @@ pub fn crossings(terms: &Terms, t_k: f64, data: &Catalog) -> Vec<(usize, Route)>
 
 /// What a figure is per mole.
 #[derive(Clone, Copy, PartialEq)]
-enum Sort {
+pub(super) enum Sort {
     Energy,
     PerKelvin,
 }
@@ -352,6 +364,27 @@ impl Sort {
     fn digit(self) -> f64 {
         if self == Sort::Energy { 1.0 } else { 0.001 }
     }
+}
+
+/// What one phase takes up between two temperatures, as an input.
+///
+/// # Errors
+/// The figure is not finite.
+pub fn heated(phase: &Phase, from_k: f64, to_k: f64) -> Result<Rc<Node>, Fault> {
+    let way = if from_k == T_REFERENCE { INTEGRATED } else { FROM_TRANSITION };
+    Leg::Heating { phase, from_k, to_k, way }.node()
+}
+
+/// The enthalpy of a change from one phase of a transition to the other, as their two functions have it: what belongs to a
+/// phase whose function continues the enthalpy scale of another. The recorded figure is this one, rounded.
+///
+/// # Errors
+/// The figure is not finite.
+pub fn by_functions(transition: &Transition, from: &Phase, to: &Phase) -> Result<Rc<Node>, Fault> {
+    let (dataset, record, t_bits) = (transition.dataset.shared(), transition.id.clone(), transition.t_k.to_bits());
+    let way = "difference of the two functions";
+    let key = LeafKey::Datum { dataset, record, field: TRANSITION_ENTHALPY, t_bits, way };
+    leaf(to.at(transition.t_k).h - from.at(transition.t_k).h, key, &transition.citation, Sort::Energy)
 }
 
 /// A figure drawn from a phase's function.
@@ -373,7 +406,11 @@ fn changed(transition: &Transition, sort: Sort) -> Result<Rc<Node>, Fault> {
 }
 
 fn leaf(si: f64, key: LeafKey, citation: &Citation, sort: Sort) -> Result<Rc<Node>, Fault> {
-    let input = Input { digit: Some(sort.digit()), citation: Some(citation.clone()), ..Input::of(key) };
+    input_node(si, Input { digit: Some(sort.digit()), citation: Some(citation.clone()), ..Input::of(key) }, sort)
+}
+
+/// A figure per mole of its species as an input.
+pub(super) fn input_node(si: f64, input: Input, sort: Sort) -> Result<Rc<Node>, Fault> {
     let energy = Dimension::whole([2, 1, -2, 0, 0, 0]);
     let dim = if sort == Sort::Energy { energy } else { energy.over(&Dimension::base(Base::Kelvin)) };
     let dim = dim.over(&Dimension::amount(Entity::OPEN));

@@ -127,7 +127,7 @@ const TEMPERATURE: Arg = Arg {
     doc: "temperature: degC, degF or kelvin; with a grid of temperatures the answer is a curve",
 };
 
-const ARGS: &[Arg] = &[
+pub(super) const ARGS: &[Arg] = &[
     TEMPERATURE,
     Arg {
         name: "options",
@@ -153,10 +153,14 @@ const FORMATION_DATASET: Claim = Claim { id: "formation-dataset", test: claims::
 const IDEAL_GAS: Claim = Claim { id: "ideal-gas", test: claims::ideal_gas };
 const CONDENSED_VOLUME: Claim = Claim { id: "condensed-volume-neglected", test: claims::condensed_volume };
 
-const ENERGY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET];
+const AQUEOUS: Claim = Claim { id: "aqueous-heat-capacity", test: claims::aqueous_heat_capacity };
+const SATURATED_VAPOUR: Claim = Claim { id: "saturated-vapour-ideal", test: claims::vapour_of_records };
+
+const ENTHALPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET, SATURATED_VAPOUR];
+const ENERGY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET];
 const GAS_LAW_CLAIMS: &[Claim] =
-    &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE, FORMATION_DATASET, IDEAL_GAS, CONDENSED_VOLUME];
-const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, STABLE_PHASE];
+    &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET, IDEAL_GAS, CONDENSED_VOLUME];
+const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE];
 
 const SHORTCUTS: &[Alternative] = &[
     Alternative {
@@ -232,7 +236,7 @@ reaction_card!(
     "reaction.enthalpy",
     "enthalpy",
     ARGS,
-    ENERGY_CLAIMS,
+    ENTHALPY_CLAIMS,
     "ΔrH° per mole of reaction as written",
     "Reaction enthalpy at T. ΔrH°(T) = Σ ν [ΔfH°(298.15 K) + H(T) - H(298.15 K)], each species pure, in its standard \
      state, p° = 1 bar; formation enthalpies from one dataset."

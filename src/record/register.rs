@@ -14,9 +14,11 @@ use crate::source::Citation;
 /// Every assumption the program knows, with its claim in words. Ids are fixed: notebooks and seals hold them.
 pub const CLAIMS: &[(&str, &str)] = &[
     ("constant-heat-capacity", "the heat capacities change too little with temperature to matter"),
+    ("aqueous-heat-capacity", "the heat capacities of the solutes at 298.15 K hold up to this temperature"),
     ("stable-phase", "each species is in the stable phase of its composition at this temperature and pressure"),
     ("ideal-gas", "the gases are ideal"),
     ("condensed-volume-neglected", "the volume of liquids and solids is too small to matter"),
+    ("saturated-vapour-ideal", "the saturated vapour is ideal, and the liquid has no volume beside it"),
     ("formation-dataset", "the formation enthalpies of this dataset are the ones to use"),
     ("linear-propagation", "first derivatives are enough to propagate the uncertainties"),
     ("uncertainty-incomplete", "the inputs that state no uncertainty add none that matters"),

@@ -6,6 +6,7 @@
 pub mod budget;
 pub mod comparison;
 pub mod curve;
+pub mod cycle;
 pub mod derivation;
 pub mod gap;
 pub mod headline;
@@ -69,6 +70,7 @@ pub fn answer(answer: &Answer) -> Bundle {
         Answer::Propagation(propagation) => interval::propagation(propagation),
         Answer::Derivation(derivation) => derivation::bundle(derivation),
         Answer::Comparison(comparison) => comparison::bundle(comparison),
+        Answer::Cycle(cycle) => cycle::bundle(cycle),
         Answer::Gap(gap) => gap::bundle(gap),
         Answer::Validity(validity) => shortcut::validity(validity),
         Answer::SideBySide(ways) => shortcut::side_by_side(ways),

@@ -6,6 +6,7 @@ mod alternatives;
 mod formation;
 mod heat_capacity;
 mod phase;
+mod vaporisation;
 mod volume;
 
 pub use alternatives::{
@@ -13,8 +14,9 @@ pub use alternatives::{
     with_midpoint_heat_capacity, with_missed_phase_change, without_correction,
 };
 pub use formation::formation_dataset;
-pub use heat_capacity::constant_heat_capacity;
+pub use heat_capacity::{aqueous_heat_capacity, constant_heat_capacity};
 pub use phase::stable_phase;
+pub use vaporisation::vapour_of_records;
 pub use volume::{condensed_volume, ideal_gas};
 
 use std::rc::Rc;
