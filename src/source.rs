@@ -5,6 +5,8 @@
 
 use std::sync::Arc;
 
+use sha2::{Digest, Sha256};
+
 /// A published source, and how the figure was read from it. Both are shown wherever the figure is used.
 #[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
 pub struct Citation {
@@ -43,6 +45,11 @@ pub struct Embedded<'a> {
 // `STDLIB`: every file of stdlib/, by path; written by build.rs.
 include!(concat!(env!("OUT_DIR"), "/stdlib.rs"));
 
+/// SHA-256 of a text in lower-case hexadecimal.
+pub fn sha256(bytes: &[u8]) -> String {
+    Sha256::digest(bytes).iter().map(|byte| format!("{byte:02x}")).collect()
+}
+
 /// The file of that path. In a constant, a path that is not in `stdlib/` is a build error.
 pub const fn embedded(path: &str) -> Embedded<'static> {
     let mut at = 0;
@@ -68,14 +75,11 @@ const fn equal(left: &[u8], right: &[u8]) -> bool {
 mod tests {
     use super::*;
 
-    use sha2::{Digest, Sha256};
-
     #[test]
     fn digests_are_those_of_the_bytes_and_paths_are_sorted() {
         assert!(STDLIB.is_sorted_by_key(|file| file.path));
         for file in STDLIB {
-            let hex: String = Sha256::digest(file.bytes).iter().map(|byte| format!("{byte:02x}")).collect();
-            assert_eq!(hex, file.sha256, "{}", file.path);
+            assert_eq!(sha256(file.bytes), file.sha256, "{}", file.path);
         }
         assert_eq!(embedded("stdlib/data/codata-1989.json").path, "stdlib/data/codata-1989.json");
     }

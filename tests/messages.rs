@@ -28,6 +28,7 @@ fn faults_of(script: &str) -> String {
     let cells: Vec<String> = script.split("// --- next cell\n").map(str::to_owned).collect();
     on_big_stack(move || {
         let mut session = Session::new(Arc::new(AtomicBool::new(false)));
+        session.set_folder("tests/messages/files".into());
         let mut text = String::new();
         for (index, cell) in cells.iter().enumerate() {
             let outcome = session.run_cell(&format!("cell-{}", index + 1), cell, &mut Silent);

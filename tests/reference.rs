@@ -390,7 +390,7 @@ fn every_entropy(row: &Row, dataset: &str, known: &BTreeMap<String, Known>) -> V
         let u = printed.u.unwrap_or_else(|| panic!("{substance} states no u"));
         let difference = by_function(substance.id(), FunctionOf::Entropy, T_REFERENCE_K) - printed.value;
         // The report prints three decimals, and most rows of CODATA two or three.
-        let allowed = 2.0 * u + 0.5 * printed.last_place() + 0.000_5;
+        let allowed = 2.0 * u + 0.5 * printed.last_place + 0.000_5;
         pairs.push(Pair { substance: substance.to_string(), difference, allowed });
     }
     compared(row, &pairs, known)

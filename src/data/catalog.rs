@@ -21,6 +21,7 @@ use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::{self, Coefficients, Formation};
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
+use super::names::Names;
 use super::records::element_entity;
 use super::substance::Substance;
 use super::tables::Tables;
@@ -42,21 +43,22 @@ pub struct Catalog {
 }
 
 #[derive(Debug)]
-struct Contents {
-    datasets: Vec<Dataset>,
-    substances: BTreeMap<Arc<str>, Arc<Substance>>,
+pub(super) struct Contents {
+    pub datasets: Vec<Dataset>,
+    pub substances: BTreeMap<Arc<str>, Arc<Substance>>,
     /// Substance id to its transitions, by temperature.
-    transitions: BTreeMap<Arc<str>, Vec<Arc<Transition>>>,
-    lookup: Lookup,
-    weights: BTreeMap<Element, AtomicWeight>,
+    pub transitions: BTreeMap<Arc<str>, Vec<Arc<Transition>>>,
+    pub names: Arc<Names>,
+    pub lookup: Lookup,
+    pub weights: Arc<BTreeMap<Element, AtomicWeight>>,
 }
 
 /// What is being gathered on one substance.
 #[derive(Default)]
-struct Gathered {
-    function: Option<Arc<Function>>,
-    formations: Vec<Arc<Formation>>,
-    critical: Option<Arc<CriticalTemperature>>,
+pub(super) struct Gathered {
+    pub function: Option<Arc<Function>>,
+    pub formations: Vec<Arc<Formation>>,
+    pub critical: Option<Arc<CriticalTemperature>>,
 }
 
 impl Catalog {
@@ -88,8 +90,7 @@ impl Catalog {
                 entry.critical = Some(Arc::new(critical));
             }
         }
-        let listed: BTreeMap<&str, &Arc<str>> =
-            names.entities.iter().filter_map(|record| Some((&*record.entity, record.name.as_ref()?))).collect();
+        let listed = names.preferred();
         let mut substances = BTreeMap::new();
         for (id, mut found) in gathered {
             if let Some(function) = &found.function
@@ -116,7 +117,8 @@ impl Catalog {
             transitions.sort_by(|left, right| left.t_k.total_cmp(&right.t_k));
         }
         let lookup = Lookup::new(&names, substances.values().map(|substance: &Arc<Substance>| &**substance));
-        let contents = Contents { datasets, substances, transitions: by_substance, lookup, weights };
+        let (names, weights) = (Arc::new(names), Arc::new(weights));
+        let contents = Contents { datasets, substances, transitions: by_substance, names, lookup, weights };
         Ok(Catalog { contents: Arc::new(contents), asked: None })
     }
 
@@ -124,6 +126,16 @@ impl Catalog {
     #[must_use]
     pub fn watched(&self) -> Catalog {
         Catalog { contents: Arc::clone(&self.contents), asked: Some(Arc::default()) }
+    }
+
+    pub(super) fn contents(&self) -> &Contents {
+        &self.contents
+    }
+
+    /// Another catalogue, which is watched as this one is.
+    pub(super) fn watched_alike(&self, contents: Contents) -> Catalog {
+        // One memory for both: what a cell asked before it laid records over counts too.
+        Catalog { contents: Arc::new(contents), asked: self.asked.clone() }
     }
 
     /// The entities a watched catalogue was asked for.
@@ -241,6 +253,12 @@ impl Catalog {
     pub fn dataset(&self, id: &DatasetId) -> Option<&Dataset> {
         self.contents.datasets.iter().find(|dataset| dataset.id == *id)
     }
+
+    /// A dataset and those that it extends, nearest first.
+    pub fn with_extended<'a>(&'a self, id: &'a DatasetId) -> impl Iterator<Item = &'a DatasetId> {
+        // A dataset extends one that was there before it, so this ends.
+        std::iter::successors(Some(id), |id| self.dataset(id)?.extends.as_ref())
+    }
 }
 
 /// Joins correlation coefficients to the formation enthalpies they are of. `id` is the name a substance goes by.
@@ -273,7 +291,11 @@ fn correlate(
 }
 
 /// Makes a substance of its records.
-fn substance(id: &Arc<str>, found: Gathered, listed: &BTreeMap<&str, &Arc<str>>) -> Result<Substance, TableFault> {
+pub(super) fn substance(
+    id: &Arc<str>,
+    found: Gathered,
+    listed: &BTreeMap<&str, &Arc<str>>,
+) -> Result<Substance, TableFault> {
     let function = found.function.as_ref();
     let formations = || found.formations.iter();
     let unreadable = |why: String| TableFault::Name { record: id.to_string(), why };

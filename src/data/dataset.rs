@@ -4,12 +4,15 @@
 //! uncertainty. The surprise: a printed uncertainty is kept as printed, and becomes a standard one only by the divisor
 //! that its dataset declares; where a dataset states none, the uncertainty is absent, which is not zero.
 
+use std::borrow::Cow;
 use std::fmt;
 use std::sync::Arc;
 
 use serde::Deserialize;
 
 use crate::fault::Explain;
+use crate::quantity::Quantity;
+use crate::record::evaluation::Shape;
 use crate::source::Embedded;
 
 /// The short name of a dataset, as in `codata-1989`. Equal names are one dataset, whichever file they were read from.
@@ -53,6 +56,10 @@ pub struct Dataset {
     pub divisor: Option<f64>,
     /// Precedence of its formation enthalpies, smallest first. `None`: it has none.
     pub rank: Option<u32>,
+    /// Whether it was read beside a notebook: it serves reactions that have one of its own substances, and no others.
+    pub own: bool,
+    /// The dataset whose formation enthalpies stand beside its own in one reaction, where its author says that they fit.
+    pub extends: Option<DatasetId>,
     pub tables: Vec<Table>,
 }
 
@@ -104,6 +111,8 @@ pub(super) fn enter(
                 uncertainty: heading.uncertainty.into(),
                 divisor: heading.divisor,
                 rank: heading.rank,
+                own: false,
+                extends: None,
                 tables: vec![table],
             });
             id
@@ -119,13 +128,17 @@ pub struct Datum {
     /// The printed uncertainty: `0.040`, a 95 % figure in some datasets.
     pub printed_u: Option<Arc<str>>,
     /// The unit of both printed figures.
-    pub unit: &'static str,
-    /// Decimals of the printed figure, in its printed unit.
-    pub decimals: u8,
+    pub unit: Cow<'static, str>,
+    /// One unit of the last printed place, in the unit of `value`.
+    pub last_place: f64,
     /// In J/mol or J/(mol K).
     pub value: f64,
     /// Standard uncertainty, in the unit of `value`. `None`: not stated. `Some(0.0)`: zero by convention.
     pub u: Option<f64>,
+    /// The distribution that u was evaluated by.
+    pub shape: Shape,
+    /// Degrees of freedom of u, where they are stated.
+    pub dof: Option<f64>,
 }
 
 /// A figure as its file holds it.
@@ -153,7 +166,6 @@ impl Datum {
             Column::Formation | Column::Energy => ("kJ/mol", 3),
             Column::Entropy => ("J/(mol K)", 0),
         };
-        let decimals = decimals_of(figure.value);
         let value = shifted(figure.value, shift)?;
         let zero = value == 0.0 && figure.u.is_none_or(|u| shifted(u, 0) == Some(0.0));
         let u = match figure.u {
@@ -168,7 +180,33 @@ impl Datum {
                 Some(bound / divisor?)
             }
         };
-        Some(Datum { printed: figure.value.into(), printed_u: figure.u.map(Arc::from), unit, decimals, value, u })
+        Some(Datum {
+            printed: figure.value.into(),
+            printed_u: figure.u.map(Arc::from),
+            unit: unit.into(),
+            last_place: shifted("1", shift - i32::from(decimals_of(figure.value)))?,
+            value,
+            u,
+            shape: Shape::Normal,
+            dof: None,
+        })
+    }
+
+    /// A figure written as it is typed in a notebook, `-285.830(20) kJ/mol`; `None` for a computed quantity.
+    pub(super) fn of_written(written: &str, quantity: &Quantity) -> Option<Datum> {
+        let input = quantity.node().input()?;
+        let number = written.trim().find(|c: char| !(c.is_ascii_digit() || "+-.−".contains(c)));
+        let (printed, _) = written.trim().split_at(number.unwrap_or(written.trim().len()));
+        Some(Datum {
+            printed: printed.into(),
+            printed_u: None,
+            unit: quantity.unit().text.to_string().into(),
+            last_place: input.digit.unwrap_or(f64::NAN),
+            value: quantity.si(),
+            u: input.u,
+            shape: input.evaluation().shape,
+            dof: input.evaluation().dof,
+        })
     }
 
     /// A formation enthalpy in J/mol without uncertainty; zero is a convention.
@@ -180,19 +218,15 @@ impl Datum {
     pub(super) fn energy_j_mol(value: f64) -> Datum {
         let printed = value.to_string();
         Datum {
-            decimals: decimals_of(&printed),
+            last_place: shifted("1", -i32::from(decimals_of(&printed))).unwrap_or(f64::NAN),
             printed: printed.into(),
             printed_u: None,
-            unit: "J/mol",
+            unit: "J/mol".into(),
             value,
             u: None,
+            shape: Shape::Normal,
+            dof: None,
         }
-    }
-
-    /// One unit of the last printed place, in the unit of `value`.
-    pub fn last_place(&self) -> f64 {
-        let shift = if self.unit == "kJ/mol" { 3 } else { 0 };
-        shifted("1", shift - i32::from(self.decimals)).unwrap_or(f64::NAN)
     }
 
     /// Whether this is zero by convention, and so limits neither the uncertainty nor the decimals of a result.
@@ -296,9 +330,9 @@ mod tests {
     fn a_printed_95_percent_figure_is_halved_and_digits_stay() {
         // H2O(l), CODATA Key Values 1989: -285.830 +- 0.040 kJ/mol.
         let water = datum("-285.830", Some("0.040"), Column::Formation, Some(2.0)).unwrap();
-        assert_eq!((water.value, water.u, water.decimals), (-285_830.0, Some(20.0), 3));
+        assert_eq!((water.value, water.u), (-285_830.0, Some(20.0)));
         assert_eq!((&*water.printed, water.printed_u.as_deref()), ("-285.830", Some("0.040")));
-        assert_eq!(water.last_place(), 1.0);
+        assert_eq!(water.last_place, 1.0);
     }
 
     #[test]

@@ -10,7 +10,7 @@ use serde::Deserialize;
 use crate::num::powers::Power;
 use crate::source::{Citation, Embedded};
 
-use super::dataset::{self, Dataset, DatasetId, Heading, TableFault};
+use super::dataset::{self, Dataset, DatasetId, Datum, Heading, TableFault};
 
 /// One temperature range of a function. Neighbours share their end, where both hold.
 ///
@@ -54,6 +54,8 @@ pub struct Function {
     pub dhf_298: f64,
     /// Which constants of integration the source gives: without them only differences of H and of S have a meaning.
     pub zero: Zero,
+    /// What its author states of its uncertainty; the shipped tables state nothing.
+    pub stated: Stated,
     /// H(298.15 K) - H(0 K), J/mol.
     pub h298_minus_h0: Option<f64>,
     /// What is known against this record, in words.
@@ -76,10 +78,31 @@ pub struct Zero {
     pub entropy: bool,
 }
 
+/// Uncertainties that belong to a function as a whole.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct Stated {
+    /// The entropy at 298.15 K that the entropy scale rests on.
+    pub entropy_298: Option<Datum>,
+    /// Relative standard uncertainty of Cp, as one factor for all temperatures.
+    pub cp_relative_u: Option<f64>,
+}
+
 impl Function {
     /// Whether the Gibbs energy can be compared with that of another phase.
     pub fn has_gibbs_energy(&self) -> bool {
         self.zero.enthalpy && self.zero.entropy
+    }
+
+    /// Cp by the plain sum of powers, in J/(mol K), at a temperature within its range.
+    pub(super) fn cp_plainly(&self, t_k: f64) -> f64 {
+        let home = self.intervals.iter().find(|one| one.t_min <= t_k && t_k <= one.t_max);
+        self.r_of_source * home.map_or(f64::NAN, |one| one.powers().map(|power| power.value(t_k)).sum())
+    }
+
+    /// H in the same manner, in J/mol.
+    pub(super) fn h_plainly(&self, t_k: f64) -> f64 {
+        let home = self.intervals.iter().find(|one| one.t_min <= t_k && t_k <= one.t_max);
+        self.r_of_source * home.map_or(f64::NAN, |one| one.h_and_s(t_k).0)
     }
 
     /// Whether a temperature lies within the function's range, ends included.
@@ -165,6 +188,7 @@ pub(super) fn read(
             intervals,
             dhf_298: record.dhf_298,
             zero: Zero { enthalpy: true, entropy: true },
+            stated: Stated::default(),
             h298_minus_h0: record.h298_minus_h0,
             warnings: record.warnings.into_iter().map(Arc::from).collect(),
             is_reference_element: record.reference_element,

@@ -29,6 +29,13 @@ pub(super) struct EntityNames {
     pub names: Vec<Arc<str>>,
 }
 
+impl Names {
+    /// Entities to their preferred names, where the table has one.
+    pub fn preferred(&self) -> BTreeMap<&str, &Arc<str>> {
+        self.entities.iter().filter_map(|record| Some((&*record.entity, record.name.as_ref()?))).collect()
+    }
+}
+
 pub(super) const SCHEMA: &str = "hessbook-names/1";
 
 #[derive(Deserialize)]

@@ -162,7 +162,7 @@ pub struct Card {
 
 /// What formulas look up: substances and constants. Substances are read at their first use, since a start of the program
 /// that asks for none should not wait for them.
-#[derive(Clone)]
+#[derive(Clone, Debug)]
 pub struct References {
     catalog: OnceCell<Arc<Catalog>>,
     pub constants: &'static ConstantSet,

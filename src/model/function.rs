@@ -88,7 +88,7 @@ mod tests {
     use super::*;
     use crate::data::dataset::DatasetId;
     use crate::data::form;
-    use crate::data::function::Zero;
+    use crate::data::function::{Stated, Zero};
     use crate::num::powers::Power;
     use crate::source::Citation;
 
@@ -106,6 +106,7 @@ mod tests {
             r_of_source: 8.314_51,
             dhf_298: 0.0,
             zero: Zero { enthalpy: true, entropy: true },
+            stated: Stated::default(),
             h298_minus_h0: None,
             warnings: Box::default(),
             is_reference_element: false,

@@ -21,6 +21,7 @@ use crate::model::first_order;
 use crate::model::function::{self, Functions, T_REFERENCE};
 pub use crate::model::heat_capacity::HeatCapacity;
 use crate::model::path::Route;
+use crate::model::stated;
 use crate::model::tabulated;
 use crate::model::terms::{Term, Terms};
 use crate::model::thermo::{AtT, Thermo};
@@ -201,9 +202,23 @@ fn dataset_named(word: &str, data: &Catalog) -> Result<DatasetId, GatherError> {
 }
 
 /// The formation datasets that have every species of the reaction, by precedence.
+///
+/// One that was read beside the notebook is among them only where it has a record of its own of one of the species: a file
+/// that is loaded must not change results that use nothing of it.
 pub fn covering(reaction: &Terms, data: &Catalog) -> Vec<DatasetId> {
-    let has_all = |id: &DatasetId| reaction.terms().iter().all(|term| term_formation(term, id, data).is_some());
-    formation_datasets(data).map(|dataset| dataset.id.clone()).filter(has_all).collect()
+    let terms = || reaction.terms().iter();
+    let serves = |dataset: &&Dataset| {
+        !dataset.own || terms().any(|term| term.own.is_none() && has_own_formation(&term.substance, dataset, data))
+    };
+    let has_all = |dataset: &&Dataset| terms().all(|term| term_formation(term, &dataset.id, data).is_some());
+    formation_datasets(data).filter(serves).filter(has_all).map(|dataset| dataset.id.clone()).collect()
+}
+
+/// Whether the formation enthalpy of a substance would come from a record of this dataset, not of one that it extends.
+fn has_own_formation(substance: &Arc<Substance>, dataset: &Dataset, data: &Catalog) -> bool {
+    let joined = substance.function.as_ref().is_some_and(|function| !function.covers(T_REFERENCE));
+    let phase = if joined { data.reference_phase(substance) } else { Some(Arc::clone(substance)) };
+    phase.is_some_and(|phase| phase.formation(&dataset.id).is_some())
 }
 
 /// Which dataset each term's formation enthalpy is taken from.
@@ -268,10 +283,9 @@ pub(crate) fn term_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -
 
 /// The formation enthalpy of a substance in one dataset: of the phase whose enthalpy scale its function continues.
 pub(crate) fn formation_of(substance: &Arc<Substance>, dataset: &DatasetId, data: &Catalog) -> Option<Figure> {
-    if substance.function.as_ref().is_some_and(|function| !function.covers(T_REFERENCE)) {
-        return formation_at_reference(data.reference_phase(substance)?.as_ref(), dataset);
-    }
-    formation_at_reference(substance, dataset)
+    let joined = substance.function.as_ref().is_some_and(|function| !function.covers(T_REFERENCE));
+    let phase = if joined { data.reference_phase(substance)? } else { Arc::clone(substance) };
+    data.with_extended(dataset).find_map(|dataset| formation_at_reference(&phase, dataset))
 }
 
 fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<Figure> {
@@ -283,8 +297,9 @@ fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<
         way: "",
     };
     if let Some(record) = substance.formation(dataset) {
-        let digit = if record.dhf.is_convention() { None } else { Some(record.dhf.last_place()) };
-        let evaluation = Evaluation { correlation: record.correlation.clone(), ..Evaluation::UNSTATED };
+        let digit = if record.dhf.is_convention() { None } else { Some(record.dhf.last_place) };
+        let (shape, dof) = (record.dhf.shape, record.dhf.dof);
+        let evaluation = Evaluation { shape, dof, correlation: record.correlation.clone() };
         let citation = Some(record.citation.clone());
         let input = Input { u: record.dhf.u, evaluated: evaluation.kept(), digit, citation, ..Input::of(key) };
         // A figure that its table prints in J/mol would stand beside others in kJ/mol.
@@ -390,14 +405,15 @@ pub(crate) fn contribution(
     // Table B and Appendix D of the source are good to 1 J/mol and 0.001 J/(mol K); fewer digits are defensible, none are stated.
     let increment =
         (t_k != T_REFERENCE || !function.covers(T_REFERENCE)).then(|| figure(&taken.increment, HEAT_CAPACITY, 1.0));
-    Ok(Contribution {
+    let plain = Contribution {
         nu: term.nu,
         formation,
         increment,
         entropy: function.zero.entropy.then(|| figure(&taken.entropy, ENTROPY, 0.001)),
         cp: Some(figure(&taken.cp, HEAT_CAPACITY, 0.001)),
         slopes: taken.slopes,
-    })
+    };
+    stated::applied(plain, function, substance)
 }
 
 /// What a substance of one's own contributes, with the heat capacity as the method takes it.

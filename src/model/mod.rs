@@ -35,6 +35,7 @@ pub mod refusal;
 pub mod remedy;
 pub mod review;
 pub mod shortcut;
+mod stated;
 pub mod substance;
 pub mod symbols;
 pub mod tabulated;

@@ -21,6 +21,7 @@ use crate::model::function::{self, T_REFERENCE};
 use crate::model::gather::{self, Figure, FigureOrigin, GatherError};
 use crate::model::path::{FROM_START, Leg, Route};
 use crate::model::property::{self, Property};
+use crate::model::stated;
 use crate::model::terms::{Term, Terms};
 use crate::quantity::Quantity;
 use crate::record::node::{Input, LeafKey};
@@ -198,6 +199,7 @@ fn heated(term: &Term, t_k: f64, from_k: f64, cx: &Cx) -> Result<Heated, Fault> 
     };
     // What is drawn from the function is the difference; start and end of one function are not two figures.
     let difference = Figure { si: end.h - start.h, origin: input.into(), printed: None };
+    let difference = stated::scaled(difference, function, record, stated::energy_dim())?;
     Ok(Heated { nu: term.nu, end: end.h, start: start.h, cp: (end.cp, start.cp), difference })
 }
 

@@ -122,7 +122,7 @@ fn heat_capacity(substance: &Substance) -> Option<Figure> {
 
 fn printed(substance: &Substance, field: &'static str, of: impl Fn(&Formation) -> Option<&Datum>) -> Option<Figure> {
     let (record, datum) = substance.formations.iter().find_map(|record| Some((record, of(record)?)))?;
-    let digit = if datum.is_convention() { None } else { Some(datum.last_place()) };
+    let digit = if datum.is_convention() { None } else { Some(datum.last_place) };
     let citation = Some(record.citation.clone());
     let input = Input { u: datum.u, digit, citation, ..Input::of(key(substance, record, field)) };
     Some(Figure { si: datum.value, origin: input.into(), printed: Some(datum.printed.clone()) })

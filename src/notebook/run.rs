@@ -109,9 +109,11 @@ pub trait Watcher {
     fn updates(&mut self, bundle: &Bundle);
 }
 
-/// Runs everything, and puts what came out into the notebook, where it is one.
+/// Runs everything, and puts what came out into the notebook, where it is one. `file` is its path: what cells read is looked
+/// for beside it.
 pub fn run(file: &str, source: &mut Source, session: &mut Session, watcher: &mut dyn Watcher) -> RunRecord {
     let cells = source.cells();
+    session.set_folder(Path::new(file).parent().map(Path::to_owned).unwrap_or_default());
     let mut ran: Vec<Ran> = Vec::new();
     let mut faults = Vec::new();
     for (nth, (name, text, _)) in cells.iter().enumerate() {

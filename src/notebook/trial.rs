@@ -58,7 +58,7 @@ pub fn trial(
     watcher: &mut dyn Watcher,
 ) -> Result<Trial, Fault> {
     let catalog = Arc::new(holdings.catalog()?.watched());
-    let mut session = Session::with(Arc::clone(stop), References::of(Arc::clone(&catalog), holdings.constants));
+    let mut session = Session::with(Arc::clone(stop), References::of(catalog, holdings.constants));
     session.set_parameters(settings.clone());
     let record = run(file, source, &mut session, watcher);
     let reports = session.reported().into_iter().zip(session.reports());
@@ -67,7 +67,8 @@ pub fn trial(
         dealings: session.dealings(),
         parameters: record.parameters,
         faults: record.faults,
-        asked: catalog.asked(),
+        // Datasets that cells loaded lie over the catalogue, and were asked in its place.
+        asked: session.references().catalog().asked(),
     })
 }
 

@@ -7,6 +7,7 @@ pub mod budget;
 pub mod comparison;
 pub mod curve;
 pub mod cycle;
+pub mod dataset;
 pub mod derivation;
 pub mod gap;
 pub mod headline;

@@ -54,7 +54,8 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
 pub fn with_context<T>(shared: &Shared, place: Option<Place>, work: impl FnOnce(&Cx) -> Result<T, Fault>) -> Native<T> {
     let ordinal = Cell::new(shared.state_mut().next_ordinal());
     let halted = || shared.halted().map(Fault::from);
-    let cx = Cx { references: shared.references(), place: place.clone(), ordinal: &ordinal, halted: &halted };
+    let references = shared.references();
+    let cx = Cx { references: &references, place: place.clone(), ordinal: &ordinal, halted: &halted };
     let done = work(&cx);
     shared.state_mut().skip_ordinals_to(ordinal.get());
     done.map_err(|fault| raise(fault.at(place)))

@@ -13,7 +13,7 @@ use crate::script::fault::translate_syntax;
 use crate::script::prepare::{Prepared, prepare};
 use crate::script::script_error::CALL_LEVELS;
 use crate::script::state::{Halt, Shared};
-use crate::script::{bind, compare, curves, fault, guards, numbers, operators, show, verbs};
+use crate::script::{bind, compare, curves, fault, files, guards, numbers, operators, show, verbs};
 
 /// Nesting of expressions; the engine's default refuses a sum of sixty terms inside a function.
 const EXPRESSION_DEPTH: usize = 512;
@@ -86,6 +86,7 @@ fn register_library(engine: &mut Engine, shared: &Shared) {
     operators::register(engine, shared);
     curves::register(engine, shared);
     verbs::register(engine, shared);
+    files::register(engine, shared);
 }
 
 /// Reads a text. `source` names it in places; positions that the engine reports for it go through `Shared::place`.

@@ -8,6 +8,7 @@ pub mod compare;
 pub mod curves;
 pub mod engine;
 pub mod fault;
+pub mod files;
 pub mod guards;
 pub mod host;
 pub mod literals;

@@ -126,7 +126,8 @@ fn pairs(engine: &mut Engine, shared: &Shared) {
             move |context: NativeCallContext<'_>, a: Quantity, b: Quantity| -> Native<Quantity> {
                 run(&a, &b, place_of(&context)).map_err(|mismatch| {
                     let ordinal = Cell::new(0); // A refusal reads nothing as typed.
-                    let cx = Cx { references: session.references(), place: None, ordinal: &ordinal, halted: &|| None };
+                    let references = session.references();
+                    let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
                     let figure = refusal::figure(&cx, &a, &b, &mismatch);
                     let fault = Fault::from(mismatch).at(place_of(&context));
                     raise(figure.map_or(fault.clone(), |figure| fault.adding(&figure)))

@@ -7,12 +7,15 @@
 use std::cell::{Cell, OnceCell, Ref, RefCell, RefMut};
 use std::collections::{BTreeMap, BTreeSet};
 use std::fmt;
+use std::path::PathBuf;
 use std::rc::Rc;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
 
 use rhai::{NativeCallContext, Position};
 
+use crate::data::catalog::Catalog;
+use crate::data::own::Own;
 use crate::fault::{Explain, Fault, Place};
 use crate::model::card::References;
 use crate::model::review::Dealing;
@@ -37,6 +40,21 @@ pub struct State {
     pub dealings: Vec<Dealing>,
     /// Declared inputs, in order.
     pub parameters: Vec<Parameter>,
+    /// Datasets read beside the notebook, in the order in which they lie over each other.
+    pub loaded: Vec<Loaded>,
+    /// What formulas look up once datasets were loaded: shared, and never changed inside.
+    overlay: Option<Rc<References>>,
+}
+
+/// A dataset read beside the notebook.
+#[derive(Clone, Debug)]
+pub struct Loaded {
+    pub cell: Rc<str>,
+    /// As the cell named it.
+    pub file: String,
+    pub own: Rc<Own>,
+    /// The file as it was read, for a seal.
+    pub bytes: Rc<[u8]>,
 }
 
 /// A reported result.
@@ -65,6 +83,11 @@ impl State {
         self.reports.retain(|one| &*one.cell != cell);
         self.parameters.retain(|one| &*one.cell != cell);
         self.dealings.retain(|one| one.cell != cell);
+        let before = self.loaded.len();
+        self.loaded.retain(|one| &*one.cell != cell);
+        if self.loaded.len() != before {
+            self.overlay = None; // Laid anew by `Shared::enter`.
+        }
     }
 
     /// The next number, from 1.
@@ -122,6 +145,7 @@ pub struct Shared {
     pub host: HostSlot,
     stop: Arc<AtomicBool>,
     references: Rc<References>,
+    folder: Rc<RefCell<PathBuf>>,
     /// Values of parameters that were set from outside, by name.
     settings: Rc<RefCell<BTreeMap<String, String>>>,
     shifts: Rc<RefCell<Shifts>>,
@@ -145,6 +169,7 @@ impl Shared {
             host: HostSlot::default(),
             stop,
             references: Rc::new(references),
+            folder: Rc::default(),
             settings: Rc::default(),
             shifts: Rc::default(),
             source: Rc::new(RefCell::new("".into())),
@@ -157,8 +182,44 @@ impl Shared {
     }
 
     /// What formulas look up.
-    pub fn references(&self) -> &References {
-        &self.references
+    pub fn references(&self) -> Rc<References> {
+        self.state.borrow().overlay.clone().unwrap_or_else(|| Rc::clone(&self.references))
+    }
+
+    /// The state as a cell finds it.
+    pub fn enter(&self, cell: &str) {
+        self.state_mut().enter(cell);
+        let loaded = self.state().loaded.clone();
+        if loaded.is_empty() || self.state().overlay.is_some() {
+            return;
+        }
+        let mut catalog: Option<Catalog> = None;
+        for one in &loaded {
+            let base = catalog.as_ref().unwrap_or_else(|| self.references.catalog());
+            // It was laid over a larger catalogue before, which held all that this one holds.
+            if let Ok((next, _)) = base.overlaid(&one.own) {
+                catalog = Some(next);
+            }
+        }
+        let references = catalog.map(|catalog| References::of(Arc::new(catalog), self.references.constants));
+        self.state_mut().overlay = references.map(Rc::new);
+    }
+
+    /// Lays a dataset over what formulas look up; `catalog` is what that gives.
+    pub fn lay_over(&self, loaded: Loaded, catalog: Catalog) {
+        let references = References::of(Arc::new(catalog), self.references.constants);
+        let mut state = self.state_mut();
+        state.loaded.push(loaded);
+        state.overlay = Some(Rc::new(references));
+    }
+
+    /// The folder of the notebook, from which the names of files count.
+    pub fn folder(&self) -> PathBuf {
+        self.folder.borrow().clone()
+    }
+
+    pub fn set_folder(&self, folder: PathBuf) {
+        self.folder.replace(folder);
     }
 
     /// What a parameter was set to from outside.

@@ -57,6 +57,11 @@ pub const VERBS: &[Verb] = &[
         doc: "Shows a value at once, in the middle of a cell, as the cell's last value is shown.",
     },
     Verb {
+        name: "dataset",
+        signature: "dataset(file)",
+        doc: "Loads records of one's own from a JSON file beside the notebook, and shows what they stand before.",
+    },
+    Verb {
         name: "assumptions",
         signature: "assumptions()",
         doc: "Shows the register: every reported result with its assumptions.",
@@ -267,7 +272,8 @@ pub fn reports(shared: &Shared) -> Vec<Report> {
     let (state, ordinal) = (shared.state(), Cell::new(0));
     // Reviewing reads nothing as typed, so no numbers are given out.
     let halted = || shared.halted().map(Fault::from);
-    let cx = &Cx { references: shared.references(), place: None, ordinal: &ordinal, halted: &halted };
+    let references = shared.references();
+    let cx = &Cx { references: &references, place: None, ordinal: &ordinal, halted: &halted };
     state.reports.iter().map(|one| Report::of(cx, &one.label, &one.value, &state.dealings)).collect()
 }
 

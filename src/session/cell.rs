@@ -70,7 +70,7 @@ impl Session {
             known.entry(name).or_default().insert(count);
         }
         self.shared.set_defined(known);
-        self.shared.state_mut().enter(cell);
+        self.shared.enter(cell);
         self.shared.start_cell();
 
         let engine = &self.engine;

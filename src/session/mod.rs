@@ -8,6 +8,8 @@ pub mod closures;
 pub mod outcome;
 
 use std::collections::{BTreeMap, BTreeSet};
+use std::path::PathBuf;
+use std::rc::Rc;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
 
@@ -19,7 +21,7 @@ use crate::model::review::Dealing;
 use crate::render::Bundle;
 use crate::render::report::Report;
 use crate::script::literals::Literals;
-use crate::script::state::{Parameter, Reported, Shared};
+use crate::script::state::{Loaded, Parameter, Reported, Shared};
 use crate::script::token::{Ending, tokens};
 use crate::script::{engine, verbs, words};
 use crate::units::constants;
@@ -102,6 +104,16 @@ impl Session {
         Ok(shown.unwrap_or_else(|| Bundle::text("")))
     }
 
+    /// Sets the folder in which a notebook's files are looked for; the process's own at first.
+    pub fn set_folder(&mut self, folder: PathBuf) {
+        self.shared.set_folder(folder);
+    }
+
+    /// Datasets that cells have loaded, in the order in which they lie over each other.
+    pub fn loaded(&self) -> Vec<Loaded> {
+        self.shared.state().loaded.clone()
+    }
+
     /// Sets declared parameters from outside, before the first cell runs.
     pub fn set_parameters(&mut self, settings: BTreeMap<String, String>) {
         self.shared.set_parameters(settings);
@@ -140,7 +152,7 @@ impl Session {
     }
 
     /// What formulas look up.
-    pub fn references(&self) -> &References {
+    pub fn references(&self) -> Rc<References> {
         self.shared.references()
     }
 

@@ -1,0 +1,145 @@
+//! Files beside a notebook that a cell reads: a dataset of one's own.
+//!
+//! A name is looked for in the notebook's folder. What was read becomes part of the session's state, so that a cell that
+//! fails leaves no trace of it, and a cell that is run again reads its files anew.
+
+use std::fmt;
+use std::io;
+use std::path::Path;
+use std::rc::Rc;
+
+use rhai::{Engine, FuncRegistration, ImmutableString, NativeCallContext};
+
+use crate::data::near::nearest;
+use crate::data::own;
+use crate::fault::{Explain, Fault};
+use crate::render::dataset as view;
+use crate::script::bind::{Native, with_context};
+use crate::script::state::{Loaded, Shared, place_of};
+use crate::script::verbs::{Display, VERBS};
+use crate::source::{self, Embedded};
+
+/// Files larger than this are none that someone wrote or measured by hand.
+const MOST_BYTES: u64 = 64 << 20;
+
+/// Why a file cannot be read.
+#[derive(Clone, Debug, PartialEq, Eq)]
+enum FileFault {
+    Missing { name: String, folder: String, near: Vec<String> },
+    Unreadable { name: String, why: String },
+    TooLarge { name: String, bytes: u64 },
+}
+
+impl fmt::Display for FileFault {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            FileFault::Missing { name, folder, .. } => write!(f, "there is no file {name} in {folder}"),
+            FileFault::Unreadable { name, why } => write!(f, "the file {name} cannot be read: {why}"),
+            FileFault::TooLarge { name, bytes } => {
+                write!(f, "the file {name} has {} MB, and {} MB are read", bytes >> 20, MOST_BYTES >> 20)
+            }
+        }
+    }
+}
+
+impl Explain for FileFault {
+    fn code(&self) -> &'static str {
+        match self {
+            FileFault::Missing { .. } => "file-missing",
+            FileFault::Unreadable { .. } => "file-beside-unreadable",
+            FileFault::TooLarge { .. } => "file-too-large",
+        }
+    }
+
+    fn hint(&self) -> String {
+        match self {
+            FileFault::Missing { near, .. } if near.is_empty() => {
+                "names are looked for in the folder of the notebook; give the path from there".to_owned()
+            }
+            FileFault::Missing { near, .. } => format!("perhaps {}", near.join(" or ")),
+            FileFault::Unreadable { .. } => "give a file, and see that it may be read".to_owned(),
+            FileFault::TooLarge { .. } => "split it, or take out what is not needed".to_owned(),
+        }
+    }
+}
+
+/// The bytes of a file in the notebook's folder.
+///
+/// # Errors
+/// It is not there, cannot be read, or is too large.
+pub fn read_beside(shared: &Shared, name: &str) -> Result<Vec<u8>, Fault> {
+    let folder = shared.folder();
+    let path = folder.join(name);
+    let failed = |error: io::Error| match error.kind() {
+        io::ErrorKind::NotFound => missing(&folder, name),
+        _ => FileFault::Unreadable { name: name.to_owned(), why: error.to_string() },
+    };
+    let about = std::fs::metadata(&path).map_err(failed)?;
+    if about.is_dir() {
+        return Err(FileFault::Unreadable { name: name.to_owned(), why: "it is a folder".to_owned() }.into());
+    }
+    if about.len() > MOST_BYTES {
+        return Err(FileFault::TooLarge { name: name.to_owned(), bytes: about.len() }.into());
+    }
+    Ok(std::fs::read(&path).map_err(failed)?)
+}
+
+fn missing(folder: &Path, name: &str) -> FileFault {
+    let entries = std::fs::read_dir(folder).into_iter().flatten().flatten();
+    let mut names: Vec<String> = entries.map(|entry| entry.file_name().to_string_lossy().into_owned()).collect();
+    names.sort();
+    let near = nearest(name, names.iter().map(String::as_str), 2).into_iter().map(str::to_owned).collect();
+    let shown = folder.display().to_string();
+    let folder = if shown.is_empty() || shown == "." { "the notebook's folder".to_owned() } else { shown };
+    FileFault::Missing { name: name.to_owned(), folder, near }
+}
+
+/// Two files with one id, or one file read twice.
+#[derive(Clone, Debug, PartialEq, Eq)]
+struct LoadedAlready {
+    file: String,
+    by: String,
+}
+
+impl fmt::Display for LoadedAlready {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        write!(f, "the dataset of {} was loaded already, by {}", self.file, self.by)
+    }
+}
+
+impl Explain for LoadedAlready {
+    fn code(&self) -> &'static str {
+        "dataset-loaded-already"
+    }
+
+    fn hint(&self) -> String {
+        "load it once, in the cell that comes first".to_owned()
+    }
+}
+
+/// Registers the functions that read files.
+pub fn register(engine: &mut Engine, shared: &Shared) {
+    let doc = VERBS.iter().find(|verb| verb.name == "dataset").map_or("", |verb| verb.doc);
+    let shared = shared.clone();
+    FuncRegistration::new("dataset").with_comments([format!("/// {doc}")]).register_into_engine(
+        engine,
+        move |context: NativeCallContext<'_>, name: ImmutableString| -> Native<Display> {
+            with_context(&shared, place_of(&context), |_| load(&shared, &name))
+        },
+    );
+}
+
+fn load(shared: &Shared, name: &str) -> Result<Display, Fault> {
+    let bytes = read_beside(shared, name)?;
+    if let Some(earlier) = shared.state().loaded.iter().find(|earlier| earlier.file == name) {
+        return Err(LoadedAlready { file: name.to_owned(), by: earlier.cell.to_string() }.into());
+    }
+    let sha256 = source::sha256(&bytes);
+    let base = shared.references();
+    let own = own::read(&Embedded { path: name, bytes: &bytes, sha256: &sha256 }, base.catalog())?;
+    let (catalog, told) = base.catalog().overlaid(&own)?;
+    let shown = view::bundle(&own, &told);
+    let cell = shared.state().cell.clone();
+    shared.lay_over(Loaded { cell, file: name.to_owned(), own: Rc::new(own), bytes: bytes.into() }, catalog);
+    Ok(Display(Rc::new(shown)))
+}
