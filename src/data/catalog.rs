@@ -21,6 +21,7 @@ use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::{self, Coefficients, Formation};
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
+use super::molecule::Constants;
 use super::names::Names;
 use super::records::element_entity;
 use super::substance::Substance;
@@ -48,6 +49,8 @@ pub(super) struct Contents {
     pub substances: BTreeMap<Arc<str>, Arc<Substance>>,
     /// Substance id to its transitions, by temperature.
     pub transitions: BTreeMap<Arc<str>, Vec<Arc<Transition>>>,
+    /// Substance id to the constants of its molecule.
+    pub molecules: BTreeMap<Arc<str>, Arc<Constants>>,
     pub names: Arc<Names>,
     pub lookup: Lookup,
     pub weights: Arc<BTreeMap<Element, AtomicWeight>>,
@@ -69,8 +72,17 @@ impl Catalog {
 
     /// The tables among some files; a dataset whose file is missing is simply not there.
     pub fn from_files(files: &[Embedded<'_>]) -> Result<Catalog, TableFault> {
-        let Tables { datasets, functions, mut formations, coefficients, transitions, critical, names, weights } =
-            Tables::read(files)?;
+        let Tables {
+            datasets,
+            functions,
+            mut formations,
+            coefficients,
+            transitions,
+            critical,
+            molecules,
+            names,
+            weights,
+        } = Tables::read(files)?;
         let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
         for group in coefficients {
             correlate(group, &mut formations, id)?;
@@ -117,8 +129,9 @@ impl Catalog {
             transitions.sort_by(|left, right| left.t_k.total_cmp(&right.t_k));
         }
         let lookup = Lookup::new(&names, substances.values().map(|substance: &Arc<Substance>| &**substance));
+        let molecules = molecules.into_iter().map(|one| (id(&one.id), Arc::new(one))).collect();
         let (names, weights) = (Arc::new(names), Arc::new(weights));
-        let contents = Contents { datasets, substances, transitions: by_substance, names, lookup, weights };
+        let contents = Contents { datasets, substances, transitions: by_substance, molecules, names, lookup, weights };
         Ok(Catalog { contents: Arc::new(contents), asked: None })
     }
 
@@ -223,6 +236,16 @@ impl Catalog {
             at += 1;
         }
         None
+    }
+
+    /// The constants of a gas's molecule.
+    pub fn molecule(&self, substance: &Substance) -> Option<&Arc<Constants>> {
+        self.contents.molecules.get(substance.id())
+    }
+
+    /// All molecules on record, by id.
+    pub fn molecules(&self) -> impl Iterator<Item = &Arc<Constants>> {
+        self.contents.molecules.values()
     }
 
     /// Substances whose id or name holds a text, upper and lower case alike: those that start with it first.

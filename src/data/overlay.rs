@@ -106,8 +106,15 @@ impl Catalog {
             }
         }
         let lookup = Lookup::new(&base.names, substances.values().map(|substance: &Arc<Substance>| &**substance));
-        let (names, weights) = (base.names.clone(), base.weights.clone());
-        let contents = Contents { datasets, substances, transitions, names, lookup, weights };
+        let contents = Contents {
+            datasets,
+            substances,
+            transitions,
+            molecules: base.molecules.clone(),
+            names: base.names.clone(),
+            lookup,
+            weights: base.weights.clone(),
+        };
         Ok((self.watched_alike(contents), told))
     }
 
