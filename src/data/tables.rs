@@ -3,6 +3,9 @@
 //! [`Tables`] sorts files by the schema that each names in its first line, so a new dataset is one new file and a
 //! dataset that is taken away is missed by nobody. Files of other schemas belong to other modules and are passed over.
 
+use std::collections::BTreeMap;
+
+use crate::chem::element::{self, AtomicWeight, Element};
 use crate::source::Embedded;
 
 use super::dataset::{Dataset, TableFault};
@@ -24,6 +27,8 @@ pub(super) struct Tables {
     pub pressure: pressure::Read,
     pub molecules: Vec<Constants>,
     pub names: Names,
+    /// Of the first table that has the element.
+    pub weights: BTreeMap<Element, AtomicWeight>,
 }
 
 impl Tables {
@@ -39,6 +44,12 @@ impl Tables {
                 Some(pressure::SCHEMA) => pressure::read(file, &mut tables.pressure)?,
                 Some(molecule::SCHEMA) => molecule::read(file, &mut tables.molecules)?,
                 Some(names::SCHEMA) => names::read(file, &mut tables.names)?,
+                Some(element::SCHEMA) => {
+                    let unreadable = |why| TableFault::Unreadable { path: file.path.to_owned(), why };
+                    for (element, weight) in element::read_weights(file.bytes).map_err(unreadable)? {
+                        tables.weights.entry(element).or_insert(weight);
+                    }
+                }
                 _ => {}
             }
         }
