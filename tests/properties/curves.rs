@@ -22,11 +22,24 @@ use hessbook::record::spread::Spread;
 const PROPERTIES: [&Card; 7] =
     [&ENTHALPY, &INTERNAL_ENERGY, &GIBBS_ENERGY, &HELMHOLTZ_ENERGY, &ENTROPY, &HEAT_CAPACITY, &EQUILIBRIUM_CONSTANT];
 
-fn options(mode: &str) -> Value {
-    Value::Options(Rc::new(BTreeMap::from([("heat_capacity".to_owned(), Value::Text(mode.into()))])))
+/// The options that a way of taking Cp needs; the first-order one is taken about 500 K.
+fn words(mode: &'static str) -> Vec<(&'static str, &'static str)> {
+    let about = (mode == "taylor").then_some(("about", "500 K"));
+    std::iter::once(("heat_capacity", mode)).chain(about).collect()
 }
 
-fn curve(desk: &Desk, property: &'static Card, equation: &str, grid: &Rc<Grid>, mode: &str) -> Option<Rc<Curve>> {
+fn options(mode: &'static str) -> Value {
+    let options = words(mode).into_iter().map(|(name, word)| (name.to_owned(), Value::Text(word.into())));
+    Value::Options(Rc::new(options.collect::<BTreeMap<_, _>>()))
+}
+
+fn curve(
+    desk: &Desk,
+    property: &'static Card,
+    equation: &str,
+    grid: &Rc<Grid>,
+    mode: &'static str,
+) -> Option<Rc<Curve>> {
     let reaction = card::call(&desk.cx(), &REACTION, vec![Value::Text(equation.into())]).unwrap();
     let given = vec![reaction, Value::Grid(Rc::clone(grid)), options(mode)];
     match card::call(&desk.cx(), property, given) {
@@ -60,7 +73,7 @@ fn each_row_is_the_single_call() {
         let Some(curve) = curve(&desk, property, &equation, &grid, mode) else { return Ok(()) };
         prop_assert_eq!(curve.numbers().len(), points);
         for (row, t_k) in grid.points_k().iter().enumerate() {
-            let single = desk.ask(property, &equation, &format!("{t_k} K"), &[("heat_capacity", mode)]).unwrap();
+            let single = desk.ask(property, &equation, &format!("{t_k} K"), &words(mode)).unwrap();
             let of_curve = curve.row(row).unwrap();
             prop_assert_eq!(curve.numbers()[row].to_bits(), single.si().to_bits(), "{} at {} K", &equation, t_k);
             prop_assert_eq!(of_curve.si().to_bits(), single.si().to_bits());
