@@ -19,6 +19,7 @@ use crate::fault::{Explain, Fault};
 use crate::model::card::Cx;
 use crate::model::first_order;
 use crate::model::function::{self, Functions, T_REFERENCE};
+use crate::model::given::Given;
 pub use crate::model::heat_capacity::HeatCapacity;
 use crate::model::path::Route;
 use crate::model::stated;
@@ -158,10 +159,12 @@ impl Explain for GatherError {
 }
 
 /// How a reaction property is to be computed.
-#[derive(Clone, Debug, PartialEq)]
+#[derive(Clone, Debug)]
 pub struct Method {
     pub heat_capacity: HeatCapacity,
     pub formation: Formation,
+    /// The pressure, and how it is taken; `None`: standard values.
+    pub given: Option<Given>,
 }
 
 impl Method {
@@ -180,7 +183,7 @@ impl Method {
             Some("mixed") => Formation::Mixed,
             Some(word) => Formation::Of(dataset_named(word, data)?),
         };
-        Ok(Method { heat_capacity, formation })
+        Ok(Method { heat_capacity, formation, given: None })
     }
 }
 
@@ -306,7 +309,8 @@ fn formation_datasets(data: &Catalog) -> impl Iterator<Item = &Dataset> {
 /// The formation enthalpy of a term: a substance of one's own brings it, whichever dataset serves the others.
 pub(crate) fn term_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -> Option<Figure> {
     match &term.own {
-        Some(own) => own.formation(),
+        Some(own) if own.dataset().is_none_or(|only| only == dataset) => own.formation(),
+        Some(_) => None,
         None => formation_of(&term.substance, dataset, data),
     }
 }

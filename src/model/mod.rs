@@ -4,6 +4,7 @@
 
 pub mod answer;
 pub mod argument;
+pub mod association;
 pub mod basis;
 pub mod budget;
 pub mod card;
@@ -15,12 +16,14 @@ pub mod conditions;
 pub mod curve;
 pub mod curve_card;
 pub mod cycle;
+pub mod decomposition;
 pub mod derivation;
 pub mod expanded;
 pub mod first_order;
 pub mod function;
 pub mod gap;
 pub mod gather;
+pub mod given;
 pub mod grid;
 pub mod heat_capacity;
 pub mod linearity;
@@ -28,6 +31,8 @@ pub mod mass;
 pub mod molecule;
 pub mod monte_carlo;
 pub mod path;
+pub mod plant;
+pub mod pressure;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
@@ -48,6 +53,8 @@ pub mod tabulated;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
+pub mod vapour;
+pub mod virial;
 
 use card::Card;
 
@@ -71,6 +78,9 @@ pub const CARDS: &[&Card] = &[
     &property_card::SUBSTANCE_HELMHOLTZ_ENERGY,
     &property_card::SUBSTANCE_ENTROPY,
     &property_card::SUBSTANCE_HEAT_CAPACITY,
+    &vapour::VAPOUR_PRESSURE,
+    &vapour::BOILING_POINT,
+    &vapour::VAPORISATION_ENTHALPY,
     &substance::ENTHALPY_INCREMENT,
     &substance::REACTION_INCREMENT,
     &molecule::limits::MOLECULE,
@@ -92,6 +102,11 @@ pub const CARDS: &[&Card] = &[
     &remedy::WIDENED,
     &shortcut::VALID_TO,
     &shortcut::COMPARE_SHORTCUTS,
+    &plant::stream::STREAM,
+    &plant::balance::HEAT_BALANCE,
+    &plant::adiabatic::ADIABATIC_TEMPERATURE,
+    &plant::rise::TEMPERATURE_RISE,
+    &plant::rise::RISE_OF_FIGURES,
     &grid::GRID,
     &grid::GRID_OF,
     &curve_card::X,

@@ -3,7 +3,8 @@
 //! The closed forms of `function` over a sorted grid: ln T once for all species, the constants of an interval once for all
 //! points in it, and no memory per point. The order of the additions is that of [`property::evaluate`], which this must
 //! never leave: `tests/properties/curves.rs` compares the bits. The surprise: only what every record says of itself is done
-//! here; where a phase changes on the way, or a substance of one's own stands in the reaction, the single call is asked.
+//! here; where a phase changes on the way, a pressure is given, or a substance of one's own stands in the reaction, the
+//! single call is asked.
 
 use std::ops::Range;
 
@@ -49,7 +50,7 @@ fn pass(
     out: &mut [f64],
     cx: &Cx,
 ) -> Option<Range<usize>> {
-    if method.heat_capacity != HeatCapacity::Full {
+    if method.heat_capacity != HeatCapacity::Full || method.given.is_some() {
         return None;
     }
     let lines = lines(terms, method, cx)?;
