@@ -21,6 +21,7 @@ use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
+use crate::model::table::Table;
 use crate::model::terms::Terms;
 use crate::quantity::{Mismatch, Quantity, text};
 use crate::record::node::{Node, Step};
@@ -44,6 +45,8 @@ pub enum Value {
     /// Temperatures at which a formula is asked in one call.
     Grid(Rc<Grid>),
     Curve(Rc<Curve>),
+    /// Figures with units that were read from a file.
+    Table(Rc<Table>),
     /// What was asked of an uncertainty.
     Answer(Answer),
     /// Something no formula takes, by its name in words.
@@ -66,6 +69,7 @@ impl Value {
             Value::Molecule(_) => "a molecule",
             Value::Grid(_) => "a grid of temperatures",
             Value::Curve(_) => "a curve",
+            Value::Table(_) => "a table",
             Value::Answer(answer) => answer.sort(),
             Value::Other(name) => name,
             Value::Nothing => "nothing",
@@ -82,6 +86,7 @@ pub enum On {
     Substance,
     Molecule,
     Curve,
+    Table,
 }
 
 /// What an argument takes.
@@ -331,6 +336,7 @@ impl Step for Call {
                 Value::Molecule(molecule) => words.push(molecule.text().to_owned()),
                 Value::Grid(grid) => words.push(grid.words()),
                 Value::Curve(curve) => words.push(curve.words()),
+                Value::Table(table) => words.push(table.name.to_string()),
                 Value::Options(options) => {
                     words.extend(options.iter().filter_map(|(name, value)| match value {
                         Value::Text(word) => Some(format!("{name}: {word}")),
@@ -407,6 +413,7 @@ impl Card {
             On::Substance => "substance.",
             On::Molecule => "molecule.",
             On::Curve => "curve.",
+            On::Table => "table.",
         };
         format!("{receiver}{}({})", self.name, args.join(", "))
     }

@@ -396,6 +396,7 @@ fn written(value: &Value, numbers: &Numbers) -> String {
         Value::Molecule(molecule) => molecule.text().to_owned(),
         Value::Grid(grid) => grid.words(),
         Value::Curve(curve) => curve.words(),
+        Value::Table(table) => table.name.to_string(),
         Value::List(list) => list.iter().map(|item| written(item, numbers)).collect::<Vec<_>>().join(", "),
         Value::Options(options) => {
             let option = |(name, value): (&String, &Value)| format!("{name}: {}", written(value, numbers));

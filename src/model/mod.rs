@@ -41,6 +41,8 @@ mod stated;
 pub mod statmech;
 pub mod substance;
 pub mod symbols;
+pub mod table;
+pub mod table_card;
 pub mod tabulated;
 pub mod terms;
 pub mod thermo;
@@ -100,6 +102,9 @@ pub const CARDS: &[&Card] = &[
     &curve_card::MIN,
     &curve_card::MAX,
     &curve_card::CROSSINGS,
+    &table_card::COLUMNS,
+    &table_card::COLUMN,
+    &table_card::CURVE,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,

@@ -12,6 +12,7 @@
 //! | Δn(gas) | 1           | sum of ν of the gases, derived from the phases                     |
 //! | R       | J/(mol K)   | gas constant of the current constant set                           |
 //!
+//! Where a condensed species changes phase between 298.15 K and T, the recorded changes are part of H and S (`path`).
 //! Each species pure, in its standard state, p° = 1 bar. ΔrU° and ΔrA° take gases as ideal and neglect the volume of
 //! condensed species (`ideal-gas`, `condensed-volume-neglected`).
 //! Source: definitions of H, G, A; (∂H/∂T)p = Cp; IUPAC Green Book, 3rd ed., section 2.11 (from memory).

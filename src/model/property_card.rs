@@ -239,7 +239,8 @@ reaction_card!(
     ENTHALPY_CLAIMS,
     "ΔrH° per mole of reaction as written",
     "Reaction enthalpy at T. ΔrH°(T) = Σ ν [ΔfH°(298.15 K) + H(T) - H(298.15 K)], each species pure, in its standard \
-     state, p° = 1 bar; formation enthalpies from one dataset."
+     state, p° = 1 bar; formation enthalpies from one dataset. Recorded changes between condensed phases on the way are \
+     included."
 );
 reaction_card!(
     INTERNAL_ENERGY,

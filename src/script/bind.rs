@@ -20,6 +20,7 @@ use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
+use crate::model::table::Table;
 use crate::quantity::{Quantity, text};
 use crate::script::fault::raise;
 use crate::script::state::{Shared, place_of};
@@ -86,6 +87,7 @@ fn receiver(on: On) -> Option<TypeId> {
         On::Substance => Some(TypeId::of::<Rc<PureSubstance>>()),
         On::Molecule => Some(TypeId::of::<Rc<Molecule>>()),
         On::Curve => Some(TypeId::of::<Rc<Curve>>()),
+        On::Table => Some(TypeId::of::<Rc<Table>>()),
     }
 }
 
@@ -108,6 +110,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     }
     if let Some(curve) = value.read_lock::<Rc<Curve>>() {
         return Value::Curve(Rc::clone(&curve));
+    }
+    if let Some(table) = value.read_lock::<Rc<Table>>() {
+        return Value::Table(Rc::clone(&table));
     }
     if let Some(answer) = value.read_lock::<Answer>() {
         return Value::Answer(answer.clone());
@@ -150,6 +155,7 @@ fn from_value(value: Value) -> Dynamic {
         Value::Molecule(molecule) => Dynamic::from(molecule),
         Value::Grid(grid) => Dynamic::from(grid),
         Value::Curve(curve) => Dynamic::from(curve),
+        Value::Table(table) => Dynamic::from(table),
         Value::Answer(answer) => Dynamic::from(answer),
         Value::Nothing => Dynamic::UNIT,
     }

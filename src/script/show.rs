@@ -16,6 +16,7 @@ use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
+use crate::model::table::Table;
 use crate::quantity::Quantity;
 use crate::render::{self, Bundle};
 use crate::script::verbs::Display;
@@ -36,6 +37,9 @@ fn own(value: &Dynamic) -> Option<Bundle> {
     }
     if let Some(curve) = value.read_lock::<Rc<Curve>>() {
         return Some(render::curve::bundle(&curve));
+    }
+    if let Some(table) = value.read_lock::<Rc<Table>>() {
+        return Some(render::table::bundle(&table));
     }
     if let Some(grid) = value.read_lock::<Rc<Grid>>() {
         return Some(Bundle::text(grid.words()));
