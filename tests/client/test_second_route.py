@@ -381,13 +381,15 @@ def forms_of_hydrogen(record, weights, t_k, frozen):
     """Cp and S of rotation and vibration over R, by the sum over v and J in full, from the shipped constants."""
     we, wexe, be, alpha = (float(record[name]) for name in ("we", "wexe", "Be", "alpha_e"))
     de = 4 * be**3 / we**2  # Kratzer's relation
+    he = 2 * de * (12 * be**2 - alpha * we) / (3 * we**2)
     v, j = np.meshgrid(np.arange(40.0), np.arange(80.0), indexing="ij")
     jj = j * (j + 1)
-    e = we * (v + 0.5) - wexe * (v + 0.5) ** 2 + (be - alpha * (v + 0.5)) * jj - de * jj**2
+    e = we * (v + 0.5) - wexe * (v + 0.5) ** 2 + (be - alpha * (v + 0.5)) * jj - de * jj**2 + he * jj**3
     lowest = e[0, 0]
     # Up to 1000 K nothing counts beyond 30 kT, far below where either ladder turns.
-    kept = (e - lowest < 0.8 * (we**2 / 4 / wexe - lowest)) & (np.diff(e, axis=1, append=np.inf) > 0)
-    kept &= np.diff(e, axis=0, append=-np.inf) > 0
+    kept = (e - lowest < 0.8 * (we**2 / 4 / wexe - lowest)) & (np.diff(e, axis=1, prepend=-np.inf) > 0)
+    kept &= np.diff(e, axis=0, prepend=-np.inf) > 0
+    kept = np.logical_and.accumulate(kept, axis=1)
 
     def of(level, weight):
         x = C2 * (level - level.min()) / t_k
