@@ -4,6 +4,7 @@
 
 pub mod answer;
 pub mod argument;
+pub mod association;
 pub mod basis;
 pub mod budget;
 pub mod card;
@@ -15,6 +16,7 @@ pub mod conditions;
 pub mod curve;
 pub mod curve_card;
 pub mod cycle;
+pub mod decomposition;
 pub mod derivation;
 pub mod expanded;
 pub mod first_order;
@@ -28,6 +30,7 @@ pub mod mass;
 pub mod molecule;
 pub mod monte_carlo;
 pub mod path;
+pub mod plant;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
@@ -91,6 +94,11 @@ pub const CARDS: &[&Card] = &[
     &remedy::WIDENED,
     &shortcut::VALID_TO,
     &shortcut::COMPARE_SHORTCUTS,
+    &plant::stream::STREAM,
+    &plant::balance::HEAT_BALANCE,
+    &plant::adiabatic::ADIABATIC_TEMPERATURE,
+    &plant::rise::TEMPERATURE_RISE,
+    &plant::rise::RISE_OF_FIGURES,
     &grid::GRID,
     &grid::GRID_OF,
     &curve_card::X,

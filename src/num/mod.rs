@@ -5,4 +5,5 @@ pub mod math;
 pub mod powers;
 pub mod random;
 pub mod rational;
+pub mod root;
 pub mod student;

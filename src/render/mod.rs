@@ -3,6 +3,7 @@
 //! A [`Bundle`] holds one output in several forms. A report's forms are all made from one [`report::Report`], so that
 //! text, HTML, LaTeX and the machine record cannot disagree.
 
+pub mod balance;
 pub mod budget;
 pub mod cells;
 pub mod comparison;
@@ -83,6 +84,7 @@ pub fn answer(answer: &Answer) -> Bundle {
         Answer::Comparison(comparison) => comparison::bundle(comparison),
         Answer::Cycle(cycle) => cycle::bundle(cycle),
         Answer::Gap(gap) => gap::bundle(gap),
+        Answer::HeatBalance(balance) => balance::bundle(balance),
         Answer::Shares(shares) => molecule::shares(shares),
         Answer::PowerFit(fit) => molecule::power_fit(fit),
         Answer::Validity(validity) => shortcut::validity(validity),

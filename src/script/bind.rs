@@ -18,6 +18,7 @@ use crate::model::card::{self, Card, Cx, On, Value};
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
+use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::model::table::Table;
@@ -34,6 +35,7 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
     engine.register_type_with_name::<Quantity>("quantity");
     engine.register_type_with_name::<Rc<Reaction>>("reaction");
     engine.register_type_with_name::<Rc<PureSubstance>>("substance");
+    engine.register_type_with_name::<Rc<Stream>>("stream");
     engine.register_type_with_name::<Rc<Molecule>>("molecule");
     for name in ["to_string", "to_debug"] {
         engine.register_fn(name, |reaction: &mut Rc<Reaction>| reaction.text().to_owned());
@@ -102,6 +104,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
         return Value::Substance(Rc::clone(&substance));
     }
+    if let Some(stream) = value.read_lock::<Rc<Stream>>() {
+        return Value::Stream(Rc::clone(&stream));
+    }
     if let Some(molecule) = value.read_lock::<Rc<Molecule>>() {
         return Value::Molecule(Rc::clone(&molecule));
     }
@@ -152,6 +157,7 @@ fn from_value(value: Value) -> Dynamic {
         ),
         Value::Reaction(reaction) => Dynamic::from(reaction),
         Value::Substance(substance) => Dynamic::from(substance),
+        Value::Stream(stream) => Dynamic::from(stream),
         Value::Molecule(molecule) => Dynamic::from(molecule),
         Value::Grid(grid) => Dynamic::from(grid),
         Value::Curve(curve) => Dynamic::from(curve),

@@ -14,6 +14,7 @@ use crate::model::answer::Answer;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
+use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::model::table::Table;
@@ -52,6 +53,9 @@ fn own(value: &Dynamic) -> Option<Bundle> {
     }
     if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
         return Some(render::substance(&substance));
+    }
+    if let Some(stream) = value.read_lock::<Rc<Stream>>() {
+        return Some(render::balance::stream(&stream));
     }
     if let Some(molecule) = value.read_lock::<Rc<Molecule>>() {
         return Some(render::molecule::bundle(&molecule));
