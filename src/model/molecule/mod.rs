@@ -163,8 +163,8 @@ impl Built {
                     let solved = torsion.torsion();
                     let part = if free { Rc::new(solved.free()) } else { Rc::clone(solved) };
                     let parameters = [std::slice::from_ref(&torsion.f), &torsion.cosines, &torsion.sines].concat();
-                    let kind = if free { "free" } else { "hindered" };
-                    let name = format!("{kind} internal rotation, F = {}", parameter::per_cm(torsion.f.value));
+                    let kind = if free { "free torsion" } else { "torsion" };
+                    let name = format!("{kind}, F = {}", parameter::per_cm(torsion.f.value));
                     self.add(equipartition(Part::Torsion(part), treatment), name, parameters);
                 }
             }
