@@ -39,6 +39,8 @@ pub enum Formation {
     Of(DatasetId),
     /// For each species the first dataset that has it, mixed on the analyst's demand.
     Mixed,
+    /// None: what is asked does not contain them.
+    Unneeded,
 }
 
 /// A printed figure or a function's value, with where it comes from.
@@ -208,7 +210,7 @@ fn dataset_named(word: &str, data: &Catalog) -> Result<DatasetId, GatherError> {
 pub fn covering(reaction: &Terms, data: &Catalog) -> Vec<DatasetId> {
     let terms = || reaction.terms().iter();
     let serves = |dataset: &&Dataset| {
-        !dataset.own || terms().any(|term| term.own.is_none() && has_own_formation(&term.substance, dataset, data))
+        !dataset.own || terms().any(|term| has_own_formation(&term.substance, dataset, data))
     };
     let has_all = |dataset: &&Dataset| terms().all(|term| term_formation(term, &dataset.id, data).is_some());
     formation_datasets(data).filter(serves).filter(has_all).map(|dataset| dataset.id.clone()).collect()
@@ -237,6 +239,7 @@ pub fn datasets_for(reaction: &Terms, formation: &Formation, data: &Catalog) -> 
             }
             Ok(vec![id.clone(); terms.len()])
         }
+        Formation::Unneeded => Ok(vec![DatasetId::new(""); terms.len()]),
         Formation::First => match covering(reaction, data).into_iter().next() {
             Some(id) => Ok(vec![id; terms.len()]),
             None => Err(GatherError::NotCovered { missing: missing_words(reaction, data) }),
@@ -276,7 +279,8 @@ fn formation_datasets(data: &Catalog) -> impl Iterator<Item = &Dataset> {
 /// The formation enthalpy of a term: a substance of one's own brings it, whichever dataset serves the others.
 pub(crate) fn term_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -> Option<Figure> {
     match &term.own {
-        Some(own) => own.formation(),
+        // A measured heat capacity leaves the formation enthalpy to the tables.
+        Some(own) => own.formation().or_else(|| formation_of(&term.substance, dataset, data)),
         None => formation_of(&term.substance, dataset, data),
     }
 }
@@ -367,7 +371,8 @@ pub(crate) fn contribution(
     }
     let (substance, data) = (&term.substance, cx.data());
     let formation =
-        term_formation(term, dataset, data).unwrap_or_else(|| unreachable!("the dataset was found to have it"));
+        // Only what does not contain it is asked of a dataset that lacks it.
+        term_formation(term, dataset, data).unwrap_or_else(|| Figure::of_nodes(0.0, []));
     if let Some(own) = &term.own {
         return of_own(own.as_ref(), term, formation, t_k, mode, cx);
     }

@@ -17,6 +17,9 @@ pub mod cycle;
 pub mod derivation;
 pub mod expanded;
 pub mod first_order;
+pub mod fit;
+pub mod fit_card;
+pub mod fit_error;
 pub mod function;
 pub mod gap;
 pub mod gather;
@@ -65,6 +68,8 @@ pub const CARDS: &[&Card] = &[
     &property_card::SUBSTANCE_HELMHOLTZ_ENERGY,
     &property_card::SUBSTANCE_ENTROPY,
     &property_card::SUBSTANCE_HEAT_CAPACITY,
+    &fit_card::FIT_HEAT_CAPACITY,
+    &fit_card::INTERPOLATE_HEAT_CAPACITY,
     &substance::ENTHALPY_INCREMENT,
     &substance::REACTION_INCREMENT,
     &remedy::CORRECTED,

@@ -23,6 +23,7 @@ use crate::model::path::{FROM_START, Leg, Route};
 use crate::model::property::{self, Property};
 use crate::model::stated;
 use crate::model::terms::{Term, Terms};
+use crate::model::thermo::Thermo;
 use crate::quantity::Quantity;
 use crate::record::node::{Input, LeafKey};
 use crate::units::constants::STANDARD_PRESSURE;
@@ -37,6 +38,18 @@ impl PureSubstance {
     pub fn new(substance: Arc<Substance>) -> Self {
         let (per, text) = (substance.species.entity, substance.id().to_owned());
         PureSubstance { terms: Terms::new(vec![Term::of_tables(substance, 1.0)], per, text) }
+    }
+
+    /// A substance that is no record: what answers for it stands beside its name.
+    pub fn own(substance: Arc<Substance>, own: Rc<dyn Thermo>) -> Self {
+        let (per, text) = (substance.species.entity, substance.id().to_owned());
+        let term = Term { own: Some(own), ..Term::of_tables(substance, 1.0) };
+        PureSubstance { terms: Terms::new(vec![term], per, text) }
+    }
+
+    /// What answers for it in place of the tables.
+    pub fn thermo(&self) -> Option<&Rc<dyn Thermo>> {
+        self.terms.terms()[0].own.as_ref()
     }
 
     pub fn record(&self) -> &Arc<Substance> {

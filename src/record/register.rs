@@ -16,6 +16,7 @@ pub const CLAIMS: &[(&str, &str)] = &[
     ("constant-heat-capacity", "the heat capacities change too little with temperature to matter"),
     ("aqueous-heat-capacity", "the heat capacities of the solutes at 298.15 K hold up to this temperature"),
     ("stable-phase", "each species is in the stable phase of its composition at this temperature and pressure"),
+    ("fit-quality", "the fit follows the measured heat capacities, and T lies among them"),
     ("ideal-gas", "the gases are ideal"),
     ("condensed-volume-neglected", "the volume of liquids and solids is too small to matter"),
     ("saturated-vapour-ideal", "the saturated vapour is ideal, and the liquid has no volume beside it"),

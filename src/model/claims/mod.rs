@@ -3,6 +3,7 @@
 //! One file for each noun that is assumed of. Every test computes the alternative with the same code as the value itself.
 
 mod alternatives;
+mod fit;
 mod formation;
 mod heat_capacity;
 mod phase;
@@ -13,6 +14,7 @@ pub use alternatives::{
     with_atmosphere, with_constant_heat_capacity, with_enthalpy, with_internal_energy, with_mean_heat_capacity,
     with_midpoint_heat_capacity, with_missed_phase_change, without_correction,
 };
+pub use fit::fit_quality;
 pub use formation::formation_dataset;
 pub use heat_capacity::{aqueous_heat_capacity, constant_heat_capacity};
 pub use phase::stable_phase;
