@@ -20,6 +20,7 @@ use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::{self, Coefficients, Formation};
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
+use super::molecule::Constants;
 use super::names::Names;
 use super::substance::Substance;
 use super::tables::Tables;
@@ -46,6 +47,8 @@ pub(super) struct Contents {
     pub substances: BTreeMap<Arc<str>, Arc<Substance>>,
     /// Substance id to its transitions, by temperature.
     pub transitions: BTreeMap<Arc<str>, Vec<Arc<Transition>>>,
+    /// Substance id to the constants of its molecule.
+    pub molecules: BTreeMap<Arc<str>, Arc<Constants>>,
     pub names: Arc<Names>,
     pub lookup: Lookup,
 }
@@ -66,7 +69,7 @@ impl Catalog {
 
     /// The tables among some files; a dataset whose file is missing is simply not there.
     pub fn from_files(files: &[Embedded<'_>]) -> Result<Catalog, TableFault> {
-        let Tables { datasets, functions, mut formations, coefficients, transitions, critical, names } =
+        let Tables { datasets, functions, mut formations, coefficients, transitions, critical, molecules, names } =
             Tables::read(files)?;
         let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
         for group in coefficients {
@@ -114,7 +117,9 @@ impl Catalog {
             transitions.sort_by(|left, right| left.t_k.total_cmp(&right.t_k));
         }
         let lookup = Lookup::new(&names, substances.values().map(|substance: &Arc<Substance>| &**substance));
-        let contents = Contents { datasets, substances, transitions: by_substance, names: Arc::new(names), lookup };
+        let molecules = molecules.into_iter().map(|one| (id(&one.id), Arc::new(one))).collect();
+        let names = Arc::new(names);
+        let contents = Contents { datasets, substances, transitions: by_substance, molecules, names, lookup };
         Ok(Catalog { contents: Arc::new(contents), asked: None })
     }
 
@@ -213,6 +218,16 @@ impl Catalog {
             at += 1;
         }
         None
+    }
+
+    /// The constants of a gas's molecule.
+    pub fn molecule(&self, substance: &Substance) -> Option<&Arc<Constants>> {
+        self.contents.molecules.get(substance.id())
+    }
+
+    /// All molecules on record, by id.
+    pub fn molecules(&self) -> impl Iterator<Item = &Arc<Constants>> {
+        self.contents.molecules.values()
     }
 
     /// Substances whose id or name holds a text, upper and lower case alike: those that start with it first.

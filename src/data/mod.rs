@@ -9,6 +9,7 @@ pub mod form;
 pub mod formation;
 pub mod function;
 pub mod lookup;
+pub mod molecule;
 mod names;
 pub mod near;
 pub mod overlay;

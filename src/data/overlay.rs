@@ -106,7 +106,14 @@ impl Catalog {
             }
         }
         let lookup = Lookup::new(&base.names, substances.values().map(|substance: &Arc<Substance>| &**substance));
-        let contents = Contents { datasets, substances, transitions, names: base.names.clone(), lookup };
+        let contents = Contents {
+            datasets,
+            substances,
+            transitions,
+            molecules: base.molecules.clone(),
+            names: base.names.clone(),
+            lookup,
+        };
         Ok((self.watched_alike(contents), told))
     }
 

@@ -9,9 +9,10 @@ use super::critical::CriticalTemperature;
 use super::dataset::{Dataset, TableFault};
 use super::formation::{Coefficients, Formation};
 use super::function::Function;
+use super::molecule::Constants;
 use super::names::Names;
 use super::transition::Transition;
-use super::{critical, formation, function, names, transition};
+use super::{critical, formation, function, molecule, names, transition};
 
 #[derive(Debug, Default)]
 pub(super) struct Tables {
@@ -22,6 +23,7 @@ pub(super) struct Tables {
     pub coefficients: Vec<Coefficients>,
     pub transitions: Vec<Transition>,
     pub critical: Vec<CriticalTemperature>,
+    pub molecules: Vec<Constants>,
     pub names: Names,
 }
 
@@ -36,6 +38,7 @@ impl Tables {
                 }
                 Some(transition::SCHEMA) => transition::read(file, &mut tables.datasets, &mut tables.transitions)?,
                 Some(critical::SCHEMA) => critical::read(file, &mut tables.critical)?,
+                Some(molecule::SCHEMA) => molecule::read(file, &mut tables.molecules)?,
                 Some(names::SCHEMA) => names::read(file, &mut tables.names)?,
                 _ => {}
             }

@@ -17,6 +17,8 @@ use crate::model::cycle::Cycle;
 use crate::model::derivation::Derivation;
 use crate::model::expanded::Expanded;
 use crate::model::gap::Gap;
+use crate::model::molecule::power_fit::HandedOn;
+use crate::model::molecule::shares::Shares;
 use crate::model::monte_carlo::Propagation;
 use crate::model::shortcut::{SideBySide, Validity};
 use crate::quantity::Quantity;
@@ -33,6 +35,8 @@ pub enum Answer {
     Comparison(Rc<Comparison>),
     Cycle(Rc<Cycle>),
     Gap(Rc<Gap>),
+    Shares(Rc<Shares>),
+    PowerFit(Rc<HandedOn>),
     Validity(Rc<Validity>),
     SideBySide(Rc<SideBySide>),
 }
@@ -75,6 +79,8 @@ impl Answer {
             Answer::Comparison(_) => "a comparison",
             Answer::Cycle(_) => "a cycle",
             Answer::Gap(_) => "an explanation of a gap",
+            Answer::Shares(_) => "a table of contributions",
+            Answer::PowerFit(_) => "a sum of powers",
             Answer::Validity(_) => "the range of a shortcut",
             Answer::SideBySide(_) => "shortcuts side by side",
         }
@@ -89,6 +95,8 @@ impl Answer {
             Answer::Comparison(comparison) => comparison.parts(),
             Answer::Cycle(cycle) => cycle.parts(),
             Answer::Gap(gap) => gap.parts(),
+            Answer::Shares(shares) => shares.parts(),
+            Answer::PowerFit(fit) => fit.parts(),
             Answer::Validity(validity) => validity.parts(),
             Answer::SideBySide(ways) => ways.parts(),
         }

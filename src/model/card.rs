@@ -11,14 +11,14 @@ use std::fmt;
 use std::rc::Rc;
 use std::sync::Arc;
 
-use thiserror::Error;
-
 use crate::data::catalog::Catalog;
-use crate::fault::{Explain, Fault, Place};
+use crate::fault::{Fault, Place};
 use crate::model::answer::Answer;
+use crate::model::argument::ArgumentError;
 use crate::model::caution::Caution;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
+use crate::model::molecule::Molecule;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::model::terms::Terms;
@@ -40,6 +40,7 @@ pub enum Value {
     Options(Rc<BTreeMap<String, Value>>),
     Reaction(Rc<Reaction>),
     Substance(Rc<PureSubstance>),
+    Molecule(Rc<Molecule>),
     /// Temperatures at which a formula is asked in one call.
     Grid(Rc<Grid>),
     Curve(Rc<Curve>),
@@ -62,6 +63,7 @@ impl Value {
             Value::Options(_) => "a map of options",
             Value::Reaction(_) => "a reaction",
             Value::Substance(_) => "a substance",
+            Value::Molecule(_) => "a molecule",
             Value::Grid(_) => "a grid of temperatures",
             Value::Curve(_) => "a curve",
             Value::Answer(answer) => answer.sort(),
@@ -78,6 +80,7 @@ pub enum On {
     Quantity,
     Reaction,
     Substance,
+    Molecule,
     Curve,
 }
 
@@ -251,6 +254,7 @@ impl Call {
         match self.args.first() {
             Some(Value::Reaction(reaction)) => Some(reaction),
             Some(Value::Substance(substance)) => Some(substance),
+            Some(Value::Molecule(molecule)) => Some(molecule.terms()),
             _ => None,
         }
     }
@@ -324,6 +328,7 @@ impl Step for Call {
                 Value::Number(number) => words.push(number.to_string()),
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
                 Value::Substance(substance) => words.push(substance.text().to_owned()),
+                Value::Molecule(molecule) => words.push(molecule.text().to_owned()),
                 Value::Grid(grid) => words.push(grid.words()),
                 Value::Curve(curve) => words.push(curve.words()),
                 Value::Options(options) => {
@@ -380,51 +385,6 @@ pub fn call_of(node: &Node) -> Option<&Call> {
     node.step().and_then(|step| step.as_any().downcast_ref::<Call>())
 }
 
-/// An argument that does not suit its formula.
-#[derive(Clone, Debug, PartialEq, Error)]
-pub enum ArgumentError {
-    #[error("`{function}` wants {wanted} for `{argument}`, not {given}")]
-    Sort { function: &'static str, argument: &'static str, wanted: String, given: String },
-    #[error("`{function}` was given {given} arguments and takes {}", counts(*least, *most))]
-    Count { function: &'static str, given: usize, least: usize, most: usize, usage: String },
-    #[error("`{function}` knows no option `{option}`")]
-    Option { function: &'static str, option: String, known: String },
-    #[error("`{word}` is no choice for `{argument}` of `{function}`")]
-    Word { function: &'static str, argument: &'static str, word: String, choices: String },
-    #[error("a difference of {difference_k} K was given to `{function}` where a temperature is wanted")]
-    Difference { function: &'static str, difference_k: f64 },
-    #[error("{t_k} K is not a temperature above absolute zero, as `{function}` wants")]
-    NotPositive { function: &'static str, t_k: f64 },
-}
-
-fn counts(least: usize, most: usize) -> String {
-    if least == most { least.to_string() } else { format!("{least} to {most}") }
-}
-
-impl Explain for ArgumentError {
-    fn code(&self) -> &'static str {
-        match self {
-            ArgumentError::Sort { .. } => "argument-sort",
-            ArgumentError::Count { .. } => "formula-argument-count",
-            ArgumentError::Option { .. } => "option-unknown",
-            ArgumentError::Word { .. } => "word-unknown",
-            ArgumentError::Difference { .. } => "difference-for-point",
-            ArgumentError::NotPositive { .. } => "temperature-not-positive",
-        }
-    }
-
-    fn hint(&self) -> String {
-        match self {
-            ArgumentError::Sort { wanted, .. } => format!("give {wanted}"),
-            ArgumentError::Count { usage, .. } => format!("use it as in `{usage}`"),
-            ArgumentError::Option { known, .. } => format!("its options are {known}"),
-            ArgumentError::Word { choices, .. } => format!("choose one of {choices}"),
-            ArgumentError::Difference { .. } => "give the temperature itself, as in `q(\"450 degC\")`".to_owned(),
-            ArgumentError::NotPositive { .. } => "check the sign and the scale of the temperature".to_owned(),
-        }
-    }
-}
-
 impl fmt::Debug for Card {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         f.write_str(self.id)
@@ -445,6 +405,7 @@ impl Card {
             On::Quantity => "value.",
             On::Reaction => "reaction.",
             On::Substance => "substance.",
+            On::Molecule => "molecule.",
             On::Curve => "curve.",
         };
         format!("{receiver}{}({})", self.name, args.join(", "))

@@ -33,8 +33,8 @@ pub fn line(cx: &Cx, value: &Quantity) -> String {
             parts.push("each solute in its ideal solution of 1 mol/kg".to_owned());
         }
     }
-    let per_substance =
-        call_of(value.node()).is_some_and(|call| matches!(call.args.first(), Some(Value::Substance(_))));
+    let per_substance = call_of(value.node())
+        .is_some_and(|call| matches!(call.args.first(), Some(Value::Substance(_) | Value::Molecule(_))));
     if let (Some(zero), true) = (&state.zero, per_substance) {
         parts.push(format!("counted from {zero}"));
     }
@@ -111,7 +111,11 @@ pub fn symbol(value: &Quantity) -> String {
             if call.terms().is_some_and(Terms::is_reaction) { "Δr" } else { "" },
             value.kind().state().and_then(|s| s.t_k),
         );
-        return t_k.map_or_else(String::new, |t_k| format!("{r}H({} K) - {r}H({} K)", rounded(t_k), rounded(*from_k)));
+        let of = if what == What::G { "G°" } else { "H" };
+        let from = if what == What::G { "H°" } else { "H" };
+        return t_k.map_or_else(String::new, |t_k| {
+            format!("{r}{of}({} K) - {r}{from}({} K)", rounded(t_k), rounded(*from_k))
+        });
     }
     match &call.args[..] {
         [Value::Reaction(_), ..] if what == What::K => what.symbol().to_owned(),
@@ -121,7 +125,7 @@ pub fn symbol(value: &Quantity) -> String {
             let standard = value.kind().state().is_some_and(|state| state.standard);
             format!("Δr{}{}", what.symbol(), if standard { "°" } else { "" })
         }
-        [Value::Substance(_), ..] => {
+        [Value::Substance(_) | Value::Molecule(_), ..] => {
             let standard = value.kind().state().is_some_and(|state| state.standard);
             format!("{}{}", what.symbol(), if standard { "°" } else { "" })
         }

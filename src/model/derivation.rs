@@ -393,6 +393,7 @@ fn written(value: &Value, numbers: &Numbers) -> String {
         Value::Text(text) => text.to_string(),
         Value::Reaction(reaction) => reaction.text().to_owned(),
         Value::Substance(substance) => substance.text().to_owned(),
+        Value::Molecule(molecule) => molecule.text().to_owned(),
         Value::Grid(grid) => grid.words(),
         Value::Curve(curve) => curve.words(),
         Value::List(list) => list.iter().map(|item| written(item, numbers)).collect::<Vec<_>>().join(", "),

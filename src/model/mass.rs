@@ -21,6 +21,7 @@ use crate::chem::element;
 use crate::chem::formula::Formula;
 use crate::fault::{Explain, Fault};
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
+use crate::model::molecule::parameter::Parameter;
 use crate::quantity::Quantity;
 use crate::record::node::{Input, LeafKey, Step};
 use crate::units::{self, Dimension, Entity, Kind, Of};
@@ -67,9 +68,18 @@ impl Explain for MassError {
 /// # Errors
 /// Its composition is not known, or an element has no standard atomic weight.
 fn molar_mass(cx: &Cx, entity: Entity, step: Rc<dyn Step>) -> Result<Quantity, Fault> {
-    let composition = composition_of(cx, entity)?;
+    let Parameter { value: si, inputs, .. } = of_atoms(entity, &composition_of(cx, entity)?)?;
+    let dim = Dimension::mass(entity).over(&Dimension::amount(entity));
+    Ok(Quantity::from_step(si, dim, Kind::PLAIN, inputs, step, cx.place.clone())?)
+}
+
+/// The molar mass of a composition in kg/mol, with its elements as inputs.
+///
+/// # Errors
+/// An element has no standard atomic weight.
+pub(super) fn of_atoms(entity: Entity, composition: &Composition) -> Result<Parameter, Fault> {
     let terms = composition.molar_mass_terms().map_err(Fault::from)?;
-    let (mut si, mut inputs) = (0.0, SmallVec::new());
+    let (mut value, mut inputs) = (0.0, SmallVec::new());
     for (element, count) in terms {
         let weight = element::atomic_weight(element).ok_or_else(|| MassError::NoWeight {
             entity: entity.name().to_owned(),
@@ -86,11 +96,10 @@ fn molar_mass(cx: &Cx, entity: Entity, step: Rc<dyn Step>) -> Result<Quantity, F
         let input = Input { u: Some(weight.u_standard), citation, ..Input::of(key) };
         let leaf = Quantity::input(weight.value_g_mol, Dimension::none(), Kind::PLAIN, input, None)?;
         let partial = count / 1000.0;
-        si += partial * weight.value_g_mol;
+        value += partial * weight.value_g_mol;
         inputs.push((Rc::clone(leaf.node()), partial));
     }
-    let dim = Dimension::mass(entity).over(&Dimension::amount(entity));
-    Ok(Quantity::from_step(si, dim, Kind::PLAIN, inputs, step, cx.place.clone())?)
+    Ok(Parameter { name: "molar mass".to_owned(), value, inputs })
 }
 
 fn composition_of(cx: &Cx, entity: Entity) -> Result<Composition, Fault> {

@@ -3,6 +3,7 @@
 //! [`CARDS`] is the one list of what the program can compute. Script binding, help, catalogue and checks read it.
 
 pub mod answer;
+pub mod argument;
 pub mod basis;
 pub mod budget;
 pub mod card;
@@ -27,6 +28,7 @@ pub mod grid;
 pub mod heat_capacity;
 pub mod linearity;
 pub mod mass;
+pub mod molecule;
 pub mod monte_carlo;
 pub mod path;
 pub mod property;
@@ -39,6 +41,7 @@ pub mod remedy;
 pub mod review;
 pub mod shortcut;
 mod stated;
+pub mod statmech;
 pub mod substance;
 pub mod symbols;
 pub mod tabulated;
@@ -72,6 +75,21 @@ pub const CARDS: &[&Card] = &[
     &fit_card::INTERPOLATE_HEAT_CAPACITY,
     &substance::ENTHALPY_INCREMENT,
     &substance::REACTION_INCREMENT,
+    &molecule::limits::MOLECULE,
+    &molecule::limits::MOLECULE_TABLE,
+    &molecule::limits::TAKEN,
+    &molecule::answers::HEAT_CAPACITY,
+    &molecule::answers::HEAT_CAPACITY_V,
+    &molecule::answers::ENTROPY,
+    &molecule::answers::ENTHALPY_INCREMENT,
+    &molecule::answers::GIBBS_ENERGY,
+    &molecule::shares::CONTRIBUTIONS,
+    &molecule::limits::CLASSICAL_LIMIT,
+    &molecule::limits::EQUIPARTITION_TEMPERATURE,
+    &molecule::limits::ZERO_POINT,
+    &molecule::limits::GROUND_STATE,
+    &molecule::formation::FORMATION_ENTHALPY,
+    &molecule::power_fit::POWER_FIT,
     &remedy::CORRECTED,
     &remedy::WIDENED,
     &shortcut::VALID_TO,

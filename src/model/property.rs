@@ -320,7 +320,7 @@ fn leaf(si: f64, input: &Input, property: Property) -> Result<Rc<Node>, Fault> {
 }
 
 /// R as an input, so that a change of constant set can be traced.
-fn gas_constant(constants: &ConstantSet) -> Quantity {
+pub(super) fn gas_constant(constants: &ConstantSet) -> Quantity {
     let r = &constants.molar_gas;
     let dim = Dimension::whole([2, 1, -2, 0, -1, 0]).over(&Dimension::amount(Entity::OPEN));
     let key = LeafKey::Constant { year: constants.year, name: r.name };

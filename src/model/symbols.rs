@@ -113,6 +113,30 @@ static PER: Formula = Formula {
     ],
 };
 
+const SHARES: Symbol =
+    symbol("Σ", r"\Sigma", "R", "sum over translation, rotation, vibrations, torsions and electronic levels");
+static MOLECULE_CP: Formula = Formula {
+    text: "Cp°(T) = R (1 + Σ Cv/R)",
+    latex: r"C_p^\circ(T)=R\,(1+\sum C_V/R)",
+    symbols: &[SHARES, GAS_CONSTANT, TEMPERATURE],
+};
+static MOLECULE_CV: Formula =
+    Formula { text: "Cv(T) = R Σ Cv/R", latex: r"C_V(T)=R\sum C_V/R", symbols: &[SHARES, GAS_CONSTANT, TEMPERATURE] };
+static MOLECULE_S: Formula =
+    Formula {
+        text: "S°(T) = R Σ S/R", latex: r"S^\circ(T)=R\sum S/R", symbols: &[SHARES, GAS_CONSTANT, TEMPERATURE]
+    };
+static MOLECULE_H: Formula = Formula {
+    text: "H(T) - H(T0) = R T (1 + Σ U/RT) - R T0 (1 + Σ U/RT0)",
+    latex: r"H(T)-H(T_0)=RT\,(1+\sum U/RT)-RT_0\,(1+\sum U/RT_0)",
+    symbols: &[SHARES, GAS_CONSTANT, TEMPERATURE],
+};
+static MOLECULE_G: Formula = Formula {
+    text: "G°(T) - H°(298.15 K) = H(T) - H(298.15 K) - T S°(T)",
+    latex: r"G^\circ(T)-H^\circ(298.15\,\mathrm{K})=H(T)-H(298.15\,\mathrm{K})-T\,S^\circ(T)",
+    symbols: &[SHARES, GAS_CONSTANT, TEMPERATURE],
+};
+
 /// By the id of the card.
 static FORMULAS: &[(&str, &Formula)] = &[
     ("reaction.enthalpy", &ENTHALPY),
@@ -128,6 +152,11 @@ static FORMULAS: &[(&str, &Formula)] = &[
     ("substance.helmholtz-energy", &SUBSTANCE_HELMHOLTZ_ENERGY),
     ("substance.entropy", &SUBSTANCE_ENTROPY),
     ("substance.heat-capacity", &SUBSTANCE_HEAT_CAPACITY),
+    ("molecule.heat-capacity", &MOLECULE_CP),
+    ("molecule.heat-capacity-v", &MOLECULE_CV),
+    ("molecule.entropy", &MOLECULE_S),
+    ("molecule.enthalpy-increment", &MOLECULE_H),
+    ("molecule.gibbs-energy", &MOLECULE_G),
     ("quantity.per", &PER),
 ];
 

@@ -27,6 +27,13 @@ impl Term {
     }
 }
 
+/// A substance of one's own, by which a name of an equation is answered.
+#[derive(Clone)]
+pub struct Stand {
+    pub substance: Arc<Substance>,
+    pub thermo: Rc<dyn Thermo>,
+}
+
 /// The sum, and per mole of what it is.
 pub struct Terms {
     terms: Vec<Term>,

@@ -15,6 +15,7 @@ pub mod headline;
 pub mod html;
 pub mod interval;
 pub mod latex;
+pub mod molecule;
 pub mod plot;
 pub mod register;
 pub mod report;
@@ -77,6 +78,8 @@ pub fn answer(answer: &Answer) -> Bundle {
         Answer::Comparison(comparison) => comparison::bundle(comparison),
         Answer::Cycle(cycle) => cycle::bundle(cycle),
         Answer::Gap(gap) => gap::bundle(gap),
+        Answer::Shares(shares) => molecule::shares(shares),
+        Answer::PowerFit(fit) => molecule::power_fit(fit),
         Answer::Validity(validity) => shortcut::validity(validity),
         Answer::SideBySide(ways) => shortcut::side_by_side(ways),
     }

@@ -17,6 +17,7 @@ use crate::model::answer::Answer;
 use crate::model::card::{self, Card, Cx, On, Value};
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
+use crate::model::molecule::Molecule;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::quantity::{Quantity, text};
@@ -32,9 +33,11 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
     engine.register_type_with_name::<Quantity>("quantity");
     engine.register_type_with_name::<Rc<Reaction>>("reaction");
     engine.register_type_with_name::<Rc<PureSubstance>>("substance");
+    engine.register_type_with_name::<Rc<Molecule>>("molecule");
     for name in ["to_string", "to_debug"] {
         engine.register_fn(name, |reaction: &mut Rc<Reaction>| reaction.text().to_owned());
         engine.register_fn(name, |substance: &mut Rc<PureSubstance>| substance.text().to_owned());
+        engine.register_fn(name, |molecule: &mut Rc<Molecule>| molecule.text().to_owned());
     }
     engine.register_type_with_name::<Answer>("answer");
     // Asked for every property that has no getter of its own.
@@ -81,6 +84,7 @@ fn receiver(on: On) -> Option<TypeId> {
         On::Quantity => Some(TypeId::of::<Quantity>()),
         On::Reaction => Some(TypeId::of::<Rc<Reaction>>()),
         On::Substance => Some(TypeId::of::<Rc<PureSubstance>>()),
+        On::Molecule => Some(TypeId::of::<Rc<Molecule>>()),
         On::Curve => Some(TypeId::of::<Rc<Curve>>()),
     }
 }
@@ -95,6 +99,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     }
     if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
         return Value::Substance(Rc::clone(&substance));
+    }
+    if let Some(molecule) = value.read_lock::<Rc<Molecule>>() {
+        return Value::Molecule(Rc::clone(&molecule));
     }
     if let Some(grid) = value.read_lock::<Rc<Grid>>() {
         return Value::Grid(Rc::clone(&grid));
@@ -140,6 +147,7 @@ fn from_value(value: Value) -> Dynamic {
         ),
         Value::Reaction(reaction) => Dynamic::from(reaction),
         Value::Substance(substance) => Dynamic::from(substance),
+        Value::Molecule(molecule) => Dynamic::from(molecule),
         Value::Grid(grid) => Dynamic::from(grid),
         Value::Curve(curve) => Dynamic::from(curve),
         Value::Answer(answer) => Dynamic::from(answer),

@@ -13,6 +13,7 @@ use crate::fault::Fault;
 use crate::model::answer::Answer;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
+use crate::model::molecule::Molecule;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
 use crate::quantity::Quantity;
@@ -47,6 +48,9 @@ fn own(value: &Dynamic) -> Option<Bundle> {
     }
     if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
         return Some(render::substance(&substance));
+    }
+    if let Some(molecule) = value.read_lock::<Rc<Molecule>>() {
+        return Some(render::molecule::bundle(&molecule));
     }
     value.read_lock::<Fault>().map(|fault| Bundle::text(fault.to_string()))
 }
