@@ -75,7 +75,10 @@ pub struct Fit {
 
 /// The basis of the terms at T, and its integrals.
 fn basis(exponents: &[f64], of: impl Fn(Power) -> f64) -> Vec<f64> {
-    exponents.iter().map(|&exponent| of(Power { exponent, factor: Power { exponent, factor: 1.0 }.value(1.0 / T_REFERENCE) })).collect()
+    exponents
+        .iter()
+        .map(|&exponent| of(Power { exponent, factor: Power { exponent, factor: 1.0 }.value(1.0 / T_REFERENCE) }))
+        .collect()
 }
 
 /// The terms at one temperature, as a row of the problem.

@@ -12,14 +12,17 @@ use crate::fault::Fault;
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
 use crate::model::fit::{self, Fit, Row, Way};
 use crate::model::fit_error::FitError;
+use crate::model::gather::FigureOrigin;
 use crate::model::stated::entropy_dim;
 use crate::model::substance::PureSubstance;
+use crate::model::tabulated;
+use crate::model::terms::Stand;
 use crate::num::lsq;
 use crate::num::math;
 use crate::quantity::{Quantity, text};
 use crate::record::spread::Spread;
 use crate::source::Citation;
-use crate::units::{Entity, What};
+use crate::units::{Entity, Kind, What};
 
 const TABLE: Arg = Arg {
     name: "table",
@@ -152,7 +155,10 @@ fn rows(name: &str, temperatures: &[Quantity], capacities: Vec<Quantity>) -> Res
         if t.spread().u().is_some_and(|u| u > 0.0) {
             return Err(FitError::Temperature { name: name(), row });
         }
-        if *cp.dim() != entropy_dim() && cp.dim().bindings_to(&entropy_dim()).len() != 1 && entropy_dim().bindings_to(cp.dim()).len() != 1 {
+        if *cp.dim() != entropy_dim()
+            && cp.dim().bindings_to(&entropy_dim()).len() != 1
+            && entropy_dim().bindings_to(cp.dim()).len() != 1
+        {
             return Err(FitError::Unit { name: name(), row, found: unit(&cp), what: "a molar heat capacity" });
         }
         // What states none is not known to be exact.
@@ -213,10 +219,8 @@ fn by_terms(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
         .map(|row| fit::terms_at(&exponents, row.t_k).iter().map(|term| term / row.u.unwrap_or(1.0)).collect())
         .collect();
     let measured: Vec<f64> = rows.iter().map(|row| row.cp.si() / row.u.unwrap_or(1.0)).collect();
-    let solved = lsq::solve(&weighted, &measured, exponents.len()).map_err(|dependent| FitError::Dependent {
-        name: name.to_string(),
-        exponent: exponents[dependent.column],
-    })?;
+    let solved = lsq::solve(&weighted, &measured, exponents.len())
+        .map_err(|dependent| FitError::Dependent { name: name.to_string(), exponent: exponents[dependent.column] })?;
     let freedom = (rows.len() - exponents.len()) as f64;
     let (sigma, dof, chi_square) = if stated {
         (1.0, None, Some(solved.residual))
@@ -276,4 +280,25 @@ fn own(call: &Call, name: Rc<str>, rows: Vec<Row>, way: Way) -> Value {
         formations: Vec::new(),
     };
     Value::Substance(Rc::new(PureSubstance::own(Arc::new(substance), Rc::new(fit))))
+}
+
+/// A measured heat capacity under the name that an equation has for it, with the entropy at 298.15 K that is on record of
+/// that substance, unless the fit was given one.
+///
+/// # Errors
+/// The name means no substance, or the value is a record of the tables itself.
+pub(super) fn stand(cx: &Cx, name: &str, own: &PureSubstance) -> Result<Stand, Fault> {
+    let Some(thermo) = own.thermo() else {
+        return Err(FitError::NotOwn { name: name.to_owned(), given: own.text().to_owned() }.into());
+    };
+    let substance = match cx.data().find(name) {
+        Ok(substance) => substance,
+        Err(_) => Arc::new(Substance { species: cx.data().species(name)?, ..own.record().as_ref().clone() }),
+    };
+    let Some(fit) = thermo.fit() else { return Ok(Stand { substance, thermo: Rc::clone(thermo) }) };
+    let entropy = match tabulated::entropy(&substance).map(|figure| (figure.si, figure.origin)) {
+        Some((si, FigureOrigin::Input(input))) => Some(Quantity::input(si, entropy_dim(), Kind::PLAIN, *input, None)?),
+        _ => None,
+    };
+    Ok(Stand { substance, thermo: Rc::new(fit.standing_for(entropy)) })
 }

@@ -28,7 +28,9 @@ pub enum FitError {
     TermTwice { exponent: f64 },
     #[error("the rows of {name} cannot tell the term T^{exponent} from those before it")]
     Dependent { name: String, exponent: f64 },
-    #[error("an interpolation goes over ascending temperatures, and row {row} of {name} is at {t_k} K after {before_k} K")]
+    #[error(
+        "an interpolation goes over ascending temperatures, and row {row} of {name} is at {t_k} K after {before_k} K"
+    )]
     NotAscending { name: String, row: usize, t_k: f64, before_k: f64 },
     #[error("{name} was measured from {low} K to {high} K, and enthalpy and entropy count from 298.15 K")]
     Reference { name: String, low: f64, high: f64 },
@@ -59,7 +61,8 @@ impl Explain for FitError {
     fn hint(&self) -> String {
         match self {
             FitError::Table { .. } => {
-                "give a table, or a map such as #{ T: [q(\"300 K\"), ...], Cp: [q(\"75.3(2) J/(mol K)\"), ...] }".to_owned()
+                "give a table, or a map such as #{ T: [q(\"300 K\"), ...], Cp: [q(\"75.3(2) J/(mol K)\"), ...] }"
+                    .to_owned()
             }
             FitError::Column { there, .. } => {
                 format!("name the columns `T` and `Cp`; it has {there}")
@@ -69,13 +72,16 @@ impl Explain for FitError {
             FitError::SomeUncertain { .. } => {
                 "state u at every row, and the fit is weighted by it; or at none, and the scatter gives it".to_owned()
             }
-            FitError::Exact { .. } => "a measured value has an uncertainty: state it, or leave all of them out".to_owned(),
+            FitError::Exact { .. } => {
+                "a measured value has an uncertainty: state it, or leave all of them out".to_owned()
+            }
             FitError::Temperature { .. } => {
                 "enter it in the uncertainty of Cp, as dCp/dT times it, and leave it out here".to_owned()
             }
             FitError::TooFew { needed, .. } => format!("give at least {needed} rows, or fewer terms"),
             FitError::Terms { .. } => {
-                "give a list of exponents, as [0, 1, -2], or the name of a published form, as \"maier-kelley\"".to_owned()
+                "give a list of exponents, as [0, 1, -2], or the name of a published form, as \"maier-kelley\""
+                    .to_owned()
             }
             FitError::TermTwice { .. } => "name each exponent once".to_owned(),
             FitError::Dependent { .. } => "leave that term out, or measure at more temperatures".to_owned(),

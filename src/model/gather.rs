@@ -209,9 +209,8 @@ fn dataset_named(word: &str, data: &Catalog) -> Result<DatasetId, GatherError> {
 /// that is loaded must not change results that use nothing of it.
 pub fn covering(reaction: &Terms, data: &Catalog) -> Vec<DatasetId> {
     let terms = || reaction.terms().iter();
-    let serves = |dataset: &&Dataset| {
-        !dataset.own || terms().any(|term| has_own_formation(&term.substance, dataset, data))
-    };
+    let serves =
+        |dataset: &&Dataset| !dataset.own || terms().any(|term| has_own_formation(&term.substance, dataset, data));
     let has_all = |dataset: &&Dataset| terms().all(|term| term_formation(term, &dataset.id, data).is_some());
     formation_datasets(data).filter(serves).filter(has_all).map(|dataset| dataset.id.clone()).collect()
 }

@@ -14,9 +14,11 @@ use crate::data::catalog::Catalog;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Arg, Card, Cx, Default, On, Takes, Value};
+use crate::model::fit_card;
 use crate::model::molecule::error::MoleculeError;
 use crate::model::molecule::formation::Own;
 use crate::model::terms::{Stand, Term, Terms};
+use crate::model::thermo::Thermo;
 use crate::units::Entity;
 
 /// A reaction as written: its terms, per mole of reaction.
@@ -88,6 +90,22 @@ impl Reaction {
         Reaction::read_with(&format!("{} -> {}", side(false), side(true)), data, kept)
     }
 
+    /// The reaction with something else answering for one species.
+    #[must_use]
+    pub fn answered_by(&self, id: &str, thermo: Rc<dyn Thermo>) -> Reaction {
+        let answered = |term: &Term| match term.substance.id() == id {
+            true => Term { own: Some(Rc::clone(&thermo)), ..term.clone() },
+            false => term.clone(),
+        };
+        let terms = self.terms.terms().iter().map(answered).collect();
+        let mut own = self.own.clone();
+        for stand in own.values_mut().filter(|stand| stand.substance.id() == id) {
+            stand.thermo = Rc::clone(&thermo);
+        }
+        let terms = Terms::new(terms, Entity::RXN, self.terms.text().to_owned());
+        Reaction { equation: self.equation.clone(), terms, own }
+    }
+
     pub fn equation(&self) -> &Equation {
         &self.equation
     }
@@ -122,8 +140,9 @@ fn given(cx: &Cx, options: Option<&Value>) -> Result<Named, Fault> {
                 substance: Arc::clone(&molecule.definition().substance),
                 thermo: Rc::new(Own::new(cx, molecule)?),
             },
+            Value::Substance(own) => fit_card::stand(cx, name, own)?,
             other => {
-                let (key, wanted) = (format!("own: {name}"), "a molecule");
+                let (key, wanted) = (format!("own: {name}"), "a molecule or a fitted heat capacity");
                 return Err(MoleculeError::Sort { key, wanted, given: other.sort().to_owned() }.into());
             }
         };

@@ -136,12 +136,7 @@ fn moments_over(t0: f64, t1: f64, r: f64) -> [f64; 4] {
 
 /// Weights of y₀, d₀, y₁, d₁ where tⁿ has these values.
 fn hermite(t: [f64; 4], h: f64) -> [f64; 4] {
-    [
-        t[0] - 3.0 * t[2] + 2.0 * t[3],
-        h * (t[1] - 2.0 * t[2] + t[3]),
-        3.0 * t[2] - 2.0 * t[3],
-        h * (t[3] - t[2]),
-    ]
+    [t[0] - 3.0 * t[2] + 2.0 * t[3], h * (t[1] - 2.0 * t[2] + t[3]), 3.0 * t[2] - 2.0 * t[3], h * (t[3] - t[2])]
 }
 
 fn inner(x: &[f64], y: &[f64], k: usize) -> (f64, Vec<(usize, f64)>) {
@@ -203,7 +198,8 @@ mod tests {
         let it = pchip(Y);
         // Simpson over 4000 steps of each piece; exact for cubics, and 1e-12 for the other.
         let by_rule = |from: f64, to: f64, f: &dyn Fn(f64) -> f64| {
-            let cuts: Vec<f64> = [from].into_iter().chain(X.into_iter().filter(|&x| from < x && x < to)).chain([to]).collect();
+            let cuts: Vec<f64> =
+                [from].into_iter().chain(X.into_iter().filter(|&x| from < x && x < to)).chain([to]).collect();
             let piece = |a: f64, b: f64| {
                 let step = (b - a) / 4000.0;
                 let weight = |n: usize| if n == 0 || n == 4000 { 1.0 } else { [2.0, 4.0][n % 2] };
@@ -232,8 +228,11 @@ mod tests {
                 y[k] += by;
                 pchip(y)
             };
-            let of: [fn(&Pchip) -> f64; 3] =
-                [|it| it.value(321.0).value, |it| it.integral(298.15, 380.0, false).value, |it| it.integral(290.0, 390.0, true).value];
+            let of: [fn(&Pchip) -> f64; 3] = [
+                |it| it.value(321.0).value,
+                |it| it.integral(298.15, 380.0, false).value,
+                |it| it.integral(290.0, 390.0, true).value,
+            ];
             let own = [
                 pchip(Y).value(321.0).partials[k],
                 pchip(Y).integral(298.15, 380.0, false).partials[k],

@@ -16,14 +16,25 @@ pub fn bundle(fit: &Fit) -> Bundle {
     let lines = lines(fit);
     let rows = residuals(fit);
     let mut text = lines.join("\n  ");
-    let mut html = format!("<div class=\"hessbook-fit\">{}", lines.iter().map(|line| format!("<p>{}</p>", escaped(line))).collect::<String>());
+    let mut html = format!(
+        "<div class=\"hessbook-fit\">{}",
+        lines.iter().map(|line| format!("<p>{}</p>", escaped(line))).collect::<String>()
+    );
     if let Some(rows) = &rows {
         let head = ["T / K", "Cp measured", "Cp fitted", "residual", "residual / u"];
         let _ = write!(text, "\n  {:>9}  {:>12}  {:>10}  {:>9}  {:>12}", head[0], head[1], head[2], head[3], head[4]);
-        let _ = write!(html, "<table><thead><tr>{}</tr></thead><tbody>", head.map(|name| format!("<th>{name}</th>")).concat());
+        let _ = write!(
+            html,
+            "<table><thead><tr>{}</tr></thead><tbody>",
+            head.map(|name| format!("<th>{name}</th>")).concat()
+        );
         for row in rows {
             let cells = row.cells();
-            let _ = write!(text, "\n  {:>9}  {:>12}  {:>10}  {:>9}  {:>12}", cells[0], cells[1], cells[2], cells[3], cells[4]);
+            let _ = write!(
+                text,
+                "\n  {:>9}  {:>12}  {:>10}  {:>9}  {:>12}",
+                cells[0], cells[1], cells[2], cells[3], cells[4]
+            );
             let _ = write!(html, "<tr>{}</tr>", cells.map(|cell| format!("<td>{cell}</td>")).concat());
         }
         html.push_str("</tbody></table>");

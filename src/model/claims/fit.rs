@@ -24,7 +24,10 @@ pub fn fit_quality(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
         let needed = if asked.property == crate::model::property::Property::Cp { &ends[..1] } else { &ends[..] };
         let tested = match needed.iter().find(|t| !(low <= **t && **t <= high)) {
             Some(outside) => Tested::False {
-                why: format!("{} was measured from {low} K to {high} K, and the fit was carried on to {outside} K", fit.name),
+                why: format!(
+                    "{} was measured from {low} K to {high} K, and the fit was carried on to {outside} K",
+                    fit.name
+                ),
                 value: None,
             },
             None if matches!(fit.way, Way::Shape(_)) => {
@@ -36,7 +39,8 @@ pub fn fit_quality(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
                     Err(fault) => Tested::Missing { what: fault.message().to_owned() },
                 },
                 None => Tested::Missing {
-                    what: "the rows have temperatures twice or out of order, so nothing else can be drawn through them".to_owned(),
+                    what: "the rows have temperatures twice or out of order, so nothing else can be drawn through them"
+                        .to_owned(),
                 },
             },
         };
