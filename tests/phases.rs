@@ -290,6 +290,20 @@ fn an_increment_over_a_change_is_the_same_forth_and_back() {
 }
 
 #[test]
+fn a_substance_shows_the_phases_it_changes_to() {
+    let desk = Desk::new();
+    let shown = |id: &str| match card::call(&desk.cx(), &SUBSTANCE, vec![Value::Text(id.into())]).unwrap() {
+        Value::Substance(substance) => hessbook::render::substance(&substance).plain().to_owned(),
+        other => panic!("{}", other.sort()),
+    };
+    let iron = shown("Fe(cr,alpha)");
+    let phases =
+        "200 K to 1184 K, then as Fe(cr,gamma) from 1184 K, Fe(cr,delta) from 1665 K, Fe(l) from 1809 K to 6000 K";
+    assert!(iron.ends_with(phases), "{iron}");
+    assert!(!shown("Fe(cr,gamma)").contains("then") && !shown("H2O(l)").contains("then"));
+}
+
+#[test]
 fn what_is_not_on_record_is_refused_and_not_skipped() {
     let desk = Desk::new();
     let code = |equation: &str, t: &str| desk.ask(&ENTHALPY, equation, t, &[]).unwrap_err().code().to_owned();

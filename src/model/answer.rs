@@ -20,6 +20,7 @@ use crate::model::gap::Gap;
 use crate::model::molecule::power_fit::HandedOn;
 use crate::model::molecule::shares::Shares;
 use crate::model::monte_carlo::Propagation;
+use crate::model::plant::balance::HeatBalance;
 use crate::model::shortcut::{SideBySide, Validity};
 use crate::quantity::Quantity;
 use crate::record::node::Step;
@@ -35,6 +36,7 @@ pub enum Answer {
     Comparison(Rc<Comparison>),
     Cycle(Rc<Cycle>),
     Gap(Rc<Gap>),
+    HeatBalance(Rc<HeatBalance>),
     Shares(Rc<Shares>),
     PowerFit(Rc<HandedOn>),
     Validity(Rc<Validity>),
@@ -79,6 +81,7 @@ impl Answer {
             Answer::Comparison(_) => "a comparison",
             Answer::Cycle(_) => "a cycle",
             Answer::Gap(_) => "an explanation of a gap",
+            Answer::HeatBalance(_) => "a heat balance",
             Answer::Shares(_) => "a table of contributions",
             Answer::PowerFit(_) => "a sum of powers",
             Answer::Validity(_) => "the range of a shortcut",
@@ -95,6 +98,7 @@ impl Answer {
             Answer::Comparison(comparison) => comparison.parts(),
             Answer::Cycle(cycle) => cycle.parts(),
             Answer::Gap(gap) => gap.parts(),
+            Answer::HeatBalance(balance) => balance.parts(),
             Answer::Shares(shares) => shares.parts(),
             Answer::PowerFit(fit) => fit.parts(),
             Answer::Validity(validity) => validity.parts(),

@@ -1,4 +1,4 @@
-//! What is wrong with an argument that a formula was given.
+//! What is wrong with an argument of a formula, in the words of its card.
 
 use thiserror::Error;
 
@@ -13,6 +13,8 @@ pub enum ArgumentError {
     Count { function: &'static str, given: usize, least: usize, most: usize, usage: String },
     #[error("`{function}` knows no option `{option}`")]
     Option { function: &'static str, option: String, known: String },
+    #[error("`{function}` was not given `{option}`")]
+    OptionMissing { function: &'static str, option: &'static str, doc: &'static str },
     #[error("`{word}` is no choice for `{argument}` of `{function}`")]
     Word { function: &'static str, argument: &'static str, word: String, choices: String },
     #[error("a difference of {difference_k} K was given to `{function}` where a temperature is wanted")]
@@ -31,6 +33,7 @@ impl Explain for ArgumentError {
             ArgumentError::Sort { .. } => "argument-sort",
             ArgumentError::Count { .. } => "formula-argument-count",
             ArgumentError::Option { .. } => "option-unknown",
+            ArgumentError::OptionMissing { .. } => "option-missing",
             ArgumentError::Word { .. } => "word-unknown",
             ArgumentError::Difference { .. } => "difference-for-point",
             ArgumentError::NotPositive { .. } => "temperature-not-positive",
@@ -42,6 +45,7 @@ impl Explain for ArgumentError {
             ArgumentError::Sort { wanted, .. } => format!("give {wanted}"),
             ArgumentError::Count { usage, .. } => format!("use it as in `{usage}`"),
             ArgumentError::Option { known, .. } => format!("its options are {known}"),
+            ArgumentError::OptionMissing { option, doc, .. } => format!("add `{option}:`, {doc}"),
             ArgumentError::Word { choices, .. } => format!("choose one of {choices}"),
             ArgumentError::Difference { .. } => "give the temperature itself, as in `q(\"450 degC\")`".to_owned(),
             ArgumentError::NotPositive { .. } => "check the sign and the scale of the temperature".to_owned(),

@@ -19,8 +19,10 @@ use crate::model::caution::Caution;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
+use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
+use crate::model::table::Table;
 use crate::model::terms::Terms;
 use crate::quantity::{Mismatch, Quantity, text};
 use crate::record::node::{Node, Step};
@@ -40,10 +42,13 @@ pub enum Value {
     Options(Rc<BTreeMap<String, Value>>),
     Reaction(Rc<Reaction>),
     Substance(Rc<PureSubstance>),
+    Stream(Rc<Stream>),
     Molecule(Rc<Molecule>),
     /// Temperatures at which a formula is asked in one call.
     Grid(Rc<Grid>),
     Curve(Rc<Curve>),
+    /// Figures with units that were read from a file.
+    Table(Rc<Table>),
     /// What was asked of an uncertainty.
     Answer(Answer),
     /// Something no formula takes, by its name in words.
@@ -63,9 +68,11 @@ impl Value {
             Value::Options(_) => "a map of options",
             Value::Reaction(_) => "a reaction",
             Value::Substance(_) => "a substance",
+            Value::Stream(_) => "a stream",
             Value::Molecule(_) => "a molecule",
             Value::Grid(_) => "a grid of temperatures",
             Value::Curve(_) => "a curve",
+            Value::Table(_) => "a table",
             Value::Answer(answer) => answer.sort(),
             Value::Other(name) => name,
             Value::Nothing => "nothing",
@@ -82,6 +89,7 @@ pub enum On {
     Substance,
     Molecule,
     Curve,
+    Table,
 }
 
 /// What an argument takes.
@@ -98,10 +106,16 @@ pub enum Takes {
     /// The same, or a grid of them: then the formula is asked at each, and gives a curve.
     Temperatures,
     Number,
+    /// A bare number, or a quantity or text that is a pure number, such as "35 %".
+    Fraction,
     Text,
     Word(&'static [&'static str]),
     Quantities,
     Reaction,
+    /// A list of streams, or one alone.
+    Streams,
+    /// A list of maps, each with these entries.
+    Maps(&'static [Arg]),
     Options(&'static [Arg]),
     /// Whatever it is; the formula looks for itself.
     Any,
@@ -328,9 +342,11 @@ impl Step for Call {
                 Value::Number(number) => words.push(number.to_string()),
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
                 Value::Substance(substance) => words.push(substance.text().to_owned()),
+                Value::Stream(stream) => words.push(stream.name.to_string()),
                 Value::Molecule(molecule) => words.push(molecule.text().to_owned()),
                 Value::Grid(grid) => words.push(grid.words()),
                 Value::Curve(curve) => words.push(curve.words()),
+                Value::Table(table) => words.push(table.name.to_string()),
                 Value::Options(options) => {
                     words.extend(options.iter().filter_map(|(name, value)| match value {
                         Value::Text(word) => Some(format!("{name}: {word}")),
@@ -356,6 +372,7 @@ impl Step for Call {
             match value {
                 Value::Quantity(value) => nodes.push(Rc::clone(value.node())),
                 Value::List(list) => list.iter().for_each(|item| collect(item, nodes)),
+                Value::Stream(stream) => nodes.extend(stream.nodes()),
                 Value::Options(options) => options.values().for_each(|item| collect(item, nodes)),
                 _ => {}
             }
@@ -407,6 +424,7 @@ impl Card {
             On::Substance => "substance.",
             On::Molecule => "molecule.",
             On::Curve => "curve.",
+            On::Table => "table.",
         };
         format!("{receiver}{}({})", self.name, args.join(", "))
     }
@@ -472,6 +490,8 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
         }
         (Takes::Number, Value::Number(number)) => Value::Number(number),
         (Takes::Number, Value::Quantity(value)) if value.dim().is_none() => Value::Number(value.si()),
+        (Takes::Fraction, Value::Number(number)) => Value::Number(number),
+        (Takes::Fraction, value) => Value::Quantity(as_quantity(cx, value, |v| refused("a fraction", v))?),
         (Takes::Reaction, Value::Reaction(reaction)) => Value::Reaction(reaction),
         (Takes::Text, Value::Text(text)) => Value::Text(text),
         (Takes::Word(words), Value::Text(word)) => {
@@ -495,17 +515,18 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
             }
             Value::List(quantities)
         }
-        (Takes::Options(known), Value::Options(options)) => {
-            let mut checked_options = BTreeMap::new();
-            for (name, value) in options.iter() {
-                let Some(option) = known.iter().find(|option| option.name == name) else {
-                    let known = listed(known.iter().map(|option| option.name));
-                    return Err(ArgumentError::Option { function: card.name, option: name.clone(), known }.into());
-                };
-                checked_options.insert(name.clone(), checked(cx, card, option, value.clone())?);
-            }
-            Value::Options(Rc::new(checked_options))
+        (Takes::Streams, Value::Stream(stream)) => Value::List(vec![Value::Stream(stream)]),
+        (Takes::Streams, Value::List(list)) if list.iter().all(|item| matches!(item, Value::Stream(_))) => {
+            Value::List(list)
         }
+        (Takes::Maps(known), Value::List(list)) => {
+            let one = |item: Value| match item {
+                Value::Options(map) => checked_map(cx, card, known, &map),
+                other => Err(refused("a list of maps", &other)),
+            };
+            Value::List(list.into_iter().map(one).collect::<Result<_, Fault>>()?)
+        }
+        (Takes::Options(known), Value::Options(options)) => checked_map(cx, card, known, &options)?,
         (takes, value) => {
             let wanted = match takes {
                 Takes::Number => "a number",
@@ -516,11 +537,36 @@ fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Res
                 }
                 Takes::Quantities => "a list of quantities",
                 Takes::Options(_) => "a map of options, as in `#{ heat_capacity: \"constant\" }`",
+                Takes::Streams => "a list of streams, as in `[stream(\"feed\", T, amounts)]`",
+                Takes::Maps(_) => "a list of maps",
                 _ => "a quantity",
             };
             return Err(refused(wanted, &value));
         }
     })
+}
+
+/// A map with its entries checked: each known, and those that are required there.
+fn checked_map(
+    cx: &Cx,
+    card: &'static Card,
+    known: &'static [Arg],
+    given: &BTreeMap<String, Value>,
+) -> Result<Value, Fault> {
+    let mut checked_options = BTreeMap::new();
+    for (name, value) in given {
+        let Some(option) = known.iter().find(|option| option.name == name) else {
+            let known = listed(known.iter().map(|option| option.name));
+            return Err(ArgumentError::Option { function: card.name, option: name.clone(), known }.into());
+        };
+        checked_options.insert(name.clone(), checked(cx, card, option, value.clone())?);
+    }
+    let required = known.iter().filter(|option| matches!(option.default, Default::Required));
+    if let Some(missing) = required.into_iter().find(|option| !given.contains_key(option.name)) {
+        let (function, doc) = (card.name, missing.doc);
+        return Err(ArgumentError::OptionMissing { function, option: missing.name, doc }.into());
+    }
+    Ok(Value::Options(Rc::new(checked_options)))
 }
 
 /// A quantity, or text that reads as one.

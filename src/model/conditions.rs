@@ -3,6 +3,7 @@
 use crate::chem::species::State as Aggregate;
 use crate::model::card::{Call, Cx, Value, call_of};
 use crate::model::path;
+use crate::model::plant::words;
 use crate::model::terms::Terms;
 use crate::quantity::Quantity;
 use crate::quantity::round;
@@ -12,6 +13,9 @@ use crate::units::{What, Zero};
 /// `723.15 K, 1 bar, each species pure, in its standard state, gases ideal`, with the phases that changed on the way; empty
 /// for plain values.
 pub fn line(cx: &Cx, value: &Quantity) -> String {
+    if let Some(words) = call_of(value.node()).and_then(words::conditions) {
+        return words;
+    }
     let Some(state) = value.kind().state() else { return String::new() };
     let mut parts = Vec::new();
     match state.t_k {
@@ -31,6 +35,13 @@ pub fn line(cx: &Cx, value: &Quantity) -> String {
         }
         if solute {
             parts.push("each solute in its ideal solution of 1 mol/kg".to_owned());
+        }
+    }
+    for node in node::history(value.node()) {
+        for condition in call_of(&node).and_then(Call::terms).map(Terms::conditions).unwrap_or_default() {
+            if !parts.contains(&condition) {
+                parts.push(condition);
+            }
         }
     }
     let per_substance = call_of(value.node())
@@ -90,10 +101,12 @@ fn rounded(t_k: f64) -> String {
 pub fn about(value: &Quantity) -> Vec<String> {
     let mut texts: Vec<String> = Vec::new();
     for node in node::history(value.node()) {
-        if let Some(terms) = call_of(&node).and_then(Call::terms)
-            && !texts.iter().any(|text| text == terms.text())
-        {
-            texts.push(terms.text().to_owned());
+        let Some(call) = call_of(&node) else { continue };
+        let own = call.terms().map(|terms| terms.text().to_owned());
+        for text in own.into_iter().chain(words::about(call)) {
+            if !texts.contains(&text) {
+                texts.push(text);
+            }
         }
     }
     texts
@@ -131,6 +144,8 @@ pub fn symbol(value: &Quantity) -> String {
         }
         // A formula that hands its value on, per mole of something else or with an assumption attached.
         [Value::Quantity(inner), ..] if inner.kind().what == what => symbol(inner),
+        // A heat or a temperature that a formula gave, not one that arithmetic made.
+        _ if call.card.caution.is_some() => what.symbol().to_owned(),
         _ => String::new(),
     }
 }

@@ -14,6 +14,7 @@ use thiserror::Error;
 use crate::fault::{Explain, Fault, Place};
 use crate::model::card::{Call, Cx, References, Value};
 use crate::model::grid::Grid;
+use crate::model::table::Column;
 use crate::num::math;
 use crate::quantity::{Mismatch, Quantity};
 use crate::record::node::Step;
@@ -56,7 +57,7 @@ enum Of {
         function: Function,
         curve: Rc<Curve>,
     },
-    Measured(Rc<[Quantity]>),
+    Measured(Rc<Column>),
 }
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -177,9 +178,9 @@ impl Curve {
     /// A column of measured values, one for each point.
     ///
     /// # Errors
-    /// The values are not of one dimension.
-    pub fn measured(cx: &Cx, grid: Rc<Grid>, values: Rc<[Quantity]>) -> Result<Curve, Fault> {
-        let numbers = values.iter().map(Quantity::si).collect();
+    /// None; the same road as that of curves that are computed.
+    pub fn measured(cx: &Cx, grid: Rc<Grid>, values: Rc<Column>) -> Result<Curve, Fault> {
+        let numbers = values.numbers().into();
         Curve::made(grid, Of::Measured(values), 0, cx, |_, _| Ok(numbers))
     }
 
@@ -301,6 +302,14 @@ impl Curve {
         }
     }
 
+    /// The measured column that the curve shows, where it was read from a table and no arithmetic followed.
+    pub fn column(&self) -> Option<&Rc<Column>> {
+        match &self.of {
+            Of::Measured(column) => Some(column),
+            _ => None,
+        }
+    }
+
     /// The calls that the curve rests on, each once, in the order of the text.
     pub fn calls(&self) -> Vec<Rc<Call>> {
         let mut found = Vec::new();
@@ -387,7 +396,7 @@ impl Curve {
             Of::Pair { arithmetic, sides } => arithmetic.values(&sides.0, &sides.1, at, self.place.clone())?,
             Of::Single { function, curve } => function.value(&curve.value(at)?, self.place.clone())?,
             Of::Measured(values) => match at {
-                At::Row(row) => values[row].clone(),
+                At::Row(row) => values.value(row),
                 At::Temperature(t) => return Err(self.between(t.si()).into()),
             },
         };

@@ -393,9 +393,11 @@ fn written(value: &Value, numbers: &Numbers) -> String {
         Value::Text(text) => text.to_string(),
         Value::Reaction(reaction) => reaction.text().to_owned(),
         Value::Substance(substance) => substance.text().to_owned(),
+        Value::Stream(stream) => stream.name.to_string(),
         Value::Molecule(molecule) => molecule.text().to_owned(),
         Value::Grid(grid) => grid.words(),
         Value::Curve(curve) => curve.words(),
+        Value::Table(table) => table.name.to_string(),
         Value::List(list) => list.iter().map(|item| written(item, numbers)).collect::<Vec<_>>().join(", "),
         Value::Options(options) => {
             let option = |(name, value): (&String, &Value)| format!("{name}: {}", written(value, numbers));

@@ -15,8 +15,9 @@ use crate::model::fit_error::FitError;
 use crate::model::gather::FigureOrigin;
 use crate::model::stated::entropy_dim;
 use crate::model::substance::PureSubstance;
+use crate::model::table::{Column, Table};
 use crate::model::tabulated;
-use crate::model::terms::Stand;
+use crate::model::terms::{Stand, Term};
 use crate::num::lsq;
 use crate::num::math;
 use crate::quantity::{Quantity, text};
@@ -112,6 +113,9 @@ struct Measured {
 }
 
 fn measured(cx: &Cx, value: &Value) -> Result<Measured, Fault> {
+    if let Value::Table(table) = value {
+        return of_table(table);
+    }
     let Value::Options(map) = value else {
         return Err(FitError::Table { given: value.sort().to_owned() }.into());
     };
@@ -129,6 +133,19 @@ fn measured(cx: &Cx, value: &Value) -> Result<Measured, Fault> {
     let citation = cited.unwrap_or_else(|| Citation::new("typed in the notebook", ""));
     let rows = rows(&name, &temperatures, capacities)?;
     Ok(Measured { name, citation, rows })
+}
+
+/// The rows of a table: its columns `T` and `Cp`.
+fn of_table(table: &Table) -> Result<Measured, Fault> {
+    let column = |wanted: &str, what: &'static str| {
+        let there = table.columns().iter().map(|one| format!("`{}`", one.name)).collect::<Vec<_>>().join(", ");
+        let found = table.columns().iter().find(|one| &*one.name == wanted);
+        found.ok_or(FitError::Column { name: table.name.to_string(), what, there })
+    };
+    let (t, cp) = (column("T", "column `T`")?, column("Cp", "column `Cp`")?);
+    let all = |column: &Rc<Column>| (0..column.len()).map(|row| column.value(row)).collect::<Vec<Quantity>>();
+    let rows = rows(&table.name, &all(t), all(cp))?;
+    Ok(Measured { name: table.name.clone(), citation: cp.citation().clone(), rows })
 }
 
 fn figure(cx: &Cx, value: &Value) -> Result<Quantity, Fault> {
@@ -279,7 +296,8 @@ fn own(call: &Call, name: Rc<str>, rows: Vec<Row>, way: Way) -> Value {
         critical_temperature: None,
         formations: Vec::new(),
     };
-    Value::Substance(Rc::new(PureSubstance::own(Arc::new(substance), Rc::new(fit))))
+    let term = Term { own: Some(Rc::new(fit)), ..Term::of_tables(Arc::new(substance), 1.0) };
+    Value::Substance(Rc::new(PureSubstance::answered_by(term)))
 }
 
 /// A measured heat capacity under the name that an equation has for it, with the entropy at 298.15 K that is on record of

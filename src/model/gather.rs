@@ -279,7 +279,9 @@ fn formation_datasets(data: &Catalog) -> impl Iterator<Item = &Dataset> {
 pub(crate) fn term_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -> Option<Figure> {
     match &term.own {
         // A measured heat capacity leaves the formation enthalpy to the tables.
-        Some(own) => own.formation().or_else(|| formation_of(&term.substance, dataset, data)),
+        Some(own) if own.fit().is_some() => own.formation().or_else(|| formation_of(&term.substance, dataset, data)),
+        Some(own) if own.dataset().is_none_or(|only| only == dataset) => own.formation(),
+        Some(_) => None,
         None => formation_of(&term.substance, dataset, data),
     }
 }

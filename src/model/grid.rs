@@ -11,6 +11,7 @@ use thiserror::Error;
 
 use crate::fault::{Explain, Fault, Place};
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
+use crate::model::table::Column;
 use crate::quantity::{Quantity, round};
 use crate::record::node::{Input, LeafKey};
 use crate::units::{Base, Dimension, Kind, Unit, What};
@@ -34,6 +35,7 @@ enum Of {
         first: u64,
     },
     List(Rc<[Quantity]>),
+    Column(Rc<Column>),
 }
 
 /// Why there is no such grid.
@@ -123,6 +125,12 @@ impl Grid {
         Ok(Grid { points: numbers, unit, kind, of: Of::List(points.into()) })
     }
 
+    /// A column of a table, which is known to ascend ([`Column::ascends`]).
+    pub fn column(column: &Rc<Column>) -> Grid {
+        let (unit, kind) = (Arc::clone(&column.unit), column.kind().clone());
+        Grid { points: column.numbers().into(), unit, kind, of: Of::Column(Rc::clone(column)) }
+    }
+
     /// The points in kelvin.
     pub fn points_k(&self) -> &[f64] {
         &self.points
@@ -157,6 +165,7 @@ impl Grid {
     pub fn point(&self, row: usize) -> Quantity {
         match &self.of {
             Of::List(points) => points[row].clone(),
+            Of::Column(column) => column.value(row),
             Of::Even { place, first } => {
                 let name = format!("{} {}", round::shortest(self.unit.from_si(self.points[row])), self.unit.text);
                 let input = Input {

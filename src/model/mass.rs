@@ -67,7 +67,7 @@ impl Explain for MassError {
 ///
 /// # Errors
 /// Its composition is not known, or an element has no standard atomic weight.
-fn molar_mass(cx: &Cx, entity: Entity, step: Rc<dyn Step>) -> Result<Quantity, Fault> {
+pub(super) fn molar_mass(cx: &Cx, entity: Entity, step: Rc<dyn Step>) -> Result<Quantity, Fault> {
     let Parameter { value: si, inputs, .. } = of_atoms(entity, &composition_of(cx, entity)?)?;
     let dim = Dimension::mass(entity).over(&Dimension::amount(entity));
     Ok(Quantity::from_step(si, dim, Kind::PLAIN, inputs, step, cx.place.clone())?)

@@ -4,6 +4,7 @@
 
 pub mod answer;
 pub mod argument;
+pub mod association;
 pub mod basis;
 pub mod budget;
 pub mod card;
@@ -15,6 +16,7 @@ pub mod conditions;
 pub mod curve;
 pub mod curve_card;
 pub mod cycle;
+pub mod decomposition;
 pub mod derivation;
 pub mod expanded;
 pub mod first_order;
@@ -31,6 +33,7 @@ pub mod mass;
 pub mod molecule;
 pub mod monte_carlo;
 pub mod path;
+pub mod plant;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
@@ -44,6 +47,8 @@ mod stated;
 pub mod statmech;
 pub mod substance;
 pub mod symbols;
+pub mod table;
+pub mod table_card;
 pub mod tabulated;
 pub mod terms;
 pub mod thermo;
@@ -94,6 +99,11 @@ pub const CARDS: &[&Card] = &[
     &remedy::WIDENED,
     &shortcut::VALID_TO,
     &shortcut::COMPARE_SHORTCUTS,
+    &plant::stream::STREAM,
+    &plant::balance::HEAT_BALANCE,
+    &plant::adiabatic::ADIABATIC_TEMPERATURE,
+    &plant::rise::TEMPERATURE_RISE,
+    &plant::rise::RISE_OF_FIGURES,
     &grid::GRID,
     &grid::GRID_OF,
     &curve_card::X,
@@ -105,6 +115,9 @@ pub const CARDS: &[&Card] = &[
     &curve_card::MIN,
     &curve_card::MAX,
     &curve_card::CROSSINGS,
+    &table_card::COLUMNS,
+    &table_card::COLUMN,
+    &table_card::CURVE,
     &basis::PER,
     &mass::PER_MASS,
     &mass::PER_MOLE,

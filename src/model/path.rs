@@ -152,6 +152,11 @@ impl Route {
         self.changes.last().map_or(&self.first, |(_, phase)| phase)
     }
 
+    /// The phases passed, the one at the end included.
+    pub fn phases(&self) -> impl Iterator<Item = &Phase> {
+        std::iter::once(&self.first).chain(self.changes.iter().map(|(_, phase)| phase))
+    }
+
     pub fn changes(&self) -> impl Iterator<Item = &Transition> {
         self.changes.iter().map(|(transition, _)| &**transition)
     }
@@ -299,15 +304,17 @@ fn assembled(
     Contribution { nu, formation, increment, entropy, cp: Some(cp), slopes }
 }
 
+/// The phases that routes from a written phase lead through, each with the temperature it begins at.
+pub fn onward_phases(written: &Arc<Substance>, data: &Catalog) -> Vec<(f64, Phase)> {
+    let Some(first) = Phase::of(written).filter(|phase| phase.function.covers(T_REFERENCE)) else { return Vec::new() };
+    let next = |last: &Phase| onward(last, data).map(|(transition, phase)| (transition.t_k, phase));
+    std::iter::successors(next(&first), |(_, last)| next(last)).collect()
+}
+
 /// The highest temperature that routes from a phase lead to.
 pub(super) fn reach_k(written: &Arc<Substance>, data: &Catalog) -> Option<f64> {
-    let mut last = Phase::of(written)?;
-    if last.function.covers(T_REFERENCE) {
-        while let Some((_, next)) = onward(&last, data) {
-            last = next;
-        }
-    }
-    Some(last.function.t_max)
+    let own = written.function.as_ref()?.t_max;
+    Some(onward_phases(written, data).last().map_or(own, |(_, phase)| phase.function.t_max))
 }
 
 /// The transition recorded where a phase ends on heating, and the condensed phase it leads to.

@@ -12,6 +12,7 @@
 //! | Δn(gas) | 1           | sum of ν of the gases, derived from the phases                     |
 //! | R       | J/(mol K)   | gas constant of the current constant set                           |
 //!
+//! Where a condensed species changes phase between 298.15 K and T, the recorded changes are part of H and S (`path`).
 //! Each species pure, in its standard state, p° = 1 bar. ΔrU° and ΔrA° take gases as ideal and neglect the volume of
 //! condensed species (`ideal-gas`, `condensed-volume-neglected`).
 //! Source: definitions of H, G, A; (∂H/∂T)p = Cp; IUPAC Green Book, 3rd ed., section 2.11 (from memory).
@@ -196,8 +197,8 @@ pub(super) fn dimension(property: Property, per: Entity) -> Dimension {
 fn kind(property: Property, terms: &Terms, t_k: f64) -> Kind {
     let zero = property.uses_formation().then_some(Zero::Elements298);
     let p_pa = Some(STANDARD_PRESSURE.value);
-    let reaction = terms.is_reaction();
-    Kind::in_state(property.what(), State { zero, t_k: Some(t_k), p_pa, standard: true, reaction })
+    let (standard, reaction) = (terms.conditions().is_empty(), terms.is_reaction());
+    Kind::in_state(property.what(), State { zero, t_k: Some(t_k), p_pa, standard, reaction })
 }
 
 /// The method a call asks for.

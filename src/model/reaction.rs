@@ -18,7 +18,6 @@ use crate::model::fit_card;
 use crate::model::molecule::error::MoleculeError;
 use crate::model::molecule::formation::Own;
 use crate::model::terms::{Stand, Term, Terms};
-use crate::model::thermo::Thermo;
 use crate::units::Entity;
 
 /// A reaction as written: its terms, per mole of reaction.
@@ -90,20 +89,10 @@ impl Reaction {
         Reaction::read_with(&format!("{} -> {}", side(false), side(true)), data, kept)
     }
 
-    /// The reaction with something else answering for one species.
-    #[must_use]
-    pub fn answered_by(&self, id: &str, thermo: Rc<dyn Thermo>) -> Reaction {
-        let answered = |term: &Term| match term.substance.id() == id {
-            true => Term { own: Some(Rc::clone(&thermo)), ..term.clone() },
-            false => term.clone(),
-        };
-        let terms = self.terms.terms().iter().map(answered).collect();
-        let mut own = self.own.clone();
-        for stand in own.values_mut().filter(|stand| stand.substance.id() == id) {
-            stand.thermo = Rc::clone(&thermo);
-        }
-        let terms = Terms::new(terms, Entity::RXN, self.terms.text().to_owned());
-        Reaction { equation: self.equation.clone(), terms, own }
+    /// The same reaction with other figures for some of its terms.
+    pub(super) fn answered_by(&self, terms: Vec<Term>) -> Reaction {
+        let terms = Terms::new(terms, Entity::RXN, self.text().to_owned());
+        Reaction { equation: self.equation.clone(), terms, own: self.own.clone() }
     }
 
     pub fn equation(&self) -> &Equation {

@@ -13,13 +13,14 @@ use std::sync::Arc;
 
 use smallvec::SmallVec;
 
+use crate::data::catalog::Catalog;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Sources, Takes, Value};
 use crate::model::check_line;
 use crate::model::function::{self, T_REFERENCE};
 use crate::model::gather::{self, Figure, FigureOrigin, GatherError};
-use crate::model::path::{FROM_START, Leg, Route};
+use crate::model::path::{self, FROM_START, Leg, Phase, Route};
 use crate::model::property::{self, Property};
 use crate::model::stated;
 use crate::model::terms::{Term, Terms};
@@ -32,19 +33,30 @@ use crate::units::{Kind, State, What, Zero};
 /// One phase of a substance, per mole of it.
 pub struct PureSubstance {
     terms: Terms,
+    onward: Vec<(f64, Phase)>,
 }
 
 impl PureSubstance {
     pub fn new(substance: Arc<Substance>) -> Self {
         let (per, text) = (substance.species.entity, substance.id().to_owned());
-        PureSubstance { terms: Terms::new(vec![Term::of_tables(substance, 1.0)], per, text) }
+        PureSubstance { terms: Terms::new(vec![Term::of_tables(substance, 1.0)], per, text), onward: Vec::new() }
     }
 
-    /// A substance that is no record: what answers for it stands beside its name.
-    pub fn own(substance: Arc<Substance>, own: Rc<dyn Thermo>) -> Self {
-        let (per, text) = (substance.species.entity, substance.id().to_owned());
-        let term = Term { own: Some(own), ..Term::of_tables(substance, 1.0) };
-        PureSubstance { terms: Terms::new(vec![term], per, text) }
+    /// With the phases it changes to on heating.
+    pub fn on_record(substance: Arc<Substance>, data: &Catalog) -> Self {
+        let onward = path::onward_phases(&substance, data);
+        PureSubstance { onward, ..PureSubstance::new(substance) }
+    }
+
+    /// The phases that are inserted on heating, each with the temperature it begins at.
+    pub fn onward(&self) -> &[(f64, Phase)] {
+        &self.onward
+    }
+
+    /// The same with other figures.
+    pub(super) fn answered_by(term: Term) -> Self {
+        let (per, text) = (term.substance.species.entity, term.substance.id().to_owned());
+        PureSubstance { terms: Terms::new(vec![term], per, text), onward: Vec::new() }
     }
 
     /// What answers for it in place of the tables.
@@ -81,7 +93,7 @@ pub static SUBSTANCE: Card = Card {
     example: "substance(\"H2O(l)\")",
     claims: &[],
     alternatives: &[],
-    run: |cx, call| Ok(Value::Substance(Rc::new(PureSubstance::new(cx.data().find(call.text(0))?)))),
+    run: |cx, call| Ok(Value::Substance(Rc::new(PureSubstance::on_record(cx.data().find(call.text(0))?, cx.data())))),
     check_line: None,
     caution: None,
 };

@@ -37,7 +37,7 @@ const INCREMENT: Symbol = symbol(
     "H(T) - H(298.15 K)",
     r"H(T)-H(298.15\,\mathrm{K})",
     "kJ/mol",
-    "enthalpy increments, closed-form integrals of Cp",
+    "enthalpy increments, closed-form integrals of Cp and recorded changes of phase between",
 );
 const ENTROPY: Symbol =
     symbol("S°", r"S^\circ", "J/(K mol)", "third-law entropies without nuclear spin, closed-form integrals of Cp/T");

@@ -8,6 +8,7 @@ use std::rc::Rc;
 
 use smallvec::SmallVec;
 
+use crate::data::dataset::DatasetId;
 use crate::fault::Fault;
 use crate::model::card::Cx;
 use crate::model::fit::Fit;
@@ -30,6 +31,16 @@ pub trait Thermo {
 
     /// The fit it is, for what is asked of fits alone.
     fn fit(&self) -> Option<&Fit> {
+        None
+    }
+
+    /// The one dataset beside which that formation enthalpy may stand; `None`: any.
+    fn dataset(&self) -> Option<&DatasetId> {
+        None
+    }
+
+    /// How it differs from the standard state, in words; `None` where it does not.
+    fn condition(&self) -> Option<String> {
         None
     }
 }

@@ -2,13 +2,16 @@
 //!
 //! With a full u: the larger of u/10 and half a unit of the last digit reported. Without: 0.05 kJ/mol times the largest
 //! |ν|. With a partial u: the larger of that and a tenth of the stated part. Scaled alike for S and Cp (t/T) and for ln K
-//! (t/RT). Values that are no reaction property: 1 %. (Common practice, no source.)
+//! (t/RT), and for balances of streams by the moles that are turned over. Values that are no reaction property: 1 %. (Common
+//! practice, no source.)
 
 use std::rc::Rc;
 
 use crate::model::card::{Call, call_of};
+use crate::model::gather;
 use crate::num::math;
 use crate::quantity::Quantity;
+use crate::record::node::{Input, LeafKey, Node};
 use crate::record::register::Reported;
 use crate::record::spread::Spread;
 use crate::units::What;
@@ -39,12 +42,29 @@ fn fixed(value: &Quantity, reported: &Reported, constants: &ConstantSet) -> Opti
     if let Some(terms) = call_of(value.node()).and_then(Call::terms) {
         return scale(value, constants).map(|per_nu| per_nu * terms.largest_nu());
     }
+    if let Some(turned_over) = turned_over(value.node()) {
+        return Some(PER_NU * turned_over);
+    }
     let carried = reported.history().iter().filter_map(|node| {
-        let terms = call_of(node)?.terms()?;
-        let own = scale(&Quantity::of_node(Rc::clone(node)), constants)? * terms.largest_nu();
+        let own = match call_of(node)?.terms() {
+            Some(terms) => scale(&Quantity::of_node(Rc::clone(node)), constants)? * terms.largest_nu(),
+            None => PER_NU * turned_over(node)?,
+        };
         Some(own * reported.derivative(node.id()).abs())
     });
     carried.filter(|t| *t > 0.0).reduce(f64::max)
+}
+
+/// What takes the place of the largest |ν| in a formula over several reactions and streams: the largest derivative by a
+/// formation enthalpy, which is the most moles of one species that are formed or used up, over what the formula divides by.
+fn turned_over(node: &Rc<Node>) -> Option<f64> {
+    call_of(node).filter(|call| call.terms().is_none())?;
+    let of_formation = |input: &Node| match input.input() {
+        Some(Input { key: LeafKey::Datum { field, .. }, .. }) => *field == gather::FORMATION,
+        _ => false,
+    };
+    let slopes = node.inputs().iter().filter(|(input, _)| of_formation(input)).map(|(_, slope)| slope.abs());
+    slopes.reduce(f64::max).filter(|most| *most > 0.0)
 }
 
 /// How large the prices of all rows that hold may be together: u/3, where u is complete. Where it is not, the stated part

@@ -7,4 +7,5 @@ pub mod pchip;
 pub mod powers;
 pub mod random;
 pub mod rational;
+pub mod root;
 pub mod student;

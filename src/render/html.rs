@@ -35,7 +35,7 @@ pub fn headline(headline: &Headline) -> String {
 fn symbol(symbol: &str) -> String {
     let (difference, rest) = match symbol.strip_prefix("Δr") {
         Some(rest) => ("Δ<sub>r</sub>", rest),
-        None => ("", symbol),
+        None => symbol.strip_prefix('Δ').map_or(("", symbol), |rest| ("Δ", rest)),
     };
     let rest = escaped(rest);
     let rest = match rest.strip_prefix("Cp") {

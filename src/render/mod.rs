@@ -3,8 +3,11 @@
 //! A [`Bundle`] holds one output in several forms. A report's forms are all made from one [`report::Report`], so that
 //! text, HTML, LaTeX and the machine record cannot disagree.
 
+pub mod balance;
 pub mod budget;
+pub mod cells;
 pub mod comparison;
+pub mod csv;
 pub mod curve;
 pub mod cycle;
 pub mod dataset;
@@ -20,6 +23,7 @@ pub mod plot;
 pub mod register;
 pub mod report;
 pub mod shortcut;
+pub mod table;
 pub mod text;
 
 use std::collections::BTreeMap;
@@ -64,7 +68,13 @@ pub fn substance(substance: &PureSubstance) -> Bundle {
         Some(function) => format!("heat capacity from {} K to {} K", function.t_min, function.t_max),
         None => "figures at 298.15 K only".to_owned(),
     };
-    let text = format!("{}{name}: {range}", record.id());
+    let onward: Vec<String> =
+        substance.onward().iter().map(|(t_k, phase)| format!("{} from {t_k} K", phase.substance.id())).collect();
+    let onward = match substance.onward().last() {
+        Some((_, last)) => format!(", then as {} to {} K", onward.join(", "), last.function.t_max),
+        None => String::new(),
+    };
+    let text = format!("{}{name}: {range}{onward}", record.id());
     Bundle::text(text.clone()).with_text("text/html", html::escaped(&text))
 }
 
@@ -78,6 +88,7 @@ pub fn answer(answer: &Answer) -> Bundle {
         Answer::Comparison(comparison) => comparison::bundle(comparison),
         Answer::Cycle(cycle) => cycle::bundle(cycle),
         Answer::Gap(gap) => gap::bundle(gap),
+        Answer::HeatBalance(balance) => balance::bundle(balance),
         Answer::Shares(shares) => molecule::shares(shares),
         Answer::PowerFit(fit) => molecule::power_fit(fit),
         Answer::Validity(validity) => shortcut::validity(validity),

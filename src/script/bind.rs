@@ -18,8 +18,10 @@ use crate::model::card::{self, Card, Cx, On, Value};
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
+use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
+use crate::model::table::Table;
 use crate::quantity::{Quantity, text};
 use crate::script::fault::raise;
 use crate::script::state::{Shared, place_of};
@@ -33,6 +35,7 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
     engine.register_type_with_name::<Quantity>("quantity");
     engine.register_type_with_name::<Rc<Reaction>>("reaction");
     engine.register_type_with_name::<Rc<PureSubstance>>("substance");
+    engine.register_type_with_name::<Rc<Stream>>("stream");
     engine.register_type_with_name::<Rc<Molecule>>("molecule");
     for name in ["to_string", "to_debug"] {
         engine.register_fn(name, |reaction: &mut Rc<Reaction>| reaction.text().to_owned());
@@ -86,6 +89,7 @@ fn receiver(on: On) -> Option<TypeId> {
         On::Substance => Some(TypeId::of::<Rc<PureSubstance>>()),
         On::Molecule => Some(TypeId::of::<Rc<Molecule>>()),
         On::Curve => Some(TypeId::of::<Rc<Curve>>()),
+        On::Table => Some(TypeId::of::<Rc<Table>>()),
     }
 }
 
@@ -100,6 +104,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
         return Value::Substance(Rc::clone(&substance));
     }
+    if let Some(stream) = value.read_lock::<Rc<Stream>>() {
+        return Value::Stream(Rc::clone(&stream));
+    }
     if let Some(molecule) = value.read_lock::<Rc<Molecule>>() {
         return Value::Molecule(Rc::clone(&molecule));
     }
@@ -108,6 +115,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     }
     if let Some(curve) = value.read_lock::<Rc<Curve>>() {
         return Value::Curve(Rc::clone(&curve));
+    }
+    if let Some(table) = value.read_lock::<Rc<Table>>() {
+        return Value::Table(Rc::clone(&table));
     }
     if let Some(answer) = value.read_lock::<Answer>() {
         return Value::Answer(answer.clone());
@@ -147,9 +157,11 @@ fn from_value(value: Value) -> Dynamic {
         ),
         Value::Reaction(reaction) => Dynamic::from(reaction),
         Value::Substance(substance) => Dynamic::from(substance),
+        Value::Stream(stream) => Dynamic::from(stream),
         Value::Molecule(molecule) => Dynamic::from(molecule),
         Value::Grid(grid) => Dynamic::from(grid),
         Value::Curve(curve) => Dynamic::from(curve),
+        Value::Table(table) => Dynamic::from(table),
         Value::Answer(answer) => Dynamic::from(answer),
         Value::Nothing => Dynamic::UNIT,
     }

@@ -13,7 +13,7 @@ use crate::script::fault::translate_syntax;
 use crate::script::prepare::{Prepared, prepare};
 use crate::script::script_error::CALL_LEVELS;
 use crate::script::state::{Halt, Shared};
-use crate::script::{bind, compare, curves, fault, files, guards, numbers, operators, show, verbs};
+use crate::script::{bind, compare, curves, fault, files, guards, numbers, operators, show, tables, verbs};
 
 /// Nesting of expressions; the engine's default refuses a sum of sixty terms inside a function.
 const EXPRESSION_DEPTH: usize = 512;
@@ -87,6 +87,7 @@ fn register_library(engine: &mut Engine, shared: &Shared) {
     curves::register(engine, shared);
     verbs::register(engine, shared);
     files::register(engine, shared);
+    tables::register(engine, shared);
 }
 
 /// Reads a text. `source` names it in places; positions that the engine reports for it go through `Shared::place`.

@@ -20,6 +20,7 @@ pub mod script_error;
 pub mod show;
 pub mod state;
 pub mod syntax;
+pub mod tables;
 pub mod token;
 pub mod verbs;
 pub mod words;

@@ -14,8 +14,10 @@ use crate::model::answer::Answer;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
+use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
+use crate::model::table::Table;
 use crate::quantity::Quantity;
 use crate::render::{self, Bundle};
 use crate::script::verbs::Display;
@@ -37,6 +39,9 @@ fn own(value: &Dynamic) -> Option<Bundle> {
     if let Some(curve) = value.read_lock::<Rc<Curve>>() {
         return Some(render::curve::bundle(&curve));
     }
+    if let Some(table) = value.read_lock::<Rc<Table>>() {
+        return Some(render::table::bundle(&table));
+    }
     if let Some(grid) = value.read_lock::<Rc<Grid>>() {
         return Some(Bundle::text(grid.words()));
     }
@@ -48,6 +53,9 @@ fn own(value: &Dynamic) -> Option<Bundle> {
     }
     if let Some(substance) = value.read_lock::<Rc<PureSubstance>>() {
         return Some(render::substance(&substance));
+    }
+    if let Some(stream) = value.read_lock::<Rc<Stream>>() {
+        return Some(render::balance::stream(&stream));
     }
     if let Some(molecule) = value.read_lock::<Rc<Molecule>>() {
         return Some(render::molecule::bundle(&molecule));

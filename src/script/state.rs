@@ -23,6 +23,7 @@ use crate::quantity::Quantity;
 use crate::render::Bundle;
 use crate::script::host::{Host, HostSlot};
 use crate::script::prepare::Shifts;
+use crate::script::tables::Writes;
 use crate::script::words::Library;
 use crate::script::{engine, memory};
 
@@ -143,6 +144,8 @@ impl Explain for Halt {
 pub struct Shared {
     state: Rc<RefCell<State>>,
     pub host: HostSlot,
+    /// What the running cell will have written.
+    pub writes: Writes,
     stop: Arc<AtomicBool>,
     references: Rc<References>,
     folder: Rc<RefCell<PathBuf>>,
@@ -167,6 +170,7 @@ impl Shared {
         Shared {
             state: Rc::default(),
             host: HostSlot::default(),
+            writes: Writes::default(),
             stop,
             references: Rc::new(references),
             folder: Rc::default(),
@@ -303,6 +307,7 @@ impl Shared {
     /// Counts memory from here: the start of a cell, which nobody has told to end yet.
     pub fn start_cell(&self) {
         self.halt.set(None);
+        self.writes.forget();
         self.ceiling.set(memory::held().saturating_add_unsigned(self.limit.get()));
     }
 

@@ -57,6 +57,18 @@ pub const VERBS: &[Verb] = &[
         doc: "Shows a value at once, in the middle of a cell, as the cell's last value is shown.",
     },
     Verb {
+        name: "read_csv",
+        signature: "read_csv(file) or read_csv(file, source)",
+        doc: "Reads a table of figures from a file beside the notebook: comma-separated values whose first line names each \
+              column with its unit, `T / K,Cp / (J/(K mol[CH4])),u(Cp) / (J/(K mol[CH4]))`. A second text names the source.",
+    },
+    Verb {
+        name: "write_csv",
+        signature: "write_csv(curves, file)",
+        doc: "Writes a curve, a list of curves, or a map from names to curves to a file beside the notebook, with units and \
+              standard uncertainties; `read_csv` reads it back.",
+    },
+    Verb {
         name: "dataset",
         signature: "dataset(file)",
         doc: "Loads records of one's own from a JSON file beside the notebook, and shows what they stand before.",
@@ -323,6 +335,9 @@ impl Verbs {
         let rows: Vec<&Assumption> = report.record.assumptions.iter().filter(|row| row.id == id).collect();
         let meant: Vec<&Assumption> =
             rows.iter().copied().filter(|row| about.is_none_or(|about| row.subject.contains(about))).collect();
+        // One species may stand alone in one row and among others in another.
+        let exact: Vec<&Assumption> = meant.iter().copied().filter(|row| about == Some(&*row.subject)).collect();
+        let meant = if exact.is_empty() { meant } else { exact };
         match meant.as_slice() {
             [row] => Ok((*row).clone()),
             [] => {

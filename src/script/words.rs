@@ -40,6 +40,7 @@ pub fn kind(type_name: &str) -> String {
         _ if bare.ends_with("::PureSubstance>") => "a substance",
         _ if bare.ends_with("::grid::Grid>") => "a grid of temperatures",
         _ if bare.ends_with("::curve::Curve>") => "a curve",
+        _ if bare.ends_with("::table::Table>") => "a table",
         _ if bare.ends_with("::Dynamic") => "any value",
         _ if bare.contains("Range") => "a range",
         _ if bare.contains("StepRange") || bare.contains("Stream") => "a sequence",

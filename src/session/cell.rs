@@ -97,6 +97,13 @@ impl Session {
                 column: 0,
             }))),
         };
+        let result = match result {
+            Ok(shown) if keep == Keep::Everything => {
+                let written = self.shared.writes.commit().map(|()| shown);
+                written.map_err(|error| Fault::from(error).at(Some(Place { cell: cell.into(), line: 0, column: 0 })))
+            }
+            other => other,
+        };
         if result.is_ok() && keep == Keep::Everything {
             // Without this, `let x` again and again would grow the variables.
             self.scope = scope.clone_visible();

@@ -49,7 +49,7 @@ fn undocumented(args: &[Arg]) -> Vec<String> {
             found.push(format!("the argument `{}` has no doc", arg.name));
         }
         match arg.takes {
-            Takes::Options(options) => found.extend(undocumented(options)),
+            Takes::Options(options) | Takes::Maps(options) => found.extend(undocumented(options)),
             Takes::Word([]) => found.push(format!("the argument `{}` has no words to choose from", arg.name)),
             _ => {}
         }

@@ -25,11 +25,11 @@ use crate::units::constants::STANDARD_PRESSURE;
 
 /// Condensed phases count as equally stable within this, J/mol. Bound: the source joins phases at a transition with equal
 /// Gibbs energies to within 1 J/mol, so nearer than that the order of two phases is rounding.
-const RESOLUTION_CONDENSED: f64 = 1.0;
+pub(in crate::model) const RESOLUTION_CONDENSED: f64 = 1.0;
 
 /// The same for a gas beside a condensed phase, J/mol. Bound: the two functions of one substance miss its vapour pressure by up
 /// to 13 % at 298.15 K (ethanol, against the Antoine equation of Poling, Prausnitz, O'Connell, 5th ed.), RT ln 1.13.
-const RESOLUTION_GAS: f64 = 300.0;
+pub(in crate::model) const RESOLUTION_GAS: f64 = 300.0;
 
 /// `stable-phase`: each species against the other shipped phases of its composition, by Gibbs energy at T and 1 bar; a gas
 /// above its critical temperature has no liquid to be compared with. Where changes of phase were inserted on the way to T,
