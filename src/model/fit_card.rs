@@ -293,7 +293,7 @@ fn own(call: &Call, name: Rc<str>, rows: Vec<Row>, way: Way) -> Value {
         name: None,
         cas: None,
         function: None,
-        critical_temperature: None,
+        pressure: std::default::Default::default(),
         formations: Vec::new(),
     };
     let term = Term { own: Some(Rc::new(fit)), ..Term::of_tables(Arc::new(substance), 1.0) };

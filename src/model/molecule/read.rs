@@ -11,6 +11,7 @@ use std::sync::Arc;
 use crate::chem::composition::Composition;
 use crate::chem::formula::Formula;
 use crate::chem::species::{Phase, Species, State};
+use crate::data::pressure::Constants;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Cx, Value, listed};
@@ -322,7 +323,7 @@ impl<'a> Reader<'a> {
 
     fn mass(&self, substance: &Substance) -> Result<Parameter, Fault> {
         let Some(given) = self.map.get("molar_mass") else {
-            return mass::of_atoms(substance.species.entity, &substance.species.composition);
+            return mass::of_atoms(self.cx, substance.species.entity, &substance.species.composition);
         };
         let quantity = self.quantity("molar_mass", given)?;
         let wanted = unit_parse::unit("kg/mol")?.dim.without_basis();
@@ -582,7 +583,7 @@ fn made_up(base: &str, composition: &Composition, charge: i32) -> Substance {
         name: None,
         cas: None,
         function: None,
-        critical_temperature: None,
+        pressure: Constants::default(),
         formations: Vec::new(),
     }
 }
