@@ -1,14 +1,15 @@
 //! The shipped notebooks as goldens: run anew, they must give the records that stand in their files, to the last digit.
 //!
-//! Goldens are written by hand (`hessbook run FILE --in-place`, then read the difference), never by a test. Because a golden
+//! Goldens and seals are written by hand (`hessbook seal notebooks/*.ipynb`, then read the difference), never by a test. Because a golden
 //! only says that nothing changed, the figures are compared with their sources too: recomputed here from the shipped
 //! tables by code that shares nothing with the program but the files.
 
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
-use hessbook::notebook::file::Output;
+use hessbook::notebook::file::{NotebookFile, Output};
 use hessbook::notebook::run::{RunRecord, RunStatus, Source, Watcher, run};
+use hessbook::notebook::seal::{KEY, Seal};
 use hessbook::render::Bundle;
 use hessbook::render::report::{MIME, Record};
 use hessbook::session::{Session, on_big_stack};
@@ -62,6 +63,25 @@ fn each_notebook_gives_the_records_that_stand_in_its_file() {
         for (now, golden) in now.iter().zip(&golden) {
             assert_eq!(now, golden, "{}: {}", path.display(), now.label);
         }
+    }
+}
+
+#[test]
+fn seal_and_outputs_of_the_shipped_notebooks_say_the_same() {
+    // Both are written by `hessbook seal notebooks/*.ipynb`; a golden made anew by other means would leave the seal behind.
+    for path in notebooks() {
+        let notebook = NotebookFile::read(&path).unwrap();
+        let seal = Seal::deserialize(notebook.metadata(KEY).unwrap()).unwrap();
+        let recorded = notebook.recorded(MIME);
+        let sealed: Vec<Value> = seal.values.iter().map(|value| serde_json::to_value(&value.record).unwrap()).collect();
+        assert_eq!(
+            recorded,
+            sealed.iter().collect::<Vec<_>>(),
+            "{}: seal it again with `target/debug/hessbook seal notebooks/*.ipynb`",
+            path.display()
+        );
+        let cells: Vec<String> = notebook.code_cells().into_iter().map(|cell| cell.name).collect();
+        assert_eq!(seal.cells.into_iter().map(|cell| cell.name).collect::<Vec<_>>(), cells);
     }
 }
 

@@ -113,6 +113,7 @@ impl Catalog {
             molecules: base.molecules.clone(),
             names: base.names.clone(),
             lookup,
+            weights: base.weights.clone(),
         };
         Ok((self.watched_alike(contents), told))
     }

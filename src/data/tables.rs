@@ -3,6 +3,9 @@
 //! [`Tables`] sorts files by the schema that each names in its first line, so a new dataset is one new file and a
 //! dataset that is taken away is missed by nobody. Files of other schemas belong to other modules and are passed over.
 
+use std::collections::BTreeMap;
+
+use crate::chem::element::{self, AtomicWeight, Element};
 use crate::source::Embedded;
 
 use super::critical::CriticalTemperature;
@@ -25,6 +28,8 @@ pub(super) struct Tables {
     pub critical: Vec<CriticalTemperature>,
     pub molecules: Vec<Constants>,
     pub names: Names,
+    /// Of the first table that has the element.
+    pub weights: BTreeMap<Element, AtomicWeight>,
 }
 
 impl Tables {
@@ -40,6 +45,12 @@ impl Tables {
                 Some(critical::SCHEMA) => critical::read(file, &mut tables.critical)?,
                 Some(molecule::SCHEMA) => molecule::read(file, &mut tables.molecules)?,
                 Some(names::SCHEMA) => names::read(file, &mut tables.names)?,
+                Some(element::SCHEMA) => {
+                    let unreadable = |why| TableFault::Unreadable { path: file.path.to_owned(), why };
+                    for (element, weight) in element::read_weights(file.bytes).map_err(unreadable)? {
+                        tables.weights.entry(element).or_insert(weight);
+                    }
+                }
                 _ => {}
             }
         }

@@ -52,3 +52,13 @@ impl Explain for ArgumentError {
         }
     }
 }
+
+/// "`a`, `b` and `c`".
+pub fn listed<'a>(words: impl IntoIterator<Item = &'a str>) -> String {
+    let words: Vec<String> = words.into_iter().map(|word| format!("`{word}`")).collect();
+    match words.split_last() {
+        None => "none".to_owned(),
+        Some((last, [])) => last.clone(),
+        Some((last, rest)) => format!("{} and {last}", rest.join(", ")),
+    }
+}

@@ -15,6 +15,7 @@ use crate::data::catalog::Catalog;
 use crate::fault::{Fault, Place};
 use crate::model::answer::Answer;
 use crate::model::argument::ArgumentError;
+pub use crate::model::argument::listed;
 use crate::model::caution::Caution;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
@@ -594,14 +595,4 @@ pub(super) fn as_point(card: &'static Card, arg: &'static Arg, value: Quantity) 
         return Err(ArgumentError::NotPositive { function: card.name, t_k: value.si() }.into());
     }
     Ok(value)
-}
-
-/// "`a`, `b` and `c`".
-pub fn listed<'a>(words: impl IntoIterator<Item = &'a str>) -> String {
-    let words: Vec<String> = words.into_iter().map(|word| format!("`{word}`")).collect();
-    match words.split_last() {
-        None => "none".to_owned(),
-        Some((last, [])) => last.clone(),
-        Some((last, rest)) => format!("{} and {last}", rest.join(", ")),
-    }
 }

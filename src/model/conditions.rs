@@ -37,6 +37,13 @@ pub fn line(cx: &Cx, value: &Quantity) -> String {
             parts.push("each solute in its ideal solution of 1 mol/kg".to_owned());
         }
     }
+    for node in node::history(value.node()) {
+        for condition in call_of(&node).and_then(Call::terms).map(Terms::conditions).unwrap_or_default() {
+            if !parts.contains(&condition) {
+                parts.push(condition);
+            }
+        }
+    }
     let per_substance = call_of(value.node())
         .is_some_and(|call| matches!(call.args.first(), Some(Value::Substance(_) | Value::Molecule(_))));
     if let (Some(zero), true) = (&state.zero, per_substance) {

@@ -41,7 +41,29 @@ impl Functions {
 
 /// Cp, H and S at `t_k`, which must lie within the function's range ([`Function::covers`]).
 pub fn evaluate(function: &Function, t_k: f64) -> Functions {
-    let interval = interval_at(&function.intervals, t_k);
+    within(interval_at(&function.intervals, t_k), function.r_of_source, t_k)
+}
+
+/// What a function jumps by where two of its intervals join.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Jump {
+    pub t_k: f64,
+    /// J/mol
+    pub h: f64,
+    /// J/(mol K)
+    pub s: f64,
+}
+
+/// The joins of a function, from low to high.
+pub fn jumps(function: &Function) -> impl Iterator<Item = Jump> {
+    function.intervals.windows(2).map(|pair| {
+        let (t_k, r) = (pair[0].t_max, function.r_of_source);
+        let (below, above) = (within(&pair[0], r, t_k), within(&pair[1], r, t_k));
+        Jump { t_k, h: above.h - below.h, s: above.s - below.s }
+    })
+}
+
+fn within(interval: &Interval, r: f64, t_k: f64) -> Functions {
     let (a, b) = (&interval.a, &interval.b);
     let (t, inverse, ln_t) = (t_k, 1.0 / t_k, math::ln(t_k));
     let mut cp = a[0] * inverse * inverse + a[1] * inverse + horner(t, [a[2], a[3], a[4], a[5], a[6]]);
@@ -56,7 +78,6 @@ pub fn evaluate(function: &Function, t_k: f64) -> Functions {
         h += power.integral(t);
         s += power.integral_over_x(t);
     }
-    let r = function.r_of_source;
     Functions { cp: r * cp, h: r * h, s: r * s }
 }
 

@@ -276,7 +276,8 @@ fn formation_datasets(data: &Catalog) -> impl Iterator<Item = &Dataset> {
 /// The formation enthalpy of a term: a substance of one's own brings it, whichever dataset serves the others.
 pub(crate) fn term_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -> Option<Figure> {
     match &term.own {
-        Some(own) => own.formation(),
+        Some(own) if own.dataset().is_none_or(|only| only == dataset) => own.formation(),
+        Some(_) => None,
         None => formation_of(&term.substance, dataset, data),
     }
 }

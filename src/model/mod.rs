@@ -4,6 +4,7 @@
 
 pub mod answer;
 pub mod argument;
+pub mod association;
 pub mod basis;
 pub mod budget;
 pub mod card;
@@ -15,6 +16,7 @@ pub mod conditions;
 pub mod curve;
 pub mod curve_card;
 pub mod cycle;
+pub mod decomposition;
 pub mod derivation;
 pub mod expanded;
 pub mod first_order;

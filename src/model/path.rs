@@ -152,6 +152,11 @@ impl Route {
         self.changes.last().map_or(&self.first, |(_, phase)| phase)
     }
 
+    /// The phases passed, the one at the end included.
+    pub fn phases(&self) -> impl Iterator<Item = &Phase> {
+        std::iter::once(&self.first).chain(self.changes.iter().map(|(_, phase)| phase))
+    }
+
     pub fn changes(&self) -> impl Iterator<Item = &Transition> {
         self.changes.iter().map(|(transition, _)| &**transition)
     }

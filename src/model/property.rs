@@ -197,8 +197,8 @@ pub(super) fn dimension(property: Property, per: Entity) -> Dimension {
 fn kind(property: Property, terms: &Terms, t_k: f64) -> Kind {
     let zero = property.uses_formation().then_some(Zero::Elements298);
     let p_pa = Some(STANDARD_PRESSURE.value);
-    let reaction = terms.is_reaction();
-    Kind::in_state(property.what(), State { zero, t_k: Some(t_k), p_pa, standard: true, reaction })
+    let (standard, reaction) = (terms.conditions().is_empty(), terms.is_reaction());
+    Kind::in_state(property.what(), State { zero, t_k: Some(t_k), p_pa, standard, reaction })
 }
 
 /// The method a call asks for.

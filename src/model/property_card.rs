@@ -155,12 +155,35 @@ const CONDENSED_VOLUME: Claim = Claim { id: "condensed-volume-neglected", test: 
 
 const AQUEOUS: Claim = Claim { id: "aqueous-heat-capacity", test: claims::aqueous_heat_capacity };
 const SATURATED_VAPOUR: Claim = Claim { id: "saturated-vapour-ideal", test: claims::vapour_of_records };
+const MONOMER_VAPOUR: Claim = Claim { id: "monomer-vapour", test: claims::monomer_vapour };
+const NO_DECOMPOSITION: Claim = Claim { id: "no-decomposition", test: claims::no_decomposition };
+const FIT_QUALITY: Claim = Claim { id: "fit-quality", test: claims::fit_quality };
 
-const ENTHALPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET, SATURATED_VAPOUR];
-const ENERGY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET];
-const GAS_LAW_CLAIMS: &[Claim] =
-    &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET, IDEAL_GAS, CONDENSED_VOLUME];
-const ENTROPY_CLAIMS: &[Claim] = &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE];
+const ENTHALPY_CLAIMS: &[Claim] = &[
+    CONSTANT_HEAT_CAPACITY,
+    AQUEOUS,
+    STABLE_PHASE,
+    FORMATION_DATASET,
+    SATURATED_VAPOUR,
+    MONOMER_VAPOUR,
+    NO_DECOMPOSITION,
+    FIT_QUALITY,
+];
+const ENERGY_CLAIMS: &[Claim] =
+    &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET, MONOMER_VAPOUR, NO_DECOMPOSITION, FIT_QUALITY];
+const GAS_LAW_CLAIMS: &[Claim] = &[
+    CONSTANT_HEAT_CAPACITY,
+    AQUEOUS,
+    STABLE_PHASE,
+    FORMATION_DATASET,
+    IDEAL_GAS,
+    CONDENSED_VOLUME,
+    MONOMER_VAPOUR,
+    NO_DECOMPOSITION,
+    FIT_QUALITY,
+];
+const ENTROPY_CLAIMS: &[Claim] =
+    &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, MONOMER_VAPOUR, NO_DECOMPOSITION, FIT_QUALITY];
 
 const SHORTCUTS: &[Alternative] = &[
     Alternative {

@@ -88,6 +88,12 @@ impl Reaction {
         Reaction::read_with(&format!("{} -> {}", side(false), side(true)), data, kept)
     }
 
+    /// The same reaction with other figures for some of its terms.
+    pub(super) fn answered_by(&self, terms: Vec<Term>) -> Reaction {
+        let terms = Terms::new(terms, Entity::RXN, self.text().to_owned());
+        Reaction { equation: self.equation.clone(), terms, own: self.own.clone() }
+    }
+
     pub fn equation(&self) -> &Equation {
         &self.equation
     }

@@ -133,6 +133,9 @@ fn meant(cx: &Cx, call: &Call) -> Result<(Vec<Finding>, Row), Fault> {
     let rows = review::rows(cx, value);
     let of_id = rows.iter().filter(|(_, row)| row.id == **id);
     let chosen: Vec<_> = of_id.filter(|(_, row)| about.is_none_or(|about| row.subject.contains(about))).collect();
+    // One species may stand alone in one row and among others in another.
+    let exact: Vec<_> = chosen.iter().copied().filter(|(_, row)| about == Some(&*row.subject)).collect();
+    let chosen = if exact.is_empty() { chosen } else { exact };
     match chosen.as_slice() {
         [(group, row)] => Ok((group.clone(), row.clone())),
         [] => {

@@ -7,6 +7,7 @@ use std::collections::BTreeMap;
 use std::rc::Rc;
 
 use crate::model::card::{Alternative, Cx, Sources, call_of};
+use crate::model::claims;
 use crate::model::{caution, check_line, conditions, remedy, tolerance};
 use crate::quantity::{Quantity, round};
 use crate::record::node::LeafKey;
@@ -295,6 +296,9 @@ fn findings(cx: &Cx, at_value: &At, silent: &[(String, Vec<String>)]) -> Vec<Vec
             enter(Finding::known("basis-unnamed", entity.name(), node, None, Tested::Missing { what }));
         }
     }
+    if let Some((about, tested)) = claims::worst_correlation(value) {
+        enter(Finding::known("independent-inputs", about, value.node(), None, tested));
+    }
     if !silent.is_empty() {
         let tested = Tested::Missing { what: format!("no u is stated for {}", silent_in_full(silent)) };
         enter(Finding::known("uncertainty-incomplete", silent_words(silent), value.node(), None, tested));
@@ -348,7 +352,7 @@ pub fn silent_inputs(value: &Quantity) -> Vec<(String, Vec<String>)> {
     by_field.into_iter().collect()
 }
 
-fn plural(field: &str) -> String {
+pub(super) fn plural(field: &str) -> String {
     // "transition enthalpies", "heat capacities", "typed values".
     match field.strip_suffix('y') {
         Some(stem) => format!("{stem}ies"),

@@ -52,6 +52,12 @@ impl PureSubstance {
         &self.onward
     }
 
+    /// The same with other figures.
+    pub(super) fn answered_by(term: Term) -> Self {
+        let (per, text) = (term.substance.species.entity, term.substance.id().to_owned());
+        PureSubstance { terms: Terms::new(vec![term], per, text), onward: Vec::new() }
+    }
+
     pub fn record(&self) -> &Arc<Substance> {
         &self.terms.terms()[0].substance
     }

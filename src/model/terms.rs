@@ -64,6 +64,11 @@ impl Terms {
         &self.text
     }
 
+    /// How species differ from their standard states, in words; empty where none does.
+    pub fn conditions(&self) -> Vec<String> {
+        self.terms.iter().filter_map(|term| term.own.as_ref()?.condition()).collect()
+    }
+
     /// Sum of the stoichiometric numbers of the gases.
     pub fn delta_n_gas(&self) -> f64 {
         self.terms.iter().filter(|term| term.substance.species.is_gas()).map(|term| term.nu).sum()

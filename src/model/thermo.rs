@@ -8,6 +8,7 @@ use std::rc::Rc;
 
 use smallvec::SmallVec;
 
+use crate::data::dataset::DatasetId;
 use crate::fault::Fault;
 use crate::model::card::Cx;
 use crate::model::gather::{Figure, FigureOrigin};
@@ -26,6 +27,16 @@ pub trait Thermo {
 
     /// Its formation enthalpy at 298.15 K, J/mol, where its author gave one.
     fn formation(&self) -> Option<Figure>;
+
+    /// The one dataset beside which that formation enthalpy may stand; `None`: any.
+    fn dataset(&self) -> Option<&DatasetId> {
+        None
+    }
+
+    /// How it differs from the standard state, in words; `None` where it does not.
+    fn condition(&self) -> Option<String> {
+        None
+    }
 }
 
 /// What one mole of a substance has at T.

@@ -335,6 +335,9 @@ impl Verbs {
         let rows: Vec<&Assumption> = report.record.assumptions.iter().filter(|row| row.id == id).collect();
         let meant: Vec<&Assumption> =
             rows.iter().copied().filter(|row| about.is_none_or(|about| row.subject.contains(about))).collect();
+        // One species may stand alone in one row and among others in another.
+        let exact: Vec<&Assumption> = meant.iter().copied().filter(|row| about == Some(&*row.subject)).collect();
+        let meant = if exact.is_empty() { meant } else { exact };
         match meant.as_slice() {
             [row] => Ok((*row).clone()),
             [] => {

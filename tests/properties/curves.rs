@@ -22,13 +22,23 @@ use hessbook::record::spread::Spread;
 const PROPERTIES: [&Card; 7] =
     [&ENTHALPY, &INTERNAL_ENERGY, &GIBBS_ENERGY, &HELMHOLTZ_ENERGY, &ENTROPY, &HEAT_CAPACITY, &EQUILIBRIUM_CONSTANT];
 
-fn options(mode: &str) -> Value {
-    Value::Options(Rc::new(BTreeMap::from([("heat_capacity".to_owned(), Value::Text(mode.into()))])))
+/// An expansion starts from a temperature of its own.
+fn options(mode: &'static str) -> Vec<(&'static str, &'static str)> {
+    let about = (mode == "taylor").then_some(("about", "450 K"));
+    std::iter::once(("heat_capacity", mode)).chain(about).collect()
 }
 
-fn curve(desk: &Desk, property: &'static Card, equation: &str, grid: &Rc<Grid>, mode: &str) -> Option<Rc<Curve>> {
+fn curve(
+    desk: &Desk,
+    property: &'static Card,
+    equation: &str,
+    grid: &Rc<Grid>,
+    mode: &'static str,
+) -> Option<Rc<Curve>> {
     let reaction = card::call(&desk.cx(), &REACTION, vec![Value::Text(equation.into())]).unwrap();
-    let given = vec![reaction, Value::Grid(Rc::clone(grid)), options(mode)];
+    let options = options(mode).into_iter().map(|(name, word)| (name.to_owned(), Value::Text(word.into())));
+    let options: BTreeMap<String, Value> = options.collect();
+    let given = vec![reaction, Value::Grid(Rc::clone(grid)), Value::Options(Rc::new(options))];
     match card::call(&desk.cx(), property, given) {
         Ok(Value::Curve(curve)) => Some(curve),
         Ok(other) => panic!("{} at a grid gives {}", property.id, other.sort()),
@@ -60,7 +70,7 @@ fn each_row_is_the_single_call() {
         let Some(curve) = curve(&desk, property, &equation, &grid, mode) else { return Ok(()) };
         prop_assert_eq!(curve.numbers().len(), points);
         for (row, t_k) in grid.points_k().iter().enumerate() {
-            let single = desk.ask(property, &equation, &format!("{t_k} K"), &[("heat_capacity", mode)]).unwrap();
+            let single = desk.ask(property, &equation, &format!("{t_k} K"), &options(mode)).unwrap();
             let of_curve = curve.row(row).unwrap();
             prop_assert_eq!(curve.numbers()[row].to_bits(), single.si().to_bits(), "{} at {} K", &equation, t_k);
             prop_assert_eq!(of_curve.si().to_bits(), single.si().to_bits());

@@ -88,7 +88,7 @@ pub fn equation(halves: &Halves) -> String {
     format!("{} -> {}", side(-1), side(1))
 }
 
-fn delta_n(halves: &Halves) -> f64 {
+pub fn delta_n(halves: &Halves) -> f64 {
     halves.iter().filter(|(at, _)| is_gas(**at)).map(|(_, nu)| *nu as f64 / 2.0).sum()
 }
 

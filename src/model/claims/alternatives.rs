@@ -79,6 +79,10 @@ fn shortcut(cx: &Cx, call: &Call, heat_capacity: HeatCapacity) -> Option<f64> {
     if property::is_reference(asked.t_k) || asked.method.heat_capacity != HeatCapacity::Full {
         return None;
     }
+    // An equilibrium that was put in for T has no heat capacity elsewhere to be held.
+    if !asked.terms.conditions().is_empty() {
+        return None;
+    }
     // ΔCp itself has no further shortcut than its value at 298.15 K.
     let held = matches!(heat_capacity, HeatCapacity::Constant | HeatCapacity::Midpoint | HeatCapacity::Mean);
     if asked.property == Property::Cp && held {

@@ -3,8 +3,12 @@
 //! One file for each noun that is assumed of. Every test computes the alternative with the same code as the value itself.
 
 mod alternatives;
+mod association;
+mod decomposition;
+mod fit;
 mod formation;
 mod heat_capacity;
+mod independence;
 mod phase;
 mod vaporisation;
 mod volume;
@@ -13,8 +17,12 @@ pub use alternatives::{
     with_atmosphere, with_constant_heat_capacity, with_enthalpy, with_internal_energy, with_mean_heat_capacity,
     with_midpoint_heat_capacity, with_missed_phase_change, without_correction,
 };
+pub use association::monomer_vapour;
+pub use decomposition::no_decomposition;
+pub use fit::fit_quality;
 pub use formation::formation_dataset;
 pub use heat_capacity::{aqueous_heat_capacity, constant_heat_capacity};
+pub use independence::worst_correlation;
 pub use phase::stable_phase;
 pub(in crate::model) use phase::{RESOLUTION_CONDENSED, RESOLUTION_GAS};
 pub use vaporisation::vapour_of_records;

@@ -12,6 +12,7 @@ use crate::data::substance::Substance;
 use crate::model::card::{Call, Cx};
 use crate::model::gap::candidate::{Candidate, Mistake, Scale};
 use crate::model::gather::{self, Contribution, Figure, Method};
+use crate::model::path::{self, Route};
 use crate::model::property::{self, Property};
 use crate::model::terms::Terms;
 use crate::quantity::{Quantity, text};
@@ -104,6 +105,12 @@ impl<'a> Case<'a> {
 
     pub fn substance(&self, at: usize) -> &Substance {
         &self.terms.terms()[at].substance
+    }
+
+    /// The way of a species to T, where it changes phase.
+    pub fn route(&self, at: usize) -> Option<Route> {
+        let crossings = path::crossings(self.terms, self.t_k, self.cx.data());
+        crossings.into_iter().find(|(of, _)| *of == at).map(|(_, route)| route)
     }
 
     /// Adds a mistake by what the property would have been with it.

@@ -322,7 +322,7 @@ impl<'a> Reader<'a> {
 
     fn mass(&self, substance: &Substance) -> Result<Parameter, Fault> {
         let Some(given) = self.map.get("molar_mass") else {
-            return mass::of_atoms(substance.species.entity, &substance.species.composition);
+            return mass::of_atoms(self.cx, substance.species.entity, &substance.species.composition);
         };
         let quantity = self.quantity("molar_mass", given)?;
         let wanted = unit_parse::unit("kg/mol")?.dim.without_basis();
