@@ -19,6 +19,7 @@ use crate::fault::{Explain, Fault};
 use crate::model::card::Cx;
 use crate::model::first_order;
 use crate::model::function::{self, Functions, T_REFERENCE};
+use crate::model::given::Given;
 pub use crate::model::heat_capacity::HeatCapacity;
 use crate::model::path::Route;
 use crate::model::stated;
@@ -158,10 +159,12 @@ impl Explain for GatherError {
 }
 
 /// How a reaction property is to be computed.
-#[derive(Clone, Debug, PartialEq)]
+#[derive(Clone, Debug)]
 pub struct Method {
     pub heat_capacity: HeatCapacity,
     pub formation: Formation,
+    /// The pressure, and how it is taken; `None`: standard values.
+    pub given: Option<Given>,
 }
 
 impl Method {
@@ -180,7 +183,7 @@ impl Method {
             Some("mixed") => Formation::Mixed,
             Some(word) => Formation::Of(dataset_named(word, data)?),
         };
-        Ok(Method { heat_capacity, formation })
+        Ok(Method { heat_capacity, formation, given: None })
     }
 }
 

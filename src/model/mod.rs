@@ -23,6 +23,7 @@ pub mod first_order;
 pub mod function;
 pub mod gap;
 pub mod gather;
+pub mod given;
 pub mod grid;
 pub mod heat_capacity;
 pub mod linearity;
@@ -31,6 +32,7 @@ pub mod molecule;
 pub mod monte_carlo;
 pub mod path;
 pub mod plant;
+pub mod pressure;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
@@ -50,6 +52,8 @@ pub mod tabulated;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
+pub mod vapour;
+pub mod virial;
 
 use card::Card;
 
@@ -73,6 +77,9 @@ pub const CARDS: &[&Card] = &[
     &property_card::SUBSTANCE_HELMHOLTZ_ENERGY,
     &property_card::SUBSTANCE_ENTROPY,
     &property_card::SUBSTANCE_HEAT_CAPACITY,
+    &vapour::VAPOUR_PRESSURE,
+    &vapour::BOILING_POINT,
+    &vapour::VAPORISATION_ENTHALPY,
     &substance::ENTHALPY_INCREMENT,
     &substance::REACTION_INCREMENT,
     &molecule::limits::MOLECULE,
