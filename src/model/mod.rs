@@ -45,6 +45,7 @@ pub mod shortcut;
 mod stated;
 pub mod statmech;
 pub mod substance;
+pub mod sweep;
 pub mod symbols;
 pub mod table;
 pub mod table_card;
