@@ -40,6 +40,8 @@ pub enum Formation {
     Of(DatasetId),
     /// For each species the first dataset that has it, mixed on the analyst's demand.
     Mixed,
+    /// None: what is asked does not contain them.
+    Unneeded,
 }
 
 /// A printed figure or a function's value, with where it comes from.
@@ -215,9 +217,8 @@ pub fn covering(reaction: &Terms, data: &Catalog) -> Vec<DatasetId> {
 /// The same one by one, since a call wants the first of them only.
 fn those_covering<'a>(reaction: &'a Terms, data: &'a Catalog) -> impl Iterator<Item = &'a DatasetId> {
     let terms = || reaction.terms().iter();
-    let serves = move |dataset: &&Dataset| {
-        !dataset.own || terms().any(|term| term.own.is_none() && has_own_formation(&term.substance, dataset, data))
-    };
+    let serves =
+        move |dataset: &&Dataset| !dataset.own || terms().any(|term| has_own_formation(&term.substance, dataset, data));
     let has_all = move |dataset: &&Dataset| terms().all(|term| has_formation(term, &dataset.id, data));
     formation_datasets(data).filter(serves).filter(has_all).map(|dataset| &dataset.id)
 }
@@ -225,7 +226,12 @@ fn those_covering<'a>(reaction: &'a Terms, data: &'a Catalog) -> impl Iterator<I
 /// Whether a term has a formation enthalpy in a dataset: [`term_formation`] without making the figure.
 fn has_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -> bool {
     if let Some(own) = &term.own {
-        return own.formation().is_some();
+        if own.formation().is_some() {
+            return own.fit().is_some() || own.dataset().is_none_or(|only| only == dataset);
+        }
+        if own.fit().is_none() {
+            return false;
+        }
     }
     let stands_in = |phase: &Substance| {
         data.with_extended(dataset).any(|dataset| {
@@ -273,6 +279,7 @@ pub fn datasets_for(reaction: &Terms, formation: &Formation, data: &Catalog) -> 
             }
             Ok(vec![id.clone(); terms.len()])
         }
+        Formation::Unneeded => Ok(vec![DatasetId::new(""); terms.len()]),
         Formation::First => match those_covering(reaction, data).next() {
             Some(id) => Ok(vec![id.clone(); terms.len()]),
             None => Err(GatherError::NotCovered { missing: missing_words(reaction, data) }),
@@ -309,6 +316,8 @@ fn formation_datasets(data: &Catalog) -> impl Iterator<Item = &Dataset> {
 /// The formation enthalpy of a term: a substance of one's own brings it, whichever dataset serves the others.
 pub(crate) fn term_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -> Option<Figure> {
     match &term.own {
+        // A measured heat capacity leaves the formation enthalpy to the tables.
+        Some(own) if own.fit().is_some() => own.formation().or_else(|| formation_of(&term.substance, dataset, data)),
         Some(own) if own.dataset().is_none_or(|only| only == dataset) => own.formation(),
         Some(_) => None,
         None => formation_of(&term.substance, dataset, data),
@@ -403,7 +412,8 @@ pub(crate) fn contribution(
     }
     let (substance, data) = (&term.substance, cx.data());
     let formation =
-        term_formation(term, dataset, data).unwrap_or_else(|| unreachable!("the dataset was found to have it"));
+        // Only what does not contain it is asked of a dataset that lacks it.
+        term_formation(term, dataset, data).unwrap_or_else(|| Figure::of_nodes(0.0, []));
     if let Some(own) = &term.own {
         return of_own(own.as_ref(), term, formation, t_k, mode, cx);
     }

@@ -20,6 +20,9 @@ pub mod decomposition;
 pub mod derivation;
 pub mod expanded;
 pub mod first_order;
+pub mod fit;
+pub mod fit_card;
+pub mod fit_error;
 pub mod function;
 pub mod gap;
 pub mod gather;
@@ -78,6 +81,8 @@ pub const CARDS: &[&Card] = &[
     &property_card::SUBSTANCE_HELMHOLTZ_ENERGY,
     &property_card::SUBSTANCE_ENTROPY,
     &property_card::SUBSTANCE_HEAT_CAPACITY,
+    &fit_card::FIT_HEAT_CAPACITY,
+    &fit_card::INTERPOLATE_HEAT_CAPACITY,
     &vapour::VAPOUR_PRESSURE,
     &vapour::BOILING_POINT,
     &vapour::VAPORISATION_ENTHALPY,

@@ -226,6 +226,9 @@ fn kind(property: Property, terms: &Terms, t_k: f64, given: Option<&Given>) -> K
 pub fn method_of(call: &Call, cx: &Cx) -> Result<Method, Fault> {
     let word = |name| call.option(name).map(|word| &**word);
     let mut method = Method::from_words(word("heat_capacity"), word("formation"), cx.data())?;
+    if Property::of(call.card).is_some_and(|property| !property.uses_formation()) {
+        method.formation = gather::Formation::Unneeded;
+    }
     match (word("heat_capacity"), call.option_quantity("about")) {
         (Some("taylor"), Some(about)) => method.heat_capacity = HeatCapacity::FirstOrder { about_k: about.si() },
         (Some("taylor"), None) => return Err(ShortcutError::StartMissing.into()),

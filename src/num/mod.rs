@@ -2,7 +2,9 @@
 
 pub mod cholesky;
 pub mod edits;
+pub mod lsq;
 pub mod math;
+pub mod pchip;
 pub mod powers;
 pub mod random;
 pub mod rational;

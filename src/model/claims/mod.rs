@@ -9,6 +9,7 @@ mod fit;
 mod formation;
 mod heat_capacity;
 mod independence;
+mod measured;
 mod phase;
 mod pressure;
 mod saturation;
