@@ -87,7 +87,7 @@ fn instead(
 ) -> Result<Rc<Node>, Fault> {
     let datasets = gather::datasets_for(asked.terms, &asked.method.formation, cx.data())?;
     let as_it_is = |((term, pairing), dataset): ((&Term, Option<_>), &_)| {
-        let own = pairing.and_then(|(dimer, pairing)| {
+        let own = pairing.map(|(dimer, pairing)| {
             let how = (asked.property, asked.method.heat_capacity);
             Paired::new(term, dimer, pairing, Clone::clone(dataset), asked.t_k, how, cx)
         });
