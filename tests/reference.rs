@@ -9,6 +9,7 @@ mod formula;
 
 use std::collections::{BTreeMap, BTreeSet};
 use std::path::Path;
+use std::sync::Arc;
 
 use serde::Deserialize;
 
@@ -21,6 +22,9 @@ use hessbook::model::card::Card;
 use hessbook::model::{CARDS, function};
 use hessbook::num::math;
 use hessbook::quantity::{Quantity, text};
+use hessbook::render::Bundle;
+use hessbook::session::outcome::Host;
+use hessbook::session::{Session, on_big_stack};
 use hessbook::units::{self, parse as unit_parse};
 
 #[derive(Deserialize)]
@@ -73,6 +77,8 @@ enum What {
         #[serde(default)]
         figure: Figure,
     },
+    /// What a cell gives, as the number that it ends with.
+    Cell { code: String },
     /// What a reader is shown of a typed quantity.
     Shown { text: String, figure: ShownAs },
     /// One row per record that has both: the function at 298.15 K, less the figure printed in Table B of the same report.
@@ -256,6 +262,7 @@ fn one(desk: &Desk, row: &Row) -> Result<f64, Fault> {
                 Term::Number(_) => panic!("{} computes with bare numbers only", row.id),
             }
         }
+        What::Cell { code } => cell(code),
         What::Shown { text: written, figure } => {
             let value = text::parse(written, None, 0)?;
             Ok(shown_figure(&value, *figure))
@@ -264,6 +271,27 @@ fn one(desk: &Desk, row: &Row) -> Result<f64, Fault> {
             unreachable!("not one row")
         }
     }
+}
+
+/// A cell of a fresh session that ends with a bare number.
+fn cell(code: &str) -> Result<f64, Fault> {
+    let code = code.to_owned();
+    on_big_stack(move || {
+        let outcome = Session::new(Arc::default()).run_cell("cell-1", &code, &mut Silent);
+        outcome.result?;
+        let shown = outcome.shown.unwrap_or_default();
+        Ok(number(shown.plain()))
+    })
+}
+
+struct Silent;
+
+impl Host for Silent {
+    fn write(&mut self, _stderr: bool, _text: &str) {}
+
+    fn show(&mut self, _bundle: &Bundle, _id: Option<&str>) {}
+
+    fn update(&mut self, _bundle: &Bundle, _id: &str) {}
 }
 
 fn card(name: &str) -> &'static Card {
