@@ -19,7 +19,6 @@ use crate::fault::{Explain, Fault};
 use crate::model::card::Cx;
 use crate::model::first_order;
 use crate::model::function::{self, Functions, T_REFERENCE};
-use crate::model::given::Given;
 pub use crate::model::heat_capacity::HeatCapacity;
 use crate::model::path::Route;
 use crate::model::stated;
@@ -165,8 +164,7 @@ impl Explain for GatherError {
 pub struct Method {
     pub heat_capacity: HeatCapacity,
     pub formation: Formation,
-    /// The pressure, and how it is taken; `None`: standard values.
-    pub given: Option<Given>,
+    pub given: Option<crate::model::given::Given>,
 }
 
 impl Method {
@@ -225,13 +223,8 @@ fn those_covering<'a>(reaction: &'a Terms, data: &'a Catalog) -> impl Iterator<I
 
 /// Whether a term has a formation enthalpy in a dataset: [`term_formation`] without making the figure.
 fn has_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -> bool {
-    if let Some(own) = &term.own {
-        if own.formation().is_some() {
-            return own.fit().is_some() || own.dataset().is_none_or(|only| only == dataset);
-        }
-        if own.fit().is_none() {
-            return false;
-        }
+    if let Some(own) = term.own.as_ref().filter(|own| own.fit().is_none() || own.formation().is_some()) {
+        return own.formation().is_some() && own.dataset().is_none_or(|only| only == dataset);
     }
     let stands_in = |phase: &Substance| {
         data.with_extended(dataset).any(|dataset| {
