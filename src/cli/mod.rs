@@ -4,6 +4,7 @@
 //! other than 0 is said in the help of the commands that have them.
 
 mod audit;
+mod data;
 mod install;
 mod kernel;
 mod run;
@@ -32,6 +33,7 @@ enum Command {
     Run(run::Run),
     Seal(seal::Seal),
     Audit(audit::Audit),
+    Data(data::Data),
     Install(install::Install),
     Kernel(kernel::Kernel),
 }
@@ -42,6 +44,7 @@ pub fn run() -> ExitCode {
         Command::Run(command) => command.run(),
         Command::Seal(command) => command.run(),
         Command::Audit(command) => command.run(),
+        Command::Data(command) => command.run(),
         Command::Install(command) => command.run(),
         Command::Kernel(command) => command.run(),
     };
