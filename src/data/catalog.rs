@@ -16,13 +16,13 @@ use crate::record::node::LeafKey;
 use crate::source::{Embedded, STDLIB};
 use crate::units::dimension::Entity;
 
-use super::critical::CriticalTemperature;
 use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::{self, Coefficients, Formation};
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
 use super::molecule::Constants;
 use super::names::Names;
+use super::pressure;
 use super::records::element_entity;
 use super::substance::Substance;
 use super::tables::Tables;
@@ -61,7 +61,7 @@ pub(super) struct Contents {
 pub(super) struct Gathered {
     pub function: Option<Arc<Function>>,
     pub formations: Vec<Arc<Formation>>,
-    pub critical: Option<Arc<CriticalTemperature>>,
+    pub pressure: pressure::Constants,
 }
 
 impl Catalog {
@@ -78,7 +78,7 @@ impl Catalog {
             mut formations,
             coefficients,
             transitions,
-            critical,
+            pressure,
             molecules,
             names,
             weights,
@@ -96,10 +96,25 @@ impl Catalog {
             let entry = gathered.entry(id(&formation.id)).or_default();
             entry.formations.push(Arc::new(formation));
         }
-        for critical in critical {
-            // A figure for a substance without other records has nothing to stand beside.
+        // A figure for a substance without other records has nothing to stand beside.
+        for critical in pressure.critical {
             if let Some(entry) = gathered.get_mut(&id(&critical.id)) {
-                entry.critical = Some(Arc::new(critical));
+                entry.pressure.critical = Some(Arc::new(critical));
+            }
+        }
+        for virial in pressure.virial {
+            if let Some(entry) = gathered.get_mut(&id(&virial.id)) {
+                entry.pressure.virial = Some(Arc::new(virial));
+            }
+        }
+        for volume in pressure.volume {
+            if let Some(entry) = gathered.get_mut(&id(&volume.id)) {
+                entry.pressure.volume = Some(Arc::new(volume));
+            }
+        }
+        for vapour in pressure.vapour {
+            if let Some(entry) = gathered.get_mut(&id(&vapour.id)) {
+                entry.pressure.vapour = Some(Arc::new(vapour));
             }
         }
         let listed = names.preferred();
@@ -341,6 +356,6 @@ pub(super) fn substance(
         cas: cas.or_else(|| formations().find_map(|f| f.cas.clone())),
         formations: found.formations,
         function: found.function,
-        critical_temperature: found.critical,
+        pressure: found.pressure,
     })
 }

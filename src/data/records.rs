@@ -16,7 +16,7 @@ use crate::source::{Embedded, STDLIB, sha256};
 
 use super::catalog::Catalog;
 use super::dataset::TableFault;
-use super::{formation, function, names, tables, transition};
+use super::{formation, function, names, pressure, tables, transition};
 
 /// Members of a table's head that are for people who open the file, and decide no figure.
 const PROSE: [&str; 16] = [
@@ -386,6 +386,10 @@ impl std::fmt::Display for RecordKey {
             (transition::SCHEMA, _) => "transition",
             (names::SCHEMA, _) => "names",
             (element::SCHEMA, _) => "atomic weight",
+            (pressure::SCHEMA, list) if list == pressure::LISTS[0] => "critical constants",
+            (pressure::SCHEMA, list) if list == pressure::LISTS[1] => "second virial coefficient",
+            (pressure::SCHEMA, list) if list == pressure::LISTS[2] => "molar volume",
+            (pressure::SCHEMA, list) if list == pressure::LISTS[3] => "vapour pressure",
             (schema, "records" | "") => schema.split('/').next().unwrap_or(schema).trim_start_matches("hessbook-"),
             (_, list) => list,
         };
@@ -420,7 +424,9 @@ mod tests {
             "formation properties of H2O(l) in codata-1989",
             "formation properties of H2O(g) in atct-1.112",
             "heat capacity function of H2O(cr,ice-ih) in nasa-tp-2002-211556",
-            "critical-temperatures of H2O(g)",
+            "critical constants of H2O(g)",
+            "second virial coefficient of H2O(g)",
+            "molar volume of H2O(l)",
             "names of H2O",
         ] {
             assert!(ids.contains(expected), "{expected} is missing of {ids:#?}");

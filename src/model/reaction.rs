@@ -14,6 +14,7 @@ use crate::data::catalog::Catalog;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Arg, Card, Cx, Default, On, Takes, Value};
+use crate::model::fit_card;
 use crate::model::molecule::error::MoleculeError;
 use crate::model::molecule::formation::Own;
 use crate::model::terms::{Stand, Term, Terms};
@@ -128,8 +129,9 @@ fn given(cx: &Cx, options: Option<&Value>) -> Result<Named, Fault> {
                 substance: Arc::clone(&molecule.definition().substance),
                 thermo: Rc::new(Own::new(cx, molecule)?),
             },
+            Value::Substance(own) => fit_card::stand(cx, name, own)?,
             other => {
-                let (key, wanted) = (format!("own: {name}"), "a molecule");
+                let (key, wanted) = (format!("own: {name}"), "a molecule or a fitted heat capacity");
                 return Err(MoleculeError::Sort { key, wanted, given: other.sort().to_owned() }.into());
             }
         };

@@ -11,6 +11,7 @@ use std::sync::Arc;
 use crate::chem::composition::Composition;
 use crate::chem::formula::Formula;
 use crate::chem::species::{Phase, Species, State};
+use crate::data::pressure::Constants;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Cx, Value, listed};
@@ -582,7 +583,7 @@ fn made_up(base: &str, composition: &Composition, charge: i32) -> Substance {
         name: None,
         cas: None,
         function: None,
-        critical_temperature: None,
+        pressure: Constants::default(),
         formations: Vec::new(),
     }
 }

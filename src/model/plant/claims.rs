@@ -425,7 +425,7 @@ enum Phase {
 fn phase(cx: &Cx, portion: &Portion, t_k: f64, p: f64, partial: f64) -> Phase {
     let substance = &portion.term.substance;
     let is_gas = substance.species.is_gas();
-    let above = substance.critical_temperature.as_ref().is_some_and(|critical| t_k > critical.t_k);
+    let above = substance.pressure.critical.as_ref().is_some_and(|critical| t_k > critical.t_k);
     let Some(own) = substance.function.as_ref().filter(|function| function.covers(t_k)) else { return Phase::Alone };
     let rt = cx.constants().molar_gas.value * t_k;
     let at = |g: f64, gas: bool, p: f64| if gas { g + rt * math::ln(p) } else { g };
