@@ -225,13 +225,8 @@ fn those_covering<'a>(reaction: &'a Terms, data: &'a Catalog) -> impl Iterator<I
 
 /// Whether a term has a formation enthalpy in a dataset: [`term_formation`] without making the figure.
 fn has_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -> bool {
-    if let Some(own) = &term.own {
-        if own.formation().is_some() {
-            return own.fit().is_some() || own.dataset().is_none_or(|only| only == dataset);
-        }
-        if own.fit().is_none() {
-            return false;
-        }
+    if let Some(own) = term.own.as_ref().filter(|own| own.fit().is_none() || own.formation().is_some()) {
+        return own.formation().is_some() && own.dataset().is_none_or(|only| only == dataset);
     }
     let stands_in = |phase: &Substance| {
         data.with_extended(dataset).any(|dataset| {
