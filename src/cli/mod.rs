@@ -5,6 +5,7 @@
 
 mod audit;
 mod data;
+mod data_change;
 mod install;
 mod kernel;
 mod keys;
