@@ -7,7 +7,7 @@ use std::sync::Arc;
 
 use clap::{Args, Subcommand};
 
-use crate::cli::{Done, out};
+use crate::cli::{Done, data_change, out};
 use crate::data::catalog::{Catalog, T_REFERENCE_K};
 use crate::data::checkup;
 use crate::data::dataset::{DatasetId, Datum};
@@ -43,11 +43,17 @@ enum What {
         files: Vec<PathBuf>,
     },
     /// Set the formation enthalpies and entropies of two datasets side by side, in units of u
+    ///
+    /// With an archive, tells instead which of its reported values would move, and by how much, if the second table took the
+    /// place of the first; both are tables as shipped, and the status is 1 when a value would move.
     Compare {
         /// The id of a dataset, or a .json file
         a: String,
         /// The other one
         b: String,
+        /// A notebook, or a folder of notebooks
+        #[arg(long, value_name = "PATH")]
+        archive: Vec<PathBuf>,
     },
 }
 
@@ -56,7 +62,8 @@ impl Data {
         match self.what {
             What::Show { name } => show(&name),
             What::Check { files } => check(&files),
-            What::Compare { a, b } => compare(&a, &b),
+            What::Compare { a, b, archive } if archive.is_empty() => compare(&a, &b),
+            What::Compare { a, b, archive } => data_change::compare(Path::new(&a), Path::new(&b), &archive),
         }
     }
 }
