@@ -16,6 +16,7 @@ use crate::fault::Fault;
 use crate::model::card::{Arg, Card, Cx, Default, On, Takes, Value};
 use crate::model::molecule::error::MoleculeError;
 use crate::model::molecule::formation::Own;
+use crate::model::solid::answers;
 use crate::model::terms::{Stand, Term, Terms};
 use crate::units::Entity;
 
@@ -128,8 +129,11 @@ fn given(cx: &Cx, options: Option<&Value>) -> Result<Named, Fault> {
                 substance: Arc::clone(&molecule.definition().substance),
                 thermo: Rc::new(Own::new(cx, molecule)?),
             },
+            Value::Crystal(crystal) => {
+                Stand { substance: Arc::clone(&crystal.substance), thermo: Rc::new(answers::Own::new(cx, crystal)?) }
+            }
             other => {
-                let (key, wanted) = (format!("own: {name}"), "a molecule");
+                let (key, wanted) = (format!("own: {name}"), "a molecule or a crystal");
                 return Err(MoleculeError::Sort { key, wanted, given: other.sort().to_owned() }.into());
             }
         };
