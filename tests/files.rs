@@ -106,7 +106,7 @@ fn files_are_written_in_the_folder_of_the_notebook() {
     assert_eq!(code(&inside, "read_csv(\"binary.csv\")"), "file-not-text");
     let writing = |name: &str| code(&inside, &format!("{SHIFT} r.enthalpy(T).write_csv(\"{name}\")"));
     assert_eq!(writing("notes.txt"), "file-extension");
-    assert_eq!(writing("nowhere/x.csv"), "file-unwritable");
+    assert_eq!(writing("nowhere/x.csv"), "table-unwritable");
     #[cfg(unix)]
     {
         std::os::unix::fs::symlink(folder.path().join("out.csv"), inside.join("link.csv")).unwrap();

@@ -23,6 +23,7 @@ const SHIFT: &str = "CO(g) + H2O(g) -> CO2(g) + H2(g)";
 const METHANE: &str = "CH4(g) + 2 O2(g) -> CO2(g) + 2 H2O(l)";
 const AMMONIA: &str = "N2(g) + 3 H2(g) -> 2 NH3(g)";
 const METHANOL: &str = "CO(g) + 2 H2(g) -> methanol(g)";
+const SALT: &str = "2 Na(cr) + Cl2(g) -> 2 NaCl(cr,halite)";
 const MONOXIDE: &str = "2 CO(g) + O2(g) -> 2 CO2(g)";
 
 struct Desk {
@@ -212,6 +213,8 @@ fn planted() -> Vec<Planted> {
         plant(HeatCapacity, METHANOL, "gibbs_energy", "550 K", 3, |desk, _| {
             shown(&desk.asked(METHANOL, "gibbs_energy", "550 K", &[("heat_capacity", "midpoint")]))
         }),
+        // Sodium melts at 371.01 K with 2.598 kJ/mol: NASA/TP-2002-211556, p. 248.
+        plant(PhaseChange, SALT, "enthalpy", "500 K", 3, |_, value| value + 2.0 * 2.598),
         plant(PowerOfTen, AMMONIA, "equilibrium_constant", "700 K", 9, |_, value| value * 100.0),
         plant(Sign, AMMONIA, "equilibrium_constant", "700 K", 2, |_, value| 1.0 / value),
         plant(StateFunction, HYDROGEN, "internal_energy", "1000 K", 2, |desk, _| {

@@ -239,3 +239,12 @@ fn malformed_files_give_faults_and_never_a_panic() {
     }
     assert!(refused > cases / 2 && read > cases / 50, "{refused} refused, {read} read");
 }
+
+#[test]
+fn the_example_gives_the_text_that_stands_beside_these_tests() {
+    // Written by hand: `hessbook run notebooks/own-data.rhai > tests/own-data.txt`, then read.
+    let done =
+        assert_cmd::Command::cargo_bin("hessbook").unwrap().args(["run", "notebooks/own-data.rhai"]).output().unwrap();
+    assert!(done.status.success(), "{}", String::from_utf8_lossy(&done.stderr));
+    assert_eq!(String::from_utf8(done.stdout).unwrap(), fs::read_to_string("tests/own-data.txt").unwrap());
+}

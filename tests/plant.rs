@@ -299,6 +299,15 @@ fn a_rise_is_priced_against_the_integral() {
         record["value"].as_str().unwrap().parse().unwrap(),
         row(&record, "constant-heat-capacity")["price"].as_str().unwrap().parse().unwrap(),
     );
+    // Corrected, it is the difference of two temperatures, and has that price no more.
+    let better = format!(
+        "{setup} let x = temperature_rise(#{{ feeds: [gas], reactions: r }}).corrected(\"constant-heat-capacity\");"
+    );
+    let corrected = self::record(&format!("{better} report(\"rise\", x)"));
+    assert!(
+        corrected["assumptions"].as_array().unwrap().iter().all(|row| row["id"] != "constant-heat-capacity"),
+        "{corrected}"
+    );
     let end = last(&format!("{setup} adiabatic_temperature(#{{ feeds: [gas], reactions: r }}).value(\"K\")"));
     assert!((value - price - (end - 298.15)).abs() < 1e-9, "{value} {price} {end}");
     // The second route: ΔrH and Cp of the substances at 25 degC.

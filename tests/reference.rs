@@ -9,6 +9,8 @@ mod formula;
 
 use std::collections::{BTreeMap, BTreeSet};
 use std::path::Path;
+use std::rc::Rc;
+use std::sync::Arc;
 
 use serde::Deserialize;
 
@@ -17,10 +19,14 @@ use formula::Term;
 use hessbook::data::catalog::{Catalog, T_REFERENCE_K};
 use hessbook::data::dataset::DatasetId;
 use hessbook::fault::Fault;
-use hessbook::model::card::Card;
+use hessbook::model::card::{self, Card, Value};
+use hessbook::model::molecule::{read, shipped, table};
 use hessbook::model::{CARDS, function};
 use hessbook::num::math;
 use hessbook::quantity::{Quantity, text};
+use hessbook::render::Bundle;
+use hessbook::session::outcome::Host;
+use hessbook::session::{Session, on_big_stack};
 use hessbook::units::{self, parse as unit_parse};
 
 #[derive(Deserialize)]
@@ -66,6 +72,8 @@ enum What {
     },
     /// A property of one substance by its function, per mole of it.
     Function { species: String, property: FunctionOf, t: String, less_at: Option<String> },
+    /// A property of a molecule by its card, made of a name or a map; `h-from-0` is H(T) - H(0 K).
+    Molecule { of: serde_json::Value, property: String, t: String, less_at: Option<String> },
     /// Arithmetic on typed quantities.
     Arithmetic {
         given: BTreeMap<String, String>,
@@ -73,6 +81,8 @@ enum What {
         #[serde(default)]
         figure: Figure,
     },
+    /// What a cell gives, as the number that it ends with.
+    Cell { code: String },
     /// What a reader is shown of a typed quantity.
     Shown { text: String, figure: ShownAs },
     /// One row per record that has both: the function at 298.15 K, less the figure printed in Table B of the same report.
@@ -246,6 +256,11 @@ fn one(desk: &Desk, row: &Row) -> Result<f64, Fault> {
             let less = less_at.as_ref().map_or(Ok(0.0), |t| at(t))?;
             Ok((at(t)? - less) / unit_parse::unit(&row.unit)?.factor)
         }
+        What::Molecule { of, property, t, less_at } => {
+            let at = |t: &str| of_molecule(desk, of, property, t, &row.unit);
+            let less = less_at.as_ref().map_or(Ok(0.0), |t| at(t))?;
+            Ok(at(t)? - less)
+        }
         What::Arithmetic { given, formula, figure } => {
             let mut named = BTreeMap::new();
             for (ordinal, (name, written)) in given.iter().enumerate() {
@@ -256,6 +271,7 @@ fn one(desk: &Desk, row: &Row) -> Result<f64, Fault> {
                 Term::Number(_) => panic!("{} computes with bare numbers only", row.id),
             }
         }
+        What::Cell { code } => cell(code),
         What::Shown { text: written, figure } => {
             let value = text::parse(written, None, 0)?;
             Ok(shown_figure(&value, *figure))
@@ -264,6 +280,46 @@ fn one(desk: &Desk, row: &Row) -> Result<f64, Fault> {
             unreachable!("not one row")
         }
     }
+}
+
+/// In `unit`; the molecule is made of its name, or of the keys of its map.
+fn of_molecule(desk: &Desk, of: &serde_json::Value, property: &str, t: &str, unit: &str) -> Result<f64, Fault> {
+    let cx = desk.cx();
+    let molecule = match of {
+        serde_json::Value::String(name) => shipped::molecule(&cx, name)?,
+        map => read::molecule(&cx, &table::map(&map.to_string())?)?,
+    };
+    if property == "h-from-0" {
+        let t_k = text::parse(t, None, 0)?.si();
+        return Ok(molecule.gas().functions(t_k, cx.constants()).h / unit_parse::unit(unit)?.factor);
+    }
+    let id = format!("molecule.{property}");
+    let card = CARDS.iter().find(|card| card.id == id).unwrap_or_else(|| panic!("no card has the id {id}"));
+    match card::call(&cx, card, vec![Value::Molecule(Rc::new(molecule)), Value::Text(t.into())])? {
+        Value::Quantity(value) => figure_of(&value, Figure::Value, unit),
+        other => panic!("{id} gives {}", other.sort()),
+    }
+}
+
+/// A cell of a fresh session that ends with a bare number.
+fn cell(code: &str) -> Result<f64, Fault> {
+    let code = code.to_owned();
+    on_big_stack(move || {
+        let outcome = Session::new(Arc::default()).run_cell("cell-1", &code, &mut Silent);
+        outcome.result?;
+        let shown = outcome.shown.unwrap_or_default();
+        Ok(number(shown.plain()))
+    })
+}
+
+struct Silent;
+
+impl Host for Silent {
+    fn write(&mut self, _stderr: bool, _text: &str) {}
+
+    fn show(&mut self, _bundle: &Bundle, _id: Option<&str>) {}
+
+    fn update(&mut self, _bundle: &Bundle, _id: &str) {}
 }
 
 fn card(name: &str) -> &'static Card {

@@ -109,11 +109,14 @@ pub struct AtomicWeight {
 
 /// The standard atomic weight; `None` for isotopes and for elements without a characteristic isotopic composition.
 pub fn atomic_weight(element: Element) -> Option<&'static AtomicWeight> {
-    static WEIGHTS: LazyLock<BTreeMap<Element, AtomicWeight>> = LazyLock::new(|| {
+    static BUILT_IN: LazyLock<BTreeMap<Element, AtomicWeight>> = LazyLock::new(|| {
         read_weights(ATOMIC_WEIGHTS.bytes).expect("the built-in table of atomic weights is read by this file's tests")
     });
-    WEIGHTS.get(&element)
+    BUILT_IN.get(&element)
 }
+
+/// What the first member of a table of atomic weights names.
+pub const SCHEMA: &str = "hessbook/atomic-weights/1";
 
 /// What this file needs of the table; the rest of it is for readers.
 #[derive(Deserialize)]
@@ -164,8 +167,11 @@ struct Record {
     check: Option<String>,
 }
 
-/// Reads the table; the error says which row is wrong.
-fn read_weights(bytes: &[u8]) -> Result<BTreeMap<Element, AtomicWeight>, String> {
+/// Reads a table of atomic weights.
+///
+/// # Errors
+/// It is no such table; the error says which row is wrong.
+pub fn read_weights(bytes: &[u8]) -> Result<BTreeMap<Element, AtomicWeight>, String> {
     let table: Table = serde_json::from_slice(bytes).map_err(|error| error.to_string())?;
     let u_divisor = table.uncertainty.divisor.value();
     let mut weights = BTreeMap::new();

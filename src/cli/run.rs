@@ -10,8 +10,10 @@ use clap::{Args, ValueEnum};
 use serde::Deserialize;
 
 use crate::fault::Fault;
-use crate::notebook::file::{FileError, Output};
+use crate::notebook::file::{FileError, NotebookFile, Output};
 use crate::notebook::run::{RunRecord, RunStatus, Source, Watcher, run};
+use crate::notebook::seal::Seal;
+use crate::notebook::sealing::{cell_digests, read_seal};
 use crate::render::report::{self, Record};
 use crate::render::{Bundle, text};
 use crate::session::{Session, on_big_stack};
@@ -84,11 +86,25 @@ fn executed(args: &Run, stop: Arc<AtomicBool>) -> Result<RunStatus, Fault> {
     // The record comes first: results are not to be lost to a file that cannot be written.
     print(&record, args.format);
     if let (Some(path), Source::Notebook(notebook)) = (target, &source) {
+        if let Ok(Some(seal)) = read_seal(&name, notebook)
+            && !is_of(&seal, notebook, &record)
+        {
+            err(&format!(
+                "hessbook: {} keeps a seal of {} that says otherwise than these outputs; seal it again with `hessbook seal`\n",
+                path.display(),
+                seal.sealed
+            ));
+        }
         notebook.write(path).map_err(|error: FileError| Fault::from(error))?;
     }
     // The process ends here; taking the engine apart first would be a tenth of a short run.
     std::mem::forget(session);
     Ok(record.status)
+}
+
+/// Whether a seal is of these cells and these results.
+fn is_of(seal: &Seal, notebook: &NotebookFile, record: &RunRecord) -> bool {
+    seal.cells == cell_digests(notebook) && seal.values.iter().map(|value| &value.record).eq(&record.reports)
 }
 
 /// Text goes to standard output as it comes; a line on the terminal says which cell runs.

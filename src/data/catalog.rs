@@ -7,6 +7,7 @@
 use std::collections::{BTreeMap, BTreeSet};
 use std::sync::{Arc, LazyLock, Mutex, PoisonError};
 
+use crate::chem::element::{AtomicWeight, Element};
 use crate::chem::formula::Formula;
 use crate::chem::species::{Species, SpeciesName, State};
 use crate::fault::Fault;
@@ -15,13 +16,14 @@ use crate::record::node::LeafKey;
 use crate::source::{Embedded, STDLIB};
 use crate::units::dimension::Entity;
 
-use super::critical::CriticalTemperature;
 use super::dataset::{Dataset, DatasetId, TableFault};
 use super::formation::{self, Coefficients, Formation};
 use super::function::Function;
 use super::lookup::{Lookup, NameFault};
 use super::molecule::Constants;
 use super::names::Names;
+use super::pressure;
+use super::records::element_entity;
 use super::substance::Substance;
 use super::tables::Tables;
 use super::transition::Transition;
@@ -38,7 +40,7 @@ static SHIPPED: LazyLock<Arc<Catalog>> = LazyLock::new(|| {
 pub struct Catalog {
     contents: Arc<Contents>,
     /// Entities that were asked for, where someone wants to know.
-    asked: Option<Mutex<BTreeSet<Arc<str>>>>,
+    asked: Option<Arc<Mutex<BTreeSet<Arc<str>>>>>,
 }
 
 #[derive(Debug)]
@@ -51,6 +53,7 @@ pub(super) struct Contents {
     pub molecules: BTreeMap<Arc<str>, Arc<Constants>>,
     pub names: Arc<Names>,
     pub lookup: Lookup,
+    pub weights: Arc<BTreeMap<Element, AtomicWeight>>,
 }
 
 /// What is being gathered on one substance.
@@ -58,7 +61,7 @@ pub(super) struct Contents {
 pub(super) struct Gathered {
     pub function: Option<Arc<Function>>,
     pub formations: Vec<Arc<Formation>>,
-    pub critical: Option<Arc<CriticalTemperature>>,
+    pub pressure: pressure::Constants,
 }
 
 impl Catalog {
@@ -69,8 +72,17 @@ impl Catalog {
 
     /// The tables among some files; a dataset whose file is missing is simply not there.
     pub fn from_files(files: &[Embedded<'_>]) -> Result<Catalog, TableFault> {
-        let Tables { datasets, functions, mut formations, coefficients, transitions, critical, molecules, names } =
-            Tables::read(files)?;
+        let Tables {
+            datasets,
+            functions,
+            mut formations,
+            coefficients,
+            transitions,
+            pressure,
+            molecules,
+            names,
+            weights,
+        } = Tables::read(files)?;
         let id = |record: &Arc<str>| names.same.get(record).unwrap_or(record).clone();
         for group in coefficients {
             correlate(group, &mut formations, id)?;
@@ -84,10 +96,25 @@ impl Catalog {
             let entry = gathered.entry(id(&formation.id)).or_default();
             entry.formations.push(Arc::new(formation));
         }
-        for critical in critical {
-            // A figure for a substance without other records has nothing to stand beside.
+        // A figure for a substance without other records has nothing to stand beside.
+        for critical in pressure.critical {
             if let Some(entry) = gathered.get_mut(&id(&critical.id)) {
-                entry.critical = Some(Arc::new(critical));
+                entry.pressure.critical = Some(Arc::new(critical));
+            }
+        }
+        for virial in pressure.virial {
+            if let Some(entry) = gathered.get_mut(&id(&virial.id)) {
+                entry.pressure.virial = Some(Arc::new(virial));
+            }
+        }
+        for volume in pressure.volume {
+            if let Some(entry) = gathered.get_mut(&id(&volume.id)) {
+                entry.pressure.volume = Some(Arc::new(volume));
+            }
+        }
+        for vapour in pressure.vapour {
+            if let Some(entry) = gathered.get_mut(&id(&vapour.id)) {
+                entry.pressure.vapour = Some(Arc::new(vapour));
             }
         }
         let listed = names.preferred();
@@ -118,15 +145,15 @@ impl Catalog {
         }
         let lookup = Lookup::new(&names, substances.values().map(|substance: &Arc<Substance>| &**substance));
         let molecules = molecules.into_iter().map(|one| (id(&one.id), Arc::new(one))).collect();
-        let names = Arc::new(names);
-        let contents = Contents { datasets, substances, transitions: by_substance, molecules, names, lookup };
+        let (names, weights) = (Arc::new(names), Arc::new(weights));
+        let contents = Contents { datasets, substances, transitions: by_substance, molecules, names, lookup, weights };
         Ok(Catalog { contents: Arc::new(contents), asked: None })
     }
 
     /// The same catalogue, which remembers what it is asked for.
     #[must_use]
     pub fn watched(&self) -> Catalog {
-        Catalog { contents: Arc::clone(&self.contents), asked: Some(Mutex::default()) }
+        Catalog { contents: Arc::clone(&self.contents), asked: Some(Arc::default()) }
     }
 
     pub(super) fn contents(&self) -> &Contents {
@@ -135,8 +162,8 @@ impl Catalog {
 
     /// Another catalogue, which is watched as this one is.
     pub(super) fn watched_alike(&self, contents: Contents) -> Catalog {
-        let asked = self.asked.as_ref().map(|_| Mutex::new(self.asked()));
-        Catalog { contents: Arc::new(contents), asked }
+        // One memory for both: what a cell asked before it laid records over counts too.
+        Catalog { contents: Arc::new(contents), asked: self.asked.clone() }
     }
 
     /// The entities a watched catalogue was asked for.
@@ -145,9 +172,15 @@ impl Catalog {
         asked.unwrap_or_default()
     }
 
-    fn note(&self, substance: &Substance) {
+    /// The standard atomic weight of an element, where it has one on record.
+    pub fn atomic_weight(&self, element: Element) -> Option<&AtomicWeight> {
+        self.note(&element_entity(element.symbol()));
+        self.contents.weights.get(&element)
+    }
+
+    /// Remembers that an entity was asked for.
+    fn note(&self, entity: &str) {
         if let Some(asked) = &self.asked {
-            let entity = substance.species.entity.name();
             let mut asked = asked.lock().unwrap_or_else(PoisonError::into_inner);
             if !asked.contains(entity) {
                 asked.insert(entity.into());
@@ -162,7 +195,7 @@ impl Catalog {
             Some(substance) => substance,
             None => &contents.substances[contents.lookup.find(text)?],
         };
-        self.note(found);
+        self.note(found.species.entity.name());
         Ok(found.clone())
     }
 
@@ -323,6 +356,6 @@ pub(super) fn substance(
         cas: cas.or_else(|| formations().find_map(|f| f.cas.clone())),
         formations: found.formations,
         function: found.function,
-        critical_temperature: found.critical,
+        pressure: found.pressure,
     })
 }

@@ -16,6 +16,7 @@ pub mod overlay;
 pub mod own;
 pub mod own_fault;
 mod own_reader;
+pub mod pressure;
 pub mod records;
 pub mod substance;
 mod tables;

@@ -55,7 +55,7 @@ impl Catalog {
             let mut found = known.map_or_else(Gathered::default, |known| Gathered {
                 function: known.function.clone(),
                 formations: known.formations.clone(),
-                critical: known.critical_temperature.clone(),
+                pressure: known.pressure.clone(),
             });
             for formation in own.formations.iter().filter(|formation| formation.id == *id) {
                 told.extend(known.iter().flat_map(|known| &known.formations).map(|other| Precedence {
@@ -113,6 +113,7 @@ impl Catalog {
             molecules: base.molecules.clone(),
             names: base.names.clone(),
             lookup,
+            weights: base.weights.clone(),
         };
         Ok((self.watched_alike(contents), told))
     }

@@ -11,22 +11,38 @@ use std::sync::{Arc, LazyLock};
 use serde_json::{Map, Value, json};
 use sha2::{Digest, Sha256};
 
+use crate::chem::element;
 use crate::chem::species::SpeciesName;
 use crate::source::{Embedded, STDLIB};
 
 use super::catalog::Catalog;
 use super::dataset::TableFault;
-use super::{critical, formation, function, names, tables, transition};
+use super::{formation, function, names, pressure, tables, transition};
 
-/// What of a table's head decides figures; the rest is for people who open the file.
-const HEAD: [&str; 7] =
-    ["schema", "dataset", "title", "obtained", "r_j_mol_k", "p_standard_gas_pa", "p_standard_condensed_pa"];
-const PRESSURE: &str = "p_standard_pa";
+/// Members of a table's head that are for people who open the file, and decide no figure.
+const PROSE: [&str; 16] = [
+    "notes",
+    "note",
+    "check_note",
+    "about",
+    "digits",
+    "units",
+    "equations",
+    "kinds",
+    "confirmation_levels",
+    "zero",
+    "r_note",
+    "dhf_note",
+    "reference_element_note",
+    "atomic_weights",
+    "strings",
+    "conventions",
+];
 
-/// The lists of a table that hold records, and the member that tells the records of a list apart.
-const LISTS: [(&str, &str); 5] =
-    [("records", "id"), ("same", "id"), ("entities", "entity"), ("forms", "name"), (GROUPS, "records")];
-/// Correlation coefficients of several records: a record of their own.
+/// What tells the records of a list apart: the first of these that they have.
+const IDS: [&str; 4] = ["id", "symbol", "entity", "name"];
+
+/// Correlation coefficients of several records: a record of their own, told apart by the records it joins.
 const GROUPS: &str = "dhf_298_correlations";
 
 static SHIPPED: LazyLock<Arc<Records>> = LazyLock::new(|| {
@@ -65,6 +81,8 @@ pub struct RecordTable {
     pub dataset: Arc<str>,
     pub head: Arc<str>,
     pub head_sha256: Arc<str>,
+    /// Names of its lists, in their order; a list may have no records here.
+    pub lists: Vec<Arc<str>>,
     pub records: Vec<Record>,
 }
 
@@ -90,33 +108,32 @@ impl Records {
         SHIPPED.clone()
     }
 
-    /// Cuts files into records; files of schemas that hold no records of substances are passed over.
+    /// Cuts files into records. Every list of objects is a list of records, whatever the schema; files that name no schema
+    /// are no tables and are passed over.
     ///
     /// # Errors
-    /// A file is no JSON, or a record has no id.
+    /// A file is no JSON.
     pub fn read(files: &[Embedded<'_>]) -> Result<Records, TableFault> {
         let mut all = Records::default();
         for file in files {
-            let Some(schema) = tables::schema(file.bytes).filter(|schema| is_known(schema)) else { continue };
+            let Some(schema) = tables::schema(file.bytes) else { continue };
             let unreadable = |why: String| TableFault::Unreadable { path: file.path.to_owned(), why };
             let page: Map<String, Value> =
                 serde_json::from_slice(file.bytes).map_err(|error| unreadable(error.to_string()))?;
             let dataset = page.get("dataset").and_then(|dataset| dataset.get("id")).and_then(Value::as_str);
-            let in_head = |name: &&String| HEAD.contains(&name.as_str()) || *name == PRESSURE;
-            let head: Map<String, Value> = page
-                .iter()
-                .filter(|(name, _)| in_head(name))
-                .map(|(name, value)| (name.clone(), value.clone()))
-                .collect();
-            let mut records = Vec::new();
-            for (list, key) in LISTS {
-                for record in page.get(list).and_then(Value::as_array).into_iter().flatten() {
-                    let id = match record.get(key) {
-                        Some(Value::String(id)) => id.clone(),
-                        Some(Value::Array(ids)) => ids.iter().filter_map(Value::as_str).collect::<Vec<_>>().join(", "),
-                        _ => return Err(unreadable(format!("a record of `{list}` has no `{key}`"))),
-                    };
-                    records.push(Record::new(list, &id, record.to_string()));
+            let (mut head, mut lists, mut records) = (Map::new(), Vec::new(), Vec::new());
+            for (name, member) in &page {
+                match member {
+                    Value::Array(list) if list.iter().all(Value::is_object) => {
+                        lists.push(Arc::from(name.as_str()));
+                        records.extend(
+                            (1..)
+                                .zip(list)
+                                .map(|(nth, record)| Record::new(name, &id_of(name, nth, record), record.to_string())),
+                        );
+                    }
+                    _ if PROSE.contains(&name.as_str()) => {}
+                    _ => drop(head.insert(name.clone(), member.clone())),
                 }
             }
             let head = Value::Object(head).to_string();
@@ -126,6 +143,7 @@ impl Records {
                 dataset: dataset.unwrap_or("").into(),
                 head_sha256: sha256(&head).into(),
                 head: head.into(),
+                lists,
                 records,
             });
         }
@@ -243,6 +261,8 @@ impl Records {
             let Some(like) = like.tables.iter().find(fits).filter(|_| record.is_some()) else { return };
             self.tables.push(like.with_head_alone());
         }
+        let names =
+            if record.is_some_and(|record| record.entity.is_none()) { like.same_names() } else { SameNames::default() };
         let fits = |table: &&mut RecordTable| table.schema == key.schema && table.dataset == key.dataset;
         let Some(table) = self.tables.iter_mut().find(fits) else { return };
         if key.list.is_empty() {
@@ -252,16 +272,21 @@ impl Records {
             return;
         }
         let at = table.records.iter().position(|known| known.list == key.list && known.id == key.id);
+        let record = record.map(|record| Record {
+            entity: record.entity.clone().or_else(|| names.entity_of(&key.schema, record).map(Arc::from)),
+            ..record.clone()
+        });
         match (at, record) {
-            (Some(at), Some(record)) => table.records[at] = record.clone(),
+            (Some(at), Some(record)) => table.records[at] = record,
             (Some(at), None) => drop(table.records.remove(at)),
-            (None, Some(record)) => table.records.push(record.clone()),
+            (None, Some(record)) => table.records.push(record),
             (None, None) => {}
         }
     }
 }
 
 /// Ids that two datasets spell differently.
+#[derive(Default)]
 struct SameNames {
     same: BTreeMap<String, String>,
 }
@@ -273,6 +298,7 @@ impl SameNames {
             (names::SCHEMA, "entities") => return Some(record.id.to_string()),
             (names::SCHEMA, _) => record.text_of("is")?,
             (transition::SCHEMA, _) => record.text_of("from")?,
+            (element::SCHEMA, _) => return Some(element_entity(&record.id)),
             (_, GROUPS) => record.id.split(", ").next()?.to_owned(),
             _ => record.id.to_string(),
         };
@@ -306,6 +332,7 @@ impl RecordTable {
             dataset: self.dataset.clone(),
             head: self.head.clone(),
             head_sha256: self.head_sha256.clone(),
+            lists: self.lists.clone(),
             records: Vec::new(),
         }
     }
@@ -319,14 +346,11 @@ impl RecordTable {
                 let _ = write!(text, "{}:{value},", json!(name));
             }
         }
-        let lists = if *self.schema == *names::SCHEMA { &LISTS[1..4] } else { &LISTS[..1] };
         let mut parts = Vec::new();
-        for (list, _) in lists.iter().chain(&LISTS[4..]) {
+        for list in &self.lists {
             let records: Vec<&str> =
-                self.records.iter().filter(|record| *record.list == **list).map(|record| &*record.content).collect();
-            if *list != GROUPS || !records.is_empty() {
-                parts.push(format!("{}:[{}]", json!(list), records.join(",")));
-            }
+                self.records.iter().filter(|record| record.list == *list).map(|record| &*record.content).collect();
+            parts.push(format!("{}:[{}]", json!(**list), records.join(",")));
         }
         text.push_str(&parts.join(","));
         text.push('}');
@@ -334,18 +358,35 @@ impl RecordTable {
     }
 }
 
-fn is_known(schema: &str) -> bool {
-    [formation::SCHEMA, function::SCHEMA, transition::SCHEMA, critical::SCHEMA, names::SCHEMA].contains(&schema)
+/// Under which name the atomic weight of an element is kept among what was asked for.
+pub fn element_entity(symbol: &str) -> String {
+    format!("the element {symbol}")
+}
+
+fn id_of(list: &str, nth: usize, record: &Value) -> String {
+    if list == GROUPS {
+        let ids = record.get("records").and_then(Value::as_array).into_iter().flatten();
+        return ids.filter_map(Value::as_str).collect::<Vec<_>>().join(", ");
+    }
+    let id = IDS.iter().find_map(|key| record.get(*key)?.as_str());
+    id.map_or_else(|| format!("record {nth}"), str::to_owned)
 }
 
 impl std::fmt::Display for RecordKey {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
-        let what = match &*self.schema {
-            formation::SCHEMA => "formation properties",
-            function::SCHEMA => "heat capacity function",
-            transition::SCHEMA => "transition",
-            critical::SCHEMA => "critical temperature",
-            _ => "names",
+        let what = match (&*self.schema, &*self.list) {
+            (formation::SCHEMA, GROUPS) => "correlation coefficients",
+            (formation::SCHEMA, _) => "formation properties",
+            (function::SCHEMA, _) => "heat capacity function",
+            (transition::SCHEMA, _) => "transition",
+            (names::SCHEMA, _) => "names",
+            (element::SCHEMA, _) => "atomic weight",
+            (pressure::SCHEMA, list) if list == pressure::LISTS[0] => "critical constants",
+            (pressure::SCHEMA, list) if list == pressure::LISTS[1] => "second virial coefficient",
+            (pressure::SCHEMA, list) if list == pressure::LISTS[2] => "molar volume",
+            (pressure::SCHEMA, list) if list == pressure::LISTS[3] => "vapour pressure",
+            (schema, "records" | "") => schema.split('/').next().unwrap_or(schema).trim_start_matches("hessbook-"),
+            (_, list) => list,
         };
         match (&*self.id, &*self.dataset) {
             ("", "") => write!(f, "head of the table of {what}"),
@@ -378,7 +419,9 @@ mod tests {
             "formation properties of H2O(l) in codata-1989",
             "formation properties of H2O(g) in atct-1.112",
             "heat capacity function of H2O(cr,ice-ih) in nasa-tp-2002-211556",
-            "critical temperature of H2O(g)",
+            "critical constants of H2O(g)",
+            "second virial coefficient of H2O(g)",
+            "molar volume of H2O(l)",
             "names of H2O",
         ] {
             assert!(ids.contains(expected), "{expected} is missing of {ids:#?}");

@@ -8,10 +8,10 @@ use std::sync::Arc;
 
 use crate::chem::species::Species;
 
-use super::critical::CriticalTemperature;
 use super::dataset::DatasetId;
 use super::formation::Formation;
 use super::function::Function;
+use super::pressure::Constants;
 
 /// One phase of a substance.
 #[derive(Clone, Debug)]
@@ -22,8 +22,8 @@ pub struct Substance {
     pub cas: Option<Arc<str>>,
     /// Heat capacity, enthalpy and entropy over temperature.
     pub function: Option<Arc<Function>>,
-    /// Of gases; where none is on record it is not known here.
-    pub critical_temperature: Option<Arc<CriticalTemperature>>,
+    /// For the dependence on pressure; where none is on record it is not known here.
+    pub pressure: Constants,
     /// Formation properties at 298.15 K, one per dataset, in order of precedence.
     pub formations: Vec<Arc<Formation>>,
 }

@@ -3,16 +3,18 @@
 //! [`Tables`] sorts files by the schema that each names in its first line, so a new dataset is one new file and a
 //! dataset that is taken away is missed by nobody. Files of other schemas belong to other modules and are passed over.
 
+use std::collections::BTreeMap;
+
+use crate::chem::element::{self, AtomicWeight, Element};
 use crate::source::Embedded;
 
-use super::critical::CriticalTemperature;
 use super::dataset::{Dataset, TableFault};
 use super::formation::{Coefficients, Formation};
 use super::function::Function;
 use super::molecule::Constants;
 use super::names::Names;
 use super::transition::Transition;
-use super::{critical, formation, function, molecule, names, transition};
+use super::{formation, function, molecule, names, pressure, transition};
 
 #[derive(Debug, Default)]
 pub(super) struct Tables {
@@ -22,9 +24,11 @@ pub(super) struct Tables {
     pub formations: Vec<Formation>,
     pub coefficients: Vec<Coefficients>,
     pub transitions: Vec<Transition>,
-    pub critical: Vec<CriticalTemperature>,
+    pub pressure: pressure::Read,
     pub molecules: Vec<Constants>,
     pub names: Names,
+    /// Of the first table that has the element.
+    pub weights: BTreeMap<Element, AtomicWeight>,
 }
 
 impl Tables {
@@ -37,9 +41,15 @@ impl Tables {
                     formation::read(file, &mut tables.datasets, &mut tables.formations, &mut tables.coefficients)?;
                 }
                 Some(transition::SCHEMA) => transition::read(file, &mut tables.datasets, &mut tables.transitions)?,
-                Some(critical::SCHEMA) => critical::read(file, &mut tables.critical)?,
+                Some(pressure::SCHEMA) => pressure::read(file, &mut tables.pressure)?,
                 Some(molecule::SCHEMA) => molecule::read(file, &mut tables.molecules)?,
                 Some(names::SCHEMA) => names::read(file, &mut tables.names)?,
+                Some(element::SCHEMA) => {
+                    let unreadable = |why| TableFault::Unreadable { path: file.path.to_owned(), why };
+                    for (element, weight) in element::read_weights(file.bytes).map_err(unreadable)? {
+                        tables.weights.entry(element).or_insert(weight);
+                    }
+                }
                 _ => {}
             }
         }

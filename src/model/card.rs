@@ -14,7 +14,7 @@ use std::sync::Arc;
 use crate::data::catalog::Catalog;
 use crate::fault::{Fault, Place};
 use crate::model::answer::Answer;
-use crate::model::argument::ArgumentError;
+use crate::model::argument::{ArgumentError, checked};
 use crate::model::caution::Caution;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
@@ -25,12 +25,11 @@ use crate::model::solid::Crystal;
 use crate::model::substance::PureSubstance;
 use crate::model::table::Table;
 use crate::model::terms::Terms;
-use crate::quantity::{Mismatch, Quantity, text};
+use crate::quantity::{Quantity, text};
 use crate::record::node::{Node, Step};
 use crate::record::register::Finding;
 use crate::source::Citation;
 use crate::units::constants::ConstantSet;
-use crate::units::{self, What, parse as unit_parse};
 
 /// A value that formulas take and give.
 #[derive(Clone)]
@@ -121,6 +120,12 @@ pub enum Takes {
     /// A list of maps, each with these entries.
     Maps(&'static [Arg]),
     Options(&'static [Arg]),
+    /// A map from names to quantities of this unit's dimension.
+    Named {
+        unit: &'static str,
+    },
+    /// A map from names to maps of quantities, each by its own name.
+    NamedMaps,
     /// Whatever it is; the formula looks for itself.
     Any,
 }
@@ -301,6 +306,12 @@ impl Call {
         }
     }
 
+    /// What was given for an option, whatever it is.
+    pub fn given(&self, name: &str) -> Option<&Value> {
+        let Some(Value::Options(options)) = self.args.last() else { return None };
+        options.get(name)
+    }
+
     /// A quantity given in the option map.
     pub fn option_quantity(&self, name: &str) -> Option<&Quantity> {
         let Some(Value::Options(options)) = self.args.last() else { return None };
@@ -322,12 +333,31 @@ impl Call {
     /// The same call with one option set to another word.
     #[must_use]
     pub fn with_option(&self, name: &str, word: &str) -> Call {
+        self.with_given(name, Value::Text(word.into()))
+    }
+
+    /// The same call with one option set to another value.
+    #[must_use]
+    pub fn with_given(&self, name: &str, value: Value) -> Call {
         let mut args = self.args.clone();
         if let Some(Value::Options(options)) = args.last_mut() {
-            Rc::make_mut(options).insert(name.to_owned(), Value::Text(word.into()));
+            Rc::make_mut(options).insert(name.to_owned(), value);
         }
         Call { card: self.card, args }
     }
+}
+
+/// `pressure: 20 bar`, `partial: CO(g) 2 bar, H2(g) 5 bar`: options as they are told of in a step.
+fn in_words(options: &BTreeMap<String, Value>) -> Vec<String> {
+    let one = |(name, value): (&String, &Value)| match value {
+        Value::Text(word) => Some(format!("{name}: {word}")),
+        Value::Number(number) => Some(format!("{name}: {number}")),
+        Value::Quantity(value) => Some(format!("{name}: {}", text::shown(value))),
+        Value::List(list) => Some(format!("{name}: {} values", list.len())),
+        Value::Options(inner) => Some(format!("{name}: {}", in_words(inner).join(", "))),
+        _ => None,
+    };
+    options.iter().filter_map(one).collect()
 }
 
 /// Formulas that hand on the value of their one input as it is.
@@ -347,21 +377,13 @@ impl Step for Call {
                 Value::Number(number) => words.push(number.to_string()),
                 Value::Reaction(reaction) => words.push(reaction.text().to_owned()),
                 Value::Substance(substance) => words.push(substance.text().to_owned()),
+                Value::Options(options) => words.extend(in_words(options)),
                 Value::Stream(stream) => words.push(stream.name.to_string()),
                 Value::Molecule(molecule) => words.push(molecule.text().to_owned()),
                 Value::Crystal(crystal) => words.push(crystal.text().to_owned()),
                 Value::Grid(grid) => words.push(grid.words()),
                 Value::Curve(curve) => words.push(curve.words()),
                 Value::Table(table) => words.push(table.name.to_string()),
-                Value::Options(options) => {
-                    words.extend(options.iter().filter_map(|(name, value)| match value {
-                        Value::Text(word) => Some(format!("{name}: {word}")),
-                        Value::Number(number) => Some(format!("{name}: {number}")),
-                        Value::Quantity(value) => Some(format!("{name}: {}", text::shown(value))),
-                        Value::List(list) => Some(format!("{name}: {} values", list.len())),
-                        _ => None,
-                    }));
-                }
                 Value::List(list) => words.push(format!("{} values", list.len())),
                 Value::Flag(_) | Value::Answer(_) | Value::Other(_) | Value::Nothing => {}
             }
@@ -469,138 +491,6 @@ pub fn call(cx: &Cx, card: &'static Card, given: Vec<Value>) -> Result<Value, Fa
         .any(|pair| matches!(pair, (Arg { takes: Takes::Temperatures, .. }, Value::Grid(_))));
     let call = Rc::new(Call { card, args });
     if at_a_grid { Ok(Value::Curve(Rc::new(Curve::of_call(cx, call)?))) } else { (card.run)(cx, &call) }
-}
-
-fn checked(cx: &Cx, card: &'static Card, arg: &'static Arg, value: Value) -> Result<Value, Fault> {
-    let refused = |wanted: &str, value: &Value| {
-        let given = value.sort().to_owned();
-        Fault::from(ArgumentError::Sort { function: card.name, argument: arg.name, wanted: wanted.to_owned(), given })
-    };
-    Ok(match (&arg.takes, value) {
-        (_, Value::Nothing) if matches!(arg.default, Default::Absent) => Value::Nothing,
-        (Takes::Any, value) => value,
-        (Takes::Quantity { unit }, value) => {
-            let wanted = unit_parse::unit(unit)?;
-            let quantity = as_quantity(cx, value, |v| refused("a quantity", v))?;
-            let fits = quantity.dim() == &wanted.dim || wanted.dim.bindings_to(quantity.dim()).len() == 1;
-            if !fits {
-                return Err(Mismatch::unit(quantity.dim(), &wanted).into());
-            }
-            Value::Quantity(quantity)
-        }
-        (Takes::AnyQuantity, value) => Value::Quantity(as_quantity(cx, value, |v| refused("a quantity", v))?),
-        (Takes::Temperatures, Value::Grid(grid)) => Value::Grid(grid),
-        (Takes::Temperature | Takes::Temperatures, value) => {
-            let wanted = "a temperature, as in `q(\"450 degC\")`";
-            let quantity = as_quantity(cx, value, |v| refused(wanted, v))?;
-            Value::Quantity(as_point(card, arg, quantity)?)
-        }
-        (Takes::Number, Value::Number(number)) => Value::Number(number),
-        (Takes::Number, Value::Quantity(value)) if value.dim().is_none() => Value::Number(value.si()),
-        (Takes::Fraction, Value::Number(number)) => Value::Number(number),
-        (Takes::Fraction, value) => Value::Quantity(as_quantity(cx, value, |v| refused("a fraction", v))?),
-        (Takes::Reaction, Value::Reaction(reaction)) => Value::Reaction(reaction),
-        (Takes::Text, Value::Text(text)) => Value::Text(text),
-        (Takes::Word(words), Value::Text(word)) => {
-            if !words.contains(&&*word) {
-                let choices = listed(words.iter().copied());
-                return Err(ArgumentError::Word {
-                    function: card.name,
-                    argument: arg.name,
-                    word: word.to_string(),
-                    choices,
-                }
-                .into());
-            }
-            Value::Text(word)
-        }
-        (Takes::Quantities, Value::List(list)) => {
-            let mut quantities = Vec::with_capacity(list.len());
-            for item in list {
-                let quantity = as_quantity(cx, item, |v| refused("a list of quantities", v))?;
-                quantities.push(Value::Quantity(quantity));
-            }
-            Value::List(quantities)
-        }
-        (Takes::Streams, Value::Stream(stream)) => Value::List(vec![Value::Stream(stream)]),
-        (Takes::Streams, Value::List(list)) if list.iter().all(|item| matches!(item, Value::Stream(_))) => {
-            Value::List(list)
-        }
-        (Takes::Maps(known), Value::List(list)) => {
-            let one = |item: Value| match item {
-                Value::Options(map) => checked_map(cx, card, known, &map),
-                other => Err(refused("a list of maps", &other)),
-            };
-            Value::List(list.into_iter().map(one).collect::<Result<_, Fault>>()?)
-        }
-        (Takes::Options(known), Value::Options(options)) => checked_map(cx, card, known, &options)?,
-        (takes, value) => {
-            let wanted = match takes {
-                Takes::Number => "a number",
-                Takes::Text => "a text",
-                Takes::Reaction => "a reaction, as in `reaction(\"CO(g) + H2O(g) -> CO2(g) + H2(g)\")`",
-                Takes::Word(words) => {
-                    return Err(refused(&format!("one of {}", listed(words.iter().copied())), &value));
-                }
-                Takes::Quantities => "a list of quantities",
-                Takes::Options(_) => "a map of options, as in `#{ heat_capacity: \"constant\" }`",
-                Takes::Streams => "a list of streams, as in `[stream(\"feed\", T, amounts)]`",
-                Takes::Maps(_) => "a list of maps",
-                _ => "a quantity",
-            };
-            return Err(refused(wanted, &value));
-        }
-    })
-}
-
-/// A map with its entries checked: each known, and those that are required there.
-fn checked_map(
-    cx: &Cx,
-    card: &'static Card,
-    known: &'static [Arg],
-    given: &BTreeMap<String, Value>,
-) -> Result<Value, Fault> {
-    let mut checked_options = BTreeMap::new();
-    for (name, value) in given {
-        let Some(option) = known.iter().find(|option| option.name == name) else {
-            let known = listed(known.iter().map(|option| option.name));
-            return Err(ArgumentError::Option { function: card.name, option: name.clone(), known }.into());
-        };
-        checked_options.insert(name.clone(), checked(cx, card, option, value.clone())?);
-    }
-    let required = known.iter().filter(|option| matches!(option.default, Default::Required));
-    if let Some(missing) = required.into_iter().find(|option| !given.contains_key(option.name)) {
-        let (function, doc) = (card.name, missing.doc);
-        return Err(ArgumentError::OptionMissing { function, option: missing.name, doc }.into());
-    }
-    Ok(Value::Options(Rc::new(checked_options)))
-}
-
-/// A quantity, or text that reads as one.
-fn as_quantity(cx: &Cx, value: Value, refused: impl Fn(&Value) -> Fault) -> Result<Quantity, Fault> {
-    match value {
-        Value::Quantity(value) => Ok(value),
-        Value::Text(written) => Ok(text::parse(&written, cx.place.clone(), cx.next_ordinal())?),
-        other => Err(refused(&other)),
-    }
-}
-
-pub(super) fn as_point(card: &'static Card, arg: &'static Arg, value: Quantity) -> Result<Quantity, Fault> {
-    if !value.kind().what.is_temperature() {
-        let given = match value.dim().is_none() {
-            true => "a pure number".to_owned(),
-            false => format!("a value in {}", units::unit_for(value.dim()).text),
-        };
-        let wanted = "a temperature, as in `q(\"450 degC\")`".to_owned();
-        return Err(ArgumentError::Sort { function: card.name, argument: arg.name, wanted, given }.into());
-    }
-    if value.kind().what == What::TemperatureDifference {
-        return Err(ArgumentError::Difference { function: card.name, difference_k: value.si() }.into());
-    }
-    if value.si() <= 0.0 {
-        return Err(ArgumentError::NotPositive { function: card.name, t_k: value.si() }.into());
-    }
-    Ok(value)
 }
 
 /// "`a`, `b` and `c`".

@@ -1,12 +1,16 @@
 //! The conditions a value holds under, in one line, and the symbol it is written with.
 
+use std::sync::Arc;
+
 use crate::chem::species::State as Aggregate;
 use crate::model::card::{Call, Cx, Value, call_of};
 use crate::model::path;
 use crate::model::plant::words;
-use crate::model::terms::Terms;
+use crate::model::pressure::{self, AtPressure};
+use crate::model::property::{self, Property};
+use crate::model::terms::{Term, Terms};
 use crate::quantity::Quantity;
-use crate::quantity::round;
+use crate::quantity::{round, text};
 use crate::record::node;
 use crate::units::{What, Zero};
 
@@ -23,7 +27,11 @@ pub fn line(cx: &Cx, value: &Quantity) -> String {
         None => parts.push("temperature: not one value".to_owned()),
     }
     match state.p_pa {
-        Some(p_pa) => parts.push(format!("{} bar", round::shortest(p_pa / 1e5))),
+        // Seven digits: past them there is rounding of a computed vapour pressure alone.
+        Some(p_pa) => {
+            let bar = p_pa / 1e5;
+            parts.push(format!("{} bar", round::shortest(round::significant(bar, 7).parse().unwrap_or(bar))));
+        }
         None => parts.push("pressure: not one value".to_owned()),
     }
     let terms = node::history(value.node()).into_iter().filter_map(|node| call_of(&node).map(species_states));
@@ -36,6 +44,9 @@ pub fn line(cx: &Cx, value: &Quantity) -> String {
         if solute {
             parts.push("each solute in its ideal solution of 1 mol/kg".to_owned());
         }
+    }
+    if !state.standard {
+        parts.extend(call_of(value.node()).and_then(|call| under_pressure(cx, call)));
     }
     for node in node::history(value.node()) {
         for condition in call_of(&node).and_then(Call::terms).map(Terms::conditions).unwrap_or_default() {
@@ -72,6 +83,55 @@ fn changed_phases(cx: &Cx, value: &Quantity) -> Vec<String> {
         }
     }
     all
+}
+
+/// How a property was taken at its pressure, and how large its terms in pressure are.
+fn under_pressure(cx: &Cx, call: &Call) -> Option<String> {
+    let (property, terms, t_k) = (Property::of(call.card)?, call.terms()?, call.quantity(1).si());
+    let method = property::method_of(call, cx).ok()?;
+    let given = method.given.as_ref()?;
+    let at = property::at_pressure(terms, t_k, &method, cx).ok()?;
+    let r = cx.constants().molar_gas.value;
+    let mut words = Vec::new();
+    if given.partial.is_empty() {
+        words.push("each species pure".to_owned());
+    } else {
+        let one = |(id, p): (&Arc<str>, &Quantity)| format!("{id} {}", text::shown_plain(p));
+        words.push(format!("partial pressures {}", given.partial.iter().map(one).collect::<Vec<_>>().join(", ")));
+    }
+    let (gas, _, solute) = species_states(call);
+    if gas {
+        words.push(if given.virial { "gases by second virial coefficients" } else { "gases ideal" }.to_owned());
+    }
+    let condensed = |term: &Term| !matches!(term.substance.species.phase.state, Aggregate::Gas | Aggregate::Aqueous);
+    if !given.volumes && terms.terms().iter().any(condensed) {
+        words.push("volume of liquids and solids neglected".to_owned());
+    }
+    if solute {
+        words.push("each solute in its ideal solution of 1 mol/kg".to_owned());
+    }
+    let sum = |of: &dyn Fn(&AtPressure) -> f64| -> f64 {
+        at.iter().zip(terms.terms()).map(|(at, term)| term.nu * of(at)).sum()
+    };
+    let size = |si: f64, unit: &str| {
+        let figure = round::significant(if unit == "kJ/mol" { si / 1000.0 } else { si }, 3);
+        let sign = if figure.starts_with('-') || si == 0.0 { "" } else { "+" };
+        format!("{sign}{figure} {unit}")
+    };
+    let moved = |property| sum(&|at: &AtPressure| pressure::departure(property, &at.matter, t_k, at.p_pa, r).si);
+    let pv = sum(&|at: &AtPressure| at.p_pa * pressure::volume(&at.matter, t_k, at.p_pa, r));
+    words.push(match property {
+        Property::H => format!("V dP term {}", size(moved(Property::H), "kJ/mol")),
+        Property::U => {
+            format!("V dP term {}, pV term {}", size(moved(Property::H), "kJ/mol"), size(pv, "kJ/mol"))
+        }
+        Property::G | Property::K => format!("V dP term {}", size(moved(Property::G), "kJ/mol")),
+        Property::A => {
+            format!("V dP term {}, pV term {}", size(moved(Property::G), "kJ/mol"), size(pv, "kJ/mol"))
+        }
+        Property::S | Property::Cp => format!("moved by pressure {}", size(moved(property), "J/(K mol)")),
+    });
+    Some(words.join(", "))
 }
 
 /// Whether a call's species are gases, pure phases of any sort, and solutes.

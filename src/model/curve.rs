@@ -6,6 +6,7 @@
 //! where nothing can be computed, is refused there.
 
 use std::cell::{Cell, OnceCell};
+use std::ops::Range;
 use std::rc::Rc;
 use std::sync::Arc;
 
@@ -14,6 +15,8 @@ use thiserror::Error;
 use crate::fault::{Explain, Fault, Place};
 use crate::model::card::{Call, Cx, References, Value};
 use crate::model::grid::Grid;
+use crate::model::property::{self, Property};
+use crate::model::sweep;
 use crate::model::table::Column;
 use crate::num::math;
 use crate::quantity::{Mismatch, Quantity};
@@ -30,8 +33,8 @@ const PATIENCE: usize = 128;
 #[derive(Clone)]
 pub struct Curve {
     grid: Rc<Grid>,
-    /// In SI units, one for each point; finite.
-    numbers: Rc<[f64]>,
+    /// In SI units, one for each point; finite. A vector, since a slice that is shared would have to be copied once more.
+    numbers: Rc<Vec<f64>>,
     dim: Dimension,
     /// Without a temperature, since there is not one.
     kind: Kind,
@@ -155,9 +158,9 @@ impl Curve {
         });
         let grid = grid.unwrap_or_else(|| unreachable!("{} was asked at a grid", call.card.id));
         let numbers = |curve: &Curve, ends: &(Quantity, Quantity)| {
-            let mut numbers = vec![ends.0.si()];
-            let last = curve.len() - 1;
-            for row in 1..last {
+            let mut numbers = vec![0.0; curve.len()];
+            let done = curve.in_one_pass(&mut numbers, cx);
+            for row in (0..done.start).chain(done.end..curve.len()) {
                 if row % PATIENCE == 0
                     && let Some(halt) = (cx.halted)()
                 {
@@ -167,12 +170,22 @@ impl Curve {
                 if value.dim() != ends.0.dim() {
                     return Err(CurveError::Dimension { t_k: curve.grid.points_k()[row] }.into());
                 }
-                numbers.push(value.si());
+                numbers[row] = value.si();
             }
-            numbers.push(ends.1.si());
-            Ok(numbers.into())
+            Ok(Rc::new(numbers))
         };
         Curve::made(grid, Of::Call(call), 0, cx, numbers)
+    }
+
+    /// Works out the rows that need no call each; says which they are.
+    fn in_one_pass(&self, numbers: &mut [f64], cx: &Cx) -> Range<usize> {
+        let asked = self.call().and_then(|call| {
+            let property = Property::of(call.card)?;
+            Some((property, call.terms()?, property::method_of(call, cx).ok()?))
+        });
+        let pass =
+            |(property, terms, method)| sweep::numbers(property, terms, &method, self.grid.points_k(), numbers, cx);
+        asked.map_or(0..0, pass)
     }
 
     /// A column of measured values, one for each point.
@@ -180,7 +193,7 @@ impl Curve {
     /// # Errors
     /// None; the same road as that of curves that are computed.
     pub fn measured(cx: &Cx, grid: Rc<Grid>, values: Rc<Column>) -> Result<Curve, Fault> {
-        let numbers = values.numbers().into();
+        let numbers = Rc::new(values.numbers().to_vec());
         Curve::made(grid, Of::Measured(values), 0, cx, |_, _| Ok(numbers))
     }
 
@@ -221,7 +234,7 @@ impl Curve {
         of: Of,
         depth: u32,
         cx: &Cx,
-        numbers: impl FnOnce(&Curve, &(Quantity, Quantity)) -> Result<Rc<[f64]>, Fault>,
+        numbers: impl FnOnce(&Curve, &(Quantity, Quantity)) -> Result<Rc<Vec<f64>>, Fault>,
     ) -> Result<Curve, Fault> {
         if depth > DEEPEST {
             return Err(CurveError::TooDeep { depth }.into());
@@ -251,8 +264,8 @@ impl Curve {
     }
 
     /// The numbers, if all are finite.
-    fn checked(&self, numbers: impl Iterator<Item = f64>) -> Result<Rc<[f64]>, Fault> {
-        let numbers: Rc<[f64]> = numbers.collect();
+    fn checked(&self, numbers: impl Iterator<Item = f64>) -> Result<Rc<Vec<f64>>, Fault> {
+        let numbers = Rc::new(numbers.collect::<Vec<f64>>());
         // A row that is no number says why, in the words of the arithmetic on values.
         match numbers.iter().position(|number| !number.is_finite()) {
             Some(row) => match self.row(row) {

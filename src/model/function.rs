@@ -64,21 +64,40 @@ pub fn jumps(function: &Function) -> impl Iterator<Item = Jump> {
 }
 
 fn within(interval: &Interval, r: f64, t_k: f64) -> Functions {
-    let (a, b) = (&interval.a, &interval.b);
-    let (t, inverse, ln_t) = (t_k, 1.0 / t_k, math::ln(t_k));
-    let mut cp = a[0] * inverse * inverse + a[1] * inverse + horner(t, [a[2], a[3], a[4], a[5], a[6]]);
-    let mut h =
-        -a[0] * inverse + a[1] * ln_t + t * horner(t, [a[2], a[3] / 2.0, a[4] / 3.0, a[5] / 4.0, a[6] / 5.0]) + b[0];
-    let mut s = -a[0] / 2.0 * inverse * inverse - a[1] * inverse
-        + a[2] * ln_t
-        + t * horner(t, [a[3], a[4] / 2.0, a[5] / 3.0, a[6] / 4.0, 0.0])
-        + b[1];
+    let (t, ln_t) = (t_k, math::ln(t_k));
+    let (mut cp, mut h, mut s) = (cp_of(interval)(t), h_of(interval)(t, ln_t), s_of(interval)(t, ln_t));
     for power in &interval.more {
         cp += power.value(t);
         h += power.integral(t);
         s += power.integral_over_x(t);
     }
     Functions { cp: r * cp, h: r * h, s: r * s }
+}
+
+/// Cp/R from the seven powers of an interval. What depends on the interval alone is worked out here, once for many T.
+pub(super) fn cp_of(interval: &Interval) -> impl Fn(f64) -> f64 + use<> {
+    let a = interval.a;
+    move |t| {
+        let inverse = 1.0 / t;
+        a[0] * inverse * inverse + a[1] * inverse + horner(t, [a[2], a[3], a[4], a[5], a[6]])
+    }
+}
+
+/// H/R from the seven powers of an interval, of T and ln T.
+pub(super) fn h_of(interval: &Interval) -> impl Fn(f64, f64) -> f64 + use<> {
+    let (a, b) = (interval.a, interval.b);
+    let powers = [a[2], a[3] / 2.0, a[4] / 3.0, a[5] / 4.0, a[6] / 5.0];
+    move |t, ln_t| -a[0] * (1.0 / t) + a[1] * ln_t + t * horner(t, powers) + b[0]
+}
+
+/// S/R from the seven powers of an interval, of T and ln T.
+pub(super) fn s_of(interval: &Interval) -> impl Fn(f64, f64) -> f64 + use<> {
+    let (a, b) = (interval.a, interval.b);
+    let (half, powers) = (-a[0] / 2.0, [a[3], a[4] / 2.0, a[5] / 3.0, a[6] / 4.0, 0.0]);
+    move |t, ln_t| {
+        let inverse = 1.0 / t;
+        half * inverse * inverse - a[1] * inverse + a[2] * ln_t + t * horner(t, powers) + b[1]
+    }
 }
 
 /// The interval that holds `t_k`; a join belongs to the lower one, where both agree within the source's rounding.

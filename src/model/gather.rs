@@ -5,7 +5,7 @@
 //! by mixing editions. The surprise: an element in its reference state belongs to every dataset, by convention.
 
 use std::rc::Rc;
-use std::sync::Arc;
+use std::sync::{Arc, LazyLock};
 
 use smallvec::SmallVec;
 use thiserror::Error;
@@ -19,6 +19,7 @@ use crate::fault::{Explain, Fault};
 use crate::model::card::Cx;
 use crate::model::first_order;
 use crate::model::function::{self, Functions, T_REFERENCE};
+use crate::model::given::Given;
 pub use crate::model::heat_capacity::HeatCapacity;
 use crate::model::path::Route;
 use crate::model::stated;
@@ -39,6 +40,8 @@ pub enum Formation {
     Of(DatasetId),
     /// For each species the first dataset that has it, mixed on the analyst's demand.
     Mixed,
+    /// None: what is asked does not contain them.
+    Unneeded,
 }
 
 /// A printed figure or a function's value, with where it comes from.
@@ -158,10 +161,12 @@ impl Explain for GatherError {
 }
 
 /// How a reaction property is to be computed.
-#[derive(Clone, Debug, PartialEq)]
+#[derive(Clone, Debug)]
 pub struct Method {
     pub heat_capacity: HeatCapacity,
     pub formation: Formation,
+    /// The pressure, and how it is taken; `None`: standard values.
+    pub given: Option<Given>,
 }
 
 impl Method {
@@ -180,7 +185,7 @@ impl Method {
             Some("mixed") => Formation::Mixed,
             Some(word) => Formation::Of(dataset_named(word, data)?),
         };
-        Ok(Method { heat_capacity, formation })
+        Ok(Method { heat_capacity, formation, given: None })
     }
 }
 
@@ -206,12 +211,44 @@ fn dataset_named(word: &str, data: &Catalog) -> Result<DatasetId, GatherError> {
 /// One that was read beside the notebook is among them only where it has a record of its own of one of the species: a file
 /// that is loaded must not change results that use nothing of it.
 pub fn covering(reaction: &Terms, data: &Catalog) -> Vec<DatasetId> {
+    those_covering(reaction, data).cloned().collect()
+}
+
+/// The same one by one, since a call wants the first of them only.
+fn those_covering<'a>(reaction: &'a Terms, data: &'a Catalog) -> impl Iterator<Item = &'a DatasetId> {
     let terms = || reaction.terms().iter();
-    let serves = |dataset: &&Dataset| {
-        !dataset.own || terms().any(|term| term.own.is_none() && has_own_formation(&term.substance, dataset, data))
+    let serves =
+        move |dataset: &&Dataset| !dataset.own || terms().any(|term| has_own_formation(&term.substance, dataset, data));
+    let has_all = move |dataset: &&Dataset| terms().all(|term| has_formation(term, &dataset.id, data));
+    formation_datasets(data).filter(serves).filter(has_all).map(|dataset| &dataset.id)
+}
+
+/// Whether a term has a formation enthalpy in a dataset: [`term_formation`] without making the figure.
+fn has_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -> bool {
+    if let Some(own) = term.own.as_ref().filter(|own| own.fit().is_none() || own.formation().is_some()) {
+        return own.formation().is_some() && own.dataset().is_none_or(|only| only == dataset);
+    }
+    let stands_in = |phase: &Substance| {
+        data.with_extended(dataset).any(|dataset| {
+            phase.formation(dataset).is_some() || phase.function.as_ref().is_some_and(|f| is_in(f, dataset))
+        })
     };
-    let has_all = |dataset: &&Dataset| terms().all(|term| term_formation(term, &dataset.id, data).is_some());
-    formation_datasets(data).filter(serves).filter(has_all).map(|dataset| dataset.id.clone()).collect()
+    match &term.substance.function {
+        Some(function) if !function.covers(T_REFERENCE) => {
+            data.reference_phase(&term.substance).is_some_and(|phase| stands_in(&phase))
+        }
+        _ => stands_in(&term.substance),
+    }
+}
+
+/// Whether a function itself says the formation enthalpy of its substance in a dataset.
+fn is_in(function: &Function, dataset: &DatasetId) -> bool {
+    is_element(function) || (function.dataset == *dataset && function.zero.enthalpy)
+}
+
+/// An element in its reference state, whose formation enthalpy is zero by convention.
+fn is_element(function: &Function) -> bool {
+    function.is_reference_element && function.dhf_298 == 0.0
 }
 
 /// Whether the formation enthalpy of a substance would come from a record of this dataset, not of one that it extends.
@@ -229,7 +266,7 @@ pub fn datasets_for(reaction: &Terms, formation: &Formation, data: &Catalog) -> 
     let terms = reaction.terms();
     match formation {
         Formation::Of(id) => {
-            if let Some(term) = terms.iter().find(|term| term_formation(term, id, data).is_none()) {
+            if let Some(term) = terms.iter().find(|term| !has_formation(term, id, data)) {
                 let others: Vec<String> = covering(reaction, data).iter().map(|id| format!("\"{id}\"")).collect();
                 let others = if others.is_empty() { "\"mixed\"".to_owned() } else { others.join(", ") };
                 let species = term.substance.species.id.to_string();
@@ -237,17 +274,15 @@ pub fn datasets_for(reaction: &Terms, formation: &Formation, data: &Catalog) -> 
             }
             Ok(vec![id.clone(); terms.len()])
         }
-        Formation::First => match covering(reaction, data).into_iter().next() {
-            Some(id) => Ok(vec![id; terms.len()]),
+        Formation::Unneeded => Ok(vec![DatasetId::new(""); terms.len()]),
+        Formation::First => match those_covering(reaction, data).next() {
+            Some(id) => Ok(vec![id.clone(); terms.len()]),
             None => Err(GatherError::NotCovered { missing: missing_words(reaction, data) }),
         },
         Formation::Mixed => {
             let ranked: Vec<&Dataset> = formation_datasets(data).collect();
             let first = |term: &Term| {
-                ranked
-                    .iter()
-                    .find(|dataset| term_formation(term, &dataset.id, data).is_some())
-                    .map(|dataset| dataset.id.clone())
+                ranked.iter().find(|dataset| has_formation(term, &dataset.id, data)).map(|dataset| dataset.id.clone())
             };
             let found: Option<Vec<DatasetId>> = terms.iter().map(first).collect();
             found.ok_or_else(|| GatherError::NotCovered { missing: missing_words(reaction, data) })
@@ -259,7 +294,7 @@ fn missing_words(reaction: &Terms, data: &Catalog) -> String {
     let lacks: Vec<String> = formation_datasets(data)
         .map(|dataset| {
             let missing: Vec<&str> = (reaction.terms().iter())
-                .filter(|term| term_formation(term, &dataset.id, data).is_none())
+                .filter(|term| !has_formation(term, &dataset.id, data))
                 .map(|term| &*term.substance.species.id)
                 .collect();
             format!("{} lacks {}", dataset.short, missing.join(", "))
@@ -276,6 +311,8 @@ fn formation_datasets(data: &Catalog) -> impl Iterator<Item = &Dataset> {
 /// The formation enthalpy of a term: a substance of one's own brings it, whichever dataset serves the others.
 pub(crate) fn term_formation(term: &Term, dataset: &DatasetId, data: &Catalog) -> Option<Figure> {
     match &term.own {
+        // A measured heat capacity leaves the formation enthalpy to the tables.
+        Some(own) if own.fit().is_some() => own.formation().or_else(|| formation_of(&term.substance, dataset, data)),
         Some(own) if own.dataset().is_none_or(|only| only == dataset) => own.formation(),
         Some(_) => None,
         None => formation_of(&term.substance, dataset, data),
@@ -308,12 +345,14 @@ fn formation_at_reference(substance: &Substance, dataset: &DatasetId) -> Option<
         return Some(Figure { si: record.dhf.value, origin: input.into(), printed });
     }
     let function = substance.function.as_ref()?;
-    if function.is_reference_element && function.dhf_298 == 0.0 {
-        let citation = Citation::new("convention: an element in its reference state", "");
-        let input = Input { u: Some(0.0), citation: Some(citation), ..Input::of(key) };
+    if is_element(function) {
+        // One text for all, since every reaction has elements.
+        static CONVENTION: LazyLock<Citation> =
+            LazyLock::new(|| Citation::new("convention: an element in its reference state", ""));
+        let input = Input { u: Some(0.0), citation: Some(CONVENTION.clone()), ..Input::of(key) };
         return Some(Figure { si: 0.0, origin: input.into(), printed: Some("0".into()) });
     }
-    if function.dataset != *dataset || !function.zero.enthalpy {
+    if !is_in(function, dataset) {
         return None;
     }
     // The report prints formation enthalpies in J/mol to three decimals; that is not what they are good for.
@@ -368,7 +407,8 @@ pub(crate) fn contribution(
     }
     let (substance, data) = (&term.substance, cx.data());
     let formation =
-        term_formation(term, dataset, data).unwrap_or_else(|| unreachable!("the dataset was found to have it"));
+        // Only what does not contain it is asked of a dataset that lacks it.
+        term_formation(term, dataset, data).unwrap_or_else(|| Figure::of_nodes(0.0, []));
     if let Some(own) = &term.own {
         return of_own(own.as_ref(), term, formation, t_k, mode, cx);
     }
@@ -605,6 +645,24 @@ mod tests {
         // 0.3² + 0.4² − 2·0.5·0.12 in (kJ/mol)²
         let Spread::Full(u) = spread(&gap) else { panic!("both state their u") };
         assert!((u - 1000.0 * f64::sqrt(0.13)).abs() < 1e-9, "{u}");
+    }
+
+    #[test]
+    fn a_figure_is_at_hand_where_it_is_said_to_be() {
+        let data = Catalog::shipped();
+        for substance in data.substances() {
+            for dataset in formation_datasets(&data) {
+                let term = Term::of_tables(Arc::clone(substance), 1.0);
+                let figure = term_formation(&term, &dataset.id, &data);
+                assert_eq!(
+                    has_formation(&term, &dataset.id, &data),
+                    figure.is_some(),
+                    "{} {}",
+                    substance.id(),
+                    dataset.id
+                );
+            }
+        }
     }
 
     #[test]

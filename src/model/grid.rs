@@ -252,7 +252,7 @@ fn of_list(_: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     let mut points = Vec::with_capacity(list.len());
     for item in list {
         let Value::Quantity(value) = item else { unreachable!("{}: quantities were checked", call.card.id) };
-        points.push(crate::model::card::as_point(call.card, &call.card.args[0], value.clone())?);
+        points.push(crate::model::argument::as_point(call.card, &call.card.args[0], value.clone())?);
     }
     Ok(Value::Grid(Rc::new(Grid::list(points)?)))
 }

@@ -17,7 +17,6 @@ use smallvec::SmallVec;
 use thiserror::Error;
 
 use crate::chem::composition::Composition;
-use crate::chem::element;
 use crate::chem::formula::Formula;
 use crate::fault::{Explain, Fault};
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
@@ -68,7 +67,7 @@ impl Explain for MassError {
 /// # Errors
 /// Its composition is not known, or an element has no standard atomic weight.
 pub(super) fn molar_mass(cx: &Cx, entity: Entity, step: Rc<dyn Step>) -> Result<Quantity, Fault> {
-    let Parameter { value: si, inputs, .. } = of_atoms(entity, &composition_of(cx, entity)?)?;
+    let Parameter { value: si, inputs, .. } = of_atoms(cx, entity, &composition_of(cx, entity)?)?;
     let dim = Dimension::mass(entity).over(&Dimension::amount(entity));
     Ok(Quantity::from_step(si, dim, Kind::PLAIN, inputs, step, cx.place.clone())?)
 }
@@ -77,11 +76,11 @@ pub(super) fn molar_mass(cx: &Cx, entity: Entity, step: Rc<dyn Step>) -> Result<
 ///
 /// # Errors
 /// An element has no standard atomic weight.
-pub(super) fn of_atoms(entity: Entity, composition: &Composition) -> Result<Parameter, Fault> {
+pub(super) fn of_atoms(cx: &Cx, entity: Entity, composition: &Composition) -> Result<Parameter, Fault> {
     let terms = composition.molar_mass_terms().map_err(Fault::from)?;
     let (mut value, mut inputs) = (0.0, SmallVec::new());
     for (element, count) in terms {
-        let weight = element::atomic_weight(element).ok_or_else(|| MassError::NoWeight {
+        let weight = cx.data().atomic_weight(element).ok_or_else(|| MassError::NoWeight {
             entity: entity.name().to_owned(),
             element: element.symbol().to_owned(),
         })?;

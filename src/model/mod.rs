@@ -20,9 +20,13 @@ pub mod decomposition;
 pub mod derivation;
 pub mod expanded;
 pub mod first_order;
+pub mod fit;
+pub mod fit_card;
+pub mod fit_error;
 pub mod function;
 pub mod gap;
 pub mod gather;
+pub mod given;
 pub mod grid;
 pub mod heat_capacity;
 pub mod linearity;
@@ -31,6 +35,7 @@ pub mod molecule;
 pub mod monte_carlo;
 pub mod path;
 pub mod plant;
+pub mod pressure;
 pub mod property;
 pub mod property_card;
 pub mod quantities;
@@ -44,6 +49,7 @@ pub mod solid;
 mod stated;
 pub mod statmech;
 pub mod substance;
+pub mod sweep;
 pub mod symbols;
 pub mod table;
 pub mod table_card;
@@ -51,6 +57,8 @@ pub mod tabulated;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
+pub mod vapour;
+pub mod virial;
 
 use card::Card;
 
@@ -74,6 +82,11 @@ pub const CARDS: &[&Card] = &[
     &property_card::SUBSTANCE_HELMHOLTZ_ENERGY,
     &property_card::SUBSTANCE_ENTROPY,
     &property_card::SUBSTANCE_HEAT_CAPACITY,
+    &fit_card::FIT_HEAT_CAPACITY,
+    &fit_card::INTERPOLATE_HEAT_CAPACITY,
+    &vapour::VAPOUR_PRESSURE,
+    &vapour::BOILING_POINT,
+    &vapour::VAPORISATION_ENTHALPY,
     &substance::ENTHALPY_INCREMENT,
     &substance::REACTION_INCREMENT,
     &molecule::limits::MOLECULE,

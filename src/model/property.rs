@@ -26,8 +26,11 @@ use crate::fault::{Explain, Fault};
 use crate::model::card::{Call, Card, Cx};
 use crate::model::function::T_REFERENCE;
 use crate::model::gather::{self, Contribution, Figure, FigureOrigin, HeatCapacity, Method};
+use crate::model::given::Given;
+use crate::model::path;
+use crate::model::pressure::{self, AtPressure};
 use crate::model::shortcut::ShortcutError;
-use crate::model::terms::Terms;
+use crate::model::terms::{Term, Terms};
 use crate::num::math;
 use crate::quantity::Quantity;
 use crate::record::node::{Input, LeafKey, Node, Operator, Origin};
@@ -109,22 +112,29 @@ pub struct Part<'a> {
 pub struct Evaluated<'a> {
     pub si: f64,
     pub parts: Vec<Part<'a>>,
+    /// Pressures and constants of the terms in pressure, each with its weight.
+    pub nodes: Vec<(Rc<Node>, f64)>,
+    /// Derivative with respect to R, for what rests on the gas law.
+    pub by_r: f64,
     /// Derivative with respect to T.
     pub slope: f64,
 }
 
-/// Evaluates a property from what the species contribute. `rt` is R in J/(mol K) and T in kelvin.
+/// Evaluates a property from what the species contribute, R in J/(mol K) and T in kelvin. `at` has each species at its
+/// pressure, and is empty for standard values.
 ///
 /// # Errors
 /// A species has no entropy or heat capacity, where one is needed.
 pub fn evaluate<'a>(
     property: Property,
     contributions: &'a [Contribution],
+    at: &[AtPressure],
     terms: &Terms,
     t_k: f64,
     r: f64,
 ) -> Result<Evaluated<'a>, Fault> {
-    let mut out = Evaluated { si: 0.0, parts: Vec::with_capacity(3 * contributions.len()), slope: 0.0 };
+    let parts = Vec::with_capacity(3 * contributions.len());
+    let mut out = Evaluated { si: 0.0, parts, nodes: Vec::new(), by_r: 0.0, slope: 0.0 };
     for (contribution, term) in contributions.iter().zip(terms.terms()) {
         let species = || term.substance.species.id.to_string();
         let nu = contribution.nu;
@@ -163,10 +173,18 @@ pub fn evaluate<'a>(
             }
         }
     }
-    if property.uses_gas_law() {
+    for (at, term) in at.iter().zip(terms.terms()) {
+        let departure = pressure::departure(property, &at.matter, t_k, at.p_pa, r);
+        out.si += term.nu * departure.si;
+        out.slope += term.nu * departure.by_t;
+        out.by_r += term.nu * departure.by_r;
+        out.nodes.extend(at.parts(&departure).into_iter().map(|(node, weight)| (node, term.nu * weight)));
+    }
+    if property.uses_gas_law() && at.is_empty() {
         let delta_n = terms.delta_n_gas();
         out.si -= delta_n * r * t_k;
         out.slope -= delta_n * r;
+        out.by_r = -delta_n * t_k;
     }
     if property == Property::K {
         // From ΔrG° to K°: every weight times dK/dG = −K/(RT).
@@ -194,20 +212,23 @@ pub(super) fn dimension(property: Property, per: Entity) -> Dimension {
     }
 }
 
-fn kind(property: Property, terms: &Terms, t_k: f64) -> Kind {
+fn kind(property: Property, terms: &Terms, t_k: f64, given: Option<&Given>) -> Kind {
     let zero = property.uses_formation().then_some(Zero::Elements298);
-    let p_pa = Some(STANDARD_PRESSURE.value);
-    let (standard, reaction) = (terms.conditions().is_empty(), terms.is_reaction());
+    let p_pa = given.map_or(Some(STANDARD_PRESSURE.value), Given::common);
+    let (standard, reaction) = (given.is_none() && terms.conditions().is_empty(), terms.is_reaction());
     Kind::in_state(property.what(), State { zero, t_k: Some(t_k), p_pa, standard, reaction })
 }
 
 /// The method a call asks for.
 ///
 /// # Errors
-/// The formation dataset is unknown.
+/// The formation dataset is unknown, or the pressure is not one that the reaction can have.
 pub fn method_of(call: &Call, cx: &Cx) -> Result<Method, Fault> {
     let word = |name| call.option(name).map(|word| &**word);
     let mut method = Method::from_words(word("heat_capacity"), word("formation"), cx.data())?;
+    if Property::of(call.card).is_some_and(|property| !property.uses_formation()) {
+        method.formation = gather::Formation::Unneeded;
+    }
     match (word("heat_capacity"), call.option_quantity("about")) {
         (Some("taylor"), Some(about)) => method.heat_capacity = HeatCapacity::FirstOrder { about_k: about.si() },
         (Some("taylor"), None) => return Err(ShortcutError::StartMissing.into()),
@@ -217,7 +238,25 @@ pub fn method_of(call: &Call, cx: &Cx) -> Result<Method, Fault> {
         }
         (_, None) => {}
     }
+    method.given = Given::of(call, cx)?;
     Ok(method)
+}
+
+/// Each species at its pressure; empty where standard values are asked for.
+///
+/// # Errors
+/// A constant that was given is of another dimension than it should be.
+pub fn at_pressure(terms: &Terms, t_k: f64, method: &Method, cx: &Cx) -> Result<Vec<AtPressure>, Fault> {
+    let Some(given) = &method.given else { return Ok(Vec::new()) };
+    let r = cx.constants().molar_gas.value;
+    // A phase that changes on the way to T takes pressure as the one that it is there.
+    let crossed = path::crossings(terms, t_k, cx.data());
+    let there = |(nth, term): (usize, &Term)| {
+        let route = crossed.iter().find(|(of, _)| *of == nth).map(|(_, route)| route);
+        let substance = route.map_or(&term.substance, |route| &route.last().substance);
+        pressure::resolve(substance, t_k, given, r)
+    };
+    terms.terms().iter().enumerate().map(there).collect()
 }
 
 /// A property by another method, as a bare number in SI units: what tests and alternatives compare with.
@@ -227,7 +266,8 @@ pub fn method_of(call: &Call, cx: &Cx) -> Result<Method, Fault> {
 pub fn number(property: Property, terms: &Terms, t_k: f64, method: &Method, cx: &Cx) -> Result<f64, Fault> {
     let contributions = gather::contributions(terms, t_k, method, cx)?;
     let r = cx.constants().molar_gas.value;
-    Ok(evaluate(property, &contributions, terms, t_k, r)?.si)
+    let at = at_pressure(terms, t_k, method, cx)?;
+    Ok(evaluate(property, &contributions, &at, terms, t_k, r)?.si)
 }
 
 /// A property by another method, as a value with its inputs, made by `call`.
@@ -256,21 +296,23 @@ pub fn value(
     let t_k = t.si();
     let contributions = gather::contributions(terms, t_k, method, cx)?;
     let r = gas_constant(cx.constants());
-    let delta_n = terms.delta_n_gas();
-    let evaluated = evaluate(property, &contributions, terms, t_k, r.si())?;
-    let mut inputs: SmallVec<[(Rc<Node>, f64); 2]> = SmallVec::with_capacity(evaluated.parts.len() + 2);
+    let at = at_pressure(terms, t_k, method, cx)?;
+    let evaluated = evaluate(property, &contributions, &at, terms, t_k, r.si())?;
+    let mut inputs: SmallVec<[(Rc<Node>, f64); 2]> =
+        SmallVec::with_capacity(evaluated.parts.len() + evaluated.nodes.len() + 2);
     for part in &evaluated.parts {
         enter(&mut inputs, part.figure, part.weight, property)?;
     }
-    if property.uses_gas_law() && delta_n != 0.0 {
-        inputs.push((Rc::clone(r.node()), -delta_n * t_k));
+    inputs.extend(evaluated.nodes);
+    if evaluated.by_r != 0.0 {
+        inputs.push((Rc::clone(r.node()), evaluated.by_r));
     }
     inputs.push((as_argument(t), evaluated.slope));
     let step = Rc::clone(call);
     Ok(Quantity::from_step(
         evaluated.si,
         dimension(property, terms.per()),
-        kind(property, terms, t_k),
+        kind(property, terms, t_k, method.given.as_ref()),
         inputs,
         step,
         cx.place.clone(),
@@ -323,14 +365,8 @@ pub(super) fn gas_constant(constants: &ConstantSet) -> Quantity {
     let dim = Dimension::whole([2, 1, -2, 0, -1, 0]).over(&Dimension::amount(Entity::OPEN));
     let key = LeafKey::Constant { year: constants.year, name: r.name };
     let input = Input { u: Some(r.u), citation: Some(r.citation()), ..Input::of(key) };
-    Quantity::of_node(Rc::new(Node::new(
-        r.value,
-        dim,
-        Kind::PLAIN,
-        SmallVec::new(),
-        Origin::Input(Box::new(input)),
-        None,
-    )))
+    let origin = Origin::Input(Box::new(input));
+    Quantity::of_node(Rc::new(Node::new(r.value, dim, Kind::PLAIN, SmallVec::new(), origin, None)))
 }
 
 /// Whether a property at this temperature is the tabulated one, so that no correction is made.

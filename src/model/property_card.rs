@@ -7,13 +7,19 @@ use crate::model::card::{Alternative, Arg, Call, Card, Claim, Cx, Default, On, S
 use crate::model::check_line;
 use crate::model::claims;
 use crate::model::gather::{self, Contribution, Figure, HeatCapacity};
+use crate::model::given::{CONSTANTS, GAS, GivenError, PARTIAL, PRESSURE, VOLUME};
+use crate::model::pressure;
 use crate::model::property::{self, Property};
 use crate::model::shortcut::ABOUT;
 use crate::quantity::Quantity;
 
 fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     let asked = Property::of(call.card).unwrap_or_else(|| unreachable!("{} is a property's card", call.card.id));
-    Ok(Value::Quantity(property::quantity(asked, call, &property::method_of(call, cx)?, cx)?))
+    let method = property::method_of(call, cx)?;
+    if asked == Property::K && method.given.is_some() {
+        return Err(GivenError::ConstantAtPressure.into());
+    }
+    Ok(Value::Quantity(property::quantity(asked, call, &method, cx)?))
 }
 
 /// The figures of the calculation, each with the number of its source.
@@ -23,6 +29,31 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     let Ok(method) = property::method_of(call, cx) else { return String::new() };
     let Ok(contributions) = gather::contributions(terms, t_k, &method, cx) else { return String::new() };
     let plain = |si: f64| format!("{si:.3}");
+    let Ok(at) = property::at_pressure(terms, t_k, &method, cx) else { return String::new() };
+    let r = &cx.constants().molar_gas;
+    // What pressure brings to H, G or S, per species; pV stands for itself.
+    let by_pressure = |property: Option<Property>, sources: &mut Sources| {
+        let mut terms_of = Vec::new();
+        for (at, term) in at.iter().zip(terms.terms()) {
+            let si = match property {
+                Some(property) => pressure::departure(property, &at.matter, t_k, at.p_pa, r.value).si,
+                None => at.p_pa * pressure::volume(&at.matter, t_k, at.p_pa, r.value),
+            };
+            let figure = if property == Some(Property::S) || property == Some(Property::Cp) { si } else { si / 1000.0 };
+            if si != 0.0 {
+                let source = at.citation.as_ref().map_or_else(String::new, |c| format!("[{}]", sources.number(c)));
+                let shown = if figure < 0.0 { format!("({figure:.4})") } else { format!("{figure:.4}") };
+                terms_of.push((term.nu, shown + source.as_str()));
+            }
+        }
+        signed_sum(terms_of)
+    };
+    let with_pressure =
+        |line: String, property: Property, sources: &mut Sources| match by_pressure(Some(property), sources) {
+            none if none.is_empty() => line,
+            one if one.starts_with('(') && one.matches('(').count() == 1 => format!("{line} + {one}"),
+            terms_of => format!("{line} + ({terms_of})"),
+        };
     let enthalpy = |sources: &mut Sources| {
         let formation = sum_of(&contributions, sources, |c| Some(&c.formation), check_line::kilo);
         let increments = sum_of(&contributions, sources, |c| c.increment.as_ref(), check_line::kilo);
@@ -33,38 +64,47 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     let entropies = |sources: &mut Sources| sum_of(&contributions, sources, |c| c.entropy.as_ref(), plain);
     let result = format!("{:.3} kJ/mol", value.si() / 1000.0);
     let per_kelvin = format!("{:.3} J/(K mol)", value.si());
-    let rt = |sources: &mut Sources| {
-        let r = &cx.constants().molar_gas;
+    // pV: by Δn(gas) for standard values, by the volume of each species at a pressure.
+    let pv = |sources: &mut Sources| {
+        if !at.is_empty() {
+            return format!("({})", by_pressure(None, sources));
+        }
         let source = sources.number(&r.citation());
         let delta_n = terms.delta_n_gas();
         let delta_n = if delta_n < 0.0 { format!("({delta_n})") } else { delta_n.to_string() };
         format!("{delta_n} × {:.8e}[{source}] × {t_k}", r.value / 1000.0)
     };
+    let gibbs = |sources: &mut Sources| {
+        let (enthalpy, entropies) = (enthalpy(sources), entropies(sources));
+        with_pressure(format!("{enthalpy} - {t_k} × ({entropies}) / 1000"), Property::G, sources)
+    };
     match asked {
-        Property::H => format!("{} = {result}", enthalpy(sources)),
+        Property::H => {
+            let line = enthalpy(sources);
+            format!("{} = {result}", with_pressure(line, Property::H, sources))
+        }
         Property::U => {
-            let enthalpy = enthalpy(sources);
-            format!("{enthalpy} - {} = {result}", rt(sources))
+            let line = enthalpy(sources);
+            let line = with_pressure(line, Property::H, sources);
+            format!("{line} - {} = {result}", pv(sources))
         }
-        Property::G => {
-            let enthalpy = enthalpy(sources);
-            format!("{enthalpy} - {t_k} × ({}) / 1000 = {result}", entropies(sources))
-        }
+        Property::G => format!("{} = {result}", gibbs(sources)),
         Property::A => {
-            let (enthalpy, entropies) = (enthalpy(sources), entropies(sources));
-            format!("{enthalpy} - {t_k} × ({entropies}) / 1000 - {} = {result}", rt(sources))
+            let line = gibbs(sources);
+            format!("{line} - {} = {result}", pv(sources))
         }
-        Property::S => format!("{} = {per_kelvin}", entropies(sources)),
-        Property::Cp => format!("{} = {per_kelvin}", sum_of(&contributions, sources, |c| c.cp.as_ref(), plain)),
+        Property::S => {
+            let line = entropies(sources);
+            format!("{} = {per_kelvin}", with_pressure(line, Property::S, sources))
+        }
+        Property::Cp => {
+            let line = sum_of(&contributions, sources, |c| c.cp.as_ref(), plain);
+            format!("{} = {per_kelvin}", with_pressure(line, Property::Cp, sources))
+        }
         Property::K => {
-            let (enthalpy, entropies) = (enthalpy(sources), entropies(sources));
-            let r = &cx.constants().molar_gas;
+            let gibbs = gibbs(sources);
             let source = sources.number(&r.citation());
-            format!(
-                "exp(-({enthalpy} - {t_k} × ({entropies}) / 1000) / ({:.8e}[{source}] × {t_k})) = {:.6e}",
-                r.value / 1000.0,
-                value.si()
-            )
+            format!("exp(-({gibbs}) / ({:.8e}[{source}] × {t_k})) = {:.6e}", r.value / 1000.0, value.si())
         }
     }
 }
@@ -76,10 +116,16 @@ fn sum_of<'a>(
     pick: impl Fn(&'a Contribution) -> Option<&'a Figure>,
     show: impl Fn(f64) -> String,
 ) -> String {
+    let picked = contributions.iter().filter_map(|contribution| {
+        Some((contribution.nu, check_line::figures_of(pick(contribution)?, sources, &show)))
+    });
+    signed_sum(picked)
+}
+
+/// Stoichiometric numbers with figures as shown.
+fn signed_sum(figures: impl IntoIterator<Item = (f64, String)>) -> String {
     let mut line = String::new();
-    for contribution in contributions {
-        let Some(figure) = pick(contribution) else { continue };
-        let (nu, shown) = (contribution.nu, check_line::figures_of(figure, sources, &show));
+    for (nu, shown) in figures {
         line.push_str(match (line.is_empty(), nu < 0.0) {
             (true, false) => "",
             (true, true) => "-",
@@ -94,31 +140,18 @@ fn sum_of<'a>(
     line
 }
 
-const OPTIONS: &[Arg] = &[
-    Arg {
-        name: "heat_capacity",
-        takes: Takes::Word(HeatCapacity::WORDS),
-        default: Default::Absent,
-        doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
-    },
-    ABOUT,
-    Arg {
-        name: "formation",
-        takes: Takes::Text,
-        default: Default::Absent,
-        doc: "the dataset of formation enthalpies, such as \"codata-1989\", or \"mixed\"",
-    },
-];
-
-const HEAT_CAPACITY_ONLY: &[Arg] = &[
-    Arg {
-        name: "heat_capacity",
-        takes: Takes::Word(HeatCapacity::WORDS),
-        default: Default::Absent,
-        doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
-    },
-    ABOUT,
-];
+const HEAT_CAPACITY_OPTION: Arg = Arg {
+    name: "heat_capacity",
+    takes: Takes::Word(HeatCapacity::WORDS),
+    default: Default::Absent,
+    doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
+};
+const FORMATION_OPTION: Arg = Arg {
+    name: "formation",
+    takes: Takes::Text,
+    default: Default::Absent,
+    doc: "the dataset of formation enthalpies, such as \"codata-1989\", or \"mixed\"",
+};
 
 const TEMPERATURE: Arg = Arg {
     name: "T",
@@ -127,34 +160,35 @@ const TEMPERATURE: Arg = Arg {
     doc: "temperature: degC, degF or kelvin; with a grid of temperatures the answer is a curve",
 };
 
+const fn options(known: &'static [Arg]) -> Arg {
+    Arg { name: "options", takes: Takes::Options(known), default: Default::NoOptions, doc: "how it is to be computed" }
+}
+
 pub(super) const ARGS: &[Arg] = &[
     TEMPERATURE,
-    Arg {
-        name: "options",
-        takes: Takes::Options(OPTIONS),
-        default: Default::NoOptions,
-        doc: "how it is to be computed",
-    },
+    options(&[HEAT_CAPACITY_OPTION, ABOUT, FORMATION_OPTION, PRESSURE, GAS, VOLUME, PARTIAL, CONSTANTS]),
 ];
-
-const ARGS_WITHOUT_FORMATION: &[Arg] = &[
-    TEMPERATURE,
-    Arg {
-        name: "options",
-        takes: Takes::Options(HEAT_CAPACITY_ONLY),
-        default: Default::NoOptions,
-        doc: "how it is to be computed",
-    },
-];
+const ARGS_WITHOUT_FORMATION: &[Arg] =
+    &[TEMPERATURE, options(&[HEAT_CAPACITY_OPTION, ABOUT, PRESSURE, GAS, VOLUME, PARTIAL, CONSTANTS])];
+/// A pure substance has no partial pressure.
+const SUBSTANCE_ARGS: &[Arg] =
+    &[TEMPERATURE, options(&[HEAT_CAPACITY_OPTION, ABOUT, FORMATION_OPTION, PRESSURE, GAS, VOLUME, CONSTANTS])];
+const SUBSTANCE_ARGS_WITHOUT_FORMATION: &[Arg] =
+    &[TEMPERATURE, options(&[HEAT_CAPACITY_OPTION, ABOUT, PRESSURE, GAS, VOLUME, CONSTANTS])];
 
 const CONSTANT_HEAT_CAPACITY: Claim = Claim { id: "constant-heat-capacity", test: claims::constant_heat_capacity };
 const STABLE_PHASE: Claim = Claim { id: "stable-phase", test: claims::stable_phase };
 const FORMATION_DATASET: Claim = Claim { id: "formation-dataset", test: claims::formation_dataset };
 const IDEAL_GAS: Claim = Claim { id: "ideal-gas", test: claims::ideal_gas };
 const CONDENSED_VOLUME: Claim = Claim { id: "condensed-volume-neglected", test: claims::condensed_volume };
+const SECOND_VIRIAL: Claim = Claim { id: "second-virial", test: claims::second_virial };
+const PRESSURE_NEGLECTED: Claim = Claim { id: "pressure-neglected", test: claims::pressure_neglected };
+const EXPANSIVITY: Claim = Claim { id: "constant-expansivity", test: claims::constant_expansivity };
+const STANDARD: Claim = Claim { id: "standard-pressure", test: claims::standard_pressure };
+const SATURATED: Claim = Claim { id: "saturated-vapour-ideal", test: claims::saturated_leg };
+const UNMIXED: Claim = Claim { id: "unmixed", test: claims::unmixed };
 
 const AQUEOUS: Claim = Claim { id: "aqueous-heat-capacity", test: claims::aqueous_heat_capacity };
-const SATURATED_VAPOUR: Claim = Claim { id: "saturated-vapour-ideal", test: claims::vapour_of_records };
 const MONOMER_VAPOUR: Claim = Claim { id: "monomer-vapour", test: claims::monomer_vapour };
 const NO_DECOMPOSITION: Claim = Claim { id: "no-decomposition", test: claims::no_decomposition };
 const FIT_QUALITY: Claim = Claim { id: "fit-quality", test: claims::fit_quality };
@@ -164,26 +198,61 @@ const ENTHALPY_CLAIMS: &[Claim] = &[
     AQUEOUS,
     STABLE_PHASE,
     FORMATION_DATASET,
-    SATURATED_VAPOUR,
+    IDEAL_GAS,
+    SECOND_VIRIAL,
+    PRESSURE_NEGLECTED,
+    EXPANSIVITY,
+    STANDARD,
+    UNMIXED,
+    SATURATED,
     MONOMER_VAPOUR,
     NO_DECOMPOSITION,
     FIT_QUALITY,
 ];
-const ENERGY_CLAIMS: &[Claim] =
-    &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, FORMATION_DATASET, MONOMER_VAPOUR, NO_DECOMPOSITION, FIT_QUALITY];
+const ENERGY_CLAIMS: &[Claim] = &[
+    CONSTANT_HEAT_CAPACITY,
+    AQUEOUS,
+    STABLE_PHASE,
+    FORMATION_DATASET,
+    IDEAL_GAS,
+    SECOND_VIRIAL,
+    PRESSURE_NEGLECTED,
+    EXPANSIVITY,
+    STANDARD,
+    UNMIXED,
+    MONOMER_VAPOUR,
+    NO_DECOMPOSITION,
+    FIT_QUALITY,
+];
 const GAS_LAW_CLAIMS: &[Claim] = &[
     CONSTANT_HEAT_CAPACITY,
     AQUEOUS,
     STABLE_PHASE,
     FORMATION_DATASET,
     IDEAL_GAS,
+    SECOND_VIRIAL,
     CONDENSED_VOLUME,
+    EXPANSIVITY,
+    STANDARD,
+    UNMIXED,
     MONOMER_VAPOUR,
     NO_DECOMPOSITION,
     FIT_QUALITY,
 ];
-const ENTROPY_CLAIMS: &[Claim] =
-    &[CONSTANT_HEAT_CAPACITY, AQUEOUS, STABLE_PHASE, MONOMER_VAPOUR, NO_DECOMPOSITION, FIT_QUALITY];
+const ENTROPY_CLAIMS: &[Claim] = &[
+    CONSTANT_HEAT_CAPACITY,
+    AQUEOUS,
+    STABLE_PHASE,
+    IDEAL_GAS,
+    SECOND_VIRIAL,
+    PRESSURE_NEGLECTED,
+    EXPANSIVITY,
+    STANDARD,
+    UNMIXED,
+    MONOMER_VAPOUR,
+    NO_DECOMPOSITION,
+    FIT_QUALITY,
+];
 
 const SHORTCUTS: &[Alternative] = &[
     Alternative {
@@ -325,7 +394,7 @@ substance_card!(
     SUBSTANCE_ENTHALPY,
     "substance.enthalpy",
     "enthalpy",
-    ARGS,
+    SUBSTANCE_ARGS,
     ENERGY_CLAIMS,
     "H° per mole of the substance, zero: the elements at 298.15 K",
     "Enthalpy at T, counted from the elements at 298.15 K. H°(T) = ΔfH°(298.15 K) + H(T) - H(298.15 K)."
@@ -334,7 +403,7 @@ substance_card!(
     SUBSTANCE_INTERNAL_ENERGY,
     "substance.internal-energy",
     "internal_energy",
-    ARGS,
+    SUBSTANCE_ARGS,
     GAS_LAW_CLAIMS,
     "U° per mole of the substance",
     "Internal energy at T, counted from the elements at 298.15 K. U°(T) = H°(T) - R T for a gas, taken as ideal; condensed volumes neglected."
@@ -343,7 +412,7 @@ substance_card!(
     SUBSTANCE_GIBBS_ENERGY,
     "substance.gibbs-energy",
     "gibbs_energy",
-    ARGS,
+    SUBSTANCE_ARGS,
     ENERGY_CLAIMS,
     "G° per mole of the substance",
     "Gibbs energy at T, H counted from the elements at 298.15 K. G°(T) = H°(T) - T S°(T), p° = 1 bar."
@@ -352,7 +421,7 @@ substance_card!(
     SUBSTANCE_HELMHOLTZ_ENERGY,
     "substance.helmholtz-energy",
     "helmholtz_energy",
-    ARGS,
+    SUBSTANCE_ARGS,
     GAS_LAW_CLAIMS,
     "A° per mole of the substance",
     "Helmholtz energy at T, H counted from the elements at 298.15 K. A°(T) = G°(T) - R T for a gas, taken as ideal; condensed volumes neglected."
@@ -361,7 +430,7 @@ substance_card!(
     SUBSTANCE_ENTROPY,
     "substance.entropy",
     "entropy",
-    ARGS_WITHOUT_FORMATION,
+    SUBSTANCE_ARGS_WITHOUT_FORMATION,
     ENTROPY_CLAIMS,
     "S° per mole of the substance",
     "Third-law entropy at T, without nuclear spin, p° = 1 bar."
@@ -370,7 +439,7 @@ substance_card!(
     SUBSTANCE_HEAT_CAPACITY,
     "substance.heat-capacity",
     "heat_capacity",
-    ARGS_WITHOUT_FORMATION,
+    SUBSTANCE_ARGS_WITHOUT_FORMATION,
     ENTROPY_CLAIMS,
     "Cp° per mole of the substance",
     "Heat capacity at constant pressure at T."

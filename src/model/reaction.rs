@@ -14,6 +14,7 @@ use crate::data::catalog::Catalog;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Arg, Card, Cx, Default, On, Takes, Value};
+use crate::model::fit_card;
 use crate::model::molecule::error::MoleculeError;
 use crate::model::molecule::formation::Own;
 use crate::model::solid::answers;
@@ -132,8 +133,9 @@ fn given(cx: &Cx, options: Option<&Value>) -> Result<Named, Fault> {
             Value::Crystal(crystal) => {
                 Stand { substance: Arc::clone(&crystal.substance), thermo: Rc::new(answers::Own::new(cx, crystal)?) }
             }
+            Value::Substance(own) => fit_card::stand(cx, name, own)?,
             other => {
-                let (key, wanted) = (format!("own: {name}"), "a molecule or a crystal");
+                let (key, wanted) = (format!("own: {name}"), "a molecule, a crystal or a fitted heat capacity");
                 return Err(MoleculeError::Sort { key, wanted, given: other.sort().to_owned() }.into());
             }
         };

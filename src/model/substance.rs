@@ -24,6 +24,7 @@ use crate::model::path::{self, FROM_START, Leg, Phase, Route};
 use crate::model::property::{self, Property};
 use crate::model::stated;
 use crate::model::terms::{Term, Terms};
+use crate::model::thermo::Thermo;
 use crate::quantity::Quantity;
 use crate::record::node::{Input, LeafKey};
 use crate::units::constants::STANDARD_PRESSURE;
@@ -56,6 +57,11 @@ impl PureSubstance {
     pub(super) fn answered_by(term: Term) -> Self {
         let (per, text) = (term.substance.species.entity, term.substance.id().to_owned());
         PureSubstance { terms: Terms::new(vec![term], per, text), onward: Vec::new() }
+    }
+
+    /// What answers for it in place of the tables.
+    pub fn thermo(&self) -> Option<&Rc<dyn Thermo>> {
+        self.terms.terms()[0].own.as_ref()
     }
 
     pub fn record(&self) -> &Arc<Substance> {

@@ -137,6 +137,31 @@ static MOLECULE_G: Formula = Formula {
     symbols: &[SHARES, GAS_CONSTANT, TEMPERATURE],
 };
 
+const DUTY: Symbol =
+    symbol("Q", "Q", "kJ or kW", "heat taken up by the contents at constant pressure; negative: to be removed");
+const MOLES: Symbol = symbol("n", "n", "mol or mol/s", "amounts, or flows, of the species of a stream");
+const MOLAR: Symbol = symbol(
+    "H(T)",
+    "H(T)",
+    "kJ/mol",
+    "counted from the elements at 298.15 K, one dataset of formation enthalpies; at constant volume U = H - R T of gases",
+);
+static HEAT_BALANCE: Formula = Formula {
+    text: "Q = Σ n H(T), leaving - Σ n H(T), fed",
+    latex: r"Q=\sum_\mathrm{leaving}n\,H(T)-\sum_\mathrm{fed}n\,H(T)",
+    symbols: &[DUTY, MOLES, MOLAR],
+};
+static ADIABATIC: Formula = Formula {
+    text: "Σ n H(T), after = Σ n H, fed",
+    latex: r"\sum_\mathrm{after}n\,H(T)=\sum_\mathrm{fed}n\,H",
+    symbols: &[MOLES, MOLAR, TEMPERATURE],
+};
+static RISE: Formula = Formula {
+    text: "ΔT = -Σ ξ ΔrH / Σ n Cp, at the start",
+    latex: r"\Delta T=-\frac{\sum\xi\,\Delta_\mathrm{r}H}{\sum n\,C_p}",
+    symbols: &[symbol("ξ", r"\xi", "mol", "extents of reaction"), MOLES, CAPACITY],
+};
+
 /// By the id of the card.
 static FORMULAS: &[(&str, &Formula)] = &[
     ("reaction.enthalpy", &ENTHALPY),
@@ -158,6 +183,9 @@ static FORMULAS: &[(&str, &Formula)] = &[
     ("molecule.enthalpy-increment", &MOLECULE_H),
     ("molecule.gibbs-energy", &MOLECULE_G),
     ("quantity.per", &PER),
+    ("plant.heat-balance", &HEAT_BALANCE),
+    ("plant.adiabatic-temperature", &ADIABATIC),
+    ("plant.temperature-rise", &RISE),
 ];
 
 /// The equation of a card.

@@ -103,7 +103,7 @@ fn node(figure: &Figure) -> Result<Rc<Node>, Fault> {
 }
 
 /// The entropy at 298.15 K of the first table that has it.
-fn entropy(substance: &Substance) -> Option<Figure> {
+pub(super) fn entropy(substance: &Substance) -> Option<Figure> {
     printed(substance, gather::ENTROPY, |record| record.s.as_ref())
 }
 

@@ -11,6 +11,7 @@ use smallvec::SmallVec;
 use crate::data::dataset::DatasetId;
 use crate::fault::Fault;
 use crate::model::card::Cx;
+use crate::model::fit::Fit;
 use crate::model::gather::{Figure, FigureOrigin};
 use crate::record::node::Node;
 
@@ -27,6 +28,11 @@ pub trait Thermo {
 
     /// Its formation enthalpy at 298.15 K, J/mol, where its author gave one.
     fn formation(&self) -> Option<Figure>;
+
+    /// The fit it is, for what is asked of fits alone.
+    fn fit(&self) -> Option<&Fit> {
+        None
+    }
 
     /// The one dataset beside which that formation enthalpy may stand; `None`: any.
     fn dataset(&self) -> Option<&DatasetId> {

@@ -34,6 +34,9 @@ pub fn notebook(audit: &NotebookAudit) -> String {
             line(&mut text, &counts("compared", audit.values.iter().map(|one| one.under_today.verdict)));
         }
     }
+    for cause in summed_causes(audit) {
+        line(&mut text, &cause);
+    }
     for value in &audit.values {
         text.push_str(&changed(value, audit.against));
     }
@@ -61,6 +64,27 @@ fn seal_words(seal: &SealFacts) -> String {
         Signed::Invalid { key, why } => format!("; THE SIGNATURE with the key {key} DOES NOT HOLD: {why}"),
     };
     format!("sealed {}{author}{draft}{signed}{whole}", seal.sealed)
+}
+
+/// Every cause once, with the number of values it moved: what an auditor wants to know first where many values moved.
+fn summed_causes(audit: &NotebookAudit) -> Vec<String> {
+    let mut causes: Vec<(String, Vec<&str>)> = Vec::new();
+    for value in &audit.values {
+        let moves = [&value.under_sealed.moved, &value.under_today.moved].into_iter().flatten();
+        for cause in moves.flat_map(|moved| &moved.causes) {
+            let words = format!("{}: {}", cause.kind.word(), cause.what);
+            match causes.iter_mut().find(|(known, _)| *known == words) {
+                Some((_, labels)) if labels.contains(&value.label.as_str()) => {}
+                Some((_, labels)) => labels.push(&value.label),
+                None => causes.push((words, vec![&value.label])),
+            }
+        }
+    }
+    let words = |(cause, labels): (String, Vec<&str>)| {
+        let values = if labels.len() == 1 { "1 value".to_owned() } else { format!("{} values", labels.len()) };
+        format!("cause: {cause}; it moves {values}")
+    };
+    causes.into_iter().map(words).collect()
 }
 
 /// `under the sealed data: 9 identical, 1 moved`
@@ -116,8 +140,8 @@ fn move_lines(moved: &Move) -> String {
     if !moved.causes.is_empty() && moved.remainder != "0" {
         line(&mut text, &format!("          {}  remainder, not told apart", moved.remainder_shown));
     }
-    if let Some(u) = &moved.u_of_changed {
-        line(&mut text, &format!("          the revised inputs stated u = {u}"));
+    if let Some(u) = &moved.u_of_changed_shown {
+        line(&mut text, &format!("          the revised inputs stated {u} as their standard uncertainty"));
     }
     if let Some(parts_at) = &moved.parts_at {
         line(&mut text, &format!("    at    {parts_at}"));

@@ -124,7 +124,10 @@ impl<'a> Grounds<'a> {
         let unit = crate::units::parse::unit(&sealed.record.unit).ok()?;
         let derived = unit.from_si(step.si.parse().ok()?);
         let stated: f64 = sealed.record.value.parse().ok()?;
-        let words = format!("it says {stated} {}, and its own derivation ends at {derived}", sealed.record.unit);
+        let words = format!(
+            "it says {stated} {unit}, and its own derivation ends at {derived} {unit}",
+            unit = sealed.record.unit
+        );
         (derived != stated).then_some((words, derived - stated))
     }
 }

@@ -11,7 +11,7 @@ use crate::notebook::seal::SealedValue;
 use crate::notebook::skeleton::sealed_kind;
 use crate::notebook::trial::Tried;
 use crate::notebook::verdict::{Cause, CauseKind, Move, Outcome, Verdict, row_words};
-use crate::quantity::round::shortest;
+use crate::quantity::round::{self, shortest};
 use crate::render::report::{Assumption, Record};
 use crate::units::{self, Unit};
 
@@ -55,6 +55,7 @@ pub fn against_record(record: &Record, now: &Tried) -> Outcome {
         remainder: shortest(by),
         remainder_shown: shown(now, &record.unit, by),
         u_of_changed: None,
+        u_of_changed_shown: None,
         parts_at: None,
     });
     let reason = |id: &str, subject: &str| {
@@ -89,9 +90,16 @@ impl Base {
         let by = number(record).zip(in_unit_of(record, now)).map(|(then, now)| now - then);
         let same_u = record.u == is.u && record.u_coverage == is.u_coverage;
         if !same_u && !other_unit {
-            let word = |u: &Option<String>| u.clone().unwrap_or_else(|| "not stated".to_owned());
-            let coverage = if record.u_coverage == is.u_coverage { "" } else { ", and covers other inputs" };
-            notes.push(format!("u in {}: {} then, {} now{coverage}", record.unit, word(&record.u), word(&is.u)));
+            let word = |u: &Option<String>| match u.as_deref().map(str::parse::<f64>) {
+                Some(Ok(u)) => with_unit(&round::fixed(u, round::decimals_for(u)), &record.unit),
+                _ => "not stated".to_owned(),
+            };
+            let (then, now) = (word(&record.u), word(&is.u));
+            if record.u_coverage != is.u_coverage {
+                notes.push(format!("u: {then} then, {now} now, and it covers other inputs"));
+            } else if then != now {
+                notes.push(format!("u: {then} then, {now} now"));
+            }
         }
         if record.conditions != is.conditions {
             notes.push(format!("conditions: {} then, {} now", record.conditions, is.conditions));
@@ -181,6 +189,11 @@ pub fn shown(of: &Tried, unit: &str, by: f64) -> String {
     let rounded = signed(half_digit, by);
     let vanishes = !rounded.chars().any(|c| ('1'..='9').contains(&c));
     let number = if by != 0.0 && vanishes { format!("{by:+.1e}") } else { rounded };
+    with_unit(&number, unit)
+}
+
+/// A number with its unit as people write it, without the basis.
+fn with_unit(number: &str, unit: &str) -> String {
     let reader = unit_of(unit).map_or_else(|| unit.to_owned(), |unit| units::reader_text(&unit));
     format!("{number} {reader}").trim_end().to_owned()
 }
@@ -286,6 +299,7 @@ fn moved(compared: &Compared, by: f64, grounds: &Grounds, shares: &[Exchanged]) 
         causes,
         remainder: shortest(remainder),
         remainder_shown: shown(now, &record.unit, remainder),
+        u_of_changed_shown: u.map(|u| with_unit(&round::fixed(u, round::decimals_for(u)), &record.unit)),
         u_of_changed: u.map(shortest),
         parts_at: parting::parting(grounds.seal, sealed, &now.value),
     }

@@ -87,6 +87,7 @@ pub fn sealed_tables(records: &Records) -> Vec<SealedTable> {
         dataset: table.dataset.to_string(),
         head: table.head.to_string(),
         head_sha256: table.head_sha256.to_string(),
+        lists: table.lists.iter().map(ToString::to_string).collect(),
         records: table.records.iter().map(record).collect(),
     };
     records.tables.iter().map(table).collect()
@@ -102,6 +103,7 @@ pub fn records_of(seal: &Seal) -> (Records, BTreeSet<Arc<str>>) {
             dataset: table.dataset.as_str().into(),
             head: head.content,
             head_sha256: head.sha256,
+            lists: table.lists.iter().map(|list| list.as_str().into()).collect(),
             records: table.records.iter().map(|one| Record::from_text(&one.list, &one.id, &one.content)).collect(),
         }
     };

@@ -5,6 +5,8 @@ use std::collections::BTreeSet;
 use crate::notebook::seal::{Argument, InputOf, Made, Seal, SealedInput, SealedStep, SealedValue};
 use crate::notebook::skeleton::Skeleton;
 use crate::quantity::Quantity;
+use crate::quantity::round::shortest;
+use crate::units;
 
 /// Two derivations, walked side by side.
 struct Walk<'a> {
@@ -111,10 +113,19 @@ fn words(then: &SealedStep, now: &SealedStep) -> String {
     let place = place.map_or_else(String::new, |place| format!("{}, line {}: ", place.0, place.1));
     let (was, is) = (made_words(then), made_words(now));
     if was == is {
-        format!("{place}{is}: {} then, {} now, in {}", then.si, now.si, now.unit)
+        let (then, now) = (in_trade_unit(then), in_trade_unit(now));
+        format!("{place}{is}: {then} then, {now} now")
     } else {
         format!("{place}{was} then, {is} now")
     }
+}
+
+/// The value of a step with its unit, as people write it.
+fn in_trade_unit(step: &SealedStep) -> String {
+    let read = step.si.parse::<f64>().ok().zip(units::parse::unit(&step.unit).ok());
+    let Some((si, unit)) = read else { return format!("{} {}", step.si, step.unit) };
+    let unit = units::unit_for(&unit.dim);
+    format!("{} {}", shortest(unit.from_si(si)), units::reader_text(&unit)).trim_end().to_owned()
 }
 
 /// How a step was made, in words.

@@ -280,6 +280,8 @@ pub struct SealedTable {
     /// What the table says of all its records: JSON in a text.
     pub head: String,
     pub head_sha256: String,
+    /// Names of its lists; a list may have no records here.
+    pub lists: Vec<String>,
     pub records: Vec<SealedRecord>,
 }
 

@@ -213,6 +213,7 @@ pub struct Move {
     pub remainder_shown: String,
     /// Standard uncertainty that the revised inputs stated, as it reaches the value; none where one states none.
     pub u_of_changed: Option<String>,
+    pub u_of_changed_shown: Option<String>,
     /// The first step at which the derivation parts from the sealed one.
     pub parts_at: Option<String>,
 }

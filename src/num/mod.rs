@@ -1,7 +1,9 @@
 //! Plain numerics, with no nouns of the field.
 
 pub mod cholesky;
+pub mod lsq;
 pub mod math;
+pub mod pchip;
 pub mod powers;
 pub mod random;
 pub mod rational;

@@ -12,6 +12,7 @@ pub mod curve;
 pub mod cycle;
 pub mod dataset;
 pub mod derivation;
+pub mod fit;
 pub mod gap;
 pub mod headline;
 pub mod html;
@@ -58,6 +59,9 @@ pub fn reaction(reaction: &Reaction) -> Bundle {
 
 /// What is known of a substance, in one line.
 pub fn substance(substance: &PureSubstance) -> Bundle {
+    if let Some(fit) = substance.thermo().and_then(|own| own.fit()) {
+        return fit::bundle(fit);
+    }
     let record = substance.record();
     let name = record.name.as_ref().map_or_else(String::new, |name| format!(", {name}"));
     let range = match &record.function {

@@ -52,7 +52,7 @@ impl Explain for FileError {
             FileError::Outside { .. } => "file-outside-folder",
             FileError::Extension { .. } => "file-extension",
             FileError::NotText { .. } => "file-not-text",
-            FileError::Write { .. } => "file-unwritable",
+            FileError::Write { .. } => "table-unwritable",
             FileError::NotACurve { .. } => "file-of-no-curve",
             FileError::Grids { .. } => "file-of-two-grids",
             FileError::SameName { .. } => "file-column-twice",

@@ -15,6 +15,7 @@ import warnings
 from fractions import Fraction
 
 import mpmath
+import numpy as np
 import pint
 import pytest
 from jupyter_client.kernelspec import get_kernel_spec
@@ -366,3 +367,65 @@ def test_reaction_properties_are_those_of_the_tables_in_many_digits(tmp_path, ma
         if not off <= 1:
             misses.append((float(off), f"{label}: {report['value']} here, {mpmath.nstr(value, 17)} there, {unit}"))
     assert not misses, listed(misses, len(cases))
+
+
+# Molecules --------------------------------------------------------------------------------------------------------------
+
+# Weights of even and odd J of the two hydrogens with forms, from their nuclear spins of 1/2 and 1.
+FORMS = {"H2": (1, 3), "D2": (2, 1)}
+C2 = 1.4387768775039338  # K cm, of the SI of 2019
+R = 8.31446261815324
+
+
+def forms_of_hydrogen(record, weights, t_k, frozen):
+    """Cp and S of rotation and vibration over R, by the sum over v and J in full, from the shipped constants."""
+    we, wexe, be, alpha = (float(record[name]) for name in ("we", "wexe", "Be", "alpha_e"))
+    de = 4 * be**3 / we**2  # Kratzer's relation
+    he = 2 * de * (12 * be**2 - alpha * we) / (3 * we**2)
+    v, j = np.meshgrid(np.arange(40.0), np.arange(80.0), indexing="ij")
+    jj = j * (j + 1)
+    e = we * (v + 0.5) - wexe * (v + 0.5) ** 2 + (be - alpha * (v + 0.5)) * jj - de * jj**2 + he * jj**3
+    lowest = e[0, 0]
+    # Up to 1000 K nothing counts beyond 30 kT, far below where either ladder turns.
+    kept = (e - lowest < 0.8 * (we**2 / 4 / wexe - lowest)) & (np.diff(e, axis=1, prepend=-np.inf) > 0)
+    kept &= np.diff(e, axis=0, prepend=-np.inf) > 0
+    kept = np.logical_and.accumulate(kept, axis=1)
+
+    def of(level, weight):
+        x = C2 * (level - level.min()) / t_k
+        p = weight * np.exp(-x)
+        q = p.sum()
+        mean = (p * x).sum() / q
+        return (p * x * x).sum() / q - mean**2, np.log(q) + mean
+
+    even, odd = (weight / sum(weights) for weight in weights)
+    if not frozen:
+        weight = (2 * j + 1) * np.where(j % 2 == 0, even, odd)
+        return of(e[kept], weight[kept])
+    parts = [of(e[kept & (j % 2 == parity)], (2 * j + 1)[kept & (j % 2 == parity)]) for parity in (0, 1)]
+    return tuple(even * a + odd * b for a, b in zip(*parts))
+
+
+def test_hydrogen_in_the_cold_is_the_sum_over_its_levels(tmp_path):
+    table = json.loads((DATA / "molecular-constants.json").read_text(encoding="utf8"))
+    records = {record["formula"]: record for record in table["records"]}
+    cases = [(name, t_k, spin) for name in FORMS for t_k in (5, 20, 50, 77, 100, 150, 298.15, 1000)
+             for spin in ("equilibrium", "frozen")]  # fmt: skip
+    lines = [
+        f'print([m.heat_capacity("{t_k} K").value("J/(mol K)"), m.entropy("{t_k} K").value("J/(mol K)")]);'
+        for _, t_k, _ in cases
+    ]
+    made = [f'm = molecule("{name}").taken(#{{ nuclear_spin: "{spin}" }});' for name, _, spin in cases]
+    script = 'let m = molecule("H2");\n' + "\n".join(a + b for a, b in zip(made, lines))
+    told = [json.loads(line) for line in ran(script, tmp_path).splitlines() if line.startswith("[")]
+    misses = []
+    for (name, t_k, spin), (cp, s) in zip(cases, told, strict=True):
+        rotation = forms_of_hydrogen(records[name], FORMS[name], t_k, spin == "frozen")
+        mass = 1e-3 * {"H2": 2 * 1.0080, "D2": float(records["D2"]["isotopologue_mass"])}[name] / 6.02214076e23
+        k, h = 1.380649e-23, 6.62607015e-34
+        moved = 2.5 + 1.5 * np.log(2 * np.pi * mass * k * t_k / h**2) + np.log(k * t_k / 1e5)
+        # Bound: rounding of sums of a few hundred terms, and what both cut off at 1000 K, 1e-12 of the weight.
+        for what, got, want in (("Cp", cp, R * (2.5 + rotation[0])), ("S", s, R * (moved + rotation[1]))):
+            if abs(got - want) > 1e-8:
+                misses.append((abs(got - want), f"{what} of {name}, {spin}, at {t_k} K: {got}, {want}"))
+    assert not misses, listed(misses, 2 * len(cases))

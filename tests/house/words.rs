@@ -70,27 +70,28 @@ fn has_machine_path(text: &str, root: &str) -> bool {
     })
 }
 
+/// The members of a table that hold records.
+const LISTS: [&str; 5] = ["records", "critical_constants", "second_virial", "condensed_volumes", "vapour_pressures"];
+
 /// Records of a shipped table that do not say where they were printed, and sources that are programs.
 pub fn unsourced(path: &str, table: &Value) -> Vec<String> {
     let mut found = Vec::new();
     let said = |value: &Value| value.as_str().is_some_and(|text| !text.trim().is_empty());
     let editions = &table["editions"];
-    match table["records"].as_array() {
-        Some(records) => {
-            for (nth, record) in records.iter().enumerate() {
-                // A table may give the sources once, by edition.
-                let edition = editions.get(record["edition"].to_string());
-                if !said(&record["source"]) && !edition.is_some_and(said) {
-                    let name = record["id"]
-                        .as_str()
-                        .or(record["symbol"].as_str())
-                        .map_or(format!("record {}", nth + 1), str::to_owned);
-                    found.push(format!("{path}: {name} has no source"));
-                }
-            }
+    let lists: Vec<&Vec<Value>> = LISTS.iter().filter_map(|list| table[*list].as_array()).collect();
+    if lists.is_empty() && !said(&table["source"]) {
+        found.push(format!("{path}: neither records nor a source"));
+    }
+    for (nth, record) in lists.into_iter().flat_map(|records| records.iter().enumerate()) {
+        // A table may give the sources once, by edition.
+        let edition = editions.get(record["edition"].to_string());
+        if !said(&record["source"]) && !edition.is_some_and(said) {
+            let name = record["id"]
+                .as_str()
+                .or(record["symbol"].as_str())
+                .map_or(format!("record {}", nth + 1), str::to_owned);
+            found.push(format!("{path}: {name} has no source"));
         }
-        None if !said(&table["source"]) => found.push(format!("{path}: neither records nor a source")),
-        None => {}
     }
     if let Some(dataset) = table.get("dataset") {
         for member in ["publication", "terms"] {

@@ -118,3 +118,35 @@ fn arithmetic_of_curves_is_that_of_their_rows() {
         Ok(())
     });
 }
+
+#[test]
+fn joins_changes_of_phase_and_the_reference_temperature_are_rows_like_others() {
+    let desk = Desk::new();
+    // Where functions join, at 1000 K; where copper melts, at 1358 K; and 298.15 K, where nothing is added.
+    let temperatures = ["250 K", "298.15 K", "999.9 K", "1000 K", "1000.1 K", "1357 K", "1358 K", "1359 K", "1800 K"];
+    let shift = ("CO(g) + H2O(g) -> CO2(g) + H2(g)", &temperatures[..]);
+    let copper = ("Cu(cr) -> Cu(g)", &temperatures[..]);
+    let water = ("H2(g) + 1/2 O2(g) -> H2O(l)", &["280 K", "298.15 K", "373.15 K", "373.151 K", "500 K"][..]);
+    let ions = ("H2O(l) -> H+(aq) + OH-(aq)", &["298.15 K", "298.16 K"][..]);
+    for (equation, temperatures) in [shift, copper, water, ions] {
+        let list = Value::List(temperatures.iter().map(|t| Value::Text((*t).into())).collect());
+        let Value::Grid(grid) = card::call(&desk.cx(), &hessbook::model::grid::GRID_OF, vec![list]).unwrap() else {
+            panic!("a list of temperatures is a grid");
+        };
+        for property in PROPERTIES {
+            let reaction = card::call(&desk.cx(), &REACTION, vec![Value::Text(equation.into())]).unwrap();
+            let singles: Result<Vec<Quantity>, _> =
+                temperatures.iter().map(|t| desk.ask(property, equation, t, &[])).collect();
+            match (card::call(&desk.cx(), property, vec![reaction, Value::Grid(Rc::clone(&grid))]), singles) {
+                (Ok(Value::Curve(curve)), Ok(singles)) => {
+                    for (row, single) in singles.iter().enumerate() {
+                        let (number, single) = (curve.numbers()[row].to_bits(), single.si().to_bits());
+                        assert_eq!(number, single, "{} of {equation} at {}", property.id, temperatures[row]);
+                    }
+                }
+                (Err(curve), Err(single)) => assert_eq!(curve.code(), single.code(), "{} of {equation}", property.id),
+                _ => panic!("{} of {equation}: the curve and its rows disagree on whether there is one", property.id),
+            }
+        }
+    }
+}

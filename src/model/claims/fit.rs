@@ -1,6 +1,6 @@
 //! How good the heat capacity functions are.
 
-use super::asked;
+use super::{asked, measured};
 use crate::model::card::{Call, Cx};
 use crate::model::function::{self, T_REFERENCE};
 use crate::model::path::Route;
@@ -57,6 +57,7 @@ pub fn fit_quality(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
         let price = if h.abs() + t_k * s.abs() < ROUNDING { 0.0 } else { price(h, s) };
         findings.push(at_t(format!("joins of {}", jumped.join(", ")), Tested::Given { price, how }));
     }
+    findings.extend(measured::fits(cx, call, value));
     findings
 }
 

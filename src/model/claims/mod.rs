@@ -9,9 +9,10 @@ mod fit;
 mod formation;
 mod heat_capacity;
 mod independence;
+mod measured;
 mod phase;
-mod vaporisation;
-mod volume;
+mod pressure;
+mod saturation;
 
 pub use alternatives::{
     with_atmosphere, with_constant_heat_capacity, with_enthalpy, with_internal_energy, with_mean_heat_capacity,
@@ -25,8 +26,10 @@ pub use heat_capacity::{aqueous_heat_capacity, constant_heat_capacity};
 pub use independence::worst_correlation;
 pub use phase::stable_phase;
 pub(in crate::model) use phase::{RESOLUTION_CONDENSED, RESOLUTION_GAS};
-pub use vaporisation::vapour_of_records;
-pub use volume::{condensed_volume, ideal_gas};
+pub use pressure::{
+    condensed_volume, constant_expansivity, ideal_gas, pressure_neglected, second_virial, standard_pressure, unmixed,
+};
+pub use saturation::{saturated_leg, saturated_vapour, saturated_virial};
 
 use std::rc::Rc;
 

@@ -1,4 +1,4 @@
-//! Whether each species is in the phase that is stable at T and 1 bar.
+//! Whether each species is in the phase that is stable at T and its pressure.
 //!
 //! The surprise: it is judged by Gibbs energies of the shipped phases of the same composition, not by the range of the
 //! record, since a record may run on far beyond where its phase is the stable one.
@@ -10,16 +10,19 @@ use super::{Asked, asked, asked_anew};
 use crate::chem::species::State as Aggregate;
 use crate::data::critical::CriticalTemperature;
 use crate::data::dataset::DatasetId;
+use crate::data::function::Function;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Call, Cx, Value};
 use crate::model::function;
 use crate::model::gather;
+use crate::model::given::Given;
 use crate::model::path;
+use crate::model::pressure::{self, Condensed, Matter};
 use crate::model::property::{self, Property};
 use crate::model::substance::PureSubstance;
 use crate::model::terms::Terms;
-use crate::quantity::Quantity;
+use crate::quantity::{Quantity, round};
 use crate::record::register::{Finding, Tested};
 use crate::units::constants::STANDARD_PRESSURE;
 
@@ -31,7 +34,7 @@ pub(in crate::model) const RESOLUTION_CONDENSED: f64 = 1.0;
 /// to 13 % at 298.15 K (ethanol, against the Antoine equation of Poling, Prausnitz, O'Connell, 5th ed.), RT ln 1.13.
 pub(in crate::model) const RESOLUTION_GAS: f64 = 300.0;
 
-/// `stable-phase`: each species against the other shipped phases of its composition, by Gibbs energy at T and 1 bar; a gas
+/// `stable-phase`: each species against the other shipped phases of its composition, by Gibbs energy at T and p; a gas
 /// above its critical temperature has no liquid to be compared with. Where changes of phase were inserted on the way to T,
 /// they are named, and the phase that stands at T is the one compared.
 pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
@@ -56,7 +59,7 @@ pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
             continue;
         }
         let there = route.map_or(&term.substance, |route| &route.last().substance);
-        match compared(cx, there, asked.t_k) {
+        match compared(cx, there, asked.t_k, pressure_of(&asked, there)) {
             Compared::NothingToCompare => {
                 alone.push(id);
                 what.extend(passed);
@@ -79,7 +82,8 @@ pub fn stable_phase(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
     if !settled.is_empty() {
         if !stable.is_empty() {
             let names = stable.join(", ");
-            how.push(format!("{names}: lowest Gibbs energy of the shipped phases at {} K and 1 bar", asked.t_k));
+            let at = pressure_in_words(&asked);
+            how.push(format!("{names}: lowest Gibbs energy of the shipped phases at {} K and {at}", asked.t_k));
         }
         if !supercritical.is_empty() {
             how.push(format!("{}: above the critical temperature, so no liquid", supercritical.join(", ")));
@@ -110,17 +114,41 @@ enum Compared {
     Unstable(Arc<Substance>),
 }
 
-fn compared(cx: &Cx, substance: &Substance, t_k: f64) -> Compared {
+/// The pressure of a species, Pa.
+fn pressure_of(asked: &Asked, substance: &Substance) -> f64 {
+    asked.method.given.as_ref().map_or(STANDARD_PRESSURE.value, |given| given.pressure_of(&substance.species).0)
+}
+
+fn pressure_in_words(asked: &Asked) -> String {
+    match asked.method.given.as_ref().map_or(Some(STANDARD_PRESSURE.value), Given::common) {
+        Some(p_pa) => format!("{} bar", round::shortest(p_pa / 1e5)),
+        None => "its partial pressure".to_owned(),
+    }
+}
+
+/// The Gibbs energy of a phase by its function, at its pressure: a gas as ideal, a condensed phase by its volume where that is
+/// on record.
+fn gibbs(cx: &Cx, substance: &Substance, function: &Function, t_k: f64, p_pa: f64) -> f64 {
+    let matter = match (&substance.pressure.volume, substance.species.is_gas()) {
+        (_, true) => Matter::IdealGas,
+        (Some(volume), _) => Matter::Condensed(Condensed::of(volume)),
+        (None, _) => Matter::Untouched,
+    };
+    let departure = pressure::departure(Property::G, &matter, t_k, p_pa, cx.constants().molar_gas.value);
+    function::evaluate(function, t_k).g(t_k) + departure.si
+}
+
+fn compared(cx: &Cx, substance: &Substance, t_k: f64, p_pa: f64) -> Compared {
     let comparable = |substance: &Substance| {
         substance.function.clone().filter(|function| function.covers(t_k) && function.has_gibbs_energy())
     };
     let Some(own) = comparable(substance) else { return Compared::NothingToCompare };
-    let g_own = function::evaluate(&own, t_k).g(t_k);
+    let g_own = gibbs(cx, substance, &own, t_k, p_pa);
     let mut compared = Compared::NothingToCompare;
     let mut lowest = g_own;
     for other in cx.data().phases_of(substance) {
         let Some(function) = comparable(&other) else { continue };
-        let g = function::evaluate(&function, t_k).g(t_k);
+        let g = gibbs(cx, &other, &function, t_k, p_pa);
         let gas = other.species.is_gas() || substance.species.is_gas();
         let resolution = if gas { RESOLUTION_GAS } else { RESOLUTION_CONDENSED };
         if g < lowest.min(g_own - resolution) {
@@ -130,7 +158,7 @@ fn compared(cx: &Cx, substance: &Substance, t_k: f64) -> Compared {
             compared = Compared::Stable;
         }
     }
-    match (&compared, &substance.critical_temperature) {
+    match (&compared, &substance.pressure.critical) {
         (Compared::NothingToCompare, Some(critical)) if t_k > critical.t_k => {
             Compared::Supercritical(Arc::clone(critical))
         }
@@ -148,14 +176,20 @@ fn unstable(
     passed: Option<String>,
 ) -> Tested {
     let t_k = asked.t_k;
-    let g = |substance: &Substance| substance.function.as_ref().map_or(f64::NAN, |f| function::evaluate(f, t_k).g(t_k));
+    let p_pa = pressure_of(asked, there);
+    let g = |substance: &Substance| {
+        substance.function.as_ref().map_or(f64::NAN, |function| gibbs(cx, substance, function, t_k, p_pa))
+    };
     let lower = (g(there) - g(stable)) / 1000.0;
-    let conventional =
-        if written.species.is_gas() { ", or justify it where a gas at 1 bar is meant by convention" } else { "" };
+    let conventional = if written.species.is_gas() && asked.method.given.is_none() {
+        ", or justify it where a gas at 1 bar is meant by convention"
+    } else {
+        ""
+    };
     let passed = passed.map_or_else(String::new, |passed| format!("{passed}; "));
     let why = format!(
         "{passed}at {t_k} K and {} bar {} has the lower Gibbs energy, by {lower:.1} kJ/mol; write that phase if it is meant{conventional}",
-        STANDARD_PRESSURE.value / 1e5,
+        round::shortest(p_pa / 1e5),
         stable.species.id
     );
     let value = in_phase(cx, call, written, stable).and_then(|call| asked_anew(cx, call)).ok();

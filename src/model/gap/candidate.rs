@@ -25,6 +25,7 @@ pub enum Mistake {
     Dataset,
     MixedDatasets,
     HeatCapacity,
+    PhaseChange,
 }
 
 impl Mistake {
@@ -47,6 +48,7 @@ impl Mistake {
             Mistake::Dataset => "formation-dataset",
             Mistake::MixedDatasets => "datasets-mixed",
             Mistake::HeatCapacity => "heat-capacity-shortcut",
+            Mistake::PhaseChange => "phase-change-missed",
         }
     }
 }

@@ -12,6 +12,7 @@ use crate::data::substance::Substance;
 use crate::model::card::{Call, Cx};
 use crate::model::gap::candidate::{Candidate, Mistake, Scale};
 use crate::model::gather::{self, Contribution, Figure, Method};
+use crate::model::path::{self, Route};
 use crate::model::property::{self, Property};
 use crate::model::terms::Terms;
 use crate::quantity::{Quantity, text};
@@ -80,14 +81,11 @@ impl<'a> Case<'a> {
 
     /// A property from other contributions.
     pub fn evaluated(&self, property: Property, contributions: &[Contribution], delta_n: f64) -> Option<f64> {
+        let at = property::at_pressure(self.terms, self.t_k, &self.method, self.cx).ok()?;
+        let made = property::evaluate(property, contributions, &at, self.terms, self.t_k, self.r()).ok()?;
         // The gas term is taken with the Δn(gas) of the alternative, which the terms as written do not know.
-        let (without, gas_term) = match property {
-            Property::U => (Property::H, delta_n * self.r() * self.t_k),
-            Property::A => (Property::G, delta_n * self.r() * self.t_k),
-            other => (other, 0.0),
-        };
-        let made = property::evaluate(without, contributions, self.terms, self.t_k, self.r()).ok()?;
-        Some(made.si - gas_term)
+        let more = delta_n - self.delta_n();
+        Some(if property.uses_gas_law() { made.si - more * self.r() * self.t_k } else { made.si })
     }
 
     /// The property with one species' contribution changed.
@@ -104,6 +102,12 @@ impl<'a> Case<'a> {
 
     pub fn substance(&self, at: usize) -> &Substance {
         &self.terms.terms()[at].substance
+    }
+
+    /// The way of a species to T, where it changes phase.
+    pub fn route(&self, at: usize) -> Option<Route> {
+        let crossings = path::crossings(self.terms, self.t_k, self.cx.data());
+        crossings.into_iter().find(|(of, _)| *of == at).map(|(_, route)| route)
     }
 
     /// Adds a mistake by what the property would have been with it.

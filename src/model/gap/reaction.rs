@@ -136,6 +136,12 @@ fn heat_capacity(case: &Case, out: &mut Vec<Candidate>) {
         let method = Method { heat_capacity: mode, ..case.method.clone() };
         case.push(out, Mistake::HeatCapacity, words.to_owned(), case.number(case.t_k, &method), sources.clone());
     }
+    if (0..case.contributions.len()).any(|at| case.route(at).is_some()) {
+        let method = Method { heat_capacity: HeatCapacity::Missed, ..case.method.clone() };
+        let words =
+            "the changes of phase on the way to T were left out, and Cp of the phases as written held on".to_owned();
+        case.push(out, Mistake::PhaseChange, words, case.number(case.t_k, &method), sources.clone());
+    }
     let words = "the value at 298.15 K was taken for the value at T".to_owned();
     case.push(out, Mistake::HeatCapacity, words, case.number(T_REFERENCE, &case.method), sources);
 }

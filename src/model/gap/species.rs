@@ -14,6 +14,7 @@ use crate::source::Citation;
 pub fn candidates(case: &Case, out: &mut Vec<Candidate>, left_out: &mut Vec<String>) {
     for at in 0..case.contributions.len() {
         phases(case, at, out);
+        phase_changes(case, at, out);
         if case.terms.is_reaction() {
             coefficient(case, at, out);
         }
@@ -62,6 +63,21 @@ fn phases(case: &Case, at: usize, out: &mut Vec<Candidate>) {
             case.push(out, mistake(&other), format!("{words}, altogether"), with, sources);
         }
     }
+}
+
+/// The heats of the changes of phase on the way to T left out, with the heat capacities of all phases taken.
+fn phase_changes(case: &Case, at: usize, out: &mut Vec<Candidate>) {
+    let Some(route) = case.route(at) else { return };
+    let (id, nu) = (case.substance(at).id(), case.contributions[at].nu);
+    let dh: f64 = route.changes().map(|transition| transition.dh).sum();
+    let ds: f64 = route.changes().map(|transition| transition.ds).sum();
+    let with = case.with(at, |contribution| {
+        contribution.increment.iter_mut().for_each(|figure| figure.si -= dh);
+        contribution.entropy.iter_mut().for_each(|figure| figure.si -= ds);
+    });
+    let words = format!("ΔtrsH of {id} was left out, {:.3} kJ/mol in all, ν = {nu}", dh / 1000.0);
+    let sources: Vec<Citation> = route.changes().map(|transition| transition.citation.clone()).collect();
+    case.push(out, Mistake::PhaseChange, words, with, sources);
 }
 
 /// ν off by one, dropped, doubled, or on the wrong side.

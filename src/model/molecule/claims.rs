@@ -77,7 +77,7 @@ pub fn harmonic(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
         (Motion::Polyatomic { vibrations, .. }, _) if vibrations.is_empty() => return Vec::new(),
         (Motion::Polyatomic { .. }, _) => published(cx, call).unwrap_or_else(|| Tested::Missing {
             what: format!(
-                "only fundamentals of {0} are known, no anharmonic constants, and no function of {0} that reaches here is \
+                "only wavenumbers of {0} are known, no anharmonic constants, and no function of {0} that reaches here is \
                  shipped",
                 molecule.text()
             ),
@@ -301,8 +301,10 @@ pub fn with_blended(cx: &Cx, call: &Call, _: &Quantity) -> Option<f64> {
 }
 
 /// What free torsions would have given.
-pub fn with_free_rotors(cx: &Cx, call: &Call, _: &Quantity) -> Option<f64> {
+pub fn with_free_rotors(cx: &Cx, call: &Call, value: &Quantity) -> Option<f64> {
     let Motion::Polyatomic { torsions, .. } = &molecule_of(call).definition().motion else { return None };
     let hindered = torsions.iter().any(|torsion| torsion.has_barrier());
-    hindered.then(|| alternative(cx, call, |treatment| treatment.torsion = TorsionAs::Free))?
+    let other = hindered.then(|| alternative(cx, call, |treatment| treatment.torsion = TorsionAs::Free))??;
+    // At the classical limit it is the same.
+    (other != value.si()).then_some(other)
 }

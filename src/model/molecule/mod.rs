@@ -163,7 +163,8 @@ impl Built {
                     let solved = torsion.torsion();
                     let part = if free { Rc::new(solved.free()) } else { Rc::clone(solved) };
                     let parameters = [std::slice::from_ref(&torsion.f), &torsion.cosines, &torsion.sines].concat();
-                    let name = if free { "free internal rotation" } else { "hindered internal rotation" };
+                    let kind = if free { "free torsion" } else { "torsion" };
+                    let name = format!("{kind}, F = {}", parameter::per_cm(torsion.f.value));
                     self.add(equipartition(Part::Torsion(part), treatment), name, parameters);
                 }
             }

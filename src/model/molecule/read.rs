@@ -11,6 +11,7 @@ use std::sync::Arc;
 use crate::chem::composition::Composition;
 use crate::chem::formula::Formula;
 use crate::chem::species::{Phase, Species, State};
+use crate::data::pressure::Constants;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Cx, Value, listed};
@@ -151,17 +152,21 @@ impl<'a> Reader<'a> {
             other => return Err(Reader::sort(key, "a quantity, as in \"667 cm^-1\"", other)),
         };
         let typed = !matches!(value, Value::Quantity(_));
-        let silent = read.node().input().is_some_and(|input| input.u.is_none());
         if read.dim().is_none() {
             let value = text::shown_plain(&read);
             return Err(MoleculeError::Unit { key: key.to_owned(), value }.into());
         }
-        // Of figures without a stated u a reader wants to know which list they are of, and not each of thirty.
-        if typed && silent {
-            let label = format!("{} of {}", key.replace('_', " "), self.called);
-            return Ok(read.with_input(|input| input.label = Some(label.into())));
-        }
-        Ok(read)
+        Ok(if typed { self.named(key, read) } else { read })
+    }
+
+    /// A typed figure under a name that says what it is of. Of figures without a stated u a reader wants to know which list they
+    /// are of, and not each of thirty.
+    fn named(&self, key: &str, read: Quantity) -> Quantity {
+        let what = format!("{} of {}", key.replace('_', " "), self.called);
+        read.with_input(|input| {
+            let written = input.label.take().filter(|_| input.u.is_some());
+            input.label = Some(written.map_or_else(|| what.clone(), |text| format!("{what}, {text}")).into());
+        })
     }
 
     /// A figure as a temperature; `sign` says what is refused.
@@ -272,6 +277,7 @@ impl<'a> Reader<'a> {
                 let value = text::shown_plain(&quantity);
                 return Err(MoleculeError::NotPositive { key: key.to_owned(), value }.into());
             }
+            let quantity = if matches!(value, Value::Quantity(_)) { quantity } else { self.named(key, quantity) };
             Ok(Some(Parameter::of(key, &quantity)))
         };
         Ok(Definition {
@@ -330,7 +336,7 @@ impl<'a> Reader<'a> {
 
     fn mass(&self, substance: &Substance) -> Result<Parameter, Fault> {
         let Some(given) = self.map.get("molar_mass") else {
-            return mass::of_atoms(substance.species.entity, &substance.species.composition);
+            return mass::of_atoms(self.cx, substance.species.entity, &substance.species.composition);
         };
         let quantity = self.quantity("molar_mass", given)?;
         let wanted = unit_parse::unit("kg/mol")?.dim.without_basis();
@@ -590,7 +596,7 @@ fn made_up(base: &str, composition: &Composition, charge: i32) -> Substance {
         name: None,
         cas: None,
         function: None,
-        critical_temperature: None,
+        pressure: Constants::default(),
         formations: Vec::new(),
     }
 }

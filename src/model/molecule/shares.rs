@@ -57,7 +57,7 @@ pub struct Shares {
 }
 
 /// Points of each curve.
-const POINTS: usize = 60;
+const POINTS: usize = 100;
 
 impl Shares {
     fn of(cx: &Cx, molecule: &Molecule, t_k: f64) -> Result<Shares, Fault> {

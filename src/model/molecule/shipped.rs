@@ -105,7 +105,7 @@ fn definition(cx: &Cx, substance: Arc<Substance>, record: &Constants) -> Result<
             Ok((energy, f64::from(*g)))
         })
         .collect::<Result<_, Fault>>()?;
-    let mass = match (mass::of_atoms(substance.species.entity, &substance.species.composition), heavy) {
+    let mass = match (mass::of_atoms(cx, substance.species.entity, &substance.species.composition), heavy) {
         // Deuterium has no standard atomic weight; the record has the mass of the isotopologue.
         (Err(_), Some(own)) => isotopologue_mass(record, own)?,
         (mass, _) => mass?,

@@ -32,7 +32,7 @@ pub struct HeatBalance {
     pub duty: Quantity,
     pub feeds: Vec<StreamRow>,
     pub products: Vec<StreamRow>,
-    /// What leaves, where it follows from reactions.
+    /// What leaves, where it follows from what is fed and reacts.
     pub outlet: Option<Rc<Stream>>,
     /// Feeds brought to 298.15 K, reaction there, products brought to their temperatures; J or W.
     pub legs: [f64; 3],
@@ -118,8 +118,6 @@ pub static HEAT_BALANCE: Card = Card {
     caution: Some(Caution::HeatDuty),
 };
 
-/// What leaves, by which the name of the outlet is known.
-const OUTLET: &str = "outlet";
 /// Typed flows have some six digits, and their sums are no better.
 const CLOSURE: f64 = 1e-6;
 
@@ -170,7 +168,8 @@ impl Contents {
     pub fn outlet(&self, t: &Quantity) -> Stream {
         let there = |portion: &&Portion| portion.amount.si > 0.0;
         let portions = self.after.iter().filter(there).cloned().collect();
-        Stream { name: OUTLET.into(), t: t.clone(), portions, per_time: self.per_time }
+        let name = if self.progress.is_empty() { "mixed" } else { "outlet" };
+        Stream { name: name.into(), t: t.clone(), portions, per_time: self.per_time }
     }
 }
 
@@ -188,7 +187,8 @@ pub fn duty(cx: &Cx, call: &Rc<Call>, case: &Case, method: &Method) -> Result<Qu
     let mut tally = Tally::new(Energy::H, method, cx);
     for product in &case.products {
         // What was used up whole still has its share in the derivatives, and none in the outlet's list.
-        let leaving = if case.contents.progress.is_empty() { &product.portions } else { &case.contents.after };
+        let reacted = !case.contents.progress.is_empty();
+        let leaving = if reacted { &case.contents.after } else { &product.portions };
         tally.add(1.0, leaving, product.t.si(), Some(&product.t))?;
     }
     for feed in &case.contents.feeds {
@@ -223,7 +223,7 @@ fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
         Ok(rows)
     };
     let (feeds, products) = (table(&case.contents.feeds, -1.0)?, table(&case.products, 1.0)?);
-    let outlet = (!case.contents.progress.is_empty()).then(|| Rc::clone(&case.products[0]));
+    let outlet = contents::streams(call, "products").is_empty().then(|| Rc::clone(&case.products[0]));
     let per_time = case.contents.per_time;
     Ok(Value::Answer(Answer::HeatBalance(Rc::new(HeatBalance { duty, feeds, products, outlet, legs, per_time }))))
 }

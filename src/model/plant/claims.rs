@@ -302,7 +302,8 @@ pub fn no_heat_loss(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
         }
         _ => no_estimate(),
     };
-    vec![Finding::known("no-heat-loss", "the contents", value.node(), None, tested)]
+    let names = asked.contents().feeds.iter().map(|feed| feed.name.to_string()).collect::<Vec<_>>().join(", ");
+    vec![Finding::known("no-heat-loss", names, value.node(), None, tested)]
 }
 
 fn no_estimate() -> Tested {
@@ -325,7 +326,9 @@ pub fn constant_heat_capacity(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Fin
     let Ok(asked) = Asked::of(cx, call) else { return Vec::new() };
     let contents = asked.contents();
     let integrated = || -> Result<Rc<Node>, Fault> {
-        let end = adiabatic::temperature(cx, &asked.call, contents, &contents.method, None)?;
+        // The end is a step of its own card, since it is a temperature and not a rise.
+        let as_point = Rc::new(Call { card: &ADIABATIC_TEMPERATURE, args: asked.call.args.clone() });
+        let end = adiabatic::temperature(cx, &as_point, contents, &contents.method, None)?;
         let rise = end.minus(rise::start(contents)?, None)?;
         Ok(Rc::clone(rise.node()))
     };
@@ -425,7 +428,7 @@ enum Phase {
 fn phase(cx: &Cx, portion: &Portion, t_k: f64, p: f64, partial: f64) -> Phase {
     let substance = &portion.term.substance;
     let is_gas = substance.species.is_gas();
-    let above = substance.critical_temperature.as_ref().is_some_and(|critical| t_k > critical.t_k);
+    let above = substance.pressure.critical.as_ref().is_some_and(|critical| t_k > critical.t_k);
     let Some(own) = substance.function.as_ref().filter(|function| function.covers(t_k)) else { return Phase::Alone };
     let rt = cx.constants().molar_gas.value * t_k;
     let at = |g: f64, gas: bool, p: f64| if gas { g + rt * math::ln(p) } else { g };

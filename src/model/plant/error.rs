@@ -101,7 +101,7 @@ impl Explain for PlantError {
             PlantError::SeveralTemperatures { .. } => "batch-of-several-temperatures",
             PlantError::FlowAtConstantVolume { .. } => "flow-at-constant-volume",
             PlantError::HeatLoss { .. } => "heat-loss-unit",
-            PlantError::Pressure { .. } => "pressure-not-positive",
+            PlantError::Pressure { .. } => "balance-pressure-not-positive",
             PlantError::NotARise { .. } => "not-a-temperature-rise",
             PlantError::CapacityNotPositive { .. } => "heat-capacity-not-positive",
             PlantError::Closure { .. } => "closure-out-of-range",

@@ -1,12 +1,14 @@
 //! A diatomic molecule by the direct sum over its levels, vibration and rotation together.
 //!
-//! E(v, J) = ωe(v + ½) − ωexe(v + ½)² + [Be − αe(v + ½)] J(J + 1) − De J²(J + 1)²       counted from v = 0, J = 0
+//! E(v, J) = ωe(v + ½) − ωexe(v + ½)² + [Be − αe(v + ½)] J(J + 1) − De J²(J + 1)² + He J³(J + 1)³
+//! counted from v = 0, J = 0
 //!
 //! | symbol  | unit | meaning                                                                    |
 //! |---------|------|----------------------------------------------------------------------------|
 //! | ωe, ωexe | K   | harmonic wavenumber and first anharmonic constant, as temperatures         |
 //! | Be, αe  | K    | rotational constant at the minimum, and its fall with v                    |
 //! | De      | K    | centrifugal constant; where none is given 4Be³/ωe², after Kratzer          |
+//! | He      | K    | its correction, 2De(12Be² − αeωe)/(3ωe²): without it the ladder of H2 bends over at J = 25 |
 //!
 //! The sum ends at dissociation: at the v where the vibrational levels stop rising, at the energy ωe²/(4ωexe) of a Morse
 //! oscillator above the minimum, and at the J where the rotational ladder turns. A molecule of two like nuclei has its
@@ -35,10 +37,16 @@ impl Constants {
         self.de.unwrap_or(4.0 * self.be * self.be * self.be / (self.we * self.we))
     }
 
+    /// He
+    fn correction(&self) -> f64 {
+        2.0 * self.centrifugal() * (12.0 * self.be * self.be - self.alpha_e * self.we) / (3.0 * self.we * self.we)
+    }
+
     /// Energy from the minimum of the curve.
     fn term(&self, v: u32, j: u32) -> f64 {
         let (half, jj) = (f64::from(v) + 0.5, f64::from(j) * f64::from(j + 1));
-        self.we * half - self.wexe * half * half + (self.be - self.alpha_e * half) * jj - self.centrifugal() * jj * jj
+        self.we * half - self.wexe * half * half + (self.be - self.alpha_e * half) * jj
+            - jj * jj * (self.centrifugal() - jj * self.correction())
     }
 }
 
@@ -145,17 +153,25 @@ impl Diatomic {
 
     /// Derivatives with respect to ωe, ωexe, Be and αe, and De where it was given, per kelvin.
     pub fn changes(&self, t_k: f64) -> Vec<Change> {
-        let Constants { we, be, de, .. } = self.constants;
+        let Constants { we, be, alpha_e, de, .. } = self.constants;
+        let d = self.constants.centrifugal();
+        // De by ωe, Be and itself, which is Kratzer's where it was not given, and He by all four.
+        let (d_we, d_be) = if de.is_some() { (0.0, 0.0) } else { (-2.0 * d / we, 3.0 * d / be) };
+        let per_d = 2.0 * (12.0 * be * be - alpha_e * we) / (3.0 * we * we);
+        let h_we = per_d * d_we - 2.0 * d * alpha_e / (3.0 * we * we) - 2.0 * per_d * d / we;
+        let h_be = per_d * d_be + 16.0 * d * be / (we * we);
+        let h_alpha = -2.0 * d / (3.0 * we);
         let slopes = |level: &Rovibronic| {
             let (half, jj) = (f64::from(level.v) + 0.5, f64::from(level.j) * f64::from(level.j + 1));
-            // Kratzer's De moves with Be and ωe.
-            let (by_we, by_be) = match de {
-                Some(_) => (0.0, 0.0),
-                None => (8.0 * be * be * be / (we * we * we) * jj * jj, -12.0 * be * be / (we * we) * jj * jj),
-            };
-            let mut slopes = vec![half - 0.5 + by_we, 0.25 - half * half, jj + by_be, -half * jj];
+            let (squared, cubed) = (jj * jj, jj * jj * jj);
+            let mut slopes = vec![
+                half - 0.5 - d_we * squared + h_we * cubed,
+                0.25 - half * half,
+                jj - d_be * squared + h_be * cubed,
+                -half * jj + h_alpha * cubed,
+            ];
             if de.is_some() {
-                slopes.push(-jj * jj);
+                slopes.push(-squared + per_d * cubed);
             }
             slopes
         };

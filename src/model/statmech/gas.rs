@@ -59,6 +59,15 @@ impl Part {
         }
     }
 
+    /// Whether it is one or several oscillators, in whichever way they are taken.
+    pub fn is_vibration(&self) -> bool {
+        match self {
+            Part::Vibration { .. } => true,
+            Part::Equipartition(part) => part.is_vibration(),
+            _ => false,
+        }
+    }
+
     /// Cv/R where kT is far above the spacing of the levels. That of electronic levels is 0: there are few of them.
     pub fn limit(&self) -> f64 {
         match self {

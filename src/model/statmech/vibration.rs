@@ -46,10 +46,14 @@ pub fn oscillator_cv(x: f64) -> f64 {
     r * r * e
 }
 
-/// Adds Cv/R of `degeneracy` oscillators at each 1/T.
+/// Adds Cv/R of `degeneracy` oscillators at each 1/T. Written for vector instructions; 1 − e⁻ˣ leaves 1e-16/x of relative
+/// error, 1e-12 for a mode of 1 cm⁻¹ at 6000 K.
 pub fn add_oscillators(theta_k: f64, degeneracy: f64, inverse_t: &[f64], out: &mut [f64]) {
     for (out, inverse) in out.iter_mut().zip(inverse_t) {
-        *out += degeneracy * oscillator_cv(theta_k * inverse);
+        let x = theta_k * inverse;
+        let e = math::exp_of_negative(-x);
+        let r = x / (1.0 - e);
+        *out += degeneracy * (r * r * e);
     }
 }
 
@@ -134,6 +138,9 @@ mod tests {
                 assert!((a - b).abs() < 1e-10, "x = {x}: {a} {b}");
             }
             assert!((oscillator_cv(x) / closed.cv - 1.0).abs() < 1e-14);
+            let mut swept = [0.0];
+            add_oscillators(x, 2.0, &[1.0], &mut swept);
+            assert!((swept[0] / (2.0 * closed.cv) - 1.0).abs() < 1e-14, "x = {x}: {} {}", swept[0], closed.cv);
         }
     }
 
