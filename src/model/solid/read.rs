@@ -8,6 +8,7 @@ use std::sync::Arc;
 
 use crate::chem::formula::Formula;
 use crate::chem::species::{Phase, Species, State};
+use crate::data::pressure::Constants;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Cx, Value, listed};
@@ -104,7 +105,7 @@ impl Reader<'_> {
             name: None,
             cas: None,
             function: None,
-            critical_temperature: None,
+            pressure: Constants::default(),
             formations: Vec::new(),
         }))
     }
