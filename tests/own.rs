@@ -248,3 +248,36 @@ fn the_example_gives_the_text_that_stands_beside_these_tests() {
     assert!(done.status.success(), "{}", String::from_utf8_lossy(&done.stderr));
     assert_eq!(String::from_utf8(done.stdout).unwrap(), fs::read_to_string("tests/own-data.txt").unwrap());
 }
+
+#[test]
+fn the_command_checks_files_and_compares_datasets() {
+    let folder = tempfile::tempdir().unwrap();
+    let run = |args: &[&str]| {
+        let done = assert_cmd::Command::cargo_bin("hessbook").unwrap().arg("data").args(args).output().unwrap();
+        (done.status.code(), String::from_utf8(done.stdout).unwrap())
+    };
+    assert_eq!(run(&["check", "notebooks/plant.json"]), (Some(0), "0 findings\n".to_owned()));
+    assert_eq!(run(&["check"]), (Some(0), "0 findings\n".to_owned()));
+    // CODATA 1989 has -285.830 kJ/mol for liquid water.
+    let water = r#"{"id": "H2O(l)", "formation_enthalpy": "-258.83(4) kJ/mol", "source": "planted"}"#;
+    let planted = folder.path().join("planted.json");
+    fs::write(&planted, file(None, water, "")).unwrap();
+    let (status, text) = run(&["check", planted.to_str().unwrap()]);
+    assert_eq!(status, Some(1));
+    assert!(text.contains("likely: -285.83 kJ/mol, two digits having changed places"), "{text}");
+    // Water from 300 K on, invented: Cp = 75.0 throughout, so that H grows by 0.75 kJ/mol from row to row; one row has its
+    // last digits in the other order.
+    let table = folder.path().join("table.csv");
+    fs::write(
+        &table,
+        "T / K,Cp / (J/(K mol)),H / (kJ/mol)\n300,75.0,0.000\n310,75.0,0.750\n320,75.0,1.500\n330,75.0,2.520\n340,75.0,3.000\n350,75.0,3.750\n",
+    )
+    .unwrap();
+    let (status, text) = run(&["check", table.to_str().unwrap()]);
+    assert_eq!(status, Some(1));
+    assert!(text.contains("row at 330 K") && text.contains("likely: 2.250"), "{text}");
+    let (status, text) = run(&["compare", "atct-1.112", "codata-1989"]);
+    assert_eq!(status, Some(0));
+    assert!(text.contains("CO2(g)  ΔfH°  -393.474, u = "), "{text}");
+    assert!(run(&["show", "CO2(g)"]).1.contains("ΔfH°(298.15 K) = -393.474"), "show");
+}

@@ -8,6 +8,8 @@ mod asking;
 mod curves;
 #[path = "properties/functions.rs"]
 mod functions;
+#[path = "properties/pressure.rs"]
+mod pressure;
 #[path = "properties/prices.rs"]
 mod prices;
 #[path = "properties/quantities.rs"]

@@ -21,6 +21,8 @@ use hessbook::data::dataset::DatasetId;
 use hessbook::fault::Fault;
 use hessbook::model::card::{self, Card, Value};
 use hessbook::model::molecule::{read, shipped, table};
+use hessbook::model::reaction::REACTION;
+use hessbook::model::substance::SUBSTANCE;
 use hessbook::model::{CARDS, function};
 use hessbook::num::math;
 use hessbook::quantity::{Quantity, text};
@@ -69,6 +71,15 @@ enum What {
         less_at: Option<String>,
         #[serde(default)]
         figure: Figure,
+    },
+    /// A formula by its card, asked of a reaction, of a substance, or of nothing; with `less`, minus the same with other
+    /// arguments.
+    Formula {
+        card: String,
+        reaction: Option<String>,
+        on: Option<String>,
+        args: Vec<serde_json::Value>,
+        less: Option<Vec<serde_json::Value>>,
     },
     /// A property of one substance by its function, per mole of it.
     Function { species: String, property: FunctionOf, t: String, less_at: Option<String> },
@@ -248,6 +259,27 @@ fn one(desk: &Desk, row: &Row) -> Result<f64, Fault> {
             let less = less_at.as_ref().map_or(Ok(0.0), |t| at(t))?;
             Ok(at(t)? - less)
         }
+        What::Formula { card, reaction, on, args, less } => {
+            let asked = |args: &[serde_json::Value]| -> Result<f64, Fault> {
+                let receiver = match (reaction, on) {
+                    (Some(equation), _) => Some((&REACTION, equation)),
+                    (_, Some(species)) => Some((&SUBSTANCE, species)),
+                    _ => None,
+                };
+                let mut given = Vec::new();
+                if let Some((reader, text)) = receiver {
+                    given.push(card::call(&desk.cx(), reader, vec![Value::Text(text.as_str().into())])?);
+                }
+                given.extend(args.iter().map(argument));
+                let found = CARDS.iter().find(|one| one.id == card).unwrap_or_else(|| panic!("no card is {card}"));
+                match card::call(&desk.cx(), found, given)? {
+                    Value::Quantity(value) => figure_of(&value, Figure::Value, &row.unit),
+                    other => panic!("{card} gives {}", other.sort()),
+                }
+            };
+            let less = less.as_ref().map_or(Ok(0.0), |args| asked(args))?;
+            Ok(asked(args)? - less)
+        }
         What::Function { species, property, t, less_at } => {
             let at = |t: &str| {
                 let t_k = text::parse(t, None, 0)?.si();
@@ -279,6 +311,17 @@ fn one(desk: &Desk, row: &Row) -> Result<f64, Fault> {
         What::EveryTableB { .. } | What::EveryTransition | What::EveryPair { .. } | What::EveryEntropy { .. } => {
             unreachable!("not one row")
         }
+    }
+}
+
+/// An argument as a script would give it.
+fn argument(json: &serde_json::Value) -> Value {
+    match json {
+        serde_json::Value::String(text) => Value::Text(text.as_str().into()),
+        serde_json::Value::Object(map) => {
+            Value::Options(Rc::new(map.iter().map(|(name, value)| (name.clone(), argument(value))).collect()))
+        }
+        other => panic!("{other} is no argument"),
     }
 }
 

@@ -6,7 +6,7 @@
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
-use hessbook::data::records::{Record, Records, sha256};
+use hessbook::data::records::{Record, Records};
 use hessbook::notebook::audit::{AuditOptions, audit_one};
 use hessbook::notebook::audit_text;
 use hessbook::notebook::holdings::Holdings;
@@ -14,6 +14,7 @@ use hessbook::notebook::seal::{KEY, Seal};
 use hessbook::notebook::sealing::{Sealing, seal};
 use hessbook::notebook::verdict::{Against, AuditStatus, Cause, CauseKind, NotebookAudit, ValueAudit, Verdict};
 use hessbook::session::on_big_stack;
+use hessbook::source::sha256;
 use hessbook::units::constants;
 use serde_json::{Value, json};
 
@@ -44,7 +45,7 @@ impl Workshop {
         let workshop = Workshop::new();
         let cells: Vec<Value> = (cells.iter())
             .map(|source| {
-                json!({"cell_type": "code", "id": sha256(source)[..8], "metadata": {}, "source": source,
+                json!({"cell_type": "code", "id": sha256(source.as_bytes())[..8], "metadata": {}, "source": source,
                     "execution_count": null, "outputs": []})
             })
             .collect();
@@ -357,7 +358,8 @@ fn a_justification_lapses_where_its_price_grew_past_the_tolerance() {
     let workshop = Workshop::sealed(&[
         SHIFT,
         "report(\"short\", shift.enthalpy(\"450 degC\", #{ formation: \"codata-1989\" }));\n\
-         justify(\"formation-dataset\", \"short\", \"the design sheet uses CODATA\");",
+         justify(\"formation-dataset\", \"short\", \"the design sheet uses CODATA\");\n\
+         justify(\"independent-inputs\", \"short\", \"the table gives no coefficients\");",
     ]);
     // The value rests on CODATA; ATcT, its alternative, is revised, so the value stays and the price does not.
     let today = revised("formation properties of CO2(g) in atct-1.112", "-393.474", "-394.474");
@@ -459,7 +461,8 @@ fn a_figure_that_left_the_graph_as_a_bare_number_has_its_records_sealed_too() {
 
 #[test]
 fn a_molar_mass_runs_on_the_sealed_atomic_weights() {
-    let workshop = Workshop::sealed(&["report(\"M\", molar_mass(\"CH4\"))"]);
+    let workshop = Workshop::sealed(&["report(\"M\", molar_mass(\"CH4\"));
+         justify(\"independent-inputs\", \"M\", \"the table gives no coefficients\")"]);
     // Figures of the standard atomic weight of carbon: 12.011 and, invented for this test, 12.111.
     let today = revised("atomic weight of C", "12.011", "12.111");
     let audit = workshop.audit(&AuditOptions { today, ..AuditOptions::default() });
@@ -503,4 +506,154 @@ fn what_is_no_notebook_or_no_seal_costs_its_own_row_only() {
     workshop.edit(|tree| tree["metadata"][KEY]["format"] = json!("hessbook-seal/9"));
     let audit = workshop.audit(&AuditOptions::default());
     assert_eq!(audit.faults[0].fault.code, "seal-format");
+}
+
+#[test]
+fn values_are_derived_again_without_the_cells() {
+    let workshop = Workshop::sealed(&[
+        "let m = reaction(\"CO(g) + 3 H2(g) -> CH4(g) + H2O(g)\"); let t = q(\"430(2) degC\");",
+        "report(\"H\", m.enthalpy(t)); report(\"pV\", m.enthalpy(t) - m.internal_energy(t));\n\
+         justify(\"ideal-gas\", \"pV\", \"at 1 bar, for comparison\");\n\
+         report(\"K\", m.equilibrium_constant(t)); report(\"per kg\", m.enthalpy(t).per(\"CH4\").per_mass());\n\
+         report(\"mean\", mean(q(\"1.5(2) kJ\"), q(\"1.7(1) kJ\")) / 3 + q(\"2 kJ\"));",
+    ]);
+    // Nothing of the cells is left to run.
+    workshop.edit(|tree| tree["cells"].as_array_mut().unwrap().iter_mut().for_each(|cell| cell["source"] = json!("")));
+    let audit = workshop.audit(&AuditOptions { from_sources: true, ..AuditOptions::default() });
+    let derived = audit.from_sources.unwrap();
+    assert_eq!(derived.len(), 5);
+    for one in derived {
+        assert!(one.same && one.u_same == Some(true) && one.not_rederived.is_empty(), "{one:#?}");
+    }
+}
+
+#[test]
+fn a_step_that_was_sealed_wrong_is_found_without_the_cells() {
+    let workshop = Workshop::sealed(&[SHIFT, REPORTS]);
+    workshop.edit(|tree| {
+        // The figure and the step it ends at, both altered alike, as someone would who knows the seal.
+        let seal = &mut tree["metadata"][KEY];
+        let at: usize = seal["values"][0]["step"].as_str().unwrap().parse().unwrap();
+        seal["steps"][at]["si"] = json!("-38500");
+        seal["values"][0]["record"]["value"] = json!("-38.5");
+    });
+    let audit = workshop.audit(&AuditOptions { from_sources: true, ..AuditOptions::default() });
+    let derived = audit.from_sources.unwrap();
+    assert!(!derived[0].same && derived[0].parts_at.as_ref().unwrap().contains("enthalpy"), "{:#?}", derived[0]);
+    assert_eq!(audit.status, AuditStatus::Differs);
+}
+
+#[test]
+fn a_long_run_of_steps_is_named_as_not_derived_again() {
+    let workshop = Workshop::sealed(&[
+        "let sum = q(\"1.0(1) kJ\"); let step = q(\"0.01(1) kJ\"); for i in 0..6000 { sum = sum + step; }\n\
+         report(\"sum\", sum)",
+    ]);
+    let tree: Value = serde_json::from_slice(&std::fs::read(workshop.path()).unwrap()).unwrap();
+    assert!(tree["metadata"][KEY]["steps"].as_array().unwrap().len() <= 2000);
+    let audit = workshop.audit(&AuditOptions { from_sources: true, ..AuditOptions::default() });
+    assert_eq!(audit.status, AuditStatus::Same, "{}", audit_text::notebook(&audit));
+    let derived = audit.from_sources.unwrap();
+    assert!(!derived[0].not_rederived.is_empty(), "{derived:#?}");
+}
+
+#[test]
+fn a_signature_is_verified_and_says_whether_its_key_is_trusted() {
+    use hessbook::notebook::signature::{PrivateKey, TrustedKey, new_keys};
+    use hessbook::notebook::verdict::Signed;
+    let workshop = Workshop::sealed(&[SHIFT, REPORTS]);
+    let [own, other] = ["analyst", "other"].map(|name| workshop.folder.path().join(name));
+    let [own_public, other_public] = [&own, &other].map(|path| new_keys(path).unwrap());
+    assert_eq!(hessbook::fault::Fault::from(new_keys(&own).unwrap_err()).code(), "key-exists");
+    let key = Some(PrivateKey::read(&own).unwrap());
+    workshop.seal(&Sealing { key, date: "2026-12-02T00:00:00Z".to_owned(), ..Sealing::default() }).unwrap();
+    let signed = |trusted: &Path| {
+        let trusted = vec![TrustedKey::read(trusted).unwrap()];
+        let audit = workshop.audit(&AuditOptions { trusted, ..AuditOptions::default() });
+        (audit.seal.unwrap().signed, audit.status)
+    };
+    assert!(
+        matches!(signed(&own_public), (Signed::Valid { trusted: Some(name), .. }, AuditStatus::Same) if name == "analyst")
+    );
+    assert!(matches!(signed(&other_public), (Signed::Valid { trusted: None, .. }, AuditStatus::Same)));
+    // Someone alters the seal and makes its digest anew: only the signature tells.
+    workshop.edit(|tree| {
+        let seal = &mut tree["metadata"][KEY];
+        seal["author"] = json!("somebody else");
+        let mut altered: Seal = serde_json::from_value(seal.clone()).unwrap();
+        altered.digest = altered.digest_now();
+        *seal = serde_json::to_value(altered).unwrap();
+    });
+    assert!(matches!(signed(&own_public), (Signed::Invalid { .. }, AuditStatus::Differs)));
+}
+
+#[test]
+fn a_file_beside_the_notebook_is_sealed_with_its_content() {
+    let workshop = Workshop::new();
+    let file = workshop.folder.path().join("power.csv");
+    std::fs::write(&file, "t / s,P / W\n0,1.0\n1,2.0\n").unwrap();
+    let cells = json!([{"cell_type": "code", "id": "a", "metadata": {}, "execution_count": null, "outputs": [],
+        "source": "let n = read_csv(\"power.csv\").len();\nreport(\"rows\", n * q(\"1 kJ\"))"}]);
+    let tree = json!({"cells": cells, "metadata": {}, "nbformat": 4, "nbformat_minor": 5});
+    std::fs::write(workshop.path(), tree.to_string()).unwrap();
+    let seal = workshop.seal(&Sealing::default()).unwrap();
+    assert_eq!((seal.files.len(), seal.files[0].name.as_str()), (1, "power.csv"));
+    std::fs::write(&file, "t / s,P / W\n0,1.0\n1,2.0\n2,3.0\n").unwrap();
+    let audit = workshop.audit(&AuditOptions::default());
+    let rows = value(&audit, "rows");
+    assert_eq!(rows.under_sealed.verdict, Verdict::Identical);
+    let (by, causes) = move_of(&rows.under_today);
+    assert_eq!((by, causes.len(), causes[0].kind), (1.0, 1, CauseKind::Data));
+    assert!(causes[0].what.contains("power.csv"));
+}
+
+#[test]
+fn a_revision_tells_what_it_would_move_before_it_is_adopted() {
+    use hessbook::notebook::data_change::compare_data;
+    let workshop = Workshop::sealed(&[SHIFT, REPORTS]);
+    let new = revised("formation properties of H2O(g) in atct-1.112", "-241.822", "-241.722");
+    let audit = compare_data(&workshop.path(), &Holdings::shipped(), &new, &Arc::default());
+    let (by, causes) = move_of(&value(&audit, "twice").under_today);
+    // ν(H2O) = -1, twice, times +0.100 kJ/mol.
+    assert!((by + 0.2).abs() < 1e-9, "{by}");
+    assert_eq!(causes[0].what, "formation properties of H2O(g) in atct-1.112");
+}
+
+#[test]
+fn a_seal_that_is_killed_leaves_the_old_file_or_the_new_one() {
+    // By hand and in `.ci/long` 200 moments; the seed of the moments is fixed, the system's clock is not.
+    let moments: u64 = std::env::var("HESSBOOK_KILLS").ok().and_then(|text| text.parse().ok()).unwrap_or(12);
+    let workshop = Workshop::sealed(&[SHIFT, REPORTS]);
+    let path = workshop.path();
+    let author = || {
+        let notebook = hessbook::notebook::file::NotebookFile::read(&path).unwrap();
+        let seal = hessbook::notebook::sealing::read_seal("copy", &notebook).unwrap().unwrap();
+        assert!(seal.is_whole(), "a torn seal");
+        seal.author.unwrap_or_default()
+    };
+    let start = |name: &str| {
+        let mut command = std::process::Command::new(env!("CARGO_BIN_EXE_hessbook"));
+        command.args(["seal", "--author", name]).arg(&path).stdout(std::process::Stdio::null());
+        command.spawn().unwrap()
+    };
+    let begun = std::time::Instant::now();
+    assert!(start("first").wait().unwrap().success());
+    let whole = begun.elapsed();
+    assert_eq!(author(), "first");
+    let (mut before, mut state, mut new) = ("first".to_owned(), 7_u64, 0);
+    for moment in 0..moments {
+        // A linear congruential generator (Knuth, MMIX, from memory) spreads the moments over the time a whole run takes.
+        state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+        let share = (state >> 33) as f64 / f64::from(1_u32 << 31);
+        let name = format!("author {moment}");
+        let mut child = start(&name);
+        std::thread::sleep(whole.mul_f64(share));
+        let _ = child.kill(); // It may have ended by itself.
+        child.wait().unwrap();
+        let now = author();
+        assert!(now == before || now == name, "{now}");
+        new += usize::from(now == name);
+        before = now;
+    }
+    println!("{moments} moments, {new} of them after the new file was in place");
 }

@@ -9,6 +9,7 @@ use crate::fault::Fault;
 use crate::notebook::audit::{AuditOptions, audit_one};
 use crate::notebook::audit_text;
 use crate::notebook::holdings::Holdings;
+use crate::notebook::signature::TrustedKey;
 use crate::notebook::verdict::AuditStatus;
 use crate::units::constants;
 
@@ -27,6 +28,12 @@ pub struct Audit {
     /// Let moves under today's data count for the exit status too
     #[arg(long)]
     strict_data: bool,
+    /// Derive each value again from its sealed steps and records too, without running the author's cells
+    #[arg(long)]
+    from_sources: bool,
+    /// A public key, as `hessbook keys new` makes it, whose signatures you trust
+    #[arg(long, value_name = "KEYFILE")]
+    trust: Vec<PathBuf>,
     /// Take the constants of this CODATA year for today's
     #[arg(long, value_name = "YEAR")]
     constants: Option<u16>,
@@ -39,7 +46,14 @@ impl Audit {
             let set = constants::set(year).ok_or_else(|| unknown_year(year))?;
             today = today.with_constants(set);
         }
-        let options = AuditOptions { today, strict_data: self.strict_data, stop: stopped_by_interrupt() };
+        let trusted = self.trust.iter().map(|path| TrustedKey::read(path)).collect::<Result<_, _>>()?;
+        let options = AuditOptions {
+            today,
+            strict_data: self.strict_data,
+            from_sources: self.from_sources,
+            trusted,
+            stop: stopped_by_interrupt(),
+        };
         let mut worst = AuditStatus::Same;
         for path in &self.paths {
             let audit = audit_one(path, &options);

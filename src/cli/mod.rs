@@ -4,13 +4,17 @@
 //! other than 0 is said in the help of the commands that have them.
 
 mod audit;
+mod data;
+mod data_change;
 mod install;
 mod kernel;
+mod keys;
 mod run;
 mod seal;
 
 use std::collections::BTreeMap;
 use std::io::{self, Write};
+use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
@@ -32,6 +36,8 @@ enum Command {
     Run(run::Run),
     Seal(seal::Seal),
     Audit(audit::Audit),
+    Data(data::Data),
+    Keys(keys::Keys),
     Install(install::Install),
     Kernel(kernel::Kernel),
 }
@@ -42,6 +48,8 @@ pub fn run() -> ExitCode {
         Command::Run(command) => command.run(),
         Command::Seal(command) => command.run(),
         Command::Audit(command) => command.run(),
+        Command::Data(command) => command.run(),
+        Command::Keys(command) => command.run(),
         Command::Install(command) => command.run(),
         Command::Kernel(command) => command.run(),
     };
@@ -81,6 +89,22 @@ fn settings(given: &[(String, String)]) -> Result<BTreeMap<String, String>, Faul
         }
     }
     Ok(settings)
+}
+
+/// The notebooks in a folder and those below it, by path; a file is itself.
+fn notebooks_below(path: &Path) -> Vec<PathBuf> {
+    if !path.is_dir() {
+        return vec![path.to_owned()];
+    }
+    let mut paths: Vec<PathBuf> =
+        std::fs::read_dir(path).into_iter().flatten().flatten().map(|entry| entry.path()).collect();
+    paths.sort();
+    let is_notebook = |path: &Path| path.extension().is_some_and(|extension| extension == "ipynb");
+    let hidden = |path: &Path| path.file_name().is_some_and(|name| name.to_string_lossy().starts_with('.'));
+    // A link to a folder may lead round in a circle, and is passed over.
+    let kept =
+        paths.into_iter().filter(|path| !hidden(path) && (is_notebook(path) || (path.is_dir() && !path.is_symlink())));
+    kept.flat_map(|path| notebooks_below(&path)).collect()
 }
 
 /// A flag that Ctrl-C sets.

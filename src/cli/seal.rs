@@ -10,6 +10,7 @@ use crate::fault::Fault;
 use crate::notebook::holdings::Holdings;
 use crate::notebook::seal::OpenRow;
 use crate::notebook::sealing::{Sealed, Sealing, seal};
+use crate::notebook::signature::PrivateKey;
 use crate::session::on_big_stack;
 
 use super::{Done, err, out, setting, settings, stopped_by_interrupt};
@@ -32,6 +33,9 @@ pub struct Seal {
     /// Seal although rows are strained or broken and not dealt with; the seal says that it is a draft
     #[arg(long)]
     draft: bool,
+    /// Sign with this private key, as `hessbook keys new` makes it
+    #[arg(long, value_name = "KEYFILE")]
+    sign: Option<PathBuf>,
     /// Override a declared parameter, as in `--set outlet="450 degC"`; the seal keeps it
     #[arg(long, value_name = "NAME=TEXT", value_parser = setting)]
     set: Vec<(String, String)>,
@@ -40,6 +44,7 @@ pub struct Seal {
 impl Seal {
     pub(super) fn run(self) -> Done {
         let how = Sealing {
+            key: self.sign.as_deref().map(PrivateKey::read).transpose()?,
             author: self.author,
             draft: self.draft,
             settings: settings(&self.set)?,

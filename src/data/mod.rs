@@ -3,8 +3,10 @@
 //! Files of `stdlib/data/` say by their schema what they hold; each is parsed typed, at first use.
 
 pub mod catalog;
+pub mod checkup;
 pub mod critical;
 pub mod dataset;
+pub mod doctor;
 pub mod form;
 pub mod formation;
 pub mod function;

@@ -9,11 +9,10 @@ use std::fmt::Write as _;
 use std::sync::{Arc, LazyLock};
 
 use serde_json::{Map, Value, json};
-use sha2::{Digest, Sha256};
 
 use crate::chem::element;
 use crate::chem::species::SpeciesName;
-use crate::source::{Embedded, STDLIB};
+use crate::source::{Embedded, STDLIB, sha256};
 
 use super::catalog::Catalog;
 use super::dataset::TableFault;
@@ -48,14 +47,6 @@ const GROUPS: &str = "dhf_298_correlations";
 static SHIPPED: LazyLock<Arc<Records>> = LazyLock::new(|| {
     Arc::new(Records::read(STDLIB).expect("the shipped tables are read by the tests of the catalogue"))
 });
-
-/// SHA-256 in lower-case hexadecimal.
-pub fn sha256(text: &str) -> String {
-    Sha256::digest(text.as_bytes()).iter().fold(String::with_capacity(64), |mut hex, byte| {
-        let _ = write!(hex, "{byte:02x}"); // Writing to a text cannot fail.
-        hex
-    })
-}
 
 /// One record.
 #[derive(Clone, Debug)]
@@ -141,7 +132,7 @@ impl Records {
                 path: file.path.into(),
                 schema: schema.into(),
                 dataset: dataset.unwrap_or("").into(),
-                head_sha256: sha256(&head).into(),
+                head_sha256: sha256(head.as_bytes()).into(),
                 head: head.into(),
                 lists,
                 records,
@@ -157,7 +148,7 @@ impl Records {
     /// A record is not what its schema promises.
     pub fn catalog(&self) -> Result<Catalog, TableFault> {
         let texts: Vec<(&RecordTable, String)> = self.tables.iter().map(|table| (table, table.text())).collect();
-        let file = |(table, text): &(&RecordTable, String)| (table.path.clone(), text.clone(), sha256(text));
+        let file = |(table, text): &(&RecordTable, String)| (table.path.clone(), text.clone(), sha256(text.as_bytes()));
         let files: Vec<(Arc<str>, String, String)> = texts.iter().map(file).collect();
         let embedded: Vec<Embedded<'_>> =
             files.iter().map(|(path, text, sha256)| Embedded { path, bytes: text.as_bytes(), sha256 }).collect();
@@ -226,6 +217,20 @@ impl Records {
             Some(id) => RecordKey { id: id.as_str().into(), ..key },
             None => key,
         }
+    }
+
+    /// These records, with whole tables put in place of those of the same schema and dataset.
+    #[must_use]
+    pub fn with_tables(&self, others: &Records) -> Records {
+        let replaced = |table: &&RecordTable| {
+            !others.tables.iter().any(|other| other.schema == table.schema && other.dataset == table.dataset)
+        };
+        let mut made = Records { tables: self.tables.iter().filter(replaced).cloned().collect() };
+        made.tables.extend(others.tables.iter().cloned());
+        // What an entity is called is said by the table of names, which the new tables did not have beside them.
+        made.tables.iter_mut().flat_map(|table| &mut table.records).for_each(|record| record.entity = None);
+        made.name_entities();
+        made
     }
 
     /// Every head and every record, by key. A head is a record of no list.
@@ -309,7 +314,7 @@ impl SameNames {
 
 impl Record {
     fn new(list: &str, id: &str, content: String) -> Record {
-        let sha256 = sha256(&content).into();
+        let sha256 = sha256(content.as_bytes()).into();
         Record { list: list.into(), id: id.into(), sha256, content: content.into(), entity: None }
     }
 

@@ -89,7 +89,8 @@ impl Answer {
         }
     }
 
-    fn parts(&self) -> Vec<(&'static str, Value)> {
+    /// Its parts by name.
+    pub fn parts(&self) -> Vec<(&'static str, Value)> {
         match self {
             Answer::Budget(budget) => budget.parts(),
             Answer::Expanded(expanded) => expanded.parts(),

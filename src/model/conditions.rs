@@ -192,7 +192,10 @@ pub fn symbol(value: &Quantity) -> String {
         });
     }
     match &call.args[..] {
-        [Value::Reaction(_), ..] if what == What::K => what.symbol().to_owned(),
+        [Value::Reaction(_), ..] if what == What::K || what.is_temperature() => what.symbol().to_owned(),
+        [Value::Substance(_), ..] if call.card.id == crate::model::vapour::VAPORISATION_ENTHALPY.id => {
+            "ΔvapH".to_owned()
+        }
         // A leg of a cycle is no property of the reaction.
         [Value::Reaction(_), ..] if what == What::Plain => String::new(),
         [Value::Reaction(_), ..] => {

@@ -19,7 +19,6 @@ use crate::fault::{Explain, Fault};
 use crate::model::card::Cx;
 use crate::model::first_order;
 use crate::model::function::{self, Functions, T_REFERENCE};
-use crate::model::given::Given;
 pub use crate::model::heat_capacity::HeatCapacity;
 use crate::model::path::Route;
 use crate::model::stated;
@@ -165,8 +164,7 @@ impl Explain for GatherError {
 pub struct Method {
     pub heat_capacity: HeatCapacity,
     pub formation: Formation,
-    /// The pressure, and how it is taken; `None`: standard values.
-    pub given: Option<Given>,
+    pub given: Option<crate::model::given::Given>,
 }
 
 impl Method {

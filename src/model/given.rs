@@ -69,7 +69,7 @@ pub enum GivenError {
 impl Explain for GivenError {
     fn code(&self) -> &'static str {
         match self {
-            GivenError::NotPositive { .. } => "pressure-not-positive",
+            GivenError::NotPositive { .. } => "given-pressure-not-positive",
             GivenError::NotThere { .. } => "option-names-no-species",
             GivenError::PartialMissing { .. } => "partial-pressure-missing",
             GivenError::MoreThanTotal { .. } => "partial-pressures-exceed-total",
@@ -173,7 +173,7 @@ impl Given {
                 own.insert(id, inner);
             }
         }
-        if total.is_none() && partial.is_empty() && !virial && !volumes {
+        if total.is_none() && partial.is_empty() && own.is_empty() && !virial && !volumes {
             return Ok(None);
         }
         Ok(Some(Given { total, virial, volumes, partial, own }))

@@ -18,6 +18,7 @@ pub mod curve_card;
 pub mod cycle;
 pub mod decomposition;
 pub mod derivation;
+pub mod equilibrium;
 pub mod expanded;
 pub mod first_order;
 pub mod fit;
@@ -57,8 +58,11 @@ pub mod tabulated;
 pub mod terms;
 pub mod thermo;
 pub mod tolerance;
+pub mod van_t_hoff;
 pub mod vapour;
+pub mod vessel;
 pub mod virial;
+pub mod volume;
 
 use card::Card;
 
@@ -82,6 +86,23 @@ pub const CARDS: &[&Card] = &[
     &property_card::SUBSTANCE_HELMHOLTZ_ENERGY,
     &property_card::SUBSTANCE_ENTROPY,
     &property_card::SUBSTANCE_HEAT_CAPACITY,
+    &equilibrium::EQUILIBRIUM_TEMPERATURE,
+    &equilibrium::REACTION_QUOTIENT,
+    &equilibrium::DIRECTION,
+    &vessel::TO_OPEN_VESSEL,
+    &vessel::TO_CLOSED_VESSEL,
+    &vessel::GAS_EVOLVED,
+    &vessel::VESSEL_PRESSURE,
+    &volume::MOLAR_VOLUME,
+    &volume::HEAT_CAPACITY_V,
+    &volume::HEAT_CAPACITY_DIFFERENCE,
+    &van_t_hoff::CONSTANT_AT,
+    &van_t_hoff::ENTHALPY_FROM_CONSTANTS,
+    &van_t_hoff::GIBBS_FROM_CONSTANT,
+    &van_t_hoff::GIBBS_AT,
+    &van_t_hoff::VAPORISATION_FROM_PRESSURES,
+    &van_t_hoff::VAPOUR_PRESSURE_AT,
+    &van_t_hoff::BOILING_POINT_AT,
     &fit_card::FIT_HEAT_CAPACITY,
     &fit_card::INTERPOLATE_HEAT_CAPACITY,
     &vapour::VAPOUR_PRESSURE,

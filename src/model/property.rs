@@ -359,6 +359,11 @@ fn leaf(si: f64, input: &Input, property: Property) -> Result<Rc<Node>, Fault> {
     Ok(Rc::clone(Quantity::input(si, dim, Kind::PLAIN, input.clone(), None)?.node()))
 }
 
+/// J/mol of nothing in particular.
+pub(super) fn energy_per_open_mole() -> Dimension {
+    Dimension::whole([2, 1, -2, 0, 0, 0]).over(&Dimension::amount(Entity::OPEN))
+}
+
 /// R as an input, so that a change of constant set can be traced.
 pub(super) fn gas_constant(constants: &ConstantSet) -> Quantity {
     let r = &constants.molar_gas;

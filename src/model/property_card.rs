@@ -140,13 +140,13 @@ fn signed_sum(figures: impl IntoIterator<Item = (f64, String)>) -> String {
     line
 }
 
-const HEAT_CAPACITY_OPTION: Arg = Arg {
+pub(super) const HEAT_CAPACITY_OPTION: Arg = Arg {
     name: "heat_capacity",
     takes: Takes::Word(HeatCapacity::WORDS),
     default: Default::Absent,
     doc: "how Cp is taken between 298.15 K and T: integrated in full, or held at one value",
 };
-const FORMATION_OPTION: Arg = Arg {
+pub(super) const FORMATION_OPTION: Arg = Arg {
     name: "formation",
     takes: Takes::Text,
     default: Default::Absent,

@@ -383,7 +383,7 @@ const ROUNDING: f64 = 1e-6;
 const PIECES: u32 = 120;
 
 /// Where a term has functions, K, changes of phase on the way included. Two phases that the equation tells apart stay two.
-fn range_of(term: &Term, terms: &Terms, data: &Catalog) -> Result<(f64, f64), GatherError> {
+pub(super) fn range_of(term: &Term, terms: &Terms, data: &Catalog) -> Result<(f64, f64), GatherError> {
     if let Some(own) = &term.own {
         return Ok(own.range_k());
     }

@@ -14,10 +14,12 @@ use crate::fault::Fault;
 use crate::notebook::causes::{Exchanged, Grounds, exchanged};
 use crate::notebook::comparison::{Compared, compare};
 use crate::notebook::file::NotebookFile;
-use crate::notebook::holdings::{Holdings, constants_of, records_of};
+use crate::notebook::holdings::{Holdings, constants_of, files_of, records_of};
+use crate::notebook::rederive::rederive;
 use crate::notebook::run::{FaultRecord, Source};
 use crate::notebook::seal::{CellDigest, Seal, SealedValue};
 use crate::notebook::sealing::{cell_digests, engine_now, read_seal};
+use crate::notebook::signature::{TrustedKey, checked};
 use crate::notebook::trial::{Trial, Unwatched, trial};
 use crate::notebook::verdict::{
     Against, AuditFault, AuditStatus, Difference, Figure, Justification, NotebookAudit, Outcome, SealFacts, Signed,
@@ -25,6 +27,7 @@ use crate::notebook::verdict::{
 };
 use crate::render::report::{MIME, Record};
 use crate::session::on_big_stack;
+use crate::source::sha256;
 
 /// What an audit is made with.
 #[derive(Clone, Debug)]
@@ -33,13 +36,23 @@ pub struct AuditOptions {
     pub today: Holdings,
     /// Whether moves under today's data count for the status.
     pub strict_data: bool,
+    /// Whether values are derived again from their steps and records too, without the author's cells.
+    pub from_sources: bool,
+    /// Keys that the auditor trusts.
+    pub trusted: Vec<TrustedKey>,
     /// Ends a run from outside.
     pub stop: Arc<AtomicBool>,
 }
 
 impl Default for AuditOptions {
     fn default() -> Self {
-        AuditOptions { today: Holdings::shipped(), strict_data: false, stop: Arc::default() }
+        AuditOptions {
+            today: Holdings::shipped(),
+            strict_data: false,
+            from_sources: false,
+            trusted: Vec::new(),
+            stop: Arc::default(),
+        }
     }
 }
 
@@ -78,7 +91,7 @@ fn empty(file: &str, against: Against) -> NotebookAudit {
     }
 }
 
-fn could_not_run(file: &str, against: Against, under: &str, fault: &Fault) -> NotebookAudit {
+pub(super) fn could_not_run(file: &str, against: Against, under: &str, fault: &Fault) -> NotebookAudit {
     let faults = vec![AuditFault { under: under.to_owned(), fault: FaultRecord::of(fault, file) }];
     NotebookAudit { status: AuditStatus::CouldNotRun, faults, ..empty(file, against) }
 }
@@ -98,10 +111,15 @@ impl Runner<'_> {
     }
 }
 
-fn of_sealed(file: &str, notebook: &NotebookFile, seal: &Seal, options: &AuditOptions) -> Result<NotebookAudit, Fault> {
+pub(super) fn of_sealed(
+    file: &str,
+    notebook: &NotebookFile,
+    seal: &Seal,
+    options: &AuditOptions,
+) -> Result<NotebookAudit, Fault> {
     let set = seal.parameters.iter().filter_map(|one| Some((one.name.clone(), one.set.clone()?)));
     let runner = Runner { file, notebook, settings: set.collect(), stop: &options.stop };
-    let then = sealed_holdings(seal, &options.today);
+    let then = sealed_holdings(file, seal, &options.today);
     let grounds = Grounds::of(notebook, seal, &runner, &then, &options.today);
     let under_sealed = runner.run(&then.holdings)?;
     let today = (!then.is_today).then(|| runner.run(&options.today)).transpose()?;
@@ -131,16 +149,17 @@ fn of_sealed(file: &str, notebook: &NotebookFile, seal: &Seal, options: &AuditOp
         author: seal.author.clone(),
         draft: seal.draft,
         whole: grounds.whole,
-        signed: Signed::Not,
+        signed: checked(seal, &options.trusted),
     };
     let mut audit = NotebookAudit {
         seal: Some(facts),
         environment: environment(notebook, seal, &options.today),
         justifications: justifications(seal, &under_sealed, under_today),
         untested: untested(seal),
-        not_compared: not_compared(notebook),
+        not_compared: not_compared(notebook, Some(seal)),
         values,
         faults,
+        from_sources: options.from_sources.then(|| rederive(seal, &then.holdings)).transpose()?,
         ..empty(file, Against::Seal)
     };
     audit.status = status(&audit, options.strict_data);
@@ -154,9 +173,14 @@ pub(super) struct Then {
     pub is_today: bool,
 }
 
-fn sealed_holdings(seal: &Seal, today: &Holdings) -> Then {
+pub(super) fn sealed_holdings(file: &str, seal: &Seal, today: &Holdings) -> Then {
     let (records, entities) = records_of(seal);
     let constants = constants_of(&seal.constants);
+    let files = files_of(seal);
+    let same_files = seal.files.iter().all(|sealed| {
+        let beside = Path::new(file).parent().unwrap_or(Path::new("")).join(&sealed.name);
+        std::fs::read(beside).is_ok_and(|bytes| sha256(&bytes) == sealed.sha256)
+    });
     let same_text = |a: &crate::data::records::Records, b: &crate::data::records::Records| {
         let texts = |records: &crate::data::records::Records| -> BTreeMap<_, _> {
             records.all().into_iter().map(|(key, record)| (key, record.content)).collect()
@@ -164,11 +188,11 @@ fn sealed_holdings(seal: &Seal, today: &Holdings) -> Then {
         texts(a) == texts(b)
     };
     if same_text(&records, &today.records.about(&entities)) {
-        let holdings = today.with_constants(constants);
-        return Then { is_today: std::ptr::eq(constants, today.constants), holdings };
+        let holdings = today.with_constants(constants).with_files(files);
+        return Then { is_today: same_files && std::ptr::eq(constants, today.constants), holdings };
     }
     let holdings = Holdings::of(today.records.with_sealed(&records, &entities)).with_constants(constants);
-    Then { holdings, is_today: false }
+    Then { holdings: holdings.with_files(files), is_today: false }
 }
 
 /// Whether two runs part in any figure, row or fault.
@@ -240,7 +264,10 @@ fn status(audit: &NotebookAudit, strict_data: bool) -> AuditStatus {
     let doubtful = audit.seal.as_ref().is_some_and(|seal| !seal.whole || matches!(seal.signed, Signed::Invalid { .. }));
     if verdicts.contains(&Verdict::CouldNotRun) || audit.faults.iter().any(faults) {
         AuditStatus::CouldNotRun
-    } else if doubtful || !verdicts.into_iter().all(Verdict::is_same) {
+    } else if doubtful
+        || audit.from_sources.iter().flatten().any(|one| !one.same || one.u_same == Some(false))
+        || !verdicts.into_iter().all(Verdict::is_same)
+    {
         AuditStatus::Differs
     } else {
         AuditStatus::Same
@@ -335,9 +362,11 @@ fn untested(seal: &Seal) -> Vec<String> {
     rows
 }
 
-fn not_compared(notebook: &NotebookFile) -> Vec<String> {
+fn not_compared(notebook: &NotebookFile, seal: Option<&Seal>) -> Vec<String> {
     let mut list = vec!["texts between the cells, printed text and pictures".to_owned()];
     let empty = notebook.code_cells().iter().filter(|cell| cell.source.trim().is_empty()).count();
+    let unkept = seal.into_iter().flat_map(|seal| &seal.files).filter(|file| file.content.is_none());
+    list.extend(unkept.map(|file| format!("what was in {}: the seal has its digest alone", file.name)));
     if empty > 0 {
         list.push(format!("{empty} empty code cells"));
     }
@@ -386,7 +415,7 @@ fn of_unsealed(file: &str, notebook: &NotebookFile, options: &AuditOptions) -> R
     let mut list = vec![
         "it has no seal: causes of moves cannot be told, and nothing says what its cells and records were".to_owned(),
     ];
-    list.extend(not_compared(notebook));
+    list.extend(not_compared(notebook, None));
     let faults = now.faults.iter();
     let mut audit = NotebookAudit {
         values,

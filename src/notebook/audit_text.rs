@@ -2,7 +2,9 @@
 
 use std::fmt::Write as _;
 
-use crate::notebook::verdict::{Against, Move, NotebookAudit, Outcome, SealFacts, Signed, ValueAudit, Verdict};
+use crate::notebook::verdict::{
+    Against, Move, NotebookAudit, Outcome, Rederived, SealFacts, Signed, ValueAudit, Verdict,
+};
 
 /// One notebook.
 pub fn notebook(audit: &NotebookAudit) -> String {
@@ -40,12 +42,59 @@ pub fn notebook(audit: &NotebookAudit) -> String {
     for value in &audit.values {
         text.push_str(&changed(value, audit.against));
     }
+    for derived in audit.from_sources.iter() {
+        text.push_str(&from_sources(derived));
+    }
     for one in audit.justifications.iter().filter(|one| one.lapsed) {
         line(&mut text, &format!("lapsed: {} of {} was justified by \"{}\"", one.id, one.label, one.reason));
     }
     for what in &audit.not_compared {
         line(&mut text, &format!("not compared: {what}"));
     }
+    text
+}
+
+/// What came of deriving values again: those that are the same counted, the others one by one.
+fn from_sources(all: &[Rederived]) -> String {
+    let mut text = String::new();
+    let same = |one: &&Rederived| one.same && one.u_same != Some(false);
+    let whole = all.iter().filter(same).filter(|one| one.not_rederived.is_empty()).count();
+    line(
+        &mut text,
+        &format!("from sources alone: {whole} of {} values derived again, each step, and the same", all.len()),
+    );
+    for one in all.iter().filter(|one| !(same(one) && one.not_rederived.is_empty())) {
+        let steps = if one.steps == 1 { "1 step".to_owned() } else { format!("{} steps", one.steps) };
+        let words = match (&one.value, same(&one)) {
+            (_, true) => format!("the same, with {} of {steps} taken as sealed", one.not_rederived.len()),
+            (Some(value), false) => {
+                format!("derived again as {value}, off by {}", one.off_by.as_deref().unwrap_or("?"))
+            }
+            (None, false) => "could not be derived again".to_owned(),
+        };
+        line(&mut text, &format!("  {}: {words}", one.label));
+        for step in &one.not_rederived {
+            line(&mut text, &format!("    not re-derived: {step}"));
+        }
+        if let Some(parts_at) = &one.parts_at {
+            line(&mut text, &format!("    parts at {parts_at}"));
+        }
+    }
+    text
+}
+
+/// What a revision of data would do to one notebook.
+pub fn data_change(audit: &NotebookAudit) -> String {
+    let changes = |value: &&ValueAudit| value.under_today.verdict != Verdict::Identical;
+    if audit.faults.is_empty() && audit.values.iter().filter(changes).count() == 0 {
+        return format!("{}: no value would change\n", audit.file);
+    }
+    let mut text = format!("{}\n", audit.file);
+    for fault in &audit.faults {
+        line(&mut text, &format!("under {}: {}: {}", fault.under, fault.fault.cell, fault.fault.message));
+    }
+    summed_causes(audit).iter().for_each(|cause| line(&mut text, cause));
+    audit.values.iter().for_each(|value| text.push_str(&changed(value, Against::RecordedOutputs)));
     text
 }
 

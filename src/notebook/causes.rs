@@ -18,6 +18,7 @@ use crate::notebook::trial::{Trial, Tried};
 use crate::notebook::verdict::CauseKind;
 use crate::quantity::Quantity;
 use crate::record::node::LeafKey;
+use crate::source::sha256;
 
 /// More revised records than this are exchanged dataset by dataset.
 const MOST_EXCHANGED: usize = 64;
@@ -150,7 +151,8 @@ fn restored(seal: &Seal, name: &str, then: &Then, today: &Holdings) -> Option<Ho
     }
     let mut mended = records;
     mended.put(&key, Some(&record), &here);
-    Some(Holdings::of(today.records.with_sealed(&mended, &entities)).with_constants(then.holdings.constants))
+    let mended = Holdings::of(today.records.with_sealed(&mended, &entities));
+    Some(mended.with_constants(then.holdings.constants).with_files(then.holdings.files.clone()))
 }
 
 /// One revised record, dataset or constant in place of the sealed one, and what the notebook gives with it.
@@ -167,8 +169,12 @@ enum Touches {
 }
 
 impl Exchanged {
-    /// Variance of a value by the inputs that were exchanged, in SI units; none where one states no uncertainty.
+    /// Variance of a value by the inputs that were exchanged, in SI units; none where one states no uncertainty, or where
+    /// it is not known which inputs they were.
     pub fn variance(&self, value: &Quantity) -> Option<f64> {
+        if matches!(&self.touches, Touches::Records(keys) if keys.is_empty()) {
+            return None;
+        }
         let mut sum = Some(0.0);
         for one in value.sensitivities() {
             let touched = match (one.key(), &self.touches) {
@@ -205,11 +211,23 @@ pub fn exchanged(runner: &Runner, then: &Holdings, today: &Holdings, seal: &Seal
         for key in &keys {
             records.put(key, now.get(key), &here);
         }
-        let holdings = Holdings::of(today.records.with_sealed(&records, &entities)).with_constants(then.constants);
+        let holdings = Holdings::of(today.records.with_sealed(&records, &entities));
+        let holdings = holdings.with_constants(then.constants).with_files(then.files.clone());
         let values = holdings.catalog().ok().and_then(|_| runner.run(&holdings).ok());
         let values = values.map(|trial| values_of(&trial)).unwrap_or_default();
         let touches = Touches::Records(keys.into_iter().map(|key| today.records.in_use(key)).collect());
         list.push(Exchanged { kind: CauseKind::Data, what, values, touches });
+    }
+    for file in seal.files.iter().filter(|file| file.content.is_some()) {
+        let mut files = then.files.clone();
+        files.remove(&file.name);
+        let trial = runner.run(&then.with_files(files))?;
+        if trial.files.get(&file.name).is_some_and(|bytes| sha256(bytes) == file.sha256) {
+            continue;
+        }
+        let what = format!("file {}, which is not what was sealed", file.name);
+        let touches = Touches::Records(Vec::new());
+        list.push(Exchanged { kind: CauseKind::Data, what, values: values_of(&trial), touches });
     }
     let sealed_set = constants_of(&seal.constants);
     for (was, is) in sealed_set.all().into_iter().zip(today.constants.all()) {

@@ -9,7 +9,7 @@ use crate::data::catalog::Catalog;
 use crate::data::dataset::TableFault;
 use crate::data::records::{Record, RecordTable, Records};
 use crate::model::card::References;
-use crate::notebook::seal::{Constants, Seal, SealedConstant, SealedRecord, SealedTable};
+use crate::notebook::seal::{Constants, Seal, SealedConstant, SealedFile, SealedRecord, SealedTable};
 use crate::quantity::round::shortest;
 use crate::units::constants::{self, ConstantSet};
 
@@ -18,6 +18,8 @@ use crate::units::constants::{self, ConstantSet};
 pub struct Holdings {
     pub records: Arc<Records>,
     pub constants: &'static ConstantSet,
+    /// Contents that stand in place of files beside the notebook.
+    pub files: BTreeMap<String, Arc<[u8]>>,
     catalog: Arc<OnceLock<Arc<Catalog>>>,
 }
 
@@ -26,18 +28,34 @@ impl Holdings {
     pub fn shipped() -> Holdings {
         let catalog = OnceLock::new();
         catalog.get_or_init(Catalog::shipped);
-        Holdings { records: Records::shipped(), constants: constants::current(), catalog: Arc::new(catalog) }
+        Holdings {
+            records: Records::shipped(),
+            constants: constants::current(),
+            files: BTreeMap::new(),
+            catalog: Arc::new(catalog),
+        }
     }
 
     /// Other records, with today's constants.
     pub fn of(records: Records) -> Holdings {
-        Holdings { records: Arc::new(records), constants: constants::current(), catalog: Arc::default() }
+        Holdings {
+            records: Arc::new(records),
+            constants: constants::current(),
+            files: BTreeMap::new(),
+            catalog: Arc::default(),
+        }
     }
 
     /// The same records with other constants.
     #[must_use]
     pub fn with_constants(&self, constants: &'static ConstantSet) -> Holdings {
         Holdings { constants, ..self.clone() }
+    }
+
+    /// The same records with these files.
+    #[must_use]
+    pub fn with_files(&self, files: BTreeMap<String, Arc<[u8]>>) -> Holdings {
+        Holdings { files, ..self.clone() }
     }
 
     /// The catalogue of the records, made at its first use.
@@ -109,6 +127,12 @@ pub fn records_of(seal: &Seal) -> (Records, BTreeSet<Arc<str>>) {
     };
     let entities = seal.entities.iter().map(|entity| entity.as_str().into()).collect();
     (Records { tables: seal.data.iter().map(table).collect() }, entities)
+}
+
+/// The files of a seal whose content it keeps.
+pub fn files_of(seal: &Seal) -> BTreeMap<String, Arc<[u8]>> {
+    let kept = |file: &SealedFile| Some((file.name.clone(), file.content.as_ref()?.as_bytes().into()));
+    seal.files.iter().filter_map(kept).collect()
 }
 
 /// Records of a seal whose digest is not that of their content, by name.

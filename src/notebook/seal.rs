@@ -10,8 +10,8 @@ use std::collections::BTreeMap;
 use serde::{Deserialize, Serialize};
 use serde_json::Value;
 
-use crate::data::records::sha256;
 use crate::render::report::Record;
+use crate::source::sha256;
 
 /// Name and version of this shape. Another version is another shape, and this program says so.
 pub const FORMAT: &str = "hessbook-seal/1";
@@ -40,6 +40,8 @@ pub struct Seal {
     /// Steps of all values, inputs before their users, each once. Steps point at each other by their position, from 0.
     pub steps: Vec<SealedStep>,
     pub data: Vec<SealedTable>,
+    /// Files beside the notebook that its cells read: records of the analyst's own, measured figures.
+    pub files: Vec<SealedFile>,
     /// Names of the substances whose records `data` holds: all that is known of them, and nothing else is used for them.
     pub entities: Vec<String>,
     /// SHA-256 of the canonical form of everything above.
@@ -294,6 +296,16 @@ pub struct SealedRecord {
     pub content: String,
 }
 
+/// A file that cells read.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+pub struct SealedFile {
+    /// As the cell named it.
+    pub name: String,
+    pub sha256: String,
+    /// Its text; none for a file that is no text or larger than a seal keeps.
+    pub content: Option<String>,
+}
+
 /// A signature under the digest.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Signature {
@@ -312,7 +324,7 @@ impl Seal {
             tree.shift_remove("digest");
             tree.shift_remove("signature");
         }
-        sha256(&canonical(&tree))
+        sha256(canonical(&tree).as_bytes())
     }
 
     /// Whether the seal says what it said when it was made. Who changes both content and digest is not found out by this;
@@ -326,6 +338,14 @@ impl Seal {
         let undated =
             |seal: &Seal| Seal { sealed: String::new(), digest: String::new(), signature: None, ..seal.clone() };
         undated(self) == undated(other)
+    }
+}
+
+impl Seal {
+    /// Whether a seal is signed with the key of another, or both are not signed. An unsigned one asks for no signature.
+    pub fn is_signed_like(&self, wanted: &Seal) -> bool {
+        let key = |seal: &Seal| seal.signature.as_ref().map(|signature| signature.public_key.clone());
+        wanted.signature.is_none() || key(self) == key(wanted)
     }
 }
 
@@ -347,5 +367,5 @@ pub fn canonical(value: &Value) -> String {
 
 /// The digest of a cell's source, whatever line ends its editor writes.
 pub fn source_digest(source: &str) -> String {
-    sha256(&source.replace("\r\n", "\n"))
+    sha256(source.replace("\r\n", "\n").as_bytes())
 }

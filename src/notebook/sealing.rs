@@ -12,21 +12,24 @@ use std::sync::atomic::AtomicBool;
 
 use thiserror::Error;
 
-use crate::data::records::sha256;
 use crate::fault::{Explain, Fault};
 use crate::model::review::{Dealing, Decided};
 use crate::notebook::file::NotebookFile;
 use crate::notebook::holdings::{Holdings, sealed_constants, sealed_tables};
 use crate::notebook::run::{FaultRecord, Source};
 use crate::notebook::seal::{
-    CellDigest, Decision, Engine, FORMAT, KEY, OpenRow, Seal, SealedParameter, SealedValue, source_digest,
+    CellDigest, Decision, Engine, FORMAT, KEY, OpenRow, Seal, SealedFile, SealedParameter, SealedValue, source_digest,
 };
+use crate::notebook::signature::PrivateKey;
 use crate::notebook::skeleton::{Skeleton, sealed_kind};
 use crate::notebook::trial::{Trial, Tried, Unwatched, trial};
-use crate::source::STDLIB;
+use crate::source::{STDLIB, sha256};
+
+/// The largest file whose content a seal keeps, in bytes.
+const MOST_KEPT: usize = 4 << 20;
 
 /// How a notebook is to be sealed.
-#[derive(Clone, Debug, Default)]
+#[derive(Default)]
 pub struct Sealing {
     pub author: Option<String>,
     /// Seal although rows are not dealt with.
@@ -35,6 +38,8 @@ pub struct Sealing {
     pub settings: BTreeMap<String, String>,
     /// In UTC.
     pub date: String,
+    /// To sign with.
+    pub key: Option<PrivateKey>,
 }
 
 /// Why a notebook is not sealed.
@@ -126,11 +131,20 @@ pub fn seal(path: &Path, how: &Sealing, holdings: &Holdings, stop: &Arc<AtomicBo
     let Source::Notebook(mut notebook) = source else { unreachable!("a script was refused") };
     let mut made = of_trial(&notebook, &tried, how, holdings, &refused);
     made.digest = made.digest_now();
+    made.signature = how.key.as_ref().map(|key| key.sign(&made));
     let earlier = read_seal(&file, &notebook).ok().flatten();
-    let kept = earlier.filter(|earlier| earlier.is_whole() && earlier.says_the_same_as(&made));
+    let kept = earlier
+        .filter(|earlier| earlier.is_whole() && earlier.says_the_same_as(&made) && earlier.is_signed_like(&made));
     let (seal, kept) = kept.map_or((made, false), |earlier| (earlier, true));
     put_seal(&mut notebook, &seal);
     Ok(Sealed { notebook, seal, kept })
+}
+
+/// The seal of a run that is not written anywhere.
+pub(super) fn in_memory(notebook: &NotebookFile, tried: &Trial, how: &Sealing, holdings: &Holdings) -> Seal {
+    let mut made = of_trial(notebook, tried, how, holdings, &[]);
+    made.digest = made.digest_now();
+    made
 }
 
 /// Puts a seal into a notebook.
@@ -156,7 +170,7 @@ pub fn read_seal(file: &str, notebook: &NotebookFile) -> Result<Option<Seal>, Se
 /// The program as it seals.
 pub fn engine_now() -> Engine {
     let listed: Vec<String> = STDLIB.iter().map(|file| format!("{} {}\n", file.path, file.sha256)).collect();
-    Engine { version: env!("CARGO_PKG_VERSION").to_owned(), stdlib: sha256(&listed.concat()) }
+    Engine { version: env!("CARGO_PKG_VERSION").to_owned(), stdlib: sha256(listed.concat().as_bytes()) }
 }
 
 /// The digests of the code cells of a notebook.
@@ -223,10 +237,17 @@ fn of_trial(notebook: &NotebookFile, tried: &Trial, how: &Sealing, holdings: &Ho
         values,
         steps: skeleton.steps,
         data: sealed_tables(&holdings.records.about(&tried.asked)),
+        files: tried.files.iter().map(|(name, bytes)| sealed_file(name, bytes)).collect(),
         entities: tried.asked.iter().map(ToString::to_string).collect(),
         digest: String::new(),
         signature: None,
     }
+}
+
+/// A text of at most [`MOST_KEPT`] is kept whole; of others the digest.
+fn sealed_file(name: &str, bytes: &[u8]) -> SealedFile {
+    let text = std::str::from_utf8(bytes).ok().filter(|text| text.len() <= MOST_KEPT);
+    SealedFile { name: name.to_owned(), sha256: sha256(bytes), content: text.map(str::to_owned) }
 }
 
 fn decisions(dealings: &[Dealing], label: &str) -> Vec<Decision> {

@@ -26,6 +26,8 @@ pub struct Trial {
     pub faults: Vec<FaultRecord>,
     /// Entities that the cells asked for.
     pub asked: BTreeSet<Arc<str>>,
+    /// Files beside the notebook that the cells read.
+    pub files: BTreeMap<String, Arc<[u8]>>,
 }
 
 /// One reported result.
@@ -60,6 +62,7 @@ pub fn trial(
     let catalog = Arc::new(holdings.catalog()?.watched());
     let mut session = Session::with(Arc::clone(stop), References::of(catalog, holdings.constants));
     session.set_parameters(settings.clone());
+    session.set_apart(holdings.files.clone());
     let record = run(file, source, &mut session, watcher);
     let reports = session.reported().into_iter().zip(session.reports());
     Ok(Trial {
@@ -69,6 +72,7 @@ pub fn trial(
         faults: record.faults,
         // Datasets that cells loaded lie over the catalogue, and were asked in its place.
         asked: session.references().catalog().asked(),
+        files: session.files_read(),
     })
 }
 

@@ -293,6 +293,9 @@ pub struct Rederived {
     pub off_by: Option<String>,
     /// Whether the recomputed value is the sealed one to the last bit.
     pub same: bool,
+    /// Standard uncertainty in the value's unit, and whether it is the sealed one: only where every step was derived again.
+    pub u: Option<String>,
+    pub u_same: Option<bool>,
     pub steps: usize,
     /// Steps taken as they were recorded, in words.
     pub not_rederived: Vec<String>,

@@ -27,6 +27,7 @@ pub const CLAIMS: &[(&str, &str)] = &[
     ("no-heat-loss", "the contents lose no heat"),
     ("unmixed", "mixing takes up and gives off no heat"),
     ("elements-closed", "as much of each element leaves as is fed"),
+    ("infinite-dilution", "the solutes are so dilute that they do not meet"),
     ("saturated-vapour-ideal", "the saturated vapour is ideal, and the liquid has no volume beside it"),
     ("formation-dataset", "the formation enthalpies of this dataset are the ones to use"),
     ("monomer-vapour", "the molecules of a vapour stay single"),

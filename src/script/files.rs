@@ -3,10 +3,13 @@
 //! A name is looked for in the notebook's folder. What was read becomes part of the session's state, so that a cell that
 //! fails leaves no trace of it, and a cell that is run again reads its files anew.
 
+use std::cell::RefCell;
+use std::collections::BTreeMap;
 use std::fmt;
 use std::io;
 use std::path::Path;
 use std::rc::Rc;
+use std::sync::Arc;
 
 use rhai::{Engine, FuncRegistration, ImmutableString, NativeCallContext};
 
@@ -21,6 +24,54 @@ use crate::source::{self, Embedded};
 
 /// Files larger than this are none that someone wrote or measured by hand.
 const MOST_BYTES: u64 = 64 << 20;
+
+/// The files beside a notebook as a session sees them, and what it has read of them.
+#[derive(Clone, Default)]
+pub struct Beside(Rc<RefCell<Seen>>);
+
+#[derive(Default)]
+struct Seen {
+    /// Contents that stand in place of what is on the disk.
+    given: BTreeMap<String, Arc<[u8]>>,
+    /// Nothing is written to the disk; what a cell writes is kept here for later cells to read.
+    apart: bool,
+    written: BTreeMap<String, Arc<[u8]>>,
+    read: BTreeMap<String, Arc<[u8]>>,
+}
+
+impl Beside {
+    /// Reads these contents in place of the files of those names, and writes nothing to the disk from now on.
+    pub fn set_apart(&self, given: BTreeMap<String, Arc<[u8]>>) {
+        let mut seen = self.0.borrow_mut();
+        (seen.given, seen.apart) = (given, true);
+    }
+
+    pub fn is_apart(&self) -> bool {
+        self.0.borrow().apart
+    }
+
+    /// Keeps what a cell has written, for later cells.
+    pub fn keep(&self, name: &str, text: &str) {
+        self.0.borrow_mut().written.insert(name.to_owned(), text.as_bytes().into());
+    }
+
+    /// Every file that was read, with its content, by the name it was asked for.
+    pub fn read(&self) -> BTreeMap<String, Arc<[u8]>> {
+        self.0.borrow().read.clone()
+    }
+
+    fn find(&self, name: &str) -> Option<Arc<[u8]>> {
+        let seen = self.0.borrow();
+        seen.written.get(name).or_else(|| seen.given.get(name)).cloned()
+    }
+
+    fn note(&self, name: &str, bytes: &[u8]) {
+        let mut seen = self.0.borrow_mut();
+        if !seen.written.contains_key(name) {
+            seen.read.entry(name.to_owned()).or_insert_with(|| bytes.into());
+        }
+    }
+}
 
 /// Why a file cannot be read.
 #[derive(Clone, Debug, PartialEq, Eq)]
@@ -68,6 +119,10 @@ impl Explain for FileFault {
 /// # Errors
 /// It is not there, cannot be read, or is too large.
 pub fn read_beside(shared: &Shared, name: &str) -> Result<Vec<u8>, Fault> {
+    if let Some(bytes) = shared.beside.find(name) {
+        shared.beside.note(name, &bytes);
+        return Ok(bytes.to_vec());
+    }
     let folder = shared.folder();
     let path = folder.join(name);
     let failed = |error: io::Error| match error.kind() {
@@ -81,7 +136,9 @@ pub fn read_beside(shared: &Shared, name: &str) -> Result<Vec<u8>, Fault> {
     if about.len() > MOST_BYTES {
         return Err(FileFault::TooLarge { name: name.to_owned(), bytes: about.len() }.into());
     }
-    Ok(std::fs::read(&path).map_err(failed)?)
+    let bytes = std::fs::read(&path).map_err(failed)?;
+    shared.beside.note(name, &bytes);
+    Ok(bytes)
 }
 
 fn missing(folder: &Path, name: &str) -> FileFault {

@@ -21,6 +21,7 @@ use crate::model::card::References;
 use crate::model::review::Dealing;
 use crate::quantity::Quantity;
 use crate::render::Bundle;
+use crate::script::files::Beside;
 use crate::script::host::{Host, HostSlot};
 use crate::script::prepare::Shifts;
 use crate::script::tables::Writes;
@@ -146,6 +147,7 @@ pub struct Shared {
     pub host: HostSlot,
     /// What the running cell will have written.
     pub writes: Writes,
+    pub beside: Beside,
     stop: Arc<AtomicBool>,
     references: Rc<References>,
     folder: Rc<RefCell<PathBuf>>,
@@ -171,6 +173,7 @@ impl Shared {
             state: Rc::default(),
             host: HostSlot::default(),
             writes: Writes::default(),
+            beside: Beside::default(),
             stop,
             references: Rc::new(references),
             folder: Rc::default(),

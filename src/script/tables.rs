@@ -19,7 +19,7 @@ use crate::model::curve::Curve;
 use crate::model::table::Table;
 use crate::render;
 use crate::script::bind::{Native, to_value, with_context};
-use crate::script::files::read_beside;
+use crate::script::files::{Beside, read_beside};
 use crate::script::state::{Shared, place_of};
 
 /// The extension of the files that are written.
@@ -126,8 +126,12 @@ impl Writes {
     ///
     /// # Errors
     /// A file cannot be written.
-    pub fn commit(&self) -> Result<(), FileError> {
+    pub fn commit(&self, beside: &Beside) -> Result<(), FileError> {
         let pending = std::mem::take(&mut *self.0.borrow_mut());
+        if beside.is_apart() {
+            pending.values().for_each(|written| beside.keep(&written.name, &written.text));
+            return Ok(());
+        }
         let failed =
             |written: &Written, error: &io::Error| FileError::Write { name: written.name.clone(), why: plain(error) };
         let mut ready = Vec::new();

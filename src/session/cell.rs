@@ -99,7 +99,7 @@ impl Session {
         };
         let result = match result {
             Ok(shown) if keep == Keep::Everything => {
-                let written = self.shared.writes.commit().map(|()| shown);
+                let written = self.shared.writes.commit(&self.shared.beside).map(|()| shown);
                 written.map_err(|error| Fault::from(error).at(Some(Place { cell: cell.into(), line: 0, column: 0 })))
             }
             other => other,

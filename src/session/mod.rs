@@ -109,6 +109,17 @@ impl Session {
         self.shared.set_folder(folder);
     }
 
+    /// Keeps the disk out: cells read these contents in place of the files of those names, and what they write is kept in
+    /// memory. Other files are still read.
+    pub fn set_apart(&mut self, files: BTreeMap<String, Arc<[u8]>>) {
+        self.shared.beside.set_apart(files);
+    }
+
+    /// Every file beside the notebook that cells have read, with its content.
+    pub fn files_read(&self) -> BTreeMap<String, Arc<[u8]>> {
+        self.shared.beside.read()
+    }
+
     /// Datasets that cells have loaded, in the order in which they lie over each other.
     pub fn loaded(&self) -> Vec<Loaded> {
         self.shared.state().loaded.clone()

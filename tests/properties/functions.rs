@@ -17,7 +17,7 @@ fn functions() -> Vec<Arc<Function>> {
 }
 
 /// Sizes of the terms that H, S and Cp of one interval are summed from: rounding is of their order.
-fn scales(function: &Function, interval: &Interval, t: f64) -> (f64, f64, f64) {
+pub fn scales(function: &Function, interval: &Interval, t: f64) -> (f64, f64, f64) {
     let a = &interval.a;
     let powers = [1.0 / (t * t), 1.0 / t, 1.0, t, t * t, t * t * t, t * t * t * t];
     let cp: f64 = a.iter().zip(powers).map(|(a, power)| (a * power).abs()).sum();
@@ -26,7 +26,7 @@ fn scales(function: &Function, interval: &Interval, t: f64) -> (f64, f64, f64) {
     (r * cp, r * (cp * t + logarithms * t.max(1.0) + interval.b[0].abs()), r * (cp + logarithms + interval.b[1].abs()))
 }
 
-const ROUNDING: f64 = 16.0 * f64::EPSILON;
+pub const ROUNDING: f64 = 16.0 * f64::EPSILON;
 
 /// Two temperatures inside one interval, by shares of it.
 fn shares() -> impl Strategy<Value = (f64, f64)> {

@@ -10,9 +10,12 @@ mod formation;
 mod heat_capacity;
 mod independence;
 mod measured;
+mod own_figures;
 mod phase;
 mod pressure;
 mod saturation;
+mod solution;
+mod vessel;
 
 pub use alternatives::{
     with_atmosphere, with_constant_heat_capacity, with_enthalpy, with_internal_energy, with_mean_heat_capacity,
@@ -24,12 +27,15 @@ pub use fit::fit_quality;
 pub use formation::formation_dataset;
 pub use heat_capacity::{aqueous_heat_capacity, constant_heat_capacity};
 pub use independence::worst_correlation;
+pub use own_figures::{constant_enthalpy, own_vapour};
 pub use phase::stable_phase;
 pub(in crate::model) use phase::{RESOLUTION_CONDENSED, RESOLUTION_GAS};
 pub use pressure::{
     condensed_volume, constant_expansivity, ideal_gas, pressure_neglected, second_virial, standard_pressure, unmixed,
 };
 pub use saturation::{saturated_leg, saturated_vapour, saturated_virial};
+pub use solution::infinite_dilution;
+pub use vessel::{complete_conversion, vessel_gas, vessel_ideal, vessel_virial, vessel_volumes};
 
 use std::rc::Rc;
 

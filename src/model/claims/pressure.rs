@@ -36,7 +36,7 @@ fn at_pressures(cx: &Cx, call: &Call, asked: &Asked) -> Option<Vec<AtPressure>> 
 }
 
 /// Terms of one sort, each with its place among all.
-fn of(terms: &Terms, suits: impl Fn(&Species) -> bool) -> Vec<(usize, &Arc<Substance>, f64)> {
+pub(super) fn of(terms: &Terms, suits: impl Fn(&Species) -> bool) -> Vec<(usize, &Arc<Substance>, f64)> {
     let all = terms.terms().iter().enumerate();
     all.filter(|(_, term)| suits(&term.substance.species)).map(|(at, term)| (at, &term.substance, term.nu)).collect()
 }
@@ -45,24 +45,29 @@ fn condensed(species: &Species) -> bool {
     !matches!(species.phase.state, Aggregate::Gas | Aggregate::Aqueous)
 }
 
-fn names<'a>(all: impl IntoIterator<Item = &'a str>) -> String {
+pub(super) fn names<'a>(all: impl IntoIterator<Item = &'a str>) -> String {
     all.into_iter().collect::<Vec<_>>().join(", ")
 }
 
 /// Gases sorted by what is known of them.
 #[derive(Default)]
-struct Sorted<'a> {
+pub(super) struct Sorted<'a> {
     /// With |B| p/(R T).
-    thin: Vec<(&'a Arc<Substance>, f64)>,
+    pub thin: Vec<(&'a Arc<Substance>, f64)>,
     /// With the reason.
-    dense: Vec<(&'a str, String)>,
+    pub dense: Vec<(&'a str, String)>,
     /// With what is missing.
-    lacking: Vec<(&'a str, String)>,
-    citations: Vec<Citation>,
-    estimated: bool,
+    pub lacking: Vec<(&'a str, String)>,
+    pub citations: Vec<Citation>,
+    pub estimated: bool,
 }
 
-fn sorted<'a>(cx: &Cx, gases: &[(usize, &'a Arc<Substance>, f64)], at: &[AtPressure], t_k: f64) -> Sorted<'a> {
+pub(super) fn sorted<'a>(
+    cx: &Cx,
+    gases: &[(usize, &'a Arc<Substance>, f64)],
+    at: &[AtPressure],
+    t_k: f64,
+) -> Sorted<'a> {
     let r = cx.constants().molar_gas.value;
     let mut sorted = Sorted::default();
     for (nth, substance, _) in gases {
@@ -94,7 +99,7 @@ fn bar(p_pa: f64) -> String {
     round::significant(p_pa / 1e5, 3)
 }
 
-fn reasons(all: &[(&str, String)]) -> String {
+pub(super) fn reasons(all: &[(&str, String)]) -> String {
     all.iter().map(|(id, why)| format!("{id}: {why}")).collect::<Vec<_>>().join("; ")
 }
 
