@@ -21,6 +21,7 @@ use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
 use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
+use crate::model::solid::Crystal;
 use crate::model::substance::PureSubstance;
 use crate::model::table::Table;
 use crate::model::terms::Terms;
@@ -43,6 +44,7 @@ pub enum Value {
     Substance(Rc<PureSubstance>),
     Stream(Rc<Stream>),
     Molecule(Rc<Molecule>),
+    Crystal(Rc<Crystal>),
     /// Temperatures at which a formula is asked in one call.
     Grid(Rc<Grid>),
     Curve(Rc<Curve>),
@@ -69,6 +71,7 @@ impl Value {
             Value::Substance(_) => "a substance",
             Value::Stream(_) => "a stream",
             Value::Molecule(_) => "a molecule",
+            Value::Crystal(_) => "a crystal",
             Value::Grid(_) => "a grid of temperatures",
             Value::Curve(_) => "a curve",
             Value::Table(_) => "a table",
@@ -87,6 +90,7 @@ pub enum On {
     Reaction,
     Substance,
     Molecule,
+    Crystal,
     Curve,
     Table,
 }
@@ -274,6 +278,7 @@ impl Call {
             Some(Value::Reaction(reaction)) => Some(reaction),
             Some(Value::Substance(substance)) => Some(substance),
             Some(Value::Molecule(molecule)) => Some(molecule.terms()),
+            Some(Value::Crystal(crystal)) => Some(crystal.terms()),
             _ => None,
         }
     }
@@ -375,6 +380,7 @@ impl Step for Call {
                 Value::Options(options) => words.extend(in_words(options)),
                 Value::Stream(stream) => words.push(stream.name.to_string()),
                 Value::Molecule(molecule) => words.push(molecule.text().to_owned()),
+                Value::Crystal(crystal) => words.push(crystal.text().to_owned()),
                 Value::Grid(grid) => words.push(grid.words()),
                 Value::Curve(curve) => words.push(curve.words()),
                 Value::Table(table) => words.push(table.name.to_string()),
@@ -445,6 +451,7 @@ impl Card {
             On::Reaction => "reaction.",
             On::Substance => "substance.",
             On::Molecule => "molecule.",
+            On::Crystal => "crystal.",
             On::Curve => "curve.",
             On::Table => "table.",
         };

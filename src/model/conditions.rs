@@ -55,8 +55,9 @@ pub fn line(cx: &Cx, value: &Quantity) -> String {
             }
         }
     }
-    let per_substance = call_of(value.node())
-        .is_some_and(|call| matches!(call.args.first(), Some(Value::Substance(_) | Value::Molecule(_))));
+    let per_substance = call_of(value.node()).is_some_and(|call| {
+        matches!(call.args.first(), Some(Value::Substance(_) | Value::Molecule(_) | Value::Crystal(_)))
+    });
     if let (Some(zero), true) = (&state.zero, per_substance) {
         parts.push(format!("counted from {zero}"));
     }
@@ -201,7 +202,7 @@ pub fn symbol(value: &Quantity) -> String {
             let standard = value.kind().state().is_some_and(|state| state.standard);
             format!("Δr{}{}", what.symbol(), if standard { "°" } else { "" })
         }
-        [Value::Substance(_) | Value::Molecule(_), ..] => {
+        [Value::Substance(_) | Value::Molecule(_) | Value::Crystal(_), ..] => {
             let standard = value.kind().state().is_some_and(|state| state.standard);
             format!("{}{}", what.symbol(), if standard { "°" } else { "" })
         }

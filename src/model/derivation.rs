@@ -395,6 +395,7 @@ fn written(value: &Value, numbers: &Numbers) -> String {
         Value::Substance(substance) => substance.text().to_owned(),
         Value::Stream(stream) => stream.name.to_string(),
         Value::Molecule(molecule) => molecule.text().to_owned(),
+        Value::Crystal(crystal) => crystal.text().to_owned(),
         Value::Grid(grid) => grid.words(),
         Value::Curve(curve) => curve.words(),
         Value::Table(table) => table.name.to_string(),

@@ -46,6 +46,7 @@ pub mod refusal;
 pub mod remedy;
 pub mod review;
 pub mod shortcut;
+pub mod solid;
 mod stated;
 pub mod statmech;
 pub mod substance;
@@ -124,6 +125,19 @@ pub const CARDS: &[&Card] = &[
     &molecule::limits::GROUND_STATE,
     &molecule::formation::FORMATION_ENTHALPY,
     &molecule::power_fit::POWER_FIT,
+    &solid::answers::CRYSTAL,
+    &solid::answers::HEAT_CAPACITY,
+    &solid::answers::HEAT_CAPACITY_V,
+    &solid::answers::ENTROPY,
+    &solid::answers::ENTHALPY_INCREMENT,
+    &solid::answers::GIBBS_ENERGY,
+    &solid::answers::CONTRIBUTIONS,
+    &solid::answers::CLASSICAL_LIMIT,
+    &solid::answers::FORMATION_ENTHALPY,
+    &solid::fit::DEBYE_TEMPERATURE,
+    &solid::fit::EINSTEIN_TEMPERATURE,
+    &solid::estimate::KOPP,
+    &solid::estimate::DULONG_PETIT,
     &remedy::CORRECTED,
     &remedy::WIDENED,
     &shortcut::VALID_TO,

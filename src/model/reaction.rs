@@ -17,6 +17,7 @@ use crate::model::card::{Arg, Card, Cx, Default, On, Takes, Value};
 use crate::model::fit_card;
 use crate::model::molecule::error::MoleculeError;
 use crate::model::molecule::formation::Own;
+use crate::model::solid::answers;
 use crate::model::terms::{Stand, Term, Terms};
 use crate::units::Entity;
 
@@ -129,9 +130,12 @@ fn given(cx: &Cx, options: Option<&Value>) -> Result<Named, Fault> {
                 substance: Arc::clone(&molecule.definition().substance),
                 thermo: Rc::new(Own::new(cx, molecule)?),
             },
+            Value::Crystal(crystal) => {
+                Stand { substance: Arc::clone(&crystal.substance), thermo: Rc::new(answers::Own::new(cx, crystal)?) }
+            }
             Value::Substance(own) => fit_card::stand(cx, name, own)?,
             other => {
-                let (key, wanted) = (format!("own: {name}"), "a molecule or a fitted heat capacity");
+                let (key, wanted) = (format!("own: {name}"), "a molecule, a crystal or a fitted heat capacity");
                 return Err(MoleculeError::Sort { key, wanted, given: other.sort().to_owned() }.into());
             }
         };

@@ -40,6 +40,8 @@ pub const CLAIMS: &[(&str, &str)] = &[
     ("free-rotor", "the internal rotation turns freely"),
     ("high-temperature-rotation", "the rotational levels lie so dense that their sum is an integral"),
     ("symmetry-number", "the symmetry number counts the rotations that leave the molecule as it was"),
+    ("debye-model", "the crystal's heat capacity is that of waves and oscillators with these temperatures"),
+    ("additive-estimate", "each atom of a crystal brings its own heat capacity"),
     ("linear-propagation", "first derivatives are enough to propagate the uncertainties"),
     ("uncertainty-incomplete", "the inputs that state no uncertainty add none that matters"),
     ("basis-unnamed", "a mole of nothing in particular was a mole of what it met"),

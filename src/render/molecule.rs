@@ -7,6 +7,7 @@ use crate::model::molecule::Molecule;
 use crate::model::molecule::definition::Motion;
 use crate::model::molecule::power_fit::HandedOn;
 use crate::model::molecule::shares::{Row, Shares};
+use crate::model::solid::Crystal;
 use crate::quantity::round;
 use crate::render::plot::curve::{Axis, Curve, Picture, svg};
 use crate::render::{Bundle, html};
@@ -34,6 +35,22 @@ pub fn bundle(molecule: &Molecule) -> Bundle {
         format!(", symmetry number {}", definition.symmetry_number)
     };
     let text = format!("molecule of {}: {motion}{sigma}", molecule.text());
+    Bundle::text(text.clone()).with_text("text/html", html::escaped(&text))
+}
+
+/// What a crystal is made of, in one line.
+pub fn crystal(crystal: &Crystal) -> Bundle {
+    let modes = crystal.modes.iter().map(|modes| {
+        let theta = round::shortest(modes.theta.value);
+        format!("{} modes after {}, {theta} K", modes.count, modes.spectrum.word())
+    });
+    let mut text = format!("crystal of {}: {}", crystal.text(), modes.collect::<Vec<_>>().join(", "));
+    if crystal.gamma.is_some() {
+        text.push_str(", electrons");
+    }
+    if crystal.expansion.is_some() {
+        text.push_str(", expansion");
+    }
     Bundle::text(text.clone()).with_text("text/html", html::escaped(&text))
 }
 

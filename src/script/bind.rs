@@ -20,6 +20,7 @@ use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
 use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
+use crate::model::solid::Crystal;
 use crate::model::substance::PureSubstance;
 use crate::model::table::Table;
 use crate::quantity::{Quantity, text};
@@ -37,10 +38,12 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
     engine.register_type_with_name::<Rc<PureSubstance>>("substance");
     engine.register_type_with_name::<Rc<Stream>>("stream");
     engine.register_type_with_name::<Rc<Molecule>>("molecule");
+    engine.register_type_with_name::<Rc<Crystal>>("crystal");
     for name in ["to_string", "to_debug"] {
         engine.register_fn(name, |reaction: &mut Rc<Reaction>| reaction.text().to_owned());
         engine.register_fn(name, |substance: &mut Rc<PureSubstance>| substance.text().to_owned());
         engine.register_fn(name, |molecule: &mut Rc<Molecule>| molecule.text().to_owned());
+        engine.register_fn(name, |crystal: &mut Rc<Crystal>| crystal.text().to_owned());
     }
     engine.register_type_with_name::<Answer>("answer");
     // Asked for every property that has no getter of its own.
@@ -88,6 +91,7 @@ fn receiver(on: On) -> Option<TypeId> {
         On::Reaction => Some(TypeId::of::<Rc<Reaction>>()),
         On::Substance => Some(TypeId::of::<Rc<PureSubstance>>()),
         On::Molecule => Some(TypeId::of::<Rc<Molecule>>()),
+        On::Crystal => Some(TypeId::of::<Rc<Crystal>>()),
         On::Curve => Some(TypeId::of::<Rc<Curve>>()),
         On::Table => Some(TypeId::of::<Rc<Table>>()),
     }
@@ -109,6 +113,9 @@ pub fn to_value(value: &Dynamic) -> Value {
     }
     if let Some(molecule) = value.read_lock::<Rc<Molecule>>() {
         return Value::Molecule(Rc::clone(&molecule));
+    }
+    if let Some(crystal) = value.read_lock::<Rc<Crystal>>() {
+        return Value::Crystal(Rc::clone(&crystal));
     }
     if let Some(grid) = value.read_lock::<Rc<Grid>>() {
         return Value::Grid(Rc::clone(&grid));
@@ -159,6 +166,7 @@ fn from_value(value: Value) -> Dynamic {
         Value::Substance(substance) => Dynamic::from(substance),
         Value::Stream(stream) => Dynamic::from(stream),
         Value::Molecule(molecule) => Dynamic::from(molecule),
+        Value::Crystal(crystal) => Dynamic::from(crystal),
         Value::Grid(grid) => Dynamic::from(grid),
         Value::Curve(curve) => Dynamic::from(curve),
         Value::Table(table) => Dynamic::from(table),

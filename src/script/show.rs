@@ -16,6 +16,7 @@ use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
 use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
+use crate::model::solid::Crystal;
 use crate::model::substance::PureSubstance;
 use crate::model::table::Table;
 use crate::quantity::Quantity;
@@ -59,6 +60,9 @@ fn own(value: &Dynamic) -> Option<Bundle> {
     }
     if let Some(molecule) = value.read_lock::<Rc<Molecule>>() {
         return Some(render::molecule::bundle(&molecule));
+    }
+    if let Some(crystal) = value.read_lock::<Rc<Crystal>>() {
+        return Some(render::molecule::crystal(&crystal));
     }
     value.read_lock::<Fault>().map(|fault| Bundle::text(fault.to_string()))
 }

@@ -14,6 +14,7 @@ use std::sync::Arc;
 
 use smallvec::SmallVec;
 
+use crate::chem::species::Species;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Call, Card, Cx, On, Value};
@@ -73,7 +74,7 @@ fn formation(cx: &Cx, call: &Rc<Call>) -> Result<Option<Quantity>, Fault> {
                 inputs.push((node, by));
             }
         }
-        for (leaf, count) in elements(cx, molecule)? {
+        for (leaf, count) in elements(cx, &molecule.definition().substance.species)? {
             si -= count * leaf.si();
             inputs.push((leaf, -count));
         }
@@ -90,9 +91,11 @@ fn formation(cx: &Cx, call: &Rc<Call>) -> Result<Option<Quantity>, Fault> {
     Ok(Some(Quantity::from_step(si, dim, Kind::in_state(What::H, state), inputs, step, cx.place.clone())?))
 }
 
-/// H(298.15 K) − H(0) of each element's reference substance, and how many moles of it one mole of the molecule takes.
-fn elements(cx: &Cx, molecule: &Molecule) -> Result<Vec<(Rc<Node>, f64)>, Fault> {
-    let species = &molecule.definition().substance.species;
+/// H(298.15 K) − H(0) of each element's reference substance, and how many moles of it one mole of the species takes.
+///
+/// # Errors
+/// The figure of an element is not on record, or the species is an ion.
+pub(in crate::model) fn elements(cx: &Cx, species: &Species) -> Result<Vec<(Rc<Node>, f64)>, Fault> {
     if species.charge != 0 {
         return Err(MoleculeError::ElementIncrement { element: "the electron".to_owned() }.into());
     }

@@ -79,6 +79,14 @@ pub fn treatment_of(cx: &Cx, map: &Map, base: Treatment) -> Result<Treatment, Fa
     Reader::new(cx, map)?.treatment(map, base)
 }
 
+/// The formation enthalpy that a map gives, with its zero checked.
+///
+/// # Errors
+/// It is no energy per mole, or its temperature is not said.
+pub fn given_formation(cx: &Cx, map: &Map) -> Result<Option<GivenFormation>, Fault> {
+    Reader::new(cx, map)?.formation()
+}
+
 /// The map with what is needed to read it.
 struct Reader<'a> {
     cx: &'a Cx<'a>,

@@ -4,6 +4,7 @@
 //! [`gas::Gas`] answers with a [`Share`]; the crystal's oscillators are the same ones. The surprise: a wavenumber enters
 //! as its temperature θ = hcν/k, so that no unit is left in any formula but kelvin.
 
+pub mod debye;
 pub mod diatomic;
 pub mod gas;
 pub mod hindered;
