@@ -175,11 +175,12 @@ impl Diatomic {
             }
             slopes
         };
-        let all: Vec<Vec<f64>> =
-            self.levels.iter().take_while(|level| level.v == 0 || level.e_k <= REACH * t_k).map(slopes).collect();
+        // The list runs through J for each v, so that levels within reach come again after one that is not.
+        let within = self.levels.iter().filter(|level| level.v == 0 || level.e_k <= REACH * t_k);
+        let all: Vec<(&Rovibronic, Vec<f64>)> = within.map(|level| (level, slopes(level))).collect();
         let count = if de.is_some() { 5 } else { 4 };
         let of = |keep: &dyn Fn(u32) -> bool, offset: f64| {
-            let levels = self.levels.iter().zip(&all).filter(|(level, _)| keep(level.j)).map(|(level, slopes)| {
+            let levels = all.iter().filter(|(level, _)| keep(level.j)).map(|(level, slopes)| {
                 (Level { e_k: level.e_k - offset, g: level.g * self.weight(level.j) }, slopes.as_slice())
             });
             levels::changes_of(levels, count, t_k)
