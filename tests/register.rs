@@ -408,3 +408,26 @@ fn inputs_of_one_table_are_priced_by_the_worst_correlation() {
     let alone = report(&desk, &asked_of(&desk, &SUBSTANCE_ENTHALPY, "CO(g)", "298.15 K"), &[]);
     assert!(rows(&alone, "independent-inputs").is_empty());
 }
+
+#[test]
+fn an_equilibrium_constant_has_its_prices_in_lg_too() {
+    let desk = Desk::new();
+    let ask = |mode| desk.ask(&EQUILIBRIUM_CONSTANT, SHIFT, "1000 K", &[("heat_capacity", mode)]).unwrap();
+    let (held, full) = (ask("constant"), ask("full"));
+    let shown_lg = |text: &str| -> f64 {
+        let inside = text.split('(').nth(1).and_then(|rest| rest.strip_suffix(" in lg K°)"));
+        number(inside.unwrap_or_else(|| panic!("{text} says nothing of lg K°")))
+    };
+    let wanted = f64::log10(held.si() / full.si());
+    let taken = report(&desk, &held, &[]);
+    // Two digits are shown.
+    let shown = shown_lg(only(&taken, "constant-heat-capacity").price_shown.as_deref().unwrap());
+    assert!((shown / wanted - 1.0).abs() < 0.05, "{shown} and {wanted}");
+    let record = report(&desk, &full, &[]);
+    let not_taken = record.alternatives.iter().find(|one| one.id == "constant-heat-capacity").unwrap();
+    assert!((shown_lg(&not_taken.price_shown) / wanted - 1.0).abs() < 0.05, "{}", not_taken.price_shown);
+    // A price of u is that of u(lg K°) = u(K°)/(K° ln 10).
+    let row = only(&record, "independent-inputs");
+    let of_u = price(row) / full.si() / std::f64::consts::LN_10;
+    assert!((shown_lg(row.price_shown.as_deref().unwrap()) / of_u - 1.0).abs() < 0.05, "{:?}", row.price_shown);
+}

@@ -122,14 +122,19 @@ impl Paired {
         t_k: f64,
         (property, mode): (Property, HeatCapacity),
         cx: &Cx,
-    ) -> Option<Paired> {
-        let formation = gather::term_formation(unpaired, &dataset, cx.data())?;
+    ) -> Paired {
+        // S and Cp contain no formation enthalpy, and none is looked up for them.
+        let formation = match property.uses_formation() {
+            true => gather::term_formation(unpaired, &dataset, cx.data())
+                .unwrap_or_else(|| unreachable!("the dataset was found to have it")),
+            false => Figure::of_nodes(0.0, []),
+        };
         let r = cx.constants().molar_gas.value;
         // Of n dimers n molecules are lost, and Δn(gas) R T counts them as if they were there.
         let lost = if property.uses_gas_law() { pairing.n * r * t_k } else { 0.0 };
         let (unpaired, shift, in_full) = (unpaired.clone(), pairing.h + lost, mode == HeatCapacity::Full);
         let unpaired = Term { nu: 1.0, ..unpaired };
-        Some(Paired { unpaired, dataset, formation, pairing, dimer, t_k, shift, in_full })
+        Paired { unpaired, dataset, formation, pairing, dimer, t_k, shift, in_full }
     }
 
     fn plain(&self, cx: &Cx, t_k: f64) -> Result<Contribution, Fault> {

@@ -307,6 +307,10 @@ pub fn value(
     if evaluated.by_r != 0.0 {
         inputs.push((Rc::clone(r.node()), evaluated.by_r));
     }
+    if property == Property::K {
+        // ln K° = -ΔrG°/(R T), so dK°/dR = -K° ln K°/R.
+        inputs.push((Rc::clone(r.node()), -evaluated.si * math::ln(evaluated.si) / r.si()));
+    }
     inputs.push((as_argument(t), evaluated.slope));
     let step = Rc::clone(call);
     Ok(Quantity::from_step(
@@ -478,6 +482,17 @@ mod tests {
                 .find(|s| matches!(s.input().unwrap().key, LeafKey::Constant { name: "molar gas constant", .. }));
             assert_eq!(of_r.map(|s| s.derivative), weight, "{} of {equation}", card.id);
         }
+        // K = exp(-G/(R T)), by a central difference in R; over 2e-6 of R it is off by less than 1e-8, and rounding by 1e-9.
+        let value = ask(&EQUILIBRIUM_CONSTANT, SHIFT, "600 K", &[]).unwrap();
+        let of_r = value
+            .sensitivities()
+            .into_iter()
+            .find(|s| matches!(s.input().unwrap().key, LeafKey::Constant { name: "molar gas constant", .. }));
+        let (g, r) = (ask(&GIBBS_ENERGY, SHIFT, "600 K", &[]).unwrap().si(), constants::current().molar_gas.value);
+        let k = |r: f64| math::exp(-g / (r * 600.0));
+        let difference = (k(r * (1.0 + 1e-6)) - k(r * (1.0 - 1e-6))) / (2e-6 * r);
+        let derivative = of_r.map(|s| s.derivative).unwrap();
+        assert!((derivative / difference - 1.0).abs() < 1e-7, "{derivative} and {difference}");
     }
 
     #[test]

@@ -55,6 +55,8 @@ pub struct Row {
     pub price: Option<f64>,
     /// By first derivative, where the steps between cannot be recomputed.
     pub first_order: bool,
+    /// The price is that of u, not of the value.
+    pub of_u: bool,
     /// How it was tested, or what is missing, or why it is false.
     pub note: String,
     /// What was decided about it.
@@ -229,6 +231,7 @@ fn row(at: &At, group: &[Finding], judgement: Judgement, dealings: &[&Dealing]) 
         status,
         price,
         first_order,
+        of_u: group.iter().any(|finding| matches!(finding.tested, Tested::Spread { .. })),
         note: listed_once(group.iter().map(note)),
         dealt: (!dealt.is_empty()).then(|| dealt.join("; ")),
         answered,

@@ -1,6 +1,7 @@
 //! Plain numerics, with no nouns of the field.
 
 pub mod cholesky;
+pub mod edits;
 pub mod lsq;
 pub mod math;
 pub mod pchip;

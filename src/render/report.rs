@@ -5,10 +5,12 @@
 
 use serde::{Deserialize, Serialize};
 
+use crate::model::answer;
 use crate::model::card::Cx;
 use crate::model::review::{self, Dealing, Review};
+use crate::num::math;
 use crate::quantity::Quantity;
-use crate::quantity::round::shortest;
+use crate::quantity::round::{self, shortest};
 use crate::record::register::Status;
 use crate::record::spread::Spread;
 use crate::render::headline::Headline;
@@ -129,6 +131,20 @@ fn record(label: &str, value: &Quantity, headline: &Headline, review: &Review) -
         let number = review::signed(review.precision, price);
         if reader.is_empty() { number } else { format!("{number} {reader}") }
     };
+    // K° lives in its logarithm, where a price can be set beside its uncertainty.
+    let logarithmic = |price: f64, ratio: f64, of_u: bool| {
+        let lg = if of_u { price / value.si() / std::f64::consts::LN_10 } else { math::log10(ratio) };
+        if answer::is_logarithmic(value) && lg.is_finite() && price != 0.0 {
+            let sign = if lg > 0.0 { "+" } else { "" };
+            format!(" ({sign}{} in lg K°)", round::significant(lg, 2))
+        } else {
+            String::new()
+        }
+    };
+    let of_row = |row: &review::Row| {
+        let price = row.price?;
+        Some(with_unit(price) + logarithmic(price, value.si() / (value.si() - price), row.of_u).as_str())
+    };
     let missing = |(field, records): &(String, Vec<String>)| {
         records.iter().map(|record| format!("{field} of {record}")).collect::<Vec<_>>()
     };
@@ -162,7 +178,7 @@ fn record(label: &str, value: &Quantity, headline: &Headline, review: &Review) -
                 place: row.place.clone(),
                 first_order: row.first_order,
                 dealt: row.dealt.clone(),
-                price_shown: row.price.map(with_unit),
+                price_shown: of_row(row),
             })
             .collect(),
         alternatives: review
@@ -173,7 +189,8 @@ fn record(label: &str, value: &Quantity, headline: &Headline, review: &Review) -
                 price: shortest(shortcut.price),
                 price_unit: price_unit.clone(),
                 words: shortcut.words.clone(),
-                price_shown: with_unit(shortcut.price),
+                price_shown: with_unit(shortcut.price)
+                    + logarithmic(shortcut.price, 1.0 + shortcut.price / value.si(), false).as_str(),
             })
             .collect(),
         sources: review.sources.iter().map(ToString::to_string).collect(),

@@ -1,5 +1,6 @@
 //! Reports and values as plain text, for terminals and for clients without HTML.
 
+use crate::num::math;
 use crate::quantity::Quantity;
 use crate::quantity::round::significant;
 use crate::render::headline::Headline;
@@ -49,6 +50,11 @@ pub fn cautions(cautions: &[String]) -> String {
 pub fn tolerance(report: &Report) -> String {
     let number =
         report.record.tolerance.parse().map_or_else(|_| report.record.tolerance.clone(), |t| significant(t, 2));
+    if report.headline.logarithm.is_some()
+        && let (Ok(t), Ok(k)) = (report.record.tolerance.parse::<f64>(), report.record.value.parse::<f64>())
+    {
+        return format!("{number}, {} in lg K°", significant(math::log10(1.0 + t / k), 2));
+    }
     let unit = report.headline.unit_text();
     if unit.is_empty() { number } else { format!("{number} {unit}") }
 }

@@ -7,6 +7,8 @@ use std::collections::{BTreeMap, BTreeSet};
 
 use rhai::{Dynamic, Engine};
 
+use crate::num::edits;
+
 /// How the engine begins the name it makes up for a closure.
 const CLOSURE: &str = "anon$";
 
@@ -165,34 +167,12 @@ pub fn nearest<'a>(wanted: &str, known: impl IntoIterator<Item = &'a str>) -> Op
     };
     let mut best: Option<(usize, &str)> = None;
     for name in known {
-        let steps = if wanted.to_lowercase() == name.to_lowercase() { 0 } else { edits(wanted, name) };
+        let steps = if wanted.to_lowercase() == name.to_lowercase() { 0 } else { edits::between(wanted, name) };
         if name != wanted && steps <= allowed && best.is_none_or(|(least, found)| (steps, name) < (least, found)) {
             best = Some((steps, name));
         }
     }
     best.map(|(_, name)| name)
-}
-
-/// Insertions, deletions, replacements and swaps of neighbours that turn one word into the other.
-fn edits(from: &str, to: &str) -> usize {
-    let from: Vec<char> = from.chars().collect();
-    let to: Vec<char> = to.chars().collect();
-    let mut table = vec![vec![0_usize; to.len() + 1]; from.len() + 1];
-    for i in 0..=from.len() {
-        for j in 0..=to.len() {
-            table[i][j] = if i == 0 || j == 0 {
-                i + j
-            } else {
-                let replaced = table[i - 1][j - 1] + usize::from(from[i - 1] != to[j - 1]);
-                let mut least = replaced.min(table[i - 1][j] + 1).min(table[i][j - 1] + 1);
-                if i > 1 && j > 1 && from[i - 1] == to[j - 2] && from[i - 2] == to[j - 1] {
-                    least = least.min(table[i - 2][j - 2] + 1);
-                }
-                least
-            };
-        }
-    }
-    table[from.len()][to.len()]
 }
 
 #[cfg(test)]

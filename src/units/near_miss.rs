@@ -2,6 +2,7 @@
 //!
 //! Used only while an error is being made, so it simply tries everything.
 
+use crate::num::edits;
 use crate::units::refused::refused;
 use crate::units::table::{Row, Spelled, UNITS, spellings};
 
@@ -117,30 +118,12 @@ fn distance(symbol: &str, lower: &str, spelling: &str, spelled: Spelled) -> Opti
         3..=5 => 1,
         _ => 2,
     };
-    let changed = edits(symbol, spelling, allowed)?;
-    usual.then_some(2 + changed)
-}
-
-/// Letters inserted, dropped, changed or swapped with a neighbour, up to `most`.
-fn edits(a: &str, b: &str, most: usize) -> Option<usize> {
-    let (a, b): (Vec<char>, Vec<char>) = (a.chars().collect(), b.chars().collect());
-    if a.len().abs_diff(b.len()) > most {
+    // Two texts whose lengths differ by more than this cannot be so near.
+    if letters.abs_diff(spelling.chars().count()) > allowed {
         return None;
     }
-    let mut rows = vec![(0..=b.len()).collect::<Vec<usize>>()];
-    for i in 1..=a.len() {
-        let mut row = vec![i];
-        for j in 1..=b.len() {
-            let changed = rows[i - 1][j - 1] + usize::from(a[i - 1] != b[j - 1]);
-            let mut best = changed.min(rows[i - 1][j] + 1).min(row[j - 1] + 1);
-            if i > 1 && j > 1 && a[i - 1] == b[j - 2] && a[i - 2] == b[j - 1] {
-                best = best.min(rows[i - 2][j - 2] + 1);
-            }
-            row.push(best);
-        }
-        rows.push(row);
-    }
-    Some(rows[a.len()][b.len()]).filter(|&changed| changed <= most)
+    let changed = edits::between(symbol, spelling);
+    (usual && changed <= allowed).then_some(2 + changed)
 }
 
 #[cfg(test)]
@@ -175,11 +158,5 @@ mod tests {
     fn nothing_is_offered_for_what_is_not_near_anything() {
         assert!(near("furlong").is_empty(), "{:?}", near("furlong"));
         assert!(near(&"x".repeat(400)).is_empty());
-    }
-
-    #[test]
-    fn swapped_neighbours_are_one_edit() {
-        assert_eq!(edits("abm", "bam", 2), Some(1));
-        assert_eq!(edits("abc", "xyz", 2), None);
     }
 }

@@ -85,14 +85,9 @@ fn instead(
     asked: &Asked,
     paired: Vec<Option<(Arc<Substance>, Pairing)>>,
 ) -> Result<Rc<Node>, Fault> {
-    // An entropy needs no formation enthalpies; the pairs that it is priced against are made of two records all the same.
-    let formation = match &asked.method.formation {
-        gather::Formation::Unneeded => &gather::Formation::First,
-        asked => asked,
-    };
-    let datasets = gather::datasets_for(asked.terms, formation, cx.data())?;
+    let datasets = gather::datasets_for(asked.terms, &asked.method.formation, cx.data())?;
     let as_it_is = |((term, pairing), dataset): ((&Term, Option<_>), &_)| {
-        let own = pairing.and_then(|(dimer, pairing)| {
+        let own = pairing.map(|(dimer, pairing)| {
             let how = (asked.property, asked.method.heat_capacity);
             Paired::new(term, dimer, pairing, Clone::clone(dataset), asked.t_k, how, cx)
         });
