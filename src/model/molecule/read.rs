@@ -341,15 +341,9 @@ impl<'a> Reader<'a> {
         let quantity = self.quantity("molar_mass", given)?;
         let wanted = unit_parse::unit("kg/mol")?.dim.without_basis();
         if quantity.dim().without_basis() != wanted {
-            let given = reader_text(&quantity.unit());
-            let key = "molar_mass".to_owned();
-            return Err(MoleculeError::Dimension {
-                key,
-                given,
-                wanted: "a mass per mole",
-                example: "`\"44.01 g/mol\"`",
-            }
-            .into());
+            let (key, given) = ("molar_mass".to_owned(), reader_text(&quantity.unit()));
+            let (wanted, example) = ("a mass per mole", "`\"44.01 g/mol\"`");
+            return Err(MoleculeError::Dimension { key, given, wanted, example }.into());
         }
         if quantity.si() <= 0.0 {
             let value = text::shown_plain(&quantity);
