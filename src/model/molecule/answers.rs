@@ -21,7 +21,7 @@ use crate::quantity::{Quantity, round};
 use crate::record::node::{Input, LeafKey, Node};
 use crate::source::Citation;
 use crate::units::constants::{ConstantSet, STANDARD_PRESSURE};
-use crate::units::{Base, Dimension, Kind, State, What, Zero};
+use crate::units::{Base, Dimension, Entity, Kind, State, What, Zero};
 
 /// What is asked.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -34,19 +34,23 @@ pub enum Asked {
 }
 
 impl Asked {
-    /// What a card asks, if it is one of this file.
+    /// What a card of a molecule or a crystal asks, if it is an answer at a temperature.
     pub fn of(card: &Card) -> Option<Asked> {
-        Some(match card.id {
-            "molecule.heat-capacity" => Asked::Cp,
-            "molecule.heat-capacity-v" => Asked::Cv,
-            "molecule.entropy" => Asked::S,
-            "molecule.enthalpy-increment" => Asked::Increment,
-            "molecule.gibbs-energy" => Asked::G,
+        let (family, name) = card.id.split_once('.')?;
+        if !matches!(family, "molecule" | "crystal") {
+            return None;
+        }
+        Some(match name {
+            "heat-capacity" => Asked::Cp,
+            "heat-capacity-v" => Asked::Cv,
+            "entropy" => Asked::S,
+            "enthalpy-increment" => Asked::Increment,
+            "gibbs-energy" => Asked::G,
             _ => return None,
         })
     }
 
-    fn what(self) -> What {
+    pub(in crate::model) fn what(self) -> What {
         match self {
             Asked::Cp => What::Cp,
             Asked::Cv => What::Cv,
@@ -56,10 +60,16 @@ impl Asked {
         }
     }
 
-    fn dimension(self, molecule: &Molecule) -> Dimension {
+    /// Whether the answer is counted from a start.
+    pub(in crate::model) fn needs_start(self) -> bool {
+        matches!(self, Asked::Increment | Asked::G)
+    }
+
+    /// Per mole of an entity.
+    pub(in crate::model) fn dimension(self, per: Entity) -> Dimension {
         match self {
-            Asked::Cp | Asked::Cv | Asked::S => parameter::molar_capacity(molecule.entity()),
-            Asked::Increment | Asked::G => property::dimension(Property::H, molecule.entity()),
+            Asked::Cp | Asked::Cv | Asked::S => parameter::molar_capacity(per),
+            Asked::Increment | Asked::G => property::dimension(Property::H, per),
         }
     }
 
@@ -102,9 +112,8 @@ pub fn answered(
     let pv = Share { u: 1.0, cv: if asked == Asked::Cv { 0.0 } else { 1.0 }, ..Share::default() };
     let (at_t, at_0) = (molecule.gas().share(t_k, set) + pv, molecule.gas().share(from_k, set) + pv);
     let si = r * asked.combined(as_change(at_t), as_change(at_0), t_k, from_k);
-    let needs_start = matches!(asked, Asked::Increment | Asked::G);
     let changes = molecule.derivatives(t_k);
-    let from = if needs_start { molecule.derivatives(from_k) } else { vec![] };
+    let from = if asked.needs_start() { molecule.derivatives(from_k) } else { vec![] };
     let mut inputs: SmallVec<[(Rc<Node>, f64); 2]> = SmallVec::with_capacity(changes.len() + 2);
     for (nth, (node, change)) in changes.into_iter().enumerate() {
         // Both lists are of one molecule, in one order.
@@ -180,7 +189,7 @@ pub fn value(cx: &Cx, call: &Rc<Call>, with_t: bool) -> Result<Quantity, Fault> 
     let p_pa = Some(STANDARD_PRESSURE.value);
     let kind = Kind::in_state(asked.what(), State { zero, t_k: Some(t_k), p_pa, standard: true, reaction: false });
     let step = Rc::clone(call);
-    Ok(Quantity::from_step(si, asked.dimension(molecule), kind, inputs, step, cx.place.clone())?)
+    Ok(Quantity::from_step(si, asked.dimension(molecule.entity()), kind, inputs, step, cx.place.clone())?)
 }
 
 /// What a card of this file answers for a molecule at a temperature that is a condition of somebody else's step.

@@ -15,6 +15,7 @@ use crate::model::answer::Answer;
 use crate::model::card::{Arg, Call, Card, Claim, Cx, Default, On, Takes, Value};
 use crate::model::function::T_REFERENCE;
 use crate::model::gather::{Figure, GatherError};
+use crate::model::molecule::answers::Asked;
 use crate::model::molecule::formation;
 use crate::model::molecule::parameter;
 use crate::model::molecule::shares::{Row, Shares};
@@ -27,51 +28,14 @@ use crate::record::node::{Input, LeafKey, Node};
 use crate::units::constants::STANDARD_PRESSURE;
 use crate::units::{Base, Dimension, Kind, State, What, Zero};
 
-/// What is asked.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum Asked {
-    Cp,
-    Cv,
-    S,
-    Increment,
-    G,
-}
-
-impl Asked {
-    /// What a card asks, if it is one of this file.
-    pub fn of(card: &Card) -> Option<Asked> {
-        Some(match card.id {
-            "crystal.heat-capacity" => Asked::Cp,
-            "crystal.heat-capacity-v" => Asked::Cv,
-            "crystal.entropy" => Asked::S,
-            "crystal.enthalpy-increment" => Asked::Increment,
-            "crystal.gibbs-energy" => Asked::G,
-            _ => return None,
-        })
-    }
-
-    fn what(self) -> What {
-        match self {
-            Asked::Cp => What::Cp,
-            Asked::Cv => What::Cv,
-            Asked::S => What::S,
-            Asked::Increment => What::H,
-            Asked::G => What::G,
-        }
-    }
-
-    fn combined(self, at_t: Functions, at_0: Functions, t_k: f64) -> f64 {
-        match self {
-            Asked::Cp => at_t.cp,
-            Asked::Cv => at_t.cv,
-            Asked::S => at_t.s,
-            Asked::Increment => at_t.h - at_0.h,
-            Asked::G => at_t.h - at_0.h - t_k * at_t.s,
-        }
-    }
-
-    fn needs_start(self) -> bool {
-        matches!(self, Asked::Increment | Asked::G)
+/// The combination of the functions at T and at T₀ that is asked for.
+fn combined(asked: Asked, at_t: Functions, at_0: Functions, t_k: f64) -> f64 {
+    match asked {
+        Asked::Cp => at_t.cp,
+        Asked::Cv => at_t.cv,
+        Asked::S => at_t.s,
+        Asked::Increment => at_t.h - at_0.h,
+        Asked::G => at_t.h - at_0.h - t_k * at_t.s,
     }
 }
 
@@ -118,12 +82,12 @@ fn value(cx: &Cx, call: &Rc<Call>, with_t: bool) -> Result<Quantity, Fault> {
     for (nth, (node, change)) in crystal.derivatives(t_k, r).into_iter().enumerate() {
         // Both lists are of one crystal, in one order.
         let begun = from.get(nth).map_or_else(Functions::default, |(_, change)| *change);
-        inputs.push((node, asked.combined(change, begun, t_k)));
+        inputs.push((node, combined(asked, change, begun, t_k)));
     }
     // R is a factor of what the lattice brings, not of electrons.
     let of_r = |t_k: f64| crystal.by_r(t_k, r);
     let begun = if asked.needs_start() { of_r(from_k) } else { Functions::default() };
-    inputs.push((Rc::clone(property::gas_constant(cx.constants()).node()), asked.combined(of_r(t_k), begun, t_k)));
+    inputs.push((Rc::clone(property::gas_constant(cx.constants()).node()), combined(asked, of_r(t_k), begun, t_k)));
     if with_t {
         let slope = match asked {
             Asked::Cp => at_t.cp_slope,
@@ -142,13 +106,10 @@ fn value(cx: &Cx, call: &Rc<Call>, with_t: bool) -> Result<Quantity, Fault> {
         Asked::G => Some(Zero::From(T_REFERENCE)),
         _ => None,
     };
-    let dim = match asked {
-        Asked::Cp | Asked::Cv | Asked::S => parameter::molar_capacity(crystal.entity()),
-        Asked::Increment | Asked::G => property::dimension(Property::H, crystal.entity()),
-    };
+    let dim = asked.dimension(crystal.entity());
     let p_pa = Some(STANDARD_PRESSURE.value);
     let kind = Kind::in_state(asked.what(), State { zero, t_k: Some(t_k), p_pa, standard: true, reaction: false });
-    let si = asked.combined(at_t, at_0, t_k);
+    let si = combined(asked, at_t, at_0, t_k);
     let step = Rc::clone(call);
     Ok(Quantity::from_step(si, dim, kind, inputs, step, cx.place.clone())?)
 }

@@ -9,7 +9,8 @@ use crate::data::function::Function;
 use crate::data::substance::Substance;
 use crate::model::card::{Call, Cx, Value};
 use crate::model::function;
-use crate::model::solid::answers::{Asked, crystal_of};
+use crate::model::molecule::answers::Asked;
+use crate::model::solid::answers::crystal_of;
 use crate::quantity::Quantity;
 use crate::record::node::{Input, LeafKey};
 use crate::record::register::{Finding, Tested};
@@ -24,7 +25,7 @@ pub fn debye_model(_: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
         Some(Value::Quantity(from)) => from.si(),
         _ => function::T_REFERENCE,
     };
-    let needed: &[f64] = if matches!(asked, Asked::Increment | Asked::G) { &[t_k, from_k] } else { &[t_k] };
+    let needed: &[f64] = if asked.needs_start() { &[t_k, from_k] } else { &[t_k] };
     let tested = match reaching(&crystal.substance, needed) {
         Some(_) if asked == Asked::Cv => {
             Tested::Missing { what: "published functions are of Cp; Cv cannot be held against one".to_owned() }
