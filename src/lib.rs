@@ -35,6 +35,7 @@
 //!
 //! `tests/house.rs` checks what of this a program can check.
 
+pub mod archive;
 pub mod chem;
 pub mod cli;
 pub mod data;

@@ -17,6 +17,7 @@ pub const LAYERS: &[&[&str]] = &[
     &["script"],
     &["session"],
     &["notebook", "kernel"],
+    &["archive"],
     &["cli"],
 ];
 
@@ -25,7 +26,7 @@ const CONFINED: &[(&str, &[&str], &[&str])] = &[
     ("rhai", &["script", "session"], &[]),
     ("zeromq", &["kernel"], &[]),
     // What can be serialised becomes a promise; the report's record is one, with its version in its name.
-    ("Serialize", &["notebook", "kernel"], &["src/render/report.rs"]),
+    ("Serialize", &["notebook", "kernel", "archive"], &["src/render/report.rs"]),
 ];
 
 /// Keys of the notebook format, which one room reads and writes. The protocol has keys of its own.
