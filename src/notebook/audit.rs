@@ -13,7 +13,7 @@ use serde::Deserialize;
 use crate::fault::Fault;
 use crate::notebook::causes::{Exchanged, Grounds, exchanged};
 use crate::notebook::comparison::{Compared, compare};
-use crate::notebook::file::NotebookFile;
+use crate::notebook::file::{NotebookFile, bytes_of};
 use crate::notebook::holdings::{Holdings, constants_of, files_of, records_of};
 use crate::notebook::rederive::rederive;
 use crate::notebook::run::{FaultRecord, Source};
@@ -63,21 +63,32 @@ pub fn audit_one(path: &Path, options: &AuditOptions) -> NotebookAudit {
 
 fn audited(path: &Path, options: &AuditOptions) -> NotebookAudit {
     let file = path.display().to_string();
-    let notebook = match NotebookFile::read(path) {
-        Ok(notebook) => notebook,
+    let bytes = match bytes_of(path) {
+        Ok(bytes) => bytes,
         Err(error) => return could_not_run(&file, Against::Nothing, "the file", &error.into()),
     };
+    let sha256 = Some(sha256(&bytes));
+    let notebook = match NotebookFile::of_bytes(path, &bytes) {
+        Ok(notebook) => notebook,
+        Err(error) => {
+            let unread = could_not_run(&file, Against::Nothing, "the file", &error.into());
+            return NotebookAudit { sha256, ..unread };
+        }
+    };
+    drop(bytes);
     let audit = match read_seal(&file, &notebook) {
-        Err(error) => return could_not_run(&file, Against::Seal, "the file", &error.into()),
+        Err(error) => Ok(could_not_run(&file, Against::Seal, "the file", &error.into())),
         Ok(Some(seal)) => of_sealed(&file, &notebook, &seal, options),
         Ok(None) => of_unsealed(&file, &notebook, options),
     };
-    audit.unwrap_or_else(|fault| could_not_run(&file, Against::Seal, "the records", &fault))
+    let audit = audit.unwrap_or_else(|fault| could_not_run(&file, Against::Seal, "the records", &fault));
+    NotebookAudit { sha256, ..audit }
 }
 
 fn empty(file: &str, against: Against) -> NotebookAudit {
     NotebookAudit {
         file: file.to_owned(),
+        sha256: None,
         against,
         status: AuditStatus::Same,
         seal: None,
@@ -91,7 +102,8 @@ fn empty(file: &str, against: Against) -> NotebookAudit {
     }
 }
 
-pub(super) fn could_not_run(file: &str, against: Against, under: &str, fault: &Fault) -> NotebookAudit {
+/// A notebook that gave nothing, for a fault that came up with `under`.
+pub fn could_not_run(file: &str, against: Against, under: &str, fault: &Fault) -> NotebookAudit {
     let faults = vec![AuditFault { under: under.to_owned(), fault: FaultRecord::of(fault, file) }];
     NotebookAudit { status: AuditStatus::CouldNotRun, faults, ..empty(file, against) }
 }
@@ -106,7 +118,7 @@ pub struct Runner<'a> {
 
 impl Runner<'_> {
     pub fn run(&self, holdings: &Holdings) -> Result<Trial, Fault> {
-        let mut source = Source::Notebook(self.notebook.clone());
+        let mut source = Source::Cells(self.notebook.code_cells());
         trial(self.file, &mut source, &self.settings, holdings, self.stop, &mut Unwatched)
     }
 }

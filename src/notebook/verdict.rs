@@ -113,6 +113,8 @@ impl AuditStatus {
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct NotebookAudit {
     pub file: String,
+    /// SHA-256 of the file as it was audited; none where it could not be read.
+    pub sha256: Option<String>,
     pub against: Against,
     pub status: AuditStatus,
     pub seal: Option<SealFacts>,
