@@ -110,6 +110,9 @@ pub struct State {
     order: Order,
 }
 
+/// Is given each line, with the byte it starts at.
+type Taking<'a> = dyn FnMut(u64, Line) -> Result<(), StateError> + 'a;
+
 /// A state file. It is read and appended to.
 struct Reader {
     path: PathBuf,
@@ -122,7 +125,7 @@ impl Reader {
     }
 
     /// Reads whole lines from the start; gives the byte after the last of them.
-    fn lines(&mut self, take: &mut dyn FnMut(u64, Line) -> Result<(), StateError>) -> Result<u64, StateError> {
+    fn lines(&mut self, take: &mut Taking) -> Result<u64, StateError> {
         let refused = |path: &Path, why: String| StateError::NotAState { path: path.to_owned(), why };
         self.file.seek(SeekFrom::Start(0)).map_err(|why| self.failed("read", &why))?;
         let (mut at, mut line) = (0, Vec::new());

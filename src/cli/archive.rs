@@ -51,10 +51,12 @@ impl Workers {
     }
 }
 
+/// What is printed of a notebook; whether there are many.
+type Text = dyn Fn(&NotebookAudit, bool) -> String;
+
 /// Prints notebooks in the order of the list as they are done, and progress on a terminal.
 pub struct Printer<'a> {
-    /// What is printed of a notebook, and whether there are many.
-    text: Option<&'a dyn Fn(&NotebookAudit, bool) -> String>,
+    text: Option<&'a Text>,
     many: bool,
     /// The first notebook that is not printed yet.
     next: usize,
@@ -67,11 +69,7 @@ impl<'a> Printer<'a> {
     ///
     /// # Errors
     /// Its audits cannot be read back.
-    pub(super) fn new(
-        work: &Work,
-        prints: bool,
-        text: &'a dyn Fn(&NotebookAudit, bool) -> String,
-    ) -> Result<Printer<'a>, Fault> {
+    pub(super) fn new(work: &Work, prints: bool, text: &'a Text) -> Result<Printer<'a>, Fault> {
         let bar = if stderr().is_terminal() && work.left() > 1 {
             ProgressBar::with_draw_target(Some(work.count() as u64), ProgressDrawTarget::stderr())
         } else {
