@@ -3,9 +3,15 @@
 pub mod audits;
 mod json;
 mod junit;
+pub mod order;
 mod page;
+pub mod paths;
+pub mod pool;
 pub mod report;
 mod rows;
+pub mod state;
 pub mod tally;
 mod text;
 mod words;
+pub mod work;
+pub mod worker;
