@@ -114,7 +114,11 @@ fn of_notebook(audit: &NotebookAudit, about: &About) -> Vec<TestCase> {
     if let Some(seal) = audit.seal.as_ref().filter(|seal| !seal.whole || matches!(seal.signed, Signed::Invalid { .. }))
     {
         let words = seal_words(seal);
-        cases.push(case(audit, "(seal)", fallen(NonSuccessKind::Failure, "altered seal", &words, &[words.clone()])));
+        cases.push(case(
+            audit,
+            "(seal)",
+            fallen(NonSuccessKind::Failure, "altered seal", &words, std::slice::from_ref(&words)),
+        ));
     }
     if audit.status == AuditStatus::NothingToCompare {
         let mut status = TestCaseStatus::skipped();

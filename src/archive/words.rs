@@ -139,6 +139,9 @@ pub fn verdict_counts(verdicts: impl Iterator<Item = Verdict>) -> String {
     words.join(", ")
 }
 
+/// A comparison, and the verdict of a value in it.
+type Side = (&'static str, fn(&ValueAudit) -> Verdict);
+
 /// Why a notebook is not the same, the gravest first.
 pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
     let mut reasons = Vec::new();
@@ -153,7 +156,7 @@ pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
             reasons.push("its signature does not hold".to_owned());
         }
     }
-    let sides: &[(&str, fn(&ValueAudit) -> Verdict)] = match (audit.against, strict_data) {
+    let sides: &[Side] = match (audit.against, strict_data) {
         (Against::Seal, true) => &[
             ("under the sealed data", |value| value.under_sealed.verdict),
             ("under today's data", |value| value.under_today.verdict),
