@@ -20,6 +20,7 @@ use crate::notebook::rederive::rederive;
 use crate::notebook::run::{FaultRecord, Source};
 use crate::notebook::seal::{Seal, SealedValue};
 use crate::notebook::sealing::{engine_now, read_seal};
+use crate::notebook::side_by_side::side_by_side;
 use crate::notebook::signature::{TrustedKey, checked};
 use crate::notebook::trial::{Trial, Unwatched, trial};
 use crate::notebook::verdict::{
@@ -253,7 +254,19 @@ fn value_audit(
     };
     let under_sealed_data = outcome(under_sealed, &[]);
     let today = if is_today { under_sealed_data.clone() } else { outcome(under_today, shares) };
+    let beside = |trial: &Trial, outcome: &Outcome, under: &str| {
+        // Where the figure is the sealed one to the last bit, so is its derivation.
+        let differs = outcome.moved.is_some() || outcome.verdict == Verdict::UnitOrBasisChanged;
+        let now = trial.of_label(&record.label).filter(|_| differs)?;
+        side_by_side(grounds.seal, sealed, &now.value, under)
+    };
+    let steps = if under_sealed_data == today {
+        vec![beside(under_sealed, &under_sealed_data, "both data")]
+    } else {
+        vec![beside(under_sealed, &under_sealed_data, "the sealed data"), beside(under_today, &today, "today's data")]
+    };
     ValueAudit {
+        steps: steps.into_iter().flatten().collect(),
         label: record.label.clone(),
         unit: record.unit.clone(),
         sealed: Some(figure(record)),
@@ -280,6 +293,7 @@ fn new_value(record: &Record, today: Option<&Record>) -> ValueAudit {
         sealed: None,
         under_sealed: outcome(record),
         under_today: today.map_or_else(|| outcome(record), outcome),
+        steps: Vec::new(),
     }
 }
 
@@ -411,6 +425,7 @@ fn of_unsealed(file: &str, notebook: &NotebookFile, options: &AuditOptions) -> R
             sealed: Some(figure(record)),
             under_sealed: outcome.clone(),
             under_today: outcome,
+            steps: Vec::new(),
         });
     }
     for tried in &now.reports {

@@ -13,6 +13,7 @@ pub mod rederive;
 pub mod run;
 pub mod seal;
 pub mod sealing;
+pub mod side_by_side;
 pub mod signature;
 pub mod skeleton;
 pub mod trial;
