@@ -7,6 +7,7 @@ use std::sync::Arc;
 
 use clap::{Args, Subcommand};
 
+use crate::cli::archive::Workers;
 use crate::cli::{Done, data_change, out};
 use crate::data::catalog::{Catalog, T_REFERENCE_K};
 use crate::data::checkup;
@@ -51,9 +52,11 @@ enum What {
         a: String,
         /// The other one
         b: String,
-        /// A notebook, or a folder of notebooks
+        /// Notebooks, folders of notebooks, and patterns
         #[arg(long, value_name = "PATH")]
         archive: Vec<PathBuf>,
+        #[command(flatten)]
+        workers: Workers,
     },
 }
 
@@ -62,8 +65,10 @@ impl Data {
         match self.what {
             What::Show { name } => show(&name),
             What::Check { files } => check(&files),
-            What::Compare { a, b, archive } if archive.is_empty() => compare(&a, &b),
-            What::Compare { a, b, archive } => data_change::compare(Path::new(&a), Path::new(&b), &archive),
+            What::Compare { a, b, archive, .. } if archive.is_empty() => compare(&a, &b),
+            What::Compare { a, b, archive, workers } => {
+                data_change::compare(Path::new(&a), Path::new(&b), &archive, &workers)
+            }
         }
     }
 }

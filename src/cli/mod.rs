@@ -3,6 +3,7 @@
 //! A command gives the program's exit status, or a fault that is printed with its way out. The meaning of statuses
 //! other than 0 is said in the help of the commands that have them.
 
+mod archive;
 mod audit;
 mod data;
 mod data_change;
@@ -14,7 +15,6 @@ mod seal;
 
 use std::collections::BTreeMap;
 use std::io::{self, Write};
-use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
@@ -36,6 +36,8 @@ enum Command {
     Run(run::Run),
     Seal(seal::Seal),
     Audit(audit::Audit),
+    #[command(hide = true)]
+    AuditWorker(audit::AuditWorker),
     Data(data::Data),
     Keys(keys::Keys),
     Install(install::Install),
@@ -48,6 +50,7 @@ pub fn run() -> ExitCode {
         Command::Run(command) => command.run(),
         Command::Seal(command) => command.run(),
         Command::Audit(command) => command.run(),
+        Command::AuditWorker(command) => command.run(),
         Command::Data(command) => command.run(),
         Command::Keys(command) => command.run(),
         Command::Install(command) => command.run(),
@@ -89,22 +92,6 @@ fn settings(given: &[(String, String)]) -> Result<BTreeMap<String, String>, Faul
         }
     }
     Ok(settings)
-}
-
-/// The notebooks in a folder and those below it, by path; a file is itself.
-fn notebooks_below(path: &Path) -> Vec<PathBuf> {
-    if !path.is_dir() {
-        return vec![path.to_owned()];
-    }
-    let mut paths: Vec<PathBuf> =
-        std::fs::read_dir(path).into_iter().flatten().flatten().map(|entry| entry.path()).collect();
-    paths.sort();
-    let is_notebook = |path: &Path| path.extension().is_some_and(|extension| extension == "ipynb");
-    let hidden = |path: &Path| path.file_name().is_some_and(|name| name.to_string_lossy().starts_with('.'));
-    // A link to a folder may lead round in a circle, and is passed over.
-    let kept =
-        paths.into_iter().filter(|path| !hidden(path) && (is_notebook(path) || (path.is_dir() && !path.is_symlink())));
-    kept.flat_map(|path| notebooks_below(&path)).collect()
 }
 
 /// A flag that Ctrl-C sets.

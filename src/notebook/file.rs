@@ -105,11 +105,17 @@ impl NotebookFile {
     /// # Errors
     /// It cannot be read, is no JSON object, or no notebook of format 4.
     pub fn read(path: &Path) -> Result<NotebookFile, FileError> {
-        let read = |why: std::io::Error| FileError::Read { path: path.to_owned(), why: why.to_string() };
-        let bytes = std::fs::read(path).map_err(read)?;
+        NotebookFile::of_bytes(path, &bytes_of(path)?)
+    }
+
+    /// A notebook by the content of its file; `path` is for what is said about it.
+    ///
+    /// # Errors
+    /// It is no JSON object, or no notebook of format 4.
+    pub fn of_bytes(path: &Path, bytes: &[u8]) -> Result<NotebookFile, FileError> {
         let refused = |why: String| FileError::NotANotebook { path: path.to_owned(), why };
         // Some editors begin a file with a byte order mark.
-        let text = bytes.strip_prefix(b"\xef\xbb\xbf").unwrap_or(&bytes);
+        let text = bytes.strip_prefix(b"\xef\xbb\xbf").unwrap_or(bytes);
         let tree: Value = serde_json::from_slice(text).map_err(|e| refused(e.to_string()))?;
         let Value::Object(tree) = tree else { return Err(refused("it is no JSON object".to_owned())) };
         match tree.get("nbformat").and_then(Value::as_i64) {
@@ -230,6 +236,19 @@ impl NotebookFile {
         let text = self.text().map_err(|e| failed(e.to_string()))?;
         write_whole(path, text.as_bytes()).map_err(|e| failed(e.to_string()))
     }
+}
+
+/// The content of a regular file: a pipe or a device may give bytes without end, or wait for ever.
+///
+/// # Errors
+/// It cannot be read, or is not a regular file.
+pub fn bytes_of(path: &Path) -> Result<Vec<u8>, FileError> {
+    let failed = |why: String| FileError::Read { path: path.to_owned(), why };
+    let facts = std::fs::metadata(path).map_err(|error| failed(error.to_string()))?;
+    if !facts.is_file() {
+        return Err(failed("it is not a regular file".to_owned()));
+    }
+    std::fs::read(path).map_err(|error| failed(error.to_string()))
 }
 
 /// Writes a file as a whole or not at all.

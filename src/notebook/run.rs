@@ -69,7 +69,12 @@ impl FaultRecord {
 /// Something to run.
 pub enum Source {
     Notebook(NotebookFile),
-    Script { name: String, text: String },
+    /// Code cells, each with its name, whose outputs nobody wants.
+    Cells(Vec<(String, String)>),
+    Script {
+        name: String,
+        text: String,
+    },
 }
 
 impl Source {
@@ -95,6 +100,7 @@ impl Source {
                 .into_iter()
                 .map(|cell| (cell.name.clone(), cell.source.clone(), Some(cell)))
                 .collect(),
+            Source::Cells(cells) => cells.iter().map(|(name, text)| (name.clone(), text.clone(), None)).collect(),
             Source::Script { name, text } => vec![(name.clone(), text.clone(), None)],
         }
     }

@@ -8,6 +8,7 @@ use std::fmt::Write as _;
 use std::path::{Path, PathBuf};
 
 use ed25519_dalek::{Signature as Ed25519, Signer, SigningKey, VerifyingKey};
+use serde::{Deserialize, Serialize};
 use thiserror::Error;
 
 use crate::fault::Explain;
@@ -136,7 +137,7 @@ impl PrivateKey {
 }
 
 /// A public key that an auditor trusts, by the name of its file.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
 pub struct TrustedKey {
     pub name: String,
     key: [u8; 32],

@@ -8,6 +8,7 @@ use rhai::{Dynamic, Engine, EvalAltResult, FnPtr, Map, NativeCallContext, ParseE
 
 use crate::fault::{Fault, Place};
 use crate::model::CARDS;
+use crate::script::modules;
 use crate::script::prepare::CAUGHT;
 use crate::script::script_error::{ScriptError, count};
 use crate::script::show;
@@ -53,11 +54,13 @@ pub fn translate(error: EvalAltResult, site: Site<'_>) -> Fault {
     let mut source = site.cell.to_owned();
     let mut error = error;
     let mut in_function = false;
+    let mut in_module = None;
     loop {
         match error {
             EvalAltResult::ErrorInFunctionCall(name, inner_source, inner, position) => {
                 calls.push((words::function_name(&name).to_owned(), site.shared.place(&source, position)));
                 in_function |= site.shared.defined(&name).is_some();
+                in_module = site.shared.module_of(&inner_source);
                 // A native function that calls back names no source: what it calls names its own.
                 if !inner_source.is_empty() {
                     source = inner_source;
@@ -70,7 +73,8 @@ pub fn translate(error: EvalAltResult, site: Site<'_>) -> Fault {
     }
     let place = site.shared.place(&source, error.position());
     let place = place.or_else(|| calls.last().and_then(|(_, place)| place.clone()));
-    let fault = reword(error, site, in_function).at(place);
+    let within = Within { function: in_function, module: in_module };
+    let fault = reword(error, site, &within).at(place);
     calls.reverse();
     let hidden = if calls.len() > 2 * CALLS_SHOWN + 1 { CALLS_SHOWN..calls.len() - CALLS_SHOWN } else { 0..0 };
     calls.into_iter().enumerate().fold(fault, |fault, (index, (name, place))| {
@@ -84,15 +88,24 @@ pub fn translate(error: EvalAltResult, site: Site<'_>) -> Fault {
     })
 }
 
+/// Inside what an error came up.
+#[derive(Default)]
+struct Within {
+    /// A function of a cell.
+    function: bool,
+    /// The module whose function it was.
+    module: Option<String>,
+}
+
 /// The innermost error, without place and calls.
-fn reword(error: EvalAltResult, site: Site<'_>, in_function: bool) -> Fault {
+fn reword(error: EvalAltResult, site: Site<'_>, within: &Within) -> Fault {
     use EvalAltResult as E;
     let reworded = match error {
         E::ErrorRuntime(value, _) | E::ErrorTerminated(value, _) => return thrown(value),
         E::ErrorParsing(error, _) => return SyntaxError::new(&error, "", None).into(),
         E::ErrorFunctionNotFound(call, _) => function_not_found(&call, site),
-        E::ErrorVariableNotFound(name, _) => variable_not_found(name, site, in_function),
-        E::ErrorModuleNotFound(name, _) => ScriptError::UnknownModule { name },
+        E::ErrorVariableNotFound(name, _) => variable_not_found(name, site, within),
+        E::ErrorModuleNotFound(name, _) => ScriptError::UnknownModule { name, near: None },
         E::ErrorPropertyNotFound(name, _) => ScriptError::MissingEntry { name },
         E::ErrorIndexNotFound(index, _) => ScriptError::MissingEntry { name: show::plain(&index) },
         E::ErrorDotExpr(text, _) => property_error(&text),
@@ -149,6 +162,9 @@ fn function_not_found(call: &str, site: Site<'_>) -> ScriptError {
     if words::is_closure(name) {
         return ScriptError::ClosureArguments { given: given.len() };
     }
+    if let Some((module, function)) = name.rsplit_once("::") {
+        return modules::not_in_module(site.shared, module, function, Some(given.len()));
+    }
     let name = name.to_owned();
     if !name.starts_with(|c: char| c.is_alphabetic() || c == '_') {
         return ScriptError::Operator { op: name, operands: given };
@@ -177,14 +193,21 @@ fn function_not_found(call: &str, site: Site<'_>) -> ScriptError {
     ScriptError::UnknownFunction { near: near.map(str::to_owned), name }
 }
 
-fn variable_not_found(name: String, site: Site<'_>, in_function: bool) -> ScriptError {
+fn variable_not_found(name: String, site: Site<'_>, within: &Within) -> ScriptError {
     if let Some(constant) = name.strip_prefix("global::") {
         return ScriptError::OutsideFunction { name: constant.to_owned() };
+    }
+    if let Some((module, constant)) = name.rsplit_once("::") {
+        return modules::not_in_module(site.shared, module, constant, None);
+    }
+    if let Some(module) = &within.module {
+        let own = site.shared.state().modules.get(module).is_some_and(|module| module.has_constant(&name));
+        return if own { ScriptError::OwnConstant { name } } else { ScriptError::UnknownVariable { name, near: None } };
     }
     let Some(scope) = site.scope else {
         return ScriptError::UnknownVariable { name, near: None };
     };
-    if in_function && scope.contains(&name) {
+    if within.function && scope.contains(&name) {
         return ScriptError::OutsideFunction { name };
     }
     let defined = site.shared.defined_names();
@@ -224,7 +247,7 @@ pub fn register(engine: &mut Engine) {
         let cell = read.source.unwrap_or_else(|| context.call_source().unwrap_or("").to_owned());
         let site = Site { cell: &cell, shared: &shared, scope: None };
         let place = shared.place(&cell, read.position);
-        Dynamic::from(reword(read.error, site, false).at(place))
+        Dynamic::from(reword(read.error, site, &Within::default()).at(place))
     });
 }
 

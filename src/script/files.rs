@@ -1,4 +1,4 @@
-//! Files beside a notebook that a cell reads: a dataset of one's own, a molecule from quantum chemistry.
+//! Files beside a notebook that a cell reads: a dataset of one's own, the text of a module, a molecule from quantum chemistry.
 //!
 //! A name is looked for in the notebook's folder. What was read becomes part of the session's state, so that a cell that
 //! fails leaves no trace of it, and a cell that is run again reads its files anew.
@@ -20,9 +20,12 @@ use crate::model::card::{self, Value};
 use crate::model::molecule::limits::MOLECULE_TABLE;
 use crate::render::dataset as view;
 use crate::script::bind::{Native, from_value, to_value, with_context};
+use crate::script::module_text::ENDING;
+use crate::script::script_error::ScriptError;
 use crate::script::state::{Loaded, Shared, place_of};
 use crate::script::tables::FileError;
 use crate::script::verbs::{Display, VERBS};
+use crate::script::words;
 use crate::source::{self, Embedded};
 
 /// Files larger than this are none that someone wrote or measured by hand.
@@ -122,8 +125,30 @@ impl Explain for FileFault {
 /// # Errors
 /// It is not there, cannot be read, or is too large.
 pub fn read_beside(shared: &Shared, name: &str) -> Result<Vec<u8>, Fault> {
+    let bytes = fetch(shared, name)?;
+    shared.beside.note(name, &bytes);
+    Ok(bytes)
+}
+
+/// The bytes of a module's file. They are kept with the module, not among the files that cells read.
+///
+/// # Errors
+/// It is not there, cannot be read, or is too large.
+pub fn module_bytes(shared: &Shared, file: &str) -> Result<Vec<u8>, Fault> {
+    fetch(shared, file).map_err(|fault| match fault {
+        FileFault::Missing { name, near, .. } => {
+            let bare = |file: &str| file.strip_suffix(ENDING).map(str::to_owned);
+            let name = bare(&name).unwrap_or(name);
+            let beside: Vec<String> = near.iter().filter_map(|near| bare(near)).collect();
+            let near = words::nearest(&name, beside.iter().map(String::as_str)).map(str::to_owned);
+            ScriptError::UnknownModule { name, near }.into()
+        }
+        other => other.into(),
+    })
+}
+
+fn fetch(shared: &Shared, name: &str) -> Result<Vec<u8>, FileFault> {
     if let Some(bytes) = shared.beside.find(name) {
-        shared.beside.note(name, &bytes);
         return Ok(bytes.to_vec());
     }
     let folder = shared.folder();
@@ -134,14 +159,12 @@ pub fn read_beside(shared: &Shared, name: &str) -> Result<Vec<u8>, Fault> {
     };
     let about = std::fs::metadata(&path).map_err(failed)?;
     if about.is_dir() {
-        return Err(FileFault::Unreadable { name: name.to_owned(), why: "it is a folder".to_owned() }.into());
+        return Err(FileFault::Unreadable { name: name.to_owned(), why: "it is a folder".to_owned() });
     }
     if about.len() > MOST_BYTES {
-        return Err(FileFault::TooLarge { name: name.to_owned(), bytes: about.len() }.into());
+        return Err(FileFault::TooLarge { name: name.to_owned(), bytes: about.len() });
     }
-    let bytes = std::fs::read(&path).map_err(failed)?;
-    shared.beside.note(name, &bytes);
-    Ok(bytes)
+    std::fs::read(&path).map_err(failed)
 }
 
 fn missing(folder: &Path, name: &str) -> FileFault {

@@ -1,7 +1,7 @@
 //! The script language of cells: the engine, made safe for numbers, and its faults in plain words.
 //!
 //! Reading order: `engine` (how it is set up), `numbers`, `compare` and `guards` (what is replaced), `prepare` (what
-//! is read before the engine reads it), `fault` (errors in and out). The engine's types stay in here and in `session`.
+//! is read before the engine reads it), `fault` (errors in and out), `modules` (methods in files beside a notebook). The engine's types stay in here and in `session`.
 
 pub mod bind;
 pub mod compare;
@@ -13,6 +13,8 @@ pub mod guards;
 pub mod host;
 pub mod literals;
 pub mod memory;
+pub mod module_text;
+pub mod modules;
 pub mod numbers;
 pub mod operators;
 pub mod prepare;

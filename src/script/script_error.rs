@@ -59,6 +59,18 @@ pub enum ScriptError {
     },
     UnknownModule {
         name: String,
+        near: Option<String>,
+    },
+    /// A name behind `module::` that the module does not have; `has` lists what it has.
+    UnknownInModule {
+        file: String,
+        name: String,
+        near: Option<String>,
+        has: Vec<String>,
+    },
+    /// A constant of a module, used in one of its functions without `global::`.
+    OwnConstant {
+        name: String,
     },
     UnknownProperty {
         name: String,
@@ -137,7 +149,11 @@ impl fmt::Display for ScriptError {
             }
             ScriptError::UnknownVariable { name, .. } => write!(f, "there is no variable {name}"),
             ScriptError::OutsideFunction { name } => write!(f, "{name} is not visible inside a function"),
-            ScriptError::UnknownModule { name } => write!(f, "there is no module {name}"),
+            ScriptError::UnknownModule { name, .. } => write!(f, "there is no module {name}"),
+            ScriptError::UnknownInModule { file, name, .. } => write!(f, "{file} has no {name}"),
+            ScriptError::OwnConstant { name } => {
+                write!(f, "{name} is a constant of the module, and its functions do not see it by its bare name")
+            }
             ScriptError::UnknownProperty { name, of } => write!(f, "{of} has no property {name}"),
             ScriptError::ReadOnlyProperty { name, of } => write!(f, "property {name} of {of} cannot be set"),
             ScriptError::MissingEntry { name } => write!(f, "the map has no entry {name}"),
@@ -177,6 +193,8 @@ impl Explain for ScriptError {
             ScriptError::UnknownVariable { .. } => "unknown-variable",
             ScriptError::OutsideFunction { .. } => "outside-function",
             ScriptError::UnknownModule { .. } => "unknown-module",
+            ScriptError::UnknownInModule { .. } => "unknown-in-module",
+            ScriptError::OwnConstant { .. } => "own-constant",
             ScriptError::UnknownProperty { .. } => "unknown-property",
             ScriptError::ReadOnlyProperty { .. } => "read-only-property",
             ScriptError::MissingEntry { .. } => "missing-entry",
@@ -198,7 +216,13 @@ impl Explain for ScriptError {
         let what_is_it = "print the value to see what it is";
         match self {
             ScriptError::UnknownFunction { near: Some(near), .. }
-            | ScriptError::UnknownVariable { near: Some(near), .. } => format!("did you mean {near}?"),
+            | ScriptError::UnknownVariable { near: Some(near), .. }
+            | ScriptError::UnknownInModule { near: Some(near), .. } => format!("did you mean {near}?"),
+            ScriptError::UnknownInModule { has, .. } => format!("it has {}", words::list(has)),
+            ScriptError::OwnConstant { name } => format!("write global::{name}"),
+            ScriptError::UnknownModule { near: Some(near), .. } => {
+                format!("did you mean {near}, which is beside the notebook?")
+            }
             ScriptError::UnknownFunction { name, .. } => {
                 format!("define it with fn {name}(…) in this cell or an earlier one")
             }
@@ -226,7 +250,7 @@ impl Explain for ScriptError {
             ScriptError::OutsideFunction { name } => {
                 format!("a function sees only what it is given: pass {name} as an argument")
             }
-            ScriptError::UnknownModule { name } => {
+            ScriptError::UnknownModule { name, .. } => {
                 format!("put {name}.rhai beside the notebook, or check the name before ::")
             }
             ScriptError::UnknownProperty { .. } => format!("check the name, or {what_is_it}"),
@@ -250,5 +274,27 @@ impl Explain for ScriptError {
                 "the session is as it was before the cell; please report the cell with this text".to_owned()
             }
         }
+    }
+}
+
+/// A cell or module defines a function whose name the library holds: it would replace it inside the library too.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct ReservedName {
+    pub name: String,
+}
+
+impl fmt::Display for ReservedName {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        write!(f, "{} is a function of the library and cannot be defined again", self.name)
+    }
+}
+
+impl Explain for ReservedName {
+    fn code(&self) -> &'static str {
+        "reserved-name"
+    }
+
+    fn hint(&self) -> String {
+        format!("choose another name, such as my_{}", self.name)
     }
 }

@@ -23,6 +23,7 @@ use crate::quantity::Quantity;
 use crate::render::Bundle;
 use crate::script::files::Beside;
 use crate::script::host::{Host, HostSlot};
+use crate::script::modules::LoadedModule;
 use crate::script::prepare::Shifts;
 use crate::script::tables::Writes;
 use crate::script::words::Library;
@@ -44,6 +45,8 @@ pub struct State {
     pub parameters: Vec<Parameter>,
     /// Datasets read beside the notebook, in the order in which they lie over each other.
     pub loaded: Vec<Loaded>,
+    /// Modules in use, by name.
+    pub modules: BTreeMap<String, LoadedModule>,
     /// What formulas look up once datasets were loaded: shared, and never changed inside.
     overlay: Option<Rc<References>>,
 }
@@ -331,6 +334,12 @@ impl Shared {
 
     pub fn defined_names(&self) -> Vec<String> {
         self.defined.borrow().keys().cloned().collect()
+    }
+
+    /// The module that was read from a file of this name, if it is in use.
+    pub fn module_of(&self, file: &str) -> Option<String> {
+        let state = self.state.borrow();
+        state.modules.iter().find(|(_, module)| module.file == file).map(|(name, _)| name.clone())
     }
 
     pub fn shifts_mut(&self) -> RefMut<'_, Shifts> {

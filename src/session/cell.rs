@@ -5,17 +5,16 @@
 
 use std::any::Any;
 use std::collections::BTreeSet;
-use std::fmt;
 use std::panic::{AssertUnwindSafe, catch_unwind};
 
 use rhai::{AST, Dynamic, EvalAltResult, Module};
 
-use crate::fault::{Explain, Fault, Place};
+use crate::fault::{Fault, Place};
 use crate::render::Bundle;
-use crate::script::fault::{Site, translate};
-use crate::script::script_error::ScriptError;
+use crate::script::fault::{Site, raise, translate};
+use crate::script::script_error::{ReservedName, ScriptError};
 use crate::script::token::tokens;
-use crate::script::{engine, show};
+use crate::script::{engine, modules, show};
 use crate::session::closures::SharedValues;
 use crate::session::outcome::Host;
 use crate::session::{CellModule, Session, is_named};
@@ -25,28 +24,6 @@ use crate::session::{CellModule, Session, is_named};
 pub(super) enum Keep {
     Everything,
     Nothing,
-}
-
-/// A cell defines a function whose name the library holds: it would replace it inside the library too.
-#[derive(Clone, Debug, PartialEq, Eq)]
-pub struct ReservedName {
-    pub name: String,
-}
-
-impl fmt::Display for ReservedName {
-    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        write!(f, "{} is a function of the library and cannot be defined again", self.name)
-    }
-}
-
-impl Explain for ReservedName {
-    fn code(&self) -> &'static str {
-        "reserved-name"
-    }
-
-    fn hint(&self) -> String {
-        format!("choose another name, such as my_{}", self.name)
-    }
 }
 
 impl Session {
@@ -73,16 +50,18 @@ impl Session {
         self.shared.enter(cell);
         self.shared.start_cell();
 
-        let engine = &self.engine;
         let quiet = prepared.quiet;
+        let mut touched = Vec::new();
+        let Session { engine, shared, literals, .. } = self;
         // Unwind safety: what the cell may leave half done is `scope`, dropped below, and what is put back below.
         let run = || {
             catch_unwind(AssertUnwindSafe(|| -> Result<Option<Bundle>, Box<EvalAltResult>> {
+                modules::provide(engine, shared, literals, (cell, code), &mut touched).map_err(raise)?;
                 let value = engine.eval_ast_with_scope::<Dynamic>(&mut scope, &ast)?;
                 Ok(if quiet || value.is_unit() { None } else { Some(show::bundle_of(&value)) })
             }))
         };
-        let ended = self.shared.host.lend(host, run);
+        let ended = shared.host.lend(host, run);
         let result = match ended {
             Ok(Ok(shown)) => self.shared.halt().map_or(Ok(shown), |halt| {
                 Err(Fault::from(halt).at(Some(Place { cell: cell.into(), line: 0, column: 0 })))
@@ -115,6 +94,7 @@ impl Session {
             drop(scope);
             shared_values.restore();
             self.shared.restore(state);
+            modules::take_back(&mut self.engine, &self.shared, &touched);
             self.shared.set_defined(self.defined());
         }
         result

@@ -23,7 +23,7 @@ use crate::render::report::Report;
 use crate::script::literals::Literals;
 use crate::script::state::{Loaded, Parameter, Reported, Shared};
 use crate::script::token::{Ending, tokens};
-use crate::script::{engine, verbs, words};
+use crate::script::{engine, modules, verbs, words};
 use crate::units::constants;
 use closures::SharedValues;
 use outcome::{Completeness, Host, Outcome};
@@ -118,6 +118,12 @@ impl Session {
     /// Every file beside the notebook that cells have read, with its content.
     pub fn files_read(&self) -> BTreeMap<String, Arc<[u8]>> {
         self.shared.beside.read()
+    }
+
+    /// The text of every module in use, by the name of its file.
+    pub fn modules_used(&self) -> BTreeMap<String, Arc<[u8]>> {
+        let state = self.shared.state();
+        state.modules.values().map(|module| (module.file.clone(), Arc::clone(&module.bytes))).collect()
     }
 
     /// Datasets that cells have loaded, in the order in which they lie over each other.
@@ -235,6 +241,7 @@ impl Session {
         used.reverse();
         self.engine = engine::build(&self.shared);
         self.literals.repeat(&mut self.engine, &self.shared);
+        modules::repeat(&mut self.engine, &self.shared);
         for module in &used {
             publish(&mut self.engine, module);
         }
