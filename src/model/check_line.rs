@@ -56,7 +56,7 @@ fn figure(value: &Quantity) -> String {
 }
 
 /// An operation on named operands, as it is written.
-pub(super) fn arithmetic(operator: &Operator, names: &[String]) -> String {
+pub fn arithmetic(operator: &Operator, names: &[String]) -> String {
     match (operator, names) {
         (Operator::Add, [a, b]) => format!("{a} + {b}"),
         (Operator::Subtract, [a, b]) => format!("{a} - {b}"),

@@ -20,12 +20,17 @@ struct Walk<'a> {
 pub fn parting(seal: &Seal, sealed: &SealedValue, now: &Quantity) -> Option<String> {
     let mut skeleton = Skeleton::default();
     let ending = skeleton.enter(now);
-    let mut walk = Walk { then: &seal.steps, now: &skeleton.steps, seen: BTreeSet::new() };
-    walk.at(sealed.step.parse().ok()?, ending.step)
+    let (then, now) = parts_at(&seal.steps, &skeleton.steps, sealed.step.parse().ok()?, ending.step)?;
+    Some(words(&seal.steps[then], &skeleton.steps[now]))
+}
+
+/// The same as the positions of the two steps, for two derivations that end at these positions.
+pub fn parts_at(then: &[SealedStep], now: &[SealedStep], last_then: usize, last_now: usize) -> Option<(usize, usize)> {
+    Walk { then, now, seen: BTreeSet::new() }.at(last_then, last_now)
 }
 
 impl Walk<'_> {
-    fn at(&mut self, then: usize, now: usize) -> Option<String> {
+    fn at(&mut self, then: usize, now: usize) -> Option<(usize, usize)> {
         // The order of visits, inputs before the step itself, is kept by hand, since derivations are long.
         enum Visit {
             Into(usize, usize),
@@ -46,7 +51,7 @@ impl Walk<'_> {
                     let pairs = pairs(a, b);
                     pending.extend(pairs.into_iter().rev().map(|(then, now)| Visit::Into(then, now)));
                 }
-                Visit::Judge(then, now) => return Some(words(&self.then[then], &self.now[now])),
+                Visit::Judge(then, now) => return Some((then, now)),
             }
         }
         None
@@ -55,15 +60,17 @@ impl Walk<'_> {
 
 /// Arguments and inputs of two steps that are made alike, pair by pair.
 fn pairs(a: &SealedStep, b: &SealedStep) -> Vec<(usize, usize)> {
-    let positions = |step: &SealedStep| -> Vec<usize> {
-        let mut all = Vec::new();
-        if let Made::Formula { arguments, .. } = &step.made {
-            arguments.iter().for_each(|argument| steps_in(argument, &mut all));
-        }
-        all.extend(step.inputs.iter().filter_map(|(at, _)| at.parse::<usize>().ok()));
-        all
-    };
     positions(a).into_iter().zip(positions(b)).collect()
+}
+
+/// The steps that a step names: arguments first, then what it was computed from.
+pub fn positions(step: &SealedStep) -> Vec<usize> {
+    let mut all = Vec::new();
+    if let Made::Formula { arguments, .. } = &step.made {
+        arguments.iter().for_each(|argument| steps_in(argument, &mut all));
+    }
+    all.extend(step.inputs.iter().filter_map(|(at, _)| at.parse::<usize>().ok()));
+    all
 }
 
 fn steps_in(argument: &Argument, all: &mut Vec<usize>) {
@@ -76,7 +83,7 @@ fn steps_in(argument: &Argument, all: &mut Vec<usize>) {
 }
 
 /// Whether two steps are made in the same way, whatever their inputs gave.
-fn alike(a: &Made, b: &Made) -> bool {
+pub fn alike(a: &Made, b: &Made) -> bool {
     match (a, b) {
         (Made::Input(a), Made::Input(b)) => same_input(a, b),
         (Made::Formula { card: a, arguments: left }, Made::Formula { card: b, arguments: right }) => {
@@ -156,7 +163,7 @@ fn input_words(input: &SealedInput) -> String {
     }
 }
 
-fn argument_words(argument: &Argument) -> Option<String> {
+pub fn argument_words(argument: &Argument) -> Option<String> {
     match argument {
         Argument::Number(text) | Argument::Text(text) | Argument::Reaction(text) | Argument::Substance(text) => {
             Some(text.clone())

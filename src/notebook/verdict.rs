@@ -181,6 +181,57 @@ pub struct ValueAudit {
     pub under_sealed: Outcome,
     /// The author's cells with today's records and constants.
     pub under_today: Outcome,
+    /// The derivation as sealed beside that of each run which gave another figure, so none for most values.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub steps: Vec<SideBySide>,
+}
+
+/// The derivation of a value as sealed, and as it is under some data.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct SideBySide {
+    /// `the sealed data`, `today's data`, `both data`.
+    pub under: String,
+    /// Inputs before their users; what a step was computed from is named by the numbers of these pairs.
+    pub pairs: Vec<StepPair>,
+    /// Pairs that are not listed, since they are the same on both sides.
+    pub same_left_out: usize,
+    /// Pairs that differ and are not listed, since there are too many.
+    pub others_left_out: usize,
+}
+
+/// A step as sealed beside the step that takes its place now; a side without step has none like it.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct StepPair {
+    /// From 1, over all pairs, listed or not.
+    pub number: usize,
+    pub then: Option<StepSide>,
+    pub now: Option<StepSide>,
+    /// Whether it is the first at which the derivation parts.
+    pub parts: bool,
+}
+
+/// A step on one side.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct StepSide {
+    /// How it was made: the text of an input, an operation, the symbol of a formula and what it was applied to.
+    pub words: String,
+    /// Cell and line.
+    pub place: Option<String>,
+    /// In `unit`; reads back as the same double.
+    pub value: String,
+    pub unit: String,
+    /// With unit, and with as many digits as a difference from the other side needs.
+    pub shown: String,
+}
+
+impl StepPair {
+    /// Whether both sides give the same from the same.
+    pub fn is_same(&self) -> bool {
+        let of = |side: &Option<StepSide>| {
+            side.as_ref().map(|side| (side.words.clone(), side.value.clone(), side.unit.clone()))
+        };
+        of(&self.then) == of(&self.now)
+    }
 }
 
 /// A figure with its uncertainty, exact and as printed.

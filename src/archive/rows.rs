@@ -1,0 +1,319 @@
+//! What the parts of the page say of each notebook, as plain values for their templates.
+//!
+//! Nothing here is HTML: texts stay as they are, and the templates escape them.
+
+use std::collections::BTreeMap;
+
+use serde::Serialize;
+use serde_json::{Value, json};
+
+use crate::archive::report::About;
+use crate::archive::tally::{Notes, Tally, is_identical, is_same_again};
+use crate::archive::text::sizes;
+use crate::archive::words::{
+    causes_words, counted, edited_cells, fault_words, left_out_words, price, reasons, signature_words, status_words,
+    verdict_counts,
+};
+use crate::notebook::verdict::{
+    Against, AuditStatus, Justification, NotebookAudit, Outcome, SideBySide, StepPair, ValueAudit, Verdict,
+};
+
+/// Derivations up to this number are unfolded from the start.
+const UNFOLDED: usize = 20;
+
+/// A tally as the page shows it.
+#[derive(Serialize)]
+pub struct Shown<'a> {
+    tally: &'a Tally,
+    all: usize,
+    not_same: usize,
+    /// The result in one sentence.
+    result: String,
+    statuses: Vec<Counted>,
+    verdicts: Vec<VerdictRow>,
+    all_sealed: usize,
+    all_today: usize,
+    against_recorded: Vec<Counted>,
+    /// What an auditor looks at first, of what there is some.
+    attention: Vec<String>,
+    causes: Vec<(String, String)>,
+    untested: Vec<(String, usize, String)>,
+    not_compared: Vec<(String, usize, String)>,
+    surroundings: Vec<(String, usize, String)>,
+    justifications: usize,
+    not_rederived: usize,
+    unfolded: bool,
+}
+
+/// A count with its words, and whether it wants attention.
+#[derive(Serialize)]
+struct Counted {
+    words: String,
+    count: usize,
+    loud: bool,
+}
+
+/// A row of the verdict table.
+#[derive(Serialize)]
+struct VerdictRow {
+    word: &'static str,
+    means: &'static str,
+    sealed: usize,
+    today: usize,
+    loud: bool,
+}
+
+pub fn tally(tally: &Tally) -> Shown<'_> {
+    let of = |counts: &BTreeMap<Verdict, usize>, verdict: &Verdict| counts.get(verdict).copied().unwrap_or(0);
+    let row = |verdict: &Verdict| VerdictRow {
+        word: verdict.word(),
+        means: meaning(*verdict),
+        sealed: of(&tally.under_sealed, verdict),
+        today: of(&tally.under_today, verdict),
+        loud: !verdict.is_same(),
+    };
+    let status = |(status, count): (&AuditStatus, &usize)| Counted {
+        words: status_words(*status, *count),
+        count: *count,
+        loud: status.exit() > 0,
+    };
+    let recorded = |(verdict, count): (&Verdict, &usize)| Counted {
+        words: verdict.word().to_owned(),
+        count: *count,
+        loud: !verdict.is_same(),
+    };
+    Shown {
+        all: tally.all(),
+        not_same: tally.not_same(),
+        result: result(tally),
+        statuses: tally.notebooks.iter().map(status).collect(),
+        verdicts: Verdict::ALL.iter().map(row).filter(|row| row.sealed + row.today > 0).collect(),
+        all_sealed: tally.under_sealed.values().sum(),
+        all_today: tally.under_today.values().sum(),
+        against_recorded: tally.against_recorded.iter().map(recorded).collect(),
+        attention: attention(tally),
+        causes: tally.causes.iter().map(|cause| (cause.words(), sizes(cause))).collect(),
+        untested: notes(&tally.untested),
+        not_compared: notes(&tally.not_compared),
+        surroundings: notes(&tally.surroundings),
+        justifications: tally.justifications_in_force + tally.justifications_lapsed,
+        not_rederived: tally.rederived.as_ref().map_or(0, |derived| derived.in_part + derived.otherwise),
+        unfolded: tally.with_steps <= UNFOLDED,
+        tally,
+    }
+}
+
+fn result(tally: &Tally) -> String {
+    let (all, same) = (tally.all(), tally.with_status(AuditStatus::Same));
+    if all == 0 {
+        return "No notebook was audited.".to_owned();
+    }
+    let bare = tally.with_status(AuditStatus::NothingToCompare);
+    let bare =
+        if bare > 0 { format!(" {}.", status_words(AuditStatus::NothingToCompare, bare)) } else { String::new() };
+    match tally.not_same() {
+        0 if same == all => format!("{same} of {all} notebooks give the figures again that they were compared with."),
+        0 => format!("{same} of {all} notebooks give the figures again that they were compared with;{bare}"),
+        not_same => format!(
+            "{not_same} of {all} notebooks {} not the same: {}, {}.{bare}",
+            if not_same == 1 { "is" } else { "are" },
+            status_words(AuditStatus::Differs, tally.with_status(AuditStatus::Differs)),
+            status_words(AuditStatus::CouldNotRun, tally.with_status(AuditStatus::CouldNotRun)),
+        ),
+    }
+}
+
+/// The README has the same meanings; they stand here too, since a page is read without it.
+fn meaning(verdict: Verdict) -> &'static str {
+    match verdict {
+        Verdict::Identical => "the same to the last bit, with the same assumptions",
+        Verdict::SameAsPrinted => "other bits, and the same figures as printed",
+        Verdict::WithinU => {
+            "moved by revised data or constants, by no more than the standard uncertainty that these inputs stated"
+        }
+        Verdict::AssumptionChanged => "what the value rests on is not what was sealed",
+        Verdict::JustificationLapsed => "what was justified in writing now costs more than at signing",
+        Verdict::Moved => "the figure is another one; its causes are in the table of moves",
+        Verdict::UnitOrBasisChanged => "reported in another unit, on another basis, or as another quantity",
+        Verdict::New => "reported now, and not in the seal",
+        Verdict::Missing => "in the seal, and not reported now",
+        Verdict::CouldNotRun => "no figure, since a cell failed",
+    }
+}
+
+fn attention(tally: &Tally) -> Vec<String> {
+    let seals = &tally.seals;
+    let bare = tally.recorded + tally.nothing;
+    let said = [
+        (seals.altered, "notebook", "with a seal that was altered after it was made"),
+        (seals.signature_invalid, "notebook", "with a signature that does not hold"),
+        (seals.drafts, "notebook", "sealed as a draft, with assumptions that nobody dealt with"),
+        (
+            seals.not_signed,
+            "notebook",
+            "sealed and not signed: nothing shows who sealed, or that the seal was not replaced",
+        ),
+        (seals.signed_untrusted, "notebook", "signed with a key that is not among the trusted"),
+        (seals.signed_trusted, "notebook", "signed with a trusted key"),
+        (bare, "notebook", "without a readable seal"),
+        (tally.notebooks_edited, "notebook", "with code cells edited since they were sealed"),
+        (tally.justifications_lapsed, "justification", "lapsed"),
+        (tally.untested.said.len(), "assumption", "open when its notebook was sealed"),
+    ];
+    said.into_iter().filter(|(n, ..)| *n > 0).map(|(n, one, words)| format!("{} {words}", counted(n, one))).collect()
+}
+
+/// Each saying with the number of notebooks, and the first of them.
+fn notes(notes: &Notes) -> Vec<(String, usize, String)> {
+    let examples = |files: &[String], all: usize| {
+        let more = all - files.len();
+        let more = if more > 0 { format!(" and {more} more") } else { String::new() };
+        format!("{}{more}", files.join(", "))
+    };
+    let said = notes.said.iter();
+    said.map(|(words, note)| (words.clone(), note.notebooks, examples(&note.examples, note.notebooks))).collect()
+}
+
+pub fn not_same(audit: &NotebookAudit, about: &About) -> Vec<Value> {
+    if audit.status.exit() == 0 {
+        return Vec::new();
+    }
+    let reasons = reasons(audit, about.strict_data);
+    vec![json!({ "file": audit.file, "status": audit.status.word(), "reasons": reasons })]
+}
+
+pub fn faults(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+    let fault = |fault| {
+        let (words, hint) = fault_words(fault, &audit.file);
+        json!({ "file": audit.file, "words": words, "code": fault.fault.code, "hint": hint })
+    };
+    audit.faults.iter().map(fault).collect()
+}
+
+pub fn moves(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+    let changed = audit.values.iter().enumerate().filter(|(_, value)| !is_identical(value));
+    changed
+        .map(|(at, value)| {
+            json!({
+                "at": at, "file": audit.file, "label": value.label,
+                "was": value.sealed.as_ref().map(|figure| figure.shown.clone()),
+                "outcomes": outcomes(value, audit.against), "has_steps": !value.steps.is_empty(),
+            })
+        })
+        .collect()
+}
+
+fn outcomes(value: &ValueAudit, against: Against) -> Vec<Value> {
+    let all: Vec<(&str, &Outcome)> = match against {
+        Against::Seal if value.under_sealed == value.under_today => vec![("both data", &value.under_sealed)],
+        Against::Seal => vec![("the sealed data", &value.under_sealed), ("today's data", &value.under_today)],
+        _ => vec![("today's data, against its recorded result", &value.under_today)],
+    };
+    let said = |(under, outcome): (&str, &Outcome)| {
+        json!({
+            "under": under, "verdict": outcome.verdict.word(), "loud": !outcome.verdict.is_same(),
+            "is": outcome.figure.as_ref().map(|figure| figure.shown.clone()),
+            "moved": outcome.moved.as_ref().map(|moved| moved.shown.clone()),
+            "causes": outcome.moved.as_ref().map(causes_words).unwrap_or_default(),
+            "parts_at": outcome.moved.as_ref().and_then(|moved| moved.parts_at.clone()),
+            "notes": outcome.notes,
+        })
+    };
+    all.into_iter().map(said).collect()
+}
+
+pub fn steps(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+    let mut rows = Vec::new();
+    for (at, value) in audit.values.iter().enumerate() {
+        for (which, steps) in value.steps.iter().enumerate() {
+            rows.push(derivation((at, which), value, steps, &audit.file));
+        }
+    }
+    rows
+}
+
+fn derivation((at, which): (usize, usize), value: &ValueAudit, steps: &SideBySide, file: &str) -> Value {
+    let mut before = 0;
+    let pair = |pair: &StepPair| {
+        let gap = pair.number > before + 1;
+        before = pair.number;
+        json!({
+            "number": pair.number, "gap": gap, "same": pair.is_same(), "parts": pair.parts,
+            "then": pair.then, "now": pair.now,
+        })
+    };
+    json!({
+        "at": at, "which": which, "label": value.label, "file": file, "under": steps.under,
+        "pairs": steps.pairs.iter().map(pair).collect::<Vec<_>>(), "left_out": left_out_words(steps),
+    })
+}
+
+pub fn lapsed(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+    audit.justifications.iter().filter(|one| one.lapsed).map(|one| justification(one, audit)).collect()
+}
+
+pub fn in_force(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+    audit.justifications.iter().filter(|one| !one.lapsed).map(|one| justification(one, audit)).collect()
+}
+
+fn justification(one: &Justification, audit: &NotebookAudit) -> Value {
+    let unit = audit.values.iter().find(|value| value.label == one.label).map_or("", |value| &value.unit);
+    json!({
+        "file": audit.file, "label": one.label, "id": one.id, "subject": one.subject, "reason": one.reason,
+        "lapsed": one.lapsed,
+        "author": audit.seal.as_ref().and_then(|seal| seal.author.clone()),
+        "sealed": audit.seal.as_ref().map(|seal| seal.sealed.clone()),
+        "at_signing": price(one.price.as_deref(), unit),
+        "sealed_data": price(one.price_sealed_data.as_deref(), unit),
+        "today": price(one.price_today.as_deref(), unit),
+    })
+}
+
+pub fn not_rederived(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+    let partly = audit.from_sources.iter().flatten().filter(|one| !is_same_again(one) || !one.not_rederived.is_empty());
+    partly
+        .map(|one| {
+            let words = match (&one.value, is_same_again(one)) {
+                (_, true) => "the same, with these steps taken as sealed".to_owned(),
+                (Some(value), false) => {
+                    format!("derived again as {value}, off by {}", one.off_by.as_deref().unwrap_or("an unknown amount"))
+                }
+                (None, false) => "could not be derived again".to_owned(),
+            };
+            json!({
+                "file": audit.file, "label": one.label, "words": words, "loud": !is_same_again(one),
+                "steps": one.not_rederived, "parts_at": one.parts_at,
+            })
+        })
+        .collect()
+}
+
+pub fn edited(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+    let cells = edited_cells(audit);
+    if cells.is_empty() {
+        return Vec::new();
+    }
+    vec![json!({ "file": audit.file, "cells": cells, "status": audit.status.word() })]
+}
+
+pub fn notebooks(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+    let seal = audit.seal.as_ref();
+    let verdict = |value: &ValueAudit| match audit.against {
+        Against::Seal => value.under_sealed.verdict,
+        _ => value.under_today.verdict,
+    };
+    vec![json!({
+        "file": audit.file, "sha256": audit.sha256, "status": audit.status.word(), "loud": audit.status.exit() > 0,
+        "against": match audit.against {
+            Against::Seal => "seal",
+            Against::RecordedOutputs => "recorded results",
+            Against::Nothing => "nothing",
+        },
+        "values": verdict_counts(audit.values.iter().map(verdict)),
+        "sealed": seal.map(|seal| seal.sealed.clone()),
+        "author": seal.and_then(|seal| seal.author.clone()),
+        "draft": seal.is_some_and(|seal| seal.draft),
+        "altered": seal.is_some_and(|seal| !seal.whole),
+        "signature": seal.map(signature_words),
+    })]
+}
