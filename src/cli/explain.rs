@@ -153,7 +153,7 @@ fn of_module(name: &str, method: &str, folder: &Path) -> Result<String, Fault> {
     if !missing.is_empty() {
         text.push_str(&format!("  (its comment says nothing of its {})\n", missing.join(", its ")));
     }
-    text.push_str("\n");
+    text.push('\n');
     item.text.lines().for_each(|line| text.push_str(&format!("    {line}\n")));
     Ok(text)
 }
