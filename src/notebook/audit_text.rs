@@ -1,5 +1,6 @@
 //! An audit as text: what differs first and at length, what is the same counted.
 
+use std::borrow::Cow;
 use std::fmt::Write as _;
 
 use crate::notebook::verdict::{
@@ -8,7 +9,7 @@ use crate::notebook::verdict::{
 
 /// One notebook.
 pub fn notebook(audit: &NotebookAudit) -> String {
-    let mut text = format!("{}: {}\n", audit.file, audit.status.word());
+    let mut text = format!("{}: {}\n", in_one_line(&audit.file), audit.status.word());
     match (&audit.seal, audit.against) {
         (Some(seal), _) => line(&mut text, &seal_words(seal)),
         (None, Against::RecordedOutputs) => line(&mut text, "not sealed: compared with the results recorded in it"),
@@ -87,9 +88,9 @@ fn from_sources(all: &[Rederived]) -> String {
 pub fn data_change(audit: &NotebookAudit) -> String {
     let changes = |value: &&ValueAudit| value.under_today.verdict != Verdict::Identical;
     if audit.faults.is_empty() && audit.values.iter().filter(changes).count() == 0 {
-        return format!("{}: no value would change\n", audit.file);
+        return format!("{}: no value would change\n", in_one_line(&audit.file));
     }
-    let mut text = format!("{}\n", audit.file);
+    let mut text = format!("{}\n", in_one_line(&audit.file));
     for fault in &audit.faults {
         line(&mut text, &format!("under {}: {}: {}", fault.under, fault.fault.cell, fault.fault.message));
     }
@@ -99,7 +100,20 @@ pub fn data_change(audit: &NotebookAudit) -> String {
 }
 
 fn line(text: &mut String, words: &str) {
-    let _ = writeln!(text, "  {words}"); // Writing to a text cannot fail.
+    let _ = writeln!(text, "  {}", in_one_line(words)); // Writing to a text cannot fail.
+}
+
+/// Words from a file as they can stand in a line: what would end it, steer a terminal or turn the writing round is spelt
+/// out, since a label could forge another row with it.
+pub fn in_one_line(words: &str) -> Cow<'_, str> {
+    let steers = |c: char| {
+        c.is_control() || matches!(c, '\u{2028}' | '\u{2029}' | '\u{202a}'..='\u{202e}' | '\u{2066}'..='\u{2069}')
+    };
+    if !words.contains(steers) {
+        return Cow::Borrowed(words);
+    }
+    let spelt = |c: char| if steers(c) { c.escape_unicode().to_string() } else { c.to_string() };
+    Cow::Owned(words.chars().map(spelt).collect())
 }
 
 fn seal_words(seal: &SealFacts) -> String {
