@@ -184,9 +184,10 @@ pub static EQUIPARTITION_TEMPERATURE: Card = Card {
     caution: None,
 };
 
-/// How far Cp is below its limit, as a share of it, without electrons.
+/// How far Cp is below its limit, as a share of it, without electrons and stretching, which have none.
 fn short_of_limit(molecule: &Molecule, t_k: f64) -> f64 {
-    let parts = || molecule.gas().parts.iter().filter(|part| !matches!(part, Part::Electronic(_)));
+    let parts =
+        || molecule.gas().parts.iter().filter(|part| !matches!(part, Part::Electronic(_) | Part::Stretching { .. }));
     let missing: f64 = parts().map(|part| part.limit() - part.share(t_k).cv).sum();
     missing / molecule.gas().classical_limit()
 }

@@ -18,6 +18,7 @@ pub mod shares;
 pub mod shipped;
 pub mod stretching;
 pub mod table;
+pub mod torsion_levels;
 pub mod treatment;
 
 use std::rc::Rc;

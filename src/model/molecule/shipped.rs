@@ -61,8 +61,8 @@ fn definition(cx: &Cx, substance: Arc<Substance>, record: &Constants) -> Result<
         Shape::Diatomic { we, wexe, be, alpha_e, spin_weights, isotopologue_mass, .. } => {
             heavy = Some(isotopologue_mass);
             let named = [(we, "ωe"), (wexe, "ωexe"), (be, "Be"), (alpha_e, "αe")];
-            // By the powers of the root of the ratio of the masses by which each goes.
-            let ratio = natural(cx, &substance, isotopologue_mass);
+            // Forms by nuclear spin are of one isotopologue, and stay so. By the powers of the root of the ratio of the masses by which each goes.
+            let ratio = if spin_weights.is_none() { natural(cx, &substance, isotopologue_mass) } else { 1.0 };
             let root = math::sqrt(ratio);
             let constants = named
                 .into_iter()

@@ -197,7 +197,8 @@ mod tests {
     #[test]
     fn measured_constants_lie_within_the_bracket_of_the_force_field() {
         // In cm⁻¹, from memory: G. Herzberg (1966) and later microwave work. CH4 has one constant, H2O and SO2 three.
-        let cases: [(&str, &[f64], &[f64], &[f64]); 3] = [
+        type Case = (&'static str, &'static [f64], &'static [f64], &'static [f64]);
+        let cases: [Case; 3] = [
             ("CH4", &[5.2412, 5.2412, 5.2412], &[2917.0, 1534.0, 3019.0, 1306.0], &[1.1e-4]),
             ("H2O", &[27.877, 14.512, 9.285], &[3657.0, 1595.0, 3756.0], &[1.25e-3, -5.77e-3, 3.25e-2]),
             ("SO2", &[2.0274, 0.34417, 0.29353], &[1151.0, 518.0, 1362.0], &[2.2e-7, -3.9e-6, 8.6e-5]),
@@ -259,7 +260,7 @@ mod tests {
                             squares += d * d / mass;
                         }
                     }
-                    for axis in 0..3 {
+                    for (axis, own) in inertia.iter().enumerate() {
                         let d = slope(&|points, h| {
                             for r in points.iter_mut() {
                                 let (a, b) = ((axis + 1) % 3, (axis + 2) % 3);
@@ -269,7 +270,7 @@ mod tests {
                                 );
                             }
                         });
-                        squares -= d * d / inertia[axis];
+                        squares -= d * d / own;
                     }
                     mean += wx * wy * wz * squares;
                 }
