@@ -14,9 +14,9 @@ use crate::archive::audits::Audits;
 use crate::archive::report::{About, ReportError, unwritable};
 use crate::archive::rows;
 use crate::archive::tally::Tally;
-use crate::archive::words::harmless;
 use crate::fault::Fault;
 use crate::notebook::verdict::NotebookAudit;
+use crate::render::harmless::harmless;
 
 /// Ends the opening of a part, and the words for each row.
 const EACH: &str = "<!-- each -->\n";

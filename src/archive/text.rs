@@ -8,9 +8,10 @@ use std::io::Write;
 use crate::archive::audits::Audits;
 use crate::archive::report::{About, unwritable};
 use crate::archive::tally::{CauseSum, Tally};
-use crate::archive::words::{counted, harmless, reasons, status_words, verdict_counts};
+use crate::archive::words::{counted, reasons, status_words, verdict_counts};
 use crate::fault::Fault;
 use crate::notebook::verdict::{AuditStatus, Verdict};
+use crate::render::harmless::harmless;
 
 /// Largest shares that a cause shows, each in a unit of its own.
 const SHARES: usize = 3;
