@@ -3,20 +3,25 @@
 //! Every altered copy is made from a shipped notebook, sealed anew here. What a revised figure must move is worked out from
 //! the revision itself: a reaction enthalpy moves by the stoichiometric number times the change of the figure.
 
+#[path = "seal/edits.rs"]
+mod edits;
+#[path = "seal/workshop.rs"]
+mod workshop;
+
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
-use hessbook::data::records::{Record, Records};
+use hessbook::data::records::Records;
 use hessbook::notebook::audit::{AuditOptions, audit_one};
 use hessbook::notebook::audit_text;
 use hessbook::notebook::holdings::Holdings;
 use hessbook::notebook::seal::{KEY, Seal};
 use hessbook::notebook::sealing::{Sealing, seal};
-use hessbook::notebook::verdict::{Against, AuditStatus, Cause, CauseKind, NotebookAudit, ValueAudit, Verdict};
+use hessbook::notebook::verdict::{Against, AuditStatus, CauseKind, Verdict};
 use hessbook::session::on_big_stack;
-use hessbook::source::sha256;
 use hessbook::units::constants;
 use serde_json::{Value, json};
+use workshop::{REPORTS, SHIFT, Workshop, move_of, number, revised, value};
 
 fn shipped_notebooks() -> Vec<PathBuf> {
     let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("notebooks");
@@ -24,105 +29,6 @@ fn shipped_notebooks() -> Vec<PathBuf> {
     found.retain(|path| path.extension().is_some_and(|extension| extension == "ipynb"));
     found.sort();
     found
-}
-
-/// A folder of its own with notebooks in it.
-struct Workshop {
-    folder: tempfile::TempDir,
-}
-
-impl Workshop {
-    fn new() -> Workshop {
-        Workshop { folder: tempfile::tempdir().unwrap() }
-    }
-
-    fn path(&self) -> PathBuf {
-        self.folder.path().join("copy.ipynb")
-    }
-
-    /// A notebook of these code cells, sealed.
-    fn sealed(cells: &[&str]) -> Workshop {
-        let workshop = Workshop::new();
-        let cells: Vec<Value> = (cells.iter())
-            .map(|source| {
-                json!({"cell_type": "code", "id": sha256(source.as_bytes())[..8], "metadata": {}, "source": source,
-                    "execution_count": null, "outputs": []})
-            })
-            .collect();
-        let tree = json!({"cells": cells, "metadata": {}, "nbformat": 4, "nbformat_minor": 5});
-        std::fs::write(workshop.path(), tree.to_string()).unwrap();
-        workshop.seal(&Sealing { date: "2026-12-01T00:00:00Z".to_owned(), ..Sealing::default() }).unwrap();
-        workshop
-    }
-
-    fn seal(&self, how: &Sealing) -> Result<Seal, hessbook::fault::Fault> {
-        let path = self.path();
-        on_big_stack(|| {
-            let made = seal(&path, how, &Holdings::shipped(), &Arc::default())?;
-            made.notebook.write(&path)?;
-            Ok(made.seal)
-        })
-    }
-
-    /// Changes the file as an editor might.
-    fn edit(&self, change: impl FnOnce(&mut Value)) {
-        let mut tree: Value = serde_json::from_slice(&std::fs::read(self.path()).unwrap()).unwrap();
-        change(&mut tree);
-        std::fs::write(self.path(), tree.to_string()).unwrap();
-    }
-
-    /// Exchanges a text in the source of its cells.
-    fn edit_cells(&self, from: &str, to: &str) {
-        let mut found = false;
-        self.edit(|tree| {
-            for cell in tree["cells"].as_array_mut().unwrap() {
-                let source = match &cell["source"] {
-                    Value::Array(lines) => lines.iter().map(|line| line.as_str().unwrap()).collect(),
-                    other => other.as_str().unwrap().to_owned(),
-                };
-                found |= source.contains(from);
-                cell["source"] = json!(source.replace(from, to));
-            }
-        });
-        assert!(found, "no cell has {from}");
-    }
-
-    fn audit(&self, options: &AuditOptions) -> NotebookAudit {
-        audit_one(&self.path(), options)
-    }
-}
-
-const SHIFT: &str = "let shift = reaction(\"CO(g) + H2O(g) -> CO2(g) + H2(g)\");";
-const REPORTS: &str = "report(\"shift\", shift.enthalpy(\"450 degC\"));\n\
-                       report(\"twice\", 2 * shift.enthalpy(\"450 degC\"));";
-
-fn value<'a>(audit: &'a NotebookAudit, label: &str) -> &'a ValueAudit {
-    audit.values.iter().find(|value| value.label == label).unwrap_or_else(|| panic!("no {label} in {audit:#?}"))
-}
-
-fn number(text: &str) -> f64 {
-    text.parse().unwrap()
-}
-
-/// The move of an outcome, its causes, and that its shares and remainder add up to it.
-fn move_of(outcome: &hessbook::notebook::verdict::Outcome) -> (f64, Vec<Cause>) {
-    let moved = outcome.moved.as_ref().unwrap_or_else(|| panic!("no move in {outcome:#?}"));
-    let shares: f64 = moved.causes.iter().map(|cause| number(cause.share.as_ref().unwrap())).sum();
-    let by = number(&moved.by);
-    // Differences of doubles of this size are off by a few units of their last place.
-    assert!((shares + number(&moved.remainder) - by).abs() <= 1e-12 * by.abs().max(100.0), "{moved:#?}");
-    (by, moved.causes.clone())
-}
-
-/// Today's tables with one figure revised.
-fn revised(key: &str, from: &str, to: &str) -> Holdings {
-    let shipped = Records::shipped();
-    let (key, record) = shipped.all().into_iter().find(|(known, _)| known.to_string() == key).unwrap();
-    assert!(record.content.contains(from), "{}", record.content);
-    let mut records = Records::clone(&shipped);
-    let content = record.content.replace(from, to);
-    records.put(&key, Some(&Record::from_text(&record.list, &record.id, &content)), &shipped);
-    Holdings::of(records)
 }
 
 #[test]

@@ -13,7 +13,7 @@ use crate::fault::Fault;
 use crate::notebook::file::{FileError, NotebookFile, Output};
 use crate::notebook::run::{RunRecord, RunStatus, Source, Watcher, run};
 use crate::notebook::seal::Seal;
-use crate::notebook::sealing::{cell_digests, read_seal};
+use crate::notebook::sealing::{read_seal, sealed_cells};
 use crate::render::report::{self, Record};
 use crate::render::{Bundle, text};
 use crate::session::{Session, on_big_stack};
@@ -104,7 +104,7 @@ fn executed(args: &Run, stop: Arc<AtomicBool>) -> Result<RunStatus, Fault> {
 
 /// Whether a seal is of these cells and these results.
 fn is_of(seal: &Seal, notebook: &NotebookFile, record: &RunRecord) -> bool {
-    seal.cells == cell_digests(notebook) && seal.values.iter().map(|value| &value.record).eq(&record.reports)
+    seal.cells == sealed_cells(notebook) && seal.values.iter().map(|value| &value.record).eq(&record.reports)
 }
 
 /// Text goes to standard output as it comes; a line on the terminal says which cell runs.

@@ -13,12 +13,13 @@ use serde::Deserialize;
 use crate::fault::Fault;
 use crate::notebook::causes::{Exchanged, Grounds, exchanged};
 use crate::notebook::comparison::{Compared, compare};
+use crate::notebook::edits::{Edit, edits, exchanged_edits};
 use crate::notebook::file::{NotebookFile, bytes_of};
 use crate::notebook::holdings::{Holdings, constants_of, files_of, records_of};
 use crate::notebook::rederive::rederive;
 use crate::notebook::run::{FaultRecord, Source};
-use crate::notebook::seal::{CellDigest, Seal, SealedValue};
-use crate::notebook::sealing::{cell_digests, engine_now, read_seal};
+use crate::notebook::seal::{Seal, SealedValue};
+use crate::notebook::sealing::{engine_now, read_seal};
 use crate::notebook::side_by_side::side_by_side;
 use crate::notebook::signature::{TrustedKey, checked};
 use crate::notebook::trial::{Trial, Unwatched, trial};
@@ -119,7 +120,13 @@ pub struct Runner<'a> {
 
 impl Runner<'_> {
     pub fn run(&self, holdings: &Holdings) -> Result<Trial, Fault> {
-        let mut source = Source::Cells(self.notebook.code_cells());
+        let cells = self.notebook.code_cells();
+        self.run_cells(cells.into_iter().map(|cell| (cell.name, cell.source)).collect(), holdings)
+    }
+
+    /// Runs these cells, each with its name, in place of the notebook's.
+    pub fn run_cells(&self, cells: Vec<(String, String)>, holdings: &Holdings) -> Result<Trial, Fault> {
+        let mut source = Source::Cells(cells);
         trial(self.file, &mut source, &self.settings, holdings, self.stop, &mut Unwatched)
     }
 }
@@ -133,8 +140,12 @@ pub(super) fn of_sealed(
     let set = seal.parameters.iter().filter_map(|one| Some((one.name.clone(), one.set.clone()?)));
     let runner = Runner { file, notebook, settings: set.collect(), stop: &options.stop };
     let then = sealed_holdings(file, seal, &options.today);
-    let grounds = Grounds::of(notebook, seal, &runner, &then, &options.today);
+    let edits = edits(file, notebook, seal);
+    let mut grounds = Grounds::of(seal, &runner, &then, &options.today);
     let under_sealed = runner.run(&then.holdings)?;
+    if !edits.is_empty() && parts_from(seal, &under_sealed) {
+        grounds.edits = Some(exchanged_edits(&runner, &then.holdings, seal, edits.clone(), &under_sealed)?);
+    }
     let today = (!then.is_today).then(|| runner.run(&options.today)).transpose()?;
     let under_today = today.as_ref().unwrap_or(&under_sealed);
     let shares = match &today {
@@ -166,7 +177,7 @@ pub(super) fn of_sealed(
     };
     let mut audit = NotebookAudit {
         seal: Some(facts),
-        environment: environment(notebook, seal, &options.today),
+        environment: environment(&edits, seal, &options.today),
         justifications: justifications(seal, &under_sealed, under_today),
         untested: untested(seal),
         not_compared: not_compared(notebook, Some(seal)),
@@ -206,6 +217,11 @@ pub(super) fn sealed_holdings(file: &str, seal: &Seal, today: &Holdings) -> Then
     }
     let holdings = Holdings::of(today.records.with_sealed(&records, &entities)).with_constants(constants);
     Then { holdings: holdings.with_files(files), is_today: false }
+}
+
+/// Whether a run gives anything but the sealed records.
+fn parts_from(seal: &Seal, trial: &Trial) -> bool {
+    !seal.values.iter().map(|value| &value.record).eq(trial.reports.iter().map(|tried| &tried.report.record))
 }
 
 /// Whether two runs part in any figure, row or fault.
@@ -301,7 +317,7 @@ fn status(audit: &NotebookAudit, strict_data: bool) -> AuditStatus {
 }
 
 /// What differs about the surroundings.
-fn environment(notebook: &NotebookFile, seal: &Seal, today: &Holdings) -> Vec<Difference> {
+fn environment(edits: &[Edit], seal: &Seal, today: &Holdings) -> Vec<Difference> {
     let mut found = Vec::new();
     let mut differs = |what: &str, sealed: &str, now: &str| {
         if sealed != now {
@@ -312,32 +328,11 @@ fn environment(notebook: &NotebookFile, seal: &Seal, today: &Holdings) -> Vec<Di
     differs("program", &seal.engine.version, &now.version);
     differs("shipped tables and procedures", &seal.engine.stdlib, &now.stdlib);
     differs("constant set", &seal.constants.year, &today.constants.year.to_string());
-    for sides in cells_side_by_side(notebook, seal) {
-        let word = |digest: Option<String>| digest.unwrap_or_else(|| "not there".to_owned());
-        differs(&sides.cell, &word(sides.then), &word(sides.now));
+    for edit in edits {
+        let word = |digest: &Option<String>| digest.clone().unwrap_or_else(|| "not there".to_owned());
+        differs(&edit.what, &word(&edit.then), &word(&edit.now));
     }
     found
-}
-
-/// The digests of one code cell in the seal and now.
-pub(super) struct Sides {
-    pub cell: String,
-    pub then: Option<String>,
-    pub now: Option<String>,
-}
-
-/// Each code cell of the seal and of the notebook.
-pub(super) fn cells_side_by_side(notebook: &NotebookFile, seal: &Seal) -> Vec<Sides> {
-    let digests = cell_digests(notebook);
-    let of =
-        |cells: &[CellDigest], name: &str| cells.iter().find(|cell| cell.name == name).map(|cell| cell.sha256.clone());
-    let mut listed: Vec<Sides> = Vec::new();
-    for name in seal.cells.iter().chain(&digests).map(|cell| cell.name.as_str()) {
-        if !listed.iter().any(|known| known.cell == name) {
-            listed.push(Sides { cell: name.to_owned(), then: of(&seal.cells, name), now: of(&digests, name) });
-        }
-    }
-    listed
 }
 
 fn justifications(seal: &Seal, under_sealed: &Trial, under_today: &Trial) -> Vec<Justification> {

@@ -9,8 +9,8 @@ use std::sync::Arc;
 
 use crate::data::records::{Record, RecordKey, Records};
 use crate::fault::Fault;
-use crate::notebook::audit::{Runner, Then, cells_side_by_side};
-use crate::notebook::file::NotebookFile;
+use crate::notebook::audit::{Runner, Then};
+use crate::notebook::edits::{Edit, ExchangedEdits, altered_texts};
 use crate::notebook::holdings::{Holdings, altered_records, constants_of, records_of};
 use crate::notebook::seal::{Seal, SealedValue};
 use crate::notebook::sealing::engine_now;
@@ -28,8 +28,8 @@ pub struct Grounds<'a> {
     pub seal: &'a Seal,
     /// Whether the seal's digest is that of its content.
     pub whole: bool,
-    edited: Vec<String>,
-    modules: Vec<String>,
+    /// What each edited cell and module moved; none where nothing was edited, or nothing moved.
+    pub edits: Option<ExchangedEdits>,
     /// How the program differs, in words.
     engine: Option<String>,
     /// Records of the seal that were altered in it, each with the values that the true record gives, where it is known.
@@ -39,25 +39,14 @@ pub struct Grounds<'a> {
 /// Values by label, in SI units, with their standard uncertainty.
 pub type Values = BTreeMap<String, (f64, Option<f64>)>;
 
-fn values_of(trial: &Trial) -> Values {
+/// What a run gave.
+pub fn values_of(trial: &Trial) -> Values {
     let of = |tried: &Tried| (tried.report.record.label.clone(), (tried.value.si(), tried.value.spread().u()));
     trial.reports.iter().map(of).collect()
 }
 
 impl<'a> Grounds<'a> {
-    pub(super) fn of(
-        notebook: &NotebookFile,
-        seal: &'a Seal,
-        runner: &Runner,
-        then: &Then,
-        today: &Holdings,
-    ) -> Grounds<'a> {
-        let edited = cells_side_by_side(notebook, seal).into_iter().filter(|sides| sides.then != sides.now);
-        let edited = edited.map(|sides| match (sides.then, sides.now) {
-            (Some(_), Some(_)) => sides.cell,
-            (Some(_), None) => format!("{}, taken away", sides.cell),
-            (None, _) => format!("{}, added", sides.cell),
-        });
+    pub(super) fn of(seal: &'a Seal, runner: &Runner, then: &Then, today: &Holdings) -> Grounds<'a> {
         let now = engine_now();
         let engine = (seal.engine.version != now.version)
             .then(|| format!("hessbook {} then, {} now", seal.engine.version, now.version));
@@ -66,14 +55,7 @@ impl<'a> Grounds<'a> {
             let values = restored(seal, &name, then, today).and_then(|holdings| runner.run(&holdings).ok());
             (name, values.map(|trial| values_of(&trial)))
         });
-        Grounds {
-            seal,
-            whole,
-            edited: edited.collect(),
-            modules: Vec::new(),
-            engine,
-            altered: if whole { Vec::new() } else { altered.collect() },
-        }
+        Grounds { seal, whole, edits: None, engine, altered: if whole { Vec::new() } else { altered.collect() } }
     }
 
     /// Causes of what moved a value while its records and constants stayed: together they are the move.
@@ -103,19 +85,67 @@ impl<'a> Grounds<'a> {
         if left.abs() <= rounding && !causes.is_empty() {
             return causes;
         }
-        let edits: Vec<String> = self.edited.iter().chain(&self.modules).cloned().collect();
-        let rest = if !self.edited.is_empty() {
-            (CauseKind::Cell, edits.join("; "))
-        } else if !self.modules.is_empty() {
-            (CauseKind::Module, edits.join("; "))
-        } else if !self.whole {
-            (CauseKind::Seal, "its content is not what was sealed".to_owned())
-        } else {
-            let same =
-                || format!("hessbook {} gives another value from the same cells and data", self.seal.engine.version);
-            (CauseKind::Engine, self.engine.clone().unwrap_or_else(same))
-        };
-        causes.push((rest.0, rest.1, Some(left)));
+        if let Some(edits) = &self.edits {
+            let told = self.edit_causes(edits, sealed, now, left, rounding);
+            causes.extend(told);
+            return causes;
+        }
+        let (kind, what) = self.otherwise();
+        causes.push((kind, what, Some(left)));
+        causes
+    }
+
+    /// What moved a value that nobody edited.
+    fn otherwise(&self) -> (CauseKind, String) {
+        if !self.whole {
+            let altered = altered_texts(self.seal);
+            let of = if altered.is_empty() { String::new() } else { format!(": the text of {}", altered.join(", ")) };
+            return (CauseKind::Seal, format!("its content is not what was sealed{of}"));
+        }
+        let same = || format!("hessbook {} gives another value from the same cells and data", self.seal.engine.version);
+        (CauseKind::Engine, self.engine.clone().unwrap_or_else(same))
+    }
+
+    /// What the sealed cells give today, and then each edit; edits that cannot run alone have what is left.
+    fn edit_causes(
+        &self,
+        edits: &ExchangedEdits,
+        sealed: &SealedValue,
+        now: &Tried,
+        mut left: f64,
+        rounding: f64,
+    ) -> Vec<(CauseKind, String, Option<f64>)> {
+        let label = &sealed.record.label;
+        let factor = super::comparison::factor_of(&sealed.record.unit);
+        let mut causes = Vec::new();
+        let base = edits.as_sealed.get(label).map(|(si, _)| *si);
+        if let Some(base) = base {
+            let by_program = left - (now.value.si() - base) / factor;
+            if by_program.abs() > rounding {
+                let (kind, what) = self.otherwise();
+                causes.push((kind, what, Some(by_program)));
+                left -= by_program;
+            }
+        }
+        let mut together: Vec<&Edit> = Vec::new();
+        let single = edits.each.len() == 1;
+        for (edit, values) in &edits.each {
+            let share = values.get(label).map(|(si, _)| *si).zip(base).map(|(si, base)| (si - base) / factor);
+            match share {
+                _ if single => together.push(edit),
+                Some(0.0) => {}
+                Some(share) => {
+                    left -= share;
+                    causes.push((edit.kind, edit.what.clone(), Some(share)));
+                }
+                None => together.push(edit),
+            }
+        }
+        if let Some(first) = together.first() {
+            let what = together.iter().map(|edit| edit.what.as_str()).collect::<Vec<_>>().join("; ");
+            let what = if together.len() > 1 { format!("{what}: together") } else { what };
+            causes.push((first.kind, what, Some(left)));
+        }
         causes
     }
 

@@ -28,7 +28,8 @@ pub fn compare_data(path: &Path, old: &Holdings, new: &Holdings, stop: &Arc<Atom
         let settings: BTreeMap<String, String> = (seal.into_iter().flat_map(|seal| seal.parameters))
             .filter_map(|parameter| Some((parameter.name, parameter.set?)))
             .collect();
-        let mut source = Source::Cells(notebook.code_cells());
+        let cells = notebook.code_cells().into_iter().map(|cell| (cell.name, cell.source));
+        let mut source = Source::Cells(cells.collect());
         let tried = trial(&file, &mut source, &settings, old, stop, &mut Unwatched)?;
         let made = in_memory(&notebook, &tried, &Sealing { settings, ..Sealing::default() }, old);
         let options =

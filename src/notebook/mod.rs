@@ -5,6 +5,7 @@ pub mod audit_text;
 pub mod causes;
 pub mod comparison;
 pub mod data_change;
+pub mod edits;
 pub mod file;
 pub mod holdings;
 pub mod parting;

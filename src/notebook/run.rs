@@ -69,8 +69,8 @@ impl FaultRecord {
 /// Something to run.
 pub enum Source {
     Notebook(NotebookFile),
-    /// The code cells of a notebook whose outputs nobody wants.
-    Cells(Vec<CodeCell>),
+    /// Code cells, each with its name, whose outputs nobody wants.
+    Cells(Vec<(String, String)>),
     Script {
         name: String,
         text: String,
@@ -100,7 +100,7 @@ impl Source {
                 .into_iter()
                 .map(|cell| (cell.name.clone(), cell.source.clone(), Some(cell)))
                 .collect(),
-            Source::Cells(cells) => cells.iter().map(|cell| (cell.name.clone(), cell.source.clone(), None)).collect(),
+            Source::Cells(cells) => cells.iter().map(|(name, text)| (name.clone(), text.clone(), None)).collect(),
             Source::Script { name, text } => vec![(name.clone(), text.clone(), None)],
         }
     }

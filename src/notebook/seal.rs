@@ -14,7 +14,7 @@ use crate::render::report::Record;
 use crate::source::sha256;
 
 /// Name and version of this shape. Another version is another shape, and this program says so.
-pub const FORMAT: &str = "hessbook-seal/1";
+pub const FORMAT: &str = "hessbook-seal/2";
 
 /// Where it stands in the notebook's metadata.
 pub const KEY: &str = "hessbook_seal";
@@ -33,8 +33,9 @@ pub struct Seal {
     /// Assumptions that stayed open: every `untested` row, and in a draft what was not dealt with.
     pub open: Vec<OpenRow>,
     pub constants: Constants,
-    pub cells: Vec<CellDigest>,
-    pub modules: Vec<ModuleDigest>,
+    pub cells: Vec<SealedCell>,
+    /// Methods in files beside the notebook, which its cells used.
+    pub modules: Vec<SealedModule>,
     pub parameters: Vec<SealedParameter>,
     pub values: Vec<SealedValue>,
     /// Steps of all values, inputs before their users, each once. Steps point at each other by their position, from 0.
@@ -86,19 +87,24 @@ pub struct SealedConstant {
     pub unit: String,
 }
 
-/// The digest of a code cell's source, its lines joined and ended by a line feed alone.
+/// A code cell. Its text is kept so that an audit can tell what each of several edits moved.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
-pub struct CellDigest {
+pub struct SealedCell {
     /// `cell-3`: the third code cell.
     pub name: String,
+    /// Of its text.
     pub sha256: String,
+    /// Its lines joined and ended by a line feed alone.
+    pub source: String,
 }
 
-/// The digest of a procedure file used beside the notebook.
+/// A module: a file of methods beside the notebook.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
-pub struct ModuleDigest {
+pub struct SealedModule {
+    /// `plant.rhai`
     pub name: String,
     pub sha256: String,
+    pub content: String,
 }
 
 /// A declared input.
@@ -365,7 +371,12 @@ pub fn canonical(value: &Value) -> String {
     }
 }
 
-/// The digest of a cell's source, whatever line ends its editor writes.
+/// A cell's source, whatever line ends its editor writes.
+pub fn source_text(source: &str) -> String {
+    source.replace("\r\n", "\n")
+}
+
+/// The digest of a cell's source.
 pub fn source_digest(source: &str) -> String {
-    sha256(source.replace("\r\n", "\n").as_bytes())
+    sha256(source_text(source).as_bytes())
 }

@@ -18,7 +18,8 @@ use crate::notebook::file::NotebookFile;
 use crate::notebook::holdings::{Holdings, sealed_constants, sealed_tables};
 use crate::notebook::run::{FaultRecord, Source};
 use crate::notebook::seal::{
-    CellDigest, Decision, Engine, FORMAT, KEY, OpenRow, Seal, SealedFile, SealedParameter, SealedValue, source_digest,
+    Decision, Engine, FORMAT, KEY, OpenRow, Seal, SealedCell, SealedFile, SealedModule, SealedParameter, SealedValue,
+    source_digest, source_text,
 };
 use crate::notebook::signature::PrivateKey;
 use crate::notebook::skeleton::{Skeleton, sealed_kind};
@@ -173,11 +174,14 @@ pub fn engine_now() -> Engine {
     Engine { version: env!("CARGO_PKG_VERSION").to_owned(), stdlib: sha256(listed.concat().as_bytes()) }
 }
 
-/// The digests of the code cells of a notebook.
-pub fn cell_digests(notebook: &NotebookFile) -> Vec<CellDigest> {
-    let digest =
-        |cell: crate::notebook::file::CodeCell| CellDigest { sha256: source_digest(&cell.source), name: cell.name };
-    notebook.code_cells().into_iter().map(digest).collect()
+/// The code cells of a notebook as a seal keeps them.
+pub fn sealed_cells(notebook: &NotebookFile) -> Vec<SealedCell> {
+    let sealed = |cell: crate::notebook::file::CodeCell| SealedCell {
+        sha256: source_digest(&cell.source),
+        source: source_text(&cell.source),
+        name: cell.name,
+    };
+    notebook.code_cells().into_iter().map(sealed).collect()
 }
 
 /// Rows that are strained or broken and that nobody dealt with.
@@ -231,8 +235,8 @@ fn of_trial(notebook: &NotebookFile, tried: &Trial, how: &Sealing, holdings: &Ho
         draft: !refused.is_empty(),
         open,
         constants: sealed_constants(holdings.constants),
-        cells: cell_digests(notebook),
-        modules: Vec::new(),
+        cells: sealed_cells(notebook),
+        modules: tried.modules.iter().map(|(name, bytes)| sealed_module(name, bytes)).collect(),
         parameters: parameters.collect(),
         values,
         steps: skeleton.steps,
@@ -242,6 +246,12 @@ fn of_trial(notebook: &NotebookFile, tried: &Trial, how: &Sealing, holdings: &Ho
         digest: String::new(),
         signature: None,
     }
+}
+
+/// A module is always kept whole: it was read as UTF-8, and its size is limited where it is read.
+fn sealed_module(name: &str, bytes: &[u8]) -> SealedModule {
+    let content = String::from_utf8_lossy(bytes).into_owned();
+    SealedModule { name: name.to_owned(), sha256: sha256(bytes), content }
 }
 
 /// A text of at most [`MOST_KEPT`] is kept whole; of others the digest.

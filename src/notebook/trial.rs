@@ -26,6 +26,8 @@ pub struct Trial {
     pub faults: Vec<FaultRecord>,
     /// Entities that the cells asked for.
     pub asked: BTreeSet<Arc<str>>,
+    /// Modules in use at the end, by the names of their files.
+    pub modules: BTreeMap<String, Arc<[u8]>>,
     /// Files beside the notebook that the cells read.
     pub files: BTreeMap<String, Arc<[u8]>>,
 }
@@ -72,6 +74,7 @@ pub fn trial(
         faults: record.faults,
         // Datasets that cells loaded lie over the catalogue, and were asked in its place.
         asked: session.references().catalog().asked(),
+        modules: session.modules_used(),
         files: session.files_read(),
     })
 }
