@@ -95,8 +95,7 @@ static AUDITS: LazyLock<Vec<NotebookAudit>> = LazyLock::new(|| {
     );
     copy("pressure-vessel", "revised");
     sealed(&path("same"), "let c = q(\"2.5(1) kJ\");\nlet d = c * 3.0;\nreport(\"heat\", d)", None);
-    let whole = std::fs::read(shipped.join("pressure-vessel.ipynb")).unwrap();
-    std::fs::write(path("torn"), &whole[..whole.len() / 2]).unwrap();
+    std::fs::write(path("torn"), "{\"nbformat\": 4, \"cells\": [{\"source\": \"let shift = rea").unwrap();
     let mut names: Vec<_> = std::fs::read_dir(folder.path()).unwrap().map(|entry| entry.unwrap().path()).collect();
     names.sort();
     let folder_text = folder.path().display().to_string();
