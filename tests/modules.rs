@@ -263,3 +263,36 @@ fn many_cells_with_functions_do_not_lose_a_module() {
         assert_eq!(bench.ok("kept()"), "2.0");
     });
 }
+
+#[test]
+fn the_methods_of_the_demo_plant_say_what_they_rest_on_and_compute_what_they_say() {
+    let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("notebooks");
+    let text = std::fs::read_to_string(folder.join("plant.rhai")).unwrap();
+    for item in hessbook::script::module_text::read("plant.rhai", &text).unwrap() {
+        let parts =
+            if item.arguments.is_some() { vec!["Derivation:", "Conditions:", "Source:"] } else { vec!["Source:"] };
+        for part in parts {
+            assert!(item.comment.lines().any(|line| line.starts_with(part)), "{}: {part}", item.name);
+        }
+    }
+    on(|| {
+        let mut bench = Bench::with(&[]);
+        bench.session.set_folder(folder);
+        // With one route alone a mole takes up the enthalpy of its reaction; half-way it is the mean of both.
+        bench.ok("let T = \"500 K\"; let n = exact(\"1 mol[methanol]/s\");
+            let one = reaction(\"CO(g) + 2 H2(g) -> methanol(g)\").enthalpy(T).value(\"kJ/mol\");
+            let other = reaction(\"CO2(g) + 3 H2(g) -> methanol(g) + H2O(g)\").enthalpy(T).value(\"kJ/mol\");
+            let duty = |x| plant::reactor_duty(n, x, T).value(\"kW\");
+            for pair in [[duty.call(0), one], [duty.call(1), other], [duty.call(0.5), (one + other) / 2]] {
+                // A few products and sums of doubles.
+                require((pair[0] - pair[1]).abs() < 1e-12 * pair[1].abs(), `${pair}`);
+            }");
+        bench.ok("let loss = plant::shell_loss(q(\"64 degC\"), q(\"21 degC\")).value(\"W\");
+            // 18.5 W/K times 43 K.
+            require((loss - 795.5).abs() < 1e-9, `${loss}`)");
+        // 1 kg of water from 20 to 30 degC takes up 41.8 kJ: cp is 4.18 kJ/(kg K) there, to the digits given (IAPWS-95, from
+        // memory: 4.184 at 20 degC, 4.180 at 30 degC).
+        bench.ok("let duty = plant::cooling_duty(exact(\"1 kg[H2O]/s\"), exact(\"20 degC\"), exact(\"30 degC\"));
+            require((duty.value(\"kW\") - 41.8).abs() < 0.05, `${duty}`)");
+    });
+}

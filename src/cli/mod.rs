@@ -7,6 +7,7 @@ mod archive;
 mod audit;
 mod data;
 mod data_change;
+mod explain;
 mod install;
 mod kernel;
 mod keys;
@@ -38,6 +39,7 @@ enum Command {
     Audit(audit::Audit),
     #[command(hide = true)]
     AuditWorker(audit::AuditWorker),
+    Explain(explain::Explain),
     Data(data::Data),
     Keys(keys::Keys),
     Install(install::Install),
@@ -51,6 +53,7 @@ pub fn run() -> ExitCode {
         Command::Seal(command) => command.run(),
         Command::Audit(command) => command.run(),
         Command::AuditWorker(command) => command.run(),
+        Command::Explain(command) => command.run(),
         Command::Data(command) => command.run(),
         Command::Keys(command) => command.run(),
         Command::Install(command) => command.run(),

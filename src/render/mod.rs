@@ -5,6 +5,7 @@
 
 pub mod balance;
 pub mod budget;
+pub mod card;
 pub mod cells;
 pub mod comparison;
 pub mod csv;
