@@ -11,11 +11,14 @@ use std::rc::Rc;
 use std::time::Instant;
 
 use hessbook::model::card::{self, Cx, References, Value};
-use hessbook::model::function;
 use hessbook::model::grid::GRID;
 use hessbook::model::property_card::{ENTHALPY, EQUILIBRIUM_CONSTANT, GIBBS_ENERGY};
 use hessbook::model::reaction::REACTION;
 use hessbook::units::constants;
+
+#[path = "shared/polynomials.rs"]
+mod polynomials;
+use polynomials::species;
 
 const POINTS: usize = 1_000_000;
 const REPEATS: u32 = 9;
@@ -25,27 +28,6 @@ const SHIFT: &str = "CO(g) + H2O(g) -> CO2(g) + H2(g)";
 
 const PYTHON: &str = ".venv/bin/python";
 const SETUP: &str = "`tests/client/run` sets it up";
-
-/// What numpy is told: the polynomials, and the figures they are joined to.
-fn description(reaction: &Value, cx: &Cx) -> String {
-    let Value::Reaction(reaction) = reaction else { panic!("a reaction was asked for") };
-    let species = reaction.terms().iter().map(|term| {
-        let function = term.substance.function.as_ref().expect("gases have functions");
-        let dataset = &cx.data().datasets().iter().find(|one| one.rank.is_some()).expect("one is first").id;
-        let record = term.substance.formation(dataset);
-        // An element has no record where its convention needs none.
-        let formation = record.map_or(0.0, |record| record.dhf.value);
-        let intervals = function.intervals.iter();
-        let intervals: Vec<_> =
-            intervals.map(|one| serde_json::json!({ "t_max": one.t_max, "a": one.a, "b": one.b })).collect();
-        let h_298 = function::evaluate(function, function::T_REFERENCE).h;
-        serde_json::json!({
-            "nu": term.nu, "r": function.r_of_source, "formation": formation, "h_298": h_298, "intervals": intervals,
-        })
-    });
-    let species: Vec<_> = species.collect();
-    serde_json::json!({ "from": FROM, "to": TO, "points": POINTS, "species": species }).to_string()
-}
 
 /// Seconds of the fastest run of numpy, the sum of its values, and its version.
 fn numpy(description: &str) -> Result<(f64, f64, String), String> {
@@ -98,7 +80,8 @@ fn main() {
     print("ΔrH°, one call with provenance", ours);
     print("ΔrG°", gibbs);
     print("K°", constant);
-    match numpy(&description(&reaction, &cx)) {
+    let grid = serde_json::json!({ "from": FROM, "to": TO, "points": POINTS, "species": species(&reaction, &cx) });
+    match numpy(&grid.to_string()) {
         Err(why) => println!("  nothing to compare with: {why}"),
         Ok((seconds, theirs, version)) => {
             print(&format!("ΔrH°, numpy {version} on the same polynomials"), seconds);

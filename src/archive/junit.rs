@@ -18,7 +18,7 @@ use crate::fault::Fault;
 use crate::notebook::verdict::{
     Against, AuditFault, AuditStatus, NotebookAudit, Outcome, Rederived, Signed, ValueAudit, Verdict,
 };
-use crate::render::harmless::harmless;
+use crate::render::harmless::{harmless, in_one_line};
 
 /// Closes the outermost element; names and texts cannot hold it, since `<` is escaped in them.
 const END: &str = "</testsuites>";
@@ -69,7 +69,7 @@ fn legal(text: &str) -> String {
 
 /// A name or a message, which stands in one line.
 fn line(text: &str) -> String {
-    legal(text).replace('\n', " ")
+    in_one_line(text).into_owned()
 }
 
 fn suite(audit: &NotebookAudit, about: &About) -> TestSuite {

@@ -99,7 +99,7 @@ fn environment() -> Environment<'static> {
     environment.set_undefined_behavior(UndefinedBehavior::Strict);
     environment.set_auto_escape_callback(|_| AutoEscape::Html);
     environment.set_formatter(|out, state, value| match value.as_str() {
-        Some(text) => escape_formatter(out, state, &Value::from(harmless(text))),
+        Some(text) => escape_formatter(out, state, &Value::from(harmless(text).as_ref())),
         None => escape_formatter(out, state, value),
     });
     environment

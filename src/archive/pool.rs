@@ -209,6 +209,8 @@ impl Worker {
     fn start(pool: &Pool, order: &Order) -> std::io::Result<Worker> {
         let mut child = Command::new(&pool.program)
             .arg("audit-worker")
+            // One heap for all threads: each further one sets address space aside, which the memory limit counts.
+            .env("MALLOC_ARENA_MAX", "1")
             .stdin(Stdio::piped())
             .stdout(Stdio::piped())
             .stderr(Stdio::piped())

@@ -22,9 +22,8 @@ pub(super) struct Start {
     pub memory_limit_mib: u64,
 }
 
-/// Address space that a worker takes before it has read a notebook: the stack of its evaluation, 256 MiB, the program, and
-/// what the allocator sets aside for each thread.
-const BEFORE_MIB: u64 = 768;
+/// The stack on which a notebook is evaluated, which is set aside as a whole, and what threads and their start take.
+const BESIDE_MIB: u64 = 256 + 32;
 
 /// Serves until the input ends.
 ///
@@ -79,8 +78,16 @@ fn no_order(error: &serde_json::Error) -> Fault {
 
 /// A notebook that wants more memory loses its worker instead of troubling the machine.
 fn limit_memory(mib: u64) {
-    let bytes = (mib + BEFORE_MIB) << 20;
+    let bytes = address_space() + ((mib + BESIDE_MIB) << 20);
     if let Err(error) = rlimit::setrlimit(rlimit::Resource::AS, bytes, bytes) {
         let _ = writeln!(io::stderr(), "memory is not limited: {error}");
     }
+}
+
+/// What the program takes before it has read a notebook, in bytes.
+fn address_space() -> u64 {
+    // The first figure counts pages, which have 4 KiB or more; a system without the file gets a guess.
+    let pages = std::fs::read_to_string("/proc/self/statm").ok();
+    let pages = pages.and_then(|text| text.split(' ').next()?.parse::<u64>().ok());
+    pages.map_or(256 << 20, |pages| pages * 4096)
 }

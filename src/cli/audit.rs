@@ -105,7 +105,12 @@ impl Audit {
 /// One notebook as text: where there are many, one that is the same takes one line.
 fn text_of(audit: &NotebookAudit, many: bool) -> String {
     if many && audit.status == AuditStatus::Same {
-        return format!("{}: {}, {} values\n", audit.file, audit.status.word(), audit.values.len());
+        return format!(
+            "{}: {}, {} values\n",
+            audit_text::in_one_line(&audit.file),
+            audit.status.word(),
+            audit.values.len()
+        );
     }
     audit_text::notebook(audit)
 }

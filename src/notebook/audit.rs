@@ -203,7 +203,7 @@ pub(super) fn sealed_holdings(file: &str, seal: &Seal, today: &Holdings) -> Then
     let files = files_of(seal);
     let same_files = seal.files.iter().all(|sealed| {
         let beside = Path::new(file).parent().unwrap_or(Path::new("")).join(&sealed.name);
-        std::fs::read(beside).is_ok_and(|bytes| sha256(&bytes) == sealed.sha256)
+        bytes_of(&beside).is_ok_and(|bytes| sha256(&bytes) == sealed.sha256)
     });
     let same_text = |a: &crate::data::records::Records, b: &crate::data::records::Records| {
         let texts = |records: &crate::data::records::Records| -> BTreeMap<_, _> {

@@ -5,11 +5,11 @@ use std::fmt::Write as _;
 use crate::notebook::verdict::{
     Against, Move, NotebookAudit, Outcome, Rederived, SealFacts, Signed, ValueAudit, Verdict,
 };
-use crate::render::harmless::harmless;
+pub use crate::render::harmless::in_one_line;
 
 /// One notebook.
 pub fn notebook(audit: &NotebookAudit) -> String {
-    let mut text = format!("{}: {}\n", harmless(&audit.file), audit.status.word());
+    let mut text = format!("{}: {}\n", in_one_line(&audit.file), audit.status.word());
     match (&audit.seal, audit.against) {
         (Some(seal), _) => line(&mut text, &seal_words(seal)),
         (None, Against::RecordedOutputs) => line(&mut text, "not sealed: compared with the results recorded in it"),
@@ -88,9 +88,9 @@ fn from_sources(all: &[Rederived]) -> String {
 pub fn data_change(audit: &NotebookAudit) -> String {
     let changes = |value: &&ValueAudit| value.under_today.verdict != Verdict::Identical;
     if audit.faults.is_empty() && audit.values.iter().filter(changes).count() == 0 {
-        return format!("{}: no value would change\n", harmless(&audit.file));
+        return format!("{}: no value would change\n", in_one_line(&audit.file));
     }
-    let mut text = format!("{}\n", harmless(&audit.file));
+    let mut text = format!("{}\n", in_one_line(&audit.file));
     for fault in &audit.faults {
         line(&mut text, &format!("under {}: {}: {}", fault.under, fault.fault.cell, fault.fault.message));
     }
@@ -100,8 +100,7 @@ pub fn data_change(audit: &NotebookAudit) -> String {
 }
 
 fn line(text: &mut String, words: &str) {
-    // A label of someone else's notebook could steer the terminal. Writing to a text cannot fail.
-    let _ = writeln!(text, "  {}", harmless(words));
+    let _ = writeln!(text, "  {}", in_one_line(words)); // Writing to a text cannot fail.
 }
 
 fn seal_words(seal: &SealFacts) -> String {

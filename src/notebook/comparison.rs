@@ -87,6 +87,10 @@ impl Base {
         if other_unit {
             notes.push(format!("it was in {}, and is in {}", record.unit, is.unit));
         }
+        if number(record).is_none() {
+            let value: String = record.value.chars().take(40).collect();
+            notes.push(format!("the seal has `{value}` for its value, which is no number"));
+        }
         let by = number(record).zip(in_unit_of(record, now)).map(|(then, now)| now - then);
         let same_u = record.u == is.u && record.u_coverage == is.u_coverage;
         if !same_u && !other_unit {
@@ -137,7 +141,7 @@ impl Base {
         let other_conditions = record.conditions != is.conditions;
         let verdict = if self.other_unit {
             Verdict::UnitOrBasisChanged
-        } else if !same_figures && record.shown == is.shown && !edited {
+        } else if !same_figures && record.shown == is.shown && !edited && self.by.is_some() {
             Verdict::SameAsPrinted
         } else if !same_figures && within_u {
             Verdict::WithinU

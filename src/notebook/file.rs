@@ -18,6 +18,8 @@ use crate::render::Bundle;
 pub enum FileError {
     #[error("cannot read {path}: {why}", path = path.display())]
     Read { path: PathBuf, why: String },
+    #[error("{path} has {mib} MiB, and there is not the memory to read it", path = path.display())]
+    TooLarge { path: PathBuf, mib: u64 },
     #[error("{path} is not a notebook: {why}", path = path.display())]
     NotANotebook { path: PathBuf, why: String },
     #[error("{path} is a notebook of format {major}, and this program reads format 4", path = path.display())]
@@ -32,6 +34,7 @@ impl Explain for FileError {
     fn code(&self) -> &'static str {
         match self {
             FileError::Read { .. } => "file-unreadable",
+            FileError::TooLarge { .. } => "notebook-out-of-memory",
             FileError::NotANotebook { .. } => "not-a-notebook",
             FileError::Format { .. } => "notebook-format",
             FileError::Language { .. } => "notebook-language",
@@ -42,6 +45,10 @@ impl Explain for FileError {
     fn hint(&self) -> String {
         match self {
             FileError::Read { .. } => "check the path and the rights to the file".to_owned(),
+            FileError::TooLarge { .. } => {
+                "clear its outputs in a front end and save it; an audit may be allowed more with --memory-limit MIB"
+                    .to_owned()
+            }
             FileError::NotANotebook { .. } => {
                 "give a .ipynb file as a notebook front end saves it, or a .rhai script".to_owned()
             }
@@ -248,7 +255,10 @@ pub fn bytes_of(path: &Path) -> Result<Vec<u8>, FileError> {
     if !facts.is_file() {
         return Err(failed("it is not a regular file".to_owned()));
     }
-    std::fs::read(path).map_err(|error| failed(error.to_string()))
+    std::fs::read(path).map_err(|error| match error.kind() {
+        std::io::ErrorKind::OutOfMemory => FileError::TooLarge { path: path.to_owned(), mib: facts.len() >> 20 },
+        _ => failed(error.to_string()),
+    })
 }
 
 /// Writes a file as a whole or not at all.

@@ -155,8 +155,10 @@ fn fetch(shared: &Shared, name: &str) -> Result<Vec<u8>, FileFault> {
         _ => FileFault::Unreadable { name: name.to_owned(), why: error.to_string() },
     };
     let about = std::fs::metadata(&path).map_err(failed)?;
-    if about.is_dir() {
-        return Err(FileFault::Unreadable { name: name.to_owned(), why: "it is a folder".to_owned() });
+    if !about.is_file() {
+        // A device or a pipe may give bytes without end.
+        let why = if about.is_dir() { "it is a folder" } else { "it is no regular file" };
+        return Err(FileFault::Unreadable { name: name.to_owned(), why: why.to_owned() });
     }
     if about.len() > MOST_BYTES {
         return Err(FileFault::TooLarge { name: name.to_owned(), bytes: about.len() });
