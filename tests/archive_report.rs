@@ -180,7 +180,7 @@ fn a_tally_counts_what_is_there() {
     let justified: usize = AUDITS.iter().map(|audit| audit.justifications.len()).sum();
     assert_eq!(tally.justifications_in_force, justified - 1);
     assert_eq!((tally.seals.altered, tally.seals.not_signed, tally.seals.signed_trusted), (1, 5, 0));
-    assert_eq!((tally.cells_edited, tally.notebooks_edited), (1, 1));
+    assert_eq!((tally.edits, tally.notebooks_edited), (1, 1));
     // One cause for the revised record, whatever the notebook.
     let record = tally.causes.iter().find(|cause| cause.words().contains("CO2(g) in atct-1.112")).unwrap();
     let moved = |value: &ValueAudit| {
@@ -353,15 +353,18 @@ fn the_page_holds_every_part_and_asks_for_nothing_from_outside() {
     assert_eq!(page.matches("parts here</td>").count(), parted(), "each derivation marks where it parts");
     let tags = tags(&page);
     assert_eq!(unclosed(&tags), Vec::<String>::new());
-    // Every link of the page leads somewhere in it.
-    for link in tags.iter().filter_map(|tag| tag.strip_prefix("a href=\"#")?.strip_suffix('"')) {
-        assert!(page.contains(&format!("id=\"{link}\"")), "#{link} leads nowhere");
-    }
+    assert_eq!(links_to_nowhere(&page), Vec::<&str>::new());
     let mut ids: Vec<&str> = tags.iter().filter_map(|tag| tag.split_once(" id=\"")?.1.split('"').next()).collect();
     ids.sort_unstable();
     let all = ids.len();
     ids.dedup();
     assert_eq!(ids.len(), all, "an id is given twice");
+}
+
+/// Every link of the page leads somewhere in it.
+fn links_to_nowhere(page: &str) -> Vec<&str> {
+    let links = page.split("<a href=\"#").skip(1).filter_map(|rest| rest.split('"').next());
+    links.filter(|link| !page.contains(&format!("id=\"{link}\""))).collect()
 }
 
 fn parted() -> usize {
@@ -406,9 +409,10 @@ fn hostile() -> Slice {
             Value::String(text) => *text = format!("{HOSTILE}{text}"),
             Value::Array(items) => items.iter_mut().for_each(spoilt),
             Value::Object(members) => {
-                let cell = members.get("what").and_then(Value::as_str).is_some_and(|what| what.starts_with("cell-"));
+                let kept = ["program", "shipped tables and procedures", "constant set"];
+                let kept = members.get("what").and_then(Value::as_str).is_some_and(|what| kept.contains(&what));
                 for (name, value) in members.iter_mut() {
-                    let chosen = CHOSEN.contains(&name.as_str()) || (cell && name == "what") || name == "remainder";
+                    let chosen = CHOSEN.contains(&name.as_str()) || (kept && name == "what") || name == "remainder";
                     if !chosen {
                         spoilt(value);
                     }
@@ -507,6 +511,9 @@ fn odd(signed: Signed) -> NotebookAudit {
     (derived[1].same, derived[1].value, derived[1].off_by) = (false, None, None);
     derived[1].parts_at = Some("cell-3, line 1: exp".to_owned());
     audit.environment.push(Difference { what: "program".into(), sealed: "0.0.9".into(), now: "0.1.0".into() });
+    for (what, then, now) in [("cell-4, added", "not there", "5d"), ("plant.rhai", "6e", "not there")] {
+        audit.environment.push(Difference { what: what.into(), sealed: then.into(), now: now.into() });
+    }
     let fault = named("torn").faults[0].fault.clone();
     audit.faults.push(AuditFault { under: "today's data".to_owned(), fault });
     audit
@@ -543,6 +550,7 @@ fn what_is_rare_is_reported_in_every_form_too() {
         "the same, with these steps taken as sealed",
         "could not be derived again",
         "program: 0.0.9 then, 0.1.0 now",
+        "cell-1, edited; cell-4, added; plant.rhai, not there",
         "16 notebooks fall to the others",
     ] {
         assert!(page.contains(words), "{words}");
@@ -554,6 +562,17 @@ fn what_is_rare_is_reported_in_every_form_too() {
     let report = quick_junit::Report::deserialize_from_str(&written(report::junit, &odd, &about)).unwrap();
     // Of each: the fault under today's data, which is asked to count, and the value that could not run.
     assert_eq!((report.test_suites.len(), report.errors), (3, 6));
+}
+
+#[test]
+fn a_page_says_how_many_derivations_it_leaves_out() {
+    let many = Slice((0..30).map(|_| named("edited").clone()).collect());
+    let page = written(report::page, &many, &about());
+    let all: usize = many.0.iter().flat_map(|audit| &audit.values).map(|value| value.steps.len()).sum();
+    let shown = page.matches("<details").count();
+    assert!(shown < all && shown > 100, "{shown} of {all}");
+    assert!(page.contains(&format!("{} more derivations are not shown", all - shown)));
+    assert_eq!(links_to_nowhere(&page), Vec::<&str>::new());
 }
 
 #[test]

@@ -13,7 +13,7 @@ use quick_junit::{NonSuccessKind, Report, TestCase, TestCaseStatus, TestSuite};
 use crate::archive::audits::Audits;
 use crate::archive::report::{About, ReportError, unwritable};
 use crate::archive::tally::is_same_again;
-use crate::archive::words::{causes_words, edited_cells, fault_words, seal_words};
+use crate::archive::words::{causes_words, edits, fault_words, seal_words};
 use crate::fault::Fault;
 use crate::notebook::verdict::{
     Against, AuditFault, AuditStatus, NotebookAudit, Outcome, Rederived, Signed, ValueAudit, Verdict,
@@ -203,7 +203,7 @@ fn notes(audit: &NotebookAudit, about: &About) -> Vec<String> {
     notes.extend(
         audit.faults.iter().filter(|fault| !counts(fault, about)).map(|fault| fault_words(fault, &audit.file).0),
     );
-    notes.extend(edited_cells(audit));
+    notes.extend(edits(audit));
     notes.extend(audit.untested.iter().map(|row| format!("open when it was sealed: {row}")));
     let lapsed = audit.justifications.iter().filter(|one| one.lapsed);
     notes.extend(lapsed.map(|one| format!("lapsed: {} of {}, justified by: {}", one.id, one.label, one.reason)));

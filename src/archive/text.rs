@@ -120,7 +120,7 @@ fn facts(pen: &mut Pen, tally: &Tally) -> Result<(), Fault> {
         (seals.signature_invalid, "with a signature that does not hold", true),
         (seals.altered, "with a seal that was altered", true),
         (seals.drafts, "sealed as a draft", false),
-        (tally.notebooks_edited, "with code cells edited since they were sealed", false),
+        (tally.notebooks_edited, "with cells or modules edited since they were sealed", false),
     ];
     let said = |(count, words, loud): &(usize, &str, bool)| {
         let words = format!("{} {words}", counted(*count, "notebook"));

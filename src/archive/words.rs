@@ -4,7 +4,8 @@ use std::collections::BTreeMap;
 
 use crate::archive::tally::is_same_again;
 use crate::notebook::verdict::{
-    Against, AuditFault, AuditStatus, Cause, Move, NotebookAudit, SealFacts, SideBySide, Signed, ValueAudit, Verdict,
+    Against, AuditFault, AuditStatus, Cause, Difference, Move, NotebookAudit, SealFacts, SideBySide, Signed,
+    ValueAudit, Verdict,
 };
 use crate::quantity::round::significant;
 use crate::units;
@@ -102,21 +103,15 @@ pub fn left_out_words(steps: &SideBySide) -> String {
     if words.is_empty() { String::new() } else { format!("Steps not listed: {}.", words.join(", and ")) }
 }
 
-/// Whether a difference of the surroundings is about a code cell, `cell-3`.
-pub fn is_cell(what: &str) -> bool {
-    what.strip_prefix("cell-").is_some_and(|number| number.parse::<usize>().is_ok())
-}
-
-/// The edited cells of a notebook: `cell-2 edited, cell-4 added`.
-pub fn edited_cells(audit: &NotebookAudit) -> Vec<String> {
-    let edits = audit.environment.iter().filter(|difference| is_cell(&difference.what));
-    edits
-        .map(|difference| match (difference.sealed.as_str(), difference.now.as_str()) {
-            ("not there", _) => format!("{} added", difference.what),
-            (_, "not there") => format!("{} taken away", difference.what),
-            _ => format!("{} edited", difference.what),
-        })
-        .collect()
+/// What was edited of a notebook: `cell-2, edited`, `cell-4, added`.
+pub fn edits(audit: &NotebookAudit) -> Vec<String> {
+    let said = |what: &str| what.ends_with(", added") || what.ends_with(", taken away");
+    let words = |difference: &Difference| match difference.now.as_str() {
+        _ if said(&difference.what) => difference.what.clone(),
+        "not there" => format!("{}, not there", difference.what),
+        _ => format!("{}, edited", difference.what),
+    };
+    audit.environment.iter().filter(|difference| difference.is_edit()).map(words).collect()
 }
 
 /// `2 moved, 1 missing`: how many values have each of these verdicts, the worst first.
@@ -162,7 +157,7 @@ pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
     if otherwise > 0 {
         reasons.push(format!("{} derived again otherwise than sealed", counted(otherwise, "value")));
     }
-    reasons.extend(edited_cells(audit));
+    reasons.extend(edits(audit));
     reasons
 }
 
