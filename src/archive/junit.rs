@@ -13,11 +13,12 @@ use quick_junit::{NonSuccessKind, Report, TestCase, TestCaseStatus, TestSuite};
 use crate::archive::audits::Audits;
 use crate::archive::report::{About, ReportError, unwritable};
 use crate::archive::tally::is_same_again;
-use crate::archive::words::{causes_words, edited_cells, fault_words, harmless, seal_words};
+use crate::archive::words::{causes_words, edited_cells, fault_words, seal_words};
 use crate::fault::Fault;
 use crate::notebook::verdict::{
     Against, AuditFault, AuditStatus, NotebookAudit, Outcome, Rederived, Signed, ValueAudit, Verdict,
 };
+use crate::render::harmless::{harmless, in_one_line};
 
 /// Closes the outermost element; names and texts cannot hold it, since `<` is escaped in them.
 const END: &str = "</testsuites>";
@@ -68,7 +69,7 @@ fn legal(text: &str) -> String {
 
 /// A name or a message, which stands in one line.
 fn line(text: &str) -> String {
-    legal(text).replace('\n', " ")
+    in_one_line(text).into_owned()
 }
 
 fn suite(audit: &NotebookAudit, about: &About) -> TestSuite {

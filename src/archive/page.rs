@@ -14,9 +14,9 @@ use crate::archive::audits::Audits;
 use crate::archive::report::{About, ReportError, unwritable};
 use crate::archive::rows;
 use crate::archive::tally::Tally;
-use crate::archive::words::harmless;
 use crate::fault::Fault;
 use crate::notebook::verdict::NotebookAudit;
+use crate::render::harmless::harmless;
 
 /// Ends the opening of a part, and the words for each row.
 const EACH: &str = "<!-- each -->\n";
@@ -99,7 +99,7 @@ fn environment() -> Environment<'static> {
     environment.set_undefined_behavior(UndefinedBehavior::Strict);
     environment.set_auto_escape_callback(|_| AutoEscape::Html);
     environment.set_formatter(|out, state, value| match value.as_str() {
-        Some(text) => escape_formatter(out, state, &Value::from(harmless(text))),
+        Some(text) => escape_formatter(out, state, &Value::from(harmless(text).as_ref())),
         None => escape_formatter(out, state, value),
     });
     environment

@@ -15,7 +15,7 @@ use crate::archive::words::{
     verdict_counts,
 };
 use crate::notebook::verdict::{
-    Against, AuditStatus, Justification, NotebookAudit, Outcome, SideBySide, StepPair, ValueAudit, Verdict,
+    Against, AuditStatus, Figure, Justification, NotebookAudit, Outcome, SideBySide, StepPair, ValueAudit, Verdict,
 };
 
 /// Derivations up to this number are unfolded from the start.
@@ -194,13 +194,26 @@ pub fn moves(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
     let changed = audit.values.iter().enumerate().filter(|(_, value)| !is_identical(value));
     changed
         .map(|(at, value)| {
+            let was = value.sealed.as_ref().map(|figure| {
+                let (figures, words) = parted(&figure.shown);
+                json!({ "figures": figures, "words": words.trim_start_matches(", "), "exact": exact(figure) })
+            });
             json!({
-                "at": at, "file": audit.file, "label": value.label,
-                "was": value.sealed.as_ref().map(|figure| figure.shown.clone()),
+                "at": at, "file": audit.file, "label": value.label, "was": was,
                 "outcomes": outcomes(value, audit.against), "has_steps": !value.steps.is_empty(),
             })
         })
         .collect()
+}
+
+/// A headline parted into its figures, and the words behind them, which mostly stay the same when the figures move.
+fn parted(shown: &str) -> (&str, &str) {
+    let words = [", partial (", ", u not stated", ", per ", ", p° ="];
+    shown.split_at(words.iter().filter_map(|words| shown.find(words)).min().unwrap_or(shown.len()))
+}
+
+fn exact(figure: &Figure) -> String {
+    if figure.unit == "1" { figure.value.clone() } else { format!("{} {}", figure.value, figure.unit) }
 }
 
 fn outcomes(value: &ValueAudit, against: Against) -> Vec<Value> {
@@ -209,13 +222,16 @@ fn outcomes(value: &ValueAudit, against: Against) -> Vec<Value> {
         Against::Seal => vec![("the sealed data", &value.under_sealed), ("today's data", &value.under_today)],
         _ => vec![("today's data, against its recorded result", &value.under_today)],
     };
+    let words = value.sealed.as_ref().map_or("", |figure| parted(&figure.shown).1);
     let said = |(under, outcome): (&str, &Outcome)| {
+        let figures = outcome.figure.as_ref().map(|is| is.shown.strip_suffix(words).unwrap_or(&is.shown));
         json!({
             "under": under, "verdict": outcome.verdict.word(), "loud": !outcome.verdict.is_same(),
-            "is": outcome.figure.as_ref().map(|figure| figure.shown.clone()),
-            "moved": outcome.moved.as_ref().map(|moved| moved.shown.clone()),
+            "identical": outcome.verdict == Verdict::Identical,
+            "is": figures, "exact": outcome.figure.as_ref().map(exact),
+            "moved": outcome.moved.as_ref().map(|moved| &moved.shown),
             "causes": outcome.moved.as_ref().map(causes_words).unwrap_or_default(),
-            "parts_at": outcome.moved.as_ref().and_then(|moved| moved.parts_at.clone()),
+            "parts_at": outcome.moved.as_ref().and_then(|moved| moved.parts_at.as_ref()),
             "notes": outcome.notes,
         })
     };
@@ -233,18 +249,32 @@ pub fn steps(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
 }
 
 fn derivation((at, which): (usize, usize), value: &ValueAudit, steps: &SideBySide, file: &str) -> Value {
+    let mut rows: Vec<Value> = Vec::new();
+    let mut left = steps.pairs.as_slice();
     let mut before = 0;
-    let pair = |pair: &StepPair| {
-        let gap = pair.number > before + 1;
-        before = pair.number;
-        json!({
-            "number": pair.number, "gap": gap, "same": pair.is_same(), "parts": pair.parts,
-            "then": pair.then, "now": pair.now,
-        })
-    };
+    while let Some(first) = left.first() {
+        // What is the same is told in one row, as far as it goes without a gap, so that the eye finds what differs.
+        let follows =
+            |(nth, pair): &(usize, &StepPair)| pair.is_same() && !pair.parts && pair.number == first.number + nth;
+        let same = left.iter().enumerate().take_while(follows).count();
+        let gap = first.number > before + 1;
+        let (run, rest) = left.split_at(same.max(1));
+        before = first.number + run.len() - 1;
+        left = rest;
+        rows.push(match same {
+            0 => json!({
+                "gap": gap, "same": false, "number": first.number, "parts": first.parts,
+                "then": first.then, "now": first.now,
+            }),
+            _ => json!({
+                "gap": gap, "same": true, "first": first.number, "last": before,
+                "steps": run.iter().filter_map(|pair| pair.then.as_ref()).collect::<Vec<_>>(),
+            }),
+        });
+    }
     json!({
         "at": at, "which": which, "label": value.label, "file": file, "under": steps.under,
-        "pairs": steps.pairs.iter().map(pair).collect::<Vec<_>>(), "left_out": left_out_words(steps),
+        "pairs": rows, "left_out": left_out_words(steps),
     })
 }
 
@@ -271,12 +301,14 @@ fn justification(one: &Justification, audit: &NotebookAudit) -> Value {
 
 pub fn not_rederived(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
     let partly = audit.from_sources.iter().flatten().filter(|one| !is_same_again(one) || !one.not_rederived.is_empty());
+    let unit = |label: &str| audit.values.iter().find(|value| value.label == label).map_or("", |value| &value.unit);
     partly
         .map(|one| {
             let words = match (&one.value, is_same_again(one)) {
                 (_, true) => "the same, with these steps taken as sealed".to_owned(),
                 (Some(value), false) => {
-                    format!("derived again as {value}, off by {}", one.off_by.as_deref().unwrap_or("an unknown amount"))
+                    let off_by = one.off_by.as_deref().unwrap_or("an unknown amount");
+                    format!("derived again as {value}, off by {off_by}, in {}", unit(&one.label))
                 }
                 (None, false) => "could not be derived again".to_owned(),
             };

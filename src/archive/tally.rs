@@ -245,7 +245,8 @@ impl Causes {
     fn add(&mut self, audit: &NotebookAudit) {
         let mut here: Vec<(CauseKind, Option<String>)> = Vec::new();
         for value in &audit.values {
-            let mut of_value: Vec<(CauseKind, Option<String>)> = Vec::new();
+            // With each cause, whether its share is unknown in some run.
+            let mut of_value: Vec<((CauseKind, Option<String>), bool)> = Vec::new();
             let moves = [&value.under_sealed.moved, &value.under_today.moved].into_iter().flatten();
             for cause in moves.flat_map(|moved| &moved.causes) {
                 let shared = matches!(cause.kind, CauseKind::Data | CauseKind::Constants | CauseKind::Engine);
@@ -263,10 +264,17 @@ impl Causes {
                     largest: BTreeMap::new(),
                 });
                 sum.largest_of(cause, value, &audit.file);
-                if !of_value.contains(&key) {
-                    sum.values += 1;
-                    sum.without_share += usize::from(cause.share.is_none());
-                    of_value.push(key.clone());
+                let unknown = cause.share.is_none();
+                match of_value.iter_mut().find(|(known, _)| *known == key) {
+                    None => {
+                        sum.values += 1;
+                        sum.without_share += usize::from(unknown);
+                        of_value.push((key.clone(), unknown));
+                    }
+                    Some((_, before)) => {
+                        sum.without_share += usize::from(unknown && !*before);
+                        *before |= unknown;
+                    }
                 }
                 if !here.contains(&key) {
                     sum.notebooks += 1;

@@ -14,20 +14,6 @@ pub fn counted(number: usize, one: &str) -> String {
     if number == 1 { format!("1 {one}") } else { format!("{number} {one}s") }
 }
 
-/// A text from a file as it may be shown: what steers a terminal, or turns the direction of the text behind it, is made
-/// visible, since a label could otherwise hide or reorder what stands beside it.
-pub fn harmless(text: &str) -> String {
-    let steers = |c: char| {
-        (c.is_control() && c != '\n' && c != '\t')
-            || matches!(c, '\u{200e}' | '\u{200f}' | '\u{202a}'..='\u{202e}' | '\u{2066}'..='\u{2069}' | '\u{feff}')
-            || matches!(c, '\u{fffe}' | '\u{ffff}')
-    };
-    if !text.contains(steers) {
-        return text.to_owned();
-    }
-    text.chars().map(|c| if steers(c) { '\u{fffd}' } else { c }).collect()
-}
-
 /// A figure of a seal with few digits and its unit as people write it: `+0.027 kJ/mol`.
 pub fn price(exact: Option<&str>, unit: &str) -> String {
     let Some(exact) = exact else { return "no price".to_owned() };
@@ -72,8 +58,10 @@ pub fn causes_words(moved: &Move) -> Vec<String> {
         (false, true) => "no remainder".to_owned(),
         (false, false) => format!("{}, remainder, not told apart", moved.remainder_shown),
     });
-    if let Some(u) = &moved.u_of_changed_shown {
-        words.push(format!("the revised inputs stated {u} as their standard uncertainty"));
+    match (moved.u_of_changed.as_deref(), &moved.u_of_changed_shown) {
+        (Some("0"), _) => words.push("the inputs that were revised were stated as exact".to_owned()),
+        (_, Some(u)) => words.push(format!("the revised inputs stated {u} as their standard uncertainty")),
+        _ => {}
     }
     words
 }
@@ -167,7 +155,7 @@ pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
     for (under, verdict) in sides {
         let worse = verdict_counts(audit.values.iter().map(verdict).filter(|verdict| !verdict.is_same()));
         if !worse.is_empty() {
-            reasons.push(format!("{worse} {under}"));
+            reasons.push(format!("{under}: {worse}"));
         }
     }
     let otherwise = audit.from_sources.iter().flatten().filter(|one| !is_same_again(one)).count();
@@ -181,12 +169,6 @@ pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
 #[cfg(test)]
 mod tests {
     use super::*;
-
-    #[test]
-    fn what_steers_a_terminal_is_shown_and_does_not_act() {
-        assert_eq!(harmless("heat \u{1b}[2J of \u{202e}noitcaer"), "heat \u{fffd}[2J of \u{fffd}noitcaer");
-        assert_eq!(harmless("ΔrH°, line\tone\nline two"), "ΔrH°, line\tone\nline two");
-    }
 
     #[test]
     fn prices_have_few_digits_and_no_basis() {
