@@ -110,10 +110,13 @@ const UNEXPLAINED: [(&str, f64, &str); 4] = [
 const METHANE: &str = "centres of the first polyads, with stretching, bring a third of it; JANAF has the rigid rotor and \
                        harmonic oscillators, as here";
 
+/// A gas, wavenumbers as observed and as inferred, and what is known of them.
+type Inferred = (&'static str, &'static [(f64, f64)], &'static str);
+
 /// Published functions that are no sum over the observed fundamentals but, to 0.05 J/(mol K) at all temperatures, one over
 /// these wavenumbers. They were found by fitting that function, and no publication of them is at hand: so this tells what the
 /// difference is, and explains nothing.
-const INFERRED: [(&str, &[(f64, f64)], &str); 2] = [
+const INFERRED: [Inferred; 2] = [
     (
         "CCl4(g)",
         &[(459.0, 463.0), (217.0, 220.0), (776.0, 797.0)],
