@@ -39,7 +39,7 @@ fn ran(path: &Path) -> RunRecord {
     on_big_stack(move || {
         let mut source = Source::read(&path).unwrap();
         let mut session = Session::new(Arc::default());
-        run("notebook", &mut source, &mut session, &mut Quiet)
+        run(&path.display().to_string(), &mut source, &mut session, &mut Quiet)
     })
 }
 
