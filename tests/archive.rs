@@ -236,7 +236,7 @@ fn shards_share_an_archive_and_are_reported_on_together() {
     for (nth, state) in states.iter().enumerate() {
         let output = archive.audit(&["--shard", &format!("{}/3", nth + 1), "--resume", state]);
         assert!(output.status.code().unwrap() <= 1, "{}", err(&output));
-        rows += out(&output).lines().filter(|line| line.contains(".ipynb: ")).count();
+        rows += std::fs::read_to_string(state).unwrap().lines().filter(|line| line.starts_with("{\"audit\"")).count();
     }
     assert_eq!(rows, 8);
     let gathered = |states: &[String]| {
@@ -246,6 +246,14 @@ fn shards_share_an_archive_and_are_reported_on_together() {
     };
     let all = gathered(&states);
     assert_eq!(all.status.code(), Some(1), "{}", err(&all));
+    // What is said of the shards together is what is said of the archive at once.
+    let json = |output: &Output| -> Value { serde_json::from_slice(&output.stdout).unwrap() };
+    let at_once = json(&archive.audit(&["--format", "json"]));
+    let mut args = vec!["audit", "--gathered", "--format", "json"];
+    args.extend(states.iter().map(String::as_str));
+    let together = json(&hessbook(&args));
+    assert_eq!(together["tally"], at_once["tally"]);
+    assert_eq!(together["notebooks"], at_once["notebooks"]);
     let missing = gathered(&states[..2]);
     assert_eq!(missing.status.code(), Some(2));
     assert!(err(&missing).contains("shard 3/3 are missing"), "{}", err(&missing));
@@ -256,6 +264,23 @@ fn shards_share_an_archive_and_are_reported_on_together() {
     archive.file("no-state.json", b"{\"cells\": []}\n");
     let no_state = gathered(&[archive.text("no-state.json")]);
     assert!(err(&no_state).contains("is no state file of an audit"), "{}", err(&no_state));
+}
+
+#[test]
+fn reports_are_written_as_a_whole_or_not_at_all() {
+    let archive = Archive::new();
+    archive.sealed("a.ipynb", &energy(1));
+    archive.edited("b.ipynb", &energy(2));
+    let (page, junit) = (archive.text("page.html"), archive.text("junit.xml"));
+    let output = archive.audit(&["--page", &page, "--junit", &junit]);
+    assert_eq!(output.status.code(), Some(1), "{}", err(&output));
+    let (page_text, junit_text) = (std::fs::read_to_string(&page).unwrap(), std::fs::read_to_string(&junit).unwrap());
+    assert!(page_text.contains("b.ipynb") && page_text.trim_end().ends_with("</html>"), "{page_text}");
+    assert!(junit_text.contains("failures=\"1\"") && junit_text.trim_end().ends_with("</testsuites>"), "{junit_text}");
+    let nowhere = archive.audit(&["--page", &archive.text("no-folder/page.html")]);
+    assert_eq!(nowhere.status.code(), Some(2));
+    assert!(err(&nowhere).contains("cannot write"), "{}", err(&nowhere));
+    assert_eq!(std::fs::read_dir(archive.0.path()).unwrap().count(), 4, "nothing is left of what was not written");
 }
 
 #[test]

@@ -17,7 +17,9 @@ use hessbook::notebook::audit::{AuditOptions, audit_one};
 use hessbook::notebook::holdings::Holdings;
 use hessbook::notebook::seal::KEY;
 use hessbook::notebook::sealing::{Sealing, seal};
-use hessbook::notebook::verdict::{AuditStatus, CauseKind, NotebookAudit, Outcome, ValueAudit, Verdict};
+use hessbook::notebook::verdict::{
+    AuditFault, AuditStatus, CauseKind, Difference, NotebookAudit, Outcome, Signed, ValueAudit, Verdict,
+};
 use hessbook::session::on_big_stack;
 use hessbook::units::constants;
 use serde_json::{Value, json};
@@ -93,8 +95,7 @@ static AUDITS: LazyLock<Vec<NotebookAudit>> = LazyLock::new(|| {
     );
     copy("pressure-vessel", "revised");
     sealed(&path("same"), "let c = q(\"2.5(1) kJ\");\nlet d = c * 3.0;\nreport(\"heat\", d)", None);
-    let whole = std::fs::read(shipped.join("pressure-vessel.ipynb")).unwrap();
-    std::fs::write(path("torn"), &whole[..whole.len() / 2]).unwrap();
+    std::fs::write(path("torn"), "{\"nbformat\": 4, \"cells\": [{\"source\": \"let shift = rea").unwrap();
     let mut names: Vec<_> = std::fs::read_dir(folder.path()).unwrap().map(|entry| entry.unwrap().path()).collect();
     names.sort();
     let folder_text = folder.path().display().to_string();
@@ -179,7 +180,7 @@ fn a_tally_counts_what_is_there() {
     let justified: usize = AUDITS.iter().map(|audit| audit.justifications.len()).sum();
     assert_eq!(tally.justifications_in_force, justified - 1);
     assert_eq!((tally.seals.altered, tally.seals.not_signed, tally.seals.signed_trusted), (1, 5, 0));
-    assert_eq!((tally.cells_edited, tally.notebooks_edited), (1, 1));
+    assert_eq!((tally.edits, tally.notebooks_edited), (1, 1));
     // One cause for the revised record, whatever the notebook.
     let record = tally.causes.iter().find(|cause| cause.words().contains("CO2(g) in atct-1.112")).unwrap();
     let moved = |value: &ValueAudit| {
@@ -302,7 +303,7 @@ fn derivations_stand_side_by_side_with_the_step_where_they_part() {
     assert_eq!((steps.len(), steps[0].under.as_str()), (1, "today's data"));
     let revised = steps[0].pairs.iter().find(formation).unwrap();
     assert!(revised.parts && !revised.is_same());
-    assert_eq!((side(&revised.then).shown, side(&revised.now).shown), figures("-393.47 kJ/mol", "-393.97 kJ/mol"));
+    assert_eq!((side(&revised.then).shown, side(&revised.now).shown), figures("-393.474 kJ/mol", "-393.974 kJ/mol"));
 
     // What is identical carries none.
     assert!(
@@ -352,15 +353,18 @@ fn the_page_holds_every_part_and_asks_for_nothing_from_outside() {
     assert_eq!(page.matches("parts here</td>").count(), parted(), "each derivation marks where it parts");
     let tags = tags(&page);
     assert_eq!(unclosed(&tags), Vec::<String>::new());
-    // Every link of the page leads somewhere in it.
-    for link in tags.iter().filter_map(|tag| tag.strip_prefix("a href=\"#")?.strip_suffix('"')) {
-        assert!(page.contains(&format!("id=\"{link}\"")), "#{link} leads nowhere");
-    }
+    assert_eq!(links_to_nowhere(&page), Vec::<&str>::new());
     let mut ids: Vec<&str> = tags.iter().filter_map(|tag| tag.split_once(" id=\"")?.1.split('"').next()).collect();
     ids.sort_unstable();
     let all = ids.len();
     ids.dedup();
     assert_eq!(ids.len(), all, "an id is given twice");
+}
+
+/// Every link of the page leads somewhere in it.
+fn links_to_nowhere(page: &str) -> Vec<&str> {
+    let links = page.split("<a href=\"#").skip(1).filter_map(|rest| rest.split('"').next());
+    links.filter(|link| !page.contains(&format!("id=\"{link}\""))).collect()
 }
 
 fn parted() -> usize {
@@ -385,7 +389,7 @@ fn unclosed(tags: &[String]) -> Vec<String> {
         match name.strip_prefix('/') {
             Some(name) if open.last().copied() == Some(name) => drop(open.pop()),
             Some(name) => wrong.push(format!("/{name} inside {open:?}")),
-            None if ["!DOCTYPE", "meta", "br"].contains(&name) => {}
+            None if ["!DOCTYPE", "meta", "br", "col"].contains(&name) => {}
             None => open.push(name),
         }
     }
@@ -405,9 +409,10 @@ fn hostile() -> Slice {
             Value::String(text) => *text = format!("{HOSTILE}{text}"),
             Value::Array(items) => items.iter_mut().for_each(spoilt),
             Value::Object(members) => {
-                let cell = members.get("what").and_then(Value::as_str).is_some_and(|what| what.starts_with("cell-"));
+                let kept = ["program", "shipped tables and procedures", "constant set"];
+                let kept = members.get("what").and_then(Value::as_str).is_some_and(|what| kept.contains(&what));
                 for (name, value) in members.iter_mut() {
-                    let chosen = CHOSEN.contains(&name.as_str()) || (cell && name == "what") || name == "remainder";
+                    let chosen = CHOSEN.contains(&name.as_str()) || (kept && name == "what") || name == "remainder";
                     if !chosen {
                         spoilt(value);
                     }
@@ -443,7 +448,7 @@ fn nothing_in_a_notebook_breaks_the_xml() {
         (report.test_suites.len(), report.tests, report.failures, report.errors, report.skipped)
     };
     assert_eq!(counts(&report), counts(&plain));
-    assert!(report.test_suites[0].name.as_str().contains("]]><!-- each -->"));
+    assert!(report.test_suites[0].name.as_str().contains("]]><!-- each -->\\u{1b}[2J"));
     let legal = |c: char| matches!(c, '\t' | '\n' | '\r' | ' '..='\u{d7ff}' | '\u{e000}'..='\u{fffd}' | '\u{10000}'..);
     assert!(text.chars().all(legal), "XML 1.0, section 2.2, has other characters alone");
 }
@@ -473,6 +478,101 @@ fn the_summary_reads_as_agreed_and_colour_adds_no_words() {
     assert_ne!(coloured, plain);
     let bare = ["\u{1b}[1;31m", "\u{1b}[1m", "\u{1b}[0m"].iter().fold(coloured, |text, code| text.replace(code, ""));
     assert_eq!(bare, plain);
+}
+
+/// An audit with what the archive above lacks: every sort of signature, a draft, values that came, went and failed, shares
+/// that are not known, steps on one side alone, steps taken as sealed.
+fn odd(signed: Signed) -> NotebookAudit {
+    let mut audit = named("edited").clone();
+    let seal = audit.seal.as_mut().unwrap();
+    (seal.signed, seal.draft) = (signed, true);
+    let verdicts =
+        [Verdict::New, Verdict::Missing, Verdict::CouldNotRun, Verdict::WithinU, Verdict::UnitOrBasisChanged];
+    for (value, verdict) in audit.values.iter_mut().zip(verdicts) {
+        value.under_sealed.verdict = verdict;
+        match verdict {
+            Verdict::New => value.sealed = None,
+            Verdict::Missing | Verdict::CouldNotRun => {
+                (value.under_sealed.figure, value.under_sealed.moved) = (None, None)
+            }
+            _ => {}
+        }
+    }
+    let moved = audit.values[4].under_today.moved.as_mut().unwrap();
+    (moved.causes[0].share, moved.causes[0].shown) = (None, None);
+    (moved.remainder, moved.remainder_shown) = ("0.25".to_owned(), "+0.250 kJ/mol".to_owned());
+    let steps = &mut audit.values[4].steps[0];
+    steps.pairs.drain(1..3);
+    (steps.same_left_out, steps.others_left_out) = (2, 1);
+    steps.pairs[1].then = None;
+    steps.pairs[2].now = None;
+    let derived = audit.from_sources.as_mut().unwrap();
+    derived[0].not_rederived = vec!["cell-2, line 1: 3 steps folded, taken by their linear form".to_owned()];
+    (derived[1].same, derived[1].value, derived[1].off_by) = (false, None, None);
+    derived[1].parts_at = Some("cell-3, line 1: exp".to_owned());
+    audit.environment.push(Difference { what: "program".into(), sealed: "0.0.9".into(), now: "0.1.0".into() });
+    for (what, then, now) in [("cell-4, added", "not there", "5d"), ("plant.rhai", "6e", "not there")] {
+        audit.environment.push(Difference { what: what.into(), sealed: then.into(), now: now.into() });
+    }
+    let fault = named("torn").faults[0].fault.clone();
+    audit.faults.push(AuditFault { under: "today's data".to_owned(), fault });
+    audit
+}
+
+#[test]
+fn what_is_rare_is_reported_in_every_form_too() {
+    let key = "0a".repeat(32);
+    let valid = |trusted: Option<&str>| Signed::Valid { key: key.clone(), trusted: trusted.map(str::to_owned) };
+    let invalid = Signed::Invalid { key: key.clone(), why: "it is of another content".to_owned() };
+    let odd = Slice([valid(Some("larkmoor")), valid(None), invalid].map(odd).to_vec());
+    let about = About {
+        trusted: vec!["larkmoor".to_owned()],
+        strict_data: true,
+        left_out: vec!["shard 1 of 3: 16 notebooks fall to the others".to_owned()],
+        ..about()
+    };
+    let tally = Tally::of(&odd).unwrap();
+    let seals = &tally.seals;
+    assert_eq!((seals.signed_trusted, seals.signed_untrusted, seals.signature_invalid, seals.drafts), (1, 1, 1, 3));
+    let page = written(report::page, &odd, &about);
+    for words in [
+        "signed with the trusted key larkmoor",
+        "which is not among the trusted",
+        "DOES NOT HOLD: it is of another content",
+        "draft",
+        "not in the seal",
+        "no figure",
+        "share not known",
+        "+0.250 kJ&#x2f;mol, remainder, not told apart",
+        "no such step",
+        "steps not listed",
+        "Steps not listed: 2 that are the same on both sides, and 1 that differ.",
+        "the same, with these steps taken as sealed",
+        "could not be derived again",
+        "program: 0.0.9 then, 0.1.0 now",
+        "cell-1, edited; cell-4, added; plant.rhai, not there",
+        "16 notebooks fall to the others",
+    ] {
+        assert!(page.contains(words), "{words}");
+    }
+    assert_eq!(unclosed(&tags(&page)), Vec::<String>::new());
+    let text = written(|audits, about, out| report::text(audits, about, false, out), &odd, &about);
+    assert!(text.contains("1 notebook with a signature that does not hold"), "{text}");
+    assert!(text.contains("share not known for 3 values"), "{text}");
+    let report = quick_junit::Report::deserialize_from_str(&written(report::junit, &odd, &about)).unwrap();
+    // Of each: the fault under today's data, which is asked to count, and the value that could not run.
+    assert_eq!((report.test_suites.len(), report.errors), (3, 6));
+}
+
+#[test]
+fn a_page_says_how_many_derivations_it_leaves_out() {
+    let many = Slice((0..30).map(|_| named("edited").clone()).collect());
+    let page = written(report::page, &many, &about());
+    let all: usize = many.0.iter().flat_map(|audit| &audit.values).map(|value| value.steps.len()).sum();
+    let shown = page.matches("<details").count();
+    assert!(shown < all && shown > 100, "{shown} of {all}");
+    assert!(page.contains(&format!("{} more derivations are not shown", all - shown)));
+    assert_eq!(links_to_nowhere(&page), Vec::<&str>::new());
 }
 
 #[test]

@@ -13,11 +13,12 @@ use quick_junit::{NonSuccessKind, Report, TestCase, TestCaseStatus, TestSuite};
 use crate::archive::audits::Audits;
 use crate::archive::report::{About, ReportError, unwritable};
 use crate::archive::tally::is_same_again;
-use crate::archive::words::{causes_words, edited_cells, fault_words, harmless, seal_words};
+use crate::archive::words::{causes_words, edits, fault_words, seal_words};
 use crate::fault::Fault;
 use crate::notebook::verdict::{
     Against, AuditFault, AuditStatus, NotebookAudit, Outcome, Rederived, Signed, ValueAudit, Verdict,
 };
+use crate::render::harmless::{harmless, in_one_line};
 
 /// Closes the outermost element; names and texts cannot hold it, since `<` is escaped in them.
 const END: &str = "</testsuites>";
@@ -68,7 +69,7 @@ fn legal(text: &str) -> String {
 
 /// A name or a message, which stands in one line.
 fn line(text: &str) -> String {
-    legal(text).replace('\n', " ")
+    in_one_line(text).into_owned()
 }
 
 fn suite(audit: &NotebookAudit, about: &About) -> TestSuite {
@@ -202,7 +203,7 @@ fn notes(audit: &NotebookAudit, about: &About) -> Vec<String> {
     notes.extend(
         audit.faults.iter().filter(|fault| !counts(fault, about)).map(|fault| fault_words(fault, &audit.file).0),
     );
-    notes.extend(edited_cells(audit));
+    notes.extend(edits(audit));
     notes.extend(audit.untested.iter().map(|row| format!("open when it was sealed: {row}")));
     let lapsed = audit.justifications.iter().filter(|one| one.lapsed);
     notes.extend(lapsed.map(|one| format!("lapsed: {} of {}, justified by: {}", one.id, one.label, one.reason)));

@@ -12,18 +12,18 @@ use minijinja::{AutoEscape, Environment, Template, UndefinedBehavior, Value, con
 
 use crate::archive::audits::Audits;
 use crate::archive::report::{About, ReportError, unwritable};
-use crate::archive::rows;
+use crate::archive::rows::{self, At};
 use crate::archive::tally::Tally;
-use crate::archive::words::harmless;
 use crate::fault::Fault;
 use crate::notebook::verdict::NotebookAudit;
+use crate::render::harmless::harmless;
 
 /// Ends the opening of a part, and the words for each row.
 const EACH: &str = "<!-- each -->\n";
 const CLOSE: &str = "<!-- close -->\n";
 
 /// The rows that a notebook brings to a part.
-type Rows = fn(&NotebookAudit, &About) -> Vec<serde_json::Value>;
+type Rows = fn(&NotebookAudit, &At) -> Vec<serde_json::Value>;
 
 /// A part of the page.
 struct Part {
@@ -66,11 +66,14 @@ pub(super) fn write(audits: &dyn Audits, tally: &Tally, about: &About, out: &mut
         let each = template(each)?;
         for rows in part.rows {
             let mut notebook = 0;
+            let mut at = At { about, derivations: 0 };
             audits.each(&mut |audit| {
                 notebook += 1;
-                rows(audit, about).into_iter().try_for_each(|row| {
-                    render(&each, &context! { tally => &tally, notebook => notebook, row => Serde(row) }, out)
-                })
+                for row in rows(audit, &at) {
+                    render(&each, &context! { tally => &tally, notebook => notebook, row => Serde(row) }, out)?;
+                }
+                at.derivations += audit.values.iter().map(|value| value.steps.len()).sum::<usize>();
+                Ok(())
             })?;
         }
         render(&template(close)?, &whole, out)?;
@@ -99,7 +102,7 @@ fn environment() -> Environment<'static> {
     environment.set_undefined_behavior(UndefinedBehavior::Strict);
     environment.set_auto_escape_callback(|_| AutoEscape::Html);
     environment.set_formatter(|out, state, value| match value.as_str() {
-        Some(text) => escape_formatter(out, state, &Value::from(harmless(text))),
+        Some(text) => escape_formatter(out, state, &Value::from(harmless(text).as_ref())),
         None => escape_formatter(out, state, value),
     });
     environment

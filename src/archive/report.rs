@@ -118,7 +118,7 @@ pub fn junit(audits: &dyn Audits, about: &About, out: &mut dyn Write) -> Result<
 }
 
 /// A page of HTML to be filed, complete in itself. Walks once for each of its parts and holds one notebook at a time; the
-/// page itself grows with what differs.
+/// page itself grows with what moved, of which it shows so many derivations and no more.
 ///
 /// # Errors
 /// The same.

@@ -11,15 +11,25 @@ use crate::archive::report::About;
 use crate::archive::tally::{Notes, Tally, is_identical, is_same_again};
 use crate::archive::text::sizes;
 use crate::archive::words::{
-    causes_words, counted, edited_cells, fault_words, left_out_words, price, reasons, signature_words, status_words,
+    causes_words, counted, edits, fault_words, left_out_words, price, reasons, signature_words, status_words,
     verdict_counts,
 };
 use crate::notebook::verdict::{
-    Against, AuditStatus, Justification, NotebookAudit, Outcome, SideBySide, StepPair, ValueAudit, Verdict,
+    Against, AuditStatus, Figure, Justification, NotebookAudit, Outcome, SideBySide, StepPair, ValueAudit, Verdict,
 };
 
 /// Derivations up to this number are unfolded from the start.
 const UNFOLDED: usize = 20;
+
+/// Derivations that a page shows: a revision may move every value of an archive, and nobody can read or print them all.
+const MOST_DERIVATIONS: usize = 200;
+
+/// Where a walk has come to.
+pub struct At<'a> {
+    pub about: &'a About,
+    /// Derivations of the notebooks before this one.
+    pub derivations: usize,
+}
 
 /// A tally as the page shows it.
 #[derive(Serialize)]
@@ -43,6 +53,7 @@ pub struct Shown<'a> {
     justifications: usize,
     not_rederived: usize,
     unfolded: bool,
+    derivations_left_out: usize,
 }
 
 /// A count with its words, and whether it wants attention.
@@ -98,7 +109,8 @@ pub fn tally(tally: &Tally) -> Shown<'_> {
         surroundings: notes(&tally.surroundings),
         justifications: tally.justifications_in_force + tally.justifications_lapsed,
         not_rederived: tally.rederived.as_ref().map_or(0, |derived| derived.in_part + derived.otherwise),
-        unfolded: tally.with_steps <= UNFOLDED,
+        unfolded: tally.derivations <= UNFOLDED,
+        derivations_left_out: tally.derivations.saturating_sub(MOST_DERIVATIONS),
         tally,
     }
 }
@@ -156,7 +168,7 @@ fn attention(tally: &Tally) -> Vec<String> {
         (seals.signed_untrusted, "notebook", "signed with a key that is not among the trusted"),
         (seals.signed_trusted, "notebook", "signed with a trusted key"),
         (bare, "notebook", "without a readable seal"),
-        (tally.notebooks_edited, "notebook", "with code cells edited since they were sealed"),
+        (tally.notebooks_edited, "notebook", "with cells or modules edited since they were sealed"),
         (tally.justifications_lapsed, "justification", "lapsed"),
         (tally.untested.said.len(), "assumption", "open when its notebook was sealed"),
     ];
@@ -174,15 +186,15 @@ fn notes(notes: &Notes) -> Vec<(String, usize, String)> {
     said.map(|(words, note)| (words.clone(), note.notebooks, examples(&note.examples, note.notebooks))).collect()
 }
 
-pub fn not_same(audit: &NotebookAudit, about: &About) -> Vec<Value> {
+pub fn not_same(audit: &NotebookAudit, at: &At) -> Vec<Value> {
     if audit.status.exit() == 0 {
         return Vec::new();
     }
-    let reasons = reasons(audit, about.strict_data);
+    let reasons = reasons(audit, at.about.strict_data);
     vec![json!({ "file": audit.file, "status": audit.status.word(), "reasons": reasons })]
 }
 
-pub fn faults(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+pub fn faults(audit: &NotebookAudit, _at: &At) -> Vec<Value> {
     let fault = |fault| {
         let (words, hint) = fault_words(fault, &audit.file);
         json!({ "file": audit.file, "words": words, "code": fault.fault.code, "hint": hint })
@@ -190,17 +202,35 @@ pub fn faults(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
     audit.faults.iter().map(fault).collect()
 }
 
-pub fn moves(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
-    let changed = audit.values.iter().enumerate().filter(|(_, value)| !is_identical(value));
-    changed
-        .map(|(at, value)| {
-            json!({
-                "at": at, "file": audit.file, "label": value.label,
-                "was": value.sealed.as_ref().map(|figure| figure.shown.clone()),
-                "outcomes": outcomes(value, audit.against), "has_steps": !value.steps.is_empty(),
-            })
-        })
-        .collect()
+pub fn moves(audit: &NotebookAudit, at: &At) -> Vec<Value> {
+    let mut derivations = at.derivations;
+    let mut rows = Vec::new();
+    for (nth, value) in audit.values.iter().enumerate() {
+        let has_steps = !value.steps.is_empty() && derivations < MOST_DERIVATIONS;
+        derivations += value.steps.len();
+        if is_identical(value) {
+            continue;
+        }
+        let was = value.sealed.as_ref().map(|figure| {
+            let (figures, words) = parted(&figure.shown);
+            json!({ "figures": figures, "words": words.trim_start_matches(", "), "exact": exact(figure) })
+        });
+        rows.push(json!({
+            "at": nth, "file": audit.file, "label": value.label, "was": was,
+            "outcomes": outcomes(value, audit.against), "has_steps": has_steps,
+        }));
+    }
+    rows
+}
+
+/// A headline parted into its figures, and the words behind them, which mostly stay the same when the figures move.
+fn parted(shown: &str) -> (&str, &str) {
+    let words = [", partial (", ", u not stated", ", per ", ", p° ="];
+    shown.split_at(words.iter().filter_map(|words| shown.find(words)).min().unwrap_or(shown.len()))
+}
+
+fn exact(figure: &Figure) -> String {
+    if figure.unit == "1" { figure.value.clone() } else { format!("{} {}", figure.value, figure.unit) }
 }
 
 fn outcomes(value: &ValueAudit, against: Against) -> Vec<Value> {
@@ -209,50 +239,69 @@ fn outcomes(value: &ValueAudit, against: Against) -> Vec<Value> {
         Against::Seal => vec![("the sealed data", &value.under_sealed), ("today's data", &value.under_today)],
         _ => vec![("today's data, against its recorded result", &value.under_today)],
     };
+    let words = value.sealed.as_ref().map_or("", |figure| parted(&figure.shown).1);
     let said = |(under, outcome): (&str, &Outcome)| {
+        let figures = outcome.figure.as_ref().map(|is| is.shown.strip_suffix(words).unwrap_or(&is.shown));
         json!({
             "under": under, "verdict": outcome.verdict.word(), "loud": !outcome.verdict.is_same(),
-            "is": outcome.figure.as_ref().map(|figure| figure.shown.clone()),
-            "moved": outcome.moved.as_ref().map(|moved| moved.shown.clone()),
+            "identical": outcome.verdict == Verdict::Identical,
+            "is": figures, "exact": outcome.figure.as_ref().map(exact),
+            "moved": outcome.moved.as_ref().map(|moved| &moved.shown),
             "causes": outcome.moved.as_ref().map(causes_words).unwrap_or_default(),
-            "parts_at": outcome.moved.as_ref().and_then(|moved| moved.parts_at.clone()),
+            "parts_at": outcome.moved.as_ref().and_then(|moved| moved.parts_at.as_ref()),
             "notes": outcome.notes,
         })
     };
     all.into_iter().map(said).collect()
 }
 
-pub fn steps(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+pub fn steps(audit: &NotebookAudit, at: &At) -> Vec<Value> {
     let mut rows = Vec::new();
-    for (at, value) in audit.values.iter().enumerate() {
+    for (nth, value) in audit.values.iter().enumerate() {
         for (which, steps) in value.steps.iter().enumerate() {
-            rows.push(derivation((at, which), value, steps, &audit.file));
+            if at.derivations + rows.len() < MOST_DERIVATIONS {
+                rows.push(derivation((nth, which), value, steps, &audit.file));
+            }
         }
     }
     rows
 }
 
 fn derivation((at, which): (usize, usize), value: &ValueAudit, steps: &SideBySide, file: &str) -> Value {
+    let mut rows: Vec<Value> = Vec::new();
+    let mut left = steps.pairs.as_slice();
     let mut before = 0;
-    let pair = |pair: &StepPair| {
-        let gap = pair.number > before + 1;
-        before = pair.number;
-        json!({
-            "number": pair.number, "gap": gap, "same": pair.is_same(), "parts": pair.parts,
-            "then": pair.then, "now": pair.now,
-        })
-    };
+    while let Some(first) = left.first() {
+        // What is the same is told in one row, as far as it goes without a gap, so that the eye finds what differs.
+        let follows =
+            |(nth, pair): &(usize, &StepPair)| pair.is_same() && !pair.parts && pair.number == first.number + nth;
+        let same = left.iter().enumerate().take_while(follows).count();
+        let gap = first.number > before + 1;
+        let (run, rest) = left.split_at(same.max(1));
+        before = first.number + run.len() - 1;
+        left = rest;
+        rows.push(match same {
+            0 => json!({
+                "gap": gap, "same": false, "number": first.number, "parts": first.parts,
+                "then": first.then, "now": first.now,
+            }),
+            _ => json!({
+                "gap": gap, "same": true, "first": first.number, "last": before,
+                "steps": run.iter().filter_map(|pair| pair.then.as_ref()).collect::<Vec<_>>(),
+            }),
+        });
+    }
     json!({
         "at": at, "which": which, "label": value.label, "file": file, "under": steps.under,
-        "pairs": steps.pairs.iter().map(pair).collect::<Vec<_>>(), "left_out": left_out_words(steps),
+        "pairs": rows, "left_out": left_out_words(steps),
     })
 }
 
-pub fn lapsed(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+pub fn lapsed(audit: &NotebookAudit, _at: &At) -> Vec<Value> {
     audit.justifications.iter().filter(|one| one.lapsed).map(|one| justification(one, audit)).collect()
 }
 
-pub fn in_force(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+pub fn in_force(audit: &NotebookAudit, _at: &At) -> Vec<Value> {
     audit.justifications.iter().filter(|one| !one.lapsed).map(|one| justification(one, audit)).collect()
 }
 
@@ -269,14 +318,16 @@ fn justification(one: &Justification, audit: &NotebookAudit) -> Value {
     })
 }
 
-pub fn not_rederived(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+pub fn not_rederived(audit: &NotebookAudit, _at: &At) -> Vec<Value> {
     let partly = audit.from_sources.iter().flatten().filter(|one| !is_same_again(one) || !one.not_rederived.is_empty());
+    let unit = |label: &str| audit.values.iter().find(|value| value.label == label).map_or("", |value| &value.unit);
     partly
         .map(|one| {
             let words = match (&one.value, is_same_again(one)) {
                 (_, true) => "the same, with these steps taken as sealed".to_owned(),
                 (Some(value), false) => {
-                    format!("derived again as {value}, off by {}", one.off_by.as_deref().unwrap_or("an unknown amount"))
+                    let off_by = one.off_by.as_deref().unwrap_or("an unknown amount");
+                    format!("derived again as {value}, off by {off_by}, in {}", unit(&one.label))
                 }
                 (None, false) => "could not be derived again".to_owned(),
             };
@@ -288,15 +339,15 @@ pub fn not_rederived(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
         .collect()
 }
 
-pub fn edited(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
-    let cells = edited_cells(audit);
-    if cells.is_empty() {
+pub fn edited(audit: &NotebookAudit, _at: &At) -> Vec<Value> {
+    let edits = edits(audit);
+    if edits.is_empty() {
         return Vec::new();
     }
-    vec![json!({ "file": audit.file, "cells": cells, "status": audit.status.word() })]
+    vec![json!({ "file": audit.file, "edits": edits, "status": audit.status.word() })]
 }
 
-pub fn notebooks(audit: &NotebookAudit, _about: &About) -> Vec<Value> {
+pub fn notebooks(audit: &NotebookAudit, _at: &At) -> Vec<Value> {
     let seal = audit.seal.as_ref();
     let verdict = |value: &ValueAudit| match audit.against {
         Against::Seal => value.under_sealed.verdict,

@@ -296,13 +296,14 @@ impl State {
         &self.order
     }
 
+    /// Notebooks there are to be.
+    pub fn count(&self) -> usize {
+        self.places.len()
+    }
+
     /// Positions of notebooks that have no audit yet.
     pub fn open(&self) -> Vec<usize> {
         (0..self.places.len()).filter(|nth| self.places[*nth].is_none()).collect()
-    }
-
-    pub fn has(&self, nth: usize) -> bool {
-        self.places.get(nth).is_some_and(Option::is_some)
     }
 
     /// Keeps an audit.

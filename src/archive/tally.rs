@@ -8,7 +8,6 @@ use std::collections::BTreeMap;
 use serde::Serialize;
 
 use crate::archive::audits::Audits;
-use crate::archive::words::is_cell;
 use crate::fault::Fault;
 use crate::notebook::verdict::{
     Against, AuditStatus, Cause, CauseKind, NotebookAudit, Rederived, SealFacts, Signed, ValueAudit, Verdict,
@@ -34,15 +33,15 @@ pub struct Tally {
     pub under_today: BTreeMap<Verdict, usize>,
     /// Values of notebooks without seal, against their recorded outputs.
     pub against_recorded: BTreeMap<Verdict, usize>,
-    /// Values that are not identical under some data, and those with derivations side by side.
+    /// Values that are not identical under some data, and their derivations side by side: a value may have two.
     pub not_identical: usize,
-    pub with_steps: usize,
+    pub derivations: usize,
     pub justifications_in_force: usize,
     pub justifications_lapsed: usize,
     pub seals: Seals,
     pub faults: usize,
-    /// Code cells that are not what was sealed, and in how many notebooks.
-    pub cells_edited: usize,
+    /// Cells and modules that are not what was sealed, and in how many notebooks.
+    pub edits: usize,
     pub notebooks_edited: usize,
     /// Values derived again without the author's cells; none where that was not asked for.
     pub rederived: Option<RederivedCounts>,
@@ -50,7 +49,7 @@ pub struct Tally {
     pub causes: Vec<CauseSum>,
     /// Causes beyond what a tally keeps.
     pub causes_left_out: usize,
-    /// What is otherwise around the values, cells apart.
+    /// What the notebooks run on and were not sealed with.
     pub surroundings: Notes,
     /// Rows that were open when the notebooks were sealed.
     pub untested: Notes,
@@ -178,7 +177,7 @@ impl Tally {
                 count(&mut self.against_recorded, value.under_today.verdict);
             }
             self.not_identical += usize::from(!is_identical(value));
-            self.with_steps += usize::from(!value.steps.is_empty());
+            self.derivations += value.steps.len();
         }
         let lapsed = audit.justifications.iter().filter(|one| one.lapsed).count();
         self.justifications_lapsed += lapsed;
@@ -187,13 +186,13 @@ impl Tally {
             self.seals.add(seal);
         }
         self.faults += audit.faults.len();
-        let cells = audit.environment.iter().filter(|difference| is_cell(&difference.what)).count();
-        self.cells_edited += cells;
-        self.notebooks_edited += usize::from(cells > 0);
+        let edits = audit.environment.iter().filter(|difference| difference.is_edit()).count();
+        self.edits += edits;
+        self.notebooks_edited += usize::from(edits > 0);
         for derived in audit.from_sources.iter().flatten() {
             self.rederived.get_or_insert_default().add(derived);
         }
-        for difference in audit.environment.iter().filter(|difference| !is_cell(&difference.what)) {
+        for difference in audit.environment.iter().filter(|difference| !difference.is_edit()) {
             let words = format!("{}: {} then, {} now", difference.what, difference.sealed, difference.now);
             self.surroundings.add(&words, &audit.file);
         }
@@ -245,7 +244,8 @@ impl Causes {
     fn add(&mut self, audit: &NotebookAudit) {
         let mut here: Vec<(CauseKind, Option<String>)> = Vec::new();
         for value in &audit.values {
-            let mut of_value: Vec<(CauseKind, Option<String>)> = Vec::new();
+            // With each cause, whether its share is unknown in some run.
+            let mut of_value: Vec<((CauseKind, Option<String>), bool)> = Vec::new();
             let moves = [&value.under_sealed.moved, &value.under_today.moved].into_iter().flatten();
             for cause in moves.flat_map(|moved| &moved.causes) {
                 let shared = matches!(cause.kind, CauseKind::Data | CauseKind::Constants | CauseKind::Engine);
@@ -263,10 +263,17 @@ impl Causes {
                     largest: BTreeMap::new(),
                 });
                 sum.largest_of(cause, value, &audit.file);
-                if !of_value.contains(&key) {
-                    sum.values += 1;
-                    sum.without_share += usize::from(cause.share.is_none());
-                    of_value.push(key.clone());
+                let unknown = cause.share.is_none();
+                match of_value.iter_mut().find(|(known, _)| *known == key) {
+                    None => {
+                        sum.values += 1;
+                        sum.without_share += usize::from(unknown);
+                        of_value.push((key.clone(), unknown));
+                    }
+                    Some((_, before)) => {
+                        sum.without_share += usize::from(unknown && !*before);
+                        *before |= unknown;
+                    }
                 }
                 if !here.contains(&key) {
                     sum.notebooks += 1;

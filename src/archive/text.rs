@@ -8,9 +8,10 @@ use std::io::Write;
 use crate::archive::audits::Audits;
 use crate::archive::report::{About, unwritable};
 use crate::archive::tally::{CauseSum, Tally};
-use crate::archive::words::{counted, harmless, reasons, status_words, verdict_counts};
+use crate::archive::words::{counted, reasons, status_words, verdict_counts};
 use crate::fault::Fault;
 use crate::notebook::verdict::{AuditStatus, Verdict};
+use crate::render::harmless::in_one_line;
 
 /// Largest shares that a cause shows, each in a unit of its own.
 const SHARES: usize = 3;
@@ -45,9 +46,7 @@ pub(super) fn write(
         }
         let word = pen.loud(audit.status.word());
         let reasons = reasons(audit, about.strict_data).join("; ");
-        // One line for each, whatever a message holds.
-        let reasons = harmless(&reasons).replace(['\n', '\t'], " ");
-        pen.line(&format!("{}: {word}: {reasons}", harmless(&audit.file).replace(['\n', '\t'], " ")))
+        pen.line(&format!("{}: {word}: {}", in_one_line(&audit.file), in_one_line(&reasons)))
     })
 }
 
@@ -121,7 +120,7 @@ fn facts(pen: &mut Pen, tally: &Tally) -> Result<(), Fault> {
         (seals.signature_invalid, "with a signature that does not hold", true),
         (seals.altered, "with a seal that was altered", true),
         (seals.drafts, "sealed as a draft", false),
-        (tally.notebooks_edited, "with code cells edited since they were sealed", false),
+        (tally.notebooks_edited, "with cells or modules edited since they were sealed", false),
     ];
     let said = |(count, words, loud): &(usize, &str, bool)| {
         let words = format!("{} {words}", counted(*count, "notebook"));
@@ -155,8 +154,8 @@ fn causes(pen: &mut Pen, tally: &Tally) -> Result<(), Fault> {
     }
     pen.heading("causes of moves")?;
     for cause in tally.causes.iter().take(CAUSES) {
-        pen.line(&harmless(&cause.words()).replace(['\n', '\t'], " "))?;
-        pen.line(&format!("  {}", harmless(&sizes(cause)).replace(['\n', '\t'], " ")))?;
+        pen.line(&in_one_line(&cause.words()))?;
+        pen.line(&format!("  {}", in_one_line(&sizes(cause))))?;
     }
     let further = tally.causes.len().saturating_sub(CAUSES) + tally.causes_left_out;
     if further > 0 {

@@ -4,7 +4,8 @@ use std::collections::BTreeMap;
 
 use crate::archive::tally::is_same_again;
 use crate::notebook::verdict::{
-    Against, AuditFault, AuditStatus, Cause, Move, NotebookAudit, SealFacts, SideBySide, Signed, ValueAudit, Verdict,
+    Against, AuditFault, AuditStatus, Cause, Difference, Move, NotebookAudit, SealFacts, SideBySide, Signed,
+    ValueAudit, Verdict,
 };
 use crate::quantity::round::significant;
 use crate::units;
@@ -12,20 +13,6 @@ use crate::units;
 /// `1 value`, `3 values`.
 pub fn counted(number: usize, one: &str) -> String {
     if number == 1 { format!("1 {one}") } else { format!("{number} {one}s") }
-}
-
-/// A text from a file as it may be shown: what steers a terminal, or turns the direction of the text behind it, is made
-/// visible, since a label could otherwise hide or reorder what stands beside it.
-pub fn harmless(text: &str) -> String {
-    let steers = |c: char| {
-        (c.is_control() && c != '\n' && c != '\t')
-            || matches!(c, '\u{200e}' | '\u{200f}' | '\u{202a}'..='\u{202e}' | '\u{2066}'..='\u{2069}' | '\u{feff}')
-            || matches!(c, '\u{fffe}' | '\u{ffff}')
-    };
-    if !text.contains(steers) {
-        return text.to_owned();
-    }
-    text.chars().map(|c| if steers(c) { '\u{fffd}' } else { c }).collect()
 }
 
 /// A figure of a seal with few digits and its unit as people write it: `+0.027 kJ/mol`.
@@ -72,8 +59,10 @@ pub fn causes_words(moved: &Move) -> Vec<String> {
         (false, true) => "no remainder".to_owned(),
         (false, false) => format!("{}, remainder, not told apart", moved.remainder_shown),
     });
-    if let Some(u) = &moved.u_of_changed_shown {
-        words.push(format!("the revised inputs stated {u} as their standard uncertainty"));
+    match (moved.u_of_changed.as_deref(), &moved.u_of_changed_shown) {
+        (Some("0"), _) => words.push("the inputs that were revised were stated as exact".to_owned()),
+        (_, Some(u)) => words.push(format!("the revised inputs stated {u} as their standard uncertainty")),
+        _ => {}
     }
     words
 }
@@ -114,21 +103,15 @@ pub fn left_out_words(steps: &SideBySide) -> String {
     if words.is_empty() { String::new() } else { format!("Steps not listed: {}.", words.join(", and ")) }
 }
 
-/// Whether a difference of the surroundings is about a code cell, `cell-3`.
-pub fn is_cell(what: &str) -> bool {
-    what.strip_prefix("cell-").is_some_and(|number| number.parse::<usize>().is_ok())
-}
-
-/// The edited cells of a notebook: `cell-2 edited, cell-4 added`.
-pub fn edited_cells(audit: &NotebookAudit) -> Vec<String> {
-    let edits = audit.environment.iter().filter(|difference| is_cell(&difference.what));
-    edits
-        .map(|difference| match (difference.sealed.as_str(), difference.now.as_str()) {
-            ("not there", _) => format!("{} added", difference.what),
-            (_, "not there") => format!("{} taken away", difference.what),
-            _ => format!("{} edited", difference.what),
-        })
-        .collect()
+/// What was edited of a notebook: `cell-2, edited`, `cell-4, added`.
+pub fn edits(audit: &NotebookAudit) -> Vec<String> {
+    let said = |what: &str| what.ends_with(", added") || what.ends_with(", taken away");
+    let words = |difference: &Difference| match difference.now.as_str() {
+        _ if said(&difference.what) => difference.what.clone(),
+        "not there" => format!("{}, not there", difference.what),
+        _ => format!("{}, edited", difference.what),
+    };
+    audit.environment.iter().filter(|difference| difference.is_edit()).map(words).collect()
 }
 
 /// `2 moved, 1 missing`: how many values have each of these verdicts, the worst first.
@@ -167,26 +150,20 @@ pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
     for (under, verdict) in sides {
         let worse = verdict_counts(audit.values.iter().map(verdict).filter(|verdict| !verdict.is_same()));
         if !worse.is_empty() {
-            reasons.push(format!("{worse} {under}"));
+            reasons.push(format!("{under}: {worse}"));
         }
     }
     let otherwise = audit.from_sources.iter().flatten().filter(|one| !is_same_again(one)).count();
     if otherwise > 0 {
         reasons.push(format!("{} derived again otherwise than sealed", counted(otherwise, "value")));
     }
-    reasons.extend(edited_cells(audit));
+    reasons.extend(edits(audit));
     reasons
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
-
-    #[test]
-    fn what_steers_a_terminal_is_shown_and_does_not_act() {
-        assert_eq!(harmless("heat \u{1b}[2J of \u{202e}noitcaer"), "heat \u{fffd}[2J of \u{fffd}noitcaer");
-        assert_eq!(harmless("ΔrH°, line\tone\nline two"), "ΔrH°, line\tone\nline two");
-    }
 
     #[test]
     fn prices_have_few_digits_and_no_basis() {

@@ -1,22 +1,28 @@
 //! `hessbook audit`: runs sealed notebooks again and says what became of each value.
 
-use std::path::PathBuf;
+use std::io::{self, IsTerminal, Write, stdout};
+use std::path::{Path, PathBuf};
 use std::process::ExitCode;
+use std::time::{Duration, Instant};
 
 use clap::{Args, ValueEnum};
 
 use crate::archive::audits::Audits;
-use crate::archive::order::{Order, Task};
+use crate::archive::order::{Order, Prepared, Task};
 use crate::archive::paths::{Shard, found};
+use crate::archive::report::{self, About};
 use crate::archive::state::State;
 use crate::archive::work::Work;
 use crate::archive::worker;
+use crate::fault::Fault;
+use crate::notebook::audit::AuditOptions;
 use crate::notebook::audit_text;
+use crate::notebook::file::{FileError, write_whole_by};
 use crate::notebook::signature::TrustedKey;
 use crate::notebook::verdict::{AuditStatus, NotebookAudit};
 
 use super::archive::{Printer, Workers, interrupted};
-use super::{Done, err, stopped_by_interrupt};
+use super::{Done, err, out, stopped_by_interrupt};
 
 /// Run sealed notebooks again, with the sealed data and with today's, and compare every reported value.
 ///
@@ -44,6 +50,12 @@ pub struct Audit {
     /// What is printed
     #[arg(long, value_enum, default_value_t = Format::Text)]
     format: Format,
+    /// Write a page of HTML to be filed, complete in itself
+    #[arg(long, value_name = "FILE")]
+    page: Option<PathBuf>,
+    /// Write JUnit XML, for a build server
+    #[arg(long, value_name = "FILE")]
+    junit: Option<PathBuf>,
     /// Audit one part of several, as in `--shard 2/4`; every notebook falls to exactly one
     #[arg(long, value_name = "I/N")]
     shard: Option<Shard>,
@@ -65,8 +77,11 @@ enum Format {
 
 impl Audit {
     pub(super) fn run(self) -> Done {
+        let start = Instant::now();
         if self.gathered {
-            return self.report(&State::gathered(&self.paths)?);
+            let state = State::gathered(&self.paths)?;
+            let options = options_of(state.order())?;
+            return self.report(&state, &options, start.elapsed());
         }
         let trusted = self.trust.iter().map(|path| TrustedKey::read(path)).collect::<Result<_, _>>()?;
         let order = Order::now(Task::Audit {
@@ -76,7 +91,7 @@ impl Audit {
             trusted,
         });
         // What the workers could not read is said before any is started.
-        order.prepared()?;
+        let options = options_of(&order)?;
         let stop = stopped_by_interrupt();
         let mut work = Work::new(order, found(&self.paths)?, self.shard, self.resume.as_deref())?;
         if work.count() == 0 {
@@ -88,11 +103,32 @@ impl Audit {
         if !whole {
             return Err(interrupted(&work, self.resume.as_deref()));
         }
-        self.report(work.state())
+        self.report(work.state(), &options, start.elapsed())
     }
 
-    /// What is said at the end.
-    fn report(&self, state: &State) -> Done {
+    /// What is written and said at the end.
+    fn report(&self, state: &State, options: &AuditOptions, took: Duration) -> Done {
+        let paths = self.paths.iter().map(|path| path.display().to_string()).collect();
+        let time = chrono::Utc::now().format("%Y-%m-%dT%H:%M:%SZ").to_string();
+        let mut about = About::of(options, paths, &time, took);
+        about.left_out.extend(self.shard.map(|shard| format!("notebooks of other shards than {shard}")));
+        if let Some(path) = &self.page {
+            written(path, |out| report::page(state, &about, out))?;
+        }
+        if let Some(path) = &self.junit {
+            written(path, |out| report::junit(state, &about, out))?;
+        }
+        match self.format {
+            Format::Json => report::json(state, &about, &mut stdout().lock())?,
+            // One notebook has said all there is to say.
+            Format::Text if state.count() != 1 || self.gathered => {
+                let colour = stdout().is_terminal() && std::env::var_os("NO_COLOR").is_none();
+                let mut text = Vec::new();
+                report::text(state, &about, colour, &mut text)?;
+                out(&String::from_utf8_lossy(&text));
+            }
+            Format::Text => {}
+        }
         let mut worst = AuditStatus::Same;
         state.each(&mut |audit| {
             worst = worst.max(audit.status);
@@ -100,6 +136,35 @@ impl Audit {
         })?;
         Ok(ExitCode::from(worst.exit()))
     }
+}
+
+fn options_of(order: &Order) -> Result<AuditOptions, Fault> {
+    match order.prepared()? {
+        Prepared::Audit(options) => Ok(*options),
+        Prepared::Revision { .. } => Err(Fault::new(
+            "state-of-a-revision",
+            "the state file is of a comparison of two tables",
+            "give state files that `hessbook audit --resume FILE` wrote",
+        )),
+    }
+}
+
+/// Writes a report as a whole or not at all.
+fn written(path: &Path, write: impl FnOnce(&mut dyn Write) -> Result<(), Fault>) -> Result<(), Fault> {
+    /// What went wrong: with the file, or with what is written to it.
+    enum Failed {
+        File(io::Error),
+        Report(Fault),
+    }
+    impl From<io::Error> for Failed {
+        fn from(error: io::Error) -> Failed {
+            Failed::File(error)
+        }
+    }
+    write_whole_by(path, |file| write(file).map_err(Failed::Report)).map_err(|failed| match failed {
+        Failed::File(error) => FileError::Write { path: path.to_owned(), why: error.to_string() }.into(),
+        Failed::Report(fault) => fault,
+    })
 }
 
 /// One notebook as text: where there are many, one that is the same takes one line.

@@ -332,9 +332,9 @@ fn environment(edits: &[Edit], seal: &Seal, today: &Holdings) -> Vec<Difference>
         }
     };
     let now = engine_now();
-    differs("program", &seal.engine.version, &now.version);
-    differs("shipped tables and procedures", &seal.engine.stdlib, &now.stdlib);
-    differs("constant set", &seal.constants.year, &today.constants.year.to_string());
+    differs(Difference::PROGRAM, &seal.engine.version, &now.version);
+    differs(Difference::TABLES, &seal.engine.stdlib, &now.stdlib);
+    differs(Difference::CONSTANTS, &seal.constants.year, &today.constants.year.to_string());
     for edit in edits {
         let word = |digest: &Option<String>| digest.clone().unwrap_or_else(|| "not there".to_owned());
         differs(&edit.what, &word(&edit.then), &word(&edit.now));

@@ -1,11 +1,11 @@
 //! An audit as text: what differs first and at length, what is the same counted.
 
-use std::borrow::Cow;
 use std::fmt::Write as _;
 
 use crate::notebook::verdict::{
     Against, Move, NotebookAudit, Outcome, Rederived, SealFacts, Signed, ValueAudit, Verdict,
 };
+pub use crate::render::harmless::in_one_line;
 
 /// One notebook.
 pub fn notebook(audit: &NotebookAudit) -> String {
@@ -101,19 +101,6 @@ pub fn data_change(audit: &NotebookAudit) -> String {
 
 fn line(text: &mut String, words: &str) {
     let _ = writeln!(text, "  {}", in_one_line(words)); // Writing to a text cannot fail.
-}
-
-/// Words from a file as they can stand in a line: what would end it, steer a terminal or turn the writing round is spelt
-/// out, since a label could forge another row with it.
-pub fn in_one_line(words: &str) -> Cow<'_, str> {
-    let steers = |c: char| {
-        c.is_control() || matches!(c, '\u{2028}' | '\u{2029}' | '\u{202a}'..='\u{202e}' | '\u{2066}'..='\u{2069}')
-    };
-    if !words.contains(steers) {
-        return Cow::Borrowed(words);
-    }
-    let spelt = |c: char| if steers(c) { c.escape_unicode().to_string() } else { c.to_string() };
-    Cow::Owned(words.chars().map(spelt).collect())
 }
 
 fn seal_words(seal: &SealFacts) -> String {

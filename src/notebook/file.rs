@@ -4,7 +4,7 @@
 //! quirks of the file (a missing id, an older minor version) are listed, and mended only when the file is written.
 
 use std::collections::BTreeSet;
-use std::io::Write;
+use std::io::{BufWriter, Write};
 use std::path::{Path, PathBuf};
 
 use serde_json::{Map, Value, json};
@@ -266,14 +266,28 @@ pub fn bytes_of(path: &Path) -> Result<Vec<u8>, FileError> {
 /// # Errors
 /// As the file system says.
 pub fn write_whole(path: &Path, bytes: &[u8]) -> std::io::Result<()> {
+    write_whole_by(path, |file| file.write_all(bytes))
+}
+
+/// The same for what is written piece by piece: where that fails, nothing is left.
+///
+/// # Errors
+/// As the file system says, or as `write` does.
+pub fn write_whole_by<E: From<std::io::Error>>(
+    path: &Path,
+    write: impl FnOnce(&mut dyn Write) -> Result<(), E>,
+) -> Result<(), E> {
     // A link stays a link, and what it points to is written; a pipe or device is no place for a notebook.
     let path = &std::fs::canonicalize(path).unwrap_or_else(|_| path.to_owned());
     if std::fs::metadata(path).is_ok_and(|there| !there.is_file()) {
-        return Err(std::io::Error::other("it is there and is no regular file"));
+        return Err(std::io::Error::other("it is there and is no regular file").into());
     }
     let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(Path::new("."));
     let mut file = tempfile::Builder::new().permissions(readable()).tempfile_in(folder)?;
-    file.write_all(bytes)?;
+    let mut buffered = BufWriter::new(file.as_file_mut());
+    write(&mut buffered)?;
+    buffered.flush()?;
+    drop(buffered);
     file.as_file().sync_all()?;
     if let Ok(old) = std::fs::metadata(path) {
         file.as_file().set_permissions(old.permissions())?;

@@ -202,12 +202,12 @@ fn figure(step: &SealedStep) -> (Option<f64>, String) {
     }
 }
 
-/// Decimals with which two figures are told apart by two digits; none where they are the same.
+/// Decimals with which two figures are told apart by two digits, and at least six digits; none where they are the same.
 fn decimals_to_tell(then: f64, now: f64) -> Option<i32> {
     let larger = then.abs().max(now.abs());
     let by = (now - then).abs();
     (by > 0.0 && by.is_finite())
-        .then(|| decimals_for(by).max(decimals_for_digits(larger, 4)).min(decimals_for_digits(larger, 17)))
+        .then(|| decimals_for(by).max(decimals_for_digits(larger, 6)).min(decimals_for_digits(larger, 17)))
 }
 
 fn shown(value: Option<f64>, unit: &str, decimals: Option<i32>) -> String {

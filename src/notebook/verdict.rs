@@ -169,6 +169,17 @@ pub struct Difference {
     pub now: String,
 }
 
+impl Difference {
+    pub const PROGRAM: &'static str = "program";
+    pub const TABLES: &'static str = "shipped tables and procedures";
+    pub const CONSTANTS: &'static str = "constant set";
+
+    /// Whether it is an edit of the notebook, its cells or its modules, and not of what it runs on.
+    pub fn is_edit(&self) -> bool {
+        ![Self::PROGRAM, Self::TABLES, Self::CONSTANTS].contains(&self.what.as_str())
+    }
+}
+
 /// One value.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct ValueAudit {

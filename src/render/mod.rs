@@ -15,6 +15,7 @@ pub mod dataset;
 pub mod derivation;
 pub mod fit;
 pub mod gap;
+pub mod harmless;
 pub mod headline;
 pub mod html;
 pub mod interval;

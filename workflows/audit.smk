@@ -1,0 +1,46 @@
+# Audits an archive of sealed notebooks in shards, and reports on all of them together. See README.md beside this file.
+
+archive = str(config["archive"]).split()
+shards = int(config.get("shards", 4))
+folder = config.get("output", "audit")
+options = str(config.get("options", ""))
+jobs = int(config.get("jobs", 1))
+program = config.get("program", "hessbook")
+numbers = range(1, shards + 1)
+
+
+rule all:
+    input:
+        expand(f"{folder}/audit.{{form}}", form=["html", "xml", "json", "txt", "status"]),
+
+
+# Status 1 and 2 are findings, which belong into the report. That all of the shard was done is what its last line says, and
+# a file without it is refused below.
+rule shard:
+    output:
+        done=touch(f"{folder}/shards/{{n}}.done"),
+    params:
+        state=lambda wildcards: f"{folder}/shards/{wildcards.n}.json",
+    threads: jobs
+    shell:
+        "mkdir -p {folder:q}/shards; "
+        "{program} audit {archive:q} --shard {wildcards.n}/{shards} --resume {params.state:q} --jobs {threads} {options} "
+        "> /dev/null || true; "
+        "tail -n 1 {params.state:q} | grep -q '^{{\"finished\"'"
+
+
+rule together:
+    input:
+        expand(f"{folder}/shards/{{n}}.done", n=numbers),
+    output:
+        page=f"{folder}/audit.html",
+        junit=f"{folder}/audit.xml",
+        json=f"{folder}/audit.json",
+        text=f"{folder}/audit.txt",
+        status=f"{folder}/audit.status",
+    params:
+        states=[f"{folder}/shards/{n}.json" for n in numbers],
+    shell:
+        "{program} audit --gathered {params.states:q} --format json > {output.json:q} || true; "
+        "status=0; {program} audit --gathered {params.states:q} --page {output.page:q} --junit {output.junit:q} "
+        "> {output.text:q} || status=$?; echo $status > {output.status:q}; test -s {output.page:q}"
