@@ -8,8 +8,11 @@ use crate::quantity::round::shortest;
 use crate::units::constants::{Constant, ConstantSet};
 use crate::units::parse;
 
+/// Finds a constant in a set.
+type Find = fn(&ConstantSet) -> &Constant;
+
 /// Units by their spellings, with the constant that is their size.
-const UNITS: [(&[&str], fn(&ConstantSet) -> &Constant); 3] = [
+const UNITS: [(&[&str], Find); 3] = [
     (&["E_h", "hartree"], |set| &set.hartree),
     (&["Da"], |set| &set.atomic_mass),
     (&["eV"], |set| &set.elementary_charge),
