@@ -349,6 +349,9 @@ fn the_page_holds_every_part_and_asks_for_nothing_from_outside() {
         assert!(page.contains(&escaped(&value.under_today.moved.as_ref().unwrap().shown)));
     }
     assert!(page.contains("the design sheet uses CODATA") && page.contains("author as given: A. Analyst"));
+    let of_altered = named("altered").justifications.len();
+    assert!(of_altered > 0);
+    assert_eq!(page.matches("this need not be what its author wrote").count(), of_altered);
     assert!(page.contains("not signed") && page.contains("altered after it was made"));
     assert_eq!(page.matches("parts here</td>").count(), parted(), "each derivation marks where it parts");
     let tags = tags(&page);

@@ -126,12 +126,12 @@ fn result(tally: &Tally) -> String {
     match tally.not_same() {
         0 if same == all => format!("{same} of {all} notebooks give the figures again that they were compared with."),
         0 => format!("{same} of {all} notebooks give the figures again that they were compared with;{bare}"),
-        not_same => format!(
-            "{not_same} of {all} notebooks {} not the same: {}, {}.{bare}",
-            if not_same == 1 { "is" } else { "are" },
-            status_words(AuditStatus::Differs, tally.with_status(AuditStatus::Differs)),
-            status_words(AuditStatus::CouldNotRun, tally.with_status(AuditStatus::CouldNotRun)),
-        ),
+        not_same => {
+            let counts = [AuditStatus::Differs, AuditStatus::CouldNotRun].map(|one| (one, tally.with_status(one)));
+            let words = counts.iter().filter(|(_, count)| *count > 0).map(|(one, count)| status_words(*one, *count));
+            let (are, words) = (if not_same == 1 { "is" } else { "are" }, words.collect::<Vec<_>>().join(", "));
+            format!("{not_same} of {all} notebooks {are} not the same: {words}.{bare}")
+        }
     }
 }
 
@@ -244,7 +244,7 @@ fn outcomes(value: &ValueAudit, against: Against) -> Vec<Value> {
         let figures = outcome.figure.as_ref().map(|is| is.shown.strip_suffix(words).unwrap_or(&is.shown));
         json!({
             "under": under, "verdict": outcome.verdict.word(), "loud": !outcome.verdict.is_same(),
-            "identical": outcome.verdict == Verdict::Identical,
+            "same_figure": outcome.figure.is_some() && outcome.figure == value.sealed,
             "is": figures, "exact": outcome.figure.as_ref().map(exact),
             "moved": outcome.moved.as_ref().map(|moved| &moved.shown),
             "causes": outcome.moved.as_ref().map(causes_words).unwrap_or_default(),
@@ -312,6 +312,8 @@ fn justification(one: &Justification, audit: &NotebookAudit) -> Value {
         "lapsed": one.lapsed,
         "author": audit.seal.as_ref().and_then(|seal| seal.author.clone()),
         "sealed": audit.seal.as_ref().map(|seal| seal.sealed.clone()),
+        // What stands in an altered seal need not be what its author wrote.
+        "altered": audit.seal.as_ref().is_some_and(|seal| !seal.whole),
         "at_signing": price(one.price.as_deref(), unit),
         "sealed_data": price(one.price_sealed_data.as_deref(), unit),
         "today": price(one.price_today.as_deref(), unit),
