@@ -135,3 +135,26 @@ fn a_measured_curve_keeps_its_figures_apart_and_is_not_interpolated() {
     let between = "let cp = read_csv(\"cp.csv\").curve(\"Cp\", \"T\"); cp.at(\"305 K\")";
     assert_eq!(code(folder.path(), between), "curve-not-interpolated");
 }
+
+#[test]
+fn a_molecule_is_read_from_a_file_in_both_forms() {
+    let folder = tempfile::tempdir().unwrap();
+    let csv = "property,value,unit,degeneracy\nformula,CO2,,\npoint group,Dinfh,,\nrotational constant,11.698,GHz,\n\
+               distortion constant,4.0,kHz,\nwavenumber,1333,cm^-1,\nwavenumber,667,cm^-1,2\nwavenumber,2349,cm^-1,\n";
+    let json = r#"{"formula": "CO2", "point_group": "Dinfh", "rotational_constants": ["11.698 GHz"], "distortion": ["4.0 kHz"],
+        "unit": "cm^-1", "vibrations": [1333, [667, 2], 2349]}"#;
+    std::fs::write(folder.path().join("freq.csv"), csv).unwrap();
+    std::fs::write(folder.path().join("freq.json"), json).unwrap();
+    let cell = "let of = |m| m.entropy(\"500 K\").value(\"J/(K mol)\");
+        let a = of.call(molecule_table(\"freq.csv\"));
+        require(a == of.call(molecule_table(\"freq.json\")), \"both forms are one molecule\");
+        // 234.9 J/(K mol) by NASA/TP-2002-211556, Appendix D, p. 85, evaluated; its wavenumbers, here rounded, give it to 0.1.
+        require((a - 234.9).abs() < 0.1, `S of carbon dioxide: ${a}`);
+        let hot = molecule_table(\"freq.csv\", #{ scale: 0.98 });
+        require(of.call(hot) > a, \"and more is said of it beside the file\");";
+    cells(folder.path(), &[cell]).unwrap_or_else(|fault| panic!("{fault}"));
+    std::fs::write(folder.path().join("bytes.csv"), [0xff, 0xfe, 0x00]).unwrap();
+    assert_eq!(code(folder.path(), "molecule_table(\"bytes.csv\")"), "file-not-text");
+    assert_eq!(code(folder.path(), "molecule_table(\"absent.csv\")"), "file-missing");
+    assert_eq!(code(folder.path(), "molecule_table(\"formula,CO2\")"), "file-missing");
+}

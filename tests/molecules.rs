@@ -4,6 +4,8 @@
 //! than 0.2 J/(mol K) in S or 0.5 % in Cp; it is explained where a named term that the molecule leaves out, computed here
 //! by its own sum, accounts for at least half of it. Constants of these terms are from memory, and serve for nothing else.
 
+#[path = "molecules/prices.rs"]
+mod prices;
 #[path = "molecules/terms.rs"]
 mod terms;
 
@@ -11,7 +13,9 @@ use std::cell::Cell;
 
 use hessbook::model::card::{Cx, References};
 use hessbook::model::function;
-use hessbook::model::molecule::shipped;
+use hessbook::model::molecule::definition::Motion;
+use hessbook::model::molecule::parameter::Parameter;
+use hessbook::model::molecule::{Molecule, shipped};
 use hessbook::units::constants;
 
 /// Of 298.15 K, 500 K, 1000 K and 1500 K.
@@ -27,6 +31,8 @@ struct Row {
     cp: (f64, f64),
     s: (f64, f64),
     constants: String,
+    /// The same with inferred wavenumbers, and which.
+    inferred: Option<(f64, f64, String)>,
 }
 
 impl Row {
@@ -81,6 +87,7 @@ fn rows() -> Vec<Row> {
                 cp: (own.cp, other.cp),
                 s: (own.s, other.s),
                 constants: record.check.to_string(),
+                inferred: inferred(&cx, &record.id, t_k),
             });
         }
     }
@@ -89,32 +96,50 @@ fn rows() -> Vec<Row> {
 }
 
 /// Misses that no term here accounts for, with what is known of them.
-const UNEXPLAINED: [(&str, f64, &str); 16] = [
-    ("Br(g)", 1000.0, BROMINE),
-    ("Br(g)", 1500.0, BROMINE),
+const UNEXPLAINED: [(&str, f64, &str); 4] = [
     ("CH4(g)", 500.0, METHANE),
     ("CH4(g)", 1000.0, METHANE),
     ("CH4(g)", 1500.0, METHANE),
-    ("CCl4(g)", 298.15, OTHER_CONSTANTS),
-    ("CCl4(g)", 500.0, OTHER_CONSTANTS),
-    ("CCl4(g)", 1000.0, OTHER_CONSTANTS),
-    ("CCl4(g)", 1500.0, OTHER_CONSTANTS),
-    ("SF6(g)", 298.15, OTHER_CONSTANTS),
-    ("SF6(g)", 500.0, OTHER_CONSTANTS),
-    ("SF6(g)", 1000.0, OTHER_CONSTANTS),
-    ("SF6(g)", 1500.0, OTHER_CONSTANTS),
-    ("Br2(g)", 1500.0, OTHER_CONSTANTS),
     (
-        "I2(g)",
+        "NH3(g)",
         1500.0,
-        "the excited states known from memory bring a third of it; levels near dissociation were not tried",
+        "what is known brings four fifths of it in S; in Cp inversion and anharmonicity nearly cancel, and neither is known well \
+         enough so far up",
     ),
-    ("NH3(g)", 1500.0, "levels of the inversion above 3 quanta are not known here"),
 ];
-const BROMINE: &str =
-    "two levels make the sum, and no third one lies below 60000 cm^-1, so the published function is not theirs";
-const METHANE: &str = "centres of the first polyads, with stretching, bring a third of it";
-const OTHER_CONSTANTS: &str = "the published function rests on other constants, which were not at hand";
+const METHANE: &str = "centres of the first polyads, with stretching, bring a third of it; JANAF has the rigid rotor and \
+                       harmonic oscillators, as here";
+
+/// A gas, wavenumbers as observed and as inferred, and what is known of them.
+type Inferred = (&'static str, &'static [(f64, f64)], &'static str);
+
+/// Published functions that are no sum over the observed fundamentals but, to 0.05 J/(mol K) at all temperatures, one over
+/// these wavenumbers. They were found by fitting that function, and no publication of them is at hand: so this tells what the
+/// difference is, and explains nothing.
+const INFERRED: [Inferred; 2] = [
+    (
+        "CCl4(g)",
+        &[(459.0, 463.0), (217.0, 220.0), (776.0, 797.0)],
+        "the highest, which shows as a pair of bands at 762 and 790 cm⁻¹ in resonance with 459 + 314, is the one that counts",
+    ),
+    ("SF6(g)", &[(347.0, 343.0)], "the lowest, which is seen neither in the infrared nor in the Raman spectrum"),
+];
+
+/// Cp and S, J/(mol K), of the molecule with the wavenumbers moved that its published function asks for.
+fn inferred(cx: &Cx, id: &str, t_k: f64) -> Option<(f64, f64, String)> {
+    let (_, moved, why) = INFERRED.iter().find(|(known, _, _)| *known == id)?;
+    let molecule = shipped::molecule(cx, id).unwrap_or_else(|fault| panic!("{id}: {fault}"));
+    let mut definition = molecule.definition().clone();
+    let Motion::Polyatomic { vibrations, .. } = &mut definition.motion else { panic!("{id} vibrates") };
+    let theta = |per_cm: f64| 100.0 * per_cm * cx.constants().second_radiation.value;
+    for (from, to) in *moved {
+        let of = vibrations.iter_mut().find(|(nu, _)| (nu.value / theta(*from) - 1.0).abs() < 1e-9);
+        of.unwrap_or_else(|| panic!("{id} has no fundamental at {from}")).0 = Parameter::exact("moved", theta(*to));
+    }
+    let at = Molecule::new(definition, *molecule.treatment()).gas().functions(t_k, cx.constants());
+    let list: Vec<String> = moved.iter().map(|(from, to)| format!("{to} for {from}")).collect();
+    Some((at.cp, at.s, format!("{} cm⁻¹; {why}", list.join(", "))))
+}
 
 #[test]
 fn the_sums_give_the_published_functions_or_what_is_missing_is_named() {
@@ -122,7 +147,7 @@ fn the_sums_give_the_published_functions_or_what_is_missing_is_named() {
     assert_eq!(rows.len(), 62 * TEMPERATURES_K.len(), "a molecule or its function is gone");
     println!("the constants were selected by agreement with these functions: this tests the sums, not the constants");
     println!(" share   T/K  gas: Cp computed, published, off; S computed, published, off in J/(mol K)");
-    let mut wrong = Vec::new();
+    let (mut wrong, mut counts) = (Vec::new(), [0_u32; 3]);
     for row in &rows {
         let Row { id, t_k, cp, s, .. } = row;
         println!(
@@ -143,6 +168,16 @@ fn the_sums_give_the_published_functions_or_what_is_missing_is_named() {
             continue;
         }
         let (why, holds) = row.explained();
+        if let (false, Some((cp, s, which))) = (holds, &row.inferred) {
+            let (off_cp, off_s) = (cp - row.cp.1, s - row.s.1);
+            counts[1] += 1;
+            println!("        inferred: off by {off_cp:+.3} in Cp and {off_s:+.3} in S with {which}");
+            if off_cp.abs() > 0.05 || off_s.abs() > 0.05 {
+                wrong.push(format!("{id} at {t_k} K is not what was inferred: {off_cp:+.3} {off_s:+.3}"));
+            }
+            continue;
+        }
+        counts[if holds { 0 } else { 2 }] += 1;
         match (holds, stated) {
             (true, None) => println!("        explained by {}", why.unwrap_or_default()),
             (false, Some((_, _, known))) => {
@@ -161,5 +196,9 @@ fn the_sums_give_the_published_functions_or_what_is_missing_is_named() {
             )),
         }
     }
+    println!(
+        "misses: {} explained, {} inferred from the function itself, {} unexplained",
+        counts[0], counts[1], counts[2]
+    );
     assert!(wrong.is_empty(), "{}", wrong.join("\n"));
 }

@@ -39,7 +39,8 @@ fn ran(path: &Path) -> RunRecord {
     on_big_stack(move || {
         let mut source = Source::read(&path).unwrap();
         let mut session = Session::new(Arc::default());
-        run(&path.display().to_string(), &mut source, &mut session, &mut Quiet)
+        // By its path, since it may use a module or a table that lies beside it.
+        run(&path.to_string_lossy(), &mut source, &mut session, &mut Quiet)
     })
 }
 

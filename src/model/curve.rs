@@ -15,6 +15,7 @@ use thiserror::Error;
 use crate::fault::{Explain, Fault, Place};
 use crate::model::card::{Call, Cx, References, Value};
 use crate::model::grid::Grid;
+use crate::model::molecule;
 use crate::model::property::{self, Property};
 use crate::model::sweep;
 use crate::model::table::Column;
@@ -183,9 +184,14 @@ impl Curve {
             let property = Property::of(call.card)?;
             Some((property, call.terms()?, property::method_of(call, cx).ok()?))
         });
-        let pass =
-            |(property, terms, method)| sweep::numbers(property, terms, &method, self.grid.points_k(), numbers, cx);
-        asked.map_or(0..0, pass)
+        match asked {
+            Some((property, terms, method)) => {
+                sweep::numbers(property, terms, &method, self.grid.points_k(), numbers, cx)
+            }
+            None => self
+                .call()
+                .map_or(0..0, |call| molecule::answers::numbers(call, self.grid.points_k(), numbers, cx.constants())),
+        }
     }
 
     /// A column of measured values, one for each point.

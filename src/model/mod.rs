@@ -122,6 +122,7 @@ pub const CARDS: &[&Card] = &[
     &molecule::shares::CONTRIBUTIONS,
     &molecule::limits::CLASSICAL_LIMIT,
     &molecule::limits::EQUIPARTITION_TEMPERATURE,
+    &molecule::torsion_levels::TORSION_LEVELS,
     &molecule::limits::ZERO_POINT,
     &molecule::limits::GROUND_STATE,
     &molecule::formation::FORMATION_ENTHALPY,

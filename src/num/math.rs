@@ -7,42 +7,6 @@ pub fn exp(x: f64) -> f64 {
     libm::exp(x)
 }
 
-/// eˣ for x from −700 to 0 without a branch and without a call, so that a loop over many is turned into vector instructions:
-/// x = k ln 2 + r, and the series of eʳ to r¹³, whose next term is below 1e-17. Within two units of the last place; below
-/// −700 the value at −700, 1e-304, stands.
-#[inline]
-pub fn exp_of_negative(x: f64) -> f64 {
-    // ln 2 in two parts, the first with zeros at its end, so that k times it is exact (Cody, Waite 1980; from memory).
-    const LN_2: (f64, f64) = (6.931_471_803_691_238e-1, 1.908_214_929_270_587_7e-10);
-    // Added to a number below 2⁵¹, 1.5 · 2⁵² leaves the nearest whole number in the last bits.
-    const SHIFT: f64 = 6_755_399_441_055_744.0;
-    const INVERSE_FACTORIALS: [f64; 13] = [
-        1.0 / 479_001_600.0,
-        1.0 / 39_916_800.0,
-        1.0 / 3_628_800.0,
-        1.0 / 362_880.0,
-        1.0 / 40_320.0,
-        1.0 / 5040.0,
-        1.0 / 720.0,
-        1.0 / 120.0,
-        1.0 / 24.0,
-        1.0 / 6.0,
-        0.5,
-        1.0,
-        1.0,
-    ];
-    let x = if x < -700.0 { -700.0 } else { x };
-    let shifted = x * std::f64::consts::LOG2_E + SHIFT;
-    let k = shifted - SHIFT;
-    let r = (x - k * LN_2.0) - k * LN_2.1;
-    let mut series = 1.0 / 6_227_020_800.0;
-    for term in INVERSE_FACTORIALS {
-        series = series * r + term;
-    }
-    // 2ᵏ: the whole number in the last bits, moved into the exponent.
-    series * f64::from_bits(shifted.to_bits().wrapping_add(1023) << 52)
-}
-
 pub fn expm1(x: f64) -> f64 {
     libm::expm1(x)
 }
@@ -157,18 +121,6 @@ mod tests {
         assert_eq!(log(8.0, 2.0), 3.0);
         // ln 81 / ln 3 = 4: two roundings and a division, so within three units of the last place.
         assert!((log(81.0, 3.0) - 4.0).abs() <= 3.0 * 4.0 * f64::EPSILON);
-    }
-
-    #[test]
-    fn the_fast_exponential_is_within_two_units_of_the_last_place() {
-        let steps = 200_000;
-        for nth in 0..=steps {
-            let x = -700.0 * f64::from(nth) / f64::from(steps);
-            let (fast, exact) = (exp_of_negative(x), exp(x));
-            assert!((fast / exact - 1.0).abs() <= 2.0 * f64::EPSILON, "{x}: {fast} {exact}");
-        }
-        assert_eq!(exp_of_negative(0.0), 1.0);
-        assert!(exp_of_negative(-1e4) < 1e-300);
     }
 
     #[test]

@@ -4,6 +4,7 @@ pub mod cholesky;
 pub mod edits;
 pub mod lsq;
 pub mod math;
+pub mod oscillator;
 pub mod pchip;
 pub mod powers;
 pub mod random;

@@ -41,6 +41,8 @@ pub const CLAIMS: &[(&str, &str)] = &[
     ("high-temperature-rotation", "the rotational levels lie so dense that their sum is an integral"),
     ("symmetry-number", "the symmetry number counts the rotations that leave the molecule as it was"),
     ("debye-model", "the crystal's heat capacity is that of waves and oscillators with these temperatures"),
+    ("expansion-neglected", "the heat capacity of the crystal at constant pressure is the one at constant volume"),
+    ("expansion-estimate", "Cp - Cv of the crystal follows from its melting point, after Nernst and Lindemann"),
     ("additive-estimate", "each atom of a crystal brings its own heat capacity"),
     ("linear-propagation", "first derivatives are enough to propagate the uncertainties"),
     ("uncertainty-incomplete", "the inputs that state no uncertainty add none that matters"),

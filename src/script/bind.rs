@@ -152,7 +152,7 @@ pub fn to_value(value: &Dynamic) -> Value {
     if value.is_unit() { Value::Nothing } else { Value::Other(crate::script::words::kind_of(value).into()) }
 }
 
-fn from_value(value: Value) -> Dynamic {
+pub fn from_value(value: Value) -> Dynamic {
     match value {
         Value::Quantity(quantity) => Dynamic::from(quantity),
         Value::Number(number) => Dynamic::from_float(number),

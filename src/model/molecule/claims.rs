@@ -8,12 +8,13 @@ use std::rc::Rc;
 use crate::model::card::{Call, Cx, Value};
 use crate::model::function;
 use crate::model::molecule::answers::{self, Asked, molecule_of};
-use crate::model::molecule::definition::Motion;
+use crate::model::molecule::definition::{Definition, Motion};
+use crate::model::molecule::parameter::{self, Parameter};
 use crate::model::molecule::treatment::{LowAs, TorsionAs, Treatment, VibrationAs};
-use crate::model::molecule::{Molecule, shipped};
+use crate::model::molecule::{Molecule, shipped, stretching};
 use crate::model::statmech::rotation::Sum;
 use crate::num::math;
-use crate::quantity::Quantity;
+use crate::quantity::{Quantity, round};
 use crate::record::node::{Input, LeafKey, Node};
 use crate::record::register::{Finding, Tested};
 
@@ -131,12 +132,20 @@ fn call_dim(call: &Call, cx: &Cx) -> Option<crate::units::Dimension> {
     Some(value.dim().clone())
 }
 
-/// `rigid-rotor`: against the levels of a diatomic molecule; for others no constants of stretching are at hand.
+/// `rigid-rotor`: against the levels of a diatomic molecule, or against stretching by the constants that were given or that one
+/// stretch of the molecule tells. For others what a harmonic force field allows stands in the row.
 pub fn rigid_rotor(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
     let molecule = molecule_of(call);
-    let treatment = molecule.treatment();
-    let tested = match (&molecule.definition().motion, treatment.vibration) {
+    let (definition, treatment) = (molecule.definition(), molecule.treatment());
+    let tested = match (&definition.motion, treatment.vibration) {
         (Motion::Atom, _) | (Motion::Diatomic { .. }, VibrationAs::Levels) => return Vec::new(),
+        (Motion::Polyatomic { .. }, _) if definition.distortion.is_some() => {
+            if treatment.stretched {
+                return Vec::new();
+            }
+            let better = molecule.taken(Treatment { stretched: true, ..*treatment });
+            with_words(anew(cx, call, better), "stretched by the distortion constants that were given")
+        }
         (Motion::Diatomic { .. }, _) => {
             let better = molecule.taken(Treatment { vibration: VibrationAs::Levels, ..*treatment });
             with_words(
@@ -144,11 +153,41 @@ pub fn rigid_rotor(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
                 "the sum over all levels, in which rotation stretches the molecule and weakens with v",
             )
         }
-        (Motion::Polyatomic { .. }, _) => {
-            Tested::Missing { what: format!("no centrifugal distortion constants of {} are known", molecule.text()) }
-        }
+        (Motion::Polyatomic { .. }, _) => match stretching::of_one_stretch(definition) {
+            Some((rho, stretch_k)) => {
+                let stretched = Definition { distortion: Some(rho), ..definition.clone() };
+                let better = Molecule::new(stretched, Treatment { stretched: true, ..*treatment });
+                let stretch = parameter::per_cm(stretch_k);
+                anew_as(cx, call, better, format!("stretched by D = 4B³/ν² of the vibration {stretch}"))
+            }
+            None => Tested::Missing { what: unstretched(cx, call, molecule) },
+        },
     };
     finding("rigid-rotor", call, value, tested)
+}
+
+/// That no distortion constants are known, and what a harmonic force field would allow them to bring.
+fn unstretched(cx: &Cx, call: &Call, molecule: &Molecule) -> String {
+    let missing = format!("no `distortion` constants of {} are known", molecule.text());
+    let definition = molecule.definition();
+    let (Some((low, high)), Ok(rigid)) = (
+        stretching::bracket(definition),
+        answers::value(cx, &Rc::new(Call { card: call.card, args: call.args.clone() }), false),
+    ) else {
+        return missing;
+    };
+    let with = |rho: f64| -> Option<f64> {
+        let distortion = Some(Parameter::exact(stretching::NAME, rho));
+        let stretched = Molecule::new(Definition { distortion, ..definition.clone() }, *molecule.treatment());
+        let mut args = call.args.clone();
+        args[0] = Value::Molecule(Rc::new(stretched));
+        let value = answers::value(cx, &Rc::new(Call { card: call.card, args }), false).ok()?;
+        Some(value.si() - rigid.si())
+    };
+    let (Some(low), Some(high), Some(asked)) = (with(low), with(high), Asked::of(call.card)) else { return missing };
+    let (scale, unit) = asked.check_unit();
+    let [low, high] = [low, high].map(|off| round::significant(off / scale, 2));
+    format!("{missing}; in a harmonic force field with these wavenumbers they bring {low} to {high} {unit}")
 }
 
 /// `free-rotor`: against the torsion in its potential, or the oscillator that was blended with a rotor.
@@ -192,7 +231,7 @@ pub fn high_temperature_rotation(cx: &Cx, call: &Call, value: &Quantity) -> Vec<
 }
 
 /// Factors between two symmetry numbers that are mistaken for each other.
-const FACTORS: [f64; 8] = [0.25, 1.0 / 3.0, 0.5, 2.0, 3.0, 4.0, 6.0, 12.0];
+const FACTORS: [f64; 10] = [1.0 / 12.0, 1.0 / 6.0, 0.25, 1.0 / 3.0, 0.5, 2.0, 3.0, 4.0, 6.0, 12.0];
 
 /// `symmetry-number`: against that of the point group, else against a published entropy.
 pub fn symmetry_number(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
@@ -286,6 +325,13 @@ fn has_low_modes(call: &Call) -> bool {
     let Motion::Polyatomic { vibrations, .. } = &molecule.definition().motion else { return false };
     let quantised = molecule.treatment().vibration != VibrationAs::Equipartition;
     quantised && vibrations.iter().any(|(mode, _)| mode.value < 3.0 * molecule.treatment().cut_off_k)
+}
+
+/// What a rigid rotor would have given, where distortion constants were given.
+pub fn with_rigid_rotor(cx: &Cx, call: &Call, _: &Quantity) -> Option<f64> {
+    let molecule = molecule_of(call);
+    molecule.definition().distortion.as_ref()?;
+    alternative(cx, call, |treatment| treatment.stretched = false)
 }
 
 /// What raised low modes would have given.

@@ -4,11 +4,15 @@ use std::cell::OnceCell;
 use std::rc::Rc;
 use std::sync::Arc;
 
+use crate::chem::composition::Composition;
+use crate::chem::species::{Phase, Species, State};
+use crate::data::pressure::Constants;
 use crate::data::substance::Substance;
 use crate::model::molecule::parameter::Parameter;
 use crate::model::statmech::diatomic::Spins;
 use crate::model::statmech::hindered::{Potential, Torsion};
 use crate::quantity::Quantity;
+use crate::units::Entity;
 
 /// The constants of a molecule, with their inputs.
 #[derive(Clone)]
@@ -24,6 +28,8 @@ pub struct Definition {
     pub symmetry_given: bool,
     /// The symmetry number of the point group, with its symbol.
     pub by_group: Option<(Arc<str>, f64)>,
+    /// ρ of `stretching.rs`, 1/K, where distortion constants were given.
+    pub distortion: Option<Parameter>,
     /// Factor on all wavenumbers of vibrations, for the thermal functions.
     pub scale: Option<Parameter>,
     /// Factor for the zero-point energy.
@@ -83,6 +89,25 @@ impl GivenTorsion {
 pub struct GivenFormation {
     pub value: Quantity,
     pub at_zero: bool,
+}
+
+/// A phase that no table knows, made up of its name and formula.
+pub fn made_up(base: &str, composition: &Composition, charge: i32, state: State) -> Substance {
+    let phase = Phase::of(state);
+    Substance {
+        species: Species {
+            id: format!("{base}({})", state.symbol()).into(),
+            entity: Entity::named(base),
+            composition: composition.clone(),
+            charge,
+            phase,
+        },
+        name: None,
+        cas: None,
+        function: None,
+        pressure: Constants::default(),
+        formations: Vec::new(),
+    }
 }
 
 impl Definition {

@@ -31,6 +31,8 @@ pub enum MoleculeError {
     SymmetryNumber { value: String },
     #[error("{given} rotational constants do not suit {formula}, which has {atoms} atoms")]
     RotationalConstants { formula: String, atoms: usize, given: usize },
+    #[error("`distortion` has a list of {given}, and {wanted}")]
+    Distortion { given: usize, wanted: &'static str },
     #[error("`{symbol}` is no point group")]
     PointGroup { symbol: String },
     #[error("{name} is {recorded} on record, and {given} is given")]
@@ -75,6 +77,7 @@ impl Explain for MoleculeError {
             MoleculeError::ModeCount { .. } => "mode-count",
             MoleculeError::SymmetryNumber { .. } => "symmetry-number-impossible",
             MoleculeError::RotationalConstants { .. } => "rotational-constants-count",
+            MoleculeError::Distortion { .. } => "distortion-constants-count",
             MoleculeError::PointGroup { .. } => "point-group-unknown",
             MoleculeError::Formula { .. } => "molecule-formula-differs",
             MoleculeError::Degeneracy { .. } => "degeneracy-impossible",
@@ -123,6 +126,10 @@ impl Explain for MoleculeError {
             MoleculeError::RotationalConstants { .. } => {
                 "give none for an atom, one for a linear molecule and three for any other, as in \
                  `rotational_constants: [\"9.94 cm^-1\", \"9.94 cm^-1\", \"6.20 cm^-1\"]`"
+                    .to_owned()
+            }
+            MoleculeError::Distortion { .. } => {
+                "give as many as belong to the molecule, as in `distortion: [\"1.33e-7 cm^-1\"]` of CO2, or leave them out"
                     .to_owned()
             }
             MoleculeError::PointGroup { .. } => {

@@ -21,6 +21,7 @@ use crate::model::card::{Call, Card, Cx, On, Value};
 use crate::model::function::T_REFERENCE;
 use crate::model::gather::Figure;
 use crate::model::molecule::answers::{self, molecule_of};
+use crate::model::molecule::definition::GivenFormation;
 use crate::model::molecule::error::MoleculeError;
 use crate::model::molecule::{Molecule, RANGE_K};
 use crate::model::property::{self, Property};
@@ -33,48 +34,79 @@ use crate::units::{Dimension, Entity, Kind, State, What, Zero};
 /// Name of the elements' figures among inputs.
 const FIELD: &str = "enthalpy increment from 0 K";
 
-pub static FORMATION_ENTHALPY: Card = Card {
-    id: "molecule.formation-enthalpy",
-    name: "formation_enthalpy",
-    on: On::Molecule,
-    args: &[],
-    gives: "ΔfH°(298.15 K) per mole of the gas",
-    doc: "The formation enthalpy that was given, at 298.15 K: as it is, or taken there from 0 K with the molecule's own \
-          H(298.15 K) - H(0) and those of the elements on record.",
-    source: "definition of formation; IUPAC Green Book, 3rd ed., section 2.11 (from memory)",
-    example: "molecule(#{ formula: \"Ar\", formation_enthalpy: \"0 kJ/mol\", formation_temperature: \"298.15 K\" }).formation_enthalpy()",
-    claims: &[],
-    alternatives: &[],
-    run: |cx, call| {
-        let molecule = molecule_of(call);
-        let Some(value) = formation(cx, call)? else {
-            let (molecule, what) = (molecule.text().to_owned(), "formation enthalpy");
-            return Err(MoleculeError::NotGiven { molecule, what }.into());
+/// The card of a formation enthalpy as it was given, for whatever may be given one.
+macro_rules! formation_card {
+    ($id:literal, $on:expr, $what:literal, $example:literal, $run:expr) => {
+        pub static FORMATION_ENTHALPY: Card = Card {
+            id: $id,
+            name: "formation_enthalpy",
+            on: $on,
+            args: &[],
+            gives: concat!("ΔfH°(298.15 K) per mole of the ", $what),
+            doc: "The formation enthalpy that was given, at 298.15 K: as it is, or taken there from 0 K with its own \
+                  H(298.15 K) - H(0) and those of the elements on record.",
+            source: "definition of formation; IUPAC Green Book, 3rd ed., section 2.11 (from memory)",
+            example: $example,
+            claims: &[],
+            alternatives: &[],
+            run: $run,
+            check_line: None,
+            caution: None,
         };
-        Ok(Value::Quantity(value))
-    },
-    check_line: None,
-    caution: None,
-};
+    };
+}
+pub(in crate::model) use formation_card;
 
-/// The formation enthalpy at 298.15 K, made by `call`; `None` where none was given.
+formation_card!(
+    "molecule.formation-enthalpy",
+    On::Molecule,
+    "gas",
+    "molecule(#{ formula: \"Ar\", formation_enthalpy: \"0 kJ/mol\", formation_temperature: \"298.15 K\" }).formation_enthalpy()",
+    |cx, call| match formation(cx, call)? {
+        Some(value) => Ok(Value::Quantity(value)),
+        None => {
+            let (molecule, what) = (molecule_of(call).text().to_owned(), "formation enthalpy");
+            Err(MoleculeError::NotGiven { molecule, what }.into())
+        }
+    }
+);
+
+/// The formation enthalpy of a molecule at 298.15 K, made by `call`; `None` where none was given.
 fn formation(cx: &Cx, call: &Rc<Call>) -> Result<Option<Quantity>, Fault> {
     let molecule = molecule_of(call);
-    let Some(given) = &molecule.definition().formation else { return Ok(None) };
+    let species = &molecule.definition().substance.species;
+    at_298(cx, call, molecule.definition().formation.as_ref(), species, || {
+        let set = cx.constants();
+        let per_rt = set.molar_gas.value * T_REFERENCE;
+        let own = per_rt * (molecule.gas().share(T_REFERENCE, set).u + 1.0);
+        let by = molecule.derivatives(T_REFERENCE).into_iter().map(|(node, change)| (node, per_rt * change.u));
+        Ok((own, by.filter(|(_, by)| *by != 0.0).collect()))
+    })
+}
+
+/// A figure in SI units, and each input with the derivative of the figure with respect to it.
+pub(in crate::model) type WithInputs = (f64, Vec<(Rc<Node>, f64)>);
+
+/// A given formation enthalpy of a species at 298.15 K, made by `call`; `own` is H(298.15 K) − H(0) of the species, asked
+/// where it is needed. `None` where none was given.
+///
+/// # Errors
+/// The figure of an element is not on record, or `own` fails.
+pub(in crate::model) fn at_298(
+    cx: &Cx,
+    call: &Rc<Call>,
+    given: Option<&GivenFormation>,
+    species: &Species,
+    own: impl FnOnce() -> Result<WithInputs, Fault>,
+) -> Result<Option<Quantity>, Fault> {
+    let Some(given) = given else { return Ok(None) };
     let mut si = given.value.si();
     let mut inputs: SmallVec<[(Rc<Node>, f64); 2]> = SmallVec::from_iter([(Rc::clone(given.value.node()), 1.0)]);
     if given.at_zero {
-        let set = cx.constants();
-        let r = set.molar_gas.value;
-        let own = r * T_REFERENCE * (molecule.gas().share(T_REFERENCE, set).u + 1.0);
-        si += own;
-        for (node, change) in molecule.derivatives(T_REFERENCE) {
-            let by = r * T_REFERENCE * change.u;
-            if by != 0.0 {
-                inputs.push((node, by));
-            }
-        }
-        for (leaf, count) in elements(cx, &molecule.definition().substance.species)? {
+        let (increment, by) = own()?;
+        si += increment;
+        inputs.extend(by);
+        for (leaf, count) in elements(cx, species)? {
             si -= count * leaf.si();
             inputs.push((leaf, -count));
         }
@@ -86,7 +118,7 @@ fn formation(cx: &Cx, call: &Rc<Call>) -> Result<Option<Quantity>, Fault> {
         standard: true,
         reaction: false,
     };
-    let dim = property::dimension(Property::H, molecule.entity());
+    let dim = property::dimension(Property::H, species.entity);
     let step = Rc::clone(call);
     Ok(Some(Quantity::from_step(si, dim, Kind::in_state(What::H, state), inputs, step, cx.place.clone())?))
 }
@@ -95,7 +127,7 @@ fn formation(cx: &Cx, call: &Rc<Call>) -> Result<Option<Quantity>, Fault> {
 ///
 /// # Errors
 /// The figure of an element is not on record, or the species is an ion.
-pub(in crate::model) fn elements(cx: &Cx, species: &Species) -> Result<Vec<(Rc<Node>, f64)>, Fault> {
+fn elements(cx: &Cx, species: &Species) -> Result<Vec<(Rc<Node>, f64)>, Fault> {
     if species.charge != 0 {
         return Err(MoleculeError::ElementIncrement { element: "the electron".to_owned() }.into());
     }

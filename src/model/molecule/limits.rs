@@ -64,7 +64,8 @@ pub static MOLECULE_TABLE: Card = Card {
             name: "table",
             takes: Takes::Text,
             default: Default::Required,
-            doc: "a CSV text with the columns property, value, unit, degeneracy, or a JSON text with the keys of `molecule`",
+            doc: "the name of a file beside the notebook, or its text: CSV with the columns property, value, unit, degeneracy, or JSON \
+                  with the keys of `molecule`",
         },
         Arg {
             name: "more",
@@ -75,7 +76,7 @@ pub static MOLECULE_TABLE: Card = Card {
     ],
     gives: "a gas molecule",
     doc: "A molecule from the results of quantum chemistry. Rows of a CSV table have the properties formula, name, molar mass, \
-          wavenumber, rotational constant, symmetry number, point group, multiplicity, energy or scale.",
+          wavenumber, rotational constant, distortion constant, symmetry number, point group, multiplicity, energy or scale.",
     source: "columns of our own",
     example: "molecule_table(\"property,value,unit,degeneracy\\nformula,CO,,\\nrotational constant,57.9,GHz,\\nwavenumber,2143,cm^-1,1\\npoint group,Cinfv,,\")",
     claims: &[],
@@ -183,9 +184,10 @@ pub static EQUIPARTITION_TEMPERATURE: Card = Card {
     caution: None,
 };
 
-/// How far Cp is below its limit, as a share of it, without electrons.
+/// How far Cp is below its limit, as a share of it, without electrons and stretching, which have none.
 fn short_of_limit(molecule: &Molecule, t_k: f64) -> f64 {
-    let parts = || molecule.gas().parts.iter().filter(|part| !matches!(part, Part::Electronic(_)));
+    let parts =
+        || molecule.gas().parts.iter().filter(|part| !matches!(part, Part::Electronic(_) | Part::Stretching { .. }));
     let missing: f64 = parts().map(|part| part.limit() - part.share(t_k).cv).sum();
     missing / molecule.gas().classical_limit()
 }

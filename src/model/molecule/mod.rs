@@ -16,7 +16,9 @@ pub mod power_fit;
 pub mod read;
 pub mod shares;
 pub mod shipped;
+pub mod stretching;
 pub mod table;
+pub mod torsion_levels;
 pub mod treatment;
 
 use std::rc::Rc;
@@ -159,6 +161,10 @@ impl Built {
             }
             Motion::Polyatomic { top, vibrations, torsions } => {
                 self.rotation(top, definition.symmetry_number, treatment.rotation_of(top.len() == 1));
+                if let Some(rho) = definition.distortion.as_ref().filter(|_| treatment.stretched) {
+                    let part = Part::Stretching { rho_per_k: rho.value };
+                    self.add(part, stretching::NAME, vec![rho.clone()]);
+                }
                 for (wavenumber, degeneracy) in vibrations {
                     let scaled = definition.scale.as_ref().map_or_else(|| wavenumber.clone(), |s| wavenumber.times(s));
                     self.vibration(&scaled, *degeneracy, treatment);

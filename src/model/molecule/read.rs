@@ -8,30 +8,29 @@ use std::collections::BTreeMap;
 use std::rc::Rc;
 use std::sync::Arc;
 
-use crate::chem::composition::Composition;
 use crate::chem::formula::Formula;
-use crate::chem::species::{Phase, Species, State};
-use crate::data::pressure::Constants;
+use crate::chem::species::State;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Cx, Value, listed};
 use crate::model::mass;
 use crate::model::molecule::Molecule;
-use crate::model::molecule::definition::{Definition, GivenFormation, GivenTorsion, Motion};
+use crate::model::molecule::definition::{self, Definition, GivenFormation, GivenTorsion, Motion};
 use crate::model::molecule::error::MoleculeError;
 use crate::model::molecule::parameter::Parameter;
 use crate::model::molecule::treatment::{self, Treatment};
-use crate::model::molecule::{point_group, shipped};
+use crate::model::molecule::{point_group, shipped, stretching};
 use crate::model::statmech::diatomic::Spins;
 use crate::quantity::{Quantity, round, text};
-use crate::units::{Entity, Unit, Zero, parse as unit_parse, reader_text};
+use crate::units::{Unit, Zero, parse as unit_parse, reader_text};
 
 /// Everything a molecule may be given, beside the options of its treatment.
-const KEYS: [&str; 20] = [
+const KEYS: [&str; 21] = [
     "formula",
     "name",
     "molar_mass",
     "rotational_constants",
+    "distortion",
     "symmetry_number",
     "point_group",
     "vibrations",
@@ -227,6 +226,7 @@ impl<'a> Reader<'a> {
                     let wanted = match name {
                         "vibration" => "one of \"levels\", \"harmonic\" and \"equipartition\"",
                         "rotation" => "one of \"levels\" and \"classical\"",
+                        "stretching" => "one of \"given\" and \"rigid\"",
                         "torsion" => "one of \"hindered\" and \"free\"",
                         "low_modes" => "one of \"harmonic\", \"truhlar\" and \"grimme\"",
                         _ => "one of \"equilibrium\" and \"frozen\"",
@@ -255,6 +255,7 @@ impl<'a> Reader<'a> {
             }
             other => other,
         };
+        let distortion = stretching::given(&motion, &self.thetas("distortion", Sign::Any)?)?;
         let factor = |key: &str| -> Result<Option<Parameter>, Fault> {
             let Some(value) = self.map.get(key) else { return Ok(None) };
             let quantity = match value {
@@ -287,6 +288,7 @@ impl<'a> Reader<'a> {
             symmetry_number,
             symmetry_given,
             by_group,
+            distortion,
             scale: factor("scale")?,
             scale_zero_point: factor("scale_zero_point")?,
             formation: self.formation()?,
@@ -331,7 +333,8 @@ impl<'a> Reader<'a> {
             return Err(MoleculeError::Missing { key: "formula", example: "formula: \"C3H6O\"" }.into());
         };
         let base = name.as_ref().map_or_else(|| parsed.reference_name(), |_| called);
-        Ok((Arc::new(made_up(&base, parsed.composition(), parsed.charge())), parsed.reference_name()))
+        let made = definition::made_up(&base, parsed.composition(), parsed.charge(), State::Gas);
+        Ok((Arc::new(made), parsed.reference_name()))
     }
 
     fn mass(&self, substance: &Substance) -> Result<Parameter, Fault> {
@@ -574,23 +577,5 @@ fn whole(number: f64) -> Result<f64, MoleculeError> {
         Ok(number)
     } else {
         Err(MoleculeError::SymmetryNumber { value: round::shortest(number) })
-    }
-}
-
-/// A gas that no table knows.
-fn made_up(base: &str, composition: &Composition, charge: i32) -> Substance {
-    Substance {
-        species: Species {
-            id: format!("{base}(g)").into(),
-            entity: Entity::named(base),
-            composition: composition.clone(),
-            charge,
-            phase: Phase::of(State::Gas),
-        },
-        name: None,
-        cas: None,
-        function: None,
-        pressure: Constants::default(),
-        formations: Vec::new(),
     }
 }

@@ -13,7 +13,7 @@
 //! ```
 //!
 //! Each figure names its unit; empty lines and lines that begin with `#` are passed over. The surprise: nothing is read
-//! from a file here, the text comes from whoever has it.
+//! from a file here, the text comes from whoever has it; the script takes a name for a file of the notebook's folder.
 
 use std::collections::BTreeMap;
 use std::rc::Rc;
@@ -90,6 +90,7 @@ fn csv(text: &str) -> Result<BTreeMap<String, Value>, MoleculeError> {
             "scale" => once("scale", Value::Text(value.into()))?,
             "molar mass" => once("molar_mass", figure()?)?,
             "energy" => once("energy", figure()?)?,
+            "distortion constant" => lists.entry("distortion").or_default().push(figure()?),
             "rotational constant" => lists.entry("rotational_constants").or_default().push(figure()?),
             "wavenumber" => {
                 let modes = lists.entry("vibrations").or_default();

@@ -44,6 +44,8 @@ pub struct Treatment {
     pub low: LowAs,
     /// Cut-off or middle of the blend, as a temperature.
     pub cut_off_k: f64,
+    /// Whether rotation stretches the molecule, where distortion constants were given.
+    pub stretched: bool,
     /// Whether the two forms of like nuclei keep the proportion of high temperature.
     pub frozen: bool,
 }
@@ -65,6 +67,7 @@ impl Default for Treatment {
             torsion: TorsionAs::Hindered,
             low: LowAs::Harmonic,
             cut_off_k: theta_of_per_cm(CUT_OFF_PER_CM, constants::current()),
+            stretched: true,
             frozen: false,
         }
     }
@@ -83,6 +86,12 @@ pub const OPTIONS: &[Arg] = &[
         takes: Takes::Word(&["levels", "classical"]),
         default: Given::Absent,
         doc: "sum over levels, or the classical formula",
+    },
+    Arg {
+        name: "stretching",
+        takes: Takes::Word(&["given", "rigid"]),
+        default: Given::Absent,
+        doc: "rotation stretches the molecule by the distortion constants that were given, or it is rigid",
     },
     Arg {
         name: "torsion",
@@ -119,6 +128,8 @@ impl Treatment {
             ("vibration", "equipartition") => self.vibration = VibrationAs::Equipartition,
             ("rotation", "levels") => self.rotation = Some(Sum::Levels),
             ("rotation", "classical") => self.rotation = Some(Sum::Classical),
+            ("stretching", "given") => self.stretched = true,
+            ("stretching", "rigid") => self.stretched = false,
             ("torsion", "hindered") => self.torsion = TorsionAs::Hindered,
             ("torsion", "free") => self.torsion = TorsionAs::Free,
             ("low_modes", "harmonic") => self.low = LowAs::Harmonic,

@@ -15,11 +15,11 @@ use crate::model::answer::Answer;
 use crate::model::card::{Arg, Call, Card, Claim, Cx, Default, On, Takes, Value};
 use crate::model::function::T_REFERENCE;
 use crate::model::gather::{Figure, GatherError};
-use crate::model::molecule::answers::Asked;
+use crate::model::molecule::answers::{AT, Asked, BETWEEN, TEMPERATURE};
 use crate::model::molecule::formation;
 use crate::model::molecule::parameter;
 use crate::model::molecule::shares::{Row, Shares};
-use crate::model::property::{self, Property};
+use crate::model::property;
 use crate::model::solid::error::SolidError;
 use crate::model::solid::{Crystal, Functions, RANGE_K, claims, read};
 use crate::model::thermo::{AtT, Thermo};
@@ -71,7 +71,7 @@ fn start(call: &Call) -> Option<&Quantity> {
 }
 
 /// The answer to a call of a card of this file. The temperatures are inputs where `with_t` says so.
-fn value(cx: &Cx, call: &Rc<Call>, with_t: bool) -> Result<Quantity, Fault> {
+pub(super) fn value(cx: &Cx, call: &Rc<Call>, with_t: bool) -> Result<Quantity, Fault> {
     let crystal = crystal_of(call);
     let asked = Asked::of(call.card).unwrap_or_else(|| unreachable!("{} is no answer of a crystal", call.card.id));
     let (t_k, from_k) = (call.quantity(1).si(), start(call).map_or(T_REFERENCE, Quantity::si));
@@ -166,47 +166,21 @@ impl Thermo for Own {
 /// The formation enthalpy at 298.15 K, made by `call`; `None` where none was given.
 fn given_formation(cx: &Cx, call: &Rc<Call>) -> Result<Option<Quantity>, Fault> {
     let crystal = crystal_of(call);
-    let Some(given) = &crystal.formation else { return Ok(None) };
-    let mut si = given.value.si();
-    let mut inputs: SmallVec<[(Rc<Node>, f64); 2]> = SmallVec::from_iter([(Rc::clone(given.value.node()), 1.0)]);
-    if given.at_zero {
-        let r = cx.constants().molar_gas.value;
-        si += functions(cx, crystal, T_REFERENCE)?.h;
-        inputs.extend(crystal.derivatives(T_REFERENCE, r).into_iter().map(|(node, change)| (node, change.h)));
-        for (leaf, count) in formation::elements(cx, &crystal.substance.species)? {
-            si -= count * leaf.si();
-            inputs.push((leaf, -count));
-        }
-    }
-    let state = State {
-        zero: Some(Zero::Elements298),
-        t_k: Some(T_REFERENCE),
-        p_pa: Some(STANDARD_PRESSURE.value),
-        standard: true,
-        reaction: false,
-    };
-    let dim = property::dimension(Property::H, crystal.entity());
-    let kind = Kind::in_state(What::H, state);
-    let step = Rc::clone(call);
-    Ok(Some(Quantity::from_step(si, dim, kind, inputs, step, cx.place.clone())?))
+    formation::at_298(cx, call, crystal.formation.as_ref(), &crystal.substance.species, || {
+        let own = functions(cx, crystal, T_REFERENCE)?.h;
+        let by = crystal.derivatives(T_REFERENCE, cx.constants().molar_gas.value);
+        Ok((own, by.into_iter().map(|(node, change)| (node, change.h)).collect()))
+    })
 }
 
 const SOURCE: &str = "P. Debye, Ann. Phys. 39, 789 (1912); A. Einstein, Ann. Phys. 22, 180 (1907); W. Nernst, F. A. \
                       Lindemann, Z. Elektrochem. 17, 817 (1911); all from memory";
 
-const TEMPERATURE: Arg =
-    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "temperature: degC, degF or kelvin" };
-const AT: &[Arg] = &[TEMPERATURE];
-const BETWEEN: &[Arg] = &[
-    Arg { name: "T", takes: Takes::Temperature, default: Default::Required, doc: "end temperature" },
-    Arg {
-        name: "from",
-        takes: Takes::Temperature,
-        default: Default::Absent,
-        doc: "start temperature; 298.15 K unless given",
-    },
+const CLAIMS: &[Claim] = &[
+    Claim { id: "debye-model", test: claims::debye_model },
+    Claim { id: "expansion-neglected", test: claims::expansion_neglected },
+    Claim { id: "expansion-estimate", test: claims::expansion_estimate },
 ];
-const CLAIMS: &[Claim] = &[Claim { id: "debye-model", test: claims::debye_model }];
 
 pub static CRYSTAL: Card = Card {
     id: "crystal.read",
@@ -217,7 +191,7 @@ pub static CRYSTAL: Card = Card {
         takes: Takes::Any,
         default: Default::Required,
         doc: "a map with `formula`, `debye` or `einstein` or both, and where known `electronic`, `expansivity`, `compressibility`, \
-              `molar_volume`, `formation_enthalpy`",
+              `molar_volume`, or else `melting_point`, and `formation_enthalpy`",
     }],
     gives: "a crystal",
     doc: "A crystal by its characteristic temperatures, as temperatures or wavenumbers. Several share the modes with a count each, \
@@ -298,25 +272,16 @@ answer_card!(
     "Gibbs energy counted from the enthalpy at 298.15 K: H(T) - H(298.15 K) - T S(T)."
 );
 
-pub static FORMATION_ENTHALPY: Card = Card {
-    id: "crystal.formation-enthalpy",
-    name: "formation_enthalpy",
-    on: On::Crystal,
-    args: &[],
-    gives: "ΔfH°(298.15 K) per mole of the crystal",
-    doc: "The formation enthalpy that was given, at 298.15 K: as it is, or taken there from 0 K with the crystal's own \
-          H(298.15 K) - H(0) and those of the elements on record.",
-    source: "definition of formation; IUPAC Green Book, 3rd ed., section 2.11 (from memory)",
-    example: "crystal(#{ formula: \"NaCl\", debye: \"321 K\", formation_enthalpy: \"-411.3 kJ/mol\", formation_temperature: \"298.15 K\" }).formation_enthalpy()",
-    claims: &[],
-    alternatives: &[],
-    run: |cx, call| match given_formation(cx, call)? {
+formation::formation_card!(
+    "crystal.formation-enthalpy",
+    On::Crystal,
+    "crystal",
+    "crystal(#{ formula: \"NaCl\", debye: \"321 K\", formation_enthalpy: \"-411.3 kJ/mol\", formation_temperature: \"298.15 K\" }).formation_enthalpy()",
+    |cx, call| match given_formation(cx, call)? {
         Some(value) => Ok(Value::Quantity(value)),
         None => Err(SolidError::NoFormation { crystal: crystal_of(call).text().to_owned() }.into()),
-    },
-    check_line: None,
-    caution: None,
-};
+    }
+);
 
 pub static CLASSICAL_LIMIT: Card = Card {
     id: "crystal.classical-limit",
@@ -346,7 +311,7 @@ pub static CONTRIBUTIONS: Card = Card {
     id: "crystal.contributions",
     name: "contributions",
     on: On::Crystal,
-    args: AT,
+    args: &[TEMPERATURE],
     gives: "each part's share of Cp, and how far the lattice is from its classical limit",
     doc: "A table with a picture: Cp of each group of modes, of electrons and of expansion at T, the classical limit of the \
           modes, and S. Parts: `rows`, `T`, `heat_capacity`, `limit`, `temperatures`, `curves`.",

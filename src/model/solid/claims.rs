@@ -1,20 +1,25 @@
-//! Tests of what a computed or estimated heat capacity of a crystal leans on, each against a published function.
+//! Tests of what a computed or estimated heat capacity of a crystal leans on: against a published function, or against the same
+//! crystal with expansion as recorded.
 //!
-//! The surprise: there is no better model to compute, so where a function of the same crystal is shipped, the whole gap to
-//! it is the price, whichever approximation it is of.
+//! The surprise: there is no better model of the lattice to compute, so where a function of the same crystal is shipped, the
+//! whole gap to it is the price of `debye-model`, expansion and all.
 
 use std::rc::Rc;
+use std::sync::Arc;
 
 use crate::data::function::Function;
 use crate::data::substance::Substance;
+use crate::data::transition::{Transition, TransitionKind};
 use crate::model::card::{Call, Cx, Value};
 use crate::model::function;
 use crate::model::molecule::answers::Asked;
-use crate::model::solid::answers::crystal_of;
-use crate::quantity::Quantity;
+use crate::model::molecule::parameter::Parameter;
+use crate::model::solid::Expansion;
+use crate::model::solid::answers::{self, crystal_of};
+use crate::quantity::{Quantity, round};
 use crate::record::node::{Input, LeafKey};
 use crate::record::register::{Finding, Tested};
-use crate::units::Kind;
+use crate::units::{Dimension, Kind, parse as unit_parse};
 
 /// `debye-model`: against the published function of the crystal.
 pub fn debye_model(_: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
@@ -45,6 +50,99 @@ pub fn debye_model(_: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
         },
     };
     vec![Finding::known("debye-model", crystal.text(), value.node(), Some(t_k), tested)]
+}
+
+/// `expansion-neglected`: where Cp was taken to be Cv, against the expansion on record, or the estimate from a melting point
+/// on record.
+pub fn expansion_neglected(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
+    let crystal = crystal_of(call);
+    if crystal.expansion.is_some() || Asked::of(call.card) == Some(Asked::Cv) {
+        return Vec::new();
+    }
+    let better = recorded_expansion(&crystal.substance).or_else(|| recorded_melting(cx, &crystal.substance));
+    let tested = match better {
+        Some((expansion, how)) => expanding(cx, call, expansion, how),
+        None => Tested::Missing {
+            what: format!(
+                "neither expansivity, compressibility and molar volume of {0} are known nor its melting point",
+                crystal.text()
+            ),
+        },
+    };
+    found(call, "expansion-neglected", value, tested)
+}
+
+/// `expansion-estimate`: where Cp − Cv was estimated from the melting point, against the expansion on record.
+pub fn expansion_estimate(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
+    let crystal = crystal_of(call);
+    if !matches!(crystal.expansion, Some(Expansion::Melting(_))) || Asked::of(call.card) == Some(Asked::Cv) {
+        return Vec::new();
+    }
+    let tested = match recorded_expansion(&crystal.substance) {
+        Some((expansion, how)) => expanding(cx, call, expansion, how),
+        None => Tested::Missing {
+            what: format!("expansivity, compressibility and molar volume of {} are not known", crystal.text()),
+        },
+    };
+    found(call, "expansion-estimate", value, tested)
+}
+
+fn found(call: &Call, id: &'static str, value: &Quantity, tested: Tested) -> Vec<Finding> {
+    vec![Finding::known(id, crystal_of(call).text(), value.node(), Some(call.quantity(1).si()), tested)]
+}
+
+/// The same call of the crystal expanding otherwise.
+fn expanding(cx: &Cx, call: &Call, expansion: Expansion, how: String) -> Tested {
+    let mut args = call.args.clone();
+    args[0] = Value::Crystal(Rc::new(crystal_of(call).expanding(Some(expansion))));
+    match answers::value(cx, &Rc::new(Call { card: call.card, args }), true) {
+        Ok(value) => Tested::Better { value: Rc::clone(value.node()), how },
+        Err(fault) => Tested::Missing { what: fault.message().to_owned() },
+    }
+}
+
+fn recorded_expansion(substance: &Substance) -> Option<(Expansion, String)> {
+    let volume = substance.pressure.volume.as_deref()?;
+    let parameter = |name: &str, field: &'static str, si: f64, dim: Dimension| -> Option<Parameter> {
+        let key = LeafKey::Datum {
+            dataset: "pressure-constants".into(),
+            record: volume.id.clone(),
+            field,
+            t_bits: 0,
+            way: "",
+        };
+        let input = Input { citation: Some(volume.citation.clone()), ..Input::of(key) };
+        Some(Parameter::of(name, &Quantity::input(si, dim, Kind::PLAIN, input, None).ok()?))
+    };
+    let (per_k, per_pa) = (unit_parse::unit("K^-1").ok()?.dim, unit_parse::unit("Pa^-1").ok()?.dim);
+    let alpha = parameter("expansivity", "expansivity", volume.alpha, per_k)?;
+    let kappa = parameter("compressibility", "compressibility", volume.kappa, per_pa)?;
+    let v0 = parameter("molar volume", "molar volume", volume.v0, unit_parse::unit("m^3/mol").ok()?.dim)?;
+    let how =
+        format!("expansivity, compressibility and molar volume of {} ({})", substance.id(), volume.citation.source);
+    Some((Expansion::Measured { alpha, kappa, volume: v0, at_k: volume.t0_k }, how))
+}
+
+fn recorded_melting(cx: &Cx, substance: &Substance) -> Option<(Expansion, String)> {
+    let melts = |transition: &&Arc<Transition>| {
+        transition.kind == TransitionKind::Fusion && *transition.from == *substance.id()
+    };
+    let transition = cx.data().transitions_of(substance).iter().find(melts)?;
+    let key = LeafKey::Datum {
+        dataset: "transitions".into(),
+        record: substance.species.id.clone(),
+        field: "melting point",
+        t_bits: transition.t_k.to_bits(),
+        way: "",
+    };
+    let input = Input { citation: Some(transition.citation.clone()), ..Input::of(key) };
+    let point = Quantity::input(transition.t_k, unit_parse::unit("K").ok()?.dim, Kind::PLAIN, input, None).ok()?;
+    let how = format!(
+        "Cp - Cv as Nernst and Lindemann estimate it from the melting point, {} K ({})",
+        round::shortest(transition.t_k),
+        transition.citation.source
+    );
+    Some((Expansion::Melting(Parameter::of("melting point", &point)), how))
 }
 
 /// `additive-estimate`: against the published heat capacity of the crystal at 298.15 K.

@@ -24,6 +24,8 @@ pub enum SolidError {
         "`{given}` is given without its fellows: expansion needs `expansivity`, `compressibility` and `molar_volume`"
     )]
     Expansion { given: &'static str },
+    #[error("Cp - Cv would follow from `melting_point` and from `expansivity`, and the two differ")]
+    ExpansionTwice,
     #[error("the expansion given for {crystal} is too large to be carried to {t_k} K: 4 A T Cv passes 1")]
     ExpansionTooLarge { crystal: String, t_k: f64 },
     #[error(
@@ -45,6 +47,7 @@ impl Explain for SolidError {
             SolidError::ModeCount { .. } => "crystal-mode-count",
             SolidError::NoCrystal { .. } => "phase-is-no-crystal",
             SolidError::Expansion { .. } => "expansion-incomplete",
+            SolidError::ExpansionTwice => "expansion-twice",
             SolidError::ExpansionTooLarge { .. } => "expansion-too-large",
             SolidError::NoTemperature { .. } => "characteristic-temperature-not-found",
             SolidError::NoFormation { .. } => "crystal-formation-not-given",
@@ -65,7 +68,11 @@ impl Explain for SolidError {
             }
             SolidError::NoCrystal { .. } => "write (cr), or a crystal form as in (cr,graphite)".to_owned(),
             SolidError::Expansion { .. } => {
-                "give all three: Cp - Cv = T V α²/κ; or none, and Cp is taken to be Cv".to_owned()
+                "give all three: Cp - Cv = T V α²/κ; or `melting_point` alone for an estimate; or none, and Cp is taken to be Cv"
+                    .to_owned()
+            }
+            SolidError::ExpansionTwice => {
+                "leave out `melting_point`, whose estimate serves where nothing was measured".to_owned()
             }
             SolidError::ExpansionTooLarge { .. } => {
                 "ask below that temperature, or leave the expansion out and add Cp - Cv by yourself".to_owned()

@@ -1,6 +1,7 @@
 //! A crystal by its characteristic temperatures: lattice waves after Debye and Einstein, electrons, thermal expansion.
 //!
-//! Cv = R Σ n d(θ/T) + γT     Cp = Cv + A T Cp²     A = V α²/(κ Cp²) at the temperature where α and κ were measured
+//! Cv = R Σ n d(θ/T) + γT     Cp = Cv + A T Cp²     A = V α²/(κ Cp²) at the temperature where α and κ were measured,
+//! or, where they are not known, A = A₀/(N Tm)
 //! H(T) − H(0) = ∫₀ᵀ Cp dT     S(T) = ∫₀ᵀ Cp/T dT
 //!
 //! | symbol | unit         | meaning                                                                    |
@@ -9,6 +10,8 @@
 //! | d      | 1            | Debye's or Einstein's function of one mode (`statmech::debye`, `vibration`) |
 //! | γ      | J/(mol K²)   | coefficient of the heat capacity of conduction electrons                   |
 //! | A      | mol/J        | the relation of Nernst and Lindemann, which lets Cp − Cv die out when cold  |
+//! | A₀     | K mol/J      | 0.0214 K mol/cal per mole of atoms, their own estimate for all crystals    |
+//! | N, Tm  | 1, K         | atoms of the formula unit, melting point                                   |
 //! | V      | m³/mol       | molar volume                                                               |
 //! | α, κ   | 1/K, 1/Pa    | cubic expansivity and isothermal compressibility                           |
 //!
@@ -73,18 +76,35 @@ pub struct Modes {
     pub count: f64,
 }
 
-/// Thermal expansion at one temperature.
+/// What tells Cp − Cv.
 #[derive(Clone)]
-pub struct Expansion {
-    /// 1/K
-    pub alpha: Parameter,
-    /// 1/Pa
-    pub kappa: Parameter,
-    /// m³/mol
-    pub volume: Parameter,
-    /// Where they were measured, K.
-    pub at_k: f64,
+pub enum Expansion {
+    /// Thermal expansion as measured at one temperature.
+    Measured {
+        /// 1/K
+        alpha: Parameter,
+        /// 1/Pa
+        kappa: Parameter,
+        /// m³/mol
+        volume: Parameter,
+        /// Where they were measured, K.
+        at_k: f64,
+    },
+    /// The melting point in K, from which Nernst and Lindemann estimate it.
+    Melting(Parameter),
 }
+
+impl Expansion {
+    fn parameters(&self) -> Vec<&Parameter> {
+        match self {
+            Expansion::Measured { alpha, kappa, volume, .. } => vec![alpha, kappa, volume],
+            Expansion::Melting(melting) => vec![melting],
+        }
+    }
+}
+
+/// A₀ of Nernst and Lindemann, 0.0214 K mol/cal, in K mol/J per mole of atoms.
+const MELTING_FACTOR: f64 = 0.0214 / 4.184;
 
 /// A crystal.
 pub struct Crystal {
@@ -127,7 +147,7 @@ impl Functions {
     }
 }
 
-/// The values of all parameters: θ of each group of modes, γ, α, κ, V.
+/// The values of all parameters: θ of each group of modes, γ, and α, κ, V or the melting point.
 type Numbers = Vec<f64>;
 
 impl Crystal {
@@ -145,6 +165,13 @@ impl Crystal {
 
     pub(super) fn made_by(&mut self, call: &Rc<Call>) {
         self.terms.made_by(call);
+    }
+
+    /// The same crystal, expanding otherwise.
+    #[must_use]
+    pub fn expanding(&self, expansion: Option<Expansion>) -> Crystal {
+        let (substance, modes) = (Arc::clone(&self.substance), self.modes.clone());
+        Crystal::new(substance, modes, self.gamma.clone(), expansion, self.formation.clone())
     }
 
     /// The crystal as a sum of species, for conditions and headings.
@@ -166,7 +193,7 @@ impl Crystal {
     }
 
     fn parameters(&self) -> Vec<&Parameter> {
-        let expansion = self.expansion.iter().flat_map(|e| [&e.alpha, &e.kappa, &e.volume]);
+        let expansion = self.expansion.iter().flat_map(Expansion::parameters);
         self.modes.iter().map(|modes| &modes.theta).chain(&self.gamma).chain(expansion).collect()
     }
 
@@ -189,7 +216,10 @@ impl Crystal {
 
     /// A of the relation of Nernst and Lindemann, mol/J.
     fn expansion_factor(&self, numbers: &Numbers, r: f64) -> Option<f64> {
-        let at_k = self.expansion.as_ref()?.at_k;
+        let at_k = match self.expansion.as_ref()? {
+            Expansion::Melting(_) => return Some(MELTING_FACTOR / (self.atoms() * numbers.last()?)),
+            Expansion::Measured { at_k, .. } => *at_k,
+        };
         let [.., alpha, kappa, volume] = numbers[..] else { return None };
         let gap = at_k * volume * alpha * alpha / kappa;
         let cp = self.at_constant_volume(numbers, at_k, r).cv + gap;
@@ -359,6 +389,26 @@ mod tests {
             let at = copper.functions(1.0, R);
             // Bound: expansion adds a part in 1e7 of Cp there.
             assert!((at.cv / (lattice + 0.695e-3) - 1.0).abs() < 1e-12 && (at.cp / at.cv - 1.0).abs() < 1e-6);
+        });
+    }
+
+    #[test]
+    fn the_melting_point_tells_about_what_expansion_does() {
+        // Copper melts at 1357.77 K (ITS-90). By hand: A₀ T Cp²/Tm = 0.005115 · 298.15 · Cp²/1357.77 with the Cp that solves it.
+        let melting = [COPPER[0], COPPER[1], COPPER[2], ("melting_point", "1357.77 K")];
+        with_crystal(&melting, |copper| {
+            let at = copper.functions(298.15, R);
+            let gap = 0.0214 / 4.184 * 298.15 * at.cp * at.cp / 1357.77;
+            assert!((at.cp - at.cv - gap).abs() < 1e-12, "{}", at.cp - at.cv);
+            // The measured expansion brings 0.711; the estimate is good to some ten per cent of it (common practice, no source).
+            assert!((gap - 0.711).abs() < 0.1, "{gap}");
+        });
+        // Per mole of atoms: a salt of two has the half of A and twice the Cp, so twice the difference at the same θ and Tm.
+        with_crystal(&[("formula", "NaCl"), ("debye", "321 K"), ("melting_point", "1074 K")], |salt| {
+            with_crystal(&[("formula", "Cu"), ("debye", "321 K"), ("melting_point", "1074 K")], |metal| {
+                let (salt, metal) = (salt.functions(900.0, R), metal.functions(900.0, R));
+                assert!((salt.cp / (2.0 * metal.cp) - 1.0).abs() < 1e-14);
+            });
         });
     }
 

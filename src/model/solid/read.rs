@@ -7,19 +7,19 @@ use std::collections::BTreeMap;
 use std::sync::Arc;
 
 use crate::chem::formula::Formula;
-use crate::chem::species::{Phase, Species, State};
-use crate::data::pressure::Constants;
+use crate::chem::species::State;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
 use crate::model::card::{Cx, Value, listed};
+use crate::model::molecule::definition::made_up;
 use crate::model::molecule::parameter::Parameter;
 use crate::model::molecule::read as molecule_read;
 use crate::model::solid::error::SolidError;
 use crate::model::solid::{Crystal, Expansion, Modes, RANGE_K, Spectrum};
 use crate::quantity::{Quantity, round, text};
-use crate::units::{Entity, parse as unit_parse, reader_text};
+use crate::units::{parse as unit_parse, reader_text};
 
-const KEYS: [&str; 11] = [
+const KEYS: [&str; 12] = [
     "formula",
     "name",
     "debye",
@@ -29,6 +29,7 @@ const KEYS: [&str; 11] = [
     "compressibility",
     "molar_volume",
     "expansion_temperature",
+    "melting_point",
     "formation_enthalpy",
     "formation_temperature",
 ];
@@ -94,20 +95,7 @@ impl Reader<'_> {
             Some(name) => name.split_once("(cr").map_or(name.as_str(), |(bare, _)| bare).to_owned(),
             None => parsed.reference_name(),
         };
-        Ok(Arc::new(Substance {
-            species: Species {
-                id: format!("{base}(cr)").into(),
-                entity: Entity::named(&base),
-                composition: parsed.composition().clone(),
-                charge: parsed.charge(),
-                phase: Phase::of(State::Crystal),
-            },
-            name: None,
-            cas: None,
-            function: None,
-            pressure: Constants::default(),
-            formations: Vec::new(),
-        }))
+        Ok(Arc::new(made_up(&base, parsed.composition(), parsed.charge(), State::Crystal)))
     }
 
     fn modes(&self, substance: &Substance) -> Result<Vec<Modes>, Fault> {
@@ -214,9 +202,11 @@ impl Reader<'_> {
             let value = format!("{} K", round::shortest(at_k));
             return Err(SolidError::NotPositive { key: "expansion_temperature".to_owned(), value }.into());
         }
+        let melting = self.positive("melting_point", "K", "`\"1357.77 K\"`")?;
         match (alpha, kappa, volume) {
-            (Some(alpha), Some(kappa), Some(volume)) => Ok(Some(Expansion { alpha, kappa, volume, at_k })),
-            (None, None, None) => Ok(None),
+            (Some(_), Some(_), Some(_)) if melting.is_some() => Err(SolidError::ExpansionTwice.into()),
+            (Some(alpha), Some(kappa), Some(volume)) => Ok(Some(Expansion::Measured { alpha, kappa, volume, at_k })),
+            (None, None, None) => Ok(melting.map(Expansion::Melting)),
             (alpha, kappa, _) => {
                 let given = match (alpha, kappa) {
                     (Some(_), _) => "expansivity",

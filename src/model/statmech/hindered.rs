@@ -45,6 +45,8 @@ pub struct Torsion {
 const HOTTEST_K: f64 = 6000.0;
 /// Plane waves beyond those that the potential reaches.
 const MARGIN: usize = 16;
+/// Waves that are solved beyond those whose levels are kept, at least.
+const EDGE: usize = 12;
 /// The most waves; a rotor that wants more is a classical one.
 const MOST_WAVES: usize = 4000;
 
@@ -102,9 +104,12 @@ impl Potential {
     /// Energies with derivatives, in kelvin from the zero of V, not sorted.
     fn solved(&self) -> Vec<(f64, Vec<f64>)> {
         let period = self.period();
-        let solved =
-            if period == 0 { 0 } else { math::sqrt(4.0 * self.span() / self.f_k) as usize + MARGIN + self.orders() };
-        let solved = solved.min(MOST_WAVES);
+        let stiffness = math::sqrt(self.span() / self.f_k);
+        let kept = if period == 0 { 0 } else { (2.0 * stiffness) as usize + MARGIN + self.orders() };
+        let kept = kept.min(MOST_WAVES);
+        // The highest levels of a block lack what lies beyond it: n waves further in, a level is off by the product of
+        // (V/4)/(2mFj) for j up to n, squared, which is below rounding from here on. So these are solved and left out.
+        let solved = kept + if period == 0 { 0 } else { EDGE + (0.2 * stiffness) as usize + 4 * self.orders() };
         let mut all = Vec::new();
         if period > 0 {
             // Waves m of one block: m or −m leaves the same remainder by the period.
@@ -115,11 +120,15 @@ impl Potential {
                         rest == class || (period - rest) % period == class
                     })
                     .collect();
-                all.extend(self.block(&waves));
+                let within = waves.iter().map(|m| if *m as usize > kept { 0 } else { 1 + usize::from(*m > 0) }).sum();
+                let mut block = self.block(&waves);
+                block.sort_by(|a, b| a.0.total_cmp(&b.0));
+                block.truncate(within);
+                all.extend(block);
             }
         }
         let reach = REACH * HOTTEST_K + self.span();
-        let first = if period == 0 { 0 } else { solved + 1 };
+        let first = if period == 0 { 0 } else { kept + 1 };
         for m in first..=MOST_WAVES {
             let m = m as f64;
             if self.f_k * m * m > reach {
@@ -243,6 +252,11 @@ impl Torsion {
     /// Energies in kelvin from the lowest level.
     pub fn levels(&self) -> &[Level] {
         &self.levels
+    }
+
+    /// Derivatives of each level with respect to F, each Vₖ and each Wₖ.
+    pub fn slopes(&self) -> &[Vec<f64>] {
+        &self.slopes
     }
 
     pub fn share(&self, t_k: f64) -> Share {
@@ -376,6 +390,22 @@ mod tests {
             let got = energies(&Potential::barrier(*f, 1, *v1), published.len());
             for (got, want) in got.iter().zip(*published) {
                 assert!((got - want).abs() < 1e-8 * want.abs().max(1.0), "F = {f}, V1 = {v1}: {got} {want}");
+            }
+        }
+    }
+
+    #[test]
+    fn levels_at_the_edge_of_what_is_solved_are_those_of_a_larger_matrix() {
+        for (f, v) in [(7.2, 72.0), (15.4, 1473.0), (5.0, 2000.0)] {
+            let potential = Potential::barrier(f, 1, v);
+            let kept = energies(&potential, 2 * (2.0 * math::sqrt(v / f)) as usize + 40);
+            let mut larger = potential.block(&(0..100).collect::<Vec<i64>>());
+            larger.sort_by(|a, b| a.0.total_cmp(&b.0));
+            for (nth, (got, (want, _))) in kept.iter().zip(&larger).enumerate() {
+                // Bound: fourth order of the perturbation that takes over, 5q⁴F/(128 r⁶) with q = V/F and r = 2m near 4√q.
+                let fourth =
+                    5.0 / 128.0 * v * (v / f) * (v / f) * (v / f) / f64::powi(4.0 * math::sqrt(v / f) + 32.0, 6);
+                assert!((got - want).abs() < 1e-9 * want + 2.0 * fourth, "F = {f}, V = {v}, level {nth}: {got} {want}");
             }
         }
     }

@@ -82,7 +82,7 @@ impl PowerFit {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::model::statmech::vibration;
+    use crate::num::oscillator;
 
     #[test]
     fn a_sum_of_powers_is_found_again() {
@@ -97,11 +97,11 @@ mod tests {
 
     #[test]
     fn the_error_of_an_oscillator_is_found_where_it_is() {
-        let cps = |all: &[f64]| all.iter().map(|t| vibration::oscillator_cv(1500.0 / t)).collect::<Vec<f64>>();
+        let cps = |all: &[f64]| all.iter().map(|t| oscillator::cv(1500.0 / t)).collect::<Vec<f64>>();
         let rough = fit(&[0, 1], 300.0, 1500.0, cps).unwrap();
         let fine = fit(&[-2, -1, 0, 1, 2, 3, 4], 300.0, 1500.0, cps).unwrap();
         assert!(fine.worst.abs() < 1e-2 * rough.worst.abs(), "{} {}", rough.worst, fine.worst);
-        let off = rough.cp(rough.worst_at_k) - vibration::oscillator_cv(1500.0 / rough.worst_at_k);
+        let off = rough.cp(rough.worst_at_k) - oscillator::cv(1500.0 / rough.worst_at_k);
         assert_eq!(off, rough.worst);
         assert!(fit(&[1, 1], 300.0, 1500.0, cps).is_none(), "one power twice");
     }

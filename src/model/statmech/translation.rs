@@ -17,6 +17,9 @@ use crate::model::statmech::{Change, Share};
 use crate::num::math;
 use crate::units::constants::{ConstantSet, STANDARD_PRESSURE};
 
+/// Cv/R
+pub const CV: f64 = 1.5;
+
 /// The share of translation at `t_k` and p°, for a molar mass in kg/mol.
 pub fn share(molar_mass_kg_mol: f64, t_k: f64, constants: &ConstantSet) -> Share {
     let (k, h) = (constants.boltzmann.value, constants.planck.value);
@@ -25,7 +28,7 @@ pub fn share(molar_mass_kg_mol: f64, t_k: f64, constants: &ConstantSet) -> Share
     // Wavelengths first: the cube of h is out of the range in which doubles are exact to the last digit.
     let per_metre = math::sqrt(2.0 * PI * mass_kg * kt) / h;
     let s = 2.5 + 3.0 * math::ln(per_metre) + math::ln(kt / STANDARD_PRESSURE.value);
-    Share { cv: 1.5, u: 1.5, s, bend: 0.0 }
+    Share { cv: CV, u: 1.5, s, bend: 0.0 }
 }
 
 /// Derivative with respect to the molar mass, per kg/mol.
