@@ -185,3 +185,53 @@ fn an_endless_loop_ends_on_an_interrupt_with_a_message() {
         assert!(said.contains("interrupted") && said.contains("try:"), "{said}");
     }
 }
+
+#[test]
+fn a_revised_table_tells_what_it_would_move_in_an_archive() {
+    let folder = Folder::new();
+    let table = include_str!("../stdlib/data/atct-1.112.json");
+    assert!(table.contains("\"-393.474\""));
+    let old = folder.file("old.json", table);
+    // The formation enthalpy of CO2(g), 0.500 kJ/mol lower.
+    let new = folder.file("new.json", &table.replace("\"-393.474\"", "\"-393.974\""));
+    std::fs::create_dir(folder.0.path().join("archive")).unwrap();
+    let notebook = |name: &str, source: &str| {
+        let cell = serde_json::json!({"cell_type": "code", "id": "a", "metadata": {}, "execution_count": null,
+            "outputs": [], "source": source});
+        let tree = serde_json::json!({"cells": [cell], "metadata": {}, "nbformat": 4, "nbformat_minor": 5});
+        folder.file(&format!("archive/{name}.ipynb"), &tree.to_string());
+    };
+    notebook("shift", &format!("report(\"shift\", {SHIFT}.enthalpy(\"450 degC\")); report(\"own\", q(\"1.0(1) kJ\"))"));
+    notebook("water", "report(\"water\", reaction(\"H2(g) + 0.5 O2(g) -> H2O(g)\").enthalpy(\"450 degC\"))");
+    let [old, new] = [&old, &new].map(|path| path.to_str().unwrap());
+    let archive = folder.0.path().join("archive");
+    let compared = hessbook(&["data", "compare", old, new, "--archive", archive.to_str().unwrap()]);
+    let said = String::from_utf8(compared.stdout).unwrap();
+    // ν(CO2) = +1.
+    for part in [
+        "formation properties of CO2(g) in atct-1.112",
+        "move  -0.500 kJ/mol",
+        "water.ipynb: no value would change",
+        "1 of 3 reported values would change",
+    ] {
+        assert!(said.contains(part), "{part} is not in\n{said}");
+    }
+    assert_eq!(compared.status.code(), Some(1));
+    let same = hessbook(&["data", "compare", old, old, "--archive", archive.to_str().unwrap()]);
+    assert!(String::from_utf8(same.stdout).unwrap().ends_with("0 of 3 reported values would change\n"));
+    assert_eq!(same.status.code(), Some(0));
+}
+
+#[test]
+fn what_is_explained_goes_to_standard_output_and_what_is_unknown_is_refused() {
+    let folder = Folder::new();
+    folder.file("method.rhai", "// Heat taken up.\nfn duty(n, dh) {\n    n * dh\n}\n");
+    let place = folder.0.path().to_str().unwrap();
+    let told = hessbook(&["explain", "method::duty", "--in", place]);
+    assert_eq!(told.status.code(), Some(0));
+    assert!(String::from_utf8(told.stdout).unwrap().starts_with("method::duty(n, dh)\n  method.rhai, line 2\n"));
+    let refused = hessbook(&["explain", "method::dutty", "--in", place]);
+    assert_eq!(refused.status.code(), Some(2));
+    assert!(refused.stdout.is_empty());
+    assert!(String::from_utf8(refused.stderr).unwrap().contains("did you mean method::duty?"));
+}

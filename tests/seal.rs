@@ -5,6 +5,8 @@
 
 #[path = "seal/edits.rs"]
 mod edits;
+#[path = "seal/sources.rs"]
+mod sources;
 #[path = "seal/workshop.rs"]
 mod workshop;
 
@@ -34,7 +36,8 @@ fn shipped_notebooks() -> Vec<PathBuf> {
 #[test]
 fn the_shipped_notebooks_are_sealed_and_identical() {
     for path in shipped_notebooks() {
-        let audit = audit_one(&path, &AuditOptions { strict_data: true, ..AuditOptions::default() });
+        let options = AuditOptions { strict_data: true, from_sources: true, ..AuditOptions::default() };
+        let audit = audit_one(&path, &options);
         let text = audit_text::notebook(&audit);
         assert_eq!(audit.against, Against::Seal, "{text}");
         assert_eq!(audit.status, AuditStatus::Same, "{text}");
@@ -42,6 +45,10 @@ fn the_shipped_notebooks_are_sealed_and_identical() {
         for value in &audit.values {
             assert_eq!(value.under_sealed.verdict, Verdict::Identical, "{text}");
             assert_eq!(value.under_today.verdict, Verdict::Identical, "{text}");
+        }
+        // Without the cells too, each value and each of its steps.
+        for one in audit.from_sources.iter().flatten() {
+            assert!(one.same && one.u_same == Some(true) && one.not_rederived.is_empty(), "{one:#?}");
         }
         let seal = audit.seal.unwrap();
         assert!(seal.whole && !seal.draft, "{text}");
@@ -198,6 +205,13 @@ fn another_constant_set_moves_what_rests_on_its_measured_constants() {
     for value in &audit.values {
         assert_eq!(value.under_today.verdict, Verdict::Identical, "{value:#?}");
     }
+    assert!(!audit.not_compared.iter().any(|what| what.starts_with("the size of")), "{:?}", audit.not_compared);
+    // A hartree has one size in every run, and the audit says that it says nothing of another.
+    let workshop = Workshop::sealed(&["report(\"energy\", q(\"0.5 E_h\").per_mole());"]);
+    let older = Holdings::shipped().with_constants(constants::set(2018).unwrap());
+    let audit = workshop.audit(&AuditOptions { today: older, ..AuditOptions::default() });
+    assert_eq!(value(&audit, "energy").under_today.verdict, Verdict::Identical);
+    assert!(audit.not_compared.iter().any(|what| what.starts_with("the size of E_h")), "{:?}", audit.not_compared);
     // A set whose R is the one of CODATA 1986, 8.314510(70) J/(mol K), as NASA/TP-2002-211556 takes it.
     let altered = constants::current().with(&[("molar gas constant", 8.314_510, 0.000_070)]);
     let workshop = Workshop::sealed(&["let m = reaction(\"CO(g) + 3 H2(g) -> CH4(g) + H2O(g)\");\n\

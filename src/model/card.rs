@@ -19,6 +19,7 @@ use crate::model::caution::Caution;
 use crate::model::curve::Curve;
 use crate::model::grid::Grid;
 use crate::model::molecule::Molecule;
+use crate::model::origin;
 use crate::model::plant::stream::Stream;
 use crate::model::reaction::Reaction;
 use crate::model::solid::Crystal;
@@ -490,7 +491,12 @@ pub fn call(cx: &Cx, card: &'static Card, given: Vec<Value>) -> Result<Value, Fa
         .zip(&args[receivers..])
         .any(|pair| matches!(pair, (Arg { takes: Takes::Temperatures, .. }, Value::Grid(_))));
     let call = Rc::new(Call { card, args });
-    if at_a_grid { Ok(Value::Curve(Rc::new(Curve::of_call(cx, call)?))) } else { (card.run)(cx, &call) }
+    if at_a_grid {
+        return Ok(Value::Curve(Rc::new(Curve::of_call(cx, call)?)));
+    }
+    let mut given = (card.run)(cx, &call)?;
+    origin::remember(&mut given, &call);
+    Ok(given)
 }
 
 /// "`a`, `b` and `c`".

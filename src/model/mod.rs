@@ -34,6 +34,7 @@ pub mod linearity;
 pub mod mass;
 pub mod molecule;
 pub mod monte_carlo;
+pub mod origin;
 pub mod path;
 pub mod plant;
 pub mod pressure;

@@ -13,7 +13,7 @@ use crate::chem::equation::Equation;
 use crate::data::catalog::Catalog;
 use crate::data::substance::Substance;
 use crate::fault::Fault;
-use crate::model::card::{Arg, Card, Cx, Default, On, Takes, Value};
+use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
 use crate::model::fit_card;
 use crate::model::molecule::error::MoleculeError;
 use crate::model::molecule::formation::Own;
@@ -88,6 +88,10 @@ impl Reaction {
         let kept = self.own.iter().filter(|(_, stand)| stand.substance.id() != id);
         let kept = kept.map(|(_, stand)| (stand.substance.id().to_owned(), stand.clone())).collect();
         Reaction::read_with(&format!("{} -> {}", side(false), side(true)), data, kept)
+    }
+
+    pub(super) fn made_by(&mut self, call: &Rc<Call>) {
+        self.terms.made_by(call);
     }
 
     /// The same reaction with other figures for some of its terms.

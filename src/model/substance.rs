@@ -48,6 +48,10 @@ impl PureSubstance {
         PureSubstance { onward, ..PureSubstance::new(substance) }
     }
 
+    pub(super) fn made_by(&mut self, call: &Rc<Call>) {
+        self.terms.made_by(call);
+    }
+
     /// The phases that are inserted on heating, each with the temperature it begins at.
     pub fn onward(&self) -> &[(f64, Phase)] {
         &self.onward

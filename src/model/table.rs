@@ -33,6 +33,8 @@ pub struct Table {
     columns: Vec<Rc<Column>>,
     /// The remarks, without their marks.
     pub remarks: Vec<String>,
+    /// The source that was given when it was read; else its remarks name it.
+    pub source: Option<Rc<str>>,
 }
 
 /// Figures of one unit.
@@ -246,6 +248,7 @@ impl Table {
             name: file.into(),
             columns,
             remarks,
+            source: source.map(Rc::from),
         })
     }
 

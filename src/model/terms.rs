@@ -7,6 +7,8 @@ use std::rc::Rc;
 use std::sync::Arc;
 
 use crate::data::substance::Substance;
+use crate::model::card::Call;
+use crate::model::origin::Origin;
 use crate::model::thermo::Thermo;
 use crate::units::Entity;
 
@@ -39,11 +41,21 @@ pub struct Terms {
     terms: Vec<Term>,
     per: Entity,
     text: String,
+    origin: Option<Origin>,
 }
 
 impl Terms {
     pub fn new(terms: Vec<Term>, per: Entity, text: String) -> Self {
-        Terms { terms, per, text }
+        Terms { terms, per, text, origin: None }
+    }
+
+    /// The call that made this, where it is known.
+    pub fn origin(&self) -> Option<&Origin> {
+        self.origin.as_ref()
+    }
+
+    pub(super) fn made_by(&mut self, call: &Rc<Call>) {
+        self.origin = Origin::of(call);
     }
 
     pub fn terms(&self) -> &[Term] {

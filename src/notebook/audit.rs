@@ -15,6 +15,7 @@ use crate::notebook::causes::{Exchanged, Grounds, exchanged};
 use crate::notebook::comparison::{Compared, compare};
 use crate::notebook::edits::{Edit, edits, exchanged_edits};
 use crate::notebook::file::{NotebookFile, bytes_of};
+use crate::notebook::fixed_units;
 use crate::notebook::holdings::{Holdings, constants_of, files_of, records_of};
 use crate::notebook::rederive::rederive;
 use crate::notebook::run::{FaultRecord, Source};
@@ -180,7 +181,13 @@ pub(super) fn of_sealed(
         environment: environment(&edits, seal, &options.today),
         justifications: justifications(seal, &under_sealed, under_today),
         untested: untested(seal),
-        not_compared: not_compared(notebook, Some(seal)),
+        not_compared: {
+            let texts = seal.cells.iter().map(|cell| cell.source.as_str());
+            let texts = texts.chain(seal.modules.iter().map(|module| module.content.as_str()));
+            let mut list = not_compared(notebook, Some(seal));
+            list.extend(fixed_units::said(texts, [then.holdings.constants, options.today.constants]));
+            list
+        },
         values,
         faults,
         from_sources: options.from_sources.then(|| rederive(seal, &then.holdings)).transpose()?,

@@ -7,6 +7,7 @@ pub mod comparison;
 pub mod data_change;
 pub mod edits;
 pub mod file;
+pub mod fixed_units;
 pub mod holdings;
 pub mod parting;
 pub mod rederive;

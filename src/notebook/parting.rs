@@ -104,7 +104,8 @@ fn same_input(a: &SealedInput, b: &SealedInput) -> bool {
 
 fn same_argument(a: &Argument, b: &Argument) -> bool {
     match (a, b) {
-        (Argument::Step(_), Argument::Step(_)) => true,
+        // What a thing is made of stands in the inputs of the step that took it.
+        (Argument::Step(_), Argument::Step(_)) | (Argument::Object { .. }, Argument::Object { .. }) => true,
         (Argument::List(a), Argument::List(b)) => {
             a.len() == b.len() && a.iter().zip(b).all(|(a, b)| same_argument(a, b))
         }
@@ -168,6 +169,7 @@ pub fn argument_words(argument: &Argument) -> Option<String> {
         Argument::Number(text) | Argument::Text(text) | Argument::Reaction(text) | Argument::Substance(text) => {
             Some(text.clone())
         }
+        Argument::Object { words, .. } => Some(words.clone()),
         Argument::Flag(flag) => Some(flag.to_string()),
         Argument::Options(options) => {
             let words: Vec<String> = options

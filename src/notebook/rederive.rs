@@ -7,6 +7,7 @@
 use std::cell::Cell;
 use std::collections::{BTreeMap, BTreeSet};
 use std::rc::Rc;
+use std::sync::Arc;
 
 use crate::data::own;
 use crate::fault::Fault;
@@ -14,12 +15,13 @@ use crate::model::CARDS;
 use crate::model::card::{self, Card, Cx, References, Value, call_of};
 use crate::model::reaction::Reaction;
 use crate::model::substance::PureSubstance;
+use crate::model::table::Table;
 use crate::notebook::holdings::Holdings;
 use crate::notebook::parting::made_words;
 use crate::notebook::seal::{
-    Argument, InputOf, Made, Seal, SealedInput, SealedKind, SealedPlace, SealedStep, SealedZero,
+    Argument, InputOf, Made, Seal, SealedInput, SealedKind, SealedObject, SealedPlace, SealedStep, SealedZero,
 };
-use crate::notebook::skeleton::{operator_of, what_of};
+use crate::notebook::skeleton::{TABLE, operator_of, what_of};
 use crate::notebook::verdict::Rederived;
 use crate::quantity::round::shortest;
 use crate::quantity::{Quantity, text};
@@ -39,6 +41,16 @@ struct Done {
     recorded: Option<f64>,
 }
 
+/// What is at hand while steps are done again.
+struct Bench<'a> {
+    cx: Cx<'a>,
+    seal: &'a Seal,
+    files: &'a BTreeMap<String, Arc<[u8]>>,
+    done: Vec<Done>,
+    /// Things made again, by their positions: one that several steps took is one, or its figures would be independent.
+    made: BTreeMap<usize, Result<Value, String>>,
+}
+
 /// Derives every value of a seal again.
 ///
 /// # Errors
@@ -55,11 +67,12 @@ pub fn rederive(seal: &Seal, holdings: &Holdings) -> Result<Vec<Rederived>, Faul
     let references = References::of(catalog, holdings.constants);
     let ordinal = Cell::new(0);
     let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
-    let mut done: Vec<Done> = Vec::with_capacity(seal.steps.len());
+    let mut bench = Bench { cx, seal, files: &holdings.files, done: Vec::new(), made: BTreeMap::new() };
     for step in &seal.steps {
-        let again = again(&cx, step, &done);
-        done.push(again);
+        let again = again(&mut bench, step);
+        bench.done.push(again);
     }
+    let done = bench.done;
     Ok(seal.values.iter().map(|value| summed_up(seal, value, &done)).collect())
 }
 
@@ -85,7 +98,7 @@ fn summed_up(seal: &Seal, value: &crate::notebook::seal::SealedValue, done: &[Do
     let mut seen = BTreeSet::from([last]);
     let mut pending = vec![last];
     while let Some(at) = pending.pop() {
-        for used in used_by(&seal.steps[at]) {
+        for used in used_by(seal, &seal.steps[at]) {
             if used < at && seen.insert(used) {
                 pending.push(used);
             }
@@ -136,36 +149,41 @@ fn place_words(step: &SealedStep) -> String {
 }
 
 /// Positions of the steps that a step names.
-fn used_by(step: &SealedStep) -> Vec<usize> {
-    fn within(argument: &Argument, all: &mut Vec<usize>) {
+fn used_by(seal: &Seal, step: &SealedStep) -> Vec<usize> {
+    fn within(seal: &Seal, argument: &Argument, objects: &mut BTreeSet<usize>, all: &mut Vec<usize>) {
         match argument {
             Argument::Step(at) => all.extend(at.parse::<usize>().ok()),
-            Argument::List(list) => list.iter().for_each(|item| within(item, all)),
-            Argument::Options(options) => options.values().for_each(|item| within(item, all)),
+            Argument::List(list) => list.iter().for_each(|item| within(seal, item, objects, all)),
+            Argument::Options(options) => options.values().for_each(|item| within(seal, item, objects, all)),
+            Argument::Object { at, .. } => {
+                let Some(at) = at.parse::<usize>().ok().filter(|at| objects.insert(*at)) else { return };
+                let Some(object) = seal.objects.get(at) else { return };
+                object.arguments.iter().for_each(|item| within(seal, item, objects, all));
+            }
             _ => {}
         }
     }
     match &step.made {
         // A formula finds its figures in the records itself: the inputs that were recorded are not used.
         Made::Formula { arguments, .. } => {
-            let mut all = Vec::new();
-            arguments.iter().for_each(|argument| within(argument, &mut all));
+            let (mut all, mut objects) = (Vec::new(), BTreeSet::new());
+            arguments.iter().for_each(|argument| within(seal, argument, &mut objects, &mut all));
             all
         }
         _ => step.inputs.iter().filter_map(|(at, _)| at.parse().ok()).collect(),
     }
 }
 
-fn again(cx: &Cx, step: &SealedStep, done: &[Done]) -> Done {
+fn again(bench: &mut Bench, step: &SealedStep) -> Done {
     let tried = match &step.made {
-        Made::Input(input) => input_again(cx, step, input),
-        Made::Arithmetic { operator, by } => arithmetic_again(step, operator, by.as_deref(), done),
-        Made::Formula { card, arguments } => formula_again(cx, step, card, arguments, done),
+        Made::Input(input) => input_again(&bench.cx, step, input),
+        Made::Arithmetic { operator, by } => arithmetic_again(step, operator, by.as_deref(), &bench.done),
+        Made::Formula { card, arguments } => formula_again(bench, step, card, arguments),
         Made::Folded { steps, .. } => Err(format!("{steps} steps folded, taken by their linear form")),
     };
     let (value, as_recorded) = match tried {
         Ok(value) => (Some(value), None),
-        Err(why) => (linear(step, done), Some(why)),
+        Err(why) => (linear(step, &bench.done), Some(why)),
     };
     let recorded = step.si.parse::<f64>().ok();
     let parts = match (&value, recorded) {
@@ -291,21 +309,17 @@ fn arithmetic_again(step: &SealedStep, word: &str, by: Option<&str>, done: &[Don
     done.map_err(|refusal| format!("{word} is refused: {refusal}"))
 }
 
-fn formula_again(
-    cx: &Cx,
-    step: &SealedStep,
-    id: &str,
-    arguments: &[Argument],
-    done: &[Done],
-) -> Result<Quantity, String> {
-    let card = CARDS.iter().find(|card| card.id == id).ok_or_else(|| format!("the formula {id} is not known here"))?;
-    let mut given = Vec::with_capacity(arguments.len());
-    for argument in arguments {
-        given.push(argument_again(cx, argument, done).map_err(|what| format!("{} took {what}", card.name))?);
-    }
+fn card_of(id: &str) -> Result<&'static Card, String> {
+    CARDS.iter().copied().find(|card| card.id == id).ok_or_else(|| format!("the formula {id} is not known here"))
+}
+
+fn formula_again(bench: &mut Bench, step: &SealedStep, id: &str, arguments: &[Argument]) -> Result<Quantity, String> {
+    let card = card_of(id)?;
+    let given = arguments_again(bench, card, arguments)?;
     let before = Quantity::input(0.0, Dimension::none(), Kind::PLAIN, Input::of(LeafKey::Own("mark".into())), None)
         .map_or(0, |mark| mark.node().id());
-    let value = card::call(cx, card, given).map_err(|fault| format!("{} refuses: {}", card.name, fault.message()))?;
+    let value =
+        card::call(&bench.cx, card, given).map_err(|fault| format!("{} refuses: {}", card.name, fault.message()))?;
     let dim = dim_of(step).ok_or_else(|| format!("its unit {} is not known here", step.unit))?;
     let mut candidates = Vec::new();
     gather(&value, card, before, &mut candidates);
@@ -324,6 +338,10 @@ fn gather(value: &Value, card: &'static Card, before: u64, found: &mut Vec<Rc<No
             let own = |node: &Rc<Node>| call_of(node).is_some_and(|call| call.card.id == card.id) && node.id() > before;
             found.extend(history(value.node()).into_iter().filter(own));
         }
+        Value::Stream(stream) => {
+            let own = |node: &Rc<Node>| call_of(node).is_some_and(|call| call.card.id == card.id) && node.id() > before;
+            found.extend(stream.nodes().into_iter().flat_map(|node| history(&node)).filter(own));
+        }
         Value::List(list) => list.iter().for_each(|item| gather(item, card, before, found)),
         Value::Options(options) => options.values().for_each(|item| gather(item, card, before, found)),
         Value::Answer(answer) => answer.parts().iter().for_each(|(_, part)| gather(part, card, before, found)),
@@ -331,29 +349,72 @@ fn gather(value: &Value, card: &'static Card, before: u64, found: &mut Vec<Rc<No
     }
 }
 
-fn argument_again(cx: &Cx, argument: &Argument, done: &[Done]) -> Result<Value, String> {
+fn arguments_again(bench: &mut Bench, card: &Card, arguments: &[Argument]) -> Result<Vec<Value>, String> {
+    let again = |argument| argument_again(bench, argument).map_err(|what| format!("{} took {what}", card.name));
+    arguments.iter().map(again).collect()
+}
+
+fn argument_again(bench: &mut Bench, argument: &Argument) -> Result<Value, String> {
     let fault = |fault: Fault| fault.message().to_owned();
     Ok(match argument {
         Argument::Step(at) => {
-            let value = value_at(done, at).ok_or_else(|| "a value that could not be derived".to_owned())?;
+            let value = value_at(&bench.done, at).ok_or_else(|| "a value that could not be derived".to_owned())?;
             Value::Quantity(value.clone())
         }
         Argument::Number(text) => Value::Number(text.parse().map_err(|_| format!("the number {text}"))?),
         Argument::Flag(flag) => Value::Flag(*flag),
         Argument::Text(text) => Value::Text(text.as_str().into()),
         Argument::List(list) => {
-            Value::List(list.iter().map(|item| argument_again(cx, item, done)).collect::<Result<_, _>>()?)
+            Value::List(list.iter().map(|item| argument_again(bench, item)).collect::<Result<_, _>>()?)
         }
         Argument::Options(options) => {
-            let option = |(name, value): (&String, &Argument)| Ok((name.clone(), argument_again(cx, value, done)?));
+            let option = |(name, value): (&String, &Argument)| Ok((name.clone(), argument_again(bench, value)?));
             Value::Options(Rc::new(options.iter().map(option).collect::<Result<BTreeMap<_, _>, String>>()?))
         }
-        Argument::Reaction(text) => Value::Reaction(Rc::new(Reaction::read(text, cx.data()).map_err(fault)?)),
+        Argument::Reaction(text) => Value::Reaction(Rc::new(Reaction::read(text, bench.cx.data()).map_err(fault)?)),
         Argument::Substance(text) => {
-            let found = cx.data().find(text).map_err(|error| fault(error.into()))?;
-            Value::Substance(Rc::new(PureSubstance::new(found)))
+            let found = bench.cx.data().find(text).map_err(|error| fault(error.into()))?;
+            Value::Substance(Rc::new(PureSubstance::on_record(found, bench.cx.data())))
         }
+        Argument::Object { at, words } => object_again(bench, at).map_err(|why| format!("{words}: {why}"))?,
         Argument::Other(what) => return Err(format!("{what}, which a seal cannot keep")),
         Argument::Nothing => Value::Nothing,
     })
+}
+
+/// A thing that steps took, made again at its first use.
+fn object_again(bench: &mut Bench, at: &str) -> Result<Value, String> {
+    let missing = || "the seal has no such thing".to_owned();
+    let at: usize = at.parse().map_err(|_| missing())?;
+    if let Some(made) = bench.made.get(&at) {
+        return made.clone();
+    }
+    let seal = bench.seal;
+    let object = seal.objects.get(at).ok_or_else(missing)?;
+    // Until it is made it has been refused: a seal that was tampered with may name a thing as a part of itself.
+    bench.made.insert(at, Err("it is made of itself".to_owned()));
+    let made = made_again(bench, object);
+    bench.made.insert(at, made.clone());
+    made
+}
+
+fn made_again(bench: &mut Bench, object: &SealedObject) -> Result<Value, String> {
+    if object.card == TABLE {
+        let [Argument::Text(file), source] = object.arguments.as_slice() else {
+            return Err("the file of the table is not named".to_owned());
+        };
+        let bytes = bench.files.get(file).ok_or_else(|| format!("the seal does not keep what was in {file}"))?;
+        let text = String::from_utf8_lossy(bytes);
+        let source = if let Argument::Text(source) = source { Some(source.as_str()) } else { None };
+        let table = Table::read(&bench.cx, file, &text, source).map_err(|fault| fault.message().to_owned())?;
+        return Ok(Value::Table(Rc::new(table)));
+    }
+    let card = card_of(&object.card)?;
+    let given = arguments_again(bench, card, &object.arguments)?;
+    let whole = card::call(&bench.cx, card, given);
+    let whole = whole.map_err(|fault| format!("{} refuses: {}", card.name, fault.message()))?;
+    let Some(part) = &object.part else { return Ok(whole) };
+    let parts = if let Value::Answer(answer) = &whole { answer.parts() } else { Vec::new() };
+    let found = parts.into_iter().find(|(name, _)| name == part).map(|(_, value)| value);
+    found.ok_or_else(|| format!("{} has no part {part}", card.name))
 }

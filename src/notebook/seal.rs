@@ -40,6 +40,9 @@ pub struct Seal {
     pub values: Vec<SealedValue>,
     /// Steps of all values, inputs before their users, each once. Steps point at each other by their position, from 0.
     pub steps: Vec<SealedStep>,
+    /// What steps took that is no value: streams, molecules, fits, as the calls that made them, each before its users.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub objects: Vec<SealedObject>,
     pub data: Vec<SealedTable>,
     /// Files beside the notebook that its cells read: records of the analyst's own, measured figures.
     pub files: Vec<SealedFile>,
@@ -274,9 +277,24 @@ pub enum Argument {
     Reaction(String),
     /// By its name with phase.
     Substance(String),
+    /// The thing at this position among `objects`, with its name.
+    Object {
+        at: String,
+        words: String,
+    },
     /// Something that cannot be kept, such as a function of the author's; in words.
     Other(String),
     Nothing,
+}
+
+/// A thing that steps took, as the call of a formula that made it; `read_csv` stands for a table read from a sealed file.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct SealedObject {
+    pub card: String,
+    pub arguments: Vec<Argument>,
+    /// The part of what the call gives; none for the whole.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub part: Option<String>,
 }
 
 /// The records of one table that the notebook could have used.

@@ -240,6 +240,7 @@ fn of_trial(notebook: &NotebookFile, tried: &Trial, how: &Sealing, holdings: &Ho
         parameters: parameters.collect(),
         values,
         steps: skeleton.steps,
+        objects: skeleton.objects,
         data: sealed_tables(&holdings.records.about(&tried.asked)),
         files: tried.files.iter().map(|(name, bytes)| sealed_file(name, bytes)).collect(),
         entities: tried.asked.iter().map(ToString::to_string).collect(),

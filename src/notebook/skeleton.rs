@@ -9,8 +9,10 @@ use std::rc::Rc;
 
 use crate::fault::Place;
 use crate::model::card::{Value, call_of};
+use crate::model::origin::origin_of;
+use crate::model::terms::Terms;
 use crate::notebook::seal::{
-    Argument, InputOf, Made, SealedInput, SealedKind, SealedPlace, SealedState, SealedStep, SealedZero,
+    Argument, InputOf, Made, SealedInput, SealedKind, SealedObject, SealedPlace, SealedState, SealedStep, SealedZero,
 };
 use crate::quantity::Quantity;
 use crate::quantity::round::shortest;
@@ -22,10 +24,16 @@ use crate::units::{Kind, What, Zero};
 /// The longest derivation of one value that is kept step by step, its inputs counted.
 pub const MOST: usize = 2000;
 
+/// Stands for the call that made a table: a file that was read.
+pub const TABLE: &str = "read_csv";
+
 /// Steps of several values.
 #[derive(Default)]
 pub struct Skeleton {
     pub steps: Vec<SealedStep>,
+    pub objects: Vec<SealedObject>,
+    /// Positions of the things entered, by where they lie in memory: the values being entered hold them.
+    places: BTreeMap<usize, usize>,
     nodes: BTreeMap<u64, usize>,
     /// Inputs by what they are; the same figure may have been read in several units.
     inputs: BTreeMap<(InputOf, String, String), usize>,
@@ -129,12 +137,62 @@ impl Skeleton {
             Value::Options(options) => {
                 Argument::Options(options.iter().map(|(name, value)| (name.clone(), self.argument(value))).collect())
             }
-            Value::Reaction(reaction) => Argument::Reaction(reaction.text().to_owned()),
-            Value::Substance(substance) => Argument::Substance(substance.text().to_owned()),
+            Value::Reaction(reaction) if of_tables(reaction) => Argument::Reaction(reaction.text().to_owned()),
+            Value::Substance(substance) if of_tables(substance) => Argument::Substance(substance.text().to_owned()),
+            Value::Table(table) => self.object((Rc::as_ptr(table) as usize, &table.name), (TABLE, None), |_| {
+                let source =
+                    table.source.as_ref().map_or(Argument::Nothing, |source| Argument::Text(source.to_string()));
+                vec![Argument::Text(table.name.to_string()), source]
+            }),
             Value::Nothing => Argument::Nothing,
-            other => Argument::Other(other.sort().to_owned()),
+            other => match (origin_of(other), thing(other)) {
+                (Some(origin), Some(thing)) => {
+                    let call = origin.call();
+                    self.object(thing, (call.card.id, origin.part()), |skeleton| {
+                        call.args.iter().map(|argument| skeleton.argument(argument)).collect()
+                    })
+                }
+                _ => Argument::Other(other.sort().to_owned()),
+            },
         }
     }
+
+    /// The thing at an address, entered once.
+    fn object(
+        &mut self,
+        (address, words): (usize, &str),
+        (card, part): (&str, Option<&str>),
+        arguments: impl FnOnce(&mut Self) -> Vec<Argument>,
+    ) -> Argument {
+        let at = match self.places.get(&address) {
+            Some(at) => *at,
+            None => {
+                let arguments = arguments(self);
+                let part = part.map(str::to_owned);
+                self.objects.push(SealedObject { card: card.to_owned(), arguments, part });
+                self.places.insert(address, self.objects.len() - 1);
+                self.objects.len() - 1
+            }
+        };
+        Argument::Object { at: at.to_string(), words: words.to_owned() }
+    }
+}
+
+/// Whether tables answer for all of it.
+fn of_tables(terms: &Terms) -> bool {
+    terms.terms().iter().all(|term| term.own.is_none())
+}
+
+/// Where a thing lies, and its name.
+fn thing(value: &Value) -> Option<(usize, &str)> {
+    Some(match value {
+        Value::Reaction(one) => (Rc::as_ptr(one) as usize, one.text()),
+        Value::Substance(one) => (Rc::as_ptr(one) as usize, one.text()),
+        Value::Molecule(one) => (Rc::as_ptr(one) as usize, one.text()),
+        Value::Crystal(one) => (Rc::as_ptr(one) as usize, one.text()),
+        Value::Stream(one) => (Rc::as_ptr(one) as usize, &one.name),
+        _ => return None,
+    })
 }
 
 impl Kept {

@@ -23,6 +23,7 @@ pub mod treatment;
 
 use std::rc::Rc;
 
+use crate::model::card::Call;
 use crate::model::statmech::diatomic::{Constants, Diatomic};
 use crate::model::statmech::gas::{Gas, Part};
 use crate::model::statmech::levels::Level;
@@ -65,6 +66,10 @@ impl Molecule {
         let terms = Terms::new(vec![Term::of_tables(definition.substance.clone(), 1.0)], per, text);
         let gas = Gas { molar_mass_kg_mol: definition.mass.value, parts: built.parts };
         Molecule { definition, treatment, gas, described: built.described, terms }
+    }
+
+    pub(super) fn made_by(&mut self, call: &Rc<Call>) {
+        self.terms.made_by(call);
     }
 
     /// The same molecule taken in another way.

@@ -19,6 +19,7 @@ use crate::model::answer::Answer;
 use crate::model::card::{Arg, Call, Card, Claim, Cx, Default, On, Sources, Takes, Value};
 use crate::model::caution::Caution;
 use crate::model::gather::Method;
+use crate::model::origin::Origin;
 use crate::model::plant::claims;
 use crate::model::plant::contents::{self, Contents, FEEDS, FORMATION, PRESSURE, REACTIONS};
 use crate::model::plant::error::PlantError;
@@ -59,7 +60,7 @@ pub struct SpeciesRow {
 impl HeatBalance {
     pub(in crate::model) fn parts(&self) -> Vec<(&'static str, Value)> {
         let mut parts = vec![("duty", Value::Quantity(self.duty.clone()))];
-        parts.extend(self.outlet.iter().map(|outlet| ("outlet", Value::Stream(Rc::clone(outlet)))));
+        parts.extend(self.outlet.iter().map(|outlet| (OUTLET, Value::Stream(Rc::clone(outlet)))));
         parts
     }
 }
@@ -118,6 +119,9 @@ pub static HEAT_BALANCE: Card = Card {
     caution: Some(Caution::HeatDuty),
 };
 
+/// The part of a balance that is a stream again.
+const OUTLET: &str = "outlet";
+
 /// Typed flows have some six digits, and their sums are no better.
 const CLOSURE: f64 = 1e-6;
 
@@ -169,7 +173,7 @@ impl Contents {
         let there = |portion: &&Portion| portion.amount.si > 0.0;
         let portions = self.after.iter().filter(there).cloned().collect();
         let name = if self.progress.is_empty() { "mixed" } else { "outlet" };
-        Stream { name: name.into(), t: t.clone(), portions, per_time: self.per_time }
+        Stream { name: name.into(), t: t.clone(), portions, per_time: self.per_time, origin: None }
     }
 }
 
@@ -223,7 +227,10 @@ fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
         Ok(rows)
     };
     let (feeds, products) = (table(&case.contents.feeds, -1.0)?, table(&case.products, 1.0)?);
-    let outlet = contents::streams(call, "products").is_empty().then(|| Rc::clone(&case.products[0]));
+    let outlet = contents::streams(call, "products").is_empty().then(|| {
+        let left = &case.products[0];
+        Rc::new(Stream { origin: Origin::of_part(call, OUTLET), ..Stream::clone(left) })
+    });
     let per_time = case.contents.per_time;
     Ok(Value::Answer(Answer::HeatBalance(Rc::new(HeatBalance { duty, feeds, products, outlet, legs, per_time }))))
 }

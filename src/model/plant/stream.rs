@@ -9,6 +9,7 @@ use std::rc::Rc;
 use crate::fault::Fault;
 use crate::model::card::{Arg, Call, Card, Cx, Default, On, Takes, Value};
 use crate::model::mass;
+use crate::model::origin::Origin;
 use crate::model::plant::amount::Amount;
 use crate::model::plant::error::PlantError;
 use crate::model::terms::Term;
@@ -32,12 +33,14 @@ impl Portion {
 }
 
 /// Portions at one temperature.
+#[derive(Clone)]
 pub struct Stream {
     pub name: Rc<str>,
     pub t: Quantity,
     pub portions: Vec<Portion>,
     /// Whether the amounts are flows.
     pub per_time: bool,
+    pub origin: Option<Origin>,
 }
 
 impl Stream {
@@ -109,7 +112,7 @@ fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     if portions.is_empty() {
         return Err(PlantError::Empty { stream: name.to_string() }.into());
     }
-    Ok(Value::Stream(Rc::new(Stream { name: Rc::clone(name), t, portions, per_time })))
+    Ok(Value::Stream(Rc::new(Stream { name: Rc::clone(name), t, portions, per_time, origin: None })))
 }
 
 type Portions = (Vec<Portion>, bool);

@@ -31,6 +31,7 @@ use std::rc::Rc;
 use std::sync::Arc;
 
 use crate::data::substance::Substance;
+use crate::model::card::Call;
 use crate::model::molecule::definition::GivenFormation;
 use crate::model::molecule::parameter::Parameter;
 use crate::model::statmech::{Share, debye, vibration};
@@ -160,6 +161,10 @@ impl Crystal {
         let (per, text) = (substance.species.entity, substance.id().to_owned());
         let terms = Terms::new(vec![Term::of_tables(Arc::clone(&substance), 1.0)], per, text);
         Crystal { substance, modes, gamma, expansion, formation, terms }
+    }
+
+    pub(super) fn made_by(&mut self, call: &Rc<Call>) {
+        self.terms.made_by(call);
     }
 
     /// The same crystal, expanding otherwise.
