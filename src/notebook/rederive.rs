@@ -112,6 +112,10 @@ fn summed_up(seal: &Seal, value: &crate::notebook::seal::SealedValue, done: &[Do
             told.parts_at = step.parts.as_ref().map(|parts| format!("{}{parts}", place_words(&seal.steps[at])));
         }
     }
+    let together = |at: &usize| matches!(&seal.steps[*at].made, Made::Input(input) if input.correlated);
+    if seen.iter().any(together) {
+        told.not_rederived.push("u of readings taken together: a seal does not keep their correlation".to_owned());
+    }
     if value.folded != "0" {
         told.not_rederived.push(format!("{} earlier steps, folded when it was sealed", value.folded));
     }
