@@ -319,6 +319,37 @@ fn figures(then: &str, now: &str) -> (String, String) {
 }
 
 #[test]
+fn a_long_derivation_lists_where_it_parts_and_counts_what_it_leaves_out() {
+    let folder = tempfile::tempdir().unwrap();
+    let path = folder.path().join("long.ipynb");
+    // Each turn is two steps, and the first two figures are used by all: more steps than are listed, and fewer than a seal folds.
+    let source = "let x = q(\"1.0(1) kJ\");\nlet y = q(\"2.5 kJ\");\n\
+                  for turn in 0..40 { x = (x + y) * 0.5; }\nlet z = x - q(\"7.5 kJ\");\nreport(\"z\", z)";
+    sealed(&path, source, None);
+    edit(&path, |tree| exchange_in_cells(tree, "x - q(", "x + q("));
+    let audit = audit_one(&path, &AuditOptions::default());
+    let steps = &audit.values[0].steps[0];
+    // The sum parts, and it alone: everything under it is the same.
+    let differ: Vec<_> = steps.pairs.iter().filter(|pair| !pair.is_same()).collect();
+    assert_eq!((differ.len(), differ[0].parts), (1, true));
+    assert_eq!(differ[0].number, steps.pairs.last().unwrap().number);
+    assert_eq!(steps.pairs.len() + steps.same_left_out, differ[0].number);
+    assert!(steps.same_left_out > 20 && steps.others_left_out == 0, "{steps:#?}");
+
+    // An edit at the beginning: what differs comes first, and the rest of it is counted.
+    sealed(&path, source, None);
+    edit(&path, |tree| exchange_in_cells(tree, "1.0(1) kJ", "1.5(1) kJ"));
+    let audit = audit_one(&path, &AuditOptions::default());
+    let steps = &audit.values[0].steps[0];
+    assert!(steps.pairs.iter().any(|pair| pair.parts) && steps.others_left_out > 20, "{steps:#?}");
+    assert_eq!(
+        steps.pairs.len() + steps.same_left_out + steps.others_left_out,
+        steps.pairs.last().unwrap().number,
+        "the value itself is listed last, with the number of all"
+    );
+}
+
+#[test]
 fn the_page_holds_every_part_and_asks_for_nothing_from_outside() {
     let page = written(report::page, audits(), &about());
     for part in [

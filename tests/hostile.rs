@@ -147,8 +147,13 @@ fn each_costs_its_own_row_and_says_what_is_wrong() {
     assert!(audits.len() > 50);
     let text = String::from_utf8(output.stdout).unwrap();
     assert!(!text.contains(|c: char| c.is_control() && c != '\n'), "no label steers a terminal");
-    let rows = text.lines().filter(|line| !line.starts_with(' ')).count();
+    let (rows, summary) = text.split_once(&format!("\n{} notebooks audited", audits.len())).unwrap();
+    let rows = rows.lines().filter(|line| !line.starts_with(' ')).count();
     assert_eq!(rows, audits.len(), "no label forges a row");
+    let not_same =
+        audits.values().filter(|audit| ["differs", "could-not-run"].contains(&audit["status"].as_str().unwrap()));
+    let (_, listed) = summary.split_once("\nnot the same\n").unwrap();
+    assert_eq!(listed.lines().count(), not_same.count(), "nor a line of the summary");
     let found: String = audits.iter().map(|(name, audit)| format!("{name}: {}\n", words(audit))).collect();
     let path = Path::new(env!("CARGO_MANIFEST_DIR")).join(EXPECTED);
     if std::env::var_os("UPDATE_HOSTILE").is_some() {

@@ -10,7 +10,7 @@ use crate::model::card::{Arg, On, Takes};
 use crate::model::{CARDS, check_line, symbols};
 use crate::notebook::parting::{alike, argument_words, made_words, parts_at, positions};
 use crate::notebook::seal::{Argument, Made, Seal, SealedStep, SealedValue};
-use crate::notebook::skeleton::{Skeleton, operator_of};
+use crate::notebook::skeleton::{self, Skeleton, operator_of};
 use crate::notebook::verdict::{SideBySide, StepPair, StepSide};
 use crate::quantity::Quantity;
 use crate::quantity::round::{decimals_for, decimals_for_digits, fixed, shortest};
@@ -25,7 +25,8 @@ const DIGITS: i32 = 8;
 /// Positions of the steps of a pair.
 type Pair = (Option<usize>, Option<usize>);
 
-/// Puts the sealed derivation of a value beside that of the value now; none where the seal's own steps cannot be followed.
+/// Puts the sealed derivation of a value beside that of the value now; none where the seal's own steps cannot be followed, or
+/// are more than a seal keeps of a value.
 pub fn side_by_side(seal: &Seal, sealed: &SealedValue, now: &Quantity, under: &str) -> Option<SideBySide> {
     let mut skeleton = Skeleton::default();
     let last_now = skeleton.enter(now).step;
@@ -33,7 +34,7 @@ pub fn side_by_side(seal: &Seal, sealed: &SealedValue, now: &Quantity, under: &s
     let sides = Sides { then: &seal.steps, now: &skeleton.steps };
     let parting = parts_at(sides.then, sides.now, last_then, last_now)
         .map(|(then, now)| (Some(through(sides.then, then)), Some(through(sides.now, now))));
-    let pairs = sides.pairs(last_then, last_now);
+    let pairs = sides.pairs(last_then, last_now)?;
     let numbers = Numbers::of(&pairs);
     let all: Vec<StepPair> = (pairs.iter().enumerate())
         .map(|(at, pair)| sides.shown(at + 1, *pair, &numbers, parting == Some(*pair)))
@@ -103,8 +104,8 @@ impl Numbers {
 }
 
 impl Sides<'_> {
-    /// All steps under two values, paired, inputs before their users.
-    fn pairs(&self, then: usize, now: usize) -> Vec<Pair> {
+    /// All steps under two values, paired, inputs before their users; none where a seal was made to hold too many.
+    fn pairs(&self, then: usize, now: usize) -> Option<Vec<Pair>> {
         // The order is kept by hand, since derivations are long.
         enum Visit {
             Into(Pair),
@@ -121,26 +122,29 @@ impl Sides<'_> {
                     if new == (None, None) {
                         continue;
                     }
+                    if seen_then.len() > 2 * skeleton::MOST {
+                        return None;
+                    }
                     pending.push(Visit::Done(new));
                     pending.extend(self.under(new).into_iter().rev().map(Visit::Into));
                 }
                 Visit::Done(pair) => pairs.push(pair),
             }
         }
-        pairs
+        Some(pairs)
     }
 
     /// What the steps of a pair were computed from: alike ones paired, then the rest by their order.
     fn under(&self, (then, now): Pair) -> Vec<Pair> {
         fn inputs(steps: &[SealedStep], at: Option<usize>) -> Vec<usize> {
-            let mut all: Vec<usize> = Vec::new();
-            for before in at.and_then(|at| steps.get(at)).map(positions).unwrap_or_default() {
-                let before = if before < steps.len() { through(steps, before) } else { continue };
-                if !all.contains(&before) {
-                    all.push(before);
-                }
-            }
-            all
+            let named = at.and_then(|at| steps.get(at)).map(positions).unwrap_or_default();
+            let mut known = BTreeSet::new();
+            let there = named.into_iter().filter(|before| *before < steps.len());
+            there
+                .map(|before| through(steps, before))
+                .filter(|before| known.insert(*before))
+                .take(skeleton::MOST)
+                .collect()
         }
         let (left, mut right) = (inputs(self.then, then), inputs(self.now, now));
         let mut alone = Vec::new();
