@@ -45,8 +45,8 @@ fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
         _ => 8.0,
     };
     if !(count >= 1.0 && count.fract() == 0.0) {
-        let value = crate::quantity::round::shortest(count);
-        return Err(MoleculeError::Degeneracy { key: "count".to_owned(), value }.into());
+        let (key, given) = ("count".to_owned(), crate::quantity::round::shortest(count));
+        return Err(MoleculeError::Sort { key, wanted: "a whole number from 1", given }.into());
     }
     let torsions: &[GivenTorsion] = match &molecule.definition().motion {
         Motion::Polyatomic { torsions, .. } => torsions,
