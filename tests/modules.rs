@@ -98,6 +98,9 @@ fn a_function_and_a_constant_of_a_file_beside_the_notebook_are_there_without_an_
             bench.ok("[q(\"1 mol\"), q(\"2 mol\")].map(|n| plant::duty(n, q(\"1 kJ/mol\")).value(\"kJ\"))"),
             "[3.0, 4.0]"
         );
+        // A unit behind a number is known in a module that is the first to write it.
+        bench.write("hot.rhai", "fn bath() { 451.0.K }");
+        assert_eq!(bench.ok("hot::bath().value(\"K\")"), "451.0");
         let fault = bench.cell("plant::loss()").unwrap_err();
         assert_eq!((fault.code(), fault.hint()), ("unknown-in-module", "did you mean plant::LOSS?"));
     });

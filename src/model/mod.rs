@@ -133,6 +133,7 @@ pub const CARDS: &[&Card] = &[
     &solid::answers::ENTROPY,
     &solid::answers::ENTHALPY_INCREMENT,
     &solid::answers::GIBBS_ENERGY,
+    &solid::answers::POWER_FIT,
     &solid::answers::CONTRIBUTIONS,
     &solid::answers::CLASSICAL_LIMIT,
     &solid::answers::FORMATION_ENTHALPY,

@@ -49,6 +49,16 @@ struct Bench<'a> {
     done: Vec<Done>,
     /// Things made again, by their positions: one that several steps took is one, or its figures would be independent.
     made: BTreeMap<usize, Result<Value, String>>,
+    /// What calls gave, by formula, arguments and place: a call of several values, such as readings taken together, is one
+    /// call, or what it found of their correlation would be lost.
+    calls: BTreeMap<String, Given>,
+}
+
+/// What a call gave, with the number of the last node before it.
+#[derive(Clone)]
+struct Given {
+    value: Value,
+    before: u64,
 }
 
 /// Derives every value of a seal again.
@@ -67,7 +77,8 @@ pub fn rederive(seal: &Seal, holdings: &Holdings) -> Result<Vec<Rederived>, Faul
     let references = References::of(catalog, holdings.constants);
     let ordinal = Cell::new(0);
     let cx = Cx { references: &references, place: None, ordinal: &ordinal, halted: &|| None };
-    let mut bench = Bench { cx, seal, files: &holdings.files, done: Vec::new(), made: BTreeMap::new() };
+    let mut bench =
+        Bench { cx, seal, files: &holdings.files, done: Vec::new(), made: BTreeMap::new(), calls: BTreeMap::new() };
     for step in &seal.steps {
         let again = again(&mut bench, step);
         bench.done.push(again);
@@ -315,11 +326,20 @@ fn card_of(id: &str) -> Result<&'static Card, String> {
 
 fn formula_again(bench: &mut Bench, step: &SealedStep, id: &str, arguments: &[Argument]) -> Result<Quantity, String> {
     let card = card_of(id)?;
-    let given = arguments_again(bench, card, arguments)?;
-    let before = Quantity::input(0.0, Dimension::none(), Kind::PLAIN, Input::of(LeafKey::Own("mark".into())), None)
-        .map_or(0, |mark| mark.node().id());
-    let value =
-        card::call(&bench.cx, card, given).map_err(|fault| format!("{} refuses: {}", card.name, fault.message()))?;
+    let key = serde_json::to_string(&(id, arguments, &step.place)).map_err(|error| error.to_string())?;
+    let Given { value, before } = match bench.calls.get(&key) {
+        Some(given) => given.clone(),
+        None => {
+            let given = arguments_again(bench, card, arguments)?;
+            let mark = Input::of(LeafKey::Own("mark".into()));
+            let before =
+                Quantity::input(0.0, Dimension::none(), Kind::PLAIN, mark, None).map_or(0, |mark| mark.node().id());
+            let called = card::call(&bench.cx, card, given);
+            let value = called.map_err(|fault| format!("{} refuses: {}", card.name, fault.message()))?;
+            bench.calls.insert(key, Given { value: value.clone(), before });
+            Given { value, before }
+        }
+    };
     let dim = dim_of(step).ok_or_else(|| format!("its unit {} is not known here", step.unit))?;
     let mut candidates = Vec::new();
     gather(&value, card, before, &mut candidates);

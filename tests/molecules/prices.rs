@@ -133,7 +133,7 @@ fn a_rigid_rotor_is_priced_where_stretching_is_known_and_bracketed_elsewhere() {
         let untested = row(cx, &cp(&molecule(cx, WATER)), "rigid-rotor").unwrap();
         assert!(untested.price.is_none() && untested.status == "untested", "{}", untested.note);
         assert!(
-            untested.note.contains("`distortion`") && untested.note.contains("bring 0.19 to 1.0 J/(K mol)"),
+            untested.note.contains("distortion constants") && untested.note.contains("brings 0.19 to 1.0 J/(K mol)"),
             "{}",
             untested.note
         );

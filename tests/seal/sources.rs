@@ -93,6 +93,17 @@ fn what_one_measured_or_brings_along_stands_in_a_reaction_again() {
 }
 
 #[test]
+fn readings_taken_together_keep_their_correlation() {
+    // One call gives both means; u of the ratio rests on how they scatter together.
+    all_derived(
+        &["let m = readings(#{ V: [5.007, 4.994, 5.005], I: [19.663, 19.639, 19.640] }, #{ V: \"V\", I: \"mA\" });
+           report(\"resistance\", m.V / m.I); report(\"power\", m.V * m.I)"],
+        &[],
+        2,
+    );
+}
+
+#[test]
 fn a_thing_that_is_a_part_of_itself_is_named_as_not_derived_again() {
     // A thing that names itself, as only a seal that was tampered with can.
     let cells = ["let s = stream(\"s\", \"220 degC\", #{ \"CO(g)\": \"1 mol\" });

@@ -168,7 +168,7 @@ pub fn rigid_rotor(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
 
 /// That no distortion constants are known, and what a harmonic force field would allow them to bring.
 fn unstretched(cx: &Cx, call: &Call, molecule: &Molecule) -> String {
-    let missing = format!("no `distortion` constants of {} are known", molecule.text());
+    let missing = format!("distortion constants of {} are not known", molecule.text());
     let definition = molecule.definition();
     let (Some((low, high)), Ok(rigid)) = (
         stretching::bracket(definition),
@@ -187,7 +187,7 @@ fn unstretched(cx: &Cx, call: &Call, molecule: &Molecule) -> String {
     let (Some(low), Some(high), Some(asked)) = (with(low), with(high), Asked::of(call.card)) else { return missing };
     let (scale, unit) = asked.check_unit();
     let [low, high] = [low, high].map(|off| round::significant(off / scale, 2));
-    format!("{missing}; in a harmonic force field with these wavenumbers they bring {low} to {high} {unit}")
+    format!("{missing}; any harmonic force field with these wavenumbers brings {low} to {high} {unit}")
 }
 
 /// `free-rotor`: against the torsion in its potential, or the oscillator that was blended with a rotor.

@@ -8,32 +8,35 @@ use std::rc::Rc;
 
 use crate::fault::Fault;
 use crate::model::answer::Answer;
-use crate::model::card::{Arg, Card, Cx, Default, On, Takes, Value};
+use crate::model::card::{Arg, Call, Card, Default, On, Takes, Value};
 use crate::model::function::T_REFERENCE;
 use crate::model::molecule::answers::{self, molecule_of};
 use crate::model::molecule::error::MoleculeError;
-use crate::model::molecule::{Molecule, parameter};
+use crate::model::molecule::parameter;
 use crate::model::statmech::powers;
 use crate::quantity::{Quantity, round};
-use crate::units::{Kind, What};
+use crate::units::{Entity, Kind, What};
 
 /// The powers of the nine-constant form.
 const NINE: [i32; 7] = [-2, -1, 0, 1, 2, 3, 4];
+
+/// Two ends, and the powers.
+pub(in crate::model) const INTERVAL: &[Arg] = &[
+    Arg { name: "from", takes: Takes::Temperature, default: Default::Required, doc: "lower end of the interval" },
+    Arg { name: "to", takes: Takes::Temperature, default: Default::Required, doc: "upper end of the interval" },
+    Arg {
+        name: "powers",
+        takes: Takes::Any,
+        default: Default::Absent,
+        doc: "list of whole powers of T; -2 to 4 unless given",
+    },
+];
 
 pub static POWER_FIT: Card = Card {
     id: "molecule.power-fit",
     name: "power_fit",
     on: On::Molecule,
-    args: &[
-        Arg { name: "from", takes: Takes::Temperature, default: Default::Required, doc: "lower end of the interval" },
-        Arg { name: "to", takes: Takes::Temperature, default: Default::Required, doc: "upper end of the interval" },
-        Arg {
-            name: "powers",
-            takes: Takes::Any,
-            default: Default::Absent,
-            doc: "list of whole powers of T; -2 to 4 unless given",
-        },
-    ],
+    args: INTERVAL,
     gives: "coefficients of a sum of powers of T, with its largest error",
     doc: "Fits Cp(T) of the molecule by a sum of powers of T, so that it can be used where only such sums are taken. Parts: \
           `powers`, `coefficients` in J/(mol K) per power of kelvin, `worst` (largest deviation of the fit), `worst_at`, \
@@ -43,18 +46,47 @@ pub static POWER_FIT: Card = Card {
     claims: &[],
     alternatives: &[],
     run: |cx, call| {
-        let powers = powers_of(&call.args[3])?;
         let molecule = molecule_of(call);
-        let ends = (call.quantity(1).si(), call.quantity(2).si());
-        let fit = HandedOn::of(cx, molecule, ends, &powers)?;
-        let step = Rc::clone(call);
-        let dim = parameter::molar_capacity(molecule.entity());
-        let worst = Quantity::from_step(fit.worst, dim, Kind::of(What::Cp), smallvec::SmallVec::new(), step, None)?;
-        Ok(Value::Answer(Answer::PowerFit(Rc::new(HandedOn { worst_value: Some(worst), ..fit }))))
+        answers::within(molecule, call.quantity(1).si())?;
+        answers::within(molecule, call.quantity(2).si())?;
+        let (gas, set) = (molecule.gas(), cx.constants());
+        let reference = gas.functions(T_REFERENCE, set);
+        let of = Fitted {
+            text: molecule.text(),
+            entity: molecule.entity(),
+            cp_298: reference.cp,
+            s_298: reference.s,
+            r: set.molar_gas.value,
+        };
+        of.answer(call, |all| gas.cps(all))
     },
     check_line: None,
     caution: None,
 };
+
+/// What is fitted, beside its Cp/R.
+pub(in crate::model) struct Fitted<'a> {
+    pub text: &'a str,
+    pub entity: Entity,
+    /// J/(mol K)
+    pub cp_298: f64,
+    pub s_298: f64,
+    /// J/(mol K)
+    pub r: f64,
+}
+
+impl Fitted<'_> {
+    /// The answer to a call with two ends and powers; `cps` gives Cp/R at each of some temperatures.
+    pub(in crate::model) fn answer(self, call: &Rc<Call>, cps: impl Fn(&[f64]) -> Vec<f64>) -> Result<Value, Fault> {
+        let powers = powers_of(&call.args[3])?;
+        let ends = (call.quantity(1).si(), call.quantity(2).si());
+        let dim = parameter::molar_capacity(self.entity);
+        let fit = HandedOn::of(self, ends, &powers, cps)?;
+        let (step, kind) = (Rc::clone(call), Kind::of(What::Cp));
+        let worst = Quantity::from_step(fit.worst, dim, kind, smallvec::SmallVec::new(), step, None)?;
+        Ok(Value::Answer(Answer::PowerFit(Rc::new(HandedOn { worst_value: Some(worst), ..fit }))))
+    }
+}
 
 fn powers_of(given: &Value) -> Result<Vec<i32>, Fault> {
     let wrong = |given: &Value| {
@@ -92,29 +124,30 @@ pub struct HandedOn {
 }
 
 impl HandedOn {
-    fn of(cx: &Cx, molecule: &Molecule, ends: (f64, f64), powers: &[i32]) -> Result<HandedOn, Fault> {
-        answers::within(molecule, ends.0)?;
-        answers::within(molecule, ends.1)?;
+    fn of(
+        of: Fitted<'_>,
+        ends: (f64, f64),
+        powers: &[i32],
+        cps: impl Fn(&[f64]) -> Vec<f64>,
+    ) -> Result<HandedOn, Fault> {
         let (t_min_k, t_max_k) = (ends.0.min(ends.1), ends.0.max(ends.1));
-        let gas = molecule.gas();
-        let fit = if t_min_k < t_max_k { powers::fit(powers, t_min_k, t_max_k, |all| gas.cps(all)) } else { None };
+        let fit = if t_min_k < t_max_k { powers::fit(powers, t_min_k, t_max_k, cps) } else { None };
         let Some(fit) = fit else {
             let named: Vec<String> = powers.iter().map(ToString::to_string).collect();
             let powers = named.join(", ");
             return Err(MoleculeError::Powers { powers, t_min: t_min_k, t_max: t_max_k }.into());
         };
-        let r = cx.constants().molar_gas.value;
-        let reference = gas.functions(T_REFERENCE, cx.constants());
+        let r = of.r;
         Ok(HandedOn {
-            molecule: molecule.text().to_owned(),
+            molecule: of.text.to_owned(),
             powers: fit.powers,
             coefficients: fit.coefficients.iter().map(|a| r * a).collect(),
             t_min_k,
             t_max_k,
             worst: r * fit.worst,
             worst_at_k: fit.worst_at_k,
-            cp_298: reference.cp,
-            s_298: reference.s,
+            cp_298: of.cp_298,
+            s_298: of.s_298,
             worst_value: None,
         })
     }

@@ -18,6 +18,7 @@ use crate::model::gather::{Figure, GatherError};
 use crate::model::molecule::answers::{AT, Asked, BETWEEN, TEMPERATURE};
 use crate::model::molecule::formation;
 use crate::model::molecule::parameter;
+use crate::model::molecule::power_fit;
 use crate::model::molecule::shares::{Row, Shares};
 use crate::model::property;
 use crate::model::solid::error::SolidError;
@@ -323,6 +324,32 @@ pub static CONTRIBUTIONS: Card = Card {
         let crystal = crystal_of(call);
         let shares = contributions(cx, crystal, call.quantity(1).si())?;
         Ok(Value::Answer(Answer::Shares(Rc::new(shares))))
+    },
+    check_line: None,
+    caution: None,
+};
+
+pub static POWER_FIT: Card = Card {
+    id: "crystal.power-fit",
+    name: "power_fit",
+    on: On::Crystal,
+    args: power_fit::INTERVAL,
+    gives: "coefficients of a sum of powers of T, with its largest error",
+    doc: "Fits Cp(T) of the crystal by a sum of powers of T, so that it can be used where only such sums are taken; the parts are \
+          those of a molecule's fit. A range that begins in the cold wants many powers, or has a large error.",
+    source: "least squares at Chebyshev points; any text of numerical analysis",
+    example: "crystal(#{ formula: \"NaCl\", debye: \"321 K\" }).power_fit(\"298.15 K\", \"1000 K\", [-2, 0, 1])",
+    claims: &[],
+    alternatives: &[],
+    run: |cx, call| {
+        let (crystal, r) = (crystal_of(call), cx.constants().molar_gas.value);
+        // Between two temperatures that have an answer all have one: what expansion adds grows with T.
+        functions(cx, crystal, call.quantity(1).si())?;
+        functions(cx, crystal, call.quantity(2).si())?;
+        let at = functions(cx, crystal, T_REFERENCE)?;
+        let (text, entity) = (crystal.text(), crystal.entity());
+        let of = power_fit::Fitted { text, entity, cp_298: at.cp, s_298: at.s, r };
+        of.answer(call, |all| all.iter().map(|t| crystal.functions(*t, r).cp / r).collect())
     },
     check_line: None,
     caution: None,
