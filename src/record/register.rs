@@ -35,8 +35,11 @@ pub const CLAIMS: &[(&str, &str)] = &[
     ("fit-quality", "the heat capacity functions are as good as their figures look"),
     ("independent-inputs", "the rows of one table are independent of each other"),
     ("equipartition", "every vibration and torsion has reached its classical limit"),
-    ("harmonic", "the vibrations are harmonic, so that fundamentals are their wavenumbers"),
-    ("rigid-rotor", "rotation does not stretch the molecule, and does not depend on its vibration"),
+    (
+        "harmonic",
+        "the vibrations are harmonic, so that fundamentals are their wavenumbers, and rotation does not depend on them",
+    ),
+    ("rigid-rotor", "rotation does not stretch the molecule"),
     ("free-rotor", "the internal rotation turns freely"),
     ("high-temperature-rotation", "the rotational levels lie so dense that their sum is an integral"),
     ("symmetry-number", "the symmetry number counts the rotations that leave the molecule as it was"),

@@ -234,6 +234,22 @@ fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     Ok(Value::Quantity(value(cx, call, true)?))
 }
 
+/// Figures in SI units that add up to an answer, each with the number of its source behind it.
+pub(in crate::model) fn written(asked: Asked, figures: &[(f64, String)], value: &Quantity) -> String {
+    let (scale, unit) = asked.check_unit();
+    let mut line = String::new();
+    for &(figure, ref tag) in figures {
+        let sign = match (line.is_empty(), figure < 0.0) {
+            (true, false) => "",
+            (true, true) => "-",
+            (false, false) => " + ",
+            (false, true) => " - ",
+        };
+        line.push_str(&format!("{sign}{}{tag}", round::fixed(figure.abs() / scale, 3)));
+    }
+    format!("{line} = {} {unit}", round::fixed(value.si() / scale, 3))
+}
+
 /// Vibrations beyond this number are one figure in a check line.
 const MOST_FIGURES: usize = 8;
 
@@ -265,18 +281,7 @@ fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> 
         }
     }
     figures.extend(rest);
-    let (scale, unit) = asked.check_unit();
-    let mut line = String::new();
-    for (figure, tag) in figures {
-        let sign = match (line.is_empty(), figure < 0.0) {
-            (true, false) => "",
-            (true, true) => "-",
-            (false, false) => " + ",
-            (false, true) => " - ",
-        };
-        line.push_str(&format!("{sign}{}{tag}", round::fixed(figure.abs() / scale, 3)));
-    }
-    format!("{line} = {} {unit}", round::fixed(value.si() / scale, 3))
+    written(asked, &figures, value)
 }
 
 pub(in crate::model) const TEMPERATURE: Arg =

@@ -144,7 +144,7 @@ pub fn rigid_rotor(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
                 return Vec::new();
             }
             let better = molecule.taken(Treatment { stretched: true, ..*treatment });
-            with_words(anew(cx, call, better), "stretched by the distortion constants that were given")
+            with_words(anew(cx, call, better), "a rotor that stretches by the distortion constants given")
         }
         (Motion::Diatomic { .. }, _) => {
             let better = molecule.taken(Treatment { vibration: VibrationAs::Levels, ..*treatment });
@@ -158,7 +158,7 @@ pub fn rigid_rotor(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
                 let stretched = Definition { distortion: Some(rho), ..definition.clone() };
                 let better = Molecule::new(stretched, Treatment { stretched: true, ..*treatment });
                 let stretch = parameter::per_cm(stretch_k);
-                anew_as(cx, call, better, format!("stretched by D = 4B³/ν² of the vibration {stretch}"))
+                anew_as(cx, call, better, format!("a rotor that stretches by D = 4B³/ν², ν being {stretch}"))
             }
             None => Tested::Missing { what: unstretched(cx, call, molecule) },
         },

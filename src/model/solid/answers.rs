@@ -12,12 +12,12 @@ use smallvec::SmallVec;
 
 use crate::fault::Fault;
 use crate::model::answer::Answer;
-use crate::model::card::{Arg, Call, Card, Claim, Cx, Default, On, Takes, Value};
+use crate::model::card::{Arg, Call, Card, Claim, Cx, Default, On, Sources, Takes, Value};
 use crate::model::function::T_REFERENCE;
 use crate::model::gather::{Figure, GatherError};
-use crate::model::molecule::answers::{AT, Asked, BETWEEN, TEMPERATURE};
+use crate::model::molecule::answers::{AT, Asked, BETWEEN, TEMPERATURE, written};
 use crate::model::molecule::formation;
-use crate::model::molecule::parameter;
+use crate::model::molecule::parameter::{self, Parameter};
 use crate::model::molecule::power_fit;
 use crate::model::molecule::shares::{Row, Shares};
 use crate::model::property;
@@ -117,6 +117,37 @@ pub(super) fn value(cx: &Cx, call: &Rc<Call>, with_t: bool) -> Result<Quantity, 
 
 fn run(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     Ok(Value::Quantity(value(cx, call, true)?))
+}
+
+/// What each group of modes, the electrons and expansion bring.
+fn check_line(cx: &Cx, call: &Call, value: &Quantity, sources: &mut Sources) -> String {
+    let Some(asked) = Asked::of(call.card) else { return String::new() };
+    let (crystal, r) = (crystal_of(call), cx.constants().molar_gas.value);
+    let (t_k, from_k) = (call.quantity(1).si(), start(call).map_or(T_REFERENCE, Quantity::si));
+    let of = |at: &dyn Fn(f64) -> Functions| combined(asked, at(t_k), at(from_k), t_k);
+    let mut tag = |parameter: &Parameter| {
+        parameter.citation().map_or_else(String::new, |citation| format!("[{}]", sources.number(citation)))
+    };
+    let mut figures = Vec::new();
+    for modes in &crystal.modes {
+        let at = |t: f64| {
+            let share = modes.count * modes.spectrum.share(modes.theta.value / t);
+            Functions { cv: r * share.cv, cp: r * share.cv, h: r * t * share.u, s: r * share.s, cp_slope: 0.0 }
+        };
+        figures.push((of(&at), tag(&modes.theta)));
+    }
+    if let Some(gamma) = &crystal.gamma {
+        let at = |t: f64| {
+            let cv = gamma.value * t;
+            Functions { cv, cp: cv, h: 0.5 * cv * t, s: cv, cp_slope: 0.0 }
+        };
+        figures.push((of(&at), tag(gamma)));
+    }
+    if crystal.expansion.is_some() && asked != Asked::Cv {
+        let others: f64 = figures.iter().map(|(figure, _)| figure).sum();
+        figures.push((value.si() - others, String::new()));
+    }
+    written(asked, &figures, value)
 }
 
 /// A crystal in place of a table's record.
@@ -226,7 +257,7 @@ macro_rules! answer_card {
             claims: CLAIMS,
             alternatives: &[],
             run,
-            check_line: None,
+            check_line: Some(check_line),
             caution: None,
         };
     };

@@ -19,6 +19,7 @@ use crate::model::solid::answers::{self, crystal_of};
 use crate::quantity::{Quantity, round};
 use crate::record::node::{Input, LeafKey};
 use crate::record::register::{Finding, Tested};
+use crate::source::Citation;
 use crate::units::{Dimension, Kind, parse as unit_parse};
 
 /// `debye-model`: against the published function of the crystal.
@@ -60,16 +61,11 @@ pub fn expansion_neglected(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Findin
         return Vec::new();
     }
     let better = recorded_expansion(&crystal.substance).or_else(|| recorded_melting(cx, &crystal.substance));
-    let tested = match better {
-        Some((expansion, how)) => expanding(cx, call, expansion, how),
-        None => Tested::Missing {
-            what: format!(
-                "neither expansivity, compressibility and molar volume of {0} are known nor its melting point",
-                crystal.text()
-            ),
-        },
-    };
-    found(call, "expansion-neglected", value, tested)
+    let missing = format!(
+        "neither expansivity, compressibility and molar volume of {0} are known nor its melting point",
+        crystal.text()
+    );
+    found(cx, call, "expansion-neglected", value, better, missing)
 }
 
 /// `expansion-estimate`: where Cp − Cv was estimated from the melting point, against the expansion on record.
@@ -78,17 +74,25 @@ pub fn expansion_estimate(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding
     if !matches!(crystal.expansion, Some(Expansion::Melting(_))) || Asked::of(call.card) == Some(Asked::Cv) {
         return Vec::new();
     }
-    let tested = match recorded_expansion(&crystal.substance) {
-        Some((expansion, how)) => expanding(cx, call, expansion, how),
-        None => Tested::Missing {
-            what: format!("expansivity, compressibility and molar volume of {} are not known", crystal.text()),
-        },
-    };
-    found(call, "expansion-estimate", value, tested)
+    let missing = format!("expansivity, compressibility and molar volume of {} are not known", crystal.text());
+    found(cx, call, "expansion-estimate", value, recorded_expansion(&crystal.substance), missing)
 }
 
-fn found(call: &Call, id: &'static str, value: &Quantity, tested: Tested) -> Vec<Finding> {
-    vec![Finding::known(id, crystal_of(call).text(), value.node(), Some(call.quantity(1).si()), tested)]
+/// One finding, against the crystal expanding as is known.
+fn found(
+    cx: &Cx,
+    call: &Call,
+    id: &'static str,
+    value: &Quantity,
+    known: Option<Known>,
+    missing: String,
+) -> Vec<Finding> {
+    let (tested, sources) = match known {
+        Some((expansion, how, citation)) => (expanding(cx, call, expansion, how), vec![citation]),
+        None => (Tested::Missing { what: missing }, Vec::new()),
+    };
+    let finding = Finding::known(id, crystal_of(call).text(), value.node(), Some(call.quantity(1).si()), tested);
+    vec![Finding { sources, ..finding }]
 }
 
 /// The same call of the crystal expanding otherwise.
@@ -101,7 +105,10 @@ fn expanding(cx: &Cx, call: &Call, expansion: Expansion, how: String) -> Tested 
     }
 }
 
-fn recorded_expansion(substance: &Substance) -> Option<(Expansion, String)> {
+/// What is on record, in words, and where it was published.
+type Known = (Expansion, String, Citation);
+
+fn recorded_expansion(substance: &Substance) -> Option<Known> {
     let volume = substance.pressure.volume.as_deref()?;
     let parameter = |name: &str, field: &'static str, si: f64, dim: Dimension| -> Option<Parameter> {
         let key = LeafKey::Datum {
@@ -118,12 +125,12 @@ fn recorded_expansion(substance: &Substance) -> Option<(Expansion, String)> {
     let alpha = parameter("expansivity", "expansivity", volume.alpha, per_k)?;
     let kappa = parameter("compressibility", "compressibility", volume.kappa, per_pa)?;
     let v0 = parameter("molar volume", "molar volume", volume.v0, unit_parse::unit("m^3/mol").ok()?.dim)?;
-    let how =
-        format!("expansivity, compressibility and molar volume of {} ({})", substance.id(), volume.citation.source);
-    Some((Expansion::Measured { alpha, kappa, volume: v0, at_k: volume.t0_k }, how))
+    let how = format!("expansivity, compressibility and molar volume on record of {}", substance.id());
+    let measured = Expansion::Measured { alpha, kappa, volume: v0, at_k: volume.t0_k };
+    Some((measured, how, volume.citation.clone()))
 }
 
-fn recorded_melting(cx: &Cx, substance: &Substance) -> Option<(Expansion, String)> {
+fn recorded_melting(cx: &Cx, substance: &Substance) -> Option<Known> {
     let melts = |transition: &&Arc<Transition>| {
         transition.kind == TransitionKind::Fusion && *transition.from == *substance.id()
     };
@@ -137,12 +144,9 @@ fn recorded_melting(cx: &Cx, substance: &Substance) -> Option<(Expansion, String
     };
     let input = Input { citation: Some(transition.citation.clone()), ..Input::of(key) };
     let point = Quantity::input(transition.t_k, unit_parse::unit("K").ok()?.dim, Kind::PLAIN, input, None).ok()?;
-    let how = format!(
-        "Cp - Cv as Nernst and Lindemann estimate it from the melting point, {} K ({})",
-        round::shortest(transition.t_k),
-        transition.citation.source
-    );
-    Some((Expansion::Melting(Parameter::of("melting point", &point)), how))
+    let melts = round::shortest(transition.t_k);
+    let how = format!("Cp - Cv as Nernst and Lindemann estimate it from the melting point on record, {melts} K");
+    Some((Expansion::Melting(Parameter::of("melting point", &point)), how, transition.citation.clone()))
 }
 
 /// `additive-estimate`: against the published heat capacity of the crystal at 298.15 K.
