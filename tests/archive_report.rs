@@ -108,7 +108,7 @@ static AUDITS: LazyLock<Vec<NotebookAudit>> = LazyLock::new(|| {
 
 fn about() -> About {
     let paths = vec!["archive".to_owned()];
-    let about = About::of(&OPTIONS, paths, "2026-12-01T09:30:00Z", Duration::from_millis(4200));
+    let about = About::of(&OPTIONS, paths, "2026-12-01T09:30:00Z", Some(Duration::from_millis(4200)));
     // The digest of the shipped tables changes with each of them.
     About { tables: "5eed".repeat(16), ..about }
 }

@@ -28,7 +28,9 @@ pub(super) fn write(audits: &dyn Audits, about: &About, out: &mut dyn Write) -> 
     if let Ok(time) = chrono::DateTime::parse_from_rfc3339(&about.time) {
         whole.set_timestamp(time);
     }
-    if let Some(took) = about.took_s.parse().ok().and_then(|s| Duration::try_from_secs_f64(s).ok()) {
+    if let Some(took) =
+        about.took_s.as_ref().and_then(|took| took.parse().ok()).and_then(|s| Duration::try_from_secs_f64(s).ok())
+    {
         whole.set_time(took);
     }
     audits.each(&mut |audit| {

@@ -24,8 +24,8 @@ pub struct About {
     pub paths: Vec<String>,
     /// When it ended, in UTC: `2026-12-01T09:30:00Z`.
     pub time: String,
-    /// How long it took, in seconds.
-    pub took_s: String,
+    /// How long it took, in seconds; none where it was made in several runs.
+    pub took_s: Option<String>,
     /// `hessbook 0.1.0`
     pub program: String,
     /// SHA-256 over all shipped tables and procedures.
@@ -44,12 +44,12 @@ pub struct About {
 
 impl About {
     /// An audit with these options that ended at `time`, in UTC.
-    pub fn of(options: &AuditOptions, paths: Vec<String>, time: &str, took: Duration) -> About {
+    pub fn of(options: &AuditOptions, paths: Vec<String>, time: &str, took: Option<Duration>) -> About {
         let engine = engine_now();
         About {
             paths,
             time: time.to_owned(),
-            took_s: format!("{:.1}", took.as_secs_f64()),
+            took_s: took.map(|took| format!("{:.1}", took.as_secs_f64())),
             program: format!("hessbook {}", engine.version),
             tables: engine.stdlib,
             constants: format!("CODATA {}", options.today.constants.year),

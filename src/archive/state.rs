@@ -80,7 +80,11 @@ impl Explain for StateError {
 enum Line {
     Head(Head),
     Audit(Box<Entry>),
-    Finished { notebooks: usize },
+    /// When, in UTC: `2026-12-01T09:30:00Z`.
+    Finished {
+        notebooks: usize,
+        ended: String,
+    },
 }
 
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
@@ -108,6 +112,10 @@ pub struct State {
     /// End of the last file, to which audits are appended.
     end: u64,
     order: Order,
+    /// When the last of the audits was made.
+    ended: Option<String>,
+    /// Whether a part of them was made by an earlier run, or by several.
+    in_parts: bool,
 }
 
 /// Is given each line, with the byte it starts at.
@@ -222,6 +230,7 @@ impl State {
             }
         }
         state.end = end;
+        state.in_parts = state.places.iter().any(Option::is_some);
         if !any {
             state.append(&Line::Head(wanted))?;
         }
@@ -236,6 +245,8 @@ impl State {
         let mut gathered: Option<State> = None;
         let mut first: Option<Head> = None;
         let mut shards: Vec<Option<String>> = Vec::new();
+        // Times in UTC sort as texts.
+        let mut last_ended = String::new();
         let mut owners: BTreeMap<String, (usize, u64)> = BTreeMap::new();
         for (nth, path) in paths.iter().enumerate() {
             let file = File::open(path).map_err(|why| StateError::Io {
@@ -244,26 +255,27 @@ impl State {
                 why: why.to_string(),
             })?;
             let mut reader = Reader { path: path.clone(), file };
-            let (mut head, mut finished) = (None, false);
+            let (mut head, mut finished) = (None, None);
             // A later line about a notebook stands for an earlier one of the same file.
             let mut entries: BTreeMap<String, u64> = BTreeMap::new();
             reader.lines(&mut |at, line| {
                 match line {
                     Line::Head(found) => head = Some(found),
                     Line::Audit(entry) => {
-                        finished = false;
+                        finished = None;
                         entries.insert(entry.audit.file, at);
                     }
-                    Line::Finished { .. } => finished = true,
+                    Line::Finished { ended, .. } => finished = Some(ended),
                 }
                 Ok(())
             })?;
             let Some(head) = head else {
                 return Err(StateError::NotAState { path: path.clone(), why: "it is empty".to_owned() });
             };
-            if !finished {
+            let Some(ended) = finished else {
                 return Err(StateError::NotFinished { path: path.clone() });
-            }
+            };
+            last_ended = last_ended.max(ended);
             let wanted = Head { shard: head.shard.clone(), ..first.get_or_insert_with(|| head.clone()).clone() };
             if let Some(what) = parting(&head, &wanted) {
                 return Err(StateError::OfAnother { path: path.clone(), what });
@@ -284,11 +296,13 @@ impl State {
             return Err(StateError::NotAState { path: PathBuf::new(), why: "no file was given".to_owned() });
         };
         state.places = owners.into_values().map(Some).collect();
+        (state.ended, state.in_parts) = (Some(last_ended), true);
         Ok(state)
     }
 
     fn empty(reader: Reader, order: &Order, notebooks: usize) -> State {
-        State { files: vec![RefCell::new(reader)], places: vec![None; notebooks], end: 0, order: order.clone() }
+        let files = vec![RefCell::new(reader)];
+        State { files, places: vec![None; notebooks], end: 0, order: order.clone(), ended: None, in_parts: false }
     }
 
     /// What was ordered.
@@ -299,6 +313,16 @@ impl State {
     /// Notebooks there are to be.
     pub fn count(&self) -> usize {
         self.places.len()
+    }
+
+    /// When the last of the audits was made, in UTC; none before that.
+    pub fn ended(&self) -> Option<&str> {
+        self.ended.as_deref()
+    }
+
+    /// Whether the audits were made by more than this run.
+    pub fn is_in_parts(&self) -> bool {
+        self.in_parts
     }
 
     /// Positions of notebooks that have no audit yet.
@@ -322,7 +346,9 @@ impl State {
     /// # Errors
     /// The file cannot be written.
     pub fn finish(&mut self) -> Result<(), StateError> {
-        self.append(&Line::Finished { notebooks: self.places.len() })?;
+        let ended = chrono::Utc::now().format("%Y-%m-%dT%H:%M:%SZ").to_string();
+        self.append(&Line::Finished { notebooks: self.places.len(), ended: ended.clone() })?;
+        self.ended = Some(ended);
         let reader = self.files[self.files.len() - 1].borrow();
         // A file without a name has nothing to be found again.
         let _ = reader.file.sync_all();

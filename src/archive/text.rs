@@ -28,7 +28,8 @@ pub(super) fn write(
 ) -> Result<(), Fault> {
     let mut pen = Pen { out, colour };
     let (program, constants) = (&about.program, &about.constants);
-    pen.heading(&format!("{} audited in {} s", counted(tally.all(), "notebook"), about.took_s))?;
+    let took = about.took_s.as_ref().map_or_else(|| " in several runs".to_owned(), |took| format!(" in {took} s"));
+    pen.heading(&format!("{} audited{took}", counted(tally.all(), "notebook")))?;
     pen.line(&format!("by {program} with {constants} and the shipped tables {}", short(&about.tables)))?;
     for (status, notebooks) in &tally.notebooks {
         let words = status_words(*status, *notebooks);

@@ -3,7 +3,7 @@
 use std::io::{self, IsTerminal, Write, stdout};
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
-use std::time::{Duration, Instant};
+use std::time::Instant;
 
 use clap::{Args, ValueEnum};
 
@@ -20,6 +20,7 @@ use crate::notebook::audit_text;
 use crate::notebook::file::{FileError, write_whole_by};
 use crate::notebook::signature::TrustedKey;
 use crate::notebook::verdict::{AuditStatus, NotebookAudit};
+use crate::render::harmless::in_one_line;
 
 use super::archive::{Printer, Workers, interrupted};
 use super::{Done, err, out, stopped_by_interrupt};
@@ -81,7 +82,7 @@ impl Audit {
         if self.gathered {
             let state = State::gathered(&self.paths)?;
             let options = options_of(state.order())?;
-            return self.report(&state, &options, start.elapsed());
+            return self.report(&state, &options, start);
         }
         let trusted = self.trust.iter().map(|path| TrustedKey::read(path)).collect::<Result<_, _>>()?;
         let order = Order::now(Task::Audit {
@@ -103,14 +104,14 @@ impl Audit {
         if !whole {
             return Err(interrupted(&work, self.resume.as_deref()));
         }
-        self.report(work.state(), &options, start.elapsed())
+        self.report(work.state(), &options, start)
     }
 
     /// What is written and said at the end.
-    fn report(&self, state: &State, options: &AuditOptions, took: Duration) -> Done {
+    fn report(&self, state: &State, options: &AuditOptions, start: Instant) -> Done {
         let paths = self.paths.iter().map(|path| path.display().to_string()).collect();
-        let time = chrono::Utc::now().format("%Y-%m-%dT%H:%M:%SZ").to_string();
-        let mut about = About::of(options, paths, &time, took);
+        let took = (!state.is_in_parts()).then(|| start.elapsed());
+        let mut about = About::of(options, paths, state.ended().unwrap_or_default(), took);
         about.left_out.extend(self.shard.map(|shard| format!("notebooks of other shards than {shard}")));
         if let Some(path) = &self.page {
             written(path, |out| report::page(state, &about, out))?;
@@ -170,12 +171,7 @@ fn written(path: &Path, write: impl FnOnce(&mut dyn Write) -> Result<(), Fault>)
 /// One notebook as text: where there are many, one that is the same takes one line.
 fn text_of(audit: &NotebookAudit, many: bool) -> String {
     if many && audit.status == AuditStatus::Same {
-        return format!(
-            "{}: {}, {} values\n",
-            audit_text::in_one_line(&audit.file),
-            audit.status.word(),
-            audit.values.len()
-        );
+        return format!("{}: {}, {} values\n", in_one_line(&audit.file), audit.status.word(), audit.values.len());
     }
     audit_text::notebook(audit)
 }

@@ -5,7 +5,7 @@ use std::fmt::Write as _;
 use crate::notebook::verdict::{
     Against, Move, NotebookAudit, Outcome, Rederived, SealFacts, Signed, ValueAudit, Verdict,
 };
-pub use crate::render::harmless::in_one_line;
+use crate::render::harmless::in_one_line;
 
 /// One notebook.
 pub fn notebook(audit: &NotebookAudit) -> String {

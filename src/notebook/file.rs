@@ -203,7 +203,10 @@ impl NotebookFile {
     }
 
     /// The file's text: minor version 5, every cell with an id.
-    fn text(&self) -> Result<String, serde_json::Error> {
+    ///
+    /// # Errors
+    /// None that is known: what was read as JSON can be written.
+    pub fn text(&self) -> Result<String, serde_json::Error> {
         let mut tree = self.tree.clone();
         tree.insert("nbformat_minor".to_owned(), json!(5));
         tree.entry("metadata").or_insert_with(|| json!({}));
