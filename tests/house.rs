@@ -171,7 +171,7 @@ fn every_shipped_record_has_a_published_source() {
 #[test]
 fn no_file_carries_words_of_one_machine_or_of_how_work_is_organised() {
     // The lock file names the registry; cargo writes it.
-    let ours = TEXTS.iter().filter(|(path, _)| path != "Cargo.lock");
+    let ours = TEXTS.iter().filter(|(path, _)| !path.ends_with("Cargo.lock"));
     none(ours.flat_map(|(path, text)| words::unwanted(path, text)).collect(), "say it of the program, or leave it out");
 }
 
