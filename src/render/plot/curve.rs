@@ -59,6 +59,11 @@ const HEIGHT: u32 = 380;
 const LEGEND: u32 = 230;
 const LEGEND_ROW: i32 = 24;
 
+/// The drawing library rounds to whole units, which shows as steps in a curve: it draws on a sheet that is so many times
+/// finer, and the picture is shown in pixels.
+const FINE: i32 = 8;
+const FINE_U: u32 = FINE as u32;
+
 /// How curves are told apart, in the order they come: colour, and dash and gap in pixels, none for a whole line.
 const STROKES: [(RGBColor, Option<(i32, i32)>); 7] = [
     (RGBColor(20, 60, 120), None),
@@ -80,6 +85,8 @@ pub fn svg(picture: &Picture) -> String {
     let mut out = String::new();
     // Drawing into a text fails in no way that an input could bring about.
     draw(picture, &mut out).unwrap_or_else(|error| unreachable!("a text takes every drawing: {error}"));
+    let size = |width, height| format!("width=\"{width}\" height=\"{height}\"");
+    let out = out.replacen(&size(WIDTH * FINE_U, HEIGHT * FINE_U), &size(WIDTH, HEIGHT), 1);
     let title = format!("<title>{}</title>", html::escaped(&picture.title));
     match out.find('>') {
         Some(end) => format!("{} role=\"img\">{title}{}", &out[..end], out[end + 1..].trim_end()),
@@ -88,17 +95,17 @@ pub fn svg(picture: &Picture) -> String {
 }
 
 fn draw(picture: &Picture, out: &mut String) -> Result<(), Failed> {
-    let root = SVGBackend::with_string(out, (WIDTH, HEIGHT)).into_drawing_area();
+    let root = SVGBackend::with_string(out, (WIDTH * FINE_U, HEIGHT * FINE_U)).into_drawing_area();
     root.fill(&WHITE)?;
-    let (left, right) = root.split_horizontally(WIDTH - LEGEND);
+    let (left, right) = root.split_horizontally((WIDTH - LEGEND) * FINE_U);
     let x =
         picture.x.limits.unwrap_or_else(|| spanned(picture.curves.iter().flat_map(|c| &c.points).map(|p| p.0), 0.0));
     let heights = picture.curves.iter().flat_map(|c| &c.points).map(|p| p.1);
     let y = picture.y.limits.unwrap_or_else(|| spanned(heights, 0.05));
     let mut chart: Chart<'_> = ChartBuilder::on(&left)
-        .margin(14)
-        .x_label_area_size(44)
-        .y_label_area_size(66)
+        .margin(14 * FINE)
+        .x_label_area_size(44 * FINE)
+        .y_label_area_size(66 * FINE)
         .build_cartesian_2d(x.0..x.1, y.0..y.1)?;
     if let Some(band) = &picture.band {
         let (from, to) = (band.from.clamp(y.0, y.1), band.to.clamp(y.0, y.1));
@@ -113,10 +120,12 @@ fn draw(picture: &Picture, out: &mut String) -> Result<(), Failed> {
         .y_label_formatter(&tick(y))
         .x_labels(8)
         .y_labels(8)
-        .axis_desc_style(("sans-serif", 17))
-        .label_style(("sans-serif", 15))
+        .axis_desc_style(("sans-serif", 17 * FINE))
+        .label_style(("sans-serif", 15 * FINE))
         .max_light_lines(1)
-        .bold_line_style(GRID)
+        .bold_line_style(GRID.stroke_width(FINE_U))
+        .axis_style(BLACK.stroke_width(FINE_U))
+        .set_all_tick_mark_size(5 * FINE)
         .draw()?;
     for (curve, (colour, dash)) in picture.curves.iter().zip(STROKES.iter().cycle()) {
         for run in visible(&curve.points, y) {
@@ -133,36 +142,37 @@ fn stroke(
     colour: RGBColor,
     dash: Option<(i32, i32)>,
 ) -> Result<(), Failed> {
-    let style = ShapeStyle::from(colour).stroke_width(2);
+    let style = ShapeStyle::from(colour).stroke_width(2 * FINE_U);
     match dash {
         None => chart.draw_series(LineSeries::new(run, style))?,
-        Some((dash, gap)) => chart.draw_series(DashedLineSeries::new(run, dash, gap, style))?,
+        Some((dash, gap)) => chart.draw_series(DashedLineSeries::new(run, dash * FINE, gap * FINE, style))?,
     };
     Ok(())
 }
 
 fn legend(picture: &Picture, area: &DrawingArea<SVGBackend<'_>, Shift>) -> Result<(), Failed> {
-    let words: TextStyle<'_> = ("sans-serif", 16).into_font().color(&BLACK).pos(Pos::new(HPos::Left, VPos::Center));
-    let mut row = 24;
+    let words: TextStyle<'_> =
+        ("sans-serif", 16 * FINE).into_font().color(&BLACK).pos(Pos::new(HPos::Left, VPos::Center));
+    let mut row = 24 * FINE;
     for (curve, (colour, dash)) in picture.curves.iter().zip(STROKES.iter().cycle()) {
-        let style = ShapeStyle::from(colour).stroke_width(2);
-        let (start, end) = (4, 40);
+        let style = ShapeStyle::from(colour).stroke_width(2 * FINE_U);
+        let (start, end) = (4 * FINE, 40 * FINE);
         match dash {
             None => area.draw(&PathElement::new([(start, row), (end, row)], style))?,
             Some((dash, gap)) => {
                 let mut from = start;
                 while from < end {
-                    area.draw(&PathElement::new([(from, row), ((from + dash).min(end), row)], style))?;
-                    from += dash + gap;
+                    area.draw(&PathElement::new([(from, row), ((from + dash * FINE).min(end), row)], style))?;
+                    from += (dash + gap) * FINE;
                 }
             }
         }
-        area.draw(&Text::new(curve.name.as_str(), (48, row), words.clone()))?;
-        row += LEGEND_ROW;
+        area.draw(&Text::new(curve.name.as_str(), (48 * FINE, row), words.clone()))?;
+        row += LEGEND_ROW * FINE;
     }
     if let Some(band) = &picture.band {
-        area.draw(&Rectangle::new([(4, row - 7), (40, row + 7)], SHADE.filled()))?;
-        area.draw(&Text::new(band.name.as_str(), (48, row), words))?;
+        area.draw(&Rectangle::new([(4 * FINE, row - 7 * FINE), (40 * FINE, row + 7 * FINE)], SHADE.filled()))?;
+        area.draw(&Text::new(band.name.as_str(), (48 * FINE, row), words))?;
     }
     Ok(())
 }
