@@ -267,6 +267,52 @@ fn shards_share_an_archive_and_are_reported_on_together() {
 }
 
 #[test]
+fn an_audit_is_made_again_when_a_file_beside_the_notebook_was_changed() {
+    let archive = Archive::new();
+    archive.file("cp.csv", b"T / K,Cp / (J/(K mol))\n300,30\n400,31\n");
+    archive.file("plant.rhai", b"fn doubled(x) { 2 * x }\n");
+    archive.sealed("a.ipynb", "report(\"Cp\", read_csv(\"cp.csv\").column(\"Cp\")[0])");
+    archive.sealed("b.ipynb", "report(\"energy\", plant::doubled(q(\"1.0(1) kJ\")))");
+    archive.sealed("c.ipynb", &energy(3));
+    let state = archive.text("state.json");
+    let lines =
+        || std::fs::read_to_string(&state).unwrap().lines().filter(|line| line.starts_with("{\"audit\"")).count();
+    assert_eq!(archive.audit(&["--resume", &state]).status.code(), Some(0));
+    assert_eq!(archive.audit(&["--resume", &state]).status.code(), Some(0));
+    assert_eq!(lines(), 3, "nothing was changed, and nothing is made again");
+    archive.file("plant.rhai", b"fn doubled(x) { 3 * x }\n");
+    let output = archive.audit(&["--resume", &state]);
+    assert_eq!((output.status.code(), lines()), (Some(1), 4), "{}", out(&output));
+    assert!(about(&out(&output), "b.ipynb").contains("moved"), "{}", out(&output));
+    archive.file("cp.csv", b"T / K,Cp / (J/(K mol))\n300,35\n400,31\n");
+    let output = archive.audit(&["--resume", &state, "--page", &archive.text("page.html")]);
+    assert_eq!(lines(), 5, "{}", out(&output));
+    assert!(about(&out(&output), "a.ipynb").contains("moved"), "{}", out(&output));
+}
+
+#[test]
+fn a_signature_can_be_demanded_and_its_lack_is_named() {
+    let archive = Archive::new();
+    let key = archive.text("plant.key");
+    assert!(hessbook(&["keys", "new", &key]).status.success());
+    for n in 0..12 {
+        archive.sealed(&format!("{n:02}.ipynb"), &energy(n));
+        let sign: &[&str] = if n == 7 { &[] } else { &["--sign", &key] };
+        let name = archive.text(&format!("{n:02}.ipynb"));
+        assert!(hessbook(&[&["seal", &name], sign].concat()).status.success());
+    }
+    let public = format!("{key}.pub");
+    let output = archive.audit(&["--trust", &public]);
+    assert_eq!(output.status.code(), Some(0), "{}", out(&output));
+    assert!(about(&out(&output), "07.ipynb").contains("not signed"), "{}", out(&output));
+    assert!(!about(&out(&output), "08.ipynb").contains("signed"), "one line where there is nothing to say");
+    let output = archive.audit(&["--trust", &public, "--strict-signature"]);
+    assert_eq!(output.status.code(), Some(1), "{}", out(&output));
+    assert!(about(&out(&output), "07.ipynb").contains("differs\n"), "{}", out(&output));
+    assert!(about(&out(&output), "07.ipynb").contains("as was demanded"), "{}", out(&output));
+}
+
+#[test]
 fn reports_are_written_as_a_whole_or_not_at_all() {
     let archive = Archive::new();
     archive.sealed("a.ipynb", &energy(1));
@@ -279,7 +325,8 @@ fn reports_are_written_as_a_whole_or_not_at_all() {
     assert!(junit_text.contains("failures=\"1\"") && junit_text.trim_end().ends_with("</testsuites>"), "{junit_text}");
     let nowhere = archive.audit(&["--page", &archive.text("no-folder/page.html")]);
     assert_eq!(nowhere.status.code(), Some(2));
-    assert!(err(&nowhere).contains("cannot write"), "{}", err(&nowhere));
+    assert!(err(&nowhere).contains("its folder is not there"), "{}", err(&nowhere));
+    assert!(nowhere.stdout.is_empty(), "that is said before anything is audited");
     assert_eq!(std::fs::read_dir(archive.0.path()).unwrap().count(), 4, "nothing is left of what was not written");
 }
 

@@ -36,6 +36,7 @@ pub enum Task {
         /// CODATA year, where another set than today's is wanted.
         constants: Option<u16>,
         trusted: Vec<TrustedKey>,
+        strict_signature: bool,
     },
     /// Compare two editions of a table.
     Revision { old: Table, new: Table },
@@ -74,7 +75,7 @@ impl Order {
     /// There is no such constant set, or a table cannot be used.
     pub fn prepared(&self) -> Result<Prepared, Fault> {
         Ok(match &self.task {
-            Task::Audit { strict_data, from_sources, constants: year, trusted } => {
+            Task::Audit { strict_data, from_sources, constants: year, trusted, strict_signature } => {
                 let mut today = Holdings::shipped();
                 if let Some(year) = year {
                     today = today.with_constants(constants::set(*year).ok_or_else(|| unknown_year(*year))?);
@@ -84,6 +85,7 @@ impl Order {
                     strict_data: *strict_data,
                     from_sources: *from_sources,
                     trusted: trusted.clone(),
+                    strict_signature: *strict_signature,
                     stop: Arc::default(),
                 }))
             }

@@ -129,8 +129,17 @@ pub fn found(arguments: &[PathBuf]) -> Result<Found, PathError> {
         }
     }
     let mut seen = BTreeSet::new();
-    all.notebooks.retain(|path| seen.insert(path.clone()));
+    all.notebooks.retain(|path| seen.insert(place(path)));
     Ok(all)
+}
+
+/// One place for all spellings of a path. A link to a notebook is a notebook of its own.
+fn place(path: &Path) -> PathBuf {
+    let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(Path::new("."));
+    match (std::fs::canonicalize(folder), path.file_name()) {
+        (Ok(folder), Some(name)) => folder.join(name),
+        _ => path.to_owned(),
+    }
 }
 
 impl Found {
@@ -226,6 +235,8 @@ mod tests {
         assert_eq!(names(path, &all), ["a.ipynb", "b/1.IPYNB", "b/2.ipynb", "c/d/3.ipynb"]);
         let twice = found(&[path.join("a.ipynb"), path.to_owned()]).unwrap();
         assert_eq!(names(path, &twice).len(), 4, "each once");
+        let spelt = found(&[path.join("a.ipynb"), path.join("b/../a.ipynb"), path.join("./a.ipynb")]).unwrap();
+        assert_eq!(spelt.notebooks, [path.join("a.ipynb")], "however it is spelt");
     }
 
     #[test]

@@ -17,8 +17,9 @@ use crate::archive::audits::Audits;
 use crate::archive::order::Order;
 use crate::archive::pool::Done;
 use crate::fault::{Explain, Fault};
+use crate::notebook::beside::FileBeside;
 use crate::notebook::file::bytes_of;
-use crate::notebook::verdict::NotebookAudit;
+use crate::notebook::verdict::{AuditStatus, NotebookAudit};
 use crate::source::sha256;
 
 /// Name and version of the shape of the file.
@@ -99,6 +100,27 @@ struct Head {
 struct Entry {
     lost: bool,
     audit: NotebookAudit,
+}
+
+/// The files that an audit rests on.
+#[derive(Clone)]
+struct Rests {
+    sha256: String,
+    beside: Vec<FileBeside>,
+}
+
+impl Rests {
+    /// None for an audit that another try may make better: a file that was missing may be there now.
+    fn of(entry: &Entry) -> Option<Rests> {
+        let again = entry.lost || entry.audit.status == AuditStatus::CouldNotRun;
+        let sha256 = entry.audit.sha256.clone().filter(|_| !again)?;
+        Some(Rests { sha256, beside: entry.audit.beside.clone() })
+    }
+
+    fn are_as_they_were(&self, notebook: &Path) -> bool {
+        bytes_of(notebook).is_ok_and(|bytes| sha256(&bytes) == self.sha256)
+            && self.beside.iter().all(|file| file.is_as_it_was(notebook))
+    }
 }
 
 /// Where an audit stands: in which file, from which byte on.
@@ -183,8 +205,8 @@ impl State {
         Ok(state)
     }
 
-    /// For an audit that goes on where an earlier one stopped, if there was one. Audits of files that were changed since,
-    /// and those whose process was lost, are made again.
+    /// For an audit that goes on where an earlier one stopped, if there was one. Audits of notebooks that were changed since,
+    /// or that have a file beside them that was, are made again, and so are those that could not be made.
     ///
     /// # Errors
     /// The file is of another audit, or cannot be read and written.
@@ -205,7 +227,7 @@ impl State {
         let wanted = head(order, shard);
         let positions: BTreeMap<String, usize> =
             notebooks.iter().enumerate().map(|(nth, path)| (path.display().to_string(), nth)).collect();
-        let mut known: Vec<Option<(u64, Option<String>)>> = vec![None; notebooks.len()];
+        let mut known: Vec<Option<(u64, Rests)>> = vec![None; notebooks.len()];
         let mut any = false;
         let end = state.files[0].borrow_mut().lines(&mut |at, line| {
             match line {
@@ -216,7 +238,7 @@ impl State {
                 }
                 Line::Audit(entry) => {
                     if let Some(&nth) = positions.get(&entry.audit.file) {
-                        known[nth] = (!entry.lost).then_some((at, entry.audit.sha256));
+                        known[nth] = Rests::of(&entry).map(|rests| (at, rests));
                     }
                 }
                 Line::Finished { .. } => {}
@@ -224,8 +246,7 @@ impl State {
             Ok(())
         })?;
         for (nth, known) in known.into_iter().enumerate() {
-            let Some((at, Some(digest))) = known else { continue };
-            if bytes_of(&notebooks[nth]).is_ok_and(|bytes| sha256(&bytes) == digest) {
+            if let Some((at, rests)) = known.filter(|(_, rests)| rests.are_as_they_were(&notebooks[nth])) {
                 state.places[nth] = Some((0, at));
             }
         }

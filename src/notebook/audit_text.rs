@@ -15,6 +15,9 @@ pub fn notebook(audit: &NotebookAudit) -> String {
         (None, Against::RecordedOutputs) => line(&mut text, "not sealed: compared with the results recorded in it"),
         (None, _) => {}
     }
+    for unmet in &audit.unmet {
+        line(&mut text, unmet);
+    }
     for row in &audit.untested {
         line(&mut text, row);
     }
