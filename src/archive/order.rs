@@ -33,8 +33,8 @@ pub enum Task {
     Audit {
         strict_data: bool,
         from_sources: bool,
-        /// CODATA year, where another set than today's is wanted.
-        constants: Option<u16>,
+        /// CODATA year of the set that is taken for today's.
+        constants: u16,
         trusted: Vec<TrustedKey>,
         strict_signature: bool,
     },
@@ -76,10 +76,8 @@ impl Order {
     pub fn prepared(&self) -> Result<Prepared, Fault> {
         Ok(match &self.task {
             Task::Audit { strict_data, from_sources, constants: year, trusted, strict_signature } => {
-                let mut today = Holdings::shipped();
-                if let Some(year) = year {
-                    today = today.with_constants(constants::set(*year).ok_or_else(|| unknown_year(*year))?);
-                }
+                let set = constants::set(*year).ok_or_else(|| unknown_year(*year))?;
+                let today = Holdings::shipped().with_constants(set);
                 Prepared::Audit(Box::new(AuditOptions {
                     today,
                     strict_data: *strict_data,

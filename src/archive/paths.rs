@@ -97,6 +97,8 @@ pub struct Found {
     pub notebooks: Vec<PathBuf>,
     /// Folders that could not be read, with why.
     pub unreadable: Vec<(PathBuf, String)>,
+    /// Digest of the arguments.
+    pub asked: String,
 }
 
 /// The notebooks that files, folders and patterns name. A path that is not there is kept, so that its audit says so.
@@ -104,7 +106,8 @@ pub struct Found {
 /// # Errors
 /// A pattern that matches nothing, or a folder without notebooks: an audit of nothing would pass for one without findings.
 pub fn found(arguments: &[PathBuf]) -> Result<Found, PathError> {
-    let mut all = Found::default();
+    let listed: Vec<String> = arguments.iter().map(|path| format!("{}\n", path.display())).collect();
+    let mut all = Found { asked: sha256(listed.concat().as_bytes()), ..Found::default() };
     for argument in arguments {
         let text = argument.to_string_lossy();
         let is_pattern = text.contains(['*', '?', '[']) && !argument.exists();

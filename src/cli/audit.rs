@@ -21,6 +21,7 @@ use crate::notebook::file::{FileError, write_whole_by};
 use crate::notebook::signature::TrustedKey;
 use crate::notebook::verdict::{AuditStatus, Difference, NotebookAudit, ValueAudit, Verdict};
 use crate::render::harmless::in_one_line;
+use crate::units::constants;
 
 use super::archive::{Printer, Workers, interrupted};
 use super::{Done, err, out, stopped_by_interrupt};
@@ -94,7 +95,7 @@ impl Audit {
         let order = Order::now(Task::Audit {
             strict_data: self.strict_data,
             from_sources: self.from_sources,
-            constants: self.constants,
+            constants: self.constants.unwrap_or(constants::CURRENT),
             strict_signature: self.strict_signature,
             trusted,
         });
@@ -121,6 +122,9 @@ impl Audit {
         let paths = self.paths.iter().map(|path| path.display().to_string()).collect();
         let took = (!state.is_in_parts()).then(|| start.elapsed());
         let mut about = About::of(options, paths, state.ended().unwrap_or_default(), took);
+        // Gathered audits were made by the program that stands in them.
+        let program = &state.order().program;
+        (about.program, about.tables) = (format!("hessbook {}", program.version), program.stdlib.clone());
         about.left_out.extend(self.shard.map(|shard| format!("notebooks of other shards than {shard}")));
         if let Some(path) = &self.page {
             written(path, |out| report::page(state, &about, out))?;
