@@ -128,7 +128,7 @@ fn by_draws(
 
 #[test]
 fn figures_per_mole_of_something_named_are_answered_per_mole_of_it() {
-    let list = |texts: [&str; 3]| Value::List(texts.map(|text| Value::Text(text.into())).to_vec().into());
+    let list = |texts: [&str; 3]| Value::List(texts.map(|text| Value::Text(text.into())).to_vec());
     let named = |cp: [&str; 3]| {
         let map = [("T", list(["290 K", "300 K", "310 K"])), ("Cp", list(cp))];
         fitted(Value::Options(Rc::new(map.map(|(name, list)| (name.to_owned(), list)).into())), &[0.0], &[])
