@@ -8,8 +8,7 @@ use serde::{Deserialize, Serialize};
 
 use crate::fault::Fault;
 use crate::notebook::audit::{AuditOptions, audit_one};
-use crate::notebook::data_change::{compare_data, revised_holdings};
-use crate::notebook::file::bytes_of;
+use crate::notebook::data_change::{compare_data, revised_holdings, table_bytes};
 use crate::notebook::holdings::Holdings;
 use crate::notebook::seal::Engine;
 use crate::notebook::sealing::engine_now;
@@ -42,7 +41,7 @@ pub enum Task {
     Revision { old: Table, new: Table },
 }
 
-/// A table in a file.
+/// A table in a file, or a shipped one by the id of its dataset.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Table {
     pub path: PathBuf,
@@ -53,7 +52,7 @@ impl Table {
     /// # Errors
     /// The file cannot be read.
     pub fn at(path: &Path) -> Result<Table, Fault> {
-        Ok(Table { sha256: sha256(&bytes_of(path)?), path: path.to_owned() })
+        Ok(Table { sha256: sha256(&table_bytes(path)?), path: path.to_owned() })
     }
 }
 
@@ -87,11 +86,10 @@ impl Order {
                     stop: Arc::default(),
                 }))
             }
-            Task::Revision { old, new } => Prepared::Revision {
-                old: revised_holdings(&old.path)?,
-                new: revised_holdings(&new.path)?,
-                stop: Arc::default(),
-            },
+            Task::Revision { old, new } => {
+                let (old, new) = revised_holdings(&old.path, &new.path)?;
+                Prepared::Revision { old, new, stop: Arc::default() }
+            }
         })
     }
 }
