@@ -226,13 +226,20 @@ fn a_module_sees_itself_and_the_library_and_nothing_of_the_cells() {
         let mut bench = Bench::with(&[
             ("m.rhai", "fn f() { helper() }"),
             ("n.rhai", "fn f() { x }"),
+            ("a.rhai", "fn f(x) { Fn(\"helper\").call(x) }"),
+            ("b.rhai", "fn f(x) { x.helper() }"),
+            ("c.rhai", "fn f(x) { let name = \"helper\"; Fn(name).call() }"),
             (
                 "o.rhai",
                 "fn f() { shift_of(\"450 degC\") }\nfn shift_of(T) {\n  reaction(\"CO(g) + H2O(g) -> CO2(g) + H2(g)\").enthalpy(T) }",
             ),
         ]);
-        bench.ok("let x = 1; fn helper() { 1 }");
+        bench.ok("let x = 1; fn helper() { 1 } fn helper(x) { x }");
         assert_eq!(bench.cell("m::f()").unwrap_err().code(), "module-calls-outside");
+        // Nor in ways that the engine resolves only when they run.
+        for by in ["a", "b", "c"] {
+            assert_eq!(bench.cell(&format!("{by}::f(1)")).unwrap_err().code(), "module-calls-outside", "{by}");
+        }
         let fault = bench.cell("n::f()").unwrap_err();
         assert_eq!((fault.code(), &*fault.place().unwrap().cell), ("unknown-variable", "n.rhai"));
         let direct = bench.ok("reaction(\"CO(g) + H2O(g) -> CO2(g) + H2(g)\").enthalpy(\"450 degC\").value(\"J/mol\")");

@@ -16,6 +16,9 @@ pub const ENDING: &str = ".rhai";
 /// The name before `::` that means the constants of a module itself.
 pub const OWN: &str = "global";
 
+/// What makes a function of its name.
+const BY_NAME: &str = "Fn";
+
 /// A function or constant of a module.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct Item {
@@ -72,6 +75,9 @@ impl fmt::Display for ModuleRefusal {
                     "{file} has `{found}` outside its functions, and a module holds functions and constants alone"
                 )
             }
+            ModuleRefusal::CallsOutside { file, function, .. } if function == BY_NAME => {
+                write!(f, "{file} calls a function by a name that is not written out")
+            }
             ModuleRefusal::CallsOutside { file, function, .. } => {
                 write!(f, "{file} calls {function}, which neither it nor the library defines")
             }
@@ -95,6 +101,11 @@ impl Explain for ModuleRefusal {
         match self {
             ModuleRefusal::Statement { .. } => {
                 "write `const NAME = …;` or put it into a function; what computes and reports belongs in a cell"
+                    .to_owned()
+            }
+            ModuleRefusal::CallsOutside { function, .. } if function == BY_NAME => {
+                "write it as in Fn(\"duty\"), the module or the library having duty, or take the function as an argument; the \
+                 functions of cells are not seen from a module"
                     .to_owned()
             }
             ModuleRefusal::CallsOutside { near: Some(near), .. } => format!("did you mean {near}?"),
@@ -169,10 +180,13 @@ pub fn read(file: &str, text: &str) -> Result<Vec<Item>, (ModuleRefusal, usize, 
     Ok(items)
 }
 
-/// Calls of bare names that are none of `known`, with their places. A call behind a dot is one of a value's own.
+/// A call of a name that is none of `known`, with its place; of [`BY_NAME`] where the name is not written out.
+///
+/// Names behind a dot count too, and those in `Fn("…")`: the engine looks for both among the functions of the cell that
+/// called, when they are called.
 pub fn calls_outside(text: &str, known: impl Fn(&str) -> bool) -> Option<(String, usize, usize)> {
     // Words that the engine itself reads as calls, or that only look like one.
-    const LANGUAGE: [&str; 17] = [
+    const LANGUAGE: [&str; 16] = [
         "if",
         "while",
         "until",
@@ -184,7 +198,6 @@ pub fn calls_outside(text: &str, known: impl Fn(&str) -> bool) -> Option<(String
         "catch",
         "and",
         "or",
-        "Fn",
         "call",
         "curry",
         "type_of",
@@ -197,10 +210,21 @@ pub fn calls_outside(text: &str, known: impl Fn(&str) -> bool) -> Option<(String
         let called = tokens.get(index + 1).is_some_and(|next| next.is("(") || next.is("()"));
         let behind = index.checked_sub(1).is_some_and(|before| {
             let before = &tokens[before];
-            before.is(".") || before.is("?.") || before.is("::") || before.is("fn")
+            before.is("::") || before.is("fn")
         });
-        let ours = defined.contains(token.text) || LANGUAGE.contains(&token.text) || known(token.text);
-        if token.kind == Kind::Word && called && !behind && !ours {
+        let defined = |name: &str| defined.contains(name) || known(name);
+        if token.kind != Kind::Word || !called || behind {
+            continue;
+        }
+        if token.is(BY_NAME) {
+            let name = match tokens.get(index + 2..index + 4) {
+                Some([text, end]) if text.kind == Kind::Text && end.is(")") => text.text.trim_matches('"'),
+                _ => BY_NAME,
+            };
+            if !defined(name) {
+                return Some((name.to_owned(), token.line, token.column));
+            }
+        } else if !(LANGUAGE.contains(&token.text) || defined(token.text)) {
             return Some((token.text.to_owned(), token.line, token.column));
         }
     }
@@ -304,9 +328,22 @@ mod tests {
     fn calls_of_what_is_defined_nowhere_are_found() {
         let known = |name: &str| name == "q";
         assert_eq!(
-            calls_outside("fn f(x) { if (x) { q(\"1 K\") } else { x.g(1) + f(2) + other::h(3) } }", known),
+            calls_outside(
+                r#"fn f(x) { if (x) { q("1 K") } else { x.f(1) + f(2) + other::h(3) + [1].map(Fn("f")).q() } }"#,
+                |name| known(name) || name == "map"
+            ),
             None
         );
+        for (text, name, column) in [
+            ("fn f(x) { x.helper() }", "helper", 13),
+            ("fn f(x) { x?.helper(1) }", "helper", 14),
+            ("fn f(x) { Fn(\"helper\").call(x) }", "helper", 11),
+            ("fn f(x) { Fn(`helper`).call(x) }", "Fn", 11),
+            ("fn f(x) { Fn(x).call(1) }", "Fn", 11),
+            ("fn f(x) { Fn(\"f\" + x).call(1) }", "Fn", 11),
+        ] {
+            assert_eq!(calls_outside(text, known), Some((name.to_owned(), 1, column)), "{text}");
+        }
         assert_eq!(calls_outside("fn f(x) {\n  helper (x) }", known), Some(("helper".to_owned(), 2, 3)));
     }
 }

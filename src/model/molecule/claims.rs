@@ -141,10 +141,16 @@ pub fn rigid_rotor(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
         (Motion::Atom, _) | (Motion::Diatomic { .. }, VibrationAs::Levels) => return Vec::new(),
         (Motion::Polyatomic { .. }, _) if definition.distortion.is_some() => {
             if treatment.stretched {
-                return Vec::new();
+                return short_of(call, definition)
+                    .map_or_else(Vec::new, |tested| finding("rigid-rotor", call, value, tested));
             }
             let better = molecule.taken(Treatment { stretched: true, ..*treatment });
-            with_words(anew(cx, call, better), "a rotor that stretches by the distortion constants given")
+            let words = if definition.lacks_delta {
+                "a rotor that stretches by the distortion constants given, among which δ_J and δ_K are missing"
+            } else {
+                "a rotor that stretches by the distortion constants given"
+            };
+            with_words(anew(cx, call, better), words)
         }
         (Motion::Diatomic { .. }, _) => {
             let better = molecule.taken(Treatment { vibration: VibrationAs::Levels, ..*treatment });
@@ -166,6 +172,25 @@ pub fn rigid_rotor(cx: &Cx, call: &Call, value: &Quantity) -> Vec<Finding> {
     finding("rigid-rotor", call, value, tested)
 }
 
+/// What the distortion constants that were given leave open: their next order, where it counts, and δ_J and δ_K.
+fn short_of(call: &Call, definition: &Definition) -> Option<Tested> {
+    let rho = definition.distortion.as_ref()?;
+    let rho_t = rho.value * call.quantity(1).si();
+    if rho_t.abs() > stretching::RHO_T_MAX {
+        let [rho_t, most] = [rho_t, stretching::RHO_T_MAX].map(|value| round::significant(value, 2));
+        let why = format!(
+            "stretching is taken to first order, and rho T, what it adds to U/RT, is {rho_t}: above {most} the next order is \
+             more than 0.1 J/(K mol) of Cp"
+        );
+        return Some(Tested::False { why, value: None });
+    }
+    definition.lacks_delta.then(|| Tested::Missing {
+        what: "stretching is taken with Δ_J, Δ_JK and Δ_K alone; δ_J and δ_K, which a top with no two rotational constants \
+               alike also has, are not known"
+            .to_owned(),
+    })
+}
+
 /// That no distortion constants are known, and what a harmonic force field would allow them to bring.
 fn unstretched(cx: &Cx, call: &Call, molecule: &Molecule) -> String {
     let missing = format!("distortion constants of {} are not known", molecule.text());
@@ -178,7 +203,9 @@ fn unstretched(cx: &Cx, call: &Call, molecule: &Molecule) -> String {
     };
     let with = |rho: f64| -> Option<f64> {
         let distortion = Some(Parameter::exact(stretching::NAME, rho));
-        let stretched = Molecule::new(Definition { distortion, ..definition.clone() }, *molecule.treatment());
+        // Also where a rotor was asked for that is rigid: the row says what that leaves out.
+        let treatment = Treatment { stretched: true, ..*molecule.treatment() };
+        let stretched = Molecule::new(Definition { distortion, ..definition.clone() }, treatment);
         let mut args = call.args.clone();
         args[0] = Value::Molecule(Rc::new(stretched));
         let value = answers::value(cx, &Rc::new(Call { card: call.card, args }), false).ok()?;

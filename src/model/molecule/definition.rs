@@ -30,6 +30,8 @@ pub struct Definition {
     pub by_group: Option<(Arc<str>, f64)>,
     /// ρ of `stretching.rs`, 1/K, where distortion constants were given.
     pub distortion: Option<Parameter>,
+    /// Whether δ_J and δ_K of a top with no two rotational constants alike are not in it.
+    pub lacks_delta: bool,
     /// Factor on all wavenumbers of vibrations, for the thermal functions.
     pub scale: Option<Parameter>,
     /// Factor for the zero-point energy.

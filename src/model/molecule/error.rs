@@ -33,6 +33,8 @@ pub enum MoleculeError {
     RotationalConstants { formula: String, atoms: usize, given: usize },
     #[error("`distortion` has a list of {given}, and {wanted}")]
     Distortion { given: usize, wanted: &'static str },
+    #[error("the distortion constant {value} is not small against the rotational constant {of}")]
+    DistortionLarge { value: String, of: String },
     #[error("`{symbol}` is no point group")]
     PointGroup { symbol: String },
     #[error("{name} is {recorded} on record, and {given} is given")]
@@ -78,6 +80,7 @@ impl Explain for MoleculeError {
             MoleculeError::SymmetryNumber { .. } => "symmetry-number-impossible",
             MoleculeError::RotationalConstants { .. } => "rotational-constants-count",
             MoleculeError::Distortion { .. } => "distortion-constants-count",
+            MoleculeError::DistortionLarge { .. } => "distortion-constant-large",
             MoleculeError::PointGroup { .. } => "point-group-unknown",
             MoleculeError::Formula { .. } => "molecule-formula-differs",
             MoleculeError::Degeneracy { .. } => "degeneracy-impossible",
@@ -130,6 +133,11 @@ impl Explain for MoleculeError {
             }
             MoleculeError::Distortion { .. } => {
                 "give as many as belong to the molecule, as in `distortion: [\"1.33e-7 cm^-1\"]` of CO2, or leave them out"
+                    .to_owned()
+            }
+            MoleculeError::DistortionLarge { .. } => {
+                "distortion is the small correction of a rigid rotor, below a twentieth of its largest constant: look at the \
+                 unit, as in `distortion: [\"1.33e-7 cm^-1\"]` of CO2, or leave it out"
                     .to_owned()
             }
             MoleculeError::PointGroup { .. } => {

@@ -255,7 +255,9 @@ impl<'a> Reader<'a> {
             }
             other => other,
         };
-        let distortion = stretching::given(&motion, &self.thetas("distortion", Sign::Any)?)?;
+        let constants = self.thetas("distortion", Sign::Any)?;
+        let distortion = stretching::given(&motion, &constants)?;
+        let lacks_delta = stretching::lacks_delta(&motion, constants.len());
         let factor = |key: &str| -> Result<Option<Parameter>, Fault> {
             let Some(value) = self.map.get(key) else { return Ok(None) };
             let quantity = match value {
@@ -289,6 +291,7 @@ impl<'a> Reader<'a> {
             symmetry_given,
             by_group,
             distortion,
+            lacks_delta,
             scale: factor("scale")?,
             scale_zero_point: factor("scale_zero_point")?,
             formation: self.formation()?,

@@ -127,6 +127,7 @@ fn definition(cx: &Cx, substance: Arc<Substance>, record: &Constants) -> Result<
         symmetry_given: true,
         by_group: record.point_group.as_ref().map(|group| (Arc::clone(group), symmetry_number)),
         distortion: None,
+        lacks_delta: false,
         scale: None,
         scale_zero_point: None,
         formation: None,

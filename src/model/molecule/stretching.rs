@@ -4,19 +4,22 @@
 //! being distributed as in a classical rigid top:
 //!
 //! linear: ρT = 2 D kT/B²
-//! others: ρT = [Δ_J⟨J⁴⟩ + Δ_JK⟨J²J_z²⟩ + Δ_K⟨J_z⁴⟩]/kT     ⟨J_i²⟩ = s_i = kT/2B_i, normal, each axis by itself
+//! others: ρT = [Δ_J⟨J⁴⟩ + Δ_JK⟨J²J_z²⟩ + Δ_K⟨J_z⁴⟩ + 2δ_J⟨J²(J_x² − J_y²)⟩ + 2δ_K⟨J_z²(J_x² − J_y²)⟩]/kT
+//!         ⟨J_i²⟩ = s_i = kT/2B_i, normal, each axis by itself; x, y, z are the axes of B, C, A where no two are alike
 //! from wavenumbers: ρT = Σ_k ⟨(½ Σ a_k^{αβ} ω_α ω_β)²⟩/(2 λ_k kT), a_k the change of the moments of inertia along mode k
 //!
 //! | symbol            | unit | meaning                                                                     |
 //! |-------------------|------|-----------------------------------------------------------------------------|
 //! | B_i               | K    | rotational constants, as temperatures                                       |
 //! | D, Δ_J, Δ_JK, Δ_K | K    | distortion constants, quartic, as temperatures; z is the axis of a symmetric top, else that of A |
+//! | δ_J, δ_K          | K    | the other two of a top with no two B alike, in the A reduction              |
 //! | λ_k               | s⁻²  | square of the angular frequency of mode k                                   |
 //!
 //! The a_k are not known from wavenumbers alone, but over all modes they add up to a function of the rotational constants,
 //! |∇(ω·I·ω)|² = 4 ω² (ω·I·ω) less what turning the frame takes. So for a linear molecule with a single stretch that changes
 //! its length, of two atoms or XYX, ρ is exact in a harmonic force field, D = 4B³/ν²; for all others it is bracketed by putting
-//! everything into the lowest or the highest mode. Sextic and higher constants are left out.
+//! everything into the lowest or the highest mode. Sextic and higher constants are left out. The next order of D alone adds
+//! 15(ρT)² to Cv/R of a linear molecule, from ln q = ln ∫ exp(−y + εy²) dy = 2ε + 10ε², ε = DkT/B²; see [`RHO_T_MAX`].
 //! Source: E. B. Wilson, J. Chem. Phys. 4, 526 (1936); D. Kivelson, E. B. Wilson, J. Chem. Phys. 20, 1575 (1952); constants as
 //! defined by J. K. G. Watson, J. Chem. Phys. 46, 1935 (1967); all from memory. The sum over modes follows from completeness.
 
@@ -24,9 +27,17 @@ use smallvec::SmallVec;
 
 use crate::model::molecule::definition::{Definition, Motion};
 use crate::model::molecule::error::MoleculeError;
-use crate::model::molecule::parameter::Parameter;
+use crate::model::molecule::parameter::{self, Parameter};
 
 pub const NAME: &str = "centrifugal stretching";
+
+/// ρT above which first order is not enough: there the next order of a linear molecule, 15R(ρT)², is 0.1 J/(mol K), what
+/// tables of heat capacities are commonly held to (common practice, no source).
+pub const RHO_T_MAX: f64 = 0.028;
+
+/// Largest part of a rotational constant that a distortion constant may be. That of H2 is 8e-4 and that of CH2, which bends
+/// to a line easily, 0.03 (from memory); beyond, no series in J² describes the levels (common practice, no source).
+const PART_MAX: f64 = 0.05;
 
 /// ρ of the constants that someone gave; `None` where there are none.
 ///
@@ -39,13 +50,29 @@ pub fn given(motion: &Motion, given: &[Parameter]) -> Result<Option<Parameter>, 
     let (rho, wanted) = match motion {
         Motion::Polyatomic { top, .. } if top.len() == 1 => (of_constants(top, given), "a linear molecule has one, D"),
         Motion::Polyatomic { top, .. } => {
-            let wanted = "a molecule that is not linear has Δ_J, Δ_JK and Δ_K, a spherical top D alone";
+            let wanted = "a molecule that is not linear has Δ_J, Δ_JK and Δ_K, with δ_J and δ_K where no two rotational \
+                          constants are alike; a spherical top has D alone";
             (of_constants(top, given), wanted)
         }
         Motion::Diatomic { .. } => (None, "the levels of a molecule with `we` follow from that, `Be` and `De`"),
         Motion::Atom => (None, "an atom does not rotate"),
     };
-    rho.map(Some).ok_or(MoleculeError::Distortion { given: given.len(), wanted })
+    let rho = rho.ok_or(MoleculeError::Distortion { given: given.len(), wanted })?;
+    if let Motion::Polyatomic { top, .. } = motion {
+        let largest = top.iter().fold(0.0_f64, |most, b| most.max(b.value));
+        if let Some(constant) = given.iter().find(|d| d.value.abs() > PART_MAX * largest) {
+            let (value, of) = (parameter::per_cm(constant.value), parameter::per_cm(largest));
+            return Err(MoleculeError::DistortionLarge { value, of });
+        }
+    }
+    Ok(Some(rho))
+}
+
+/// Whether constants of a top with no two B alike lack δ_J and δ_K.
+pub fn lacks_delta(motion: &Motion, given: usize) -> bool {
+    let Motion::Polyatomic { top, .. } = motion else { return false };
+    given == 3
+        && matches!(top.as_slice(), [a, b, c] if ![(a, b), (b, c), (c, a)].iter().any(|(p, q)| alike(p.value, q.value)))
 }
 
 /// ρ in 1/K of a molecule with these rotational and distortion constants; `None` where their numbers do not fit.
@@ -56,9 +83,12 @@ pub fn of_constants(top: &[Parameter], distortion: &[Parameter]) -> Option<Param
             Some(gathered(per_d * d.value, &[(d, per_d), (b, -2.0 * per_d * d.value / b.value)]))
         }
         ([a, b, c], [j]) if alike(a.value, b.value) && alike(b.value, c.value) => {
-            Some(of_top(top, [j, &zero(), &zero()]))
+            Some(of_top(top, [j, &zero(), &zero(), &zero(), &zero()]))
         }
-        ([_, _, _], [j, jk, k]) => Some(of_top(top, [j, jk, k])),
+        ([_, _, _], [j, jk, k]) => Some(of_top(top, [j, jk, k, &zero(), &zero()])),
+        ([a, b, c], [j, jk, k, dj, dk]) if ![(a, b), (b, c), (c, a)].iter().any(|(p, q)| alike(p.value, q.value)) => {
+            Some(of_top(top, [j, jk, k, dj, dk]))
+        }
         _ => None,
     }
 }
@@ -71,21 +101,30 @@ fn zero() -> Parameter {
     Parameter::exact(NAME, 0.0)
 }
 
-fn of_top(top: &[Parameter], [j, jk, k]: [&Parameter; 3]) -> Parameter {
+fn of_top(top: &[Parameter], [j, jk, k, dj, dk]: [&Parameter; 5]) -> Parameter {
     let b: Vec<f64> = top.iter().map(|b| b.value).collect();
     let z = axis(&b);
     let s: Vec<f64> = b.iter().map(|b| 0.5 / b).collect();
     let (sum, squares) = (s.iter().sum::<f64>(), s.iter().map(|s| s * s).sum::<f64>());
     let (j4, j2z2, z4) = (sum * sum + 2.0 * squares, s[z] * (sum + 2.0 * s[z]), 3.0 * s[z] * s[z]);
-    let mut by = vec![(j, j4), (jk, j2z2), (k, z4)];
+    // The axis of B is x and that of C is y.
+    let (p, q) = ((z + 1) % 3, (z + 2) % 3);
+    let (x, y) = if b[p] >= b[q] { (p, q) } else { (q, p) };
+    let apart = s[x] - s[y];
+    let (j2xy, z2xy) = (2.0 * (apart * sum + 2.0 * (s[x] * s[x] - s[y] * s[y])), 2.0 * s[z] * apart);
+    let mut by = vec![(j, j4), (jk, j2z2), (k, z4), (dj, j2xy), (dk, z2xy)];
     for (nth, b) in top.iter().enumerate() {
         let of_z = if nth == z { sum + 4.0 * s[z] } else { 0.0 };
+        let sign = f64::from(i8::from(nth == x) - i8::from(nth == y));
         let by_s = j.value * (2.0 * sum + 4.0 * s[nth])
             + jk.value * (s[z] + of_z)
-            + k.value * if nth == z { 6.0 * s[z] } else { 0.0 };
+            + k.value * if nth == z { 6.0 * s[z] } else { 0.0 }
+            + 2.0 * dj.value * (apart + sign * (sum + 4.0 * s[nth]))
+            + 2.0 * dk.value * if nth == z { apart } else { sign * s[z] };
         by.push((b, -2.0 * s[nth] * s[nth] * by_s));
     }
-    gathered(j.value * j4 + jk.value * j2z2 + k.value * z4, &by)
+    let quartic = j.value * j4 + jk.value * j2z2 + k.value * z4;
+    gathered(quartic + dj.value * j2xy + dk.value * z2xy, &by)
 }
 
 /// The axis whose quantum number the constants are written with: the one that differs from two alike, else that of A.
@@ -192,6 +231,57 @@ mod tests {
             let rho = of_constants(&parameters(&[b, c, b]), &parameters(&[dj, djk, dk])).unwrap().value;
             assert!((rho * t / exact - 1.0).abs() < 10.0 * rho * t + 2.0 * b.max(c) / t, "{} {exact}", rho * t);
         }
+    }
+
+    #[test]
+    fn a_top_with_no_two_alike_agrees_with_the_sum_over_its_levels() {
+        use nalgebra::DMatrix;
+        // Water in kelvin, from memory. First order: the mean of the A-reduced operators over the levels of the rigid top.
+        const C2: f64 = 1.438_777;
+        let [a, b, c] = [27.877, 14.512, 9.285].map(|b| C2 * b);
+        let d = [1.25e-3, -5.77e-3, 3.25e-2, 5.08e-4, 1.3e-3].map(|d| C2 * d);
+        let (t, mut q, mut means) = (1000.0, 0.0, [0.0; 5]);
+        for j in 0..38_i32 {
+            let (jj, size) = (f64::from(j * (j + 1)), (2 * j + 1) as usize);
+            let k = |n: usize| n as f64 - f64::from(j);
+            let unit = DMatrix::<f64>::identity(size, size);
+            let z2 = DMatrix::from_fn(size, size, |m, n| if m == n { k(m) * k(m) } else { 0.0 });
+            // J_x² − J_y² is half of J₊² + J₋².
+            let xy = DMatrix::from_fn(size, size, |m, n| {
+                let low = k(m.min(n));
+                let up = |k: f64| jj - k * (k + 1.0);
+                if m.abs_diff(n) == 2 { 0.5 * math::sqrt(up(low) * up(low + 1.0)) } else { 0.0 }
+            });
+            let rigid = &unit * (0.5 * (b + c) * jj) + &z2 * (a - 0.5 * (b + c)) + &xy * (0.5 * (b - c));
+            let terms =
+                [&unit * (jj * jj), &z2 * jj, &z2 * &z2, &xy * (2.0 * jj), &z2 * &xy + &xy * &z2].map(|term| term / t);
+            let levels = rigid.symmetric_eigen();
+            for (energy, state) in levels.eigenvalues.iter().zip(levels.eigenvectors.column_iter()) {
+                let weight = f64::from(2 * j + 1) * math::exp(-energy / t);
+                q += weight;
+                for (mean, term) in means.iter_mut().zip(&terms) {
+                    *mean += weight * state.dot(&(term * state));
+                }
+            }
+        }
+        let rho_t = |d: &[f64]| of_constants(&parameters(&[a, b, c]), &parameters(d)).unwrap().value * t;
+        let five: Vec<f64> = means.iter().zip(d).map(|(mean, d)| mean / q * d).collect();
+        for (nth, exact) in five.iter().enumerate() {
+            let mut alone = [0.0; 5];
+            alone[nth] = d[nth];
+            // Bound: a classical sum in place of one over levels, some B/T.
+            let got = rho_t(&alone);
+            assert!((got / exact - 1.0).abs() < 3.0 * a / t, "{nth}: {got} {exact}");
+        }
+        let (got, exact) = (rho_t(&d), five.iter().sum::<f64>());
+        assert!((got / exact - 1.0).abs() < a / t, "{got} {exact}");
+        let top = |by: [f64; 3]| [a * by[0], b * by[1], c * by[2]].map(|b| Parameter::exact("", b));
+        let rho = |by| of_constants(&top(by), &parameters(&d)).unwrap().value;
+        // As all B grow together, ρ falls with their square.
+        assert!((rho([1.1, 1.1, 1.1]) * 1.1 * 1.1 / rho([1.0; 3]) - 1.0).abs() < 1e-12);
+        // The order in which the B are written does not matter.
+        let turned = of_constants(&parameters(&[c, a, b]), &parameters(&d)).unwrap().value * t;
+        assert!((turned / got - 1.0).abs() < 1e-12);
     }
 
     #[test]
