@@ -271,7 +271,7 @@ fn a_failure_names_cause_and_size_and_a_move_under_todays_data_is_a_note() {
     let (message, description) = (message.unwrap().into_string(), description.unwrap().into_string());
     let moved = value("edited", "shift enthalpy at outlet").under_sealed.moved.as_ref().unwrap();
     assert!(message.contains(&moved.shown), "{message}");
-    assert!(description.contains("edited cell: cell-1") && description.contains("parts at"), "{description}");
+    assert!(description.contains("edited cell: cell-1") && description.contains("first differs at"), "{description}");
     let note = case("revised", "methanation enthalpy by the tables").system_out.unwrap().into_string();
     assert!(note.contains("formation properties of CO2(g) in atct-1.112"), "{note}");
 }

@@ -2,10 +2,9 @@
 
 use std::collections::BTreeMap;
 
-use crate::archive::tally::is_same_again;
 use crate::notebook::verdict::{
-    Against, AuditFault, AuditStatus, Cause, Difference, Move, NotebookAudit, SealFacts, SideBySide, Signed,
-    ValueAudit, Verdict,
+    Against, AuditFault, AuditStatus, Cause, Difference, Move, NotebookAudit, OutputDiffers, SealFacts, SideBySide,
+    Signed, ValueAudit, Verdict,
 };
 use crate::quantity::round::significant;
 use crate::units;
@@ -32,7 +31,7 @@ pub fn seal_words(seal: &SealFacts) -> String {
     };
     let draft = if seal.draft { ", as a draft" } else { "" };
     let whole = if seal.whole { "" } else { "; ALTERED after it was made: its content is not what its digest says" };
-    format!("sealed {}{draft}, {author}; {}{whole}", seal.sealed, signature_words(seal))
+    format!("sealed {}{draft}, {author}{}; {}{whole}", seal.sealed, seal.set_words(), signature_words(seal))
 }
 
 /// What is known of a signature, and nothing more.
@@ -139,6 +138,8 @@ pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
             reasons.push("its signature does not hold".to_owned());
         }
     }
+    reasons.extend(audit.seal.iter().flat_map(|seal| seal.contradictions.iter().cloned()));
+    reasons.extend(audit.outputs.iter().map(OutputDiffers::words));
     let sides: &[Side] = match (audit.against, strict_data) {
         (Against::Seal, true) => &[
             ("under the sealed data", |value| value.under_sealed.verdict),
@@ -153,9 +154,14 @@ pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
             reasons.push(format!("{under}: {worse}"));
         }
     }
-    let otherwise = audit.from_sources.iter().flatten().filter(|one| !is_same_again(one)).count();
+    let derived = || audit.from_sources.iter().flatten().filter(|one| !one.is_same());
+    let otherwise = derived().filter(|one| one.value.is_some()).count();
     if otherwise > 0 {
         reasons.push(format!("{} derived again otherwise than sealed", counted(otherwise, "value")));
+    }
+    let not_at_all = derived().filter(|one| one.value.is_none()).count();
+    if not_at_all > 0 {
+        reasons.push(format!("{} that could not be derived again", counted(not_at_all, "value")));
     }
     reasons.extend(edits(audit));
     reasons

@@ -3,7 +3,7 @@
 use std::fmt::Write as _;
 
 use crate::notebook::verdict::{
-    Against, Move, NotebookAudit, Outcome, Rederived, SealFacts, Signed, ValueAudit, Verdict,
+    Against, AuditFault, Move, NotebookAudit, Outcome, Rederived, SealFacts, Signed, ValueAudit, Verdict,
 };
 use crate::render::harmless::in_one_line;
 
@@ -25,8 +25,14 @@ pub fn notebook(audit: &NotebookAudit) -> String {
             &format!("{}: {} then, {} now", difference.what, short(&difference.sealed), short(&difference.now)),
         );
     }
+    for output in &audit.outputs {
+        line(&mut text, &output.words());
+    }
+    for what in audit.seal.iter().flat_map(|seal| &seal.contradictions) {
+        line(&mut text, what);
+    }
     for fault in &audit.faults {
-        line(&mut text, &format!("under {}: {}: {}", fault.under, fault.fault.cell, fault.fault.message));
+        line(&mut text, &fault_words(fault, &audit.file));
         line(&mut text, &format!("  try: {}", fault.fault.hint));
     }
     if !audit.values.is_empty() {
@@ -58,7 +64,7 @@ pub fn notebook(audit: &NotebookAudit) -> String {
 /// What came of deriving values again: those that are the same counted, the others one by one.
 fn from_sources(all: &[Rederived]) -> String {
     let mut text = String::new();
-    let same = |one: &&Rederived| one.same && one.u_same != Some(false);
+    let same = |one: &&Rederived| one.is_same();
     let whole = all.iter().filter(same).filter(|one| one.not_rederived.is_empty()).count();
     line(
         &mut text,
@@ -66,19 +72,16 @@ fn from_sources(all: &[Rederived]) -> String {
     );
     for one in all.iter().filter(|one| !(same(one) && one.not_rederived.is_empty())) {
         let steps = if one.steps == 1 { "1 step".to_owned() } else { format!("{} steps", one.steps) };
-        let words = match (&one.value, same(&one)) {
-            (_, true) => format!("the same, with {} of {steps} taken as sealed", one.not_rederived.len()),
-            (Some(value), false) => {
-                format!("derived again as {value}, off by {}", one.off_by.as_deref().unwrap_or("?"))
-            }
-            (None, false) => "could not be derived again".to_owned(),
+        let words = match one.is_same() {
+            true => format!("the same, with {} of {steps} taken as sealed", one.not_rederived.len()),
+            false => one.otherwise_words(),
         };
         line(&mut text, &format!("  {}: {words}", one.label));
         for step in &one.not_rederived {
             line(&mut text, &format!("    not re-derived: {step}"));
         }
         if let Some(parts_at) = &one.parts_at {
-            line(&mut text, &format!("    parts at {parts_at}"));
+            line(&mut text, &format!("    first differs at {parts_at}"));
         }
     }
     text
@@ -92,11 +95,20 @@ pub fn data_change(audit: &NotebookAudit) -> String {
     }
     let mut text = format!("{}\n", in_one_line(&audit.file));
     for fault in &audit.faults {
-        line(&mut text, &format!("under {}: {}: {}", fault.under, fault.fault.cell, fault.fault.message));
+        line(&mut text, &fault_words(fault, &audit.file));
     }
     summed_causes(audit).iter().for_each(|cause| line(&mut text, cause));
     audit.values.iter().for_each(|value| text.push_str(&changed(value, Against::RecordedOutputs)));
     text
+}
+
+/// What is wrong with the file itself came up under no data, and its message names the file.
+fn fault_words(AuditFault { under, fault }: &AuditFault, file: &str) -> String {
+    match under.as_str() {
+        "the file" => fault.message.clone(),
+        _ if fault.cell == file => format!("under {under}: {}", fault.message),
+        _ => format!("under {under}: {}: {}", fault.cell, fault.message),
+    }
 }
 
 fn line(text: &mut String, words: &str) {
@@ -113,26 +125,33 @@ fn seal_words(seal: &SealFacts) -> String {
         Signed::Valid { key, trusted: None } => format!("; signed with the key {key}, which is not among the trusted"),
         Signed::Invalid { key, why } => format!("; THE SIGNATURE with the key {key} DOES NOT HOLD: {why}"),
     };
-    format!("sealed {}{author}{draft}{signed}{whole}", seal.sealed)
+    format!("sealed {}{author}{draft}{}{signed}{whole}", seal.sealed, seal.set_words())
 }
 
 /// Every cause once, with the number of values it moved: what an auditor wants to know first where many values moved.
 fn summed_causes(audit: &NotebookAudit) -> Vec<String> {
-    let mut causes: Vec<(String, Vec<&str>)> = Vec::new();
+    // With each cause the labels of its values, and whether it moves one: another unit is a change without a move.
+    let mut causes: Vec<(String, Vec<(&str, bool)>)> = Vec::new();
     for value in &audit.values {
         let moves = [&value.under_sealed.moved, &value.under_today.moved].into_iter().flatten();
         for cause in moves.flat_map(|moved| &moved.causes) {
             let words = format!("{}: {}", cause.kind.word(), cause.what);
-            match causes.iter_mut().find(|(known, _)| *known == words) {
-                Some((_, labels)) if labels.contains(&value.label.as_str()) => {}
-                Some((_, labels)) => labels.push(&value.label),
-                None => causes.push((words, vec![&value.label])),
+            let moves = cause.share.as_deref() != Some("0");
+            let at = causes.iter().position(|(known, _)| *known == words).unwrap_or_else(|| {
+                causes.push((words, Vec::new()));
+                causes.len() - 1
+            });
+            let labels = &mut causes[at].1;
+            match labels.iter_mut().find(|(label, _)| *label == value.label) {
+                Some((_, moved)) => *moved |= moves,
+                None => labels.push((&value.label, moves)),
             }
         }
     }
-    let words = |(cause, labels): (String, Vec<&str>)| {
-        let values = if labels.len() == 1 { "1 value".to_owned() } else { format!("{} values", labels.len()) };
-        format!("cause: {cause}; it moves {values}")
+    let values = |n: usize| if n == 1 { "1 value".to_owned() } else { format!("{n} values") };
+    let words = |(cause, labels): (String, Vec<(&str, bool)>)| match labels.iter().filter(|(_, moves)| *moves).count() {
+        0 => format!("cause: {cause}; it changes {}, and moves none", values(labels.len())),
+        moved => format!("cause: {cause}; it moves {}", values(moved)),
     };
     causes.into_iter().map(words).collect()
 }

@@ -134,3 +134,13 @@ fn records_and_measurements_beside_the_notebook_are_read_again_from_the_seal() {
     ];
     all_derived(&cells, &files, 2);
 }
+
+#[test]
+fn an_open_mole_that_takes_its_name_on_the_way_into_a_unit_is_bound_again() {
+    all_derived(
+        &["let h = reaction(\"N2(g) + 3 H2(g) -> 2 NH3(g)\").enthalpy(\"500 K\");
+           report(\"heat\", (q(\"2 mol\") * h.per(\"NH3\")).to(\"kJ\"));"],
+        &[],
+        1,
+    );
+}
