@@ -15,7 +15,8 @@ use crate::archive::words::{
     verdict_counts,
 };
 use crate::notebook::verdict::{
-    Against, AuditStatus, Figure, Justification, NotebookAudit, Outcome, SideBySide, StepPair, ValueAudit, Verdict,
+    Against, AuditStatus, Figure, Justification, NotebookAudit, Outcome, OutputDiffers, SideBySide, StepPair,
+    ValueAudit, Verdict,
 };
 
 /// Derivations up to this number are unfolded from the start.
@@ -195,7 +196,9 @@ pub fn not_same(audit: &NotebookAudit, at: &At) -> Vec<Value> {
     if audit.status.exit() == 0 {
         return Vec::new();
     }
-    let reasons = reasons(audit, at.about.strict_data);
+    let mut reasons = reasons(audit, at.about.strict_data);
+    reasons.extend(audit.seal.iter().flat_map(|seal| seal.contradictions.iter().cloned()));
+    reasons.extend(audit.outputs.iter().map(OutputDiffers::words));
     vec![json!({ "file": audit.file, "status": audit.status.word(), "reasons": reasons })]
 }
 

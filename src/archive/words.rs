@@ -3,8 +3,8 @@
 use std::collections::BTreeMap;
 
 use crate::notebook::verdict::{
-    Against, AuditFault, AuditStatus, Cause, Difference, Move, NotebookAudit, OutputDiffers, SealFacts, SideBySide,
-    Signed, ValueAudit, Verdict,
+    Against, AuditFault, AuditStatus, Cause, Difference, Move, NotebookAudit, SealFacts, SideBySide, Signed,
+    ValueAudit, Verdict,
 };
 use crate::quantity::round::significant;
 use crate::units;
@@ -138,8 +138,9 @@ pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
             reasons.push("its signature does not hold".to_owned());
         }
     }
-    reasons.extend(audit.seal.iter().flat_map(|seal| seal.contradictions.iter().cloned()));
-    reasons.extend(audit.outputs.iter().map(OutputDiffers::words));
+    if !audit.outputs.is_empty() {
+        reasons.push(format!("{} not as sealed", counted(audit.outputs.len(), "recorded output")));
+    }
     let sides: &[Side] = match (audit.against, strict_data) {
         (Against::Seal, true) => &[
             ("under the sealed data", |value| value.under_sealed.verdict),
