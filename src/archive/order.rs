@@ -32,9 +32,10 @@ pub enum Task {
     Audit {
         strict_data: bool,
         from_sources: bool,
-        /// CODATA year, where another set than today's is wanted.
-        constants: Option<u16>,
+        /// CODATA year of the set that is taken for today's.
+        constants: u16,
         trusted: Vec<TrustedKey>,
+        strict_signature: bool,
     },
     /// Compare two editions of a table.
     Revision { old: Table, new: Table },
@@ -73,16 +74,15 @@ impl Order {
     /// There is no such constant set, or a table cannot be used.
     pub fn prepared(&self) -> Result<Prepared, Fault> {
         Ok(match &self.task {
-            Task::Audit { strict_data, from_sources, constants: year, trusted } => {
-                let mut today = Holdings::shipped();
-                if let Some(year) = year {
-                    today = today.with_constants(constants::set(*year).ok_or_else(|| unknown_year(*year))?);
-                }
+            Task::Audit { strict_data, from_sources, constants: year, trusted, strict_signature } => {
+                let set = constants::set(*year).ok_or_else(|| unknown_year(*year))?;
+                let today = Holdings::shipped().with_constants(set);
                 Prepared::Audit(Box::new(AuditOptions {
                     today,
                     strict_data: *strict_data,
                     from_sources: *from_sources,
                     trusted: trusted.clone(),
+                    strict_signature: *strict_signature,
                     stop: Arc::default(),
                 }))
             }

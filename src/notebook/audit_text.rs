@@ -1,5 +1,6 @@
 //! An audit as text: what differs first and at length, what is the same counted.
 
+use std::collections::BTreeMap;
 use std::fmt::Write as _;
 
 use crate::notebook::verdict::{
@@ -15,15 +16,15 @@ pub fn notebook(audit: &NotebookAudit) -> String {
         (None, Against::RecordedOutputs) => line(&mut text, "not sealed: compared with the results recorded in it"),
         (None, _) => {}
     }
+    for unmet in &audit.unmet {
+        line(&mut text, unmet);
+    }
     for row in &audit.untested {
         line(&mut text, row);
     }
     for difference in &audit.environment {
-        let short = |digest: &str| if digest.len() == 64 { digest[..12].to_owned() } else { digest.to_owned() };
-        line(
-            &mut text,
-            &format!("{}: {} then, {} now", difference.what, short(&difference.sealed), short(&difference.now)),
-        );
+        let (then, now) = (short(&difference.sealed), short(&difference.now));
+        line(&mut text, &format!("{}: {then} then, {now} now", difference.what));
     }
     for fault in &audit.faults {
         line(&mut text, &format!("under {}: {}: {}", fault.under, fault.fault.cell, fault.fault.message));
@@ -53,6 +54,12 @@ pub fn notebook(audit: &NotebookAudit) -> String {
         line(&mut text, &format!("not compared: {what}"));
     }
     text
+}
+
+/// The beginning of a digest, which tells it from others; other texts whole.
+pub fn short(digest: &str) -> &str {
+    let is_digest = digest.len() == 64 && digest.bytes().all(|byte| byte.is_ascii_hexdigit());
+    if is_digest { &digest[..12] } else { digest }
 }
 
 /// What came of deriving values again: those that are the same counted, the others one by one.
@@ -118,23 +125,30 @@ fn seal_words(seal: &SealFacts) -> String {
 
 /// Every cause once, with the number of values it moved: what an auditor wants to know first where many values moved.
 fn summed_causes(audit: &NotebookAudit) -> Vec<String> {
-    let mut causes: Vec<(String, Vec<&str>)> = Vec::new();
+    // In the order in which they come up, each with its values counted, and the last of these.
+    let mut order: Vec<String> = Vec::new();
+    let mut causes: BTreeMap<String, (usize, &str)> = BTreeMap::new();
     for value in &audit.values {
         let moves = [&value.under_sealed.moved, &value.under_today.moved].into_iter().flatten();
         for cause in moves.flat_map(|moved| &moved.causes) {
             let words = format!("{}: {}", cause.kind.word(), cause.what);
-            match causes.iter_mut().find(|(known, _)| *known == words) {
-                Some((_, labels)) if labels.contains(&value.label.as_str()) => {}
-                Some((_, labels)) => labels.push(&value.label),
-                None => causes.push((words, vec![&value.label])),
+            let (values, last) = causes.entry(words.clone()).or_insert_with(|| {
+                order.push(words);
+                (0, "")
+            });
+            if *values == 0 || *last != value.label {
+                (*values, *last) = (*values + 1, &value.label);
             }
         }
     }
-    let words = |(cause, labels): (String, Vec<&str>)| {
-        let values = if labels.len() == 1 { "1 value".to_owned() } else { format!("{} values", labels.len()) };
+    let words = |cause: String| {
+        let values = match causes[&cause].0 {
+            1 => "1 value".to_owned(),
+            values => format!("{values} values"),
+        };
         format!("cause: {cause}; it moves {values}")
     };
-    causes.into_iter().map(words).collect()
+    order.into_iter().map(words).collect()
 }
 
 /// `under the sealed data: 9 identical, 1 moved`
