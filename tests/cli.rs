@@ -217,6 +217,32 @@ fn a_revised_table_tells_what_it_would_move_in_an_archive() {
         assert!(said.contains(part), "{part} is not in\n{said}");
     }
     assert_eq!(compared.status.code(), Some(1));
+    // A real new edition has another id and perhaps another rank; the old one may be named by its id.
+    let edition = table.replace("\"-393.474\"", "\"-393.974\"").replace("\"atct-1.112\"", "\"atct-1.130\"");
+    let edition = folder.file("edition.json", &edition.replace("\"rank\": 10", "\"rank\": 40"));
+    let compared =
+        hessbook(&["data", "compare", "atct-1.112", edition.to_str().unwrap(), "--archive", archive.to_str().unwrap()]);
+    let said = String::from_utf8(compared.stdout).unwrap();
+    for part in ["move  -0.500 kJ/mol", "1 of 3 reported values would change"] {
+        assert!(said.contains(part), "{part} is not in\n{said}");
+    }
+    // CODATA in place of ATcT: CO -110.53, H2O -241.826, CO2 -393.51 against -110.525, -241.822, -393.474 kJ/mol
+    // (Cox, Wagman, Medvedev 1989; ATcT 1.112), so the shift moves by -0.027 and water by -0.004 kJ/mol.
+    let compared = hessbook(&["data", "compare", "atct-1.112", "codata-1989", "--archive", archive.to_str().unwrap()]);
+    let said = String::from_utf8(compared.stdout).unwrap();
+    for part in ["move  -0.027 kJ/mol", "move  -0.0040 kJ/mol", "2 of 3 reported values would change"] {
+        assert!(said.contains(part), "{part} is not in\n{said}");
+    }
+    let other = folder.file("other.json", include_str!("../stdlib/data/nasa-tp-2002-211556-functions.json"));
+    let refused = hessbook(&["data", "compare", old, other.to_str().unwrap(), "--archive", archive.to_str().unwrap()]);
+    let said = String::from_utf8(refused.stderr).unwrap();
+    assert_eq!(refused.status.code(), Some(2));
+    assert!(said.contains("hessbook-formation/1") && said.contains("hessbook-functions/1"), "{said}");
+    // Without an archive the two tables themselves are compared, also where both have one id.
+    let listed = hessbook(&["data", "compare", "atct-1.112", new]);
+    let said = String::from_utf8(listed.stdout).unwrap();
+    let worst = said.lines().nth(1).unwrap_or_default();
+    assert!(worst.starts_with("CO2(g)  ΔfH°  -393.474") && worst.contains("+0.500 kJ/mol"), "{said}");
     let same = hessbook(&["data", "compare", old, old, "--archive", archive.to_str().unwrap()]);
     assert!(String::from_utf8(same.stdout).unwrap().ends_with("0 of 3 reported values would change\n"));
     assert_eq!(same.status.code(), Some(0));

@@ -127,6 +127,21 @@ fn by_draws(
 }
 
 #[test]
+fn figures_per_mole_of_something_named_are_answered_per_mole_of_it() {
+    let list = |texts: [&str; 3]| Value::List(texts.map(|text| Value::Text(text.into())).to_vec());
+    let named = |cp: [&str; 3]| {
+        let map = [("T", list(["290 K", "300 K", "310 K"])), ("Cp", list(cp))];
+        fitted(Value::Options(Rc::new(map.map(|(name, list)| (name.to_owned(), list)).into())), &[0.0], &[])
+    };
+    let fit = named(["75.1(2) J/(mol[larkol] K)", "75.4(2) J/(mol[larkol] K)", "75.2(2) J/(mol[larkol] K)"]).unwrap();
+    let increment = asked(&ENTHALPY_INCREMENT, &fit, "305 K", None).unwrap();
+    let unit = hessbook::units::parse::unit("kJ/mol[larkol]").unwrap();
+    assert_eq!(*increment.dim(), unit.dim, "{}", increment.dim());
+    let mixed = named(["75.1(2) J/(mol[larkol] K)", "75.4(2) J/(mol[H2O] K)", "75.2(2) J/(mol[larkol] K)"]);
+    assert_eq!(mixed.err().map(|fault| fault.code()), Some("fit-unit"));
+}
+
+#[test]
 fn u_of_an_integral_over_a_fit_agrees_with_draws_within_five_per_cent() {
     // 2000 draws, seed in `by_draws`: the standard deviation itself is known to 1.6 %, so 5 % is three of its own u.
     let increment = |fit: &Value| asked(&ENTHALPY_INCREMENT, fit, "400 K", None).unwrap();

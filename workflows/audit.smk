@@ -14,19 +14,24 @@ rule all:
         expand(f"{folder}/audit.{{form}}", form=["html", "xml", "json", "txt", "status"]),
 
 
-# Status 1 and 2 are findings, which belong into the report. That all of the shard was done is what its last line says, and
-# a file without it is refused below.
+# Status 1 and 2 are findings, which belong into the report. That the audit was made, and not refused beside the state of an
+# earlier one, is what a further line "finished" in the state says.
 rule shard:
     output:
         done=touch(f"{folder}/shards/{{n}}.done"),
     params:
         state=lambda wildcards: f"{folder}/shards/{wildcards.n}.json",
+        # Named here, so that a shard is audited again where they change.
+        program=program,
+        options=options,
     threads: jobs
     shell:
         "mkdir -p {folder:q}/shards; "
-        "{program} audit {archive:q} --shard {wildcards.n}/{shards} --resume {params.state:q} --jobs {threads} {options} "
-        "> /dev/null || true; "
-        "tail -n 1 {params.state:q} | grep -q '^{{\"finished\"'"
+        "finished() {{ if test -e {params.state:q}; then grep -c '^{{\"finished\"' {params.state:q} || true; else echo 0; fi; }}; "
+        "before=$(finished); "
+        "{params.program:q} audit {archive:q} --shard {wildcards.n}/{shards} --resume {params.state:q} --jobs {threads} "
+        "{params.options} > /dev/null || true; "
+        "test $(finished) -gt $before"
 
 
 rule together:

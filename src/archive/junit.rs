@@ -5,6 +5,7 @@
 //! notebook differs by something that no value shows, such as its seal, a case of its own says so. The surprise: the
 //! library that writes the XML holds a whole report, so each suite is written as a report of its own and taken out of it.
 
+use std::collections::BTreeMap;
 use std::io::Write;
 use std::time::Duration;
 
@@ -75,9 +76,11 @@ fn line(text: &str) -> String {
 
 fn suite(audit: &NotebookAudit, about: &About) -> TestSuite {
     let mut suite = TestSuite::new(line(&audit.file));
-    for case in
-        of_notebook(audit, about).into_iter().chain(audit.values.iter().map(|value| of_value(value, audit, about)))
-    {
+    let derived: BTreeMap<&str, &Rederived> =
+        audit.from_sources.iter().flatten().map(|one| (one.label.as_str(), one)).collect();
+    let again = |value: &ValueAudit| derived.get(value.label.as_str()).copied();
+    let cases = audit.values.iter().map(|value| of_value(value, audit, about, again(value)));
+    for case in of_notebook(audit, about).into_iter().chain(cases) {
         suite.add_test_case(case);
     }
     let notes = notes(audit, about);
@@ -135,7 +138,7 @@ fn of_notebook(audit: &NotebookAudit, about: &About) -> Vec<TestCase> {
     cases
 }
 
-fn of_value(value: &ValueAudit, audit: &NotebookAudit, about: &About) -> TestCase {
+fn of_value(value: &ValueAudit, audit: &NotebookAudit, about: &About, derived: Option<&Rederived>) -> TestCase {
     // A notebook without seal is run once, on today's data.
     let (first, under) = match audit.against {
         Against::Seal => (&value.under_sealed, "under the sealed data"),
@@ -143,7 +146,6 @@ fn of_value(value: &ValueAudit, audit: &NotebookAudit, about: &About) -> TestCas
     };
     let other = (audit.against == Against::Seal && value.under_today != value.under_sealed)
         .then_some((&value.under_today, "under today's data"));
-    let derived = audit.from_sources.iter().flatten().find(|one| one.label == value.label);
     let otherwise = derived.filter(|one| !one.is_same());
 
     let counts = other.filter(|_| about.strict_data);

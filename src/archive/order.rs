@@ -8,8 +8,7 @@ use serde::{Deserialize, Serialize};
 
 use crate::fault::Fault;
 use crate::notebook::audit::{AuditOptions, audit_one};
-use crate::notebook::data_change::{compare_data, revised_holdings};
-use crate::notebook::file::bytes_of;
+use crate::notebook::data_change::{compare_data, revised_holdings, table_bytes};
 use crate::notebook::holdings::Holdings;
 use crate::notebook::seal::Engine;
 use crate::notebook::sealing::engine_now;
@@ -33,15 +32,16 @@ pub enum Task {
     Audit {
         strict_data: bool,
         from_sources: bool,
-        /// CODATA year, where another set than today's is wanted.
-        constants: Option<u16>,
+        /// CODATA year of the set that is taken for today's.
+        constants: u16,
         trusted: Vec<TrustedKey>,
+        strict_signature: bool,
     },
     /// Compare two editions of a table.
     Revision { old: Table, new: Table },
 }
 
-/// A table in a file.
+/// A table in a file, or a shipped one by the id of its dataset.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Table {
     pub path: PathBuf,
@@ -52,7 +52,7 @@ impl Table {
     /// # Errors
     /// The file cannot be read.
     pub fn at(path: &Path) -> Result<Table, Fault> {
-        Ok(Table { sha256: sha256(&bytes_of(path)?), path: path.to_owned() })
+        Ok(Table { sha256: sha256(&table_bytes(path)?), path: path.to_owned() })
     }
 }
 
@@ -74,24 +74,22 @@ impl Order {
     /// There is no such constant set, or a table cannot be used.
     pub fn prepared(&self) -> Result<Prepared, Fault> {
         Ok(match &self.task {
-            Task::Audit { strict_data, from_sources, constants: year, trusted } => {
-                let mut today = Holdings::shipped();
-                if let Some(year) = year {
-                    today = today.with_constants(constants::set(*year).ok_or_else(|| unknown_year(*year))?);
-                }
+            Task::Audit { strict_data, from_sources, constants: year, trusted, strict_signature } => {
+                let set = constants::set(*year).ok_or_else(|| unknown_year(*year))?;
+                let today = Holdings::shipped().with_constants(set);
                 Prepared::Audit(Box::new(AuditOptions {
                     today,
                     strict_data: *strict_data,
                     from_sources: *from_sources,
                     trusted: trusted.clone(),
+                    strict_signature: *strict_signature,
                     stop: Arc::default(),
                 }))
             }
-            Task::Revision { old, new } => Prepared::Revision {
-                old: revised_holdings(&old.path)?,
-                new: revised_holdings(&new.path)?,
-                stop: Arc::default(),
-            },
+            Task::Revision { old, new } => {
+                let (old, new) = revised_holdings(&old.path, &new.path)?;
+                Prepared::Revision { old, new, stop: Arc::default() }
+            }
         })
     }
 }

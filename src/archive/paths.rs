@@ -97,6 +97,8 @@ pub struct Found {
     pub notebooks: Vec<PathBuf>,
     /// Folders that could not be read, with why.
     pub unreadable: Vec<(PathBuf, String)>,
+    /// Digest of the arguments.
+    pub asked: String,
 }
 
 /// The notebooks that files, folders and patterns name. A path that is not there is kept, so that its audit says so.
@@ -104,7 +106,8 @@ pub struct Found {
 /// # Errors
 /// A pattern that matches nothing, or a folder without notebooks: an audit of nothing would pass for one without findings.
 pub fn found(arguments: &[PathBuf]) -> Result<Found, PathError> {
-    let mut all = Found::default();
+    let listed: Vec<String> = arguments.iter().map(|path| format!("{}\n", path.display())).collect();
+    let mut all = Found { asked: sha256(listed.concat().as_bytes()), ..Found::default() };
     for argument in arguments {
         let text = argument.to_string_lossy();
         let is_pattern = text.contains(['*', '?', '[']) && !argument.exists();
@@ -129,8 +132,17 @@ pub fn found(arguments: &[PathBuf]) -> Result<Found, PathError> {
         }
     }
     let mut seen = BTreeSet::new();
-    all.notebooks.retain(|path| seen.insert(path.clone()));
+    all.notebooks.retain(|path| seen.insert(place(path)));
     Ok(all)
+}
+
+/// One place for all spellings of a path. A link to a notebook is a notebook of its own.
+fn place(path: &Path) -> PathBuf {
+    let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(Path::new("."));
+    match (std::fs::canonicalize(folder), path.file_name()) {
+        (Ok(folder), Some(name)) => folder.join(name),
+        _ => path.to_owned(),
+    }
 }
 
 impl Found {
@@ -226,6 +238,8 @@ mod tests {
         assert_eq!(names(path, &all), ["a.ipynb", "b/1.IPYNB", "b/2.ipynb", "c/d/3.ipynb"]);
         let twice = found(&[path.join("a.ipynb"), path.to_owned()]).unwrap();
         assert_eq!(names(path, &twice).len(), 4, "each once");
+        let spelt = found(&[path.join("a.ipynb"), path.join("b/../a.ipynb"), path.join("./a.ipynb")]).unwrap();
+        assert_eq!(spelt.notebooks, [path.join("a.ipynb")], "however it is spelt");
     }
 
     #[test]

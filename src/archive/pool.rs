@@ -108,9 +108,9 @@ impl Pool {
         std::thread::scope(|threads| {
             // Few outcomes wait at a time, so that memory does not grow with the archive.
             let (done, outcomes) = mpsc::sync_channel::<Done>(self.jobs);
-            for _ in 0..self.jobs.clamp(1, paths.len().max(1)) {
+            for slot in 0..self.jobs.clamp(1, paths.len().max(1)) {
                 let (done, next, stopped) = (done.clone(), &next, &stopped);
-                threads.spawn(move || {
+                let work = move || {
                     let mut worker = None;
                     while let Some((nth, path)) = paths.get(next.fetch_add(1, Ordering::Relaxed)) {
                         let Some(outcome) = self.one(&mut worker, order, path, stopped) else { break };
@@ -122,7 +122,13 @@ impl Pool {
                             break;
                         }
                     }
-                });
+                };
+                // Where the system gives fewer threads than asked for, those that there are do the work.
+                match std::thread::Builder::new().spawn_scoped(threads, work) {
+                    Err(why) if slot == 0 => return Err(Loss::NotStarted { why: why.to_string() }.into()),
+                    Err(_) => break,
+                    Ok(_) => {}
+                }
             }
             drop(done);
             for outcome in outcomes {
@@ -220,17 +226,17 @@ impl Worker {
             unreachable!("the three were asked for")
         };
         let (reply, replies) = mpsc::sync_channel(1);
-        std::thread::spawn(move || {
+        std::thread::Builder::new().spawn(move || {
             let mut output = BufReader::new(output);
             while let Some(read) = next_reply(&mut output) {
                 if reply.send(read).is_err() {
                     break;
                 }
             }
-        });
+        })?;
         let said = Arc::new(Mutex::new(Vec::new()));
         let heard = Arc::clone(&said);
-        let listener = std::thread::spawn(move || listen(errors, &heard));
+        let listener = std::thread::Builder::new().spawn(move || listen(errors, &heard))?;
         let mut worker = Worker { child, input, replies, said, listener: Some(listener), audits: 0 };
         let start = Start { order: order.clone(), memory_limit_mib: pool.memory_limit_mib };
         serde_json::to_writer(&worker.input, &start)?;

@@ -5,7 +5,7 @@
 //! was torn is cut off when the file is opened again.
 
 use std::cell::RefCell;
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 use std::fs::{File, TryLockError};
 use std::io::{BufRead, BufReader, Seek, SeekFrom, Write};
 use std::path::{Path, PathBuf};
@@ -17,8 +17,9 @@ use crate::archive::audits::Audits;
 use crate::archive::order::Order;
 use crate::archive::pool::Done;
 use crate::fault::{Explain, Fault};
+use crate::notebook::beside::FileBeside;
 use crate::notebook::file::bytes_of;
-use crate::notebook::verdict::NotebookAudit;
+use crate::notebook::verdict::{AuditStatus, NotebookAudit};
 use crate::source::sha256;
 
 /// Name and version of the shape of the file.
@@ -39,6 +40,8 @@ pub enum StateError {
     NotFinished { path: PathBuf },
     #[error("{notebook} stands in both {one} and {other}", one = one.display(), other = other.display())]
     Twice { notebook: String, one: PathBuf, other: PathBuf },
+    #[error("{one} and {other} are of audits of different paths", one = one.display(), other = other.display())]
+    OtherPaths { one: PathBuf, other: PathBuf },
     #[error("the state files are of {given}, and those of {missing} are missing")]
     ShardMissing { given: String, missing: String },
 }
@@ -52,6 +55,7 @@ impl Explain for StateError {
             StateError::OfAnother { .. } => "state-of-another-audit",
             StateError::NotFinished { .. } => "state-not-finished",
             StateError::Twice { .. } => "notebook-in-two-states",
+            StateError::OtherPaths { .. } => "shards-of-other-paths",
             StateError::ShardMissing { .. } => "shard-missing",
         }
     }
@@ -67,6 +71,9 @@ impl Explain for StateError {
             }
             StateError::NotFinished { .. } => "run the same command again, which goes on where it stopped".to_owned(),
             StateError::Twice { .. } => "give each shard's file once, and shards of one archive".to_owned(),
+            StateError::OtherPaths { .. } => {
+                "audit each shard with the same paths, written alike: a shard is a part of what they name".to_owned()
+            }
             StateError::ShardMissing { .. } => {
                 "give the state files of all shards; without them the report would pass over their notebooks".to_owned()
             }
@@ -80,10 +87,16 @@ impl Explain for StateError {
 enum Line {
     Head(Head),
     Audit(Box<Entry>),
-    /// When, in UTC: `2026-12-01T09:30:00Z`.
+    /// A notebook that an earlier run audited, and that is not in the list any more.
+    Gone {
+        file: String,
+    },
+    /// That the list was done, and when, in UTC: `2026-12-01T09:30:00Z`. Shards of one archive were asked for in one way, of
+    /// which `asked` is the digest.
     Finished {
         notebooks: usize,
         ended: String,
+        asked: String,
     },
 }
 
@@ -99,6 +112,27 @@ struct Head {
 struct Entry {
     lost: bool,
     audit: NotebookAudit,
+}
+
+/// The files that an audit rests on.
+#[derive(Clone)]
+struct Rests {
+    sha256: String,
+    beside: Vec<FileBeside>,
+}
+
+impl Rests {
+    /// None for an audit that another try may make better: a file that was missing may be there now.
+    fn of(entry: &Entry) -> Option<Rests> {
+        let again = entry.lost || entry.audit.status == AuditStatus::CouldNotRun;
+        let sha256 = entry.audit.sha256.clone().filter(|_| !again)?;
+        Some(Rests { sha256, beside: entry.audit.beside.clone() })
+    }
+
+    fn are_as_they_were(&self, notebook: &Path) -> bool {
+        bytes_of(notebook).is_ok_and(|bytes| sha256(&bytes) == self.sha256)
+            && self.beside.iter().all(|file| file.is_as_it_was(notebook))
+    }
 }
 
 /// Where an audit stands: in which file, from which byte on.
@@ -183,8 +217,8 @@ impl State {
         Ok(state)
     }
 
-    /// For an audit that goes on where an earlier one stopped, if there was one. Audits of files that were changed since,
-    /// and those whose process was lost, are made again.
+    /// For an audit that goes on where an earlier one stopped, if there was one. Audits of notebooks that were changed since,
+    /// or that have a file beside them that was, are made again, and so are those that could not be made.
     ///
     /// # Errors
     /// The file is of another audit, or cannot be read and written.
@@ -205,8 +239,8 @@ impl State {
         let wanted = head(order, shard);
         let positions: BTreeMap<String, usize> =
             notebooks.iter().enumerate().map(|(nth, path)| (path.display().to_string(), nth)).collect();
-        let mut known: Vec<Option<(u64, Option<String>)>> = vec![None; notebooks.len()];
-        let mut any = false;
+        let mut known: Vec<Option<(u64, Rests)>> = vec![None; notebooks.len()];
+        let (mut any, mut gone) = (false, BTreeSet::new());
         let end = state.files[0].borrow_mut().lines(&mut |at, line| {
             match line {
                 Line::Head(found) => {
@@ -216,16 +250,18 @@ impl State {
                 }
                 Line::Audit(entry) => {
                     if let Some(&nth) = positions.get(&entry.audit.file) {
-                        known[nth] = (!entry.lost).then_some((at, entry.audit.sha256));
+                        known[nth] = Rests::of(&entry).map(|rests| (at, rests));
+                    } else {
+                        gone.insert(entry.audit.file);
                     }
                 }
+                Line::Gone { file } => drop(gone.remove(&file)),
                 Line::Finished { .. } => {}
             }
             Ok(())
         })?;
         for (nth, known) in known.into_iter().enumerate() {
-            let Some((at, Some(digest))) = known else { continue };
-            if bytes_of(&notebooks[nth]).is_ok_and(|bytes| sha256(&bytes) == digest) {
+            if let Some((at, _)) = known.filter(|(_, rests)| rests.are_as_they_were(&notebooks[nth])) {
                 state.places[nth] = Some((0, at));
             }
         }
@@ -233,6 +269,9 @@ impl State {
         state.in_parts = state.places.iter().any(Option::is_some);
         if !any {
             state.append(&Line::Head(wanted))?;
+        }
+        for file in gone {
+            state.append(&Line::Gone { file })?;
         }
         Ok(state)
     }
@@ -247,6 +286,7 @@ impl State {
         let mut shards: Vec<Option<String>> = Vec::new();
         // Times in UTC sort as texts.
         let mut last_ended = String::new();
+        let mut asked_for: Option<String> = None;
         let mut owners: BTreeMap<String, (usize, u64)> = BTreeMap::new();
         for (nth, path) in paths.iter().enumerate() {
             let file = File::open(path).map_err(|why| StateError::Io {
@@ -265,17 +305,21 @@ impl State {
                         finished = None;
                         entries.insert(entry.audit.file, at);
                     }
-                    Line::Finished { ended, .. } => finished = Some(ended),
+                    Line::Gone { file } => drop(entries.remove(&file)),
+                    Line::Finished { ended, asked, .. } => finished = Some((ended, asked)),
                 }
                 Ok(())
             })?;
             let Some(head) = head else {
                 return Err(StateError::NotAState { path: path.clone(), why: "it is empty".to_owned() });
             };
-            let Some(ended) = finished else {
+            let Some((ended, asked)) = finished else {
                 return Err(StateError::NotFinished { path: path.clone() });
             };
             last_ended = last_ended.max(ended);
+            if *asked_for.get_or_insert_with(|| asked.clone()) != asked {
+                return Err(StateError::OtherPaths { one: paths[0].clone(), other: path.clone() });
+            }
             let wanted = Head { shard: head.shard.clone(), ..first.get_or_insert_with(|| head.clone()).clone() };
             if let Some(what) = parting(&head, &wanted) {
                 return Err(StateError::OfAnother { path: path.clone(), what });
@@ -341,13 +385,13 @@ impl State {
         Ok(())
     }
 
-    /// Says that every notebook of the list has its audit.
+    /// Says that every notebook of the list has its audit; `asked` tells lists from each other.
     ///
     /// # Errors
     /// The file cannot be written.
-    pub fn finish(&mut self) -> Result<(), StateError> {
+    pub fn finish(&mut self, asked: &str) -> Result<(), StateError> {
         let ended = chrono::Utc::now().format("%Y-%m-%dT%H:%M:%SZ").to_string();
-        self.append(&Line::Finished { notebooks: self.places.len(), ended: ended.clone() })?;
+        self.append(&Line::Finished { notebooks: self.places.len(), ended: ended.clone(), asked: asked.to_owned() })?;
         self.ended = Some(ended);
         let reader = self.files[self.files.len() - 1].borrow();
         // A file without a name has nothing to be found again.

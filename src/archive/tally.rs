@@ -3,6 +3,7 @@
 //! [`Tally`] stays small however large the archive is. The surprise: what belongs to one notebook alone, such as an edited
 //! cell, is counted by its kind; only what several notebooks can share, such as a revised record, is named.
 
+use std::borrow::Cow;
 use std::collections::BTreeMap;
 
 use serde::Serialize;
@@ -121,8 +122,19 @@ pub struct Note {
     pub examples: Vec<String>,
 }
 
+/// The longest saying that a tally keeps, in characters: what is counted over an archive has to stay small.
+const LONGEST: usize = 400;
+
+fn cut(words: &str) -> Cow<'_, str> {
+    match words.char_indices().nth(LONGEST) {
+        Some((end, _)) => Cow::Owned(format!("{} …", &words[..end])),
+        None => Cow::Borrowed(words),
+    }
+}
+
 impl Notes {
     fn add(&mut self, words: &str, file: &str) {
+        let words: &str = &cut(words);
         if self.said.len() >= MOST && !self.said.contains_key(words) {
             self.left_out += 1;
             return;

@@ -10,6 +10,7 @@ use crate::archive::report::{About, unwritable};
 use crate::archive::tally::{CauseSum, Tally};
 use crate::archive::words::{counted, reasons, status_words, verdict_counts};
 use crate::fault::Fault;
+use crate::notebook::audit_text::short;
 use crate::notebook::verdict::Verdict;
 use crate::render::harmless::in_one_line;
 
@@ -75,10 +76,6 @@ impl Pen<'_> {
     fn styled(&self, style: &str, words: &str) -> String {
         if self.colour { format!("\u{1b}[{style}m{words}\u{1b}[0m") } else { words.to_owned() }
     }
-}
-
-fn short(digest: &str) -> &str {
-    digest.get(..12).unwrap_or(digest)
 }
 
 fn verdicts(pen: &mut Pen, tally: &Tally) -> Result<(), Fault> {

@@ -130,6 +130,7 @@ pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
     if let Some(fault) = audit.faults.first() {
         reasons.push(fault_words(fault, &audit.file).0);
     }
+    reasons.extend(audit.unmet.iter().cloned());
     if let Some(seal) = &audit.seal {
         if !seal.whole {
             reasons.push("its seal was altered after it was made".to_owned());

@@ -18,6 +18,8 @@ pub struct Work {
     /// Folders that could not be read, which are rows at the end.
     unreadable: Vec<(PathBuf, String)>,
     state: State,
+    /// Digest of the paths as they were asked for.
+    asked: String,
 }
 
 /// Told of what is done.
@@ -35,7 +37,7 @@ impl Work {
     /// # Errors
     /// The state file cannot be used.
     pub fn new(order: Order, found: Found, shard: Option<Shard>, resume: Option<&Path>) -> Result<Work, StateError> {
-        let Found { mut notebooks, mut unreadable } = found;
+        let Found { mut notebooks, mut unreadable, asked } = found;
         if let Some(shard) = shard {
             notebooks.retain(|path| shard.takes(path));
             unreadable.retain(|(path, _)| shard.takes(path));
@@ -45,7 +47,7 @@ impl Work {
             Some(path) => State::resumed(path, &order, shard.map(|shard| shard.to_string()), &rows)?,
             None => State::temporary(&order, rows.len())?,
         };
-        Ok(Work { order, notebooks, unreadable, state })
+        Ok(Work { order, notebooks, unreadable, state, asked })
     }
 
     /// Rows there are to be.
@@ -90,7 +92,7 @@ impl Work {
             let audit = could_not_run(&path.display().to_string(), Against::Nothing, "the folder", &fault);
             keep(Done { nth, audit, lost: true })?;
         }
-        self.state.finish()?;
+        self.state.finish(&self.asked)?;
         Ok(true)
     }
 }

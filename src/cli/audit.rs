@@ -19,8 +19,9 @@ use crate::notebook::audit::AuditOptions;
 use crate::notebook::audit_text;
 use crate::notebook::file::{FileError, write_whole_by};
 use crate::notebook::signature::TrustedKey;
-use crate::notebook::verdict::{AuditStatus, NotebookAudit};
+use crate::notebook::verdict::{AuditStatus, Difference, NotebookAudit, ValueAudit, Verdict};
 use crate::render::harmless::in_one_line;
+use crate::units::constants;
 
 use super::archive::{Printer, Workers, interrupted};
 use super::{Done, err, out, stopped_by_interrupt};
@@ -33,7 +34,7 @@ use super::{Done, err, out, stopped_by_interrupt};
 /// Exit status: 0 when every value is the same under the sealed data, 1 when one differs, 2 when one could not be run.
 #[derive(Args)]
 pub struct Audit {
-    /// Notebooks, folders of notebooks, and patterns such as "archive/**/2024-*.ipynb"
+    /// Notebooks, folders of notebooks, and patterns such as "archive/**/2024-*.ipynb"; with --gathered, state files
     #[arg(required = true)]
     paths: Vec<PathBuf>,
     /// Let moves under today's data count for the exit status too
@@ -45,6 +46,9 @@ pub struct Audit {
     /// A public key, as `hessbook keys new` makes it, whose signatures you trust
     #[arg(long, value_name = "KEYFILE")]
     trust: Vec<PathBuf>,
+    /// Let a notebook that is not signed with a trusted key count for the exit status too
+    #[arg(long, requires = "trust")]
+    strict_signature: bool,
     /// Take the constants of this CODATA year for today's
     #[arg(long, value_name = "YEAR")]
     constants: Option<u16>,
@@ -63,8 +67,8 @@ pub struct Audit {
     /// Keep the audits in this file as they are done, and go on from it after a run that was stopped
     #[arg(long, value_name = "FILE")]
     resume: Option<PathBuf>,
-    /// Run nothing: report on the audits in these files, those that --resume kept for all shards of an archive
-    #[arg(long, conflicts_with_all = ["shard", "resume", "strict_data", "from_sources", "trust", "constants"])]
+    /// Run nothing: the paths are state files that --resume kept, those of all shards of an archive; report on them
+    #[arg(long, conflicts_with_all = ["shard", "resume", "strict_data", "from_sources", "trust", "strict_signature", "constants"])]
     gathered: bool,
     #[command(flatten)]
     workers: Workers,
@@ -79,6 +83,9 @@ enum Format {
 impl Audit {
     pub(super) fn run(self) -> Done {
         let start = Instant::now();
+        for path in self.page.iter().chain(&self.junit) {
+            placed(path)?;
+        }
         if self.gathered {
             let state = State::gathered(&self.paths)?;
             let options = options_of(state.order())?;
@@ -88,7 +95,8 @@ impl Audit {
         let order = Order::now(Task::Audit {
             strict_data: self.strict_data,
             from_sources: self.from_sources,
-            constants: self.constants,
+            constants: self.constants.unwrap_or(constants::CURRENT),
+            strict_signature: self.strict_signature,
             trusted,
         });
         // What the workers could not read is said before any is started.
@@ -98,7 +106,9 @@ impl Audit {
         if work.count() == 0 {
             err("hessbook: no notebook falls to this shard\n");
         }
-        let mut printer = Printer::new(&work, self.format == Format::Text, &|audit, many| text_of(audit, many))?;
+        let trusts = !self.trust.is_empty();
+        let text = move |audit: &NotebookAudit, many: bool| text_of(audit, many, trusts);
+        let mut printer = Printer::new(&work, self.format == Format::Text, &text)?;
         let whole = work.finish(&self.workers.pool()?, &stop, &mut printer)?;
         printer.end();
         if !whole {
@@ -112,6 +122,9 @@ impl Audit {
         let paths = self.paths.iter().map(|path| path.display().to_string()).collect();
         let took = (!state.is_in_parts()).then(|| start.elapsed());
         let mut about = About::of(options, paths, state.ended().unwrap_or_default(), took);
+        // Gathered audits were made by the program that stands in them.
+        let program = &state.order().program;
+        (about.program, about.tables) = (format!("hessbook {}", program.version), program.stdlib.clone());
         about.left_out.extend(self.shard.map(|shard| format!("notebooks of other shards than {shard}")));
         if let Some(path) = &self.page {
             written(path, |out| report::page(state, &about, out))?;
@@ -168,12 +181,33 @@ fn written(path: &Path, write: impl FnOnce(&mut dyn Write) -> Result<(), Fault>)
     })
 }
 
-/// One notebook as text: where there are many, one that is the same takes one line.
-fn text_of(audit: &NotebookAudit, many: bool) -> String {
-    if many && audit.status == AuditStatus::Same {
-        return format!("{}: {}, {} values\n", in_one_line(&audit.file), audit.status.word(), audit.values.len());
+/// Whether a report can be written there, asked before an audit that may take long.
+fn placed(path: &Path) -> Result<(), Fault> {
+    let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(Path::new("."));
+    if folder.is_dir() && !path.is_dir() {
+        return Ok(());
     }
-    audit_text::notebook(audit)
+    let what = if path.is_dir() { "it is a folder" } else { "its folder is not there" };
+    Err(Fault::new(
+        "report-without-place",
+        format!("the report cannot be written to {}: {what}", path.display()),
+        "name a file in a folder that is there; nothing was audited",
+    ))
+}
+
+/// One notebook as text. Where there are many, one of which there is nothing to say takes one line.
+fn text_of(audit: &NotebookAudit, many: bool, trusts: bool) -> String {
+    let same = |value: &ValueAudit| value.under_today.verdict == Verdict::Identical;
+    let quiet = audit.status == AuditStatus::Same
+        && audit.faults.is_empty()
+        && audit.values.iter().all(same)
+        && !audit.environment.iter().any(Difference::is_edit)
+        && (!trusts || audit.is_signed_by_trusted());
+    if !(many && quiet) {
+        return audit_text::notebook(audit);
+    }
+    let values = if audit.values.len() == 1 { "1 value".to_owned() } else { format!("{} values", audit.values.len()) };
+    format!("{}: {}, {values}\n", in_one_line(&audit.file), audit.status.word())
 }
 
 /// Audit the notebooks that are named on stdin; `hessbook audit` starts this itself.

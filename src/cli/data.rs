@@ -14,6 +14,7 @@ use crate::data::checkup;
 use crate::data::dataset::{DatasetId, Datum};
 use crate::data::doctor::{self, Finding, Printed, Row};
 use crate::data::own::{self, Own};
+use crate::data::records::{RecordTable, Records};
 use crate::fault::Fault;
 use crate::model::card::{Cx, References};
 use crate::model::function;
@@ -46,7 +47,8 @@ enum What {
     /// Set the formation enthalpies and entropies of two datasets side by side, in units of u
     ///
     /// With an archive, tells instead which of its reported values would move, and by how much, if the second table took the
-    /// place of the first; both are tables as shipped, and the status is 1 when a value would move.
+    /// place of the first, whatever its id; both are tables as shipped, of one schema, and the status is 1 when a value would
+    /// move.
     Compare {
         /// The id of a dataset, or a .json file
         a: String,
@@ -160,7 +162,11 @@ fn check(files: &[PathBuf]) -> Done {
     for path in files {
         if path.extension().is_some_and(|extension| extension == "csv") {
             let subject = path.display().to_string();
-            doctor::of_table(&rows(path)?).iter().for_each(|finding| tell(&subject, finding));
+            let rows = rows(path)?;
+            doctor::of_table(&rows).iter().for_each(|finding| tell(&subject, finding));
+            if let Some(less) = doctor::less_checked(&rows) {
+                out(&format!("{subject}: {less}\n"));
+            }
         } else {
             let own = own_of(path, &shipped)?;
             let (laid, _) = shipped.overlaid(&own)?;
@@ -192,25 +198,44 @@ fn rows(path: &Path) -> Result<Vec<Row>, Fault> {
     Ok((0..table.rows()).filter_map(row).collect())
 }
 
-/// The catalogue with a file laid over it where `name` is one, and the dataset that is meant.
-fn dataset(name: &str, catalog: Arc<Catalog>) -> Result<(Arc<Catalog>, DatasetId), Fault> {
+/// One side of a comparison: a dataset that is there, or a file, which adds one.
+struct Side {
+    id: DatasetId,
+    own: Option<PathBuf>,
+}
+
+/// What a name stands for; a table as shipped is put among `records`.
+fn side(name: &str, records: &mut Records) -> Result<Side, Fault> {
     if is_file(name) {
-        let own = own_of(Path::new(name), &catalog)?;
-        let id = own.dataset.id.clone();
-        return Ok((Arc::new(catalog.overlaid(&own)?.0), id));
+        let bytes = bytes_of(Path::new(name))?;
+        let read = Records::read(&[Embedded { path: name, bytes: &bytes, sha256: &source::sha256(&bytes) }])?;
+        let Some(table) = read.tables.into_iter().find(RecordTable::is_of_formations) else {
+            let own = own_of(Path::new(name), &Catalog::shipped())?;
+            return Ok(Side { id: own.dataset.id.clone(), own: Some(PathBuf::from(name)) });
+        };
+        // A revision that kept the id stands beside what it revises under the name of its file.
+        let id = if records.stands_for(&table) { name } else { &*table.dataset };
+        *records = records.with_tables(&Records { tables: vec![table.described(id, None)] });
+        return Ok(Side { id: DatasetId::new(id), own: None });
     }
     let id = DatasetId::new(name);
-    if catalog.dataset(&id).is_none() {
-        let known: Vec<String> = catalog.datasets().iter().map(|dataset| dataset.id.to_string()).collect();
+    let shipped = Catalog::shipped();
+    if shipped.dataset(&id).is_none() {
+        let known: Vec<String> = shipped.datasets().iter().map(|dataset| dataset.id.to_string()).collect();
         let hint = format!("name one of {}, or a .json file", known.join(", "));
         return Err(Fault::new("compared-dataset-unknown", format!("`{name}` is no dataset"), hint));
     }
-    Ok((catalog, id))
+    Ok(Side { id, own: None })
 }
 
 fn compare(a: &str, b: &str) -> Done {
-    let (catalog, a) = dataset(a, Catalog::shipped())?;
-    let (catalog, b) = dataset(b, catalog)?;
+    let mut records = Records::clone(&Records::shipped());
+    let sides = [side(a, &mut records)?, side(b, &mut records)?];
+    let mut catalog = Arc::new(records.catalog()?);
+    for own in sides.iter().filter_map(|side| side.own.as_ref()) {
+        catalog = Arc::new(catalog.overlaid(&own_of(own, &catalog)?)?.0);
+    }
+    let [a, b] = sides.map(|side| side.id);
     let mut lines: Vec<(f64, String)> = Vec::new();
     let mut compared = 0;
     for substance in catalog.substances() {

@@ -13,8 +13,8 @@ use crate::notebook::verdict::{AuditStatus, Verdict};
 use super::archive::{Printer, Workers, interrupted};
 use super::{Done, out, stopped_by_interrupt};
 
-/// Audits each notebook of an archive on the new table against the old one; both take the place of the shipped table of
-/// their dataset.
+/// Audits each notebook of an archive on the new table against the old one. The old one stands in the place of the shipped
+/// table of its dataset, the new one in the place of the old.
 pub(super) fn compare(old: &Path, new: &Path, archive: &[PathBuf], workers: &Workers) -> Done {
     let order = Order::now(Task::Revision { old: Table::at(old)?, new: Table::at(new)? });
     order.prepared()?;

@@ -13,6 +13,7 @@ use crate::notebook::sealing::{Sealed, Sealing, seal};
 use crate::notebook::signature::PrivateKey;
 use crate::session::on_big_stack;
 
+use super::run::no_folder;
 use super::{Done, err, out, setting, settings, stopped_by_interrupt};
 
 /// Run notebooks in a fresh session and seal them.
@@ -54,6 +55,7 @@ impl Seal {
         let mut worst = 0;
         for path in &self.notebooks {
             let done = on_big_stack(|| -> Result<(Vec<OpenRow>, String), Fault> {
+                no_folder(path, "a notebook")?;
                 let Sealed { notebook, seal, kept, bad_signature } = seal(path, &how, &holdings, &Arc::clone(&stop))?;
                 notebook.write(path)?;
                 let when = if kept { "unchanged since" } else { "sealed" };

@@ -9,6 +9,8 @@
 
 use crate::num::pchip::Pchip;
 
+use super::roughness;
+
 /// Something that is likely wrong.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Finding {
@@ -56,6 +58,9 @@ pub fn of_table(rows: &[Row]) -> Vec<Finding> {
     if !findings.is_empty() || rows.len() < 4 {
         return findings;
     }
+    if is_heat_capacity_alone(rows) {
+        return roughness::of_heat_capacities(rows);
+    }
     let curve = Pchip::new(rows.iter().map(|row| row.t_k).collect(), rows.iter().map(|row| row.cp.si).collect());
     let kept = |of: fn(&Row) -> Option<&Printed>, over_t: bool| -> Option<Vec<Step>> {
         rows.windows(2)
@@ -84,6 +89,24 @@ pub fn of_table(rows: &[Row]) -> Vec<Finding> {
     findings
 }
 
+/// Whether no identity can be asked of it.
+fn is_heat_capacity_alone(rows: &[Row]) -> bool {
+    let all = |of: fn(&Row) -> Option<&Printed>| rows.iter().all(|row| of(row).is_some());
+    !all(|row| row.h.as_ref()) && !all(|row| row.s.as_ref())
+}
+
+/// What a table does not have, so that less was asked of it.
+pub fn less_checked(rows: &[Row]) -> Option<&'static str> {
+    match is_heat_capacity_alone(rows) {
+        true if rows.len() < roughness::LEAST_ROWS => {
+            Some("not checked but for order and sign: Cp alone, in too few rows to hold them against each other")
+        }
+        true => Some("Cp alone, so each row was held against its neighbours and against no H or S"),
+        false if rows.len() < 4 => Some("not checked but for order and sign: too few rows"),
+        false => None,
+    }
+}
+
 /// What a table says of one interval, and what its heat capacities make of it.
 struct Step {
     change: f64,
@@ -101,7 +124,7 @@ impl Step {
     }
 }
 
-fn place(row: &Row) -> String {
+pub(super) fn place(row: &Row) -> String {
     format!("row at {} K", row.t_k)
 }
 
@@ -220,7 +243,7 @@ impl Around {
     }
 }
 
-fn shown(value: f64, digit: f64) -> String {
+pub(super) fn shown(value: f64, digit: f64) -> String {
     let decimals = crate::quantity::round::decimals_of_digit(digit);
     crate::quantity::round::fixed(value, decimals.max(0))
 }

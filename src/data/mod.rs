@@ -20,6 +20,8 @@ pub mod own_fault;
 mod own_reader;
 pub mod pressure;
 pub mod records;
+pub mod revision;
+mod roughness;
 pub mod substance;
 mod tables;
 pub mod transition;

@@ -45,6 +45,9 @@ pub(super) struct Spot<'a> {
     pub tree: &'a Tree,
 }
 
+const SHARE: &str = "write a share in % and what it means: `2 %, k=1` for a standard uncertainty, `2 %, k=2` or `2 %, 95 %` \
+                     for an expanded one, `2 %, limits` for bounds";
+
 impl<'a> Spot<'a> {
     pub fn whole(file: &'a str, tree: &'a Tree) -> Spot<'a> {
         Spot { file, record: String::new(), path: String::new(), tree }
@@ -191,8 +194,13 @@ impl<'a> Spot<'a> {
         let Tree::Text(written) = spot.tree else {
             return Err(spot.sort("a share with its meaning, such as \"2 %, k=2\""));
         };
-        // Read as the half-width of a value of one unit, so that the meaning is said as everywhere.
-        let quantity = spot.quantity(&format!("1 J ± {written}"))?;
+        // Read as the half-width of a value of one unit, so that the meaning is said as everywhere; what was not written is
+        // not to be quoted.
+        let quantity = text::parse(&format!("1 J ± {written}"), None, 0).map_err(|_| {
+            let text = shortened(written);
+            let why = format!("`{text}` is no share in % that says what it means");
+            spot.fault(Problem::Figure { text, why, hint: SHARE.to_owned() })
+        })?;
         let u = quantity.node().input().and_then(|input| input.u);
         match u.filter(|_| written.contains('%')) {
             Some(u) => Ok(Some(u)),

@@ -23,7 +23,7 @@ use crate::num::math;
 use crate::quantity::{Quantity, text};
 use crate::record::spread::Spread;
 use crate::source::Citation;
-use crate::units::{Entity, Kind, What};
+use crate::units::{Dimension, Entity, Kind, Of, What};
 
 const TABLE: Arg = Arg {
     name: "table",
@@ -186,6 +186,11 @@ fn rows(name: &str, temperatures: &[Quantity], capacities: Vec<Quantity>) -> Res
         if u == Some(0.0) {
             return Err(FitError::Exact { name: name(), row });
         }
+        let before = rows.first().and_then(|first: &Row| named_mole(first.cp.dim()));
+        if before.is_some_and(|before| named_mole(cp.dim()).is_some_and(|named| named != before)) {
+            let what = "a heat capacity per mole of what the first row is of";
+            return Err(FitError::Unit { name: name(), row, found: unit(&cp), what });
+        }
         rows.push(Row { t_k: t.si(), cp, u });
     }
     let stated = rows.iter().filter(|row| row.u.is_some()).count();
@@ -193,6 +198,12 @@ fn rows(name: &str, temperatures: &[Quantity], capacities: Vec<Quantity>) -> Res
         return Err(FitError::SomeUncertain { name: name(), stated, rows: rows.len() });
     }
     Ok(rows)
+}
+
+/// What the moles of a molar quantity are of, where its unit says so.
+fn named_mole(dim: &Dimension) -> Option<Entity> {
+    let of = dim.entities().iter().find(|(of, _, halves)| *of == Of::Amount && *halves == -2);
+    of.map(|(_, entity, _)| *entity).filter(|entity| *entity != Entity::OPEN && *entity != Entity::RXN)
 }
 
 fn exponents(value: &Value) -> Result<Vec<f64>, FitError> {
@@ -272,6 +283,8 @@ fn own(call: &Call, name: Rc<str>, rows: Vec<Row>, way: Way) -> Value {
         Some(Value::Quantity(quantity)) => Some(quantity.clone()),
         _ => None,
     };
+    // Figures per mole of something named are answered per mole of it; a unit that names nothing leaves the sample.
+    let entity = rows.iter().find_map(|row| named_mole(row.cp.dim())).unwrap_or_else(|| Entity::named("sample"));
     let fit = Fit {
         name: name.clone(),
         rows: rows.into(),
@@ -283,7 +296,7 @@ fn own(call: &Call, name: Rc<str>, rows: Vec<Row>, way: Way) -> Value {
     };
     let species = Species {
         id: format!("sample of {name}").into(),
-        entity: Entity::named("sample"),
+        entity,
         composition: Composition::default(),
         charge: 0,
         phase: Phase::of(State::Crystal),

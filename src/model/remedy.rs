@@ -30,6 +30,10 @@ pub enum RemedyError {
     SeveralRows { id: String, count: usize, subjects: String },
     #[error("`{id}` about {subject} has no better value to use: {why}")]
     NoBetter { id: String, subject: String, why: String },
+    #[error(
+        "`{id}` about {subject} has another value beside it, from {other}, and no better one: with either, the row says the same of the other"
+    )]
+    AnotherOnly { id: String, subject: String, other: String },
     #[error("`{id}` about {subject} has no price to widen by: {why}")]
     NoPrice { id: String, subject: String, why: String },
     #[error("the step that leaned on `{id}` went into {function}, which cannot be computed anew from here")]
@@ -42,6 +46,7 @@ impl Explain for RemedyError {
             RemedyError::NoRow { .. } => "assumption-not-in-value",
             RemedyError::SeveralRows { .. } => "assumption-of-several-subjects",
             RemedyError::NoBetter { .. } => "better-value-missing",
+            RemedyError::AnotherOnly { .. } => "alternative-not-better",
             RemedyError::NoPrice { .. } => "price-missing",
             RemedyError::Behind { .. } => "step-not-repeatable",
         }
@@ -57,6 +62,10 @@ impl Explain for RemedyError {
             RemedyError::NoBetter { .. } => {
                 "leave the value and say why, with `justify(id, label, reason)`, or bring the missing data".to_owned()
             }
+            RemedyError::AnotherOnly { id, .. } => format!(
+                "keep the difference in u with `widened(\"{id}\")`, or say why this one is right with `justify(\"{id}\", label, \
+                 reason)`; the option `formation` chooses the other"
+            ),
             RemedyError::NoPrice { .. } => {
                 "state a price of your own with `assume(value, id, claim, price)`, or justify it".to_owned()
             }
@@ -86,7 +95,7 @@ pub static CORRECTED: Card = Card {
     args: &[ID, ABOUT],
     gives: "the value with the better alternative of that assumption",
     doc: "Computes the value anew with the better alternative in place of the assumption, through the arithmetic that \
-          followed.",
+          followed. Of two datasets neither is better, so `formation-dataset` is widened or justified instead.",
     source: "definition of the price: value with the assumption minus value of the better alternative",
     example: "reaction(\"CO(g) + H2O(g) -> CO2(g) + H2(g)\").enthalpy(\"450 degC\", #{ heat_capacity: \"constant\" })\
               .corrected(\"constant-heat-capacity\")",
@@ -150,11 +159,20 @@ fn meant(cx: &Cx, call: &Call) -> Result<(Vec<Finding>, Row), Fault> {
     }
 }
 
+/// Assumptions whose alternative is priced and is no better than the value: taking it turns the row round, and mends nothing.
+const ANOTHER: [&str; 1] = ["formation-dataset"];
+
 fn corrected(cx: &Cx, call: &Rc<Call>) -> Result<Value, Fault> {
     let value = call.quantity(0);
     let (group, row) = meant(cx, call)?;
     let mut replaced: BTreeMap<u64, Quantity> = BTreeMap::new();
     for finding in &group {
+        if let Tested::Better { how, .. } = &finding.tested
+            && ANOTHER.contains(&&*finding.id)
+        {
+            let (id, other) = (row.id, how.clone());
+            return Err(RemedyError::AnotherOnly { id, subject: row.subject, other }.into());
+        }
         let better = match &finding.tested {
             Tested::Better { value, .. } | Tested::False { value: Some(value), .. } => Rc::clone(value),
             Tested::True { .. } => continue,

@@ -11,6 +11,7 @@ use std::sync::atomic::AtomicBool;
 use serde::Deserialize;
 
 use crate::fault::Fault;
+use crate::notebook::beside::files_beside;
 use crate::notebook::causes::{Exchanged, Grounds, exchanged};
 use crate::notebook::comparison::{Compared, compare};
 use crate::notebook::contradiction::{contradictions, figure_compared, with_decisions};
@@ -48,6 +49,8 @@ pub struct AuditOptions {
     pub from_sources: bool,
     /// Keys that the auditor trusts.
     pub trusted: Vec<TrustedKey>,
+    /// Whether a notebook that is not signed with one of them differs for that alone.
+    pub strict_signature: bool,
     /// Ends a run from outside.
     pub stop: Arc<AtomicBool>,
 }
@@ -59,6 +62,7 @@ impl Default for AuditOptions {
             strict_data: false,
             from_sources: false,
             trusted: Vec::new(),
+            strict_signature: false,
             stop: Arc::default(),
         }
     }
@@ -90,13 +94,20 @@ fn audited(path: &Path, options: &AuditOptions) -> NotebookAudit {
         Ok(None) => of_unsealed(&file, &notebook, options),
     };
     let audit = audit.unwrap_or_else(|fault| could_not_run(&file, Against::Seal, "the records", &fault));
-    NotebookAudit { sha256, ..audit }
+    let mut audit = NotebookAudit { sha256, ..audit };
+    if options.strict_signature && !audit.is_signed_by_trusted() {
+        audit.unmet.push("it is not signed with a trusted key, as was demanded".to_owned());
+        audit.status = audit.status.max(AuditStatus::Differs);
+    }
+    audit
 }
 
 fn empty(file: &str, against: Against) -> NotebookAudit {
     NotebookAudit {
         file: file.to_owned(),
         sha256: None,
+        unmet: Vec::new(),
+        beside: Vec::new(),
         against,
         status: AuditStatus::Same,
         seal: None,
@@ -202,6 +213,7 @@ pub(super) fn of_sealed(
         values,
         faults,
         from_sources: options.from_sources.then(|| rederive(seal, &then.holdings)).transpose()?,
+        beside: files_beside(file, Some(seal), [&under_sealed, under_today]),
         ..empty(file, Against::Seal)
     };
     audit.status = status(&audit, options.strict_data);
@@ -480,6 +492,7 @@ fn of_unsealed(file: &str, notebook: &NotebookFile, options: &AuditOptions) -> R
         values,
         not_compared: list,
         faults: faults.map(|fault| AuditFault { under: "sealed data".to_owned(), fault: fault.clone() }).collect(),
+        beside: files_beside(file, None, [&now, &now]),
         ..empty(file, Against::RecordedOutputs)
     };
     audit.faults.iter_mut().for_each(|fault| fault.under = "today's data, since none are sealed".to_owned());

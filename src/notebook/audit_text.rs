@@ -1,5 +1,6 @@
 //! An audit as text: what differs first and at length, what is the same counted.
 
+use std::collections::BTreeMap;
 use std::fmt::Write as _;
 
 use crate::notebook::verdict::{
@@ -15,15 +16,15 @@ pub fn notebook(audit: &NotebookAudit) -> String {
         (None, Against::RecordedOutputs) => line(&mut text, "not sealed: compared with the results recorded in it"),
         (None, _) => {}
     }
+    for unmet in &audit.unmet {
+        line(&mut text, unmet);
+    }
     for row in &audit.untested {
         line(&mut text, row);
     }
     for difference in &audit.environment {
-        let short = |digest: &str| if digest.len() == 64 { digest[..12].to_owned() } else { digest.to_owned() };
-        line(
-            &mut text,
-            &format!("{}: {} then, {} now", difference.what, short(&difference.sealed), short(&difference.now)),
-        );
+        let (then, now) = (short(&difference.sealed), short(&difference.now));
+        line(&mut text, &format!("{}: {then} then, {now} now", difference.what));
     }
     for output in &audit.outputs {
         line(&mut text, &output.words());
@@ -59,6 +60,12 @@ pub fn notebook(audit: &NotebookAudit) -> String {
         line(&mut text, &format!("not compared: {what}"));
     }
     text
+}
+
+/// The beginning of a digest, which tells it from others; other texts whole.
+pub fn short(digest: &str) -> &str {
+    let is_digest = digest.len() == 64 && digest.bytes().all(|byte| byte.is_ascii_hexdigit());
+    if is_digest { &digest[..12] } else { digest }
 }
 
 /// What came of deriving values again: those that are the same counted, the others one by one.
@@ -128,32 +135,44 @@ fn seal_words(seal: &SealFacts) -> String {
     format!("sealed {}{author}{draft}{}{signed}{whole}", seal.sealed, seal.set_words())
 }
 
+/// A cause over the values of one notebook.
+#[derive(Default)]
+struct Summed<'a> {
+    values: usize,
+    last: &'a str,
+    moved: usize,
+    /// Whether the last of them is counted among those moved.
+    moves: bool,
+}
+
 /// Every cause once, with the number of values it moved: what an auditor wants to know first where many values moved.
 fn summed_causes(audit: &NotebookAudit) -> Vec<String> {
-    // With each cause the labels of its values, and whether it moves one: another unit is a change without a move.
-    let mut causes: Vec<(String, Vec<(&str, bool)>)> = Vec::new();
+    // In the order in which they come up, each with its values counted, the last of these, and how many of them it moves:
+    // another unit is a change without a move.
+    let mut order: Vec<String> = Vec::new();
+    let mut causes: BTreeMap<String, Summed> = BTreeMap::new();
     for value in &audit.values {
         let moves = [&value.under_sealed.moved, &value.under_today.moved].into_iter().flatten();
         for cause in moves.flat_map(|moved| &moved.causes) {
             let words = format!("{}: {}", cause.kind.word(), cause.what);
-            let moves = cause.share.as_deref() != Some("0");
-            let at = causes.iter().position(|(known, _)| *known == words).unwrap_or_else(|| {
-                causes.push((words, Vec::new()));
-                causes.len() - 1
+            let summed = causes.entry(words.clone()).or_insert_with(|| {
+                order.push(words);
+                Summed::default()
             });
-            let labels = &mut causes[at].1;
-            match labels.iter_mut().find(|(label, _)| *label == value.label) {
-                Some((_, moved)) => *moved |= moves,
-                None => labels.push((&value.label, moves)),
+            if summed.values == 0 || summed.last != value.label {
+                *summed = Summed { values: summed.values + 1, last: &value.label, moved: summed.moved, moves: false };
+            }
+            if cause.share.as_deref() != Some("0") && !summed.moves {
+                (summed.moved, summed.moves) = (summed.moved + 1, true);
             }
         }
     }
     let values = |n: usize| if n == 1 { "1 value".to_owned() } else { format!("{n} values") };
-    let words = |(cause, labels): (String, Vec<(&str, bool)>)| match labels.iter().filter(|(_, moves)| *moves).count() {
-        0 => format!("cause: {cause}; it changes {}, and moves none", values(labels.len())),
-        moved => format!("cause: {cause}; it moves {}", values(moved)),
+    let words = |cause: String| match &causes[&cause] {
+        Summed { moved: 0, values: all, .. } => format!("cause: {cause}; it changes {}, and moves none", values(*all)),
+        Summed { moved, .. } => format!("cause: {cause}; it moves {}", values(*moved)),
     };
-    causes.into_iter().map(words).collect()
+    order.into_iter().map(words).collect()
 }
 
 /// `under the sealed data: 9 identical, 1 moved`

@@ -111,6 +111,13 @@ impl Base {
         Base { by, same_value: record.value == is.value && !other_unit, same_u, other_unit, notes }
     }
 
+    /// Whether the move is too small to be seen in the printed digits. The printed text alone says nothing: it stands in the
+    /// file like the number, and may not belong to it.
+    fn prints_alike(&self, record: &Record, now: &Tried) -> bool {
+        let digit = 2.0 * now.value.shown().half_digit_si / factor_of(&record.unit);
+        self.by.is_some_and(|by| by.abs() <= digit.abs())
+    }
+
     fn differs(&self) -> bool {
         !(self.same_value && self.same_u)
     }
@@ -142,7 +149,7 @@ impl Base {
         let other_conditions = record.conditions != is.conditions;
         let verdict = if self.other_unit {
             Verdict::UnitOrBasisChanged
-        } else if !same_figures && record.shown == is.shown && !edited && self.by.is_some() {
+        } else if !same_figures && record.shown == is.shown && !edited && self.prints_alike(record, now) {
             Verdict::SameAsPrinted
         } else if !same_figures && within_u {
             Verdict::WithinU

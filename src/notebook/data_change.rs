@@ -1,12 +1,13 @@
 //! What a revision of data would move, before it is adopted: each notebook sealed in memory on the old tables and audited
 //! against the new ones.
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 use std::path::Path;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
 
-use crate::data::records::Records;
+use crate::data::records::{RecordTable, Records};
+use crate::data::revision;
 use crate::fault::Fault;
 use crate::notebook::audit::{AuditOptions, could_not_run, of_sealed};
 use crate::notebook::file::{NotebookFile, bytes_of};
@@ -39,25 +40,74 @@ pub fn compare_data(path: &Path, old: &Holdings, new: &Holdings, stop: &Arc<Atom
     compared.unwrap_or_else(|fault| could_not_run(&file, Against::Nothing, "the file", &fault))
 }
 
-/// The shipped tables, with the table of a file in place of that of the same dataset.
+/// The shipped tables with `old` in place of the one of its dataset, and with `new` in the place of `old`. Each is a file,
+/// or the id of a shipped dataset.
 ///
 /// # Errors
-/// The file cannot be read, or holds no table.
-pub fn revised_holdings(path: &Path) -> Result<Holdings, Fault> {
-    let unusable = |why: String| {
-        Fault::new(
-            "revised-table-unusable",
-            format!("cannot take {} for a table: {why}", path.display()),
-            "give a table as those in stdlib/data, with its schema as the first member",
-        )
-    };
-    let bytes = bytes_of(path).map_err(|error| unusable(error.to_string()))?;
-    let name = path.display().to_string();
-    let records = Records::read(&[Embedded { path: &name, bytes: &bytes, sha256: &sha256(&bytes) }])?;
-    if records.tables.is_empty() {
-        return Err(unusable("it names no schema".to_owned()));
+/// One cannot be read or is no table, the old one is in no shipped table's place, or the two are not of one kind.
+pub fn revised_holdings(old: &Path, new: &Path) -> Result<(Holdings, Holdings), Fault> {
+    let shipped = Records::shipped();
+    let (old_table, new_table) = (table_of(old)?, table_of(new)?);
+    if old_table.schema != new_table.schema {
+        return Err(Fault::new(
+            "revised-tables-differ-in-kind",
+            format!(
+                "{} cannot take the place of {}: its schema is {}, that of the other {}",
+                new.display(),
+                old.display(),
+                new_table.schema,
+                old_table.schema
+            ),
+            "give two tables of one schema, the old one and its new edition",
+        ));
     }
-    let holdings = Holdings::of(Records::shipped().with_tables(&records));
-    holdings.catalog()?;
-    Ok(holdings)
+    if !shipped.stands_for(&old_table) {
+        let known: Vec<&str> = shipped.tables.iter().map(|table| &*table.dataset).filter(|id| !id.is_empty()).collect();
+        return Err(unusable(
+            old,
+            &format!(
+                "it stands for no table in use, being of the schema {} and the dataset `{}`",
+                old_table.schema, old_table.dataset
+            ),
+            &format!(
+                "name the old table by its file or by the id of its dataset; in use are {}",
+                known.iter().collect::<BTreeSet<_>>().into_iter().copied().collect::<Vec<_>>().join(", ")
+            ),
+        ));
+    }
+    let holdings = [
+        Holdings::of(shipped.with_new_edition(&old_table, &old_table)),
+        Holdings::of(shipped.with_new_edition(&old_table, &new_table)),
+    ];
+    for made in &holdings {
+        made.catalog()?;
+    }
+    let [old, new] = holdings;
+    Ok((old, new))
+}
+
+/// What a name on the command line stands for: the bytes of the table of that dataset, else of that file.
+///
+/// # Errors
+/// The file cannot be read.
+pub fn table_bytes(name: &Path) -> Result<Vec<u8>, Fault> {
+    match name.to_str().and_then(revision::shipped_file) {
+        Some(shipped) => Ok(shipped.bytes.to_vec()),
+        None => bytes_of(name).map_err(|error| {
+            let ids = "or the id of a shipped dataset of formation enthalpies, such as atct-1.112";
+            unusable(name, &error.to_string(), &format!("give a table as those in stdlib/data, {ids}"))
+        }),
+    }
+}
+
+fn table_of(name: &Path) -> Result<RecordTable, Fault> {
+    let bytes = table_bytes(name)?;
+    let path = name.display().to_string();
+    let read = Records::read(&[Embedded { path: &path, bytes: &bytes, sha256: &sha256(&bytes) }])?;
+    let hint = "give a table as those in stdlib/data, with its schema as the first member";
+    read.tables.into_iter().next().ok_or_else(|| unusable(name, "it names no schema", hint))
+}
+
+fn unusable(name: &Path, why: &str, hint: &str) -> Fault {
+    Fault::new("revised-table-unusable", format!("cannot take {} for a table: {why}", name.display()), hint)
 }

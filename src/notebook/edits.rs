@@ -11,7 +11,7 @@ use std::sync::Arc;
 use crate::fault::Fault;
 use crate::notebook::audit::Runner;
 use crate::notebook::causes::{Values, values_of};
-use crate::notebook::file::NotebookFile;
+use crate::notebook::file::{NotebookFile, bytes_of};
 use crate::notebook::holdings::Holdings;
 use crate::notebook::seal::{Seal, SealedCell, source_digest};
 use crate::notebook::sealing::sealed_cells;
@@ -73,7 +73,7 @@ pub fn edits(file: &str, notebook: &NotebookFile, seal: &Seal) -> Vec<Edit> {
     });
     let folder = Path::new(file).parent().unwrap_or(Path::new(""));
     let modules = seal.modules.iter().filter_map(|module| {
-        let now = std::fs::read(folder.join(&module.name)).ok().map(|bytes| sha256(&bytes));
+        let now = bytes_of(&folder.join(&module.name)).ok().map(|bytes| sha256(&bytes));
         (now.as_ref() != Some(&module.sha256)).then(|| Edit {
             kind: CauseKind::Module,
             what: module.name.clone(),

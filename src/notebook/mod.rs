@@ -2,6 +2,7 @@
 
 pub mod audit;
 pub mod audit_text;
+pub mod beside;
 pub mod causes;
 pub mod comparison;
 pub mod contradiction;

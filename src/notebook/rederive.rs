@@ -191,14 +191,18 @@ fn used_by(seal: &Seal, step: &SealedStep) -> Vec<usize> {
 }
 
 fn again(bench: &mut Bench, step: &SealedStep) -> Done {
+    let mut unread = None;
     let tried = match &step.made {
-        Made::Input(input) => input_again(&bench.cx, step, input),
+        Made::Input(input) => input_again(&bench.cx, step, input).map(|(value, why)| {
+            unread = why;
+            value
+        }),
         Made::Arithmetic { operator, by } => arithmetic_again(step, operator, by.as_deref(), &bench.done),
         Made::Formula { card, arguments } => formula_again(bench, step, card, arguments),
         Made::Folded { steps, .. } => Err(format!("{steps} steps folded, taken by their linear form")),
     };
     let (value, as_recorded) = match tried {
-        Ok(value) => (Some(value), None),
+        Ok(value) => (Some(value), unread),
         Err(why) => (linear(step, &bench.done), Some(why)),
     };
     let recorded = step.si.parse::<f64>().ok();
@@ -259,24 +263,29 @@ fn kind_of(kind: &SealedKind) -> Option<Kind> {
 
 /// An input: a typed one from its text, a constant from the set; others as they stand, since the formula that used them
 /// reads them from the records again.
-fn input_again(cx: &Cx, step: &SealedStep, sealed: &SealedInput) -> Result<Quantity, String> {
+fn input_again(cx: &Cx, step: &SealedStep, sealed: &SealedInput) -> Result<(Quantity, Option<String>), String> {
     let unusable = || format!("the input {} is not readable", made_words(step));
     let recorded: f64 = step.si.parse().map_err(|_| unusable())?;
     let number = |text: &Option<String>| text.as_ref().and_then(|text| text.parse::<f64>().ok());
     let (mut si, mut u) = (recorded, number(&sealed.u));
+    let label = sealed.label.as_deref().unwrap_or("an input without a text");
+    let mut unread = Some(format!("the figure of {label}, which is taken as sealed"));
     let name = match &sealed.of {
         InputOf::Typed { ordinal } => {
-            if let Some(read) = sealed.label.as_ref().and_then(|label| text::parse(label, None, 0).ok()) {
-                // A mean of readings has a text of its own that says another thing.
-                if dim_of(step).is_some_and(|dim| dim == *read.dim()) && sealed.dof.is_none() {
-                    (si, u) = (read.si(), read.node().input().and_then(|input| input.u));
-                }
+            let read = sealed.label.as_ref().and_then(|label| text::parse(label, None, 0).ok());
+            // A text of another sort, as that of readings, says another thing than the value.
+            let says_it = |read: &Quantity| {
+                let dof = read.node().input().and_then(|input| input.evaluation().dof);
+                dim_of(step).is_some_and(|dim| dim == *read.dim()) && dof == number(&sealed.dof)
+            };
+            if let Some(read) = read.filter(says_it) {
+                (si, u, unread) = (read.si(), read.node().input().and_then(|input| input.u), None);
             }
             format!("typed {ordinal} {}", step.place.as_ref().map_or("", |place| &place.0))
         }
         InputOf::Constant { name, .. } => {
             if let Some(constant) = cx.constants().all().into_iter().find(|constant| constant.name == name) {
-                (si, u) = (constant.value, Some(constant.u));
+                (si, u, unread) = (constant.value, Some(constant.u), None);
             }
             format!("constant {name}")
         }
@@ -289,7 +298,7 @@ fn input_again(cx: &Cx, step: &SealedStep, sealed: &SealedInput) -> Result<Quant
     };
     let evaluated = Evaluation { shape, dof: number(&sealed.dof), correlation: None }.kept();
     let input = Input { u, evaluated, digit: number(&sealed.digit), ..Input::of(LeafKey::Own(name.into())) };
-    own_input(step, si, input).ok_or_else(unusable)
+    own_input(step, si, input).map(|value| (value, unread)).ok_or_else(unusable)
 }
 
 fn arithmetic_again(step: &SealedStep, word: &str, by: Option<&str>, done: &[Done]) -> Result<Quantity, String> {

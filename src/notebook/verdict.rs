@@ -7,6 +7,7 @@ use std::collections::BTreeMap;
 
 use serde::{Deserialize, Serialize};
 
+use crate::notebook::beside::FileBeside;
 use crate::notebook::run::FaultRecord;
 use crate::render::report::Assumption;
 
@@ -117,6 +118,10 @@ pub struct NotebookAudit {
     pub file: String,
     /// SHA-256 of the file as it was audited; none where it could not be read.
     pub sha256: Option<String>,
+    /// What was demanded of it and is not so, in words.
+    pub unmet: Vec<String>,
+    /// Files beside it that the audit rests on.
+    pub beside: Vec<FileBeside>,
     pub against: Against,
     pub status: AuditStatus,
     pub seal: Option<SealFacts>,
@@ -136,6 +141,13 @@ pub struct NotebookAudit {
     pub faults: Vec<AuditFault>,
     /// Values recomputed from their derivation and records alone; none where it was not asked for.
     pub from_sources: Option<Vec<Rederived>>,
+}
+
+impl NotebookAudit {
+    /// Whether its seal is signed with a key that the auditor trusts.
+    pub fn is_signed_by_trusted(&self) -> bool {
+        self.seal.as_ref().is_some_and(|seal| matches!(seal.signed, Signed::Valid { trusted: Some(_), .. }))
+    }
 }
 
 /// Facts about a seal.

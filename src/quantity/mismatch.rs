@@ -3,7 +3,7 @@
 use thiserror::Error;
 
 use crate::fault::Explain;
-use crate::units::{Dimension, Entity, KindMismatch, Of, Unit, UnitError, basis_words, unit_for};
+use crate::units::{Base, Dimension, Entity, KindMismatch, Of, Unit, UnitError, basis_words, unit_for};
 
 /// Everything that can go wrong between finished quantities.
 #[derive(Clone, Debug, Error)]
@@ -17,7 +17,7 @@ pub enum Mismatch {
     #[error(transparent)]
     Kinds(#[from] KindMismatch),
     #[error("a value in {} is not one in {wanted}", unit_name(value))]
-    Unit { value: Dimension, wanted: String },
+    Unit { value: Dimension, wanted: String, unit: Dimension },
     #[error("a difference of {difference_k} K is not a temperature on the scale {unit}")]
     DifferenceAsPoint { difference_k: f64, unit: String },
     #[error(transparent)]
@@ -48,7 +48,7 @@ impl Mismatch {
     }
 
     pub fn unit(value: &Dimension, unit: &Unit) -> Self {
-        Mismatch::Unit { value: value.clone(), wanted: unit.text.to_string() }
+        Mismatch::Unit { value: value.clone(), wanted: unit.text.to_string(), unit: unit.dim.clone() }
     }
 }
 
@@ -70,6 +70,14 @@ fn per_mole_of(dim: &Dimension) -> Option<Entity> {
         [(Of::Amount, entity, -2)] => Some(*entity),
         _ => None,
     }
+}
+
+/// The name of the one substance whose mass, against a bare mass, is all that keeps a value from a unit.
+fn uncancelled_mass(value: &Dimension, unit: &Dimension) -> Option<&'static str> {
+    let ratio = value.over(unit);
+    let [(Of::Mass, entity, halves)] = *ratio.entities() else { return None };
+    let bare = Dimension::base(Base::Kilogram).powered(-i32::from(halves))?;
+    (ratio.without_basis() == bare).then(|| entity.name())
 }
 
 impl Explain for Mismatch {
@@ -99,9 +107,13 @@ impl Explain for Mismatch {
             }
             Mismatch::OpenMole { .. } => "name what the moles are of, as in `q(\"1 kJ/mol[CH4]\")`".to_owned(),
             Mismatch::Kinds(kinds) => kinds.hint(),
-            Mismatch::Unit { value, .. } => {
-                format!("ask for it in {}, or in a unit of the same dimension", unit_name(value))
-            }
+            Mismatch::Unit { value, unit, .. } => match uncancelled_mass(value, unit) {
+                Some(of) => format!(
+                    "a kg of nothing in particular does not cancel a kg of {of}: say of what it is where it comes in, as in \
+                     `q(\"1 kg[{of}]\")` or `q(\"1 t[{of}]/h\")`"
+                ),
+                None => format!("ask for it in {}, or in a unit of the same dimension", unit_name(value)),
+            },
             Mismatch::DifferenceAsPoint { .. } => "a difference is shown in K: `.to(\"K\")`".to_owned(),
             Mismatch::UnitText(unit) => unit.hint(),
             Mismatch::NotFinite => {

@@ -72,7 +72,9 @@ impl Input {
             (Some(label), LeafKey::Repeated { count, .. }) => format!("{label}, typed {count} times"),
             (Some(label), _) => label.to_string(),
             (None, LeafKey::Datum { record, field, t_bits, way, .. }) => {
-                let t = if *t_bits == 0 { String::new() } else { format!(" at {} K", f64::from_bits(*t_bits)) };
+                // To a nanokelvin or so: the last bits of a mean of two temperatures are nobody's words.
+                let t = (*t_bits != 0).then(|| (f64::from_bits(*t_bits) * 1e9).round() / 1e9);
+                let t = t.map_or_else(String::new, |t_k| format!(" at {t_k} K"));
                 let way = if way.is_empty() { String::new() } else { format!(", {way}") };
                 format!("{field} of {record}{t}{way}")
             }

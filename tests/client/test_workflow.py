@@ -70,6 +70,12 @@ def test_the_shards_of_an_archive_are_audited_apart_and_reported_together(tmp_pa
     assert cut.read_text().count('\n{"audit"') == len(lines) - 2
 
 
+    # Other options make another audit, which the state of this one cannot go on with: no old report passes for it.
+    other = workflow(tmp_path, link, options="--strict-data --from-sources")
+    assert other.returncode != 0
+    assert "made with other options" in other.stderr
+
+
 def test_a_shard_that_cannot_be_audited_leaves_no_report(tmp_path):
     ran = workflow(tmp_path, tmp_path / "nowhere*")
     assert ran.returncode != 0

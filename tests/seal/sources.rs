@@ -144,3 +144,27 @@ fn an_open_mole_that_takes_its_name_on_the_way_into_a_unit_is_bound_again() {
         1,
     );
 }
+
+#[test]
+fn a_typed_figure_is_read_again_from_its_text_and_one_without_a_text_is_named() {
+    let table = ("cp.csv", "T / K,Cp / (J/(K mol))\n300,30\n400,31\n");
+    let cells = ["report(\"typed\", 2 * q(\"5.0 kJ ± 0.2 kJ, 95 %, dof=18\"));
+         report(\"read\", 2 * read_csv(\"cp.csv\").column(\"Cp\")[1]);
+         report(\"mean\", 2 * readings([5.007, 4.994, 5.005], \"V\"));"];
+    let all = derived(&cells, &[table]);
+    assert!(all[0].same && all[0].not_rederived.is_empty(), "{:#?}", all[0]);
+    let [figure] = all[1].not_rederived.as_slice() else { panic!("{:#?}", all[1]) };
+    assert!(figure.contains("Cp of cp.csv, line 3, which is taken as sealed"), "{figure}");
+    assert!(all[2].same && all[2].not_rederived.is_empty(), "{:#?}", all[2]);
+    // A seal by someone who knows it: the input, its step and the value altered alike.
+    let workshop = Workshop::unsealed(&cells, &[table]);
+    workshop.seal(&Sealing { draft: true, ..Sealing::default() }).unwrap();
+    workshop.edit(|tree| {
+        let seal = &mut tree["metadata"][KEY];
+        (seal["steps"][0]["si"], seal["steps"][1]["si"]) = (json!("7000"), json!("14000"));
+        seal["values"][0]["record"]["value"] = json!("14");
+    });
+    let audit = workshop.audit(&AuditOptions { from_sources: true, ..AuditOptions::default() });
+    let typed = &audit.from_sources.unwrap()[0];
+    assert!(!typed.same && typed.parts_at.as_ref().unwrap().contains("7000 sealed, 5000 derived again"), "{typed:#?}");
+}

@@ -280,7 +280,7 @@ mod tests {
             svg.split("points=\"").skip(1).flat_map(|rest| rest.split('"').next().unwrap_or("").split([' ', ',']));
         for number in numbers.filter(|text| !text.is_empty()) {
             let number: i64 = number.parse().unwrap();
-            assert!((0..=i64::from(WIDTH)).contains(&number), "{number}");
+            assert!((0..=i64::from(WIDTH * FINE_U)).contains(&number), "{number}");
         }
     }
 
