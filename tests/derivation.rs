@@ -90,6 +90,26 @@ fn figures_and_source_numbers_are_those_of_the_report() {
 }
 
 #[test]
+fn a_check_line_shows_the_calculation_behind_what_only_hands_a_value_on() {
+    let check = |code: &str| {
+        let (reports, _) = run(&[&format!("{code};\nassumptions()")]);
+        let report = reports[0].plain();
+        report.lines().find_map(|line| line.trim().strip_prefix("check")).unwrap_or_default().trim().to_owned()
+    };
+    // 2 mol/s times 50 kJ/mol is 100 kW, whatever is attached to it and however it is shown.
+    let product = "let p = q(\"2 mol/s\") * q(\"50 kJ/mol[NH3]\");";
+    let assumed =
+        check(&format!("{product} report(\"p\", assume(p.to(\"kW\"), \"no-loss\", \"nothing is lost\", \"1 kW\"))"));
+    assert_eq!(assumed, "2 mol/s × 50 kJ/mol = 100 kW");
+    let ammonia = "let h = reaction(\"N2(g) + 3 H2(g) -> 2 NH3(g)\").enthalpy(\"298.15 K\");";
+    let per = check(&format!("{ammonia} report(\"p\", h.per(\"H2\").to(\"kcal_th/mol\"))"));
+    // ΔfH° of NH3 is -45.558 kJ/mol (ATcT 1.112), so ΔrH° -91.116, over 3 -30.372, over 4.184 -7.25908.
+    for part in ["(-45.558)[1]", "(-91.116) kJ/mol / 3 = (-30.372) kJ/mol = (-7.2590", "kcal_th/mol"] {
+        assert!(per.contains(part), "{part} is not in {per}");
+    }
+}
+
+#[test]
 fn a_step_that_two_others_use_is_one_step_and_symbols_are_explained_once() {
     let code = "let half = dH * 0.5;\n(half + half * half / q(\"2.0(1) kJ/mol[rxn]\")).derivation()";
     let (_, shown) = run(&[SHIFT, code]);

@@ -20,6 +20,7 @@ use hessbook::notebook::holdings::Holdings;
 use hessbook::notebook::seal::{KEY, Seal};
 use hessbook::notebook::sealing::{Sealing, seal};
 use hessbook::notebook::verdict::{Against, AuditStatus, CauseKind, Verdict};
+use hessbook::render::report::MIME;
 use hessbook::session::on_big_stack;
 use hessbook::units::constants;
 use serde_json::{Value, json};
@@ -104,6 +105,10 @@ fn an_altered_seal_is_named_with_what_its_own_derivation_says() {
     assert!(!audit.seal.as_ref().unwrap().whole);
     let (by, causes) = move_of(&value(&audit, "shift").under_sealed);
     assert!((by - (sealed + 38.5)).abs() < 1e-12);
+    // The printed text was left as it was, and is not the figure that was compared.
+    let shown = &value(&audit, "shift").sealed.as_ref().unwrap().shown;
+    assert!(shown.starts_with("-38.5 kJ/mol[rxn]"), "{shown}");
+    assert!(audit_text::notebook(&audit).contains("which is another figure"));
     assert_eq!((causes.len(), causes[0].kind), (1, CauseKind::Seal));
     assert_eq!(value(&audit, "twice").under_sealed.verdict, Verdict::Identical);
 }
@@ -139,7 +144,12 @@ fn an_altered_reason_moves_nothing_and_is_no_seal_any_more() {
     workshop.edit(|tree| {
         tree["metadata"][KEY]["values"][0]["decisions"][0]["reason"] = json!("approved by everybody");
     });
-    assert_eq!(workshop.audit(&AuditOptions::default()).status, AuditStatus::Differs);
+    let audit = workshop.audit(&AuditOptions::default());
+    assert_eq!(audit.status, AuditStatus::Differs);
+    let short = &value(&audit, "short").under_sealed;
+    assert_eq!(short.verdict, Verdict::AssumptionChanged);
+    let note = "the seal has \"approved by everybody\", the cell \"for comparison only\"";
+    assert!(short.notes.iter().any(|said| said.contains(note)), "{short:#?}");
 }
 
 #[test]
@@ -294,6 +304,30 @@ fn a_justification_lapses_where_its_price_grew_past_the_tolerance() {
 }
 
 #[test]
+fn a_justification_of_an_equilibrium_constant_lapses_by_its_price_in_the_logarithm() {
+    let workshop = Workshop::sealed(&[
+        SHIFT,
+        "report(\"K\", shift.equilibrium_constant(\"450 degC\"));\n\
+         justify(\"formation-dataset\", \"K\", \"ATcT is newer\");\n\
+         ",
+    ]);
+    let at = |to: &str| {
+        let today = revised("formation properties of CO2(g) in atct-1.112", "-393.474", to);
+        let audit = workshop.audit(&AuditOptions { today, strict_data: true, ..AuditOptions::default() });
+        assert_eq!(value(&audit, "K").under_sealed.verdict, Verdict::Identical);
+        (value(&audit, "K").under_today.verdict, audit.justifications)
+    };
+    // K rests on ATcT, and CODATA is the alternative. CO2 1.5 kJ/mol less stable takes K down by a factor 1.28, and what the
+    // other dataset would make of it apart by as much again.
+    let (verdict, justifications) = at("-391.974");
+    assert_eq!(verdict, Verdict::Moved);
+    assert!(justifications.iter().any(|one| one.lapsed && one.id == "formation-dataset"), "{justifications:#?}");
+    // By a tenth of the tolerance it does not lapse.
+    let (_, justifications) = at("-393.473");
+    assert!(!justifications.iter().any(|one| one.lapsed), "{justifications:#?}");
+}
+
+#[test]
 fn a_row_that_nobody_dealt_with_refuses_the_seal_unless_it_is_a_draft() {
     let workshop = Workshop::sealed(&[SHIFT, REPORTS]);
     workshop.edit_cells(
@@ -345,7 +379,45 @@ fn set_parameters_are_sealed_and_set_again() {
     let how = Sealing { settings, date: "2026-12-02T00:00:00Z".to_owned(), ..Sealing::default() };
     let seal = workshop.seal(&how).unwrap();
     assert_eq!(seal.parameters[0].set.as_deref(), Some("300 degC"));
+    let audit = workshop.audit(&AuditOptions::default());
+    assert_eq!(audit.status, AuditStatus::Same);
+    assert!(audit_text::notebook(&audit).contains("with t set to 300 degC from outside"));
+}
+
+/// Changes each recorded result.
+fn in_outputs(tree: &mut Value, change: impl Fn(&mut Value)) {
+    for cell in tree["cells"].as_array_mut().unwrap() {
+        for output in cell["outputs"].as_array_mut().unwrap() {
+            if let Some(record) = output.get_mut("data").and_then(|data| data.get_mut(MIME)) {
+                change(record);
+            }
+        }
+    }
+}
+
+#[test]
+fn a_recorded_output_that_does_not_say_what_was_sealed_is_a_difference_and_a_cleared_one_is_not() {
+    let workshop = Workshop::sealed(&[SHIFT, REPORTS]);
+    let audit = workshop.audit(&AuditOptions::default());
+    assert_eq!((audit.status, audit.outputs.len()), (AuditStatus::Same, 0), "{}", audit_text::notebook(&audit));
+    workshop.edit(|tree| {
+        in_outputs(tree, |record| {
+            if record["label"] == "twice" {
+                record["value"] = json!("-99.5");
+            }
+        });
+    });
+    let audit = workshop.audit(&AuditOptions::default());
+    let text = audit_text::notebook(&audit);
+    assert_eq!((audit.status, audit.outputs.len()), (AuditStatus::Differs, 1), "{text}");
+    assert!(text.contains("the recorded output of twice says -99.5 kJ/mol[rxn], u "), "{text}");
+    // Sealing again puts it right, though the seal itself says the same.
+    workshop.seal(&Sealing::default()).unwrap();
     assert_eq!(workshop.audit(&AuditOptions::default()).status, AuditStatus::Same);
+    workshop.edit(|tree| tree["cells"].as_array_mut().unwrap().iter_mut().for_each(|cell| cell["outputs"] = json!([])));
+    let audit = workshop.audit(&AuditOptions::default());
+    assert_eq!(audit.status, AuditStatus::Same);
+    assert!(audit_text::notebook(&audit).contains("not compared: recorded outputs: there are none"));
 }
 
 #[test]

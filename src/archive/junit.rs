@@ -13,11 +13,10 @@ use quick_junit::{NonSuccessKind, Report, TestCase, TestCaseStatus, TestSuite};
 
 use crate::archive::audits::Audits;
 use crate::archive::report::{About, ReportError, unwritable};
-use crate::archive::tally::is_same_again;
 use crate::archive::words::{causes_words, edits, fault_words, seal_words};
 use crate::fault::Fault;
 use crate::notebook::verdict::{
-    Against, AuditFault, AuditStatus, NotebookAudit, Outcome, Rederived, Signed, ValueAudit, Verdict,
+    Against, AuditFault, AuditStatus, NotebookAudit, Outcome, OutputDiffers, Rederived, Signed, ValueAudit, Verdict,
 };
 use crate::render::harmless::{harmless, in_one_line};
 
@@ -126,6 +125,11 @@ fn of_notebook(audit: &NotebookAudit, about: &About) -> Vec<TestCase> {
             fallen(NonSuccessKind::Failure, "altered seal", &words, std::slice::from_ref(&words)),
         ));
     }
+    if let Some(first) = audit.outputs.first() {
+        let words: Vec<String> = audit.outputs.iter().map(OutputDiffers::words).collect();
+        let status = fallen(NonSuccessKind::Failure, "recorded output differs", &first.words(), &words);
+        cases.push(case(audit, "(recorded outputs)", status));
+    }
     if audit.status == AuditStatus::NothingToCompare {
         let mut status = TestCaseStatus::skipped();
         status.set_message(line(audit.not_compared.first().map_or("nothing to compare with", String::as_str)));
@@ -142,7 +146,7 @@ fn of_value(value: &ValueAudit, audit: &NotebookAudit, about: &About, derived: O
     };
     let other = (audit.against == Against::Seal && value.under_today != value.under_sealed)
         .then_some((&value.under_today, "under today's data"));
-    let otherwise = derived.filter(|one| !is_same_again(one));
+    let otherwise = derived.filter(|one| !one.is_same());
 
     let counts = other.filter(|_| about.strict_data);
     let worst = [Some((first, under)), counts].into_iter().flatten().max_by_key(|(outcome, _)| outcome.verdict);
@@ -187,18 +191,15 @@ fn told(value: &ValueAudit, outcome: &Outcome, under: &str) -> Vec<String> {
     if let Some(moved) = &outcome.moved {
         lines.push(format!("moved by {}", moved.shown));
         lines.extend(causes_words(moved));
-        lines.extend(moved.parts_at.iter().map(|step| format!("parts at {step}")));
+        lines.extend(moved.parts_at.iter().map(|step| format!("first differs at {step}")));
     }
     lines.extend(outcome.notes.iter().cloned());
     lines
 }
 
 fn derived_words(one: &Rederived) -> String {
-    let step = one.parts_at.as_ref().map_or_else(String::new, |step| format!("; parts at {step}"));
-    match (&one.value, &one.off_by) {
-        (Some(value), Some(off_by)) => format!("derived again as {value}, off by {off_by}{step}"),
-        _ => format!("could not be derived again{step}"),
-    }
+    let step = one.parts_at.as_ref().map_or_else(String::new, |step| format!("; first differs at {step}"));
+    format!("{}{step}", one.otherwise_words())
 }
 
 /// What a reader of the suite should know and what fails no case.

@@ -8,14 +8,15 @@ use serde::Serialize;
 use serde_json::{Value, json};
 
 use crate::archive::report::About;
-use crate::archive::tally::{Notes, Tally, is_identical, is_same_again};
+use crate::archive::tally::{Notes, Tally, is_identical};
 use crate::archive::text::sizes;
 use crate::archive::words::{
     causes_words, counted, edits, fault_words, left_out_words, price, reasons, signature_words, status_words,
     verdict_counts,
 };
 use crate::notebook::verdict::{
-    Against, AuditStatus, Figure, Justification, NotebookAudit, Outcome, SideBySide, StepPair, ValueAudit, Verdict,
+    Against, AuditStatus, Figure, Justification, NotebookAudit, Outcome, OutputDiffers, SideBySide, StepPair,
+    ValueAudit, Verdict,
 };
 
 /// Derivations up to this number are unfolded from the start.
@@ -108,7 +109,10 @@ pub fn tally(tally: &Tally) -> Shown<'_> {
         not_compared: notes(&tally.not_compared),
         surroundings: notes(&tally.surroundings),
         justifications: tally.justifications_in_force + tally.justifications_lapsed,
-        not_rederived: tally.rederived.as_ref().map_or(0, |derived| derived.in_part + derived.otherwise),
+        not_rederived: tally
+            .rederived
+            .as_ref()
+            .map_or(0, |derived| derived.in_part + derived.otherwise + derived.not_at_all),
         unfolded: tally.derivations <= UNFOLDED,
         derivations_left_out: tally.derivations.saturating_sub(MOST_DERIVATIONS),
         tally,
@@ -155,7 +159,6 @@ fn meaning(verdict: Verdict) -> &'static str {
 
 fn attention(tally: &Tally) -> Vec<String> {
     let seals = &tally.seals;
-    let bare = tally.recorded + tally.nothing;
     let said = [
         (seals.altered, "notebook", "with a seal that was altered after it was made"),
         (seals.signature_invalid, "notebook", "with a signature that does not hold"),
@@ -167,7 +170,10 @@ fn attention(tally: &Tally) -> Vec<String> {
         ),
         (seals.signed_untrusted, "notebook", "signed with a key that is not among the trusted"),
         (seals.signed_trusted, "notebook", "signed with a trusted key"),
-        (bare, "notebook", "without a readable seal"),
+        (tally.without_seal(), "notebook", "without a seal"),
+        (seals.unreadable, "notebook", "with a seal that cannot be read"),
+        (tally.not_read(), "file", "that could not be read as a notebook"),
+        (tally.outputs_differ, "notebook", "with recorded outputs that are not what was sealed"),
         (tally.notebooks_edited, "notebook", "with cells or modules edited since they were sealed"),
         (tally.justifications_lapsed, "justification", "lapsed"),
         (tally.untested.said.len(), "assumption", "open when its notebook was sealed"),
@@ -190,7 +196,9 @@ pub fn not_same(audit: &NotebookAudit, at: &At) -> Vec<Value> {
     if audit.status.exit() == 0 {
         return Vec::new();
     }
-    let reasons = reasons(audit, at.about.strict_data);
+    let mut reasons = reasons(audit, at.about.strict_data);
+    reasons.extend(audit.seal.iter().flat_map(|seal| seal.contradictions.iter().cloned()));
+    reasons.extend(audit.outputs.iter().map(OutputDiffers::words));
     vec![json!({ "file": audit.file, "status": audit.status.word(), "reasons": reasons })]
 }
 
@@ -321,20 +329,17 @@ fn justification(one: &Justification, audit: &NotebookAudit) -> Value {
 }
 
 pub fn not_rederived(audit: &NotebookAudit, _at: &At) -> Vec<Value> {
-    let partly = audit.from_sources.iter().flatten().filter(|one| !is_same_again(one) || !one.not_rederived.is_empty());
+    let partly = audit.from_sources.iter().flatten().filter(|one| !one.is_same() || !one.not_rederived.is_empty());
     let unit = |label: &str| audit.values.iter().find(|value| value.label == label).map_or("", |value| &value.unit);
     partly
         .map(|one| {
-            let words = match (&one.value, is_same_again(one)) {
+            let words = match (&one.value, one.is_same()) {
                 (_, true) => "the same, with these steps taken as sealed".to_owned(),
-                (Some(value), false) => {
-                    let off_by = one.off_by.as_deref().unwrap_or("an unknown amount");
-                    format!("derived again as {value}, off by {off_by}, in {}", unit(&one.label))
-                }
-                (None, false) => "could not be derived again".to_owned(),
+                (Some(_), false) => format!("{}, in {}", one.otherwise_words(), unit(&one.label)),
+                (None, false) => one.otherwise_words(),
             };
             json!({
-                "file": audit.file, "label": one.label, "words": words, "loud": !is_same_again(one),
+                "file": audit.file, "label": one.label, "words": words, "loud": !one.is_same(),
                 "steps": one.not_rederived, "parts_at": one.parts_at,
             })
         })
@@ -363,10 +368,15 @@ pub fn notebooks(audit: &NotebookAudit, _at: &At) -> Vec<Value> {
             Against::Nothing => "nothing",
         },
         "values": verdict_counts(audit.values.iter().map(verdict)),
+        "no_seal": match audit.against {
+            Against::Seal => "its seal cannot be read",
+            Against::Nothing if audit.status == AuditStatus::CouldNotRun => "not known: the file could not be read",
+            _ => "no seal",
+        },
         "sealed": seal.map(|seal| seal.sealed.clone()),
         "author": seal.and_then(|seal| seal.author.clone()),
         "draft": seal.is_some_and(|seal| seal.draft),
         "altered": seal.is_some_and(|seal| !seal.whole),
-        "signature": seal.map(signature_words),
+        "signature": seal.map(|seal| format!("{}{}", signature_words(seal), seal.set_words())),
     })]
 }

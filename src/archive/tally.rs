@@ -40,6 +40,8 @@ pub struct Tally {
     pub justifications_in_force: usize,
     pub justifications_lapsed: usize,
     pub seals: Seals,
+    /// Notebooks whose recorded outputs are not what was sealed.
+    pub outputs_differ: usize,
     pub faults: usize,
     /// Cells and modules that are not what was sealed, and in how many notebooks.
     pub edits: usize,
@@ -64,6 +66,8 @@ pub struct Seals {
     pub signed_trusted: usize,
     pub signed_untrusted: usize,
     pub signature_invalid: usize,
+    /// In the place of a seal stands what is none that can be read, or whose records make no catalogue.
+    pub unreadable: usize,
     /// Whose content is not what their digest says.
     pub altered: usize,
     pub drafts: usize,
@@ -77,6 +81,8 @@ pub struct RederivedCounts {
     /// The same, with some steps taken as they were sealed.
     pub in_part: usize,
     pub otherwise: usize,
+    /// No figure came of it, so that nothing was compared.
+    pub not_at_all: usize,
 }
 
 /// A cause over the whole archive.
@@ -173,6 +179,16 @@ impl Tally {
         self.with_status(AuditStatus::Differs) + self.with_status(AuditStatus::CouldNotRun)
     }
 
+    /// Notebooks that were read and have no seal.
+    pub fn without_seal(&self) -> usize {
+        self.recorded + self.with_status(AuditStatus::NothingToCompare)
+    }
+
+    /// Files that could not be read as notebooks, so that nobody knows whether they have a seal.
+    pub fn not_read(&self) -> usize {
+        self.nothing.saturating_sub(self.with_status(AuditStatus::NothingToCompare))
+    }
+
     fn add(&mut self, audit: &NotebookAudit) {
         *self.notebooks.entry(audit.status).or_default() += 1;
         match audit.against {
@@ -194,9 +210,11 @@ impl Tally {
         let lapsed = audit.justifications.iter().filter(|one| one.lapsed).count();
         self.justifications_lapsed += lapsed;
         self.justifications_in_force += audit.justifications.len() - lapsed;
-        if let Some(seal) = &audit.seal {
-            self.seals.add(seal);
+        match &audit.seal {
+            Some(seal) => self.seals.add(seal),
+            None => self.seals.unreadable += usize::from(audit.against == Against::Seal),
         }
+        self.outputs_differ += usize::from(!audit.outputs.is_empty());
         self.faults += audit.faults.len();
         let edits = audit.environment.iter().filter(|difference| difference.is_edit()).count();
         self.edits += edits;
@@ -231,16 +249,12 @@ impl Seals {
     }
 }
 
-/// Whether a value derived again is the sealed one, as far as it could be derived.
-pub fn is_same_again(one: &Rederived) -> bool {
-    one.same && one.u_same != Some(false)
-}
-
 impl RederivedCounts {
     fn add(&mut self, one: &Rederived) {
-        match (is_same_again(one), one.not_rederived.is_empty()) {
+        match (one.is_same(), one.not_rederived.is_empty()) {
             (true, true) => self.whole += 1,
             (true, false) => self.in_part += 1,
+            (false, _) if one.value.is_none() => self.not_at_all += 1,
             (false, _) => self.otherwise += 1,
         }
     }

@@ -11,7 +11,7 @@ use crate::archive::tally::{CauseSum, Tally};
 use crate::archive::words::{counted, reasons, status_words, verdict_counts};
 use crate::fault::Fault;
 use crate::notebook::audit_text::short;
-use crate::notebook::verdict::{AuditStatus, Verdict};
+use crate::notebook::verdict::Verdict;
 use crate::render::harmless::in_one_line;
 
 /// Largest shares that a cause shows, each in a unit of its own.
@@ -111,7 +111,10 @@ fn verdicts(pen: &mut Pen, tally: &Tally) -> Result<(), Fault> {
 fn facts(pen: &mut Pen, tally: &Tally) -> Result<(), Fault> {
     let seals = &tally.seals;
     let counts = [
-        (tally.recorded + tally.with_status(AuditStatus::NothingToCompare), "without a seal", false),
+        (tally.without_seal(), "without a seal", false),
+        (seals.unreadable, "with a seal that cannot be read", true),
+        (tally.not_read(), "that could not be read", true),
+        (tally.outputs_differ, "with recorded outputs that are not what was sealed", true),
         (seals.not_signed, "sealed and not signed", false),
         (seals.signed_trusted, "signed with a trusted key", false),
         (seals.signed_untrusted, "signed with a key that is not among the trusted", false),
@@ -134,8 +137,13 @@ fn facts(pen: &mut Pen, tally: &Tally) -> Result<(), Fault> {
     if let Some(derived) = &tally.rederived {
         let otherwise = format!("{} otherwise than sealed", derived.otherwise);
         let otherwise = if derived.otherwise > 0 { pen.loud(&otherwise) } else { otherwise };
+        let not_at_all = if derived.not_at_all > 0 {
+            pen.loud(&format!(", {} could not be derived", derived.not_at_all))
+        } else {
+            String::new()
+        };
         lines.push(format!(
-            "derived again from sources alone: {} whole, {} with some steps taken as sealed, {otherwise}",
+            "derived again from sources alone: {} whole, {} with some steps taken as sealed, {otherwise}{not_at_all}",
             counted(derived.whole, "value"),
             derived.in_part
         ));

@@ -2,7 +2,6 @@
 
 use std::collections::BTreeMap;
 
-use crate::archive::tally::is_same_again;
 use crate::notebook::verdict::{
     Against, AuditFault, AuditStatus, Cause, Difference, Move, NotebookAudit, SealFacts, SideBySide, Signed,
     ValueAudit, Verdict,
@@ -32,7 +31,7 @@ pub fn seal_words(seal: &SealFacts) -> String {
     };
     let draft = if seal.draft { ", as a draft" } else { "" };
     let whole = if seal.whole { "" } else { "; ALTERED after it was made: its content is not what its digest says" };
-    format!("sealed {}{draft}, {author}; {}{whole}", seal.sealed, signature_words(seal))
+    format!("sealed {}{draft}, {author}{}; {}{whole}", seal.sealed, seal.set_words(), signature_words(seal))
 }
 
 /// What is known of a signature, and nothing more.
@@ -140,6 +139,9 @@ pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
             reasons.push("its signature does not hold".to_owned());
         }
     }
+    if !audit.outputs.is_empty() {
+        reasons.push(format!("{} not as sealed", counted(audit.outputs.len(), "recorded output")));
+    }
     let sides: &[Side] = match (audit.against, strict_data) {
         (Against::Seal, true) => &[
             ("under the sealed data", |value| value.under_sealed.verdict),
@@ -154,9 +156,14 @@ pub fn reasons(audit: &NotebookAudit, strict_data: bool) -> Vec<String> {
             reasons.push(format!("{under}: {worse}"));
         }
     }
-    let otherwise = audit.from_sources.iter().flatten().filter(|one| !is_same_again(one)).count();
+    let derived = || audit.from_sources.iter().flatten().filter(|one| !one.is_same());
+    let otherwise = derived().filter(|one| one.value.is_some()).count();
     if otherwise > 0 {
         reasons.push(format!("{} derived again otherwise than sealed", counted(otherwise, "value")));
+    }
+    let not_at_all = derived().filter(|one| one.value.is_none()).count();
+    if not_at_all > 0 {
+        reasons.push(format!("{} that could not be derived again", counted(not_at_all, "value")));
     }
     reasons.extend(edits(audit));
     reasons

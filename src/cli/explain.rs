@@ -11,15 +11,15 @@ use crate::model::card::Card;
 use crate::record::register::CLAIMS;
 use crate::render::card::{card, named, wrapped};
 use crate::script::module_text::{self, ENDING, Item};
-use crate::script::verbs::{VERBS, Verb};
+use crate::script::verbs::{FUNCTIONS, VERBS, Verb};
 use crate::script::words::nearest;
 
 use super::{Done, out};
 
 /// Explain a function, an assumption, or a method of a module beside a notebook.
 ///
-/// NAME is a function of the language (`enthalpy`, `reaction.enthalpy`), the id of an assumption (`stable-phase`), a module
-/// (`plant`), or one of its methods (`plant::duty`).
+/// NAME is a function of the language (`enthalpy`, `reaction.enthalpy`), the id of an assumption (`stable-phase`) or of a
+/// shortcut (`midpoint`), a module (`plant`), or one of its methods (`plant::duty`).
 #[derive(Args)]
 pub struct Explain {
     /// What is to be explained
@@ -37,13 +37,21 @@ impl Explain {
 }
 
 fn explained(name: &str, folder: &Path) -> Result<String, Fault> {
+    if !folder.is_dir() {
+        return Err(Fault::new(
+            "explain-folder-missing",
+            format!("there is no folder {} with modules in it", folder.display()),
+            "give the folder of the notebook to --in, or leave it out for this one",
+        ));
+    }
     if let Some((module, method)) = name.split_once("::") {
         return of_module(module, method, folder);
     }
     let bare =
         |card: &&&Card| card.name == name || card.id == name || card.signature().starts_with(&format!("{name}("));
     let mut parts: Vec<String> = CARDS.iter().filter(bare).map(|one| card(one)).collect();
-    parts.extend(VERBS.iter().filter(|verb| verb.name == name).map(verb));
+    parts.extend(verbs().filter(|verb| verb.name == name).map(verb));
+    parts.extend(shortcut(name));
     parts.extend(CLAIMS.iter().filter(|(id, _)| *id == name).map(|(id, claim)| assumption(id, claim)));
     let file = folder.join(format!("{name}{ENDING}"));
     if file.is_file() {
@@ -54,7 +62,8 @@ fn explained(name: &str, folder: &Path) -> Result<String, Fault> {
 
 fn unknown(name: &str, folder: &Path) -> Fault {
     let mut known: Vec<String> = CARDS.iter().map(|card| card.name.to_owned()).collect();
-    known.extend(VERBS.iter().map(|verb| verb.name.to_owned()));
+    known.extend(verbs().map(|verb| verb.name.to_owned()));
+    known.extend(CARDS.iter().flat_map(|card| card.alternatives).map(|one| one.id.to_owned()));
     known.extend(CLAIMS.iter().map(|(id, _)| (*id).to_owned()));
     known.extend(modules(folder));
     let hint = match nearest(name, known.iter().map(String::as_str)) {
@@ -67,11 +76,42 @@ fn unknown(name: &str, folder: &Path) -> Fault {
     Fault::new("explain-unknown", format!("there is nothing called {name} to explain"), hint)
 }
 
-/// Names of the modules in a folder, in order.
+fn verbs() -> impl Iterator<Item = &'static Verb> {
+    VERBS.iter().chain(FUNCTIONS)
+}
+
+/// A shortcut that reports price where it was not taken, with the formulas that have it.
+fn shortcut(id: &str) -> Option<String> {
+    // What is an assumption too is told as one.
+    if CLAIMS.iter().any(|(known, _)| *known == id) {
+        return None;
+    }
+    let has = |card: &&&Card| card.alternatives.iter().any(|one| one.id == id);
+    let formulas: Vec<String> = CARDS.iter().filter(has).map(|card| card.signature()).collect();
+    let mut words: Vec<&str> = Vec::new();
+    for one in CARDS.iter().flat_map(|card| card.alternatives).filter(|one| one.id == id) {
+        if !words.contains(&one.words) {
+            words.push(one.words);
+        }
+    }
+    if words.is_empty() {
+        return None;
+    }
+    let mut text = format!("{id}\n");
+    named(&mut text, "shortcut", &words.join("; "));
+    named(&mut text, "priced for", &formulas.join("; "));
+    Some(text)
+}
+
+/// Names of the modules in a folder, in order; a script that runs by itself is none.
 fn modules(folder: &Path) -> Vec<String> {
     let entries = std::fs::read_dir(folder).into_iter().flatten().flatten();
-    let mut names: Vec<String> =
-        entries.filter_map(|entry| entry.file_name().to_str()?.strip_suffix(ENDING).map(str::to_owned)).collect();
+    let name = |entry: std::fs::DirEntry| {
+        let name = entry.file_name().to_str()?.strip_suffix(ENDING)?.to_owned();
+        let text = std::fs::read_to_string(entry.path()).ok()?;
+        module_text::read(&name, &text).is_ok().then_some(name)
+    };
+    let mut names: Vec<String> = entries.filter_map(name).collect();
     names.sort();
     names
 }
@@ -185,6 +225,23 @@ mod tests {
         assert!(explained("stable-phase", here).unwrap().contains("reaction.enthalpy(T, options)"));
         assert_eq!(code("enthlapy", here), ("explain-unknown", "did you mean enthalpy?".to_owned()));
         assert_eq!(code("stable-fase", here).1, "did you mean stable-phase?");
+    }
+
+    #[test]
+    fn functions_without_a_card_and_shortcuts_are_told_and_a_folder_that_is_not_there_is() {
+        let here = Path::new(".");
+        for name in ["q", "exact", "abs", "exp", "ln", "sqrt", "sin", "cos", "tan"] {
+            assert!(explained(name, here).unwrap().starts_with(&format!("{name}(")), "{name}");
+        }
+        for id in CARDS.iter().flat_map(|card| card.alternatives).map(|one| one.id) {
+            assert!(explained(id, here).unwrap().contains(&format!("{id}\n")), "{id}");
+        }
+        assert!(explained("midpoint", here).unwrap().contains("with ΔCp held at its value half-way"));
+        assert_eq!(code("enthalpy", Path::new("nowhere")).0, "explain-folder-missing");
+        let folder = tempfile::tempdir().unwrap();
+        std::fs::write(folder.path().join("first.rhai"), "let x = q(\"1 kJ\");\nreport(\"x\", x);\n").unwrap();
+        std::fs::write(folder.path().join("second.rhai"), "fn duty(n) { n }\n").unwrap();
+        assert_eq!(modules(folder.path()), ["second"]);
     }
 
     #[test]

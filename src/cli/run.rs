@@ -1,7 +1,7 @@
 //! `hessbook run`: a notebook or script from the command line.
 
 use std::io::IsTerminal;
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
@@ -57,7 +57,23 @@ impl Run {
     }
 }
 
+/// Refuses a folder where one file is wanted.
+///
+/// # Errors
+/// It is a folder.
+pub(super) fn no_folder(path: &Path, wanted: &str) -> Result<(), Fault> {
+    if !path.is_dir() {
+        return Ok(());
+    }
+    Err(Fault::new(
+        "notebook-is-folder",
+        format!("{} is a folder, and {wanted} is wanted", path.display()),
+        format!("name a file in it, such as {}", path.join("NAME.ipynb").display()),
+    ))
+}
+
 fn executed(args: &Run, stop: Arc<AtomicBool>) -> Result<RunStatus, Fault> {
+    no_folder(&args.file, "a notebook or a script")?;
     let mut source = Source::read(&args.file)?;
     let target = if args.in_place { Some(&args.file) } else { args.output.as_ref() };
     if let (Some(_), Source::Script { name, .. }) = (target, &source) {

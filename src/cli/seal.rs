@@ -13,6 +13,7 @@ use crate::notebook::sealing::{Sealed, Sealing, seal};
 use crate::notebook::signature::PrivateKey;
 use crate::session::on_big_stack;
 
+use super::run::no_folder;
 use super::{Done, err, out, setting, settings, stopped_by_interrupt};
 
 /// Run notebooks in a fresh session and seal them.
@@ -54,11 +55,16 @@ impl Seal {
         let mut worst = 0;
         for path in &self.notebooks {
             let done = on_big_stack(|| -> Result<(Vec<OpenRow>, String), Fault> {
-                let Sealed { notebook, seal, kept } = seal(path, &how, &holdings, &Arc::clone(&stop))?;
+                no_folder(path, "a notebook")?;
+                let Sealed { notebook, seal, kept, bad_signature } = seal(path, &how, &holdings, &Arc::clone(&stop))?;
                 notebook.write(path)?;
                 let when = if kept { "unchanged since" } else { "sealed" };
                 let draft = if seal.draft { " as a draft" } else { "" };
-                let words = format!("{when} {}{draft}: {}", seal.sealed, counted(seal.values.len()));
+                let mut words = format!("{when} {}{draft}: {}", seal.sealed, counted(seal.values.len()));
+                if let Some(key) = bad_signature {
+                    let now = if seal.signature.is_some() { "signed anew" } else { "no longer signed" };
+                    words.push_str(&format!("; the signature with the key {key} did not hold, and it is {now}"));
+                }
                 Ok((seal.open, words))
             });
             match done {

@@ -2,22 +2,27 @@
 
 use std::rc::Rc;
 
+use crate::model::basis::PER;
 use crate::model::card::{Cx, Sources, call_of};
 use crate::model::gather::{Figure, FigureOrigin};
+use crate::model::quantities::ASSUME;
 use crate::quantity::{Quantity, round};
 use crate::record::node::{Node, Operator, Origin};
 use crate::source::Citation;
+use crate::units::Unit;
 
 /// The figures a value was computed from: by its formula's own line, or, for arithmetic and for formulas that hand a value
 /// on, the line of each formula that went in, and then the step itself.
 pub fn check_line(cx: &Cx, value: &Quantity, sources: &mut Sources) -> String {
-    if let Some(line) = own_line(cx, value.node(), sources) {
+    let node = calculated(value.node());
+    if let Some(line) = own_line(cx, node, sources) {
         return line;
     }
-    let node = value.node();
-    let inputs = node.inputs().iter().take(MOST_FIGURES);
-    let mut lines: Vec<String> = inputs.filter_map(|(input, _)| own_line(cx, input, sources)).collect();
-    let step = step_line(value);
+    let mut lines = Vec::new();
+    for (input, _) in node.inputs().iter().take(MOST_FIGURES) {
+        before(cx, input, sources, &mut lines);
+    }
+    let step = step_of(node, value);
     if step.is_empty() {
         return step;
     }
@@ -25,10 +30,41 @@ pub fn check_line(cx: &Cx, value: &Quantity, sources: &mut Sources) -> String {
     lines.join("; ")
 }
 
+/// Lines of the formula behind an input, and of its change of basis, if that is all that came between.
+fn before(cx: &Cx, input: &Rc<Node>, sources: &mut Sources, lines: &mut Vec<String>) {
+    let node = calculated(input);
+    if let Some(line) = own_line(cx, node, sources) {
+        lines.push(line);
+    } else if is_per(node) {
+        node.inputs().iter().for_each(|(whole, _)| before(cx, whole, sources, lines));
+        lines.push(step_of(node, &Quantity::of_node(Rc::clone(node))));
+    }
+}
+
+/// The node that computed a value, past those that hand it on as it is: an assumption attached, a mole named.
+fn calculated(mut node: &Rc<Node>) -> &Rc<Node> {
+    while let [(input, 1.0)] = node.inputs()
+        && input.si() == node.si()
+        && (matches!(node.origin(), Origin::Operator(Operator::Scale(_)))
+            || call_of(node).is_some_and(|call| call.card.id == ASSUME.id))
+    {
+        node = input;
+    }
+    node
+}
+
+fn is_per(node: &Node) -> bool {
+    call_of(node).is_some_and(|call| call.card.id == PER.id)
+}
+
 /// The figures of one step alone, `2 × (-37.5 kJ/mol) = (-75 kJ/mol)`; empty for what is no step of arithmetic and hands no
 /// value on.
 pub(super) fn step_line(value: &Quantity) -> String {
-    let node = value.node();
+    step_of(value.node(), value)
+}
+
+/// The step that a node is, with the value as it is shown.
+fn step_of(node: &Rc<Node>, value: &Quantity) -> String {
     if node.inputs().is_empty() {
         return String::new();
     }
@@ -37,10 +73,20 @@ pub(super) fn step_line(value: &Quantity) -> String {
     let more = if node.inputs().len() > MOST_FIGURES { ", …" } else { "" };
     let step = match node.origin() {
         Origin::Operator(operator) => arithmetic(operator, &names),
+        Origin::Step(_) if is_per(node) => per_line(node, value, &names.join(", ")),
         Origin::Step(step) => format!("{} of {}{more}", step.name(), names.join(", ")),
         _ => return String::new(),
     };
     format!("{step} = {}", figure(value))
+}
+
+/// What `per` did, `(-99.05) kJ/mol / 3`; where the result is shown in another unit, with the result in the old one.
+fn per_line(node: &Node, value: &Quantity, whole: &str) -> String {
+    let [(input, factor)] = node.inputs() else { return whole.to_owned() };
+    let number = round::shortest(round::significant(1.0 / factor, 9).parse().unwrap_or(f64::NAN));
+    let unit = Quantity::of_node(Rc::clone(input)).unit();
+    let divided = format!("{whole} / {number}");
+    if unit.factor == value.unit().factor { divided } else { format!("{divided} = {}", figure_in(value.si(), &unit)) }
 }
 
 /// A check line is to be followed by hand.
@@ -48,10 +94,13 @@ const MOST_FIGURES: usize = 8;
 
 /// A value with its unit, to the digits a calculator needs.
 fn figure(value: &Quantity) -> String {
-    let unit = value.unit();
-    let number = round::shortest(round::significant(unit.from_si(value.si()), 9).parse().unwrap_or(f64::NAN));
+    figure_in(value.si(), &value.unit())
+}
+
+fn figure_in(si: f64, unit: &Unit) -> String {
+    let number = round::shortest(round::significant(unit.from_si(si), 9).parse().unwrap_or(f64::NAN));
     let number = if number.starts_with('-') { format!("({number})") } else { number };
-    let unit = crate::units::reader_text(&unit);
+    let unit = crate::units::reader_text(unit);
     if unit.is_empty() { number } else { format!("{number} {unit}") }
 }
 

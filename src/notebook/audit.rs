@@ -14,24 +14,29 @@ use crate::fault::Fault;
 use crate::notebook::beside::files_beside;
 use crate::notebook::causes::{Exchanged, Grounds, exchanged};
 use crate::notebook::comparison::{Compared, compare};
+use crate::notebook::contradiction::{contradictions, figure_compared, with_decisions};
 use crate::notebook::edits::{Edit, edits, exchanged_edits};
 use crate::notebook::file::{NotebookFile, bytes_of};
 use crate::notebook::fixed_units;
 use crate::notebook::holdings::{Holdings, constants_of, files_of, records_of};
+use crate::notebook::outputs::outputs;
 use crate::notebook::rederive::rederive;
 use crate::notebook::run::{FaultRecord, Source};
 use crate::notebook::seal::{Seal, SealedValue};
 use crate::notebook::sealing::{engine_now, read_seal};
 use crate::notebook::side_by_side::side_by_side;
 use crate::notebook::signature::{TrustedKey, checked};
+use crate::notebook::skeleton::what_of;
 use crate::notebook::trial::{Trial, Unwatched, trial};
 use crate::notebook::verdict::{
     Against, AuditFault, AuditStatus, Difference, Figure, Justification, NotebookAudit, Outcome, SealFacts, Signed,
     ValueAudit, Verdict,
 };
+use crate::num::math;
 use crate::render::report::{MIME, Record};
 use crate::session::on_big_stack;
 use crate::source::sha256;
+use crate::units::What;
 
 /// What an audit is made with.
 #[derive(Clone, Debug)]
@@ -110,6 +115,7 @@ fn empty(file: &str, against: Against) -> NotebookAudit {
         values: Vec::new(),
         justifications: Vec::new(),
         untested: Vec::new(),
+        outputs: Vec::new(),
         not_compared: Vec::new(),
         faults: Vec::new(),
         from_sources: None,
@@ -186,16 +192,21 @@ pub(super) fn of_sealed(
         draft: seal.draft,
         whole: grounds.whole,
         signed: checked(seal, &options.trusted),
+        set: runner.settings.clone(),
+        contradictions: if grounds.whole { Vec::new() } else { contradictions(seal, &under_sealed) },
     };
+    let outputs = outputs(notebook, seal);
     let mut audit = NotebookAudit {
         seal: Some(facts),
         environment: environment(&edits, seal, &options.today),
         justifications: justifications(seal, &under_sealed, under_today),
         untested: untested(seal),
+        outputs: outputs.differ,
         not_compared: {
             let texts = seal.cells.iter().map(|cell| cell.source.as_str());
             let texts = texts.chain(seal.modules.iter().map(|module| module.content.as_str()));
             let mut list = not_compared(notebook, Some(seal));
+            list.extend(outputs.not_there);
             list.extend(fixed_units::said(texts, [then.holdings.constants, options.today.constants]));
             list
         },
@@ -268,7 +279,7 @@ fn value_audit(
         Some(tried) => {
             let with_sealed_data = under_sealed.of_label(&record.label);
             let compared = Compared { sealed, now: tried, with_sealed_data };
-            compare(&compared, grounds, shares)
+            with_decisions(compare(&compared, grounds, shares), sealed, trial, grounds)
         }
     };
     let under_sealed_data = outcome(under_sealed, &[]);
@@ -288,7 +299,7 @@ fn value_audit(
         steps: steps.into_iter().flatten().collect(),
         label: record.label.clone(),
         unit: record.unit.clone(),
-        sealed: Some(figure(record)),
+        sealed: Some(figure_compared(figure(record), record, under_sealed.of_label(&record.label))),
         under_sealed: under_sealed_data,
         under_today: today,
     }
@@ -326,7 +337,8 @@ fn status(audit: &NotebookAudit, strict_data: bool) -> AuditStatus {
     if verdicts.contains(&Verdict::CouldNotRun) || audit.faults.iter().any(faults) {
         AuditStatus::CouldNotRun
     } else if doubtful
-        || audit.from_sources.iter().flatten().any(|one| !one.same || one.u_same == Some(false))
+        || !audit.outputs.is_empty()
+        || audit.from_sources.iter().flatten().any(|one| !one.is_same())
         || !verdicts.into_iter().all(Verdict::is_same)
     {
         AuditStatus::Differs
@@ -365,15 +377,20 @@ fn justifications(seal: &Seal, under_sealed: &Trial, under_today: &Trial) -> Vec
                 record.assumptions.iter().find(of).and_then(|row| row.price.clone())
             };
             let price_in = |trial: &Trial| trial.of_label(&record.label).and_then(|now| row(&now.report.record));
+            let logarithmic = what_of(&value.kind.what) == Some(What::K);
             let price = row(record);
             let (price_sealed_data, price_today) = (price_in(under_sealed), price_in(under_today));
-            let lapses = |now: &Option<String>| lapsed(record, price.as_deref(), now.as_deref());
+            let lapses = |trial: &Trial, now: &Option<String>| {
+                trial.of_label(&record.label).is_some_and(|tried| {
+                    lapsed(record, price.as_deref(), &tried.report.record, now.as_deref(), logarithmic)
+                })
+            };
             listed.push(Justification {
                 label: record.label.clone(),
                 id: decision.id.clone(),
                 subject: decision.subject.clone(),
                 reason: decision.reason.clone().unwrap_or_default(),
-                lapsed: lapses(&price_sealed_data) || lapses(&price_today),
+                lapsed: lapses(under_sealed, &price_sealed_data) || lapses(under_today, &price_today),
                 price,
                 price_sealed_data,
                 price_today,
@@ -383,12 +400,25 @@ fn justifications(seal: &Seal, under_sealed: &Trial, under_today: &Trial) -> Vec
     listed
 }
 
-/// Whether a price is beyond what was signed for: the price at signing plus the tolerance.
-pub(super) fn lapsed(sealed: &Record, signed: Option<&str>, now: Option<&str>) -> bool {
-    let number = |text: &str| text.parse::<f64>().ok().map(f64::abs);
+/// Whether a price is beyond what was signed for: the price at signing plus the tolerance. Prices of an equilibrium constant
+/// are compared in its logarithm, as they are shown: where K itself shrank, a price may shrink and yet be a larger part of it.
+pub(super) fn lapsed(sealed: &Record, signed: Option<&str>, is: &Record, now: Option<&str>, logarithmic: bool) -> bool {
+    let number = |text: &str| text.parse::<f64>().ok();
     let Some(now) = now.and_then(number) else { return false };
-    let tolerance = number(&sealed.tolerance).unwrap_or(0.0);
-    now > signed.and_then(number).unwrap_or(0.0) + tolerance
+    let (signed, tolerance) = (signed.and_then(number).unwrap_or(0.0), number(&sealed.tolerance).unwrap_or(0.0));
+    if let (true, Some(then), Some(value)) = (logarithmic, number(&sealed.value), number(&is.value)) {
+        return lapsed_in_logarithm((signed, then), (now, value), tolerance);
+    }
+    now.abs() > signed.abs() + tolerance
+}
+
+/// The same for equilibrium constants, each a price with the value it is the price of; the tolerance is that of the first.
+fn lapsed_in_logarithm(signed: (f64, f64), now: (f64, f64), tolerance: f64) -> bool {
+    let lg = |(price, value): (f64, f64)| match value / (value - price) {
+        ratio if ratio > 0.0 && ratio.is_finite() => math::log10(ratio).abs(),
+        _ => f64::INFINITY,
+    };
+    lg(now) > lg(signed) + tolerance / signed.1.abs() / std::f64::consts::LN_10
 }
 
 fn untested(seal: &Seal) -> Vec<String> {
@@ -468,4 +498,20 @@ fn of_unsealed(file: &str, notebook: &NotebookFile, options: &AuditOptions) -> R
     audit.faults.iter_mut().for_each(|fault| fault.under = "today's data, since none are sealed".to_owned());
     audit.status = status(&audit, options.strict_data);
     Ok(audit)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_price_of_a_smaller_equilibrium_constant_is_compared_in_the_logarithm() {
+        // K falls from 10 to 5; the alternative was 0.055 above it in lg K and now is 0.11, tolerance 0.021 in lg K. As plain
+        // numbers the prices are -1.35 and -1.44, which the tolerance of 0.48 would cover. (Chosen figures.)
+        let price = |value: f64, lg: f64| value * (1.0 - math::pow(10.0, lg));
+        let (signed, tolerance) = ((price(10.0, 0.055), 10.0), 0.021 * 10.0 * std::f64::consts::LN_10);
+        assert!(lapsed_in_logarithm(signed, (price(5.0, 0.11), 5.0), tolerance));
+        assert!(!lapsed_in_logarithm(signed, (price(5.0, 0.075), 5.0), tolerance));
+        assert!(!lapsed_in_logarithm(signed, (price(20.0, 0.055), 20.0), tolerance));
+    }
 }

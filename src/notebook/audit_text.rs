@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 use std::fmt::Write as _;
 
 use crate::notebook::verdict::{
-    Against, Move, NotebookAudit, Outcome, Rederived, SealFacts, Signed, ValueAudit, Verdict,
+    Against, AuditFault, Move, NotebookAudit, Outcome, Rederived, SealFacts, Signed, ValueAudit, Verdict,
 };
 use crate::render::harmless::in_one_line;
 
@@ -26,8 +26,14 @@ pub fn notebook(audit: &NotebookAudit) -> String {
         let (then, now) = (short(&difference.sealed), short(&difference.now));
         line(&mut text, &format!("{}: {then} then, {now} now", difference.what));
     }
+    for output in &audit.outputs {
+        line(&mut text, &output.words());
+    }
+    for what in audit.seal.iter().flat_map(|seal| &seal.contradictions) {
+        line(&mut text, what);
+    }
     for fault in &audit.faults {
-        line(&mut text, &format!("under {}: {}: {}", fault.under, fault.fault.cell, fault.fault.message));
+        line(&mut text, &fault_words(fault, &audit.file));
         line(&mut text, &format!("  try: {}", fault.fault.hint));
     }
     if !audit.values.is_empty() {
@@ -65,7 +71,7 @@ pub fn short(digest: &str) -> &str {
 /// What came of deriving values again: those that are the same counted, the others one by one.
 fn from_sources(all: &[Rederived]) -> String {
     let mut text = String::new();
-    let same = |one: &&Rederived| one.same && one.u_same != Some(false);
+    let same = |one: &&Rederived| one.is_same();
     let whole = all.iter().filter(same).filter(|one| one.not_rederived.is_empty()).count();
     line(
         &mut text,
@@ -73,19 +79,16 @@ fn from_sources(all: &[Rederived]) -> String {
     );
     for one in all.iter().filter(|one| !(same(one) && one.not_rederived.is_empty())) {
         let steps = if one.steps == 1 { "1 step".to_owned() } else { format!("{} steps", one.steps) };
-        let words = match (&one.value, same(&one)) {
-            (_, true) => format!("the same, with {} of {steps} taken as sealed", one.not_rederived.len()),
-            (Some(value), false) => {
-                format!("derived again as {value}, off by {}", one.off_by.as_deref().unwrap_or("?"))
-            }
-            (None, false) => "could not be derived again".to_owned(),
+        let words = match one.is_same() {
+            true => format!("the same, with {} of {steps} taken as sealed", one.not_rederived.len()),
+            false => one.otherwise_words(),
         };
         line(&mut text, &format!("  {}: {words}", one.label));
         for step in &one.not_rederived {
             line(&mut text, &format!("    not re-derived: {step}"));
         }
         if let Some(parts_at) = &one.parts_at {
-            line(&mut text, &format!("    parts at {parts_at}"));
+            line(&mut text, &format!("    first differs at {parts_at}"));
         }
     }
     text
@@ -99,11 +102,20 @@ pub fn data_change(audit: &NotebookAudit) -> String {
     }
     let mut text = format!("{}\n", in_one_line(&audit.file));
     for fault in &audit.faults {
-        line(&mut text, &format!("under {}: {}: {}", fault.under, fault.fault.cell, fault.fault.message));
+        line(&mut text, &fault_words(fault, &audit.file));
     }
     summed_causes(audit).iter().for_each(|cause| line(&mut text, cause));
     audit.values.iter().for_each(|value| text.push_str(&changed(value, Against::RecordedOutputs)));
     text
+}
+
+/// What is wrong with the file itself came up under no data, and its message names the file.
+fn fault_words(AuditFault { under, fault }: &AuditFault, file: &str) -> String {
+    match under.as_str() {
+        "the file" => fault.message.clone(),
+        _ if fault.cell == file => format!("under {under}: {}", fault.message),
+        _ => format!("under {under}: {}: {}", fault.cell, fault.message),
+    }
 }
 
 fn line(text: &mut String, words: &str) {
@@ -120,33 +132,45 @@ fn seal_words(seal: &SealFacts) -> String {
         Signed::Valid { key, trusted: None } => format!("; signed with the key {key}, which is not among the trusted"),
         Signed::Invalid { key, why } => format!("; THE SIGNATURE with the key {key} DOES NOT HOLD: {why}"),
     };
-    format!("sealed {}{author}{draft}{signed}{whole}", seal.sealed)
+    format!("sealed {}{author}{draft}{}{signed}{whole}", seal.sealed, seal.set_words())
+}
+
+/// A cause over the values of one notebook.
+#[derive(Default)]
+struct Summed<'a> {
+    values: usize,
+    last: &'a str,
+    moved: usize,
+    /// Whether the last of them is counted among those moved.
+    moves: bool,
 }
 
 /// Every cause once, with the number of values it moved: what an auditor wants to know first where many values moved.
 fn summed_causes(audit: &NotebookAudit) -> Vec<String> {
-    // In the order in which they come up, each with its values counted, and the last of these.
+    // In the order in which they come up, each with its values counted, the last of these, and how many of them it moves:
+    // another unit is a change without a move.
     let mut order: Vec<String> = Vec::new();
-    let mut causes: BTreeMap<String, (usize, &str)> = BTreeMap::new();
+    let mut causes: BTreeMap<String, Summed> = BTreeMap::new();
     for value in &audit.values {
         let moves = [&value.under_sealed.moved, &value.under_today.moved].into_iter().flatten();
         for cause in moves.flat_map(|moved| &moved.causes) {
             let words = format!("{}: {}", cause.kind.word(), cause.what);
-            let (values, last) = causes.entry(words.clone()).or_insert_with(|| {
+            let summed = causes.entry(words.clone()).or_insert_with(|| {
                 order.push(words);
-                (0, "")
+                Summed::default()
             });
-            if *values == 0 || *last != value.label {
-                (*values, *last) = (*values + 1, &value.label);
+            if summed.values == 0 || summed.last != value.label {
+                *summed = Summed { values: summed.values + 1, last: &value.label, moved: summed.moved, moves: false };
+            }
+            if cause.share.as_deref() != Some("0") && !summed.moves {
+                (summed.moved, summed.moves) = (summed.moved + 1, true);
             }
         }
     }
-    let words = |cause: String| {
-        let values = match causes[&cause].0 {
-            1 => "1 value".to_owned(),
-            values => format!("{values} values"),
-        };
-        format!("cause: {cause}; it moves {values}")
+    let values = |n: usize| if n == 1 { "1 value".to_owned() } else { format!("{n} values") };
+    let words = |cause: String| match &causes[&cause] {
+        Summed { moved: 0, values: all, .. } => format!("cause: {cause}; it changes {}, and moves none", values(*all)),
+        Summed { moved, .. } => format!("cause: {cause}; it moves {}", values(*moved)),
     };
     order.into_iter().map(words).collect()
 }

@@ -13,7 +13,7 @@ use crate::notebook::trial::Tried;
 use crate::notebook::verdict::{Cause, CauseKind, Move, Outcome, Verdict, row_words};
 use crate::quantity::round::{self, shortest};
 use crate::render::report::{Assumption, Record};
-use crate::units::{self, Unit};
+use crate::units::{self, Unit, What};
 
 /// A value beside its seal.
 pub struct Compared<'a> {
@@ -134,12 +134,13 @@ impl Base {
         let is = &now.report.record;
         let same_figures = !self.differs();
         let rows = changed_rows(record, is, same_figures);
+        let logarithmic = now.value.kind().what == What::K;
         let lapses: Vec<String> = (record.assumptions.iter())
             .filter(|row| justified(&row.id, &row.subject))
             .filter_map(|row| {
                 let same = |other: &&Assumption| other.id == row.id && other.subject == row.subject;
                 let price = is.assumptions.iter().find(same)?;
-                lapsed(record, row.price.as_deref(), price.price.as_deref()).then(|| {
+                lapsed(record, row.price.as_deref(), is, price.price.as_deref(), logarithmic).then(|| {
                     let word = |row: &Assumption| row.price_shown.clone().unwrap_or_else(|| "no price".to_owned());
                     format!("justification of {} lapsed: {} at signing, {} now", row_words(row), word(row), word(price))
                 })
@@ -236,8 +237,13 @@ fn changed_rows(then: &Record, now: &Record, with_prices: bool) -> Vec<String> {
             dealt.clone().map(|text| text.split("; not corrected").next().unwrap_or("").to_owned())
         };
         if decided(&row.dealt) != decided(&is.dealt) {
-            let word = |text: &Option<String>| text.clone().unwrap_or_else(|| "nothing".to_owned());
-            notes.push(format!("{}: decided was {}; is {}", row_words(row), word(&row.dealt), word(&is.dealt)));
+            let word = |text: &Option<String>| text.clone().unwrap_or_else(|| "not dealt with".to_owned());
+            notes.push(format!(
+                "{}: the decision was \"{}\", and is \"{}\"",
+                row_words(row),
+                word(&row.dealt),
+                word(&is.dealt)
+            ));
         }
     }
     for row in &now.assumptions {

@@ -28,7 +28,7 @@ use crate::quantity::{Quantity, text};
 use crate::record::evaluation::{Evaluation, Shape};
 use crate::record::node::{Input, LeafKey, Node, Operator, history};
 use crate::source::Embedded;
-use crate::units::{self, Dimension, Kind, State, Zero};
+use crate::units::{self, Dimension, Entity, Kind, State, Zero};
 
 /// One step, done again.
 struct Done {
@@ -127,8 +127,13 @@ fn summed_up(seal: &Seal, value: &crate::notebook::seal::SealedValue, done: &[Do
         told.not_rederived.push(format!("{} earlier steps, folded when it was sealed", value.folded));
     }
     let unit = units::parse::unit(&record.unit).ok();
-    let Some((again, unit)) = done[last].value.as_ref().zip(unit).filter(|(again, unit)| *again.dim() == unit.dim)
-    else {
+    let Some(again) = done[last].value.as_ref() else { return told };
+    let Some(unit) = unit.filter(|unit| *again.dim() == unit.dim) else {
+        told.not_rederived.push(format!(
+            "its last step comes out in {}, and the seal has {}",
+            again.dim(),
+            record.unit
+        ));
         return told;
     };
     let now = unit.from_si(again.si());
@@ -311,6 +316,11 @@ fn arithmetic_again(step: &SealedStep, word: &str, by: Option<&str>, done: &[Don
         (Operator::Divide, [a, b]) => a.over(b, None),
         (Operator::PowerOf, [a, b]) => a.power_of(b, None),
         (Operator::Negate, [a]) => a.negated(None),
+        // An open mole that took a name on its way into a unit: a factor of 1 that binds.
+        (Operator::Scale(1.0), [a]) if step.bound.is_some() => {
+            let entity = Entity::named(step.bound.as_deref().unwrap_or_default());
+            a.bound(entity, None)
+        }
         (Operator::Scale(by), [a]) => a.scaled(by, None),
         (Operator::Shift(by), [a]) => a.shifted(by, None),
         (Operator::DivideBy(by), [a]) => a.divided(by, None),

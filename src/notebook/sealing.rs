@@ -21,9 +21,10 @@ use crate::notebook::seal::{
     Decision, Engine, FORMAT, KEY, OpenRow, Seal, SealedCell, SealedFile, SealedModule, SealedParameter, SealedValue,
     source_digest, source_text,
 };
-use crate::notebook::signature::PrivateKey;
+use crate::notebook::signature::{PrivateKey, checked};
 use crate::notebook::skeleton::{Skeleton, sealed_kind};
 use crate::notebook::trial::{Trial, Tried, Unwatched, trial};
+use crate::notebook::verdict::Signed;
 use crate::source::{STDLIB, sha256};
 
 /// The largest file whose content a seal keeps, in bytes.
@@ -46,7 +47,7 @@ pub struct Sealing {
 /// Why a notebook is not sealed.
 #[derive(Clone, Debug, PartialEq, Error)]
 pub enum SealError {
-    #[error("{file} is not sealed: a cell fails, {fault}", fault = in_words(fault))]
+    #[error("{file} is not sealed: {fault}", fault = in_words(file, fault))]
     Fault { file: String, fault: Box<FaultRecord> },
     #[error("{file} is not sealed: it reports nothing")]
     NothingReported { file: String },
@@ -60,8 +61,9 @@ pub enum SealError {
     Format { file: String, format: String },
 }
 
-fn in_words(fault: &FaultRecord) -> String {
-    format!("{}: {}", fault.cell, fault.message)
+fn in_words(file: &str, fault: &FaultRecord) -> String {
+    // What is wrong with the run as a whole, such as a setting that no cell takes, stands under the file's name.
+    if fault.cell == file { fault.message.clone() } else { format!("a cell fails, {}: {}", fault.cell, fault.message) }
 }
 
 struct Rows<'a>(&'a [OpenRow]);
@@ -88,6 +90,7 @@ impl Explain for SealError {
 
     fn hint(&self) -> String {
         match self {
+            SealError::Fault { file, fault } if fault.cell == *file => fault.hint.clone(),
             SealError::Fault { .. } => "run it with `hessbook run`, and mend the cell".to_owned(),
             SealError::NothingReported { .. } => "report a result, as in `report(\"heat of reaction\", dH)`".to_owned(),
             SealError::NotDealtWith { .. } => {
@@ -106,6 +109,8 @@ pub struct Sealed {
     pub seal: Seal,
     /// The seal that the notebook had, and that says the same, was kept.
     pub kept: bool,
+    /// The key of a signature that did not hold, and that was taken away with its seal.
+    pub bad_signature: Option<String>,
 }
 
 /// Runs a notebook and seals it. To be called on a thread with a large stack.
@@ -134,11 +139,20 @@ pub fn seal(path: &Path, how: &Sealing, holdings: &Holdings, stop: &Arc<AtomicBo
     made.digest = made.digest_now();
     made.signature = how.key.as_ref().map(|key| key.sign(&made));
     let earlier = read_seal(&file, &notebook).ok().flatten();
-    let kept = earlier
-        .filter(|earlier| earlier.is_whole() && earlier.says_the_same_as(&made) && earlier.is_signed_like(&made));
+    let bad_signature = earlier.as_ref().and_then(|earlier| match checked(earlier, &[]) {
+        Signed::Invalid { key, .. } => Some(key),
+        _ => None,
+    });
+    let same = |earlier: &Seal| {
+        bad_signature.is_none()
+            && earlier.is_whole()
+            && earlier.says_the_same_as(&made)
+            && earlier.is_signed_like(&made)
+    };
+    let kept = earlier.filter(same);
     let (seal, kept) = kept.map_or((made, false), |earlier| (earlier, true));
     put_seal(&mut notebook, &seal);
-    Ok(Sealed { notebook, seal, kept })
+    Ok(Sealed { notebook, seal, kept, bad_signature })
 }
 
 /// The seal of a run that is not written anywhere.
@@ -261,7 +275,8 @@ fn sealed_file(name: &str, bytes: &[u8]) -> SealedFile {
     SealedFile { name: name.to_owned(), sha256: sha256(bytes), content: text.map(str::to_owned) }
 }
 
-fn decisions(dealings: &[Dealing], label: &str) -> Vec<Decision> {
+/// What was decided about a value.
+pub(super) fn decisions(dealings: &[Dealing], label: &str) -> Vec<Decision> {
     let decision = |dealing: &Dealing| {
         let (reason, limit) = match &dealing.decided {
             Decided::Justified { reason } => (Some(reason.clone()), None),

@@ -3,6 +3,8 @@
 //! [`NotebookAudit`] is the outcome for one notebook, plain data that processes hand on as JSON. The surprise: causes are
 //! kept with exact figures, so that shares and remainder add up to the move, and with a rounded text for people.
 
+use std::collections::BTreeMap;
+
 use serde::{Deserialize, Serialize};
 
 use crate::notebook::beside::FileBeside;
@@ -130,6 +132,9 @@ pub struct NotebookAudit {
     pub justifications: Vec<Justification>,
     /// Rows that were untested when it was sealed, each once for all values it touches.
     pub untested: Vec<String>,
+    /// Results that stand in the outputs and are not those of the seal.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub outputs: Vec<OutputDiffers>,
     /// What this audit says nothing of.
     pub not_compared: Vec<String>,
     /// Why it could not be read or run, and under which data.
@@ -154,6 +159,43 @@ pub struct SealFacts {
     /// Whether its digest is that of its content.
     pub whole: bool,
     pub signed: Signed,
+    /// Parameters that were set from outside when it was sealed, with what they were set to.
+    #[serde(default, skip_serializing_if = "BTreeMap::is_empty")]
+    pub set: BTreeMap<String, String>,
+    /// What of an altered seal contradicts itself, in words.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub contradictions: Vec<String>,
+}
+
+impl SealFacts {
+    /// `; outlet set to 500 degC when it was sealed`, empty where nothing was set from outside.
+    pub fn set_words(&self) -> String {
+        if self.set.is_empty() {
+            return String::new();
+        }
+        let set: Vec<String> = self.set.iter().map(|(name, text)| format!("{name} set to {text}")).collect();
+        format!("; with {} from outside the cells", set.join(", "))
+    }
+}
+
+/// A recorded output that does not say what the seal says.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+pub struct OutputDiffers {
+    pub label: String,
+    /// What stands in the outputs.
+    pub output: String,
+    /// What was sealed; none for a result that the seal does not have.
+    pub seal: Option<String>,
+}
+
+impl OutputDiffers {
+    pub fn words(&self) -> String {
+        let OutputDiffers { label, output, seal } = self;
+        match seal {
+            Some(seal) => format!("the recorded output of {label} says {output}, the seal {seal}"),
+            None => format!("the recorded output of {label} says {output}, and the seal has no such result"),
+        }
+    }
 }
 
 /// What is known of a seal's signature.
@@ -377,6 +419,27 @@ pub struct Rederived {
     pub not_rederived: Vec<String>,
     /// The first step that gives another value than recorded.
     pub parts_at: Option<String>,
+}
+
+impl Rederived {
+    /// Whether it is the sealed one, as far as it could be derived.
+    pub fn is_same(&self) -> bool {
+        self.same && self.u_same != Some(false)
+    }
+
+    /// What came of it, where that is another thing than was sealed.
+    pub fn otherwise_words(&self) -> String {
+        match &self.value {
+            None => "could not be derived again".to_owned(),
+            Some(_) if self.same => {
+                let u = self.u.as_deref().map_or_else(|| "not stated".to_owned(), |u| format!("derived again as {u}"));
+                format!("the value is the same, and its u is {u}, which is not what was sealed")
+            }
+            Some(value) => {
+                format!("derived again as {value}, off by {}", self.off_by.as_deref().unwrap_or("an unknown amount"))
+            }
+        }
+    }
 }
 
 /// One row of the register for readers: id, subject and status.

@@ -85,6 +85,40 @@ pub const VERBS: &[Verb] = &[
     },
 ];
 
+/// Functions that are no formulas and have no card: how figures are typed, and the mathematics of cells.
+pub const FUNCTIONS: &[Verb] = &[
+    Verb {
+        name: "q",
+        signature: "q(text) or q(text, source)",
+        doc: "A quantity as written in print, `q(\"-285.830(20) kJ/mol[H2O]\")`: number, standard uncertainty of the last \
+              digits in brackets or ± with what it means, unit. A second text names the source of the figure.",
+    },
+    Verb {
+        name: "exact",
+        signature: "exact(text)",
+        doc: "A figure without uncertainty, by definition or by counting: `exact(\"2 mol[H2]/mol[O2]\")`.",
+    },
+    Verb { name: "abs", signature: "abs(x)", doc: "The size of a number, a quantity or each value of a curve." },
+    Verb {
+        name: "exp",
+        signature: "exp(x)",
+        doc: "The exponential function of a number, of a quantity of dimension 1, or of a curve of such.",
+    },
+    Verb {
+        name: "ln",
+        signature: "ln(x)",
+        doc: "The natural logarithm of a positive number, of a positive quantity of dimension 1, or of a curve of such.",
+    },
+    Verb {
+        name: "sqrt",
+        signature: "sqrt(x)",
+        doc: "The square root of a number or a quantity, which halves its units.",
+    },
+    Verb { name: "sin", signature: "sin(x)", doc: "The sine of a number in radians or of an angle." },
+    Verb { name: "cos", signature: "cos(x)", doc: "The cosine of a number in radians or of an angle." },
+    Verb { name: "tan", signature: "tan(x)", doc: "The tangent of a number in radians or of an angle." },
+];
+
 /// Something made only to be shown, such as the register.
 #[derive(Clone)]
 pub struct Display(pub Rc<Bundle>);

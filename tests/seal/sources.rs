@@ -136,6 +136,16 @@ fn records_and_measurements_beside_the_notebook_are_read_again_from_the_seal() {
 }
 
 #[test]
+fn an_open_mole_that_takes_its_name_on_the_way_into_a_unit_is_bound_again() {
+    all_derived(
+        &["let h = reaction(\"N2(g) + 3 H2(g) -> 2 NH3(g)\").enthalpy(\"500 K\");
+           report(\"heat\", (q(\"2 mol\") * h.per(\"NH3\")).to(\"kJ\"));"],
+        &[],
+        1,
+    );
+}
+
+#[test]
 fn a_typed_figure_is_read_again_from_its_text_and_one_without_a_text_is_named() {
     let table = ("cp.csv", "T / K,Cp / (J/(K mol))\n300,30\n400,31\n");
     let cells = ["report(\"typed\", 2 * q(\"5.0 kJ ± 0.2 kJ, 95 %, dof=18\"));
