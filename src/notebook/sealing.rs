@@ -94,7 +94,7 @@ impl Explain for SealError {
             SealError::Fault { .. } => "run it with `hessbook run`, and mend the cell".to_owned(),
             SealError::NothingReported { .. } => "report a result, as in `report(\"heat of reaction\", dH)`".to_owned(),
             SealError::NotDealtWith { .. } => {
-                "correct the value, widen it, or justify the row in writing; or seal a draft with --draft".to_owned()
+                "widen the value, correct it where the other way is better, or justify the row; or seal a draft with --draft".to_owned()
             }
             SealError::Script { .. } => "keep the calculation in a .ipynb notebook".to_owned(),
             SealError::Unreadable { .. } => "restore the file from an earlier copy, or seal it again".to_owned(),
